@@ -369,7 +369,9 @@ class Fit:
 
     `modelled_ohm` (N,) is the model at every frequency of the spectrum; `used` (N,) says which
     points were fitted. The residual is (Z − Z_model)/|Z|, complex. `residual_rms_percent` is the
-    root mean square of its parts over the used points, in percent.
+    root mean square of its parts over the used points, in percent. `log_covariance` (p, p) is the
+    covariance of the parameters' natural logarithms, in the order of `parameters` (zero for fixed
+    ones), or None where it is not known; what is derived from several parameters needs it.
     """
 
     model: str
@@ -381,6 +383,7 @@ class Fit:
     converged: bool
     message: str
     trials: tuple[Trial, ...] = ()
+    log_covariance: FloatArray | None = None
 
     def parameter(self, symbol: str) -> Quantity | None:
         """The quantity of the parameter with this symbol, or None if the model has none."""
