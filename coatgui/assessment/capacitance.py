@@ -1,0 +1,327 @@
+"""Capacitances: of the film and of the interface from a fit, and of the film straight from the data.
+
+A constant-phase element Q (jω)^n is not a capacitor; which capacitance it stands for depends on the
+case, so the law is always named (formulas from memory of the papers, checked by their limit C = Q
+for n → 1):
+
+* film whose parallel resistance R turns over inside the window (Hsu and Mansfeld, Corrosion 57
+  (2001) 747):                  C = Q^{1/n} R^{(1−n)/n}
+* film that blocks as far as the window reaches: its capacitance at the settings' high frequency ω,
+                                C = Im(Q (jω)^n)/ω = Q sin(nπ/2) ω^{n−1}
+* interface with the ohmic resistance R_e in front of it (Brug et al., J. Electroanal. Chem. 176
+  (1984) 275):                  C = Q^{1/n} (1/R_e + 1/R_ct)^{(n−1)/n}
+
+Below n = 0.7 nothing is converted.
+
+The two film laws can differ by half their value at n = 0.95, so a panel whose pores begin to conduct
+would seem to jump if each reading went by its own case. A panel therefore uses one law for all its
+readings: Hsu and Mansfeld where every one of them allows it, else the capacitance at the high
+frequency. Water uptake needs the strictest footing of all and *always* uses the latter.
+
+Limits: the gradient of ln C on the logarithms of the parameters, with the fit's covariance. Without
+one, the absolute contributions are added, as if all errors conspired; but where the high frequency
+lies inside the used points, the curve runs through them and cannot miss by more than their scatter.
+
+Straight from the data at one frequency: parallel C = −Z″/(ω|Z|²), series C = −1/(ωZ″), after taking
+away the admittance of the open leads, which lie in parallel with the film.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from enum import Enum, auto
+
+import numpy as np
+
+from coatgui.assessment.amounts import from_logarithm, log_deviation, per_area
+from coatgui.assessment.modulus import relative_scatter
+from coatgui.assessment.rules import rule
+from coatgui.quality import leads_admittance
+from coatgui.records import (
+    BoolArray,
+    Bound,
+    Finding,
+    Fit,
+    Parameter,
+    Quantity,
+    Severity,
+    Spectrum,
+)
+
+
+class FilmLaw(Enum):
+    """Which law turns the film's constant-phase element into a capacitance."""
+
+    HSU_MANSFELD = auto()
+    HIGH_FREQUENCY = auto()
+
+
+# Symbols of Q, n and the resistance in parallel, for every layer that can belong to a film.
+_FILM_LAYERS = (("Q_c", "n_c", "R_po"), ("Q_1", "n_1", "R_1"), ("Q_2", "n_2", "R_2"))
+_INTERFACE = ("Q_dl", "n_dl")
+
+
+@dataclass(frozen=True, slots=True)
+class _Layer:
+    q: Parameter
+    n: Parameter
+    r: Parameter | None
+
+
+def _named(fit: Fit, symbol: str) -> Parameter | None:
+    return next((p for p in fit.parameters if p.symbol == symbol), None)
+
+
+def _film_layers(fit: Fit) -> list[_Layer]:
+    layers = []
+    for q_symbol, n_symbol, r_symbol in _FILM_LAYERS:
+        q, n = _named(fit, q_symbol), _named(fit, n_symbol)
+        if q is not None and n is not None and q.quantity.value and n.quantity.value:
+            layers.append(_Layer(q, n, _named(fit, r_symbol)))
+    return layers
+
+
+def has_film(fit: Fit) -> bool:
+    """Whether the model has a film whose capacitance can be asked for at all."""
+    return bool(_film_layers(fit))
+
+
+def small_exponent_finding(fit: Fit) -> Finding | None:
+    """A doubt where a film layer's n is too small for its Q to be turned into a capacitance."""
+    smallest = min((layer.n.quantity.value or 0.0 for layer in _film_layers(fit)), default=1.0)
+    if smallest >= rule("capacitance.smallest_exponent"):
+        return None
+    return Finding(
+        "exponent_too_small",
+        Severity.DOUBT,
+        f"The film's constant-phase exponent is {smallest:.2f}; below "
+        f"{rule('capacitance.smallest_exponent'):g} it is not turned into a capacitance.",
+        evidence=(("n", smallest),),
+    )
+
+
+def law_that_fits(fit: Fit, spectrum: Spectrum) -> FilmLaw:
+    """The film law for this reading on its own: Hsu and Mansfeld where one film layer has a
+    two-sided resistance whose turning frequency (RQ)^(-1/n)/2π lies among the used points."""
+    layers = _film_layers(fit)
+    if len(layers) != 1 or layers[0].r is None:
+        return FilmLaw.HIGH_FREQUENCY
+    q, n, r = layers[0].q.quantity, layers[0].n.quantity, layers[0].r.quantity
+    if r.bound is not Bound.TWO_SIDED or not (q.value and n.value and r.value):
+        return FilmLaw.HIGH_FREQUENCY
+    turning = (r.value * q.value) ** (-1 / n.value) / (2 * math.pi)
+    used = spectrum.frequency_hz[fit.used]
+    inside = bool(used.size) and float(used[-1]) < turning < float(used[0])
+    return FilmLaw.HSU_MANSFELD if inside else FilmLaw.HIGH_FREQUENCY
+
+
+# ---------------------------------------------------------------------------------------------
+# The laws as plain functions
+
+
+def hsu_mansfeld(q: float, n: float, r: float) -> float:
+    """C in F from Q in S·sⁿ and the parallel R in Ω."""
+    return float(q ** (1 / n) * r ** ((1 - n) / n))
+
+
+def brug(q: float, n: float, conductance: float) -> float:
+    """C in F from Q in S·sⁿ and `conductance` = 1/R_e + 1/R_ct in S."""
+    return float(q ** (1 / n) * conductance ** ((n - 1) / n))
+
+
+def at_frequency(q: float, n: float, frequency_hz: float) -> float:
+    """C in F that a constant-phase element shows at one frequency."""
+    return float(q * math.sin(n * math.pi / 2) * (2 * math.pi * frequency_hz) ** (n - 1))
+
+
+# ---------------------------------------------------------------------------------------------
+# From a fit
+
+
+def film_capacitance(
+    fit: Fit,
+    spectrum: Spectrum,
+    law: FilmLaw,
+    frequency_hz: float,
+    area_cm2: float | None,
+) -> Quantity | None:
+    """The film's capacitance by `law`, F/cm² (F without area); stacked layers count in series.
+
+    None where the model has no film, an n is below 0.7, or no limits can be given.
+    """
+    layers = _film_layers(fit)
+    if not layers or small_exponent_finding(fit) is not None:
+        return None
+    if law is FilmLaw.HSU_MANSFELD:
+        value, gradient, method = _by_hsu_mansfeld(layers[0])
+    else:
+        value, gradient, method = _at_high_frequency(layers, frequency_hz)
+    deviation = _deviation(fit, gradient)
+    if law is FilmLaw.HIGH_FREQUENCY and fit.log_covariance is None:
+        used = spectrum.frequency_hz[fit.used]
+        if used.size and used[-1] <= frequency_hz <= used[0]:
+            scatter = relative_scatter(spectrum, fit.used, fit, frequency_hz)
+            deviation = scatter if deviation is None else min(scatter, deviation)
+    if deviation is None or not math.isfinite(deviation):
+        return None
+    return per_area(from_logarithm(value, deviation, "F", method), area_cm2)
+
+
+def _by_hsu_mansfeld(layer: _Layer) -> tuple[float, dict[str, float], str]:
+    assert layer.r is not None
+    q, n, r = (p.quantity.value or 0.0 for p in (layer.q, layer.n, layer.r))
+    gradient = {
+        layer.q.symbol: 1 / n,
+        layer.n.symbol: -math.log(q * r) / n,
+        layer.r.symbol: (1 - n) / n,
+    }
+    method = "Hsu–Mansfeld, with the film's resistance inside the window"
+    return hsu_mansfeld(q, n, r), gradient, method
+
+
+def _at_high_frequency(
+    layers: list[_Layer], frequency_hz: float
+) -> tuple[float, dict[str, float], str]:
+    omega = 2 * math.pi * frequency_hz
+    elastance = 0.0
+    each: list[tuple[_Layer, float]] = []
+    for layer in layers:
+        q, n = (p.quantity.value or 0.0 for p in (layer.q, layer.n))
+        capacitance = at_frequency(q, n, frequency_hz)
+        each.append((layer, capacitance))
+        elastance += 1 / capacitance
+    value = 1 / elastance
+    gradient: dict[str, float] = {}
+    for layer, capacitance in each:
+        n = layer.n.quantity.value or 0.0
+        share = value / capacitance
+        slope = n * (math.pi / 2 / math.tan(n * math.pi / 2) + math.log(omega))
+        gradient[layer.q.symbol] = share
+        gradient[layer.n.symbol] = share * slope
+    if all(layer.n.quantity.bound is Bound.FIXED and layer.n.quantity.value == 1 for layer in layers):
+        method = "fitted capacitor"
+    else:
+        method = f"fitted film at {frequency_hz:g} Hz, C = Q sin(nπ/2) ω^(n−1)"
+    if len(layers) > 1:
+        method += "; layers in series"
+    return value, gradient, method
+
+
+def _deviation(fit: Fit, gradient: dict[str, float]) -> float | None:
+    """Standard error of a logarithm from its gradient on the parameters' logarithms."""
+    if fit.log_covariance is not None:
+        slope = np.array([gradient.get(p.symbol, 0.0) for p in fit.parameters])
+        variance = float(slope @ fit.log_covariance @ slope)
+        return math.sqrt(variance) if variance >= 0 else None
+    total = 0.0
+    for symbol, slope_ in gradient.items():
+        parameter = _named(fit, symbol)
+        deviation = None if parameter is None else log_deviation(parameter.quantity)
+        if deviation is None:
+            return None
+        total += abs(slope_) * deviation
+    return total
+
+
+def interface_capacitance(fit: Fit, area_cm2: float | None) -> Quantity | None:
+    """The interface's capacitance by Brug's law, F/cm² of panel (F without area).
+
+    R_e is what lies in front: solution and, under a film, the pores. None where the model has no
+    interface, its n is below 0.7, or one of the parameters is not held by the data.
+    """
+    q, n = (_named(fit, symbol) for symbol in _INTERFACE)
+    if q is None or n is None or not q.quantity.value or not n.quantity.value:
+        return None
+    exponent = n.quantity.value
+    if exponent < rule("capacitance.smallest_exponent"):
+        return None
+    in_front = [p for s in ("R_s", "R_po") if (p := _named(fit, s)) is not None]
+    transfer = _named(fit, "R_ct")
+    ahead = sum(p.quantity.value or 0.0 for p in in_front)
+    if ahead <= 0:
+        return None
+    conductance = 1 / ahead
+    charge = transfer.quantity.value if transfer is not None else None
+    if charge:
+        conductance += 1 / charge
+    power = (exponent - 1) / exponent
+    gradient = {
+        q.symbol: 1 / exponent,
+        n.symbol: -math.log(q.quantity.value / conductance) / exponent,
+    }
+    for p in in_front:
+        gradient[p.symbol] = -power * (p.quantity.value or 0.0) / ahead**2 / conductance
+    if transfer is not None and charge and transfer.quantity.bound is Bound.TWO_SIDED:
+        gradient[transfer.symbol] = -power / charge / conductance
+    # A resistance that the data leave open matters only as far as it carries weight.
+    gradient = {symbol: slope for symbol, slope in gradient.items() if abs(slope) > 1e-3}
+    if any(
+        (p := _named(fit, symbol)) is None or log_deviation(p.quantity) is None
+        for symbol in gradient
+    ):
+        return None
+    deviation = _deviation(fit, gradient)
+    if deviation is None or not math.isfinite(deviation):
+        return None
+    value = brug(q.quantity.value, exponent, conductance)
+    method = "Brug, with the solution" + (" and the pores in front" if len(in_front) > 1 else "")
+    return per_area(from_logarithm(value, deviation, "F", method), area_cm2)
+
+
+# ---------------------------------------------------------------------------------------------
+# Straight from the data
+
+
+def measured_capacitance(
+    spectrum: Spectrum,
+    used: BoolArray,
+    fit: Fit | None,
+    frequency_hz: float,
+    area_cm2: float | None,
+    open_lead: Spectrum | None = None,
+) -> tuple[Quantity | None, Finding | None]:
+    """Parallel capacitance at one frequency from the used points, and a note where the phase is so
+    small that it is not the film's alone. The series value stands beside it in the method.
+
+    None where the frequency is not within the used points or the current does not lead.
+    """
+    frequency = spectrum.frequency_hz[used]
+    within = rule("modulus.measured_within")
+    if frequency.size < 2 or not (
+        frequency[-1] * (1 - within) <= frequency_hz <= frequency[0] * (1 + within)
+    ):
+        return None, None
+    impedance = spectrum.impedance_ohm[used][::-1]
+    if not np.abs(impedance).all():
+        return None, None
+    at = math.log(frequency_hz)
+    log_frequency = np.log(frequency[::-1])
+    modulus = math.exp(float(np.interp(at, log_frequency, np.log(np.abs(impedance)))))
+    phase = float(np.interp(at, log_frequency, np.unwrap(np.angle(impedance))))
+    admittance = complex(math.cos(phase), -math.sin(phase)) / modulus
+    method = f"measured at {frequency_hz:g} Hz, parallel"
+    if open_lead is not None:
+        admittance -= complex(leads_admittance(open_lead, np.array([frequency_hz]))[0])
+        method += ", without the open leads"
+    omega = 2 * math.pi * frequency_hz
+    parallel = admittance.imag / omega
+    if parallel <= 0:
+        return None, None
+    series = abs(admittance) ** 2 / (admittance.imag * omega)
+    degrees = math.degrees(math.atan2(admittance.imag, admittance.real))
+    unit_area = 1.0 if area_cm2 is None else area_cm2
+    unit = "F" if area_cm2 is None else "F/cm²"
+    method += f" (series {series / unit_area:.3g} {unit}, phase −{degrees:.1f}°)"
+    scatter = relative_scatter(spectrum, used, fit, frequency_hz)
+    quantity = per_area(from_logarithm(parallel, scatter, "F", method), area_cm2)
+    if degrees >= rule("capacitance.phase_deg"):
+        return quantity, None
+    note = Finding(
+        "capacitance_phase",
+        Severity.NOTE,
+        f"At {frequency_hz:g} Hz the phase is only −{degrees:.0f}°: the capacitance read there is "
+        "not that of the film alone.",
+        evidence=(("phase_deg", -degrees),),
+    )
+    return quantity, note

@@ -1,0 +1,179 @@
+"""How replicate panels of a formulation run together over exposure time.
+
+The panel is the unit: several readings of one panel at one inspection are first made one. |Z|,
+capacitance and resistance spread over decades, so their logarithms are averaged (geometric mean)
+and the 95 % limits of the mean are Student's t on log₁₀ with one degree of freedom less than there
+are panels; water uptake is averaged as it is. One panel alone has no spread between panels: it is
+shown with its own limits. A panel that gives only a bound enters at that bound and is counted as
+censored; then the mean is a bound of the same kind.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from coatgui.assessment.rules import rule
+from coatgui.records import (
+    Bound,
+    Course,
+    CoursePoint,
+    Quantity,
+    ReadingAssessment,
+)
+
+_ONE_SIDED = (Bound.AT_LEAST, Bound.AT_MOST)
+
+
+def inspections(exposure_h: Sequence[float]) -> tuple[tuple[float, ...], ...]:
+    """Exposure times put together to inspections: each within 2.5 % of the first of its group."""
+    groups: list[list[float]] = []
+    within = 1 + rule("inspection.same_within")
+    for time in sorted(set(exposure_h)):
+        if groups and time <= groups[-1][0] * within:
+            groups[-1].append(time)
+        else:
+            groups.append([time])
+    return tuple(tuple(group) for group in groups)
+
+
+def student_95(freedom: int) -> float:
+    """97.5 % point of Student's t."""
+    from scipy.special import stdtrit
+
+    return float(stdtrit(freedom, 0.975))
+
+
+@dataclass(frozen=True, slots=True)
+class _Kind:
+    code: str
+    name: str
+    logarithmic: bool
+    take: Callable[[ReadingAssessment], Quantity | None]
+
+
+def _kinds(modulus_frequencies_hz: Sequence[float]) -> list[_Kind]:
+    def modulus(frequency_hz: float) -> Callable[[ReadingAssessment], Quantity | None]:
+        def take(reading: ReadingAssessment) -> Quantity | None:
+            at = reading.modulus_at(frequency_hz)
+            return None if at is None else at.quantity
+
+        return take
+
+    kinds = [
+        _Kind(f"modulus_{f:g}", f"|Z| at {f:g} Hz", True, modulus(f))
+        for f in modulus_frequencies_hz
+    ]
+    kinds.append(
+        _Kind("coating_capacitance", "Coating capacitance", True, lambda r: r.coating_capacitance)
+    )
+    kinds.append(_Kind("pore_resistance", "Pore resistance", True, lambda r: r.pore_resistance))
+    kinds.append(
+        _Kind(
+            "water_uptake",
+            "Apparent water uptake",
+            False,
+            lambda r: None if r.water_uptake is None else r.water_uptake.quantity,
+        )
+    )
+    return kinds
+
+
+def one_of_panel(quantities: Sequence[Quantity], logarithmic: bool) -> Quantity:
+    """Repeats on one panel made one: their mean, with the widest limits and, if any is a bound, as
+    a bound."""
+    if len(quantities) == 1:
+        return quantities[0]
+    value = _mean([q.value or 0.0 for q in quantities], logarithmic)
+    lows = [q.low for q in quantities if q.low is not None]
+    highs = [q.high for q in quantities if q.high is not None]
+    censored = next((q.bound for q in quantities if q.bound in _ONE_SIDED), None)
+    first = quantities[0]
+    return Quantity(
+        value,
+        value if censored is Bound.AT_LEAST else min(lows, default=None),
+        value if censored is Bound.AT_MOST else max(highs, default=None),
+        censored or first.bound,
+        first.unit,
+        f"mean of {len(quantities)} readings; {first.method}",
+    )
+
+
+def _mean(values: Sequence[float], logarithmic: bool) -> float:
+    if logarithmic:
+        return math.exp(float(np.mean(np.log(values))))
+    return float(np.mean(values))
+
+
+def replicate_mean(panels: Sequence[Quantity], logarithmic: bool) -> tuple[Quantity, int]:
+    """Mean of panels with its 95 % limits, and how many panels are censored. `panels` not empty,
+    all with a value (positive where `logarithmic`) and of one unit."""
+    censored = [q.bound for q in panels if q.bound in _ONE_SIDED]
+    if len(panels) == 1:
+        return panels[0], len(censored)
+    values = np.array([q.value for q in panels], dtype=np.float64)
+    footing = np.log10(values) if logarithmic else values
+    middle = float(footing.mean())
+    half = student_95(values.size - 1) * float(footing.std(ddof=1)) / math.sqrt(values.size)
+    ends = np.array([middle, middle - half, middle + half])
+    value, low, high = (10.0 ** np.clip(ends, -300, 300) if logarithmic else ends).tolist()
+    method = ("geometric" if logarithmic else "arithmetic") + f" mean of {values.size} panels"
+    if not censored:
+        return Quantity(value, low, high, Bound.TWO_SIDED, panels[0].unit, method), 0
+    method += f", {len(censored)} of them only bounds, taken at the bound"
+    kinds = set(censored)
+    if kinds == {Bound.AT_LEAST}:
+        quantity = Quantity(value, low, None, Bound.AT_LEAST, panels[0].unit, method)
+    elif kinds == {Bound.AT_MOST}:
+        quantity = Quantity(value, None, high, Bound.AT_MOST, panels[0].unit, method)
+    else:
+        quantity = Quantity(value, None, None, Bound.UNDETERMINED, panels[0].unit, method)
+    return quantity, len(censored)
+
+
+def panel_values(
+    readings: Sequence[ReadingAssessment],
+    take: Callable[[ReadingAssessment], Quantity | None],
+    logarithmic: bool,
+) -> dict[str, Quantity]:
+    """One quantity for each panel id, of the readings (of one inspection) that count and have it.
+    Where some panels have an area and some have not, those without are left out: their values are
+    not comparable."""
+    by_panel: dict[str, list[Quantity]] = {}
+    for reading in readings:
+        quantity = take(reading) if reading.counts else None
+        if quantity is None or quantity.value is None:
+            continue
+        if logarithmic and quantity.value <= 0:
+            continue
+        by_panel.setdefault(reading.panel_id, []).append(quantity)
+    units = {q.unit for quantities in by_panel.values() for q in quantities}
+    if len(units) > 1:
+        normalised = {u for u in units if "cm²" in u}
+        by_panel = {p: q for p, q in by_panel.items() if q[0].unit in normalised}
+    return {panel: one_of_panel(q, logarithmic) for panel, q in by_panel.items()}
+
+
+def courses(
+    readings: Sequence[ReadingAssessment], modulus_frequencies_hz: Sequence[float]
+) -> tuple[Course, ...]:
+    """The courses of one formulation's readings; empty ones are left away."""
+    groups = inspections([r.exposure_h for r in readings if r.counts])
+    at_group = [
+        (group, [r for r in readings if r.exposure_h in set(group)]) for group in groups
+    ]
+    found = []
+    for kind in _kinds(modulus_frequencies_hz):
+        points = []
+        for group, there in at_group:
+            values = list(panel_values(there, kind.take, kind.logarithmic).values())
+            if values:
+                quantity, censored = replicate_mean(values, kind.logarithmic)
+                time = float(np.mean(group))
+                points.append(CoursePoint(time, quantity, len(values), censored))
+        if points:
+            found.append(Course(kind.code, kind.name, tuple(points)))
+    return tuple(found)

@@ -1,0 +1,170 @@
+"""|Z|·A at wanted frequencies.
+
+A used point closer than 0.5 % to the wanted frequency is the measured value. Otherwise log |Z| is
+interpolated on log f between the two used points on either side; beyond the used range nothing is
+said. Errors of impedance are proportional, so the limits are |Z| exp(±1.96 s), where s is the
+scatter of one component around the wanted frequency: the root mean square of the fit's residuals
+within half a decade, but not less than over the whole reading. Where there is no fit, s comes from
+the second differences of log |Z|, which a smooth curve hardly has.
+
+The leads lie in parallel with the film: Y = Y_film + Y_leads. Both are passive, so their phases
+differ by at most 90° and |Z| ≤ |Z_film| ≤ 1/(1/|Z| − 1/|Z_leads|). The second is the upper limit's
+place. Where |Z_leads| < 10 |Z| the reading says only how large the film's |Z| is at least.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from coatgui.assessment.amounts import NORMAL_95, at_least, held_by_leads
+from coatgui.assessment.rules import rule
+from coatgui.quality import leads_admittance
+from coatgui.records import (
+    BoolArray,
+    Bound,
+    Fit,
+    FloatArray,
+    Modulus,
+    ModulusStatus,
+    Quantity,
+    Spectrum,
+)
+
+_HALF_DECADE = 0.5
+_FEWEST_FOR_SCATTER = 5
+
+
+@dataclass(frozen=True, slots=True)
+class ModulusAt:
+    """|Z| of the specimen at one frequency, Ω, before limits and area; None if not reached."""
+
+    ohm: float | None
+    status: ModulusStatus
+
+
+def modulus_at(spectrum: Spectrum, used: BoolArray, frequency_hz: float) -> ModulusAt:
+    """|Z| at `frequency_hz` from the used points only, never beyond their range."""
+    frequency = spectrum.frequency_hz[used]
+    modulus = np.abs(spectrum.impedance_ohm[used])
+    if not frequency.size:
+        return ModulusAt(None, ModulusStatus.NOT_REACHED)
+    nearest = int(np.argmin(np.abs(np.log(frequency / frequency_hz))))
+    if abs(frequency[nearest] / frequency_hz - 1) <= rule("modulus.measured_within"):
+        return ModulusAt(float(modulus[nearest]), ModulusStatus.MEASURED)
+    if not frequency[-1] < frequency_hz < frequency[0]:
+        return ModulusAt(None, ModulusStatus.NOT_REACHED)
+    if not modulus.all():
+        return ModulusAt(None, ModulusStatus.NOT_REACHED)
+    log_modulus = np.interp(math.log(frequency_hz), np.log(frequency[::-1]), np.log(modulus[::-1]))
+    return ModulusAt(math.exp(float(log_modulus)), ModulusStatus.INTERPOLATED)
+
+
+def relative_scatter(
+    spectrum: Spectrum, used: BoolArray, fit: Fit | None, frequency_hz: float
+) -> float:
+    """Standard deviation of one component of Z around a frequency, as a share of |Z|."""
+    if fit is not None:
+        return max(fit.residual_rms_percent / 100, _local_residual(spectrum, fit, frequency_hz))
+    return _roughness(spectrum, used)
+
+
+def _local_residual(spectrum: Spectrum, fit: Fit, frequency_hz: float) -> float:
+    near = fit.used & (
+        np.abs(np.log10(spectrum.frequency_hz / frequency_hz)) <= _HALF_DECADE
+    )
+    if near.sum() < _FEWEST_FOR_SCATTER:
+        return 0.0
+    impedance = spectrum.impedance_ohm[near]
+    residual = (impedance - fit.modelled_ohm[near]) / np.abs(impedance)
+    return float(np.sqrt(np.mean(np.abs(residual) ** 2) / 2))
+
+
+def _roughness(spectrum: Spectrum, used: BoolArray) -> float:
+    """Scatter from each used point's distance to the line through its two neighbours in log–log;
+    the median keeps single wild points from ruling it."""
+    modulus = np.abs(spectrum.impedance_ohm[used])
+    if modulus.size < _FEWEST_FOR_SCATTER or not modulus.all():
+        return 0.0
+    x: FloatArray = np.log(spectrum.frequency_hz[used])
+    y: FloatArray = np.log(modulus)
+    width = x[2:] - x[:-2]
+    apart = width != 0
+    weight = (x[1:-1] - x[:-2])[apart] / width[apart]
+    distance = y[1:-1][apart] - (1 - weight) * y[:-2][apart] - weight * y[2:][apart]
+    distance /= np.sqrt(1 + weight**2 + (1 - weight) ** 2)
+    return float(np.median(np.abs(distance)) / 0.6745) if distance.size else 0.0
+
+
+def moduli(
+    spectra: Sequence[Spectrum],
+    used: Sequence[BoolArray],
+    fits: Sequence[Fit | None],
+    area_cm2: Sequence[float | None],
+    frequencies_hz: Sequence[float],
+    open_lead: Spectrum | None = None,
+) -> list[tuple[Modulus, ...]]:
+    """|Z|·A of many spectra at each wanted frequency, in the order of `spectra`.
+
+    `used[i]` (N_i,) says which points of spectrum i count. Unit "Ω cm²", or "Ω" per specimen where
+    the area is None.
+    """
+    leads = _leads_modulus(open_lead, frequencies_hz)
+    return [
+        tuple(
+            _one(spectrum, mask, fit, area, frequency, leads_ohm)
+            for frequency, leads_ohm in zip(frequencies_hz, leads, strict=True)
+        )
+        for spectrum, mask, fit, area in zip(spectra, used, fits, area_cm2, strict=True)
+    ]
+
+
+def _leads_modulus(
+    open_lead: Spectrum | None, frequencies_hz: Sequence[float]
+) -> list[float | None]:
+    if open_lead is None:
+        return [None] * len(frequencies_hz)
+    admittance = np.abs(leads_admittance(open_lead, np.asarray(frequencies_hz, dtype=np.float64)))
+    return [1 / float(y) if y > 0 else None for y in admittance]
+
+
+def _one(
+    spectrum: Spectrum,
+    used: BoolArray,
+    fit: Fit | None,
+    area_cm2: float | None,
+    frequency_hz: float,
+    leads_ohm: float | None,
+) -> Modulus:
+    at = modulus_at(spectrum, used, frequency_hz)
+    if at.ohm is None:
+        return Modulus(frequency_hz, at.status, None)
+    unit = "Ω" if area_cm2 is None else "Ω cm²"
+    area = 1.0 if area_cm2 is None else area_cm2
+    spread = math.exp(NORMAL_95 * relative_scatter(spectrum, used, fit, frequency_hz))
+    how = (
+        "measured at this frequency"
+        if at.status is ModulusStatus.MEASURED
+        else "interpolated in log–log between the neighbouring points"
+    )
+    if held_by_leads(at.ohm, leads_ohm):
+        assert leads_ohm is not None
+        method = (
+            f"{how}; the open leads read only {leads_ohm / at.ohm:.2g} times as much, "
+            "so this is the least that the film can have"
+        )
+        bound = at_least(at.ohm * area / spread, unit, method)
+        return Modulus(frequency_hz, at.status, bound)
+    film_at_most = at.ohm if leads_ohm is None else 1 / (1 / at.ohm - 1 / leads_ohm)
+    quantity = Quantity(
+        at.ohm * area,
+        at.ohm * area / spread,
+        film_at_most * area * spread,
+        Bound.TWO_SIDED,
+        unit,
+        how + ("; upper limit with the leads' share" if leads_ohm is not None else ""),
+    )
+    return Modulus(frequency_hz, at.status, quantity)
