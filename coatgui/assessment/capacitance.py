@@ -1,4 +1,4 @@
-"""Capacitances: of the film and of the interface from a fit, and of the film straight from the data.
+"""Capacitances: of film and interface from a fit, and of the film straight from the data.
 
 A constant-phase element Q (jω)^n is not a capacitor; which capacitance it stands for depends on the
 case, so the law is always named (formulas from memory of the papers, checked by their limit C = Q
@@ -13,8 +13,8 @@ for n → 1):
 
 Below n = 0.7 nothing is converted.
 
-The two film laws can differ by half their value at n = 0.95, so a panel whose pores begin to conduct
-would seem to jump if each reading went by its own case. A panel therefore uses one law for all its
+The two film laws can differ by half their value at n = 0.95, so a panel whose pores begin to
+conduct would seem to jump if each reading went by its own case. A panel therefore uses one law for all its
 readings: Hsu and Mansfeld where every one of them allows it, else the capacitance at the high
 frequency. Water uptake needs the strictest footing of all and *always* uses the latter.
 
@@ -199,7 +199,8 @@ def _at_high_frequency(
         slope = n * (math.pi / 2 / math.tan(n * math.pi / 2) + math.log(omega))
         gradient[layer.q.symbol] = share
         gradient[layer.n.symbol] = share * slope
-    if all(layer.n.quantity.bound is Bound.FIXED and layer.n.quantity.value == 1 for layer in layers):
+    exponents = [layer.n.quantity for layer in layers]
+    if all(n.bound is Bound.FIXED and n.value == 1 for n in exponents):
         method = "fitted capacitor"
     else:
         method = f"fitted film at {frequency_hz:g} Hz, C = Q sin(nπ/2) ω^(n−1)"

@@ -162,9 +162,7 @@ def courses(
 ) -> tuple[Course, ...]:
     """The courses of one formulation's readings; empty ones are left away."""
     groups = inspections([r.exposure_h for r in readings if r.counts])
-    at_group = [
-        (group, [r for r in readings if r.exposure_h in set(group)]) for group in groups
-    ]
+    at_group = [(group, [r for r in readings if r.exposure_h in set(group)]) for group in groups]
     found = []
     for kind in _kinds(modulus_frequencies_hz):
         points = []

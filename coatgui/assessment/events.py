@@ -46,9 +46,7 @@ def stage_events(
         events.append(_event(exposure_h, conducting, "pores_conducting", "The pores conduct,"))
     reacting = next((i for i, fit in enumerate(fits) if fit and _reacts(fit)), None)
     if reacting is not None:
-        events.append(
-            _event(exposure_h, reacting, "interface_reacting", "The interface reacts,")
-        )
+        events.append(_event(exposure_h, reacting, "interface_reacting", "The interface reacts,"))
     return events
 
 

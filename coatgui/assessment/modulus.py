@@ -73,9 +73,7 @@ def relative_scatter(
 
 
 def _local_residual(spectrum: Spectrum, fit: Fit, frequency_hz: float) -> float:
-    near = fit.used & (
-        np.abs(np.log10(spectrum.frequency_hz / frequency_hz)) <= _HALF_DECADE
-    )
+    near = fit.used & (np.abs(np.log10(spectrum.frequency_hz / frequency_hz)) <= _HALF_DECADE)
     if near.sum() < _FEWEST_FOR_SCATTER:
         return 0.0
     impedance = spectrum.impedance_ohm[near]

@@ -66,14 +66,12 @@ def group_letters(names: Sequence[str], differ: set[frozenset[str]]) -> dict[str
             groups.append(group)
         for place, name in enumerate(candidates):
             alike = [o for o in candidates[place + 1 :] if frozenset((name, o)) not in differ]
-            also_seen = [
-                o for o in seen + candidates[:place] if frozenset((name, o)) not in differ
-            ]
+            also_seen = [o for o in seen + candidates[:place] if frozenset((name, o)) not in differ]
             grow(group | {name}, alike, also_seen)
 
     grow(set(), list(names), [])
     groups.sort(key=lambda group: sorted(names.index(name) for name in group))
-    letters = {name: "" for name in names}
+    letters = dict.fromkeys(names, "")
     for place, group in enumerate(groups):
         for name in group:
             letters[name] += _letter(place)
@@ -91,9 +89,7 @@ class Ranking:
     text: str
 
 
-def ranking(
-    readings: Mapping[str, Sequence[ReadingAssessment]], frequency_hz: float
-) -> Ranking:
+def ranking(readings: Mapping[str, Sequence[ReadingAssessment]], frequency_hz: float) -> Ranking:
     """Rank formulations, given the readings of each by name; those that do not count are passed
     over. Ranks run from best to worst; empty where there is nothing to compare."""
     if len(readings) < 2:

@@ -7,7 +7,7 @@ limit was crossed. Only readings that count take part.
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 
 from coatgui.assessment.capacitance import (
     FilmLaw,
@@ -68,7 +68,6 @@ class SeriesResult:
     diffusion_coefficient: Quantity | None
     events: tuple[Event, ...]
     limit_crossings: tuple[LimitCrossing, ...]
-    findings: tuple[Finding, ...] = field(default=())
 
 
 def panel_law(series: Sequence[Drawn]) -> FilmLaw:
@@ -81,9 +80,7 @@ def panel_law(series: Sequence[Drawn]) -> FilmLaw:
     return FilmLaw.HSU_MANSFELD if laws == {FilmLaw.HSU_MANSFELD} else FilmLaw.HIGH_FREQUENCY
 
 
-def uptake_basis(
-    series: Sequence[Drawn], frequency_hz: float
-) -> tuple[list[Quantity | None], str]:
+def uptake_basis(series: Sequence[Drawn], frequency_hz: float) -> tuple[list[Quantity | None], str]:
     """The capacitances that the water uptake rests on, all on one footing, and its name.
 
     The fitted film's at the high frequency; readings whose model has no film stay without. Only
@@ -131,9 +128,7 @@ def draw_series(
     moduli = [d.modulus_at(modulus_frequency_hz) for d in counting]
     rebound = rebound_event(exposure_h, moduli)
     events = [
-        *stage_events(
-            exposure_h, [d.fit for d in counting], [d.pore_resistance for d in counting]
-        ),
+        *stage_events(exposure_h, [d.fit for d in counting], [d.pore_resistance for d in counting]),
         *dry_out.events,
         *([rebound] if rebound else []),
     ]
@@ -156,9 +151,7 @@ def _sorption(
 ) -> Sorption | None:
     before = [
         (time, quantity)
-        for time, quantity in zip(
-            exposure_h[: dry_out.first], basis[: dry_out.first], strict=True
-        )
+        for time, quantity in zip(exposure_h[: dry_out.first], basis[: dry_out.first], strict=True)
         if quantity is not None
     ]
     return dry_capacitance([t for t, _ in before], [q for _, q in before], basis_name)

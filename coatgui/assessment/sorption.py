@@ -30,12 +30,12 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import ArrayLike
 
-from coatgui.assessment.amounts import NORMAL_95, from_logarithm, log_deviation
+from coatgui.assessment.amounts import NORMAL_95, from_logarithm, log_deviation, scaled
 from coatgui.assessment.rules import rule
 from coatgui.records import Bound, FloatArray, Quantity
 
@@ -62,7 +62,8 @@ def fickian_uptake(x: ArrayLike) -> FloatArray:
     z = np.minimum(z, 30.0)  # beyond it, ierfc is nothing and z·erfc(z) would be ∞·0
     ierfc = np.exp(-(z**2)) / math.sqrt(np.pi) - z * erfc(z)
     early = 2 * root * (1 / math.sqrt(np.pi) + 2 * ((-1.0) ** count * ierfc).sum(axis=-1))
-    return np.where(x > _CHANGE_OF_SERIES, late, early)
+    share: FloatArray = np.where(x > _CHANGE_OF_SERIES, late, early)
+    return share
 
 
 @dataclass(frozen=True, slots=True)
@@ -150,9 +151,7 @@ def _fit(hours: FloatArray, y: FloatArray, deviation: FloatArray) -> _FickFit:
         k_low=None if inside[0] else float(k[inside].min()),
         k_high=None if inside[-1] else float(k[inside].max()),
         misfit=math.sqrt(least / freedom),
-        before_saturation=int(
-            (fickian_uptake(k[best] * hours) < rule("sorption.saturated")).sum()
-        ),
+        before_saturation=int((fickian_uptake(k[best] * hours) < rule("sorption.saturated")).sum()),
     )
 
 
@@ -235,12 +234,5 @@ def diffusion_coefficient(sorption: Sorption, thickness_um: float | None) -> Qua
         return None
     rate = sorption.rate_per_h
     factor = (thickness_um * _CM_PER_UM) ** 2 / _SECONDS_PER_HOUR
-    assert rate.value is not None and rate.low is not None and rate.high is not None
-    return Quantity(
-        rate.value * factor,
-        rate.low * factor,
-        rate.high * factor,
-        Bound.TWO_SIDED,
-        "cm²/s",
-        f"Fickian sorption into {thickness_um:g} µm from one face; {sorption.text}",
-    )
+    method = f"Fickian sorption into {thickness_um:g} µm from one face; {sorption.text}"
+    return replace(scaled(rate, factor, "cm²/s"), method=method)

@@ -21,12 +21,12 @@ def power_of_ten(value: float) -> str:
 
 
 def counted(count: int, noun: str) -> str:
-    """"1 panel", "3 panels"."""
+    """ "1 panel", "3 panels"."""
     return f"{count} {noun}" if count == 1 else f"{count} {noun}s"
 
 
 def listed(names: Sequence[str]) -> str:
-    """"K", "K and M", "K, M and P"."""
+    """ "K", "K and M", "K, M and P"."""
     if len(names) < 2:
         return "".join(names)
     return ", ".join(names[:-1]) + " and " + names[-1]
