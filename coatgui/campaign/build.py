@@ -1,0 +1,246 @@
+"""From what intake found to records of a campaign, whether it is new or has run for weeks.
+
+Facts that a panel list gives fill what is not known yet. Where they contradict what is known,
+what is known stays, and the contradiction is put on the list of refusals for a person to settle.
+"""
+
+from __future__ import annotations
+
+import math
+import secrets
+from collections.abc import Iterable
+from dataclasses import replace
+from typing import Any
+
+from coatgui.records import (
+    Campaign,
+    Formulation,
+    Found,
+    FoundPanel,
+    FoundReading,
+    Panel,
+    Reading,
+    Refusal,
+    Settings,
+    Source,
+    Spectrum,
+)
+
+UNASSIGNED = "Unassigned"
+"""The formulation of panels of which no formulation is known."""
+
+PANEL_LIST = "panels.csv"
+# The facts of a panel that a list may give, and how they are called.
+_FACTS = {
+    "area_cm2": "area in cm²",
+    "thickness_um": "film thickness in µm",
+    "substrate": "substrate",
+    "electrolyte": "electrolyte",
+    "temperature_c": "temperature in °C",
+    "regime": "exposure regime",
+    "remark": "remark",
+}
+_POSITIVE = ("area_cm2", "thickness_um")
+
+
+def new_id() -> str:
+    """A random id, for a record to be known by for good."""
+    return secrets.token_hex(8)
+
+
+def campaign_from_found(found: Found, title: str, settings: Settings | None = None) -> Campaign:
+    """A new campaign of all that was found.
+
+    A reading whose panel is not listed gets a panel of which nothing is known; a panel without a
+    formulation belongs to "Unassigned".
+    """
+    empty = Campaign(new_id(), title.strip() or "Untitled campaign", settings or Settings())
+    return gather(empty, found)
+
+
+def gather(campaign: Campaign, found: Found) -> Campaign:
+    """The campaign with what was found added at the ends; see the rules above. Records that do
+    not change stay the same objects."""
+    gathering = _Gathering(campaign)
+    for listed in found.panels:
+        gathering.add_listed(listed)
+    for reading in found.readings:
+        gathering.add_reading(reading)
+    if found.open_lead is not None:
+        gathering.add_open_lead(*found.open_lead)
+    for refusal in found.refused:
+        gathering.refuse(refusal.file, refusal.reason)
+    return gathering.campaign()
+
+
+class _Gathering:
+    """A campaign while things are added to it, each kind by what it is recognised by."""
+
+    def __init__(self, campaign: Campaign) -> None:
+        self._before = campaign
+        self._formulations = {f.name: f for f in campaign.formulations}
+        self._formulation_names = {f.formulation_id: f.name for f in campaign.formulations}
+        self._panels = {p.name: p for p in campaign.panels}
+        self._panel_names = {p.panel_id: p.name for p in campaign.panels}
+        self._readings = list(campaign.readings)
+        self._present = {(r.source.sha256, r.source.part): r for r in campaign.readings}
+        self._refused = dict.fromkeys(campaign.refused)
+        self._lead = (campaign.open_lead, campaign.open_lead_source)
+
+    def campaign(self) -> Campaign:
+        return replace(
+            self._before,
+            formulations=tuple(self._formulations.values()),
+            panels=tuple(self._panels.values()),
+            readings=tuple(self._readings),
+            open_lead=self._lead[0],
+            open_lead_source=self._lead[1],
+            refused=tuple(self._refused),
+        )
+
+    def refuse(self, file: str, reason: str) -> None:
+        """Put on the list what is not on it yet."""
+        self._refused.setdefault(Refusal(_storable(file), _storable(reason)))
+
+    # A row of a panel list
+
+    def add_listed(self, listed: FoundPanel) -> None:
+        name = _storable(listed.panel).strip()
+        if not name:
+            self.refuse(PANEL_LIST, "A row names no panel: fill in the column 'panel'.")
+            return
+        panel = self._panels.get(name)
+        if panel is None:
+            panel = self._new_panel(name, _storable(listed.formulation).strip())
+        panel = self._with_formulation(panel, _storable(listed.formulation).strip())
+        for fact, words in _FACTS.items():
+            value = self._usable(name, fact, getattr(listed, fact))
+            known = getattr(panel, fact)
+            if value is None or value == "" or value == known:
+                continue
+            if known is None or known == "":
+                panel = replace(panel, **{fact: value})
+            else:
+                self._refuse_fact(name, words, value, known)
+        self._panels[name] = self._with_notes(panel, listed.notes)
+
+    def _usable(self, name: str, fact: str, value: Any) -> Any:
+        """The value as a panel may have it, or None, said so, where it makes no sense."""
+        if value is None:
+            return None
+        if isinstance(value, str):
+            return _storable(value).strip()
+        if not math.isfinite(value) or (fact in _POSITIVE and value <= 0):
+            self.refuse(
+                PANEL_LIST,
+                f"Panel {name}: {value:g} is no possible {_FACTS[fact]}, so it was left empty: "
+                "correct the list or edit the panel.",
+            )
+            return None
+        return float(value)
+
+    def _with_formulation(self, panel: Panel, name: str) -> Panel:
+        known = self._formulation_names[panel.formulation_id]
+        if not name or name == known:
+            return panel
+        if known == UNASSIGNED:
+            return replace(panel, formulation_id=self._formulation_id(name))
+        self._refuse_fact(panel.name, "formulation", name, known)
+        return panel
+
+    def _with_notes(self, panel: Panel, notes: Iterable[tuple[str, str]]) -> Panel:
+        known = dict(panel.notes)
+        new = {}
+        for heading, text in notes:
+            heading, text = _storable(heading), _storable(text)
+            if text and heading not in known:
+                new[heading] = known[heading] = text
+            elif text and text != known[heading]:
+                self._refuse_fact(panel.name, heading, text, known[heading])
+        return replace(panel, notes=(*panel.notes, *new.items())) if new else panel
+
+    def _refuse_fact(self, panel: str, what: str, listed: object, known: object) -> None:
+        self.refuse(
+            PANEL_LIST,
+            f"Panel {panel}: the list says {what} {listed}, but {known} was known before and was "
+            "kept: edit the panel if the list is right.",
+        )
+
+    # A reading, and the run without a specimen
+
+    def add_reading(self, found: FoundReading) -> None:
+        source = _storable_source(found.source)
+        name = _storable(found.panel).strip()
+        where = f"{source.file} ({source.part})" if source.part else source.file
+        same = self._present.get((source.sha256, source.part))
+        if same is not None:
+            self.refuse(
+                source.file,
+                f"{where} holds the same bytes as {same.source.file}, which is in the campaign "
+                f"already as panel {self._panel_names[same.panel_id]} at {same.exposure_h:g} h: "
+                "it was not added again.",
+            )
+        elif not name:
+            self.refuse(source.file, f"{where} names no panel: say in readings.csv whose it is.")
+        elif not (math.isfinite(found.exposure_h) and found.exposure_h >= 0):
+            self.refuse(
+                source.file,
+                f"{where} has no possible exposure time ({found.exposure_h:g} h): say in "
+                "readings.csv when it was taken.",
+            )
+        else:
+            panel = self._panels.get(name)
+            if panel is None:
+                panel = self._panels[name] = self._new_panel(name, "")
+            reading = Reading(
+                reading_id=new_id(),
+                panel_id=panel.panel_id,
+                exposure_h=float(found.exposure_h),
+                spectrum=found.spectrum,
+                source=source,
+                temperature_c=_finite(found.temperature_c),
+                amplitude_mv=_finite(found.amplitude_mv),
+                potential_mv=_finite(found.potential_mv),
+                remark=_storable(found.remark),
+            )
+            self._present[source.sha256, source.part] = reading
+            self._readings.append(reading)
+
+    def add_open_lead(self, spectrum: Spectrum, source: Source) -> None:
+        present, present_source = self._lead
+        if present is None:
+            self._lead = (spectrum, _storable_source(source))
+        elif present != spectrum:
+            held = present_source.file if present_source else "the present one"
+            self.refuse(
+                _storable(source.file),
+                f"{_storable(source.file)} is another open-lead run than {held}, which was kept: "
+                "remove that one first if the new one is to count.",
+            )
+
+    # Records that something else needs
+
+    def _new_panel(self, name: str, formulation: str) -> Panel:
+        panel = Panel(new_id(), name, self._formulation_id(formulation or UNASSIGNED))
+        self._panel_names[panel.panel_id] = name
+        return panel
+
+    def _formulation_id(self, name: str) -> str:
+        if name not in self._formulations:
+            made = Formulation(new_id(), name)
+            self._formulations[name] = made
+            self._formulation_names[made.formulation_id] = name
+        return self._formulations[name].formulation_id
+
+
+def _finite(value: float | None) -> float | None:
+    return None if value is None or not math.isfinite(value) else float(value)
+
+
+def _storable_source(source: Source) -> Source:
+    return replace(source, file=_storable(source.file), part=_storable(source.part))
+
+
+def _storable(text: str) -> str:
+    """The text with what is no character replaced by "?": some systems hand over file names so."""
+    return text.encode("utf-8", "replace").decode("utf-8")

@@ -1,0 +1,105 @@
+"""Is a campaign file sound? Everything that can be verified is, and nothing is changed."""
+
+from __future__ import annotations
+
+import hashlib
+import sqlite3
+from collections.abc import Iterator
+from contextlib import closing
+from pathlib import Path
+
+from coatgui.campaign import changes as changes_of
+from coatgui.campaign import connection as database
+from coatgui.campaign import schema
+from coatgui.campaign.errors import CampaignFileError
+from coatgui.campaign.snapshot import Snapshot, read_spectra, record_of
+from coatgui.campaign.trail import Trail
+from coatgui.records import Spectrum
+
+
+def check_file(path: Path) -> tuple[str, ...]:
+    """What is wrong with a campaign file, one sentence each; empty where it is sound.
+
+    Structure, SQLite's own integrity, references, hashes of raw files and spectra, every record
+    and every line of the history are verified. A file that is no campaign at all, is too new or
+    cannot be read gives the one sentence that says so.
+    """
+    try:
+        connection = database.connect(path)
+    except CampaignFileError as problem:
+        return (str(problem),)
+    try:
+        with database.plain_words(path):
+            connection.execute("PRAGMA query_only = ON")
+            return tuple(_problems(connection))
+    except CampaignFileError as problem:
+        return (str(problem),)
+    finally:
+        database.disconnect(connection, path)
+
+
+def _problems(connection: sqlite3.Connection) -> Iterator[str]:
+    structure = schema.unexpected_structure(connection)
+    if structure:
+        # Queries on tables that are not ours could mean anything.
+        yield from structure
+        return
+    for (said,) in connection.execute("PRAGMA integrity_check"):
+        if said != "ok":
+            yield f"SQLite finds the file damaged: {said}."
+    for table, row, target, _ in connection.execute("PRAGMA foreign_key_check"):
+        yield f"Row {row} of {table} refers to a row of {target} that is missing."
+    yield from _raw_problems(connection)
+    if schema.version(connection) == len(schema.MIGRATIONS):
+        yield from _content_problems(connection)
+        return
+    # The records of an older version are read after bringing a copy up to date.
+    with closing(sqlite3.connect(":memory:", isolation_level=None)) as copy:
+        copy.row_factory = sqlite3.Row
+        connection.backup(copy)
+        schema.migrate(copy)
+        yield from _content_problems(copy)
+
+
+def _raw_problems(connection: sqlite3.Connection) -> Iterator[str]:
+    for sha256, content in connection.execute("SELECT sha256, bytes FROM raw_files"):
+        if hashlib.sha256(content).hexdigest() != sha256:
+            yield f"The stored bytes of an imported file are not what its SHA-256 {sha256} says."
+    for table in ("readings", "open_lead"):
+        for (file,) in connection.execute(
+            f"SELECT DISTINCT file FROM {table} WHERE sha256 IS NOT NULL "
+            "AND sha256 NOT IN (SELECT sha256 FROM raw_files)"
+        ):
+            yield f"The bytes of {file}, which {table.replace('_', '-')} came from, are missing."
+
+
+def _content_problems(connection: sqlite3.Connection) -> Iterator[str]:
+    spectra: dict[str, Spectrum] = {}
+    for (spectrum_id,) in connection.execute("SELECT spectrum_id FROM spectra").fetchall():
+        try:
+            found = read_spectra(connection, spectrum_id)
+        except CampaignFileError as problem:
+            yield str(problem)
+            continue
+        if found[spectrum_id].content_key() != spectrum_id:
+            yield f"The numbers of spectrum {spectrum_id} are not what its SHA-256 says."
+        spectra.update(found)
+    unreadable = False
+    for table in schema.ORDERED:
+        for row in connection.execute(f"SELECT * FROM {table}"):
+            try:
+                record_of(table, row, spectra)
+            except CampaignFileError as problem:
+                unreadable = True
+                yield str(problem)
+    for entry_id, changes in connection.execute("SELECT entry_id, changes FROM history"):
+        try:
+            changes_of.from_text(changes)
+        except ValueError:
+            yield f"Line {entry_id} of the history cannot be read."
+    try:
+        Trail(connection)
+        if not unreadable:
+            Snapshot(connection)
+    except CampaignFileError as problem:
+        yield str(problem)

@@ -1,0 +1,357 @@
+"""What a person can do to a campaign, one function for each.
+
+Each takes the campaign as it is first and gives back the operation, for `CampaignFile.apply`; the
+campaign itself is not touched. Each raises OperationRefused, with one sentence, where the campaign
+cannot take it: an id it does not have, an empty or taken name, a number that makes no sense.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Collection, Iterable
+from dataclasses import fields as fields_of
+from dataclasses import replace
+from typing import Any, TypeVar
+
+from coatgui.campaign.build import gather, new_id
+from coatgui.campaign.changes import Operation
+from coatgui.campaign.errors import OperationRefused
+from coatgui.campaign.rules import operation
+from coatgui.records import (
+    Campaign,
+    Formulation,
+    Found,
+    Panel,
+    Reading,
+    Refusal,
+    Settings,
+    Source,
+    Spectrum,
+)
+
+Record = TypeVar("Record", Formulation, Panel, Reading, Settings)
+
+# How a field is called in the name of an operation.
+_WORDS = {
+    "name": "name",
+    "formulation_id": "formulation",
+    "panel_id": "panel",
+    "area_cm2": "area",
+    "thickness_um": "film thickness",
+    "substrate": "substrate",
+    "electrolyte": "electrolyte",
+    "temperature_c": "temperature",
+    "regime": "exposure regime",
+    "remark": "remark",
+    "notes": "notes",
+    "exposure_h": "exposure time",
+    "amplitude_mv": "amplitude",
+    "potential_mv": "potential",
+    "modulus_frequencies_hz": "frequencies for the modulus",
+    "capacitance_frequency_hz": "frequency for the capacitance",
+    "mains_hz": "mains frequency",
+    "criteria": "criteria",
+    "thresholds": "thresholds",
+}
+
+# ---------------------------------------------------------------------------------------------
+# The campaign
+
+
+def import_found(campaign: Campaign, found: Found) -> Operation:
+    """Add what intake found. Readings whose bytes and part are present already, and panel facts
+    that contradict what is known, are noted under `refused` instead."""
+    after = gather(campaign, found)
+    counts = (
+        (len(after.readings) - len(campaign.readings), "reading"),
+        (len(after.panels) - len(campaign.panels), "panel"),
+        (int(after.open_lead is not campaign.open_lead), "open-lead run"),
+        (len(after.refused) - len(campaign.refused), "refusal"),
+    )
+    added = [_count(number, what) for number, what in counts if number]
+    name = f"Import {_listed(added)}" if added else "Import panel facts"
+    return operation(name, campaign, after, found.raw)
+
+
+def rename_campaign(campaign: Campaign, title: str) -> Operation:
+    return operation(
+        f"Rename the campaign to {title.strip()}", campaign, replace(campaign, title=title.strip())
+    )
+
+
+def edit_campaign_remark(campaign: Campaign, remark: str) -> Operation:
+    return operation("Change the campaign's remark", campaign, replace(campaign, remark=remark))
+
+
+def edit_settings(campaign: Campaign, **fields: Any) -> Operation:
+    """Change fields of `Settings`, by name."""
+    settings, words = _with(campaign.settings, fields, ())
+    return operation(f"Set {words}", campaign, replace(campaign, settings=settings))
+
+
+def set_open_lead(
+    campaign: Campaign, spectrum: Spectrum | None, source: Source | None, raw: bytes | None = None
+) -> Operation:
+    """Put another open-lead run in place of the present one, or none; `raw` is its file."""
+    after = replace(
+        campaign, open_lead=spectrum, open_lead_source=None if spectrum is None else source
+    )
+    files = {} if raw is None or source is None else {source.sha256: raw}
+    name = "Remove the open-lead run" if spectrum is None else "Set the open-lead run"
+    return operation(name, campaign, after, files)
+
+
+def dismiss_refusals(campaign: Campaign, refusals: Collection[Refusal]) -> Operation:
+    """Take refusals off the list once they have been dealt with; the history keeps them."""
+    left = tuple(r for r in campaign.refused if r not in refusals)
+    number = len(campaign.refused) - len(left)
+    return operation(
+        f"Dismiss {_count(number, 'refusal')}", campaign, replace(campaign, refused=left)
+    )
+
+
+# ---------------------------------------------------------------------------------------------
+# Formulations
+
+
+def add_formulation(campaign: Campaign, name: str, remark: str = "") -> Operation:
+    made = Formulation(new_id(), name.strip(), remark)
+    after = replace(campaign, formulations=(*campaign.formulations, made))
+    return operation(f"Add formulation {made.name}", campaign, after)
+
+
+def rename_formulation(campaign: Campaign, formulation_id: str, name: str) -> Operation:
+    formulation = _formulation(campaign, formulation_id)
+    changed = replace(formulation, name=name.strip())
+    return operation(
+        f"Rename formulation {formulation.name} to {changed.name}",
+        campaign,
+        replace(campaign, formulations=_swap(campaign.formulations, [(formulation, changed)])),
+    )
+
+
+def edit_formulation_remark(campaign: Campaign, formulation_id: str, remark: str) -> Operation:
+    formulation = _formulation(campaign, formulation_id)
+    changed = replace(formulation, remark=remark)
+    return operation(
+        f"Change the remark of formulation {formulation.name}",
+        campaign,
+        replace(campaign, formulations=_swap(campaign.formulations, [(formulation, changed)])),
+    )
+
+
+def remove_formulation(campaign: Campaign, formulation_id: str) -> Operation:
+    """Only one without panels can go."""
+    formulation = _formulation(campaign, formulation_id)
+    if any(panel.formulation_id == formulation_id for panel in campaign.panels):
+        raise OperationRefused(
+            f"Formulation {formulation.name} still has panels: move or remove them first."
+        )
+    left = tuple(f for f in campaign.formulations if f is not formulation)
+    return operation(
+        f"Remove formulation {formulation.name}", campaign, replace(campaign, formulations=left)
+    )
+
+
+# ---------------------------------------------------------------------------------------------
+# Panels
+
+
+def add_panel(campaign: Campaign, name: str, formulation_id: str, **fields: Any) -> Operation:
+    """A new panel without readings; `fields` are further fields of `Panel`."""
+    panel, _ = _with(Panel(new_id(), name.strip(), formulation_id), fields, ("panel_id",))
+    return operation(
+        f"Add panel {panel.name}", campaign, replace(campaign, panels=(*campaign.panels, panel))
+    )
+
+
+def edit_panel(campaign: Campaign, panel_id: str, **fields: Any) -> Operation:
+    """Change fields of `Panel`, by name; None or an empty text says that a fact is not known."""
+    panel = _panel(campaign, panel_id)
+    changed, words = _with(panel, fields, ("panel_id",))
+    return operation(
+        f"Change {words} of panel {panel.name}",
+        campaign,
+        replace(campaign, panels=_swap(campaign.panels, [(panel, changed)])),
+    )
+
+
+def move_panel(campaign: Campaign, panel_id: str, formulation_id: str) -> Operation:
+    panel, formulation = _panel(campaign, panel_id), _formulation(campaign, formulation_id)
+    changed = replace(panel, formulation_id=formulation_id)
+    return operation(
+        f"Move panel {panel.name} to {formulation.name}",
+        campaign,
+        replace(campaign, panels=_swap(campaign.panels, [(panel, changed)])),
+    )
+
+
+def remove_panel(campaign: Campaign, panel_id: str) -> Operation:
+    """The panel goes with its readings."""
+    panel = _panel(campaign, panel_id)
+    panels = tuple(p for p in campaign.panels if p is not panel)
+    readings = tuple(r for r in campaign.readings if r.panel_id != panel_id)
+    number = len(campaign.readings) - len(readings)
+    return operation(
+        f"Remove panel {panel.name} with {_count(number, 'reading')}",
+        campaign,
+        replace(campaign, panels=panels, readings=readings),
+    )
+
+
+# ---------------------------------------------------------------------------------------------
+# Readings
+
+
+def edit_reading(campaign: Campaign, reading_id: str, **fields: Any) -> Operation:
+    """Change a reading's panel, exposure time, temperature, amplitude, potential or remark."""
+    reading = _reading(campaign, reading_id)
+    others = ("reading_id", "spectrum", "source", *_DECISIONS)
+    changed, words = _with(reading, fields, others)
+    return _on_readings(campaign, [(reading, changed)], f"Change {words} of")
+
+
+# What a person decides about a reading has operations of its own.
+_DECISIONS = ("left_out", "kept_in", "pinned_model", "overruled_because")
+
+
+def remove_reading(campaign: Campaign, reading_id: str) -> Operation:
+    reading = _reading(campaign, reading_id)
+    left = tuple(r for r in campaign.readings if r is not reading)
+    return operation(
+        f"Remove the reading {_where(campaign, reading)}",
+        campaign,
+        replace(campaign, readings=left),
+    )
+
+
+def leave_out_points(
+    campaign: Campaign, reading_id: str, points: Iterable[int], reason: str
+) -> Operation:
+    """Leave points out of everything that is computed, for a reason that is kept with them. A
+    point that is left out already gets the new reason."""
+    reading = _reading(campaign, reading_id)
+    chosen = _chosen(points)
+    left_out = {**dict(reading.left_out), **dict.fromkeys(chosen, reason.strip())}
+    changed = replace(
+        reading,
+        left_out=tuple(sorted(left_out.items())),
+        kept_in=tuple(point for point in reading.kept_in if point not in chosen),
+    )
+    return _on_readings(
+        campaign, [(reading, changed)], f"Leave out {_count(len(chosen), 'point')} of"
+    )
+
+
+def take_back_points(campaign: Campaign, reading_id: str, points: Iterable[int]) -> Operation:
+    """Use points again, whoever left them out: what a person left out is taken back, and the
+    points are kept in although the checks may suggest otherwise."""
+    reading = _reading(campaign, reading_id)
+    chosen = _chosen(points)
+    changed = replace(
+        reading,
+        left_out=tuple(pair for pair in reading.left_out if pair[0] not in chosen),
+        kept_in=tuple(sorted({*reading.kept_in, *chosen})),
+    )
+    return _on_readings(
+        campaign, [(reading, changed)], f"Take back {_count(len(chosen), 'point')} of"
+    )
+
+
+def pin_model(campaign: Campaign, reading_ids: Iterable[str], model_id: str) -> Operation:
+    """Insist on a coating model for these readings; "" leaves the choice to the program again."""
+    readings = [_reading(campaign, reading_id) for reading_id in dict.fromkeys(reading_ids)]
+    if not readings:
+        raise OperationRefused("Choose at least one reading to set the model of.")
+    changed = [(reading, replace(reading, pinned_model=model_id)) for reading in readings]
+    return _on_readings(
+        campaign, changed, "Set the model of" if model_id else "Let the program choose the model of"
+    )
+
+
+def overrule(campaign: Campaign, reading_id: str, reason: str) -> Operation:
+    """Use a rejected reading all the same, for a reason; "" lets the rejection stand again."""
+    reading = _reading(campaign, reading_id)
+    changed = replace(reading, overruled_because=reason.strip())
+    words = "Overrule the rejection of" if changed.overruled_because else "Accept the rejection of"
+    return _on_readings(campaign, [(reading, changed)], words)
+
+
+def _on_readings(
+    campaign: Campaign, changed: list[tuple[Reading, Reading]], words: str
+) -> Operation:
+    if len(changed) == 1:
+        name = f"{words} the reading {_where(campaign, changed[0][0])}"
+    else:
+        name = f"{words} {len(changed)} readings"
+    return operation(name, campaign, replace(campaign, readings=_swap(campaign.readings, changed)))
+
+
+# ---------------------------------------------------------------------------------------------
+# Finding and replacing records
+
+
+def _formulation(campaign: Campaign, formulation_id: str) -> Formulation:
+    for formulation in campaign.formulations:
+        if formulation.formulation_id == formulation_id:
+            return formulation
+    raise OperationRefused("This formulation is not in the campaign (any more).")
+
+
+def _panel(campaign: Campaign, panel_id: str) -> Panel:
+    for panel in campaign.panels:
+        if panel.panel_id == panel_id:
+            return panel
+    raise OperationRefused("This panel is not in the campaign (any more).")
+
+
+def _reading(campaign: Campaign, reading_id: str) -> Reading:
+    for reading in campaign.readings:
+        if reading.reading_id == reading_id:
+            return reading
+    raise OperationRefused("This reading is not in the campaign (any more).")
+
+
+def _swap(records: tuple[Any, ...], changed: Iterable[tuple[Any, Any]]) -> tuple[Any, ...]:
+    """The records, each that is the first of a pair replaced by the second."""
+    new = {id(old): record for old, record in changed}
+    return tuple(new.get(id(record), record) for record in records)
+
+
+def _with(record: Record, fields: dict[str, Any], fixed: tuple[str, ...]) -> tuple[Record, str]:
+    """The record with fields changed, and those that really differ in words."""
+    known = {field.name for field in fields_of(record)} - set(fixed)
+    for name in fields:
+        if name not in known:
+            raise OperationRefused(f"'{name}' cannot be changed here.")
+    changed = replace(record, **{name: _tidy(name, value) for name, value in fields.items()})
+    return changed, _listed([_WORDS[name] for name in fields])
+
+
+def _tidy(name: str, value: Any) -> Any:
+    """A value as the records hold it: whole numbers as floats, lists as tuples, texts trimmed."""
+    if isinstance(value, str):
+        return value if name == "remark" else value.strip()
+    if isinstance(value, int) and not isinstance(value, bool):
+        return float(value)
+    if isinstance(value, list | tuple):
+        return tuple(_tidy("", item) for item in value)
+    return value
+
+
+def _chosen(points: Iterable[int]) -> dict[int, None]:
+    chosen = dict.fromkeys(sorted(int(point) for point in points))
+    if not chosen:
+        raise OperationRefused("Choose at least one point.")
+    return chosen
+
+
+def _where(campaign: Campaign, reading: Reading) -> str:
+    return f"of {_panel(campaign, reading.panel_id).name} at {reading.exposure_h:g} h"
+
+
+def _count(number: int, what: str) -> str:
+    return f"{number} {what}" if number == 1 else f"{number} {what}s"
+
+
+def _listed(parts: list[str]) -> str:
+    return " and ".join([", ".join(parts[:-1]), parts[-1]] if len(parts) > 1 else parts)

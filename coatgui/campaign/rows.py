@@ -1,0 +1,340 @@
+"""Records as rows of the tables and back, exactly.
+
+Numbers are stored as they are; lists as JSON text, in which Python writes every float so that the
+same float is read back. The same record always gives the same row, so that rows can be compared.
+"""
+
+from __future__ import annotations
+
+import hashlib
+import json
+from collections.abc import Iterable, Mapping
+from functools import lru_cache
+from typing import Any
+
+import numpy as np
+
+from coatgui.campaign.changes import Cell, Row
+from coatgui.records import (
+    Column,
+    Criterion,
+    Dialect,
+    Formulation,
+    Panel,
+    Reading,
+    Refusal,
+    Settings,
+    Source,
+    Spectrum,
+)
+
+# ---------------------------------------------------------------------------------------------
+# Records to rows
+
+
+def campaign_row(campaign_id: str, title: str, remark: str) -> Row:
+    return {"campaign_id": campaign_id, "title": title, "remark": remark}
+
+
+def settings_row(campaign_id: str, settings: Settings) -> Row:
+    return {
+        "campaign_id": campaign_id,
+        "temperature_c": float(settings.temperature_c),
+        "modulus_frequencies_hz": to_json([float(f) for f in settings.modulus_frequencies_hz]),
+        "capacitance_frequency_hz": float(settings.capacitance_frequency_hz),
+        "mains_hz": float(settings.mains_hz),
+        "criteria": to_json(
+            [
+                {
+                    "name": c.name,
+                    "frequency_hz": float(c.frequency_hz),
+                    "ohm_cm2": float(c.ohm_cm2),
+                    "source": c.source,
+                }
+                for c in settings.criteria
+            ]
+        ),
+        "thresholds": to_json([[name, float(value)] for name, value in settings.thresholds]),
+    }
+
+
+def formulation_row(formulation: Formulation) -> Row:
+    return {
+        "formulation_id": formulation.formulation_id,
+        "name": formulation.name,
+        "remark": formulation.remark,
+    }
+
+
+def panel_row(panel: Panel) -> Row:
+    return {
+        "panel_id": panel.panel_id,
+        "name": panel.name,
+        "formulation_id": panel.formulation_id,
+        "area_cm2": _float(panel.area_cm2),
+        "thickness_um": _float(panel.thickness_um),
+        "substrate": panel.substrate,
+        "electrolyte": panel.electrolyte,
+        "temperature_c": _float(panel.temperature_c),
+        "regime": panel.regime,
+        "remark": panel.remark,
+        "notes": to_json(panel.notes),
+    }
+
+
+def reading_row(reading: Reading) -> Row:
+    return {
+        "reading_id": reading.reading_id,
+        "panel_id": reading.panel_id,
+        "exposure_h": float(reading.exposure_h),
+        "spectrum_id": reading.spectrum.content_key(),
+        **_source_cells(reading.source),
+        "temperature_c": _float(reading.temperature_c),
+        "amplitude_mv": _float(reading.amplitude_mv),
+        "potential_mv": _float(reading.potential_mv),
+        "remark": reading.remark,
+        "left_out": to_json(reading.left_out),
+        "kept_in": to_json(reading.kept_in),
+        "pinned_model": reading.pinned_model,
+        "overruled_because": reading.overruled_because,
+    }
+
+
+def open_lead_row(campaign_id: str, spectrum: Spectrum, source: Source | None) -> Row:
+    return {
+        "campaign_id": campaign_id,
+        "spectrum_id": spectrum.content_key(),
+        **_source_cells(source),
+    }
+
+
+def refusal_row(refusal: Refusal) -> Row:
+    return {
+        "refusal_id": refusal_key(refusal),
+        "file": refusal.file,
+        "reason": refusal.reason,
+    }
+
+
+def refusal_key(refusal: Refusal) -> str:
+    """A refusal is known by what it says; saying it twice adds nothing."""
+    said = to_json([refusal.file, refusal.reason]).encode("utf-8", "surrogatepass")
+    return hashlib.sha256(said).hexdigest()[:32]
+
+
+def spectrum_row(spectrum: Spectrum) -> Row:
+    return {
+        "spectrum_id": spectrum.content_key(),
+        "frequency_hz": to_json(spectrum.frequency_hz.tolist()),
+        "real_ohm": to_json(spectrum.impedance_ohm.real.tolist()),
+        "imaginary_ohm": to_json(spectrum.impedance_ohm.imag.tolist()),
+    }
+
+
+def _source_cells(source: Source | None) -> dict[str, Cell]:
+    if source is None:
+        return {"file": None, "sha256": None, "part": None, "dialect": None}
+    return {
+        "file": source.file,
+        "sha256": source.sha256,
+        "part": source.part,
+        "dialect": None if source.dialect is None else _dialect_text(source.dialect),
+    }
+
+
+@lru_cache(maxsize=256)
+def _dialect_text(dialect: Dialect) -> str:
+    return to_json(
+        {
+            "encoding": dialect.encoding,
+            "delimiter": dialect.delimiter,
+            "decimal_sign": dialect.decimal_sign,
+            "first_data_line": dialect.first_data_line,
+            "ascending": dialect.ascending,
+            "columns": [
+                {
+                    "position": c.position,
+                    "heading": c.heading,
+                    "role": c.role,
+                    "unit": c.unit,
+                    "factor": float(c.factor),
+                }
+                for c in dialect.columns
+            ],
+            "remarks": dialect.remarks,
+        }
+    )
+
+
+def to_json(value: Any) -> str:
+    return json.dumps(value, ensure_ascii=False, allow_nan=False)
+
+
+def _float(value: float | None) -> float | None:
+    return None if value is None else float(value)
+
+
+# ---------------------------------------------------------------------------------------------
+# Rows to records. They raise ValueError, TypeError or KeyError where a row is not as we write it.
+
+
+def settings_of(row: Row) -> Settings:
+    return Settings(
+        temperature_c=_number(row["temperature_c"]),
+        modulus_frequencies_hz=tuple(map(_number, _list(row["modulus_frequencies_hz"]))),
+        capacitance_frequency_hz=_number(row["capacitance_frequency_hz"]),
+        mains_hz=_number(row["mains_hz"]),
+        criteria=tuple(
+            Criterion(
+                _string(c["name"]),
+                _number(c["frequency_hz"]),
+                _number(c["ohm_cm2"]),
+                _string(c["source"]),
+            )
+            for c in _list(row["criteria"])
+        ),
+        thresholds=tuple(
+            (_string(name), _number(value)) for name, value in _list(row["thresholds"])
+        ),
+    )
+
+
+def formulation_of(row: Row) -> Formulation:
+    return Formulation(_string(row["formulation_id"]), _string(row["name"]), _string(row["remark"]))
+
+
+def panel_of(row: Row) -> Panel:
+    return Panel(
+        panel_id=_string(row["panel_id"]),
+        name=_string(row["name"]),
+        formulation_id=_string(row["formulation_id"]),
+        area_cm2=_number_or_none(row["area_cm2"]),
+        thickness_um=_number_or_none(row["thickness_um"]),
+        substrate=_string(row["substrate"]),
+        electrolyte=_string(row["electrolyte"]),
+        temperature_c=_number_or_none(row["temperature_c"]),
+        regime=_string(row["regime"]),
+        remark=_string(row["remark"]),
+        notes=tuple((_string(heading), _string(text)) for heading, text in _list(row["notes"])),
+    )
+
+
+def reading_of(row: Row, spectra: Mapping[str, Spectrum]) -> Reading:
+    """`spectra` must hold the one that the row names."""
+    source = source_of(row)
+    if source is None:
+        raise ValueError("A reading must name the file it came from.")
+    spectrum = spectra[_string(row["spectrum_id"])]
+    left_out = tuple((_whole(point), _string(reason)) for point, reason in _list(row["left_out"]))
+    kept_in = tuple(map(_whole, _list(row["kept_in"])))
+    if not all(0 <= point < len(spectrum) for point in (*(p for p, _ in left_out), *kept_in)):
+        raise ValueError("A point is named that the spectrum does not have.")
+    return Reading(
+        reading_id=_string(row["reading_id"]),
+        panel_id=_string(row["panel_id"]),
+        exposure_h=_number(row["exposure_h"]),
+        spectrum=spectrum,
+        source=source,
+        temperature_c=_number_or_none(row["temperature_c"]),
+        amplitude_mv=_number_or_none(row["amplitude_mv"]),
+        potential_mv=_number_or_none(row["potential_mv"]),
+        remark=_string(row["remark"]),
+        left_out=left_out,
+        kept_in=kept_in,
+        pinned_model=_string(row["pinned_model"]),
+        overruled_because=_string(row["overruled_because"]),
+    )
+
+
+def refusal_of(row: Row) -> Refusal:
+    return Refusal(_string(row["file"]), _string(row["reason"]))
+
+
+def source_of(row: Row) -> Source | None:
+    if row["file"] is None:
+        return None
+    dialect = row["dialect"]
+    return Source(
+        file=_string(row["file"]),
+        sha256=_string(row["sha256"]),
+        part=_string(row["part"]),
+        dialect=None if dialect is None else _dialect_of(_string(dialect)),
+    )
+
+
+@lru_cache(maxsize=256)
+def _dialect_of(text: str) -> Dialect:
+    told = json.loads(text)
+    return Dialect(
+        encoding=_string(told["encoding"]),
+        delimiter=_string(told["delimiter"]),
+        decimal_sign=_string(told["decimal_sign"]),
+        first_data_line=_whole(told["first_data_line"]),
+        columns=tuple(
+            Column(
+                _whole(c["position"]),
+                _string(c["heading"]),
+                _string(c["role"]),
+                _string(c["unit"]),
+                _number(c["factor"]),
+            )
+            for c in told["columns"]
+        ),
+        ascending=bool(told["ascending"]),
+        remarks=tuple(map(_string, told["remarks"])),
+    )
+
+
+def spectra_of(rows: Iterable[tuple[str, str, str, str]]) -> dict[str, Spectrum]:
+    """Spectra by their id, from (id, frequency_hz, real_ohm, imaginary_ohm) as stored."""
+    spectra = {}
+    # Readings of a campaign mostly share their list of frequencies: parse each list once.
+    frequencies: dict[str, Any] = {}
+    for spectrum_id, frequency_text, real, imaginary in rows:
+        frequency = frequencies.get(frequency_text)
+        if frequency is None:
+            frequency = frequencies[frequency_text] = _floats(frequency_text)
+        # Set part by part: a sum real + 1j·imaginary would lose the sign of a negative zero.
+        impedance = np.empty(frequency.shape, dtype=np.complex128)
+        impedance.real = _floats(real, frequency.size)
+        impedance.imag = _floats(imaginary, frequency.size)
+        spectra[spectrum_id] = Spectrum(frequency, impedance)
+    return spectra
+
+
+def _floats(text: str, wanted: int | None = None) -> Any:
+    numbers = np.array(json.loads(text), dtype=np.float64)
+    if numbers.ndim != 1 or (wanted is not None and numbers.size != wanted):
+        raise ValueError("The lists of a spectrum differ in length.")
+    return numbers
+
+
+def _list(cell: Any) -> list[Any]:
+    if cell == "[]":
+        return []
+    value = json.loads(_string(cell))
+    if not isinstance(value, list):
+        raise TypeError("A list was expected.")
+    return value
+
+
+def _string(value: Any) -> str:
+    if not isinstance(value, str):
+        raise TypeError("A text was expected.")
+    return value
+
+
+def _number(value: Any) -> float:
+    if not isinstance(value, int | float) or isinstance(value, bool):
+        raise TypeError("A number was expected.")
+    return float(value)
+
+
+def _number_or_none(value: Any) -> float | None:
+    return None if value is None else _number(value)
+
+
+def _whole(value: Any) -> int:
+    if not isinstance(value, int) or isinstance(value, bool):
+        raise TypeError("A whole number was expected.")
+    return value

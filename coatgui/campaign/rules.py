@@ -1,0 +1,234 @@
+"""What a campaign must be like, and the difference between two states of one.
+
+An operation is made by comparing the campaign as it is with the campaign as it should become.
+Records that are the same object in both are passed over, so that a small edit of a large campaign
+stays cheap.
+"""
+
+from __future__ import annotations
+
+import math
+from collections import Counter
+from collections.abc import Callable, Iterable, Iterator, Mapping
+from dataclasses import fields, is_dataclass
+from typing import Any
+
+from coatgui.campaign import rows
+from coatgui.campaign.changes import Operation, Row, RowChange
+from coatgui.campaign.errors import OperationRefused
+from coatgui.records import Campaign, Formulation, Panel, Reading, Settings, Spectrum
+
+
+def operation(
+    name: str, before: Campaign, after: Campaign, raw: Mapping[str, bytes] | None = None
+) -> Operation:
+    """The operation that makes `after` of `before`; `raw` holds files that new rows refer to.
+
+    Both must be the same campaign, with the records that stay in their order and new ones at the
+    end. Raises OperationRefused where `after` is not a sound campaign.
+    """
+    changes: list[RowChange] = []
+    spectra: dict[str, Spectrum] = {}
+    tables_before, tables_after = _tables(before), _tables(after)
+    for table, records in tables_after.items():
+        were = tables_before[table]
+        changes += [
+            RowChange(table, key, _ROW[table](key, record), None)
+            for key, record in were.items()
+            if key not in records
+        ]
+        for key, record in records.items():
+            was = were.get(key)
+            if record is was:
+                continue
+            _refuse_unsound(table, record)
+            changes += _change(table, key, was, record)
+            for spectrum in _spectra_in(record):
+                if spectrum not in _spectra_in(was):
+                    spectra[spectrum.content_key()] = spectrum
+    _refuse_clashes(after, {change.table for change in changes})
+    return Operation(name, tuple(changes), tuple(spectra.values()), dict(raw or {}))
+
+
+def _change(table: str, key: str, was: Any, record: Any) -> list[RowChange]:
+    after = _ROW[table](key, record)
+    if was is None:
+        return [RowChange(table, key, None, after)]
+    before = _ROW[table](key, was)
+    differing = [column for column in after if after[column] != before[column]]
+    if not differing:
+        return []
+    return [
+        RowChange(table, key, {c: before[c] for c in differing}, {c: after[c] for c in differing})
+    ]
+
+
+def all_rows(campaign: Campaign) -> Iterator[tuple[str, Row]]:
+    """Every row of a campaign, with its table. Raises OperationRefused where the campaign is not
+    sound."""
+    tables = _tables(campaign)
+    _refuse_clashes(campaign, set(tables))
+    for table, records in tables.items():
+        for key, record in records.items():
+            _refuse_unsound(table, record)
+            yield table, _ROW[table](key, record)
+
+
+def all_spectra(campaign: Campaign) -> Iterator[Spectrum]:
+    """Every spectrum of a campaign once."""
+    spectra = [reading.spectrum for reading in campaign.readings]
+    if campaign.open_lead is not None:
+        spectra.append(campaign.open_lead)
+    yield from {spectrum.content_key(): spectrum for spectrum in spectra}.values()
+
+
+# ---------------------------------------------------------------------------------------------
+# A campaign as tables of records, each under the key it has in the file
+
+
+def _tables(campaign: Campaign) -> dict[str, dict[str, Any]]:
+    key = campaign.campaign_id
+    open_lead = (campaign.open_lead, campaign.open_lead_source)
+    return {
+        "campaign": {key: (campaign.title, campaign.remark)},
+        "settings": {key: campaign.settings},
+        "formulations": {f.formulation_id: f for f in campaign.formulations},
+        "panels": {p.panel_id: p for p in campaign.panels},
+        "readings": {r.reading_id: r for r in campaign.readings},
+        "open_lead": {} if campaign.open_lead is None else {key: open_lead},
+        "refused": {rows.refusal_key(r): r for r in campaign.refused},
+    }
+
+
+_ROW: dict[str, Callable[[str, Any], Row]] = {
+    "campaign": lambda key, facts: rows.campaign_row(key, *facts),
+    "settings": rows.settings_row,
+    "formulations": lambda _, formulation: rows.formulation_row(formulation),
+    "panels": lambda _, panel: rows.panel_row(panel),
+    "readings": lambda _, reading: rows.reading_row(reading),
+    "open_lead": lambda key, run: rows.open_lead_row(key, *run),
+    "refused": lambda _, refusal: rows.refusal_row(refusal),
+}
+
+
+def _spectra_in(record: Any) -> tuple[Spectrum, ...]:
+    if isinstance(record, Reading):
+        return (record.spectrum,)
+    if isinstance(record, tuple) and isinstance(record[0], Spectrum):
+        return (record[0],)
+    return ()
+
+
+# ---------------------------------------------------------------------------------------------
+# Rules for one record
+
+
+def _refuse_unsound(table: str, record: Any) -> None:
+    if is_dataclass(record):
+        _refuse_wrong_types(record)
+    if table == "campaign":
+        _named(record[0], "A campaign", "title")
+    elif isinstance(record, Settings):
+        _refuse_unsound_settings(record)
+    elif isinstance(record, Formulation):
+        _named(record.name, "A formulation")
+    elif isinstance(record, Panel):
+        _refuse_unsound_panel(record)
+    elif isinstance(record, Reading):
+        _refuse_unsound_reading(record)
+
+
+def _refuse_wrong_types(record: Any) -> None:
+    """Texts must be texts and numbers finite numbers: SQLite would convert some others."""
+    for field in fields(record):
+        value = getattr(record, field.name)
+        words = field.name.replace("_", " ")
+        if field.type == "str" and not isinstance(value, str):
+            raise OperationRefused(f"The {words} must be a text, not {value!r}.")
+        if field.type == "float" or (field.type == "float | None" and value is not None):
+            _finite(value, f"The {words}")
+
+
+def _refuse_unsound_panel(panel: Panel) -> None:
+    _named(panel.name, "A panel")
+    _positive(panel.area_cm2, f"The area of panel {panel.name} in cm²")
+    _positive(panel.thickness_um, f"The film thickness of panel {panel.name} in µm")
+
+
+def _refuse_unsound_reading(reading: Reading) -> None:
+    what = f"the reading from {reading.source.file}"
+    if reading.exposure_h < 0:
+        raise OperationRefused(
+            f"The exposure time of {what} must be 0 h or more, not {reading.exposure_h:g} h."
+        )
+    points = [point for point, _ in reading.left_out]
+    if not all(0 <= point < len(reading.spectrum) for point in (*points, *reading.kept_in)):
+        raise OperationRefused(f"The spectrum of {what} does not have all of these points.")
+    if not all(reason.strip() for _, reason in reading.left_out):
+        raise OperationRefused("Points can only be left out with a reason: please give one.")
+
+
+def _refuse_unsound_settings(settings: Settings) -> None:
+    _positive(settings.capacitance_frequency_hz, "The frequency for the capacitance in Hz")
+    _positive(settings.mains_hz, "The mains frequency in Hz")
+    for frequency in settings.modulus_frequencies_hz:
+        _positive(frequency, "A frequency for the modulus in Hz")
+    for criterion in settings.criteria:
+        _refuse_wrong_types(criterion)
+        _named(criterion.name, "A criterion")
+        _positive(criterion.frequency_hz, f"The frequency of criterion {criterion.name} in Hz")
+        _positive(criterion.ohm_cm2, f"The limit of criterion {criterion.name} in Ω cm²")
+    for name, value in settings.thresholds:
+        _finite(value, f"The threshold {name}")
+
+
+def _named(name: str, what: str, fact: str = "name") -> None:
+    if not name.strip():
+        raise OperationRefused(f"{what} needs a {fact} that is not empty.")
+
+
+def _finite(value: Any, what: str) -> float:
+    if isinstance(value, bool) or not isinstance(value, int | float) or not math.isfinite(value):
+        raise OperationRefused(f"{what} must be a number, not {value!r}.")
+    return value
+
+
+def _positive(value: float | None, what: str) -> None:
+    if value is not None and _finite(value, what) <= 0:
+        raise OperationRefused(f"{what} must be greater than 0, not {value:g}.")
+
+
+# ---------------------------------------------------------------------------------------------
+# Rules between records
+
+
+def _refuse_clashes(campaign: Campaign, touched: set[str]) -> None:
+    """Names and ids that may occur once only, and ids that must exist."""
+    formulations = {f.formulation_id for f in campaign.formulations}
+    panels = {p.panel_id for p in campaign.panels}
+    if "formulations" in touched:
+        _once((f.name for f in campaign.formulations), "formulation", "the name")
+        _once((f.formulation_id for f in campaign.formulations), "formulation", "the id")
+    if "panels" in touched:
+        _once((p.name for p in campaign.panels), "panel", "the name")
+        _once((p.panel_id for p in campaign.panels), "panel", "the id")
+    if touched & {"panels", "formulations"}:
+        for panel in campaign.panels:
+            if panel.formulation_id not in formulations:
+                raise OperationRefused(f"Panel {panel.name} needs a formulation that exists.")
+    if touched & {"readings", "panels"}:
+        for reading in campaign.readings:
+            if reading.panel_id not in panels:
+                raise OperationRefused(
+                    f"The reading from {reading.source.file} needs a panel that exists."
+                )
+    if "readings" in touched:
+        _once((r.reading_id for r in campaign.readings), "reading", "the id")
+
+
+def _once(values: Iterable[str], what: str, fact: str) -> None:
+    for value, times in Counter(values).items():
+        if times > 1:
+            raise OperationRefused(
+                f"There is already a {what} with {fact} '{value}': please choose another."
+            )

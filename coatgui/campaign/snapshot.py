@@ -1,0 +1,161 @@
+"""The campaign in memory, kept in step with the file row by row.
+
+Only the records of touched rows are made anew; everything else in the next `Campaign` is the same
+object as before.
+"""
+
+from __future__ import annotations
+
+import sqlite3
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass, field, replace
+from typing import Any
+
+from coatgui.campaign import rows
+from coatgui.campaign.errors import CampaignFileError
+from coatgui.campaign.schema import KEYS, ORDERED
+from coatgui.records import Campaign, Reading, Spectrum
+
+_IN_USE = "SELECT spectrum_id FROM readings UNION SELECT spectrum_id FROM open_lead"
+
+
+@dataclass(frozen=True)
+class Touched:
+    """Rows read again after a change: `place` and record by table and key, None where the row is
+    gone; and the facts of the campaign itself."""
+
+    held: dict[tuple[str, str], tuple[int, Any] | None] = field(default_factory=dict)
+    facts: dict[str, Any] = field(default_factory=dict)
+
+
+class Snapshot:
+    """`campaign` is the file's content as of the last `adopt`.
+
+    The connection must give rows as `sqlite3.Row`. Raises CampaignFileError where something
+    cannot be read.
+    """
+
+    def __init__(self, connection: sqlite3.Connection) -> None:
+        self._connection = connection
+        spectra = read_spectra(connection)
+        self._held: dict[str, dict[str, tuple[int, Any]]] = {
+            table: {
+                row[KEYS[table]]: (row["place"], record_of(table, row, spectra))
+                for row in connection.execute(f"SELECT * FROM {table} ORDER BY place, rowid")
+            }
+            for table in ORDERED
+        }
+        content = self._facts(spectra)
+        content.update((table, self._in_order(table)) for table in ORDERED)
+        self.campaign = Campaign(**content)
+
+    def read_again(self, touched: Iterable[tuple[str, str]]) -> Touched:
+        """Read the named rows (table, key) from the file, without changing the snapshot."""
+        again = Touched()
+        for table, key in touched:
+            if table not in ORDERED:
+                lead = self.campaign.open_lead
+                again.facts.update(self._facts({} if lead is None else {lead.content_key(): lead}))
+                continue
+            row = self._connection.execute(
+                f"SELECT * FROM {table} WHERE {KEYS[table]} = ?", (key,)
+            ).fetchone()
+            if row is None:
+                again.held[table, key] = None
+                continue
+            _, was = self._held[table].get(key, (0, None))
+            spectra = self._spectra(row, was) if table == "readings" else {}
+            again.held[table, key] = (row["place"], record_of(table, row, spectra))
+        return again
+
+    def adopt(self, touched: Touched) -> None:
+        """Make the rows read again part of the snapshot."""
+        tables = {table for table, _ in touched.held}
+        for (table, key), held in touched.held.items():
+            if held is None:
+                self._held[table].pop(key, None)
+            else:
+                self._held[table][key] = held
+        content = dict(touched.facts)
+        content.update((table, self._in_order(table)) for table in tables)
+        self.campaign = replace(self.campaign, **content)
+
+    def _in_order(self, table: str) -> tuple[Any, ...]:
+        places = sorted(self._held[table].values(), key=lambda held: held[0])
+        return tuple(record for _, record in places)
+
+    def _spectra(self, row: sqlite3.Row, was: Reading | None = None) -> Mapping[str, Spectrum]:
+        """The spectrum that a row names; not parsed again where the record at hand has it."""
+        wanted = row["spectrum_id"]
+        if was is not None and was.spectrum.content_key() == wanted:
+            return {wanted: was.spectrum}
+        return read_spectra(self._connection, wanted)
+
+    def _facts(self, spectra: Mapping[str, Spectrum]) -> dict[str, Any]:
+        """The fields of `Campaign` that come from the tables of one row each."""
+        campaign, settings, lead = map(self._only, ("campaign", "settings", "open_lead"))
+        if campaign is None or settings is None:
+            raise CampaignFileError(
+                "This campaign file is damaged: the campaign's title or settings are missing."
+            )
+        open_lead = source = None
+        try:
+            if lead is not None:
+                wanted = lead["spectrum_id"]
+                open_lead = spectra.get(wanted) or self._spectra(lead)[wanted]
+                source = rows.source_of(lead)
+            return {
+                "campaign_id": campaign["campaign_id"],
+                "title": campaign["title"],
+                "remark": campaign["remark"],
+                "settings": rows.settings_of(settings),
+                "open_lead": open_lead,
+                "open_lead_source": source,
+            }
+        except (ValueError, TypeError, KeyError) as problem:
+            raise CampaignFileError(
+                "This campaign file is damaged: its settings or open-lead run cannot be read."
+            ) from problem
+
+    def _only(self, table: str) -> Any:
+        found = self._connection.execute(f"SELECT * FROM {table} LIMIT 2").fetchall()
+        if len(found) > 1:
+            raise CampaignFileError(
+                f"This campaign file is damaged: the table '{table}' holds more than one row."
+            )
+        return found[0] if found else None
+
+
+def record_of(table: str, row: Any, spectra: Mapping[str, Spectrum]) -> Any:
+    """The record of a row of one of the ordered tables. Raises CampaignFileError."""
+    try:
+        if table == "formulations":
+            return rows.formulation_of(row)
+        if table == "panels":
+            return rows.panel_of(row)
+        if table == "readings":
+            return rows.reading_of(row, spectra)
+        return rows.refusal_of(row)
+    except (ValueError, TypeError, KeyError) as problem:
+        raise CampaignFileError(
+            f"This campaign file is damaged: row {row[KEYS[table]]} of {table} cannot be read."
+        ) from problem
+
+
+def read_spectra(
+    connection: sqlite3.Connection, spectrum_id: str | None = None
+) -> dict[str, Spectrum]:
+    """The named spectrum, or all that readings and the open-lead run refer to, by id. Raises
+    CampaignFileError where one cannot be read."""
+    columns = "SELECT spectrum_id, frequency_hz, real_ohm, imaginary_ohm FROM spectra"
+    if spectrum_id is not None:
+        found = connection.execute(f"{columns} WHERE spectrum_id = ?", (spectrum_id,))
+    else:
+        found = connection.execute(f"{columns} WHERE spectrum_id IN ({_IN_USE})")
+    try:
+        return rows.spectra_of(found)
+    except (ValueError, TypeError, OverflowError) as problem:
+        which = "one of its spectra" if spectrum_id is None else f"spectrum {spectrum_id}"
+        raise CampaignFileError(
+            f"This campaign file is damaged: {which} cannot be read."
+        ) from problem
