@@ -14,9 +14,9 @@ for n → 1):
 Below n = 0.7 nothing is converted.
 
 The two film laws can differ by half their value at n = 0.95, so a panel whose pores begin to
-conduct would seem to jump if each reading went by its own case. A panel therefore uses one law for all its
-readings: Hsu and Mansfeld where every one of them allows it, else the capacitance at the high
-frequency. Water uptake needs the strictest footing of all and *always* uses the latter.
+conduct would seem to jump if each reading went by its own case. A panel therefore uses one law for
+all its readings: Hsu and Mansfeld where every one of them allows it, else the capacitance at the
+high frequency. Water uptake needs the strictest footing of all and *always* uses the latter.
 
 Limits: the gradient of ln C on the logarithms of the parameters, with the fit's covariance. Without
 one, the absolute contributions are added, as if all errors conspired; but where the high frequency
