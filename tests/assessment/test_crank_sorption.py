@@ -191,4 +191,6 @@ def test_second_stage_is_left_away_and_said() -> None:
 
 
 def test_nothing_with_limits_gives_nothing() -> None:
-    assert dry_capacitance((1.0,), [Quantity(1e-10, None, None, Bound.UNDETERMINED, "F")], "") is None
+    assert (
+        dry_capacitance((1.0,), [Quantity(1e-10, None, None, Bound.UNDETERMINED, "F")], "") is None
+    )

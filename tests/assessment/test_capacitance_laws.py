@@ -1,0 +1,173 @@
+"""The capacitance laws: their limit n → 1, their check values, their limits, their choice."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable
+
+import numpy as np
+import pytest
+from hypothesis import given
+from hypothesis import strategies as st
+
+from coatgui.assessment.amounts import log_deviation
+from coatgui.assessment.capacitance import (
+    FilmLaw,
+    at_frequency,
+    brug,
+    film_capacitance,
+    hsu_mansfeld,
+    interface_capacitance,
+    law_that_fits,
+    measured_capacitance,
+    small_exponent_finding,
+)
+from coatgui.records import Bound, Fit, Spectrum
+
+Made = Callable[..., tuple[Spectrum, Fit]]
+PORES = {"R_s": 50.0, "Q_c": 2e-10, "n_c": 0.95, "R_po": 1e6, "Q_dl": 1e-7, "n_dl": 0.85}
+
+
+@given(q=st.floats(1e-12, 1e-4), r=st.floats(1e2, 1e12), f=st.floats(1e-2, 1e6))
+def test_every_law_returns_q_for_n_of_one(q: float, r: float, f: float) -> None:
+    for n, near in ((1.0, 1e-12), (1 - 1e-7, 1e-5)):
+        assert hsu_mansfeld(q, n, r) == pytest.approx(q, rel=near)
+        assert brug(q, n, 1 / r) == pytest.approx(q, rel=near)
+        assert at_frequency(q, n, f) == pytest.approx(q, rel=near)
+
+
+@given(q=st.floats(1e-11, 1e-6), n=st.floats(0.75, 1.0), r=st.floats(1e4, 1e9))
+def test_laws_agree_with_the_impedance_they_stand_for(q: float, n: float, r: float) -> None:
+    """Hsu and Mansfeld's C turns over with R where the parallel Q does; the capacitance at one
+    frequency has the same imaginary admittance there as the element."""
+    turning = (r * q) ** (-1 / n)
+    assert 1 / (r * hsu_mansfeld(q, n, r)) == pytest.approx(turning, rel=1e-9)
+    omega = 2 * math.pi * 1e4
+    admittance = q * (1j * omega) ** n
+    assert at_frequency(q, n, 1e4) == pytest.approx(admittance.imag / omega, rel=1e-9)
+
+
+def test_brug_gives_the_double_layer_of_a_distributed_electrode() -> None:
+    """Brug's C is the one that turns over with R_e ∥ R_ct where the element does."""
+    q, n, ahead, transfer = 2e-5, 0.85, 40.0, 3e4
+    conductance = 1 / ahead + 1 / transfer
+    omega = (conductance / q) ** (1 / n)
+    assert brug(q, n, conductance) == pytest.approx(conductance / omega, rel=1e-9)
+
+
+def test_case_decides_the_law(made: Made) -> None:
+    spectrum, fit = made(PORES)  # (RQ)^(-1/n)/2π is about 1 kHz: inside the window
+    assert law_that_fits(fit, spectrum) is FilmLaw.HSU_MANSFELD
+    spectrum, fit = made(PORES, bounds={"R_po": Bound.AT_LEAST})
+    assert law_that_fits(fit, spectrum) is FilmLaw.HIGH_FREQUENCY
+    spectrum, fit = made(PORES | {"R_po": 1e13})
+    assert law_that_fits(fit, spectrum) is FilmLaw.HIGH_FREQUENCY
+    spectrum, fit = made({"R_s": 50.0, "Q_c": 2e-10, "n_c": 0.97}, model="closed_film")
+    assert law_that_fits(fit, spectrum) is FilmLaw.HIGH_FREQUENCY
+
+
+@pytest.mark.parametrize("law", list(FilmLaw))
+def test_film_capacitance_is_named_and_scales_with_area(made: Made, law: FilmLaw) -> None:
+    spectrum, fit = made(PORES)
+    whole = film_capacitance(fit, spectrum, law, 1e4, None)
+    per_cm2 = film_capacitance(fit, spectrum, law, 1e4, 10.0)
+    assert whole is not None
+    assert per_cm2 is not None
+    assert (whole.unit, per_cm2.unit) == ("F", "F/cm²")
+    expected = (
+        hsu_mansfeld(2e-10, 0.95, 1e6)
+        if law is FilmLaw.HSU_MANSFELD
+        else at_frequency(2e-10, 0.95, 1e4)
+    )
+    assert whole.value == pytest.approx(expected)
+    for part in ("value", "low", "high"):
+        assert getattr(per_cm2, part) == pytest.approx(getattr(whole, part) / 10)
+    assert ("Hsu–Mansfeld" if law is FilmLaw.HSU_MANSFELD else "10000 Hz") in whole.method
+
+
+@pytest.mark.parametrize("law", list(FilmLaw))
+def test_limits_follow_the_covariance(made: Made, law: FilmLaw) -> None:
+    """Against draws from the covariance, with Q and n as strongly correlated as they are."""
+    symbols = list(PORES)
+    deviations = np.array([0.0, 0.02, 0.002, 0.05, 0.0, 0.0])
+    correlation = np.eye(6)
+    correlation[1, 2] = correlation[2, 1] = -0.97
+    correlation[2, 3] = correlation[3, 2] = 0.3
+    correlation[1, 3] = correlation[3, 1] = -0.3
+    covariance = correlation * np.outer(deviations, deviations)
+    spectrum, fit = made(PORES, covariance=covariance)
+    quantity = film_capacitance(fit, spectrum, law, 1e4, None)
+    assert quantity is not None
+    centre = np.log([PORES[s] for s in symbols])
+    draws = np.exp(np.random.default_rng(3).multivariate_normal(centre, covariance, 4000))
+    values = [
+        hsu_mansfeld(q, n, r) if law is FilmLaw.HSU_MANSFELD else at_frequency(q, n, 1e4)
+        for _, q, n, r, _, _ in draws
+    ]
+    assert log_deviation(quantity) == pytest.approx(float(np.std(np.log(values))), rel=0.06)
+
+
+def test_without_covariance_the_limits_are_wider_but_not_than_the_scatter(made: Made) -> None:
+    spectrum, fit = made(PORES, percent=2.0, scatter=0.5)
+    quantity = film_capacitance(fit, spectrum, FilmLaw.HIGH_FREQUENCY, 1e4, None)
+    assert quantity is not None
+    assert log_deviation(quantity) == pytest.approx(0.005)
+    spectrum, fit = made(PORES, percent=2.0, scatter=0.5)
+    by_resistance = film_capacitance(fit, spectrum, FilmLaw.HSU_MANSFELD, 1e4, None)
+    assert by_resistance is not None
+    deviation = log_deviation(by_resistance)
+    assert deviation is not None
+    assert deviation > 0.02 / 0.95  # more than Q alone would bring
+
+
+def test_small_exponent_is_not_converted(made: Made) -> None:
+    spectrum, fit = made(PORES | {"n_c": 0.66})
+    assert film_capacitance(fit, spectrum, FilmLaw.HIGH_FREQUENCY, 1e4, 10.0) is None
+    finding = small_exponent_finding(fit)
+    assert finding is not None
+    assert "0.66" in finding.text
+    assert small_exponent_finding(made(PORES)[1]) is None
+
+
+def test_interface_capacitance_is_brugs(made: Made) -> None:
+    _, fit = made(PORES | {"R_ct": 5e7})
+    quantity = interface_capacitance(fit, 10.0)
+    assert quantity is not None
+    expected = brug(1e-7, 0.85, 1 / (50.0 + 1e6) + 1 / 5e7) / 10
+    assert quantity.value == pytest.approx(expected)
+    assert quantity.unit == "F/cm²"
+    assert "Brug" in quantity.method
+    _, open_pores = made(PORES, bounds={"R_po": Bound.AT_LEAST})
+    assert interface_capacitance(open_pores, 10.0) is None
+
+
+def test_capacitance_straight_from_the_data(made: Made) -> None:
+    spectrum, fit = made({"R_s": 50.0, "Q_c": 1.5e-9, "n_c": 1.0}, model="closed_film")
+    quantity, note = measured_capacitance(spectrum, fit.used, fit, 1e4, 10.0)
+    assert note is None
+    assert quantity is not None
+    assert quantity.value == pytest.approx(1.5e-10, rel=1e-3)
+    assert "series" in quantity.method
+    # A lossy film: same capacitance in parallel, but flagged.
+    spectrum, fit = made({"R_s": 1.0, "Q_c": 1.5e-9, "n_c": 1.0, "R_po": 2e4})
+    quantity, note = measured_capacitance(spectrum, fit.used, fit, 1e4, 10.0)
+    assert quantity is not None
+    assert quantity.value == pytest.approx(1.5e-10, rel=1e-3)
+    assert note is not None
+    assert note.code == "capacitance_phase"
+
+
+def test_capacitance_beyond_the_measured_range_is_not_given(made: Made) -> None:
+    spectrum, fit = made(PORES, frequency_hz=np.geomspace(1e3, 1e-2, 40))
+    assert measured_capacitance(spectrum, fit.used, fit, 1e4, 10.0) == (None, None)
+    everything = np.zeros(len(spectrum), dtype=np.bool_)
+    assert measured_capacitance(spectrum, everything, fit, 1e2, 10.0) == (None, None)
+
+
+def test_open_leads_are_taken_away(made: Made) -> None:
+    film, leads = 1.5e-10, 1e-11
+    spectrum, fit = made({"Q_c": film + leads, "n_c": 1.0}, model="closed_film")
+    open_lead, _ = made({"Q_c": leads, "n_c": 1.0}, model="closed_film")
+    quantity, _ = measured_capacitance(spectrum, fit.used, fit, 1e4, None, open_lead)
+    assert quantity is not None
+    assert quantity.value == pytest.approx(film, rel=2e-3)
