@@ -69,31 +69,25 @@ def assess(
     ]
     for d, fit in zip(drawn, _fits(drawn, campaign, progress, spread, cache), strict=True):
         d.fit = fit
-    progress.at("Drawing conclusions", 0, 1)
-    draw_readings(drawn, campaign, criteria)
     by_panel: dict[str, list[Drawn]] = {panel_id: [] for panel_id in panels}
     for d in drawn:  # sorted by exposure time within a panel
         by_panel[d.reading.panel_id].append(d)
-    panel_results = tuple(
-        panel_assessment(
-            panel,
-            names,
-            draw_series(
-                by_panel[panel.panel_id],
-                panel.thickness_um,
-                settings.capacitance_frequency_hz,
-                watched_hz,
-                criteria,
-            ),
-            by_panel[panel.panel_id],
+    panel_results = []
+    for done, panel in enumerate(campaign.panels):
+        progress.at("Drawing conclusions", done, len(campaign.panels))
+        own = by_panel[panel.panel_id]
+        draw_readings(own, campaign, criteria)
+        series = draw_series(
+            own,
+            panel.thickness_um,
+            settings.capacitance_frequency_hz,
+            watched_hz,
+            criteria,
         )
-        for panel in campaign.panels
-    )
+        panel_results.append(panel_assessment(panel, names, series, own))
     in_order = tuple(
-        reading_assessment(
-            d, check, panels[d.reading.panel_id], names, settings.modulus_frequencies_hz
-        )
-        for d, check in zip(drawn, checks, strict=True)
+        reading_assessment(d, panels[d.reading.panel_id], names, settings.modulus_frequencies_hz)
+        for d in drawn
     )
     formulations = tuple(
         formulation_assessment(f.formulation_id, f.name, campaign, in_order)
@@ -107,12 +101,12 @@ def assess(
         {name: those for name, those in by_formulation.items() if any(r.counts for r in those)},
         watched_hz,
     )
-    progress.at("Drawing conclusions", 1, 1)
+    progress.at("Drawing conclusions", len(panels), len(panels))
     findings = campaign_findings(campaign)
     return Assessment(
         title=campaign.title,
         readings=in_order,
-        panels=panel_results,
+        panels=tuple(panel_results),
         formulations=formulations,
         ranking=compared.ranks,
         ranking_text=compared.text,

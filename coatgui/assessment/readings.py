@@ -44,7 +44,8 @@ def start_reading(
     """A reading with its mask: all points, less those the checks suggest and the person did not
     keep in, less those the person left out."""
     used = np.ones(len(reading.spectrum), dtype=np.bool_)
-    used[sorted(_left_out(reading, check))] = False
+    left_out = _left_out(reading, check)
+    used[sorted(left_out)] = False
     findings = list(check.findings)
     counts = True
     if check.rejected:
@@ -77,7 +78,7 @@ def start_reading(
         (t for t in (reading.temperature_c, panel.temperature_c) if t is not None),
         settings_temperature_c,
     )
-    return Drawn(reading, used, counts, temperature, panel.area_cm2, findings)
+    return Drawn(reading, used, left_out, counts, temperature, panel.area_cm2, findings)
 
 
 def _left_out(reading: Reading, check: Check) -> dict[int, str]:
@@ -150,13 +151,11 @@ def _fit_findings(fit: Fit) -> list[Finding]:
 
 def reading_assessment(
     d: Drawn,
-    check: Check,
     panel: Panel,
     names: Mapping[str, str],
     modulus_frequencies_hz: Sequence[float],
 ) -> ReadingAssessment:
     reading = d.reading
-    left_out = _left_out(reading, check)
     return ReadingAssessment(
         reading_id=reading.reading_id,
         panel_id=panel.panel_id,
@@ -168,8 +167,8 @@ def reading_assessment(
         points_read=len(reading.spectrum),
         points_used=int(d.used.sum()),
         left_out=tuple(
-            LeftOutPoint(float(reading.spectrum.frequency_hz[place]), left_out[place])
-            for place in sorted(left_out)
+            LeftOutPoint(float(reading.spectrum.frequency_hz[place]), d.left_out[place])
+            for place in sorted(d.left_out)
         ),
         findings=tuple(d.findings),
         counts=d.counts,

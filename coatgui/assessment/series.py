@@ -6,7 +6,7 @@ limit was crossed. Only readings that count take part.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 from coatgui.assessment.capacitance import (
@@ -23,10 +23,14 @@ from coatgui.assessment.events import (
     stage_events,
 )
 from coatgui.assessment.sorption import Sorption, diffusion_coefficient, dry_capacitance
-from coatgui.assessment.water import apparent_uptake, dry_out_finding, uptake_finding
+from coatgui.assessment.water import (
+    apparent_uptake,
+    dry_out_finding,
+    temperature_finding,
+    uptake_finding,
+)
 from coatgui.records import (
     BoolArray,
-    Bound,
     Criterion,
     Event,
     Finding,
@@ -35,16 +39,19 @@ from coatgui.records import (
     Modulus,
     Quantity,
     Reading,
+    Severity,
     WaterUptake,
 )
 
 
 @dataclass(slots=True)
 class Drawn:
-    """What has been drawn from one reading so far; `assess` fills it step by step."""
+    """What has been drawn from one reading so far; `assess` fills it step by step. `left_out` maps
+    the place of each point left out to the reason."""
 
     reading: Reading
     used: BoolArray
+    left_out: Mapping[int, str]
     counts: bool
     temperature_c: float
     area_cm2: float | None
@@ -68,6 +75,7 @@ class SeriesResult:
     diffusion_coefficient: Quantity | None
     events: tuple[Event, ...]
     limit_crossings: tuple[LimitCrossing, ...]
+    findings: tuple[Finding, ...]
 
 
 def panel_law(series: Sequence[Drawn]) -> FilmLaw:
@@ -119,7 +127,7 @@ def draw_series(
             )
     counting = [d for d in series if d.counts]
     if not counting:
-        return SeriesResult(None, None, (), ())
+        return SeriesResult(None, None, (), (), ())
     exposure_h = [d.reading.exposure_h for d in counting]
     basis, basis_name = uptake_basis(counting, capacitance_frequency_hz)
     dry_out = drying(exposure_h, basis)
@@ -132,14 +140,26 @@ def draw_series(
         *dry_out.events,
         *([rebound] if rebound else []),
     ]
+    crossings = [
+        limit_crossing(c, exposure_h, [d.modulus_at(c.frequency_hz) for d in counting])
+        for c in (criteria if counting[0].area_cm2 is not None else ())
+    ]
     return SeriesResult(
         None if sorption is None else sorption.dry_capacitance,
         None if sorption is None else diffusion_coefficient(sorption, thickness_um),
         tuple(sorted(events, key=lambda event: event.by_h or 0.0)),
-        tuple(
-            limit_crossing(c, exposure_h, [d.modulus_at(c.frequency_hz) for d in counting])
-            for c in (criteria if counting[0].area_cm2 is not None else ())
-        ),
+        tuple(crossings),
+        () if sorption is None else (_sorption_finding(sorption),),
+    )
+
+
+def _sorption_finding(sorption: Sorption) -> Finding:
+    followed = sorption.misfit is not None
+    return Finding(
+        "sorption_fickian" if followed else "dry_capacitance_taken",
+        Severity.NOTE,
+        sorption.text,
+        evidence=(("misfit", sorption.misfit),) if sorption.misfit is not None else (),
     )
 
 
@@ -170,8 +190,9 @@ def _water(
             continue
         uptake = apparent_uptake(quantity, sorption.dry_capacitance, d.temperature_c)
         if uptake is None:
+            d.findings.append(temperature_finding(d.temperature_c))
             continue
         d.water_uptake = WaterUptake(uptake, sorption.reference_h)
         finding = uptake_finding(uptake)
-        if finding is not None and (fallen is None or uptake.bound is Bound.TWO_SIDED):
+        if finding is not None:
             d.findings.append(finding)

@@ -67,7 +67,7 @@ def panel_assessment(
         thickness_um=panel.thickness_um,
         dry_capacitance=series.dry_capacitance,
         diffusion_coefficient=series.diffusion_coefficient,
-        findings=tuple(findings),
+        findings=(*findings, *series.findings),
         events=series.events,
         limit_crossings=series.limit_crossings,
     )

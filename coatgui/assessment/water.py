@@ -43,13 +43,15 @@ def apparent_uptake(
 
     The limits of the two capacitances are taken as independent and added in squares. Where the dry
     capacitance is only known from above (AT_MOST: it is that of a film already wet), the uptake is
-    at least what comes out. None where a capacitance has no value or the temperature is outside
-    0–100 °C.
+    at least what comes out. None where the temperature is outside 0–100 °C. Raises ValueError where
+    a capacitance lacks its value, or the limit that is needed.
     """
-    if not capacitance.value or not dry_capacitance.value or not capacitance.low:
-        return None
+    if not (
+        capacitance.value and capacitance.low and dry_capacitance.value and dry_capacitance.high
+    ):
+        raise ValueError("Water uptake needs two capacitances with their limits.")
     permittivity = float(water_permittivity(temperature_c))
-    if math.isnan(permittivity) or not dry_capacitance.high:
+    if math.isnan(permittivity):
         return None
     percent = 100 / math.log(permittivity)
     value = percent * math.log(capacitance.value / dry_capacitance.value)
@@ -92,6 +94,18 @@ def uptake_finding(uptake: Quantity) -> Finding | None:
         "Brasher–Kingsbury have failed (water not spread evenly, swelling, conducting pores, or a "
         "wrong dry capacitance). The number is kept, but it does not measure water.",
         evidence=(("volume_percent", uptake.value), ("limit_percent", most)),
+    )
+
+
+def temperature_finding(temperature_c: float) -> Finding:
+    """A note: at this temperature the permittivity of water is not known, so no uptake is given."""
+    law = table("water")["permittivity"]
+    return Finding(
+        "temperature_outside_law",
+        Severity.NOTE,
+        f"At {temperature_c:g} °C no water uptake is given: the permittivity of water is known from "
+        f"{law['from_c']:g} to {law['to_c']:g} °C. Check the temperature of this reading.",
+        evidence=(("temperature_c", temperature_c),),
     )
 
 

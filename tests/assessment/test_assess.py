@@ -314,7 +314,11 @@ def test_missing_facts_are_found(known: Known) -> None:
         refused=(Refusal("odd.csv", "It holds no numbers."),),
     )
     result = assess(campaign)
-    assert {f.code for f in result.panels[0].findings} == {"no_thickness", "temperature_assumed"}
+    assert {f.code for f in result.panels[0].findings} == {
+        "no_thickness",
+        "temperature_assumed",
+        "sorption_fickian",
+    }
     assert result.panels[0].diffusion_coefficient is None
     assert result.panels[0].dry_capacitance is not None
     assert {f.code for f in result.findings} == {"no_open_lead", "default_criterion"}
@@ -330,6 +334,13 @@ def test_reading_temperature_comes_before_the_panels(known: Known) -> None:
     assert at_25.water_uptake is not None
     assert "40 °C" in at_40.water_uptake.quantity.method
     assert "25 °C" in at_25.water_uptake.quantity.method
+
+
+def test_temperature_beyond_the_law_gives_no_uptake_and_says_so(known: Known) -> None:
+    reading = assess(_with(_campaign(known), "K1@24", temperature_c=-5.0)).reading("K1@24")
+    assert reading is not None
+    assert reading.water_uptake is None
+    assert "temperature_outside_law" in {f.code for f in reading.findings}
 
 
 def test_drying_is_a_finding_and_an_event_and_not_part_of_the_dry_value(known: Known) -> None:
