@@ -26,10 +26,14 @@ class Progress:
         self._report = report
         self._cancelled = cancelled
 
-    def at(self, stage: str, done: int, total: int) -> None:
-        """Say that `done` of `total` steps of `stage` are done. Raises Cancelled."""
+    def check(self) -> None:
+        """Only ask whether the work is still wanted. Raises Cancelled."""
         if self._cancelled is not None and self._cancelled():
             raise Cancelled
+
+    def at(self, stage: str, done: int, total: int) -> None:
+        """Say that `done` of `total` steps of `stage` are done. Raises Cancelled."""
+        self.check()
         if self._report is not None:
             self._report(stage, done, total)
 
