@@ -71,16 +71,14 @@ class Sorption:
     """What the early readings of a panel say about its dry film.
 
     `dry_capacitance`: two-sided where extrapolated or measured at 0 h, AT_MOST where the first
-    reading had to serve; `reference_h` its exposure time. `rate_per_h` = D/L², in 1/h, and
-    `final_logarithm` = ln(C_∞/C_0) are None where Fick's law does not fit or does not hold them.
-    `misfit` is the root mean square of the weighted residuals (1 = the readings' own scatter), over
+    reading had to serve; `reference_h` its exposure time. `rate_per_h` = D/L², in 1/h, is None
+    where Fick's law does not fit or the readings do not hold it from both sides. `misfit` is the root mean square of the weighted residuals (1 = the readings' own scatter), over
     the first `followed` readings.
     """
 
     dry_capacitance: Quantity
     reference_h: float
     rate_per_h: Quantity | None = None
-    final_logarithm: float | None = None
     misfit: float | None = None
     followed: int = 0
     text: str = ""
@@ -182,7 +180,7 @@ def dry_capacitance(
         if time[count - 1] <= time[0]:
             break
         fit = _fit(time[:count], y[:count], deviation[:count])
-        if fit.misfit > worst:
+        if fit.misfit > worst or fit.b < 0:
             why = "the early readings do not follow Fick's law"
             continue
         if not fit.closed or fit.before_saturation < early:
@@ -202,15 +200,13 @@ def _extrapolated(fit: _FickFit, count: int, total: int, unit: str, method: str)
         f"extrapolated to 0 h along Fickian sorption through the first {count} readings; {method}",
     )
     rate = None
-    final = None
-    if fit.k_low is not None and fit.k_high is not None and fit.b > 0:
+    if fit.k_low is not None and fit.k_high is not None:
         rate = Quantity(fit.k, fit.k_low, fit.k_high, Bound.TWO_SIDED, "1/h", "Fickian sorption")
-        final = fit.b
     text = (
         f"Fickian sorption describes the first {count} of {total} readings, with residuals "
         f"{fit.misfit:.1f} times their own scatter."
     )
-    return Sorption(dry, 0.0, rate, final, fit.misfit, count, text)
+    return Sorption(dry, 0.0, rate, fit.misfit, count, text)
 
 
 def _first_reading(

@@ -103,8 +103,8 @@ def temperature_finding(temperature_c: float) -> Finding:
     return Finding(
         "temperature_outside_law",
         Severity.NOTE,
-        f"At {temperature_c:g} °C no water uptake is given: the permittivity of water is known from "
-        f"{law['from_c']:g} to {law['to_c']:g} °C. Check the temperature of this reading.",
+        f"At {temperature_c:g} °C no water uptake is given: the permittivity of water is known "
+        f"from {law['from_c']:g} to {law['to_c']:g} °C. Check the temperature of this reading.",
         evidence=(("temperature_c", temperature_c),),
     )
 
