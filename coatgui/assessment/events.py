@@ -34,16 +34,15 @@ def _event(exposure_h: Sequence[float], place: int, code: str, what: str) -> Eve
 def stage_events(
     exposure_h: Sequence[float],
     fits: Sequence[Fit | None],
-    pore_resistance: Sequence[Quantity | None],
+    conducting: Sequence[bool],
 ) -> list[Event]:
-    """The pores begin to conduct: the first two-sided pore resistance. The interface begins to
-    react: the first model with a charge transfer or a diffusion tail that the data hold."""
+    """The pores begin to conduct: the first reading for which `conducting` says so. The interface
+    begins to react: the first model with a charge transfer or a diffusion tail that the data hold.
+    """
     events = []
-    conducting = next(
-        (i for i, r in enumerate(pore_resistance) if r and r.bound is Bound.TWO_SIDED), None
-    )
-    if conducting is not None:
-        events.append(_event(exposure_h, conducting, "pores_conducting", "The pores conduct,"))
+    open_pores = next((i for i, opened in enumerate(conducting) if opened), None)
+    if open_pores is not None:
+        events.append(_event(exposure_h, open_pores, "pores_conducting", "The pores conduct,"))
     reacting = next((i for i, fit in enumerate(fits) if fit and _reacts(fit)), None)
     if reacting is not None:
         events.append(_event(exposure_h, reacting, "interface_reacting", "The interface reacts,"))

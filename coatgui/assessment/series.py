@@ -31,6 +31,7 @@ from coatgui.assessment.water import (
 )
 from coatgui.records import (
     BoolArray,
+    Bound,
     Criterion,
     Event,
     Finding,
@@ -136,7 +137,7 @@ def draw_series(
     moduli = [d.modulus_at(modulus_frequency_hz) for d in counting]
     rebound = rebound_event(exposure_h, moduli)
     events = [
-        *stage_events(exposure_h, [d.fit for d in counting], [d.pore_resistance for d in counting]),
+        *stage_events(exposure_h, [d.fit for d in counting], [_pores_conduct(d) for d in counting]),
         *dry_out.events,
         *([rebound] if rebound else []),
     ]
@@ -150,6 +151,17 @@ def draw_series(
         tuple(sorted(events, key=lambda event: event.by_h or 0.0)),
         tuple(crossings),
         () if sorption is None else (_sorption_finding(sorption),),
+    )
+
+
+def _pores_conduct(d: Drawn) -> bool:
+    """Whether the pores carry more than the film's capacitance at the low end of the window, and by
+    a resistance that the data hold from both sides, leads included."""
+    return (
+        d.fit is not None
+        and d.pore_resistance is not None
+        and d.pore_resistance.bound is Bound.TWO_SIDED
+        and law_that_fits(d.fit, d.reading.spectrum) is FilmLaw.HSU_MANSFELD
     )
 
 

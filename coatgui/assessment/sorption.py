@@ -72,8 +72,9 @@ class Sorption:
 
     `dry_capacitance`: two-sided where extrapolated or measured at 0 h, AT_MOST where the first
     reading had to serve; `reference_h` its exposure time. `rate_per_h` = D/L², in 1/h, is None
-    where Fick's law does not fit or the readings do not hold it from both sides. `misfit` is the root mean square of the weighted residuals (1 = the readings' own scatter), over
-    the first `followed` readings.
+    where Fick's law does not fit or the readings do not hold it from both sides. `misfit` is the
+    root mean square of the weighted residuals (1 = the readings' own scatter), over the first
+    `followed` readings.
     """
 
     dry_capacitance: Quantity

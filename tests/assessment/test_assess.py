@@ -103,15 +103,15 @@ def _film(hours: float, dry: float = 1e-9, ohm: float = 1e8) -> dict[str, float]
     return {"R_s": 50.0, "Q_c": wet, "n_c": 1.0, "R_po": ohm}
 
 
-def _campaign(known: Known, area_cm2: float | None = AREA_CM2) -> Campaign:
+def _campaign(known: Known, area_cm2: float | None = AREA_CM2, ohm: float = 1e9) -> Campaign:
     """Two formulations of two panels; M is a thousand times less tight than K."""
     panels, readings = [], []
-    for formulation, ohm in (("K", 1e9), ("M", 1e5)):
+    for formulation, tightness in (("K", ohm), ("M", 1e5)):
         for number in (1, 2):
             name = f"{formulation}{number}"
             panels.append(Panel(name, name, formulation, area_cm2, 80.0, temperature_c=25.0))
             for hours in HOURS:
-                spectrum = known.spectrum(_film(hours, ohm=ohm * (1 + 0.1 * number)))
+                spectrum = known.spectrum(_film(hours, ohm=tightness * (1 + 0.1 * number)))
                 source = Source(f"{name}_{hours:g}h.csv", "00")
                 readings.append(Reading(f"{name}@{hours:g}", name, hours, spectrum, source))
     return Campaign(
@@ -183,6 +183,9 @@ def test_panels_carry_what_their_series_says(known: Known) -> None:
     (crossing,) = panel.limit_crossings
     assert (crossing.after_h, crossing.by_h) == (None, 1.0)
     assert [e.code for e in panel.events] == ["pores_conducting"]
+    # A film so tight that its capacitance carries the current all the way down has closed pores.
+    tight = assess(_campaign(known, ohm=1e12))
+    assert next(p for p in tight.panels if p.panel == "K1").events == ()
 
 
 def test_mask_is_checks_less_kept_in_plus_left_out(known: Known) -> None:

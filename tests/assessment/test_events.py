@@ -77,20 +77,18 @@ def test_crossing_within_the_limits_and_a_return_are_said() -> None:
 
 def test_stages_begin_at_the_first_reading_that_shows_them(made: Made) -> None:
     fits = [made(PORES)[1], made(PORES)[1], made(PORES | INTERFACE)[1]]
-    open_pores = Quantity(1e9, 1e9, None, Bound.AT_LEAST, "Ω cm²")
-    held = Quantity(1e7, 9e6, 1.1e7, Bound.TWO_SIDED, "Ω cm²")
-    events = {e.code: e for e in stage_events(HOURS[:3], fits, [open_pores, held, held])}
+    events = {e.code: e for e in stage_events(HOURS[:3], fits, [False, True, True])}
     assert (events["pores_conducting"].after_h, events["pores_conducting"].by_h) == (1.0, 24.0)
     assert (events["interface_reacting"].after_h, events["interface_reacting"].by_h) == (
         24.0,
         168.0,
     )
-    assert stage_events(HOURS[:1], [None], [None]) == []
+    assert stage_events(HOURS[:1], [None], [False]) == []
 
 
 def test_charge_transfer_that_the_data_leave_open_is_no_reaction(made: Made) -> None:
     fit = made(PORES | INTERFACE, bounds={"R_ct": Bound.AT_LEAST})[1]
-    assert stage_events(HOURS[:1], [fit], [None]) == []
+    assert stage_events(HOURS[:1], [fit], [False]) == []
 
 
 def test_drying_and_wetting_again() -> None:
