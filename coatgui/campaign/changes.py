@@ -90,7 +90,7 @@ def from_text(text: str) -> tuple[RowChange, ...]:
             RowChange(_text(c["table"]), _text(c["key"]), _row(c["before"]), _row(c["after"]))
             for c in json.loads(text)
         )
-    except (KeyError, TypeError) as problem:
+    except (KeyError, TypeError, RecursionError) as problem:
         raise ValueError("This is not a list of row changes.") from problem
 
 
@@ -101,6 +101,8 @@ def _text(value: Any) -> str:
 
 
 def _row(value: Any) -> Row | None:
-    if value is not None and not isinstance(value, dict):
+    if value is None:
+        return None
+    if not (isinstance(value, dict) and all(isinstance(v, Cell) for v in value.values())):
         raise TypeError(value)
     return value

@@ -146,7 +146,7 @@ class CampaignFile:
         of_entry: int | None,
         name: str,
         changes: Iterable[RowChange],
-        spectra: Iterable[Spectrum] = (),
+        spectra: tuple[Spectrum, ...] = (),
         raw: Mapping[str, bytes] | None = None,
     ) -> Change:
         """The one door for every change."""
@@ -157,7 +157,7 @@ class CampaignFile:
                 _keep_raw(self._connection, raw or {})
                 done = tuple(_change_row(self._connection, change) for change in changes)
                 entry_id = self._trail.write(action, of_entry, name, done)
-                touched = self._snapshot.read_again((c.table, c.key) for c in done)
+                touched = self._snapshot.read_again(((c.table, c.key) for c in done), spectra)
             self._trail.adopt(entry_id, action, of_entry, name)
             self._snapshot.adopt(touched)
             return Change(frozenset(change.table for change in done), name)

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import hashlib
 import json
+import math
 from collections.abc import Iterable, Mapping
 from functools import lru_cache
 from typing import Any
@@ -175,7 +176,9 @@ def _float(value: float | None) -> float | None:
 
 
 # ---------------------------------------------------------------------------------------------
-# Rows to records. They raise ValueError, TypeError or KeyError where a row is not as we write it.
+# Rows to records. They raise one of these where a row is not as we write it.
+
+UNREADABLE = (ValueError, TypeError, KeyError, OverflowError, RecursionError)
 
 
 def settings_of(row: Row) -> Settings:
@@ -327,6 +330,8 @@ def _string(value: Any) -> str:
 def _number(value: Any) -> float:
     if not isinstance(value, int | float) or isinstance(value, bool):
         raise TypeError("A number was expected.")
+    if not math.isfinite(value):
+        raise ValueError("A finite number was expected.")
     return float(value)
 
 

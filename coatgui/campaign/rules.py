@@ -143,9 +143,10 @@ def _refuse_wrong_types(record: Any) -> None:
     for field in fields(record):
         value = getattr(record, field.name)
         words = field.name.replace("_", " ")
-        if field.type == "str" and not isinstance(value, str):
+        kind = getattr(field.type, "__name__", field.type)  # "str", "float", "float | None", …
+        if kind == "str" and not isinstance(value, str):
             raise OperationRefused(f"The {words} must be a text, not {value!r}.")
-        if field.type == "float" or (field.type == "float | None" and value is not None):
+        if kind == "float" or (kind == "float | None" and value is not None):
             _finite(value, f"The {words}")
 
 

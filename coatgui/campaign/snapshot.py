@@ -14,7 +14,7 @@ from typing import Any
 from coatgui.campaign import rows
 from coatgui.campaign.errors import CampaignFileError
 from coatgui.campaign.schema import KEYS, ORDERED
-from coatgui.records import Campaign, Reading, Spectrum
+from coatgui.records import Campaign, Spectrum
 
 _IN_USE = "SELECT spectrum_id FROM readings UNION SELECT spectrum_id FROM open_lead"
 
@@ -49,13 +49,19 @@ class Snapshot:
         content.update((table, self._in_order(table)) for table in ORDERED)
         self.campaign = Campaign(**content)
 
-    def read_again(self, touched: Iterable[tuple[str, str]]) -> Touched:
-        """Read the named rows (table, key) from the file, without changing the snapshot."""
+    def read_again(
+        self, touched: Iterable[tuple[str, str]], spectra: Iterable[Spectrum] = ()
+    ) -> Touched:
+        """Read the named rows (table, key) from the file, without changing the snapshot. `spectra`
+        are those just written, which need not be parsed."""
+        at_hand = {spectrum.content_key(): spectrum for spectrum in spectra}
+        lead = self.campaign.open_lead
+        if lead is not None:
+            at_hand[lead.content_key()] = lead
         again = Touched()
         for table, key in touched:
             if table not in ORDERED:
-                lead = self.campaign.open_lead
-                again.facts.update(self._facts({} if lead is None else {lead.content_key(): lead}))
+                again.facts.update(self._facts(at_hand))
                 continue
             row = self._connection.execute(
                 f"SELECT * FROM {table} WHERE {KEYS[table]} = ?", (key,)
@@ -63,9 +69,9 @@ class Snapshot:
             if row is None:
                 again.held[table, key] = None
                 continue
-            _, was = self._held[table].get(key, (0, None))
-            spectra = self._spectra(row, was) if table == "readings" else {}
-            again.held[table, key] = (row["place"], record_of(table, row, spectra))
+            if table == "readings" and row["spectrum_id"] not in at_hand:
+                at_hand.update(self._spectrum(row["spectrum_id"], key))
+            again.held[table, key] = (row["place"], record_of(table, row, at_hand))
         return again
 
     def adopt(self, touched: Touched) -> None:
@@ -84,12 +90,12 @@ class Snapshot:
         places = sorted(self._held[table].values(), key=lambda held: held[0])
         return tuple(record for _, record in places)
 
-    def _spectra(self, row: sqlite3.Row, was: Reading | None = None) -> Mapping[str, Spectrum]:
-        """The spectrum that a row names; not parsed again where the record at hand has it."""
-        wanted = row["spectrum_id"]
-        if was is not None and was.spectrum.content_key() == wanted:
-            return {wanted: was.spectrum}
-        return read_spectra(self._connection, wanted)
+    def _spectrum(self, spectrum_id: str, reading_id: str) -> Mapping[str, Spectrum]:
+        """A spectrum by its id; that of the reading as it was, where it is the same."""
+        _, was = self._held["readings"].get(reading_id, (0, None))
+        if was is not None and was.spectrum.content_key() == spectrum_id:
+            return {spectrum_id: was.spectrum}
+        return read_spectra(self._connection, spectrum_id)
 
     def _facts(self, spectra: Mapping[str, Spectrum]) -> dict[str, Any]:
         """The fields of `Campaign` that come from the tables of one row each."""
@@ -102,7 +108,8 @@ class Snapshot:
         try:
             if lead is not None:
                 wanted = lead["spectrum_id"]
-                open_lead = spectra.get(wanted) or self._spectra(lead)[wanted]
+                found = spectra if wanted in spectra else read_spectra(self._connection, wanted)
+                open_lead = found[wanted]
                 source = rows.source_of(lead)
             return {
                 "campaign_id": campaign["campaign_id"],
@@ -112,7 +119,7 @@ class Snapshot:
                 "open_lead": open_lead,
                 "open_lead_source": source,
             }
-        except (ValueError, TypeError, KeyError) as problem:
+        except rows.UNREADABLE as problem:
             raise CampaignFileError(
                 "This campaign file is damaged: its settings or open-lead run cannot be read."
             ) from problem
@@ -136,7 +143,7 @@ def record_of(table: str, row: Any, spectra: Mapping[str, Spectrum]) -> Any:
         if table == "readings":
             return rows.reading_of(row, spectra)
         return rows.refusal_of(row)
-    except (ValueError, TypeError, KeyError) as problem:
+    except rows.UNREADABLE as problem:
         raise CampaignFileError(
             f"This campaign file is damaged: row {row[KEYS[table]]} of {table} cannot be read."
         ) from problem
@@ -154,7 +161,7 @@ def read_spectra(
         found = connection.execute(f"{columns} WHERE spectrum_id IN ({_IN_USE})")
     try:
         return rows.spectra_of(found)
-    except (ValueError, TypeError, OverflowError) as problem:
+    except rows.UNREADABLE as problem:
         which = "one of its spectra" if spectrum_id is None else f"spectrum {spectrum_id}"
         raise CampaignFileError(
             f"This campaign file is damaged: {which} cannot be read."

@@ -40,7 +40,13 @@ def test_a_sound_file(file: CampaignFile) -> None:
         ("UPDATE open_lead SET dialect = '7'", "open-lead run cannot be read"),
         ("DELETE FROM settings", "settings are missing"),
         ("INSERT INTO campaign VALUES ('c2', 'second', '')", "more than one row"),
+        ("UPDATE settings SET thresholds = '[[\"x\", NaN]]'", "settings or open-lead run cannot"),
         ("UPDATE history SET changes = '[{}]'", "Line 1 of the history"),
+        (
+            "UPDATE history SET changes = "
+            '\'[{"table": "panels", "key": "p1", "before": [], "after": null}]\'',
+            "Line 1 of the history",
+        ),
         ("INSERT INTO history VALUES (2, 'redo', 1, 'n', 'w', 't', '[]')", "contradicts itself"),
         ("CREATE TRIGGER t AFTER DELETE ON panels BEGIN SELECT 1; END", "trigger 't'"),
         ("CREATE TABLE notes (x)", "table 'notes' that coatgui does not make"),
