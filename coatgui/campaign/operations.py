@@ -324,7 +324,8 @@ def _with(record: Record, fields: dict[str, Any], fixed: tuple[str, ...]) -> tup
         if name not in known:
             raise OperationRefused(f"'{name}' cannot be changed here.")
     changed = replace(record, **{name: _tidy(name, value) for name, value in fields.items()})
-    return changed, _listed([_WORDS[name] for name in fields])
+    differing = [name for name in fields if getattr(changed, name) != getattr(record, name)]
+    return changed, _listed([_WORDS.get(name, name.replace("_", " ")) for name in differing])
 
 
 def _tidy(name: str, value: Any) -> Any:

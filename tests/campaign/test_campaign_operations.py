@@ -112,7 +112,13 @@ CASES: dict[
     ),
     "edit_panel": (
         lambda c: operations.edit_panel(
-            c, "p1", name="A 1", area_cm2=None, thickness_um=50, notes=[["Lot", "8"], ["b", "c"]]
+            c,
+            "p1",
+            name="A 1",
+            area_cm2=None,
+            thickness_um=50,
+            substrate="steel",
+            notes=[["Lot", "8"], ["b", "c"]],
         ),
         lambda c: with_panel(
             c, "p1", name="A 1", area_cm2=None, thickness_um=50.0, notes=(("Lot", "8"), ("b", "c"))
