@@ -1,0 +1,121 @@
+"""Fit one model to many spectra: several starts, the best kept, neighbours asked once more."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from coatgui.circuits import CoatingModel
+from coatgui.circuits.elements import ComplexArray
+from coatgui.fitting.objective import ImpedanceObjective
+from coatgui.fitting.solver import (
+    BoolArray,
+    FloatArray,
+    IndexArray,
+    Solution,
+    Tolerance,
+    minimise,
+)
+from coatgui.fitting.starts import best_starts, candidates
+
+_STARTS = 3
+_APPROACH = Tolerance(cosine=1e-2, reduction=1e-3, step=2.0, iterations=25)
+
+
+@dataclass(frozen=True)
+class Batch:
+    """Spectra that share a grid. `frequency_hz` (N,), `impedance` (B, N), `used` (B, N)."""
+
+    frequency_hz: FloatArray
+    impedance: ComplexArray
+    used: BoolArray
+
+    def objective(self, model: CoatingModel, *, logarithmic: bool = False) -> ImpedanceObjective:
+        return ImpedanceObjective(
+            model, self.frequency_hz, self.impedance, self.used, logarithmic=logarithmic
+        )
+
+
+def _best_of(solution: Solution, rows: IndexArray, size: int) -> Solution:
+    """Of several solutions per row, the one of least cost."""
+    order = np.lexsort((solution.cost, rows))
+    _, first = np.unique(rows[order], return_index=True)
+    chosen = order[first]
+    assert chosen.size == size
+    spent = np.bincount(rows, weights=solution.iterations, minlength=size).astype(np.int64)
+    return Solution(
+        solution.theta[chosen],
+        solution.cost[chosen],
+        solution.normal[chosen],
+        solution.gradient[chosen],
+        spent,
+        solution.status[chosen],
+        solution.at_bound[chosen],
+    )
+
+
+def better_of(first: Solution, second: Solution) -> Solution:
+    """Row by row the solution of smaller cost."""
+    take = second.cost < first.cost
+
+    def pick(one: FloatArray, other: FloatArray) -> FloatArray:
+        return np.where(take.reshape((-1,) + (1,) * (one.ndim - 1)), other, one)
+
+    return Solution(
+        pick(first.theta, second.theta),
+        pick(first.cost, second.cost),
+        pick(first.normal, second.normal),
+        pick(first.gradient, second.gradient),
+        first.iterations + second.iterations,
+        np.where(take, second.status, first.status),
+        np.where(take[:, None], second.at_bound, first.at_bound),
+    )
+
+
+def search(model: CoatingModel, batch: Batch, check: Callable[[], None] | None = None) -> Solution:
+    """The best fit of `model` to each spectrum of the batch, from the spectrum's own starts."""
+    size = batch.impedance.shape[0]
+    low, high = model.bounds
+    approach = batch.objective(model, logarithmic=True)
+    offered = candidates(model, batch.frequency_hz, batch.impedance, batch.used)
+    starts, rows = best_starts(approach, offered, _STARTS)
+    near = minimise(approach, starts, low, high, tolerance=_APPROACH, rows=rows, check=check)
+    # The logarithm may have led a start nowhere that can be evaluated; its start is as good then.
+    theta = np.where(np.isfinite(near.cost)[:, None], near.theta, starts)
+    found = minimise(batch.objective(model), theta, low, high, rows=rows, check=check)
+    return _best_of(found, rows, size)
+
+
+def ask_neighbours(
+    model: CoatingModel,
+    batch: Batch,
+    found: Solution,
+    neighbours: Sequence[FloatArray | None],
+    check: Callable[[], None] | None = None,
+) -> Solution:
+    """Start once more from other solutions of the same model, (K, P) for each row or None, and keep
+    what is better."""
+    rows = [i for i, offer in enumerate(neighbours) if offer is not None and len(offer)]
+    if not rows:
+        return found
+    low, high = model.bounds
+    objective = batch.objective(model)
+    offers = [offer for offer in neighbours if offer is not None and len(offer)]
+    place = np.repeat(np.array(rows, dtype=np.intp), [len(offer) for offer in offers])
+    again = minimise(objective, np.concatenate(offers), low, high, rows=place, check=check)
+    best = _best_of(again, np.searchsorted(np.array(rows), place), len(rows))
+    full = Solution(
+        found.theta.copy(),
+        np.full_like(found.cost, np.inf),
+        found.normal.copy(),
+        found.gradient.copy(),
+        np.zeros_like(found.iterations),
+        found.status.copy(),
+        found.at_bound.copy(),
+    )
+    full.theta[rows], full.cost[rows], full.normal[rows] = best.theta, best.cost, best.normal
+    full.gradient[rows], full.iterations[rows] = best.gradient, best.iterations
+    full.status[rows], full.at_bound[rows] = best.status, best.at_bound
+    return better_of(found, full)

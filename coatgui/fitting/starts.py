@@ -1,0 +1,125 @@
+"""Starting values from the spectrum itself.
+
+A two-layer panel seen from the fast end: the film's capacitance is what the highest frequencies
+show, the pore resistance is near |Z| where one arc gives way to the next, the interface's
+capacitance is what the slow end shows, and the resistances add up to about |Z| at the slowest
+point or are far above it. Where the arcs meet is not known, so several places are tried: every
+combination becomes a candidate, the logarithmic residual ranks them, and the best few are fitted.
+The logarithmic residual is used because the ordinary one saturates at 1 where a model is far too
+small, and so cannot tell bad from worse.
+"""
+
+from __future__ import annotations
+
+from itertools import product
+
+import numpy as np
+
+from coatgui.circuits import CoatingModel, Kind
+from coatgui.circuits.elements import ComplexArray
+from coatgui.fitting.objective import ImpedanceObjective
+from coatgui.fitting.solver import BoolArray, FloatArray, IndexArray
+
+_SPLITS = (0.15, 0.3, 0.45, 0.6, 0.75)
+_SLOW_FACTORS = (1.0, 8.0)
+_FAST_CAPACITANCES = ("parallel", "series")
+_FILM_EXPONENTS = (0.96, 0.82)
+
+
+class _Spectra:
+    """Outlines of B spectra on one grid: smoothed over points left out by nearest used point."""
+
+    def __init__(self, frequency_hz: FloatArray, impedance: ComplexArray, used: BoolArray) -> None:
+        self.omega = 2.0 * np.pi * frequency_hz
+        self.used = used
+        self.impedance = impedance
+        self.count = used.sum(axis=1)
+        # Places of the used points, in order, padded at the end by the last of them.
+        self.order = np.argsort(~used, axis=1, kind="stable")
+
+    def at(self, share: float) -> tuple[ComplexArray, FloatArray]:
+        """Impedance and angular frequency at a share of the used points, 0 the fastest."""
+        place = np.rint(share * (self.count - 1)).astype(np.intp)
+        index = np.take_along_axis(self.order, place[:, None], axis=1)
+        return np.take_along_axis(self.impedance, index, axis=1)[:, 0], self.omega[index[:, 0]]
+
+    def capacitance(self, share: float, form: str) -> tuple[FloatArray, FloatArray]:
+        """Capacitance in F as the series or parallel form reads it there, and ω."""
+        z, omega = self.at(share)
+        modulus = np.abs(z)
+        reactance = np.maximum(np.abs(z.imag), 1e-3 * modulus)
+        if form == "series":
+            return 1.0 / (omega * reactance), omega
+        return reactance / (omega * modulus**2), omega
+
+
+def _values(
+    model: CoatingModel, outline: _Spectra, split: float, slow: float, fast: str, film_n: float
+) -> FloatArray:
+    """One candidate (B, P) of physical values."""
+    fastest, _ = outline.at(0.0)
+    slowest, omega_slow = outline.at(1.0)
+    middle, _ = outline.at(split)
+    layers = len(model.layers)
+    columns = []
+    for spec in model.parameters:
+        inner = spec.layer == layers and (layers > 1 or model.layers[0].role == "interface")
+        exponent = 0.85 if inner else film_n
+        if inner:
+            capacitance, omega = outline.capacitance(0.9 if layers > 1 else split, "series")
+        else:
+            capacitance, omega = outline.capacitance(0.05, fast)
+        if spec.kind is Kind.RESISTANCE:
+            if spec.layer == 0:
+                value = np.abs(fastest.real) * (0.9 if fast == "series" else 0.3)
+            elif spec.layer == layers:
+                value = np.abs(slowest) * slow
+            else:
+                value = np.abs(middle)
+        elif spec.kind is Kind.CAPACITANCE:
+            value = capacitance
+        elif spec.kind is Kind.CONSTANT_PHASE:
+            value = capacitance * omega ** (1.0 - exponent)
+        elif spec.kind is Kind.EXPONENT:
+            value = np.full(capacitance.shape, exponent)
+        elif spec.kind is Kind.WARBURG:
+            value = np.abs(slowest) * np.sqrt(omega_slow / 2.0) / slow
+        elif spec.kind is Kind.TIME:
+            value = 1.0 / omega_slow
+        elif spec.kind is Kind.DEPTH:
+            value = np.full(capacitance.shape, 0.1)
+        else:
+            value = np.full(capacitance.shape, 1e-6)
+        columns.append(value)
+    low = np.array([spec.low for spec in model.parameters])
+    high = np.array([spec.high for spec in model.parameters])
+    return np.clip(np.column_stack(columns), low, high)
+
+
+def candidates(
+    model: CoatingModel, frequency_hz: FloatArray, impedance: ComplexArray, used: BoolArray
+) -> FloatArray:
+    """Candidates (K, B, P) in natural coordinates for B spectra."""
+    outline = _Spectra(frequency_hz, impedance, used)
+    single = len(model.layers) == 1
+    splits = (0.25, 0.5, 0.75) if single else _SPLITS
+    if single and model.layers[0].role != "interface":
+        splits = (0.5,)
+    combinations = product(splits, _SLOW_FACTORS, _FAST_CAPACITANCES, _FILM_EXPONENTS)
+    return np.stack([model.natural(_values(model, outline, *choice)) for choice in combinations])
+
+
+def best_starts(
+    objective: ImpedanceObjective, offered: FloatArray, count: int
+) -> tuple[FloatArray, IndexArray]:
+    """The `count` best of the candidates (K, B, P) of each row, by the objective's cost.
+
+    Returns starts (B·count, P) and the row of each."""
+    trials, size, _ = offered.shape
+    rows = np.arange(size)
+    costs = np.stack([objective.cost(offered[k], rows) for k in range(trials)])
+    costs = np.where(np.isfinite(costs), costs, np.inf)
+    count = min(count, trials)
+    best = np.argsort(costs, axis=0, kind="stable")[:count]
+    starts = offered[best, rows[None, :]]
+    return starts.transpose(1, 0, 2).reshape(size * count, -1), np.repeat(rows, count)
