@@ -113,7 +113,7 @@ class Grid:
 
     @cached_property
     def ln_j_omega(self) -> ComplexArray:
-        return self.ln_omega + 0.5j * np.pi
+        return np.asarray(self.ln_omega + 0.5j * np.pi, dtype=np.complex128)
 
     @cached_property
     def inverse_j_omega(self) -> ComplexArray:
@@ -173,7 +173,8 @@ class _Proportional(Element):
         raise NotImplementedError
 
     def impedance(self, grid: Grid, theta: FloatArray) -> ComplexArray:
-        return np.exp(self.sign * theta) * self.shape(grid)
+        result: ComplexArray = np.exp(self.sign * theta) * self.shape(grid)
+        return result
 
     def derivatives(
         self,
@@ -198,7 +199,7 @@ class Inductor(_Proportional):
     kinds = (Kind.INDUCTANCE,)
 
     def shape(self, grid: Grid) -> ComplexArray:
-        return 1j * grid.omega
+        return np.asarray(1j * grid.omega, dtype=np.complex128)
 
 
 class SemiInfiniteDiffusion(_Proportional):

@@ -20,7 +20,7 @@ from coatgui.fitting.solver import (
 )
 from coatgui.fitting.starts import best_starts, candidates
 
-_STARTS = 3
+_STARTS = 5
 _APPROACH = Tolerance(cosine=1e-2, reduction=1e-3, step=2.0, iterations=25)
 
 

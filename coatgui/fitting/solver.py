@@ -99,7 +99,7 @@ def _steps(
         free, diagonal + damping[:, None] * np.maximum(diagonal, floor) + floor * 1e-3, 1.0
     )
     right = np.where(free, -gradient, 0.0)
-    return np.linalg.solve(system, right[:, :, None])[:, :, 0]
+    return np.asarray(np.linalg.solve(system, right[:, :, None])[:, :, 0], dtype=np.float64)
 
 
 def _free(

@@ -99,27 +99,38 @@ def _values(
 def candidates(
     model: CoatingModel, frequency_hz: FloatArray, impedance: ComplexArray, used: BoolArray
 ) -> FloatArray:
-    """Candidates (K, B, P) in natural coordinates for B spectra."""
+    """Candidates (S, K, B, P), S places where arcs may meet, in natural coordinates for B spectra."""
     outline = _Spectra(frequency_hz, impedance, used)
     single = len(model.layers) == 1
-    splits = (0.25, 0.5, 0.75) if single else _SPLITS
+    splits: tuple[float, ...] = (0.25, 0.5, 0.75) if single else _SPLITS
     if single and model.layers[0].role != "interface":
         splits = (0.5,)
-    combinations = product(splits, _SLOW_FACTORS, _FAST_CAPACITANCES, _FILM_EXPONENTS)
-    return np.stack([model.natural(_values(model, outline, *choice)) for choice in combinations])
+    others = tuple(product(_SLOW_FACTORS, _FAST_CAPACITANCES, _FILM_EXPONENTS))
+    return np.array(
+        [
+            [model.natural(_values(model, outline, split, *other)) for other in others]
+            for split in splits
+        ]
+    )
 
 
 def best_starts(
     objective: ImpedanceObjective, offered: FloatArray, count: int
 ) -> tuple[FloatArray, IndexArray]:
-    """The `count` best of the candidates (K, B, P) of each row, by the objective's cost.
+    """Up to `count` starts for each row: of the candidates (S, K, B, P) the best of each place S
+    where the arcs may meet, and of those the best. Neighbouring candidates lead to the same
+    minimum, so it is the places that must differ.
 
     Returns starts (B·count, P) and the row of each."""
-    trials, size, _ = offered.shape
+    places, trials, size, _ = offered.shape
     rows = np.arange(size)
-    costs = np.stack([objective.cost(offered[k], rows) for k in range(trials)])
+    costs = np.stack(
+        [[objective.cost(offered[s, k], rows) for k in range(trials)] for s in range(places)]
+    )
     costs = np.where(np.isfinite(costs), costs, np.inf)
-    count = min(count, trials)
-    best = np.argsort(costs, axis=0, kind="stable")[:count]
-    starts = offered[best, rows[None, :]]
+    within = np.argmin(costs, axis=1)
+    cheapest = np.min(costs, axis=1)
+    count = min(count, places)
+    chosen = np.argsort(cheapest, axis=0, kind="stable")[:count]
+    starts = offered[chosen, within[chosen, rows], rows]
     return starts.transpose(1, 0, 2).reshape(size * count, -1), np.repeat(rows, count)
