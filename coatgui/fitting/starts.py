@@ -99,7 +99,7 @@ def _values(
 def candidates(
     model: CoatingModel, frequency_hz: FloatArray, impedance: ComplexArray, used: BoolArray
 ) -> FloatArray:
-    """Candidates (S, K, B, P), S places where arcs may meet, in natural coordinates for B spectra."""
+    """Candidates (S, K, B, P) in natural coordinates: B spectra, S places where arcs may meet."""
     outline = _Spectra(frequency_hz, impedance, used)
     single = len(model.layers) == 1
     splits: tuple[float, ...] = (0.25, 0.5, 0.75) if single else _SPLITS
