@@ -152,8 +152,10 @@ def sample() -> int:
     OUTPUT.mkdir(exist_ok=True)
     workbook, data = OUTPUT / "sample_panels.xlsx", OUTPUT / "sample_panels.json"
     status = run(
-        [python, "-m", "coatgui", "assess", ROOT / "sample_panels"]
-        + ["--workbook", workbook, "--json", data]
+        [
+            *(python, "-m", "coatgui", "assess", ROOT / "sample_panels"),
+            *("--workbook", workbook, "--json", data),
+        ]
     )
     if status not in (0, 1):
         return status
@@ -208,7 +210,7 @@ COMMANDS = {"sample": sample, "tests": tests}
 
 
 def main(arguments: Sequence[str]) -> int:
-    if sys.version_info < (3, 11):
+    if tuple(sys.version_info) < (3, 11):
         say("Python 3.11 or newer is needed; this is " + sys.version.split()[0] + ".")
         return 2
     if len(arguments) != 1 or arguments[0] not in COMMANDS:

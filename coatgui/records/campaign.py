@@ -1,0 +1,92 @@
+"""A campaign as people keep it: formulations, panels, readings, settings."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from coatgui.records.measured import Refusal, Source, Spectrum
+
+
+@dataclass(frozen=True, slots=True)
+class Formulation:
+    formulation_id: str
+    name: str
+    remark: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Panel:
+    panel_id: str
+    name: str
+    formulation_id: str
+    area_cm2: float | None = None
+    thickness_um: float | None = None
+    substrate: str = ""
+    electrolyte: str = ""
+    temperature_c: float | None = None
+    regime: str = ""
+    remark: str = ""
+    notes: tuple[tuple[str, str], ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class Reading:
+    """One spectrum of one panel at one exposure time, with what a person decided about it.
+
+    `left_out` and `kept_in` are places of points: those a person takes out, and those a person
+    keeps although the checks suggest leaving them out. `pinned_model` names a coating model that a
+    person insists on. `overruled_because` is a person's reason for using a rejected reading.
+    """
+
+    reading_id: str
+    panel_id: str
+    exposure_h: float
+    spectrum: Spectrum
+    source: Source
+    temperature_c: float | None = None
+    amplitude_mv: float | None = None
+    potential_mv: float | None = None
+    remark: str = ""
+    left_out: tuple[tuple[int, str], ...] = ()
+    kept_in: tuple[int, ...] = ()
+    pinned_model: str = ""
+    overruled_because: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Criterion:
+    """A limit that panels are held against: |Z|·A at a frequency falling below a value."""
+
+    name: str
+    frequency_hz: float
+    ohm_cm2: float
+    source: str
+
+
+@dataclass(frozen=True, slots=True)
+class Settings:
+    """What a person can set for a campaign. `thresholds` override single entries of
+    `resources/checks.toml`, by name."""
+
+    temperature_c: float = 25.0
+    modulus_frequencies_hz: tuple[float, ...] = (0.1, 0.01)
+    capacitance_frequency_hz: float = 10_000.0
+    mains_hz: float = 50.0
+    criteria: tuple[Criterion, ...] = ()
+    thresholds: tuple[tuple[str, float], ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class Campaign:
+    """A campaign whole. Ids are random and stable; names may change."""
+
+    campaign_id: str
+    title: str
+    settings: Settings = Settings()
+    formulations: tuple[Formulation, ...] = ()
+    panels: tuple[Panel, ...] = ()
+    readings: tuple[Reading, ...] = ()
+    open_lead: Spectrum | None = None
+    open_lead_source: Source | None = None
+    refused: tuple[Refusal, ...] = ()
+    remark: str = ""
