@@ -114,7 +114,7 @@ def prepare(what: Sequence[str]) -> int:
     python = python_inside()
     if not quiet([python, "-m", "pip", "--version"]):
         say(f"making a virtual environment in {ENVIRONMENT.name}")
-        make = [sys.executable, "-m", "venv", "--clear", ENVIRONMENT]
+        make: list[str | Path] = [sys.executable, "-m", "venv", "--clear", ENVIRONMENT]
         if not quiet(make):
             install_packages(("python3-venv",))
             if run(make) != 0:

@@ -8,6 +8,8 @@ solution, but does not flatten where the model is far too small.
 
 from __future__ import annotations
 
+from collections.abc import Callable
+
 import numpy as np
 
 from coatgui.circuits import CoatingModel, Grid
@@ -78,3 +80,23 @@ class ImpedanceObjective:
             gradient = (jacobian @ flat[:, :, None])[:, :, 0]
             cost = (flat * flat).sum(axis=1)
         return cost, gradient, normal
+
+
+class FunctionObjective:
+    """One problem of any kind, for the solver's general entry: `function(theta)` (P,) gives
+    residuals (M,) and their Jacobian (M, P). A point where either is not finite is refused."""
+
+    def __init__(self, function: Callable[[FloatArray], tuple[FloatArray, FloatArray]]) -> None:
+        self._function = function
+
+    def normal(
+        self, theta: FloatArray, rows: IndexArray
+    ) -> tuple[FloatArray, FloatArray, FloatArray]:
+        """S, Jᵀr and JᵀJ as `solver.Objective` asks, row after row."""
+        cost, gradient, normal = [], [], []
+        for point in theta:
+            residual, jacobian = self._function(point)
+            cost.append(residual @ residual)
+            gradient.append(jacobian.T @ residual)
+            normal.append(jacobian.T @ jacobian)
+        return np.array(cost), np.array(gradient), np.array(normal)
