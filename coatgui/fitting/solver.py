@@ -89,17 +89,19 @@ _WORKING_SET = 256
 def _steps(
     normal: FloatArray, gradient: FloatArray, free: BoolArray, damping: FloatArray
 ) -> FloatArray:
-    """Damped steps (B, P); held parameters do not move."""
+    """Damped steps (B, P); held parameters do not move. The system is scaled to a unit diagonal
+    first, so that parameters of very different size do not spoil the arithmetic."""
     count = gradient.shape[1]
-    diagonal = normal[:, np.arange(count), np.arange(count)]
-    # The floor keeps a parameter that has no effect from making the system singular.
-    floor = 1e-12 * diagonal.max(axis=1, keepdims=True) + _TINY
-    system = normal * (free[:, :, None] & free[:, None, :])
-    system[:, np.arange(count), np.arange(count)] = np.where(
-        free, diagonal + damping[:, None] * np.maximum(diagonal, floor) + floor * 1e-3, 1.0
-    )
-    right = np.where(free, -gradient, 0.0)
-    return np.asarray(np.linalg.solve(system, right[:, :, None])[:, :, 0], dtype=np.float64)
+    places = np.arange(count)
+    diagonal = normal[:, places, places]
+    moving = free & (diagonal > 0)  # a parameter without any effect stays where it is
+    scale = np.where(moving, 1.0 / np.sqrt(np.where(moving, diagonal, 1.0)), 0.0)
+    system = normal * (scale[:, :, None] * scale[:, None, :])
+    # The last term keeps an exact tie between parameters solvable.
+    system[:, places, places] = np.where(moving, 1.0 + damping[:, None] + 1e-15, 1.0)
+    right = -gradient * scale
+    scaled = np.linalg.solve(system, right[:, :, None])[:, :, 0]
+    return np.asarray(scaled * scale, dtype=np.float64)
 
 
 def _free(
@@ -220,7 +222,7 @@ def _iterate(
     work.damping = np.where(
         better, np.where(first, work.damping, work.damping * easing), work.damping * work.growth
     )
-    work.damping = np.maximum(work.damping, 1e-12)
+    work.damping = np.maximum(work.damping, 1e-15)
     work.growth = np.where(better, 2.0, work.growth * 2.0)
     work.theta[better] = work.trial[better]
     work.cost[better] = cost[better]
