@@ -63,9 +63,15 @@ def build_fit(
     for place, spec in enumerate(model.parameters):
         method = "95 % limits of the fit"
         leaky = leads_ohm is not None and spec.kind is Kind.RESISTANCE and spec.layer > 0
-        if leaky and np.exp(theta[place]) * rule("leads_factor") > float(leads_ohm or 0.0):
-            high[place] = np.inf
-            method = "the open lead's own resistance is near: the leads, not the film, set this"
+        if leaky and leads_ohm is not None:
+            share = float(np.exp(theta[place])) / leads_ohm
+            if share * rule("leads_factor") > 1.0:
+                high[place] = np.inf
+                method = "the open lead's own resistance is near: the leads, not the film, set this"
+            elif np.isfinite(high[place]):
+                # The leads lie in parallel: without them the film's resistance would be this much
+                # higher at the most.
+                high[place] -= np.log1p(-share)
         parameters.append(
             Parameter(
                 spec.symbol,

@@ -1,0 +1,185 @@
+"""The assessment as JSON, for scripts (schema `coatgui-assessment/1`)."""
+
+from __future__ import annotations
+
+import json
+import math
+from pathlib import Path
+from typing import Any
+
+from coatgui.output.whole import write_whole
+from coatgui.records import Assessment, Finding, LimitCrossing, Quantity, ReadingAssessment
+
+SCHEMA = "coatgui-assessment/1"
+
+
+def _finite(value: Any) -> Any:
+    """The same structure with every number that is not finite as null."""
+    if isinstance(value, dict):
+        return {key: _finite(inner) for key, inner in value.items()}
+    if isinstance(value, list | tuple):
+        return [_finite(inner) for inner in value]
+    if isinstance(value, float):
+        return float(value) if math.isfinite(value) else None
+    return value
+
+
+def _limits(quantity: Quantity) -> dict[str, Any]:
+    return {"low": quantity.low, "high": quantity.high, "bound": quantity.bound.value}
+
+
+def _finding(finding: Finding) -> dict[str, Any]:
+    return {"code": finding.code, "severity": finding.severity.value, "text": finding.text}
+
+
+def _amount(quantity: Quantity | None, key: str) -> dict[str, Any] | None:
+    if quantity is None:
+        return None
+    return {
+        key: quantity.value,
+        **_limits(quantity),
+        "unit": quantity.unit,
+        "method": quantity.method,
+    }
+
+
+def _reading(reading: ReadingAssessment) -> dict[str, Any]:
+    modulus = {}
+    for entry in reading.modulus:
+        quantity = entry.quantity
+        modulus[f"{entry.frequency_hz:g}"] = {
+            "ohm_cm2": None if quantity is None else quantity.value,
+            "status": entry.status.value,
+            "low": None if quantity is None else quantity.low,
+            "high": None if quantity is None else quantity.high,
+            "bound": None if quantity is None else quantity.bound.value,
+            "unit": None if quantity is None else quantity.unit,
+        }
+    uptake = _amount(
+        reading.water_uptake.quantity if reading.water_uptake else None, "volume_percent"
+    )
+    if uptake is not None and reading.water_uptake is not None:
+        uptake["reference_h"] = reading.water_uptake.reference_h
+    fit = reading.fit
+    return {
+        "panel": reading.panel,
+        "formulation": reading.formulation,
+        "exposure_h": reading.exposure_h,
+        "file": reading.file,
+        "sha256": reading.sha256,
+        "points": {
+            "read": reading.points_read,
+            "used": reading.points_used,
+            "left_out": [
+                {"frequency_hz": point.frequency_hz, "reason": point.reason}
+                for point in reading.left_out
+            ],
+        },
+        "findings": [_finding(finding) for finding in reading.findings],
+        "counts": reading.counts,
+        "modulus": modulus,
+        "model": fit.model_name if fit else None,
+        "model_id": fit.model if fit else None,
+        "residual_rms_percent": fit.residual_rms_percent if fit else None,
+        "tried": [
+            {"model": trial.model, "aicc": trial.aicc, "remark": trial.remark}
+            for trial in (fit.trials if fit else ())
+        ],
+        "parameters": [
+            {
+                "symbol": parameter.symbol,
+                "value": parameter.quantity.value,
+                "unit": parameter.quantity.unit,
+                **_limits(parameter.quantity),
+            }
+            for parameter in reading.parameters
+        ],
+        "coating_capacitance": _amount(reading.coating_capacitance, "f_per_cm2"),
+        "capacitance_at_high_frequency": _amount(
+            reading.capacitance_at_high_frequency, "f_per_cm2"
+        ),
+        "pore_resistance": _amount(reading.pore_resistance, "ohm_cm2"),
+        "water_uptake": uptake,
+    }
+
+
+def _crossing(crossing: LimitCrossing) -> dict[str, Any]:
+    return {
+        "criterion": crossing.criterion.name,
+        "frequency_hz": crossing.criterion.frequency_hz,
+        "ohm_cm2": crossing.criterion.ohm_cm2,
+        "after_h": crossing.after_h,
+        "by_h": crossing.by_h,
+        "text": crossing.text,
+    }
+
+
+def assessment_json(assessment: Assessment) -> dict[str, Any]:
+    """The assessment as plain data; a number that is missing or not finite is None."""
+    data = {
+        "schema": SCHEMA,
+        "title": assessment.title,
+        "headline": assessment.headline,
+        "readings": [_reading(reading) for reading in assessment.readings],
+        "panels": [
+            {
+                "panel": panel.panel,
+                "formulation": panel.formulation,
+                "area_cm2": panel.area_cm2,
+                "thickness_um": panel.thickness_um,
+                "dry_capacitance": _amount(panel.dry_capacitance, "f_per_cm2"),
+                "diffusion_coefficient": _amount(panel.diffusion_coefficient, "cm2_per_s"),
+                "findings": [_finding(finding) for finding in panel.findings],
+                "events": [
+                    {"code": e.code, "text": e.text, "after_h": e.after_h, "by_h": e.by_h}
+                    for e in panel.events
+                ],
+                "limit_crossings": [_crossing(c) for c in panel.limit_crossings],
+            }
+            for panel in assessment.panels
+        ],
+        "formulations": [
+            {
+                "formulation": formulation.formulation,
+                "panels": formulation.panels,
+                "text": formulation.text,
+                "courses": {
+                    course.code: [
+                        {
+                            "exposure_h": point.exposure_h,
+                            "value": point.quantity.value,
+                            "low": point.quantity.low,
+                            "high": point.quantity.high,
+                            "unit": point.quantity.unit,
+                            "panels": point.panels,
+                            "censored": point.censored,
+                        }
+                        for point in course.points
+                    ]
+                    for course in formulation.courses
+                },
+            }
+            for formulation in assessment.formulations
+        ],
+        "ranking": [
+            {
+                "formulation": rank.formulation,
+                "rank_low": rank.rank_low,
+                "rank_high": rank.rank_high,
+                "group": rank.group,
+            }
+            for rank in assessment.ranking
+        ],
+        "ranking_text": assessment.ranking_text,
+        "refused": [{"file": r.file, "reason": r.reason} for r in assessment.refused],
+        "findings": [_finding(finding) for finding in assessment.findings],
+        "cautions": list(assessment.cautions),
+    }
+    result: dict[str, Any] = _finite(data)
+    return result
+
+
+def write_json(assessment: Assessment, path: Path) -> None:
+    """Write the JSON file whole or not at all. Raises OSError."""
+    text = json.dumps(assessment_json(assessment), ensure_ascii=False, indent=1, allow_nan=False)
+    write_whole(path, lambda file: file.write(f"{text}\n".encode()))
