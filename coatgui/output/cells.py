@@ -41,12 +41,13 @@ def add_sheet(
     `colours` fills cells whose text is a key (the text stands there too, so nothing depends on
     colour)."""
     from openpyxl.styles import Alignment, Font, PatternFill
+    from openpyxl.utils import get_column_letter
 
     sheet: Worksheet = book.create_sheet(title)
     for column, heading in enumerate(headings, start=1):
-        cell = sheet.cell(1, column, heading)
-        cell.font = Font(bold=True)
-        cell.alignment = Alignment(wrap_text=True, vertical="top")
+        head = sheet.cell(1, column, heading)
+        head.font = Font(bold=True)
+        head.alignment = Alignment(wrap_text=True, vertical="top")
     widths = [len(heading) for heading in headings]
     for row, values in enumerate(rows, start=2):
         for column, value in enumerate(values, start=1):
@@ -69,11 +70,11 @@ def add_sheet(
                 if number_format:
                     cell.number_format = number_format
     for column, width in enumerate(widths, start=1):
-        letter = sheet.cell(1, column).column_letter
+        letter = get_column_letter(column)
         sheet.column_dimensions[letter].width = min(max(width + 2, _NARROWEST), _WIDEST)
     sheet.freeze_panes = "A2"
     if headings:
-        sheet.auto_filter.ref = f"A1:{sheet.cell(1, len(headings)).column_letter}{len(rows) + 1}"
+        sheet.auto_filter.ref = f"A1:{get_column_letter(len(headings))}{len(rows) + 1}"
     return sheet
 
 
