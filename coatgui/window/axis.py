@@ -1,0 +1,71 @@
+"""Axes of decades. Plots carry log10 of their data, so the axis writes 10^x with a prefix."""
+
+from __future__ import annotations
+
+import math
+from typing import Any
+
+import pyqtgraph as pg
+
+from coatgui.window.numbers import prefixed
+
+
+class DecadeAxis(pg.AxisItem):  # type: ignore[misc, unused-ignore]
+    """An axis for log10 values: a tick at each decade, or finer where less than two would show."""
+
+    def __init__(self, orientation: str, unit: str) -> None:
+        super().__init__(orientation)
+        self.unit = unit
+        self.enableAutoSIPrefix(False)
+
+    def tickValues(self, low: float, high: float, size: float) -> list[tuple[float, list[float]]]:
+        """Places of the ticks, as log10: at least two wherever the view has a width."""
+        low, high = min(low, high), max(low, high)
+        decades = [float(d) for d in range(math.ceil(low), math.floor(high) + 1)]
+        room = max(size / 46.0, 2.0)
+        if len(decades) >= 2:
+            step = max(math.ceil(len(decades) / room), 1)
+            kept = [d for d in decades if d % step == 0] if step > 1 else decades
+            return [(1.0, kept if len(kept) >= 2 else decades[:: len(decades) - 1])]
+        inner = [
+            d + math.log10(m)
+            for d in range(math.floor(low), math.ceil(high) + 1)
+            for m in (1, 2, 3, 5, 7)
+            if low <= d + math.log10(m) <= high
+        ]
+        if len(inner) >= 2:
+            return [(0.3, inner)]
+        width = high - low
+        return [(width / 3, [low + width * f for f in (0.15, 0.5, 0.85)])]
+
+    def tickStrings(self, values: list[float], scale: float, spacing: float) -> list[str]:
+        digits = 1 if spacing >= 0.3 else 4
+        return [prefixed(10.0**value, self.unit, digits) for value in values]
+
+
+class Plot(pg.PlotWidget):  # type: ignore[misc, unused-ignore]
+    """A plot with decade axes where a unit is given, plain ones elsewhere, in our colours."""
+
+    def __init__(
+        self, name: str, bottom: tuple[str, str | None], left: tuple[str, str | None]
+    ) -> None:
+        axes: dict[str, Any] = {}
+        for side, (_, unit) in (("bottom", bottom), ("left", left)):
+            if unit is not None:
+                axes[side] = DecadeAxis(side, unit)
+        super().__init__(axisItems=axes)
+        self._titles = {"bottom": bottom[0], "left": left[0]}
+        self.setAccessibleName(name)
+        self.setMenuEnabled(False)
+        self.hideButtons()
+        self.getPlotItem().getAxis("left").setWidth(74)
+
+    def paint_in(self, ground: str, ink: str, line: str) -> None:
+        """Take on the window's colours."""
+        self.setBackground(ground)
+        for side, title in self._titles.items():
+            axis = self.getPlotItem().getAxis(side)
+            axis.setPen(line)
+            axis.setTextPen(ink)
+            axis.setLabel(title, color=ink)
+        self.showGrid(x=True, y=True, alpha=0.12)

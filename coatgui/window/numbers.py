@@ -1,0 +1,58 @@
+"""Numbers as the window shows them: engineering prefixes, limits, and bounds in words."""
+
+from __future__ import annotations
+
+import math
+
+from coatgui.records import Bound, Quantity
+
+_PREFIXES = {-15: "f", -12: "p", -9: "n", -6: "µ", -3: "m", 0: "", 3: "k", 6: "M", 9: "G", 12: "T"}
+_PLAIN_UNITS = ("", "vol-%", "%", "h")
+WORDS = {
+    Bound.TWO_SIDED: "between the limits",
+    Bound.AT_LEAST: "→ at least",
+    Bound.AT_MOST: "← at most",
+    Bound.FIXED: "fixed",
+    Bound.UNDETERMINED: "∅ cannot be determined",
+}
+
+
+def prefixed(value: float, unit: str, digits: int = 3) -> str:
+    """A number with an engineering prefix: 1.31 nF/cm², 10 mHz."""
+    if value == 0 or not math.isfinite(value):
+        return f"{value:g} {unit}".strip()
+    if unit in _PLAIN_UNITS:
+        return f"{value:.{digits}g} {unit}".strip()
+    power = min(max(3 * math.floor(math.log10(abs(value)) / 3 + 1e-9), -15), 12)
+    scaled = value / 10.0**power
+    if (
+        round(scaled, max(digits - 1 - math.floor(math.log10(abs(scaled))), 0)) >= 1000
+        and power < 12
+    ):
+        power += 3
+        scaled /= 1000.0
+    places = max(digits - 1 - math.floor(math.log10(abs(scaled))), 0)
+    number = f"{scaled:.{places}f}" if abs(scaled) < 10.0**digits * 10 else f"{scaled:.{digits}g}"
+    if not unit[:1].isalpha() and unit[:1] not in "Ω°":
+        return f"{value:.{digits}g} {unit}"
+    return f"{number} {_PREFIXES[power]}{unit}"
+
+
+def said(quantity: Quantity | None, digits: int = 3) -> str:
+    """A quantity with its limits as a person says it."""
+    if quantity is None:
+        return "–"
+    if quantity.bound is Bound.UNDETERMINED or quantity.value is None:
+        return "cannot be determined"
+    number = prefixed(quantity.value, quantity.unit, digits)
+    if quantity.bound is Bound.AT_LEAST:
+        return f"at least {number}"
+    if quantity.bound is Bound.AT_MOST:
+        return f"at most {number}"
+    if quantity.low is None or quantity.high is None:
+        return number
+    low = prefixed(quantity.low, quantity.unit, digits)
+    high = prefixed(quantity.high, quantity.unit, digits)
+    if low.split()[-1] == high.split()[-1]:
+        low = low.split()[0]
+    return f"{number} ({low}–{high})"

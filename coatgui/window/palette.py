@@ -1,0 +1,120 @@
+"""The window's colours, light and dark, from `resources/colours.toml`."""
+
+from __future__ import annotations
+
+import tomllib
+from dataclasses import dataclass
+from functools import cache
+from typing import Any
+
+from PySide6.QtGui import QColor, QGuiApplication, QPalette
+from PySide6.QtWidgets import QApplication
+
+from coatgui.shipped import resource
+
+
+@dataclass(frozen=True)
+class Colours:
+    ground: str
+    panel: str
+    line: str
+    ink: str
+    second: str
+    verdigris: str
+    rust: str
+    amber: str
+    slate: str
+    dark: bool
+
+
+@cache
+def _data() -> dict[str, Any]:
+    return tomllib.loads(resource("colours.toml").read_text(encoding="utf-8"))
+
+
+@cache
+def colours(dark: bool) -> Colours:
+    return Colours(**_data()["dark" if dark else "light"], dark=dark)
+
+
+def formulation_look(place: int) -> tuple[str, str]:
+    """Colour and marker shape of the formulation at a place in the campaign."""
+    looks = _data()["formulations"]
+    return (
+        looks["colours"][place % len(looks["colours"])],
+        looks["shapes"][place % len(looks["shapes"])],
+    )
+
+
+def system_is_dark() -> bool:
+    """Whether the desktop asks for dark windows."""
+    from PySide6.QtCore import Qt
+
+    hints = QGuiApplication.styleHints()
+    return bool(hints.colorScheme() == Qt.ColorScheme.Dark)
+
+
+def ramp(share: float, dark: bool) -> tuple[QColor, QColor]:
+    """Ground and ink of a cell for a share from 0 (poor barrier, pale) to 1 (good, deep). One hue;
+    lightness falls evenly."""
+    share = min(max(share, 0.0), 1.0)
+    lightness = 0.93 - 0.65 * share
+    ground = QColor.fromHslF(0.56, 0.30, lightness)
+    return ground, QColor("#20282E" if lightness > 0.58 else "#FFFFFF")
+
+
+def apply(application: QApplication, tone: Colours) -> None:
+    """Give the whole program these colours and the quiet shapes that go with them."""
+    palette = QPalette()
+    role = QPalette.ColorRole
+    for which, colour in (
+        (role.Window, tone.ground),
+        (role.Base, tone.ground),
+        (role.AlternateBase, tone.panel),
+        (role.Button, tone.panel),
+        (role.ToolTipBase, tone.panel),
+        (role.Text, tone.ink),
+        (role.WindowText, tone.ink),
+        (role.ButtonText, tone.ink),
+        (role.ToolTipText, tone.ink),
+        (role.PlaceholderText, tone.second),
+        (role.Highlight, tone.verdigris),
+        (role.HighlightedText, tone.ground),
+        (role.Link, tone.verdigris),
+        (role.Mid, tone.line),
+    ):
+        palette.setColor(which, QColor(colour))
+    disabled = QPalette.ColorGroup.Disabled
+    for which in (role.Text, role.WindowText, role.ButtonText):
+        palette.setColor(disabled, which, QColor(tone.second))
+    application.setStyle("Fusion")
+    application.setPalette(palette)
+    application.setStyleSheet(
+        f"""
+        QWidget {{ font-size: 13px; }}
+        QTreeView, QTableWidget, QListWidget {{ border: 0; background: {tone.ground};
+            alternate-background-color: {tone.panel}; gridline-color: {tone.line}; }}
+        QHeaderView::section {{ background: {tone.panel}; color: {tone.second}; border: 0;
+            border-bottom: 1px solid {tone.line}; padding: 4px 8px; font-size: 11px; }}
+        QMenuBar, QMenu, QStatusBar {{ background: {tone.panel}; color: {tone.ink}; }}
+        QMenu::item:selected, QMenuBar::item:selected {{ background: {tone.verdigris};
+            color: {tone.ground}; }}
+        QSplitter::handle {{ background: {tone.line}; }}
+        QLineEdit, QComboBox {{ background: {tone.ground}; border: 1px solid {tone.line};
+            border-radius: 3px; padding: 3px 6px; }}
+        QPushButton {{ background: {tone.panel}; border: 1px solid {tone.line};
+            border-radius: 3px; padding: 6px 14px; }}
+        QPushButton:focus, QLineEdit:focus, QComboBox:focus {{
+            border: 1px solid {tone.verdigris}; }}
+        QPushButton#place {{ background: transparent; border: 0; border-radius: 0;
+            border-bottom: 2px solid transparent; padding: 8px 16px; color: {tone.second};
+            font-size: 14px; }}
+        QPushButton#place:checked {{ color: {tone.ink};
+            border-bottom: 2px solid {tone.verdigris}; }}
+        QPushButton#place:focus {{ color: {tone.verdigris}; }}
+        QLabel#headline {{ font-size: 20px; color: {tone.ink}; }}
+        QLabel#question {{ font-size: 16px; color: {tone.ink}; }}
+        QLabel#small {{ font-size: 11px; color: {tone.second}; }}
+        QFrame#side {{ background: {tone.panel}; }}
+        """
+    )

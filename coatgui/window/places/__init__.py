@@ -1,0 +1,1 @@
+"""The places of the work area, one for each question of the job."""

@@ -1,0 +1,269 @@
+"""Map: panels × exposure time, one shaded, numbered cell for each reading."""
+
+from __future__ import annotations
+
+import math
+
+from PySide6.QtCore import QPoint, QRect, QSize, Qt, Signal
+from PySide6.QtGui import QColor, QFont, QKeyEvent, QMouseEvent, QPainter, QPaintEvent, QPen
+from PySide6.QtWidgets import QComboBox, QHBoxLayout, QScrollArea, QWidget
+
+from coatgui.records import Bound, Campaign, Quantity, ReadingAssessment
+from coatgui.window.desk import Desk
+from coatgui.window.numbers import said
+from coatgui.window.palette import Colours, ramp
+from coatgui.window.places.place import Place, plain_label
+from coatgui.window.tree_model import state_of
+
+_LABEL_WIDTH, _ROW, _HEAD, _BAND = 84, 30, 26, 24
+QUANTITIES = {
+    "|Z|·A at 0.1 Hz": "modulus_0.1",
+    "|Z|·A at 0.01 Hz": "modulus_0.01",
+    "Pore resistance": "pore_resistance",
+    "Film capacitance": "coating_capacitance",
+    "Apparent water uptake": "water_uptake",
+}
+_RISING_IS_WORSE = ("coating_capacitance", "water_uptake")
+
+
+def amount(reading: ReadingAssessment, code: str) -> Quantity | None:
+    """The quantity a code names, of one reading."""
+    if code.startswith("modulus_"):
+        modulus = reading.modulus_at(float(code.removeprefix("modulus_")))
+        return modulus.quantity if modulus else None
+    if code == "water_uptake":
+        return reading.water_uptake.quantity if reading.water_uptake else None
+    found: Quantity | None = getattr(reading, code)
+    return found
+
+
+def short(quantity: Quantity | None, code: str) -> str:
+    """The number in a cell: log10 of a resistance or modulus, pF/cm² or vol-% elsewhere."""
+    if quantity is None or quantity.value is None:
+        return "∅"
+    sign = {Bound.AT_LEAST: "≥", Bound.AT_MOST: "≤"}.get(quantity.bound, "")
+    if code == "water_uptake":
+        return f"{sign}{quantity.value:.1f}"
+    if code == "coating_capacitance":
+        return f"{sign}{quantity.value * 1e12:.3g}"
+    return f"{sign}{math.log10(quantity.value):.1f}" if quantity.value > 0 else "∅"
+
+
+class Cells(QWidget):
+    """The painted map. `picked` carries a reading's id."""
+
+    picked = Signal(str)
+
+    def __init__(self, tone: Colours) -> None:
+        super().__init__()
+        self.tone = tone
+        self.setFocusPolicy(Qt.FocusPolicy.StrongFocus)
+        self.setAccessibleName("Exposure map: panels by exposure time")
+        self.setMouseTracking(True)
+        self.rows: list[tuple[str, str]] = []  # (kind, text): formulation bands and panels
+        self.times: list[float] = []
+        self.cells: dict[tuple[int, int], ReadingAssessment | str] = {}
+        self.code = "modulus_0.1"
+        self.selection = ""
+        self.shades: dict[tuple[int, int], float] = {}
+
+    def show(self, campaign: Campaign, known: dict[str, ReadingAssessment], code: str) -> None:  # type: ignore[override]
+        """Lay out a campaign; readings not assessed yet stand as empty cells."""
+        self.code = code
+        self.times = sorted({r.exposure_h for r in campaign.readings})
+        column = {hours: i for i, hours in enumerate(self.times)}
+        self.rows, self.cells, self.shades = [], {}, {}
+        for formulation in campaign.formulations:
+            panels = [p for p in campaign.panels if p.formulation_id == formulation.formulation_id]
+            if not panels:
+                continue
+            self.rows.append(("formulation", formulation.name))
+            for panel in panels:
+                self.rows.append(("panel", panel.name))
+                for reading in campaign.readings:
+                    if reading.panel_id == panel.panel_id:
+                        place = (len(self.rows) - 1, column[reading.exposure_h])
+                        self.cells[place] = known.get(reading.reading_id, reading.reading_id)
+        self._shade()
+        height = _HEAD + sum(_BAND if kind == "formulation" else _ROW for kind, _ in self.rows)
+        self.setMinimumSize(QSize(_LABEL_WIDTH + 52 * max(len(self.times), 1), height + 8))
+        self.update()
+
+    def _shade(self) -> None:
+        values: dict[tuple[int, int], float] = {}
+        for place, cell in self.cells.items():
+            quantity = amount(cell, self.code) if isinstance(cell, ReadingAssessment) else None
+            if quantity is not None and quantity.value is not None:
+                plain = self.code == "water_uptake"
+                if plain or quantity.value > 0:
+                    values[place] = quantity.value if plain else math.log10(quantity.value)
+        if not values:
+            return
+        low, high = min(values.values()), max(values.values())
+        width = max(high - low, 1e-9)
+        for place, value in values.items():
+            share = (value - low) / width
+            self.shades[place] = 1.0 - share if self.code in _RISING_IS_WORSE else share
+
+    def _tops(self) -> list[int]:
+        tops, top = [], _HEAD
+        for kind, _ in self.rows:
+            tops.append(top)
+            top += _BAND if kind == "formulation" else _ROW
+        return tops
+
+    def _width(self) -> float:
+        return (self.width() - _LABEL_WIDTH - 4) / max(len(self.times), 1)
+
+    def _rect(self, row: int, column: int, tops: list[int]) -> QRect:
+        width = self._width()
+        left = _LABEL_WIDTH + round(column * width)
+        right = _LABEL_WIDTH + round((column + 1) * width)
+        return QRect(left + 1, tops[row] + 1, right - left - 2, _ROW - 2)
+
+    def _id(self, cell: ReadingAssessment | str) -> str:
+        return cell.reading_id if isinstance(cell, ReadingAssessment) else cell
+
+    def paintEvent(self, event: QPaintEvent) -> None:
+        painter = QPainter(self)
+        tone, tops = self.tone, self._tops()
+        small = QFont(self.font())
+        small.setPixelSize(11)
+        painter.setFont(small)
+        painter.setPen(QColor(tone.second))
+        width = self._width()
+        for i, hours in enumerate(self.times):
+            place = QRect(_LABEL_WIDTH + round(i * width), 0, round(width), _HEAD)
+            painter.drawText(place, Qt.AlignmentFlag.AlignCenter, f"{hours:g} h")
+        for (kind, text), top in zip(self.rows, tops, strict=True):
+            if kind == "formulation":
+                painter.setPen(QColor(tone.ink))
+                painter.drawText(
+                    QRect(0, top + 4, self.width(), _BAND - 4), Qt.AlignmentFlag.AlignVCenter, text
+                )
+            else:
+                painter.setPen(QColor(tone.second))
+                painter.drawText(
+                    QRect(12, top, _LABEL_WIDTH - 16, _ROW), Qt.AlignmentFlag.AlignVCenter, text
+                )
+        cell_font = QFont(self.font())
+        cell_font.setPixelSize(12)
+        painter.setFont(cell_font)
+        for place, cell in self.cells.items():
+            self._paint_cell(painter, place, cell, self._rect(*place, tops))
+        painter.end()
+
+    def _paint_cell(
+        self, painter: QPainter, place: tuple[int, int], cell: ReadingAssessment | str, rect: QRect
+    ) -> None:
+        tone = self.tone
+        text, mark = "…", ""
+        ground, ink = QColor(tone.panel), QColor(tone.second)
+        if isinstance(cell, ReadingAssessment):
+            mark = state_of(cell)[0]
+            text = short(amount(cell, self.code), self.code) if cell.counts else ""
+            if place in self.shades:
+                ground, ink = ramp(self.shades[place], tone.dark)
+        painter.fillRect(rect, ground)
+        painter.setPen(ink)
+        painter.drawText(rect, Qt.AlignmentFlag.AlignCenter, text)
+        if mark in ("▲", "■"):
+            painter.setPen(QColor(tone.rust) if mark == "■" else ink)
+            corner = rect.adjusted(0, 0, -4, 0)
+            where = Qt.AlignmentFlag.AlignRight | Qt.AlignmentFlag.AlignVCenter
+            if mark == "■":
+                where = Qt.AlignmentFlag.AlignCenter
+            painter.drawText(corner, where, mark)
+        if self._id(cell) == self.selection:
+            painter.setPen(QPen(QColor(tone.verdigris), 3))
+            painter.drawRect(rect.adjusted(1, 1, -2, -2))
+
+    def _at(self, point: QPoint) -> tuple[int, int] | None:
+        tops = self._tops()
+        return next((p for p in self.cells if self._rect(*p, tops).contains(point)), None)
+
+    def mousePressEvent(self, event: QMouseEvent) -> None:
+        place = self._at(event.position().toPoint())
+        if place is not None:
+            self.picked.emit(self._id(self.cells[place]))
+
+    def mouseMoveEvent(self, event: QMouseEvent) -> None:
+        place = self._at(event.position().toPoint())
+        cell = self.cells.get(place) if place is not None else None
+        text = ""
+        if isinstance(cell, ReadingAssessment):
+            story = [f"{cell.panel}, {cell.exposure_h:g} h: {said(amount(cell, self.code))}"]
+            story.append(cell.fit.model_name if cell.fit else "not fitted")
+            story += [f.text for f in cell.findings if f.severity.value != "note"][:2]
+            text = "\n".join(story)
+        self.setToolTip(text)
+
+    def keyPressEvent(self, event: QKeyEvent) -> None:
+        step = {
+            Qt.Key.Key_Left: (0, -1),
+            Qt.Key.Key_Right: (0, 1),
+            Qt.Key.Key_Up: (-1, 0),
+            Qt.Key.Key_Down: (1, 0),
+        }.get(Qt.Key(event.key()))
+        now = next((p for p, c in self.cells.items() if self._id(c) == self.selection), None)
+        if step is None or now is None:
+            super().keyPressEvent(event)
+            return
+        row, column = now
+        for _ in range(len(self.rows) + len(self.times)):
+            row, column = row + step[0], column + step[1]
+            if (row, column) in self.cells:
+                self.picked.emit(self._id(self.cells[row, column]))
+                return
+
+
+class MapPlace(Place):
+    noun, question = "Map", "Where does the campaign stand?"
+
+    def __init__(self, desk: Desk, tone: Colours) -> None:
+        super().__init__(desk, tone)
+        self.headline = plain_label("headline")
+        self.ranking = plain_label()
+        self.column.addWidget(self.headline)
+        self.column.addWidget(self.ranking)
+        bar = QHBoxLayout()
+        self.chooser = QComboBox()
+        self.chooser.setAccessibleName("Quantity shown in the map")
+        self.chooser.addItems(list(QUANTITIES))
+        self.chooser.currentIndexChanged.connect(self.show_campaign)
+        self.legend = plain_label("small")
+        bar.addWidget(self.chooser)
+        bar.addWidget(self.legend, 1)
+        self.column.addLayout(bar)
+        self.cells = Cells(tone)
+        self.cells.picked.connect(desk.select)
+        area = QScrollArea()
+        area.setWidgetResizable(True)
+        area.setFrameShape(QScrollArea.Shape.NoFrame)
+        area.setWidget(self.cells)
+        self.column.addWidget(area, 1)
+
+    def show_campaign(self) -> None:
+        campaign, assessment = self.desk.campaign, self.desk.assessment
+        code = QUANTITIES[self.chooser.currentText()]
+        self.cells.tone = self.tone
+        if campaign is None:
+            return
+        known = {r.reading_id: r for r in assessment.readings} if assessment else {}
+        self.headline.setText(
+            assessment.headline if assessment else "The readings are being judged …"
+        )
+        self.ranking.setText(assessment.ranking_text if assessment else "")
+        unit = {
+            "water_uptake": "Numbers in vol-%",
+            "coating_capacitance": "Numbers in pF/cm²",
+        }.get(code, "Numbers are log₁₀ of Ω cm²")
+        self.legend.setText(
+            f"{unit}; deeper is the better barrier.  ▲ doubt  ■ rejected  ≥ at least"
+        )
+        self.cells.show(campaign, known, code)
+        self.show_selection()
+
+    def show_selection(self) -> None:
+        self.cells.selection = self.desk.selection
+        self.cells.update()

@@ -1,0 +1,48 @@
+"""What every place has: a question, a sentence where it is empty, and a way to show the desk."""
+
+from __future__ import annotations
+
+from PySide6.QtCore import Qt
+from PySide6.QtWidgets import QLabel, QVBoxLayout, QWidget
+
+from coatgui.window.desk import Desk
+from coatgui.window.palette import Colours
+
+
+def plain_label(name: str = "") -> QLabel:
+    """A label that shows text as it is: what comes from files is never taken for markup."""
+    label = QLabel()
+    label.setTextFormat(Qt.TextFormat.PlainText)
+    label.setWordWrap(True)
+    label.setObjectName(name)
+    label.setTextInteractionFlags(Qt.TextInteractionFlag.TextSelectableByMouse)
+    return label
+
+
+class Place(QWidget):
+    """A place shows what the desk holds. `show_campaign` follows edits and new assessments,
+    `show_selection` another reading, `paint_in` another palette."""
+
+    noun = ""
+    question = ""
+
+    def __init__(self, desk: Desk, tone: Colours) -> None:
+        super().__init__()
+        self.desk, self.tone = desk, tone
+        self.setAccessibleName(f"{self.noun}: {self.question}")
+        self.column = QVBoxLayout(self)
+        self.column.setContentsMargins(12, 12, 12, 8)
+        self.column.setSpacing(8)
+        heading = plain_label("question")
+        heading.setText(self.question)
+        self.column.addWidget(heading)
+
+    def show_campaign(self) -> None:
+        raise NotImplementedError
+
+    def show_selection(self) -> None:
+        """Another reading was picked."""
+
+    def paint_in(self, tone: Colours) -> None:
+        self.tone = tone
+        self.show_campaign()
