@@ -149,8 +149,8 @@ class Cells(QWidget):
         cell_font = QFont(self.font())
         cell_font.setPixelSize(12)
         painter.setFont(cell_font)
-        for place, cell in self.cells.items():
-            self._paint_cell(painter, place, cell, self._rect(*place, tops))
+        for where, cell in self.cells.items():
+            self._paint_cell(painter, where, cell, self._rect(*where, tops))
         painter.end()
 
     def _paint_cell(
