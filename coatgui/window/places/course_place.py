@@ -40,26 +40,26 @@ class CoursePlace(Place):
             bar.addWidget(choice)
         bar.addWidget(self.legend, 1)
         self.column.addLayout(bar)
-        self.upper = Plot("Course of the quantity", ("", None), ("", "Ω cm²"))
-        self.lower = Plot("Course of the water uptake", ("", None), ("water / vol-%", None))
-        self.lower.setXLink(self.upper)
-        self.column.addWidget(self.upper, 3)
-        self.column.addWidget(self.lower, 2)
+        self.course = Plot("Course of the quantity", ("", None), ("", "Ω cm²"))
+        self.water = Plot("Course of the water uptake", ("", None), ("water / vol-%", None))
+        self.water.setXLink(self.course)
+        self.column.addWidget(self.course, 3)
+        self.column.addWidget(self.water, 2)
 
     def _across(self, hours: np.ndarray) -> np.ndarray:
         scale = _TIMES[self.times.currentText()]
         if scale == "log":
-            return np.log10(np.maximum(hours, 0.1))
-        return np.sqrt(hours) if scale == "root" else hours
+            return np.asarray(np.log10(np.maximum(hours, 0.1)))
+        return np.asarray(np.sqrt(hours) if scale == "root" else hours)
 
     def show_campaign(self) -> None:
         assessment = self.desk.assessment
         code = QUANTITIES[self.chooser.currentText()]
-        for plot in (self.upper, self.lower):
+        for plot in (self.course, self.water):
             plot.clear()
             plot.paint_in(self.tone.ground, self.tone.second, self.tone.line)
         unit = "F/cm²" if code == "coating_capacitance" else "Ω cm²"
-        axis = self.upper.getPlotItem().getAxis("left")
+        axis = self.course.getPlotItem().getAxis("left")
         if isinstance(axis, DecadeAxis):
             axis.unit = unit
             axis.setLabel(self.chooser.currentText(), color=self.tone.second)
@@ -72,10 +72,10 @@ class CoursePlace(Place):
             for i, f in enumerate(assessment.formulations)
         ]
         self.legend.setText("   ".join(names) + "   band: 95 % limits of the mean; ↑ only at least")
-        self._draw(self.upper, assessment, code, logarithm=True)
-        self._draw(self.lower, assessment, "water_uptake", logarithm=False)
+        self._draw(self.course, assessment, code, logarithm=True)
+        self._draw(self.water, assessment, "water_uptake", logarithm=False)
         self._ticks(assessment)
-        for plot in (self.upper, self.lower):
+        for plot in (self.course, self.water):
             plot.autoRange()
 
     def _ticks(self, assessment: Assessment) -> None:
@@ -86,7 +86,7 @@ class CoursePlace(Place):
         for x, h in zip(places, hours, strict=True):
             if not kept or x - kept[-1][0] > width / 18:
                 kept.append((float(x), f"{h:g} h"))
-        for plot in (self.upper, self.lower):
+        for plot in (self.course, self.water):
             plot.getPlotItem().getAxis("bottom").setTicks([kept])
 
     def _draw(self, plot: Plot, assessment: Assessment, code: str, *, logarithm: bool) -> None:

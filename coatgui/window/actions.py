@@ -1,0 +1,47 @@
+"""Every action of the window in one table: add a row, and it has a menu, a shortcut and a tip."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+
+@dataclass(frozen=True)
+class Entry:
+    """`method` is the main window's; `needs` is what must be there: "", campaign, undo or redo."""
+
+    menu: str
+    name: str
+    shortcut: str
+    tip: str
+    method: str
+    needs: str = ""
+
+
+ACTIONS = (
+    Entry("Campaign", "Open folder of spectra…", "Ctrl+D", "Start a campaign from a folder",
+          "open_folder"),
+    Entry("Campaign", "Open campaign…", "Ctrl+O", "Open a campaign file", "open_campaign"),
+    Entry("Campaign", "Open the sample campaign", "", "An invented campaign to try things on",
+          "open_sample"),
+    Entry("Campaign", "Save as…", "Ctrl+Shift+S", "Keep the campaign as a file; edits are kept as "
+          "they are made", "save_as", "campaign"),
+    Entry("Campaign", "Bring in files…", "Ctrl+I", "Add spectra to this campaign", "bring_in",
+          "campaign"),
+    Entry("Campaign", "Write workbook…", "Ctrl+E", "Write the assessment as a workbook",
+          "write_workbook", "campaign"),
+    Entry("Campaign", "Write data (JSON)…", "", "Write the assessment as data for scripts",
+          "write_data", "campaign"),
+    Entry("Campaign", "Quit", "Ctrl+Q", "Close the program", "close"),
+    Entry("Edit", "Undo", "Ctrl+Z", "Take back the last edit", "undo", "undo"),
+    Entry("Edit", "Redo", "Ctrl+Shift+Z", "Do it again", "redo", "redo"),
+    Entry("Go", "Map", "Ctrl+1", "Where does the campaign stand?", "go_map", "campaign"),
+    Entry("Go", "Reading", "Ctrl+2", "What does this spectrum say?", "go_reading", "campaign"),
+    Entry("Go", "Course", "Ctrl+3", "How is it going?", "go_course", "campaign"),
+    Entry("Go", "Doubts", "Ctrl+4", "What needs a person's eye?", "go_doubts", "campaign"),
+    Entry("Go", "Next inspection", "Ctrl+Right", "This panel, one inspection later", "later",
+          "campaign"),
+    Entry("Go", "Previous inspection", "Ctrl+Left", "This panel, one inspection earlier", "earlier",
+          "campaign"),
+    Entry("View", "Light or dark", "Ctrl+L", "Change between light and dark colours", "turn_tone"),
+    Entry("Help", "Cautions", "F1", "What the results do not say", "show_cautions"),
+)  # fmt: skip

@@ -1,0 +1,389 @@
+"""The main window: it wires the desk to the views, and does nothing else."""
+
+from __future__ import annotations
+
+import time
+from collections.abc import Callable
+from pathlib import Path
+
+from PySide6.QtCore import QModelIndex, QSettings, Qt
+from PySide6.QtGui import QAction, QCloseEvent, QDragEnterEvent, QDropEvent, QKeySequence
+from PySide6.QtWidgets import (
+    QApplication,
+    QButtonGroup,
+    QFileDialog,
+    QFrame,
+    QHBoxLayout,
+    QLabel,
+    QLineEdit,
+    QMainWindow,
+    QMenu,
+    QMessageBox,
+    QProgressBar,
+    QPushButton,
+    QScrollArea,
+    QSplitter,
+    QStackedWidget,
+    QTreeView,
+    QVBoxLayout,
+    QWidget,
+)
+
+from coatgui.assessment.cautions import cautions
+from coatgui.shipped import sample_panels
+from coatgui.window import palette
+from coatgui.window.actions import ACTIONS, Entry
+from coatgui.window.desk import Desk
+from coatgui.window.facts import facts
+from coatgui.window.places.course_place import CoursePlace
+from coatgui.window.places.doubts_place import DoubtsPlace
+from coatgui.window.places.map_place import MapPlace
+from coatgui.window.places.place import Place, plain_label
+from coatgui.window.places.reading_place import ReadingPlace
+from coatgui.window.tree_model import TreeModel
+
+_FILES = "Spectra and lists (*.csv *.txt *.dat *.tsv *.xlsx)"
+_CAMPAIGNS = "Campaigns (*.coatgui)"
+_RECENT = 8
+
+
+class MainWindow(QMainWindow):
+    def __init__(self, settings: QSettings, dark: bool) -> None:
+        super().__init__()
+        self.settings = settings
+        self.tone = palette.colours(dark)
+        self.desk = Desk(self)
+        self.setWindowTitle("coatgui")
+        self.setAcceptDrops(True)
+        self.resize(1280, 800)
+        self._actions: list[tuple[Entry, QAction]] = []
+        self._began = 0.0
+        self._build_menus()
+        self.pages = QStackedWidget()
+        self.setCentralWidget(self.pages)
+        self.pages.addWidget(self._welcome())
+        self.pages.addWidget(self._work())
+        self._build_status()
+        self.desk.campaign_changed.connect(self._campaign_changed)
+        self.desk.assessed.connect(self._campaign_changed)
+        self.desk.selected.connect(self._selected)
+        self.desk.worked.connect(self._worked)
+        self.desk.told.connect(self._told)
+        self._campaign_changed()
+
+    # --- building --------------------------------------------------------------------------
+
+    def _build_menus(self) -> None:
+        menus: dict[str, QMenu] = {}
+        for entry in ACTIONS:
+            menu = menus.get(entry.menu)
+            if menu is None:
+                menu = menus[entry.menu] = self.menuBar().addMenu(entry.menu)
+            action = QAction(entry.name, self)
+            action.setToolTip(entry.tip)
+            action.setStatusTip(entry.tip)
+            if entry.shortcut:
+                action.setShortcut(QKeySequence(entry.shortcut))
+            method: Callable[[], object] = getattr(self, entry.method)
+            action.triggered.connect(lambda _checked=False, call=method: call())
+            menu.addAction(action)
+            self._actions.append((entry, action))
+        self.recent = QMenu("Recent campaigns", self)
+        self.recent.aboutToShow.connect(self._fill_recent)
+        menus["Campaign"].insertMenu(menus["Campaign"].actions()[3], self.recent)
+
+    def _welcome(self) -> QWidget:
+        page = QWidget()
+        column = QVBoxLayout(page)
+        column.setAlignment(Qt.AlignmentFlag.AlignCenter)
+        column.setSpacing(16)
+        headline = plain_label("headline")
+        headline.setText("Coated panels, judged from their impedance spectra.")
+        words = plain_label()
+        words.setText(
+            "Open a folder of spectra, or drop it here: every reading is checked, fitted and "
+            "bounded, and the panels are followed over exposure time."
+        )
+        words.setMaximumWidth(560)
+        column.addWidget(headline)
+        column.addWidget(words)
+        row = QHBoxLayout()
+        row.setAlignment(Qt.AlignmentFlag.AlignLeft)
+        for text, call in (
+            ("Try the sample campaign", self.open_sample),
+            ("Open a folder of spectra…", self.open_folder),
+            ("Open a campaign…", self.open_campaign),
+        ):
+            button = QPushButton(text)
+            button.clicked.connect(lambda _checked=False, do=call: do())
+            row.addWidget(button)
+        column.addLayout(row)
+        return page
+
+    def _work(self) -> QWidget:
+        splitter = QSplitter()
+        splitter.setHandleWidth(1)
+        side = QFrame()
+        side.setObjectName("side")
+        left = QVBoxLayout(side)
+        left.setContentsMargins(8, 8, 8, 8)
+        self.filter = QLineEdit()
+        self.filter.setPlaceholderText("filter panels…")
+        self.filter.setAccessibleName("Filter panels by word")
+        self.filter.textChanged.connect(self._fill_tree)
+        self.model = TreeModel(self)
+        self.tree = QTreeView()
+        self.tree.setAccessibleName("Project tree")
+        self.tree.setHeaderHidden(True)
+        self.tree.setUniformRowHeights(True)
+        self.tree.setModel(self.model)
+        self.tree.selectionModel().currentChanged.connect(self._tree_picked)
+        left.addWidget(self.filter)
+        left.addWidget(self.tree, 1)
+        splitter.addWidget(side)
+        middle = QWidget()
+        column = QVBoxLayout(middle)
+        column.setContentsMargins(0, 0, 0, 0)
+        column.setSpacing(0)
+        bar = QHBoxLayout()
+        bar.setSpacing(0)
+        bar.setAlignment(Qt.AlignmentFlag.AlignLeft)
+        self.stack = QStackedWidget()
+        self.places: list[Place] = [
+            kind(self.desk, self.tone)
+            for kind in (MapPlace, ReadingPlace, CoursePlace, DoubtsPlace)
+        ]
+        self.buttons = QButtonGroup(self)
+        for i, place in enumerate(self.places):
+            button = QPushButton(place.noun)
+            button.setObjectName("place")
+            button.setCheckable(True)
+            button.setAccessibleDescription(place.question)
+            button.setToolTip(place.question)
+            self.buttons.addButton(button, i)
+            bar.addWidget(button)
+            self.stack.addWidget(place)
+        self.buttons.button(0).setChecked(True)
+        self.buttons.idClicked.connect(self.go)
+        column.addLayout(bar)
+        column.addWidget(self.stack, 1)
+        splitter.addWidget(middle)
+        self.facts = plain_label()
+        self.facts.setAlignment(Qt.AlignmentFlag.AlignTop)
+        self.facts.setContentsMargins(12, 12, 12, 12)
+        self.facts.setAccessibleName("Facts of the selection")
+        scroll = QScrollArea()
+        scroll.setWidget(self.facts)
+        scroll.setWidgetResizable(True)
+        scroll.setFrameShape(QFrame.Shape.NoFrame)
+        splitter.addWidget(scroll)
+        splitter.setSizes([200, 830, 250])
+        splitter.setStretchFactor(1, 1)
+        return splitter
+
+    def _build_status(self) -> None:
+        self.doing = QLabel()
+        self.bar = QProgressBar()
+        self.bar.setFixedWidth(180)
+        self.bar.setTextVisible(False)
+        self.bar.setAccessibleName("Progress of the work under way")
+        self.halt = QPushButton("stop")
+        self.halt.clicked.connect(self.desk.stop)
+        self.kept = QLabel()
+        for widget in (self.doing, self.bar, self.halt):
+            self.statusBar().addPermanentWidget(widget)
+            widget.hide()
+        self.statusBar().addPermanentWidget(self.kept)
+
+    # --- following the desk ----------------------------------------------------------------
+
+    def _campaign_changed(self) -> None:
+        file = self.desk.file
+        self.pages.setCurrentIndex(0 if file is None else 1)
+        title = "coatgui"
+        if file is not None:
+            title = f"{file.campaign.title} · coatgui"
+            self.kept.setText("kept in its file" if self.desk.is_saved else "not saved yet")
+            if self.desk.is_saved:
+                self._remember(file.path)
+        self.setWindowTitle(title)
+        for entry, action in self._actions:
+            name = None
+            if entry.needs in ("undo", "redo"):
+                name = getattr(file, f"{entry.needs}_name", None)
+                action.setText(f"{entry.name}: {name}" if name else entry.name)
+            there = {"": True, "campaign": file is not None}.get(entry.needs, name is not None)
+            action.setEnabled(there)
+        self._fill_tree()
+        for place in self.places:
+            place.show_campaign()
+        self._show_facts()
+
+    def _fill_tree(self) -> None:
+        self.model.show(self.desk.campaign, self.desk.assessment, self.filter.text())
+        self.tree.expandToDepth(1)
+        self._mark_in_tree()
+
+    def _mark_in_tree(self) -> None:
+        index = self.model.index_of(self.desk.selection)
+        if index.isValid():
+            blocked = self.tree.selectionModel().blockSignals(True)
+            self.tree.setCurrentIndex(index)
+            self.tree.scrollTo(index)
+            self.tree.selectionModel().blockSignals(blocked)
+            self.tree.viewport().update()
+
+    def _tree_picked(self, index: QModelIndex) -> None:
+        node = self.model.node(index)
+        if node.kind == "reading":
+            self.desk.select(node.key)
+
+    def _selected(self) -> None:
+        self._mark_in_tree()
+        for place in self.places:
+            place.show_selection()
+        self._show_facts()
+
+    def _show_facts(self) -> None:
+        self.facts.setText(facts(self.desk.reading_assessment(), self.desk.assessment))
+
+    def _worked(self, stage: str, done: int, total: int) -> None:
+        for widget in (self.doing, self.bar, self.halt):
+            widget.setVisible(bool(stage))
+        if not stage:
+            self._began = 0.0
+            return
+        now = time.monotonic()
+        self._began = self._began or now
+        left = ""
+        if total and 0 < done < total and now - self._began > 2.0:
+            left = f", {(now - self._began) / done * (total - done):.0f} s left"
+        self.doing.setText(f"{stage} {done} of {total}{left}" if total > 1 else stage)
+        self.bar.setMaximum(max(total, 0) if total > 1 else 0)
+        self.bar.setValue(done)
+
+    def _told(self, sentence: str) -> None:
+        self.statusBar().showMessage(sentence, 20_000)
+
+    # --- actions ---------------------------------------------------------------------------
+
+    def open_folder(self) -> None:
+        name = QFileDialog.getExistingDirectory(self, "A folder of spectra")
+        if name:
+            self.desk.open(Path(name))
+
+    def open_campaign(self) -> None:
+        name, _ = QFileDialog.getOpenFileName(self, "A campaign", "", _CAMPAIGNS)
+        if name:
+            self.desk.open(Path(name))
+
+    def open_sample(self) -> None:
+        self.desk.open(sample_panels())
+
+    def bring_in(self) -> None:
+        names, _ = QFileDialog.getOpenFileNames(self, "Spectra to bring in", "", _FILES)
+        if names:
+            self.desk.bring_in([Path(name) for name in names])
+
+    def save_as(self) -> None:
+        name, _ = QFileDialog.getSaveFileName(self, "Keep the campaign as", "", _CAMPAIGNS)
+        if name:
+            self.desk.save_as(Path(name).with_suffix(".coatgui"))
+
+    def write_workbook(self) -> None:
+        name, _ = QFileDialog.getSaveFileName(self, "Workbook", "", "Workbooks (*.xlsx)")
+        if name:
+            self.desk.export(Path(name).with_suffix(".xlsx"))
+
+    def write_data(self) -> None:
+        name, _ = QFileDialog.getSaveFileName(self, "Data", "", "JSON (*.json)")
+        if name:
+            self.desk.export(Path(name).with_suffix(".json"))
+
+    def undo(self) -> None:
+        self.desk.undo()
+
+    def redo(self) -> None:
+        self.desk.redo()
+
+    def go(self, place: int) -> None:
+        self.stack.setCurrentIndex(place)
+        self.buttons.button(place).setChecked(True)
+
+    def go_map(self) -> None:
+        self.go(0)
+
+    def go_reading(self) -> None:
+        self.go(1)
+
+    def go_course(self) -> None:
+        self.go(2)
+
+    def go_doubts(self) -> None:
+        self.go(3)
+
+    def later(self) -> None:
+        self.desk.step(1)
+
+    def earlier(self) -> None:
+        self.desk.step(-1)
+
+    def turn_tone(self) -> None:
+        self.tone = palette.colours(not self.tone.dark)
+        self.settings.setValue("dark", self.tone.dark)
+        application = QApplication.instance()
+        if isinstance(application, QApplication):
+            palette.apply(application, self.tone)
+        for place in self.places:
+            place.paint_in(self.tone)
+
+    def show_cautions(self) -> None:
+        box = QMessageBox(self)
+        box.setWindowTitle("Cautions")
+        box.setTextFormat(Qt.TextFormat.PlainText)
+        box.setText("What the results do not say")
+        box.setInformativeText("\n\n".join(cautions()))
+        box.exec()
+
+    # --- recent campaigns, drops, closing --------------------------------------------------
+
+    def _recent_names(self) -> list[str]:
+        names = self.settings.value("recent", [])
+        return [str(name) for name in names] if isinstance(names, list) else [str(names)]
+
+    def _remember(self, path: Path) -> None:
+        names = [str(path), *(n for n in self._recent_names() if n and n != str(path))]
+        self.settings.setValue("recent", names[:_RECENT])
+
+    def _fill_recent(self) -> None:
+        self.recent.clear()
+        for name in filter(None, self._recent_names()):
+            action = self.recent.addAction(Path(name).name.replace("&", "&&"))
+            action.setToolTip(name)
+            action.triggered.connect(lambda _c=False, path=name: self.desk.open(Path(path)))
+        if self.recent.isEmpty():
+            self.recent.addAction("none yet").setEnabled(False)
+
+    def dragEnterEvent(self, event: QDragEnterEvent) -> None:
+        if event.mimeData().hasUrls():
+            event.acceptProposedAction()
+
+    def dropEvent(self, event: QDropEvent) -> None:
+        paths = [Path(url.toLocalFile()) for url in event.mimeData().urls() if url.isLocalFile()]
+        if len(paths) == 1 and paths[0].suffix == ".coatgui":
+            self.desk.open(paths[0])
+        elif paths:
+            self.desk.bring_in(paths)
+
+    def closeEvent(self, event: QCloseEvent) -> None:
+        if not self.desk.is_saved and self.desk.file is not None and self.desk.file.undo_name:
+            answer = QMessageBox.question(
+                self,
+                "Not saved",
+                "This campaign was edited and never saved. Close it and lose it?",
+            )
+            if answer != QMessageBox.StandardButton.Yes:
+                event.ignore()
+                return
+        self.desk.close()
+        event.accept()
