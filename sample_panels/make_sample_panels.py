@@ -187,7 +187,7 @@ def faulty(name: str, z: np.ndarray, rng: np.random.Generator) -> tuple[np.ndarr
     if name == "M1_168h":
         near = np.abs(FREQUENCY_HZ - 50.0).argmin()
         z[near] *= 1.25 * np.exp(0.2j)
-        return z, "mains pick-up"
+        return z, "disturbed point near the mains frequency"
     if name == "P2_336h":
         slow = np.clip(np.log10(1.0 / FREQUENCY_HZ), 0.0, None)
         return z * (1.0 - 0.12 * slow), "low-frequency drift"

@@ -123,7 +123,14 @@ def cells(text: str, encoding: str) -> Grid:
     most = max(entry[0] for entry in best)
     good = [entry for entry in best if entry[0] >= 0.9 * most and entry[1] > -1000]
     order = {";": 0, "\t": 1, "|": 2, ",": 3, " ": 4}
-    good.sort(key=lambda e: (-_consistency(e[4], e[3]), order[e[2]], -_signs(e[4], e[3])))
+    good.sort(
+        key=lambda e: (
+            -_consistency(e[4], e[3]),
+            -_numeric_share(e[4], e[3]),
+            order[e[2]],
+            -_signs(e[4], e[3]),
+        )
+    )
     _, _, delimiter, decimal_sign, lines = good[0]
     return Grid(encoding, delimiter, decimal_sign, tuple(lines))
 
@@ -144,6 +151,13 @@ def _consistency(lines: list[tuple[str, ...]], decimal_sign: str) -> float:
         for row in rows
     )
     return round(whole / len(rows), 2)
+
+
+def _numeric_share(lines: list[tuple[str, ...]], decimal_sign: str) -> float:
+    """Share of numeric cells on numeric lines: parted wrongly, cells are half numbers."""
+    rows = [row for row in lines if sum(is_number(c, decimal_sign) for c in row) >= 2]
+    number = sum(is_number(c, decimal_sign) for row in rows for c in row)
+    return round(number / max(sum(len(row) for row in rows), 1), 2)
 
 
 def _signs(lines: list[tuple[str, ...]], decimal_sign: str) -> int:

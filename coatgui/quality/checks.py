@@ -182,7 +182,21 @@ class _Reading:
             return
         least = max(limits["wild_point_sigma"] * self.scatter, limits["step_percent"] / 100)
         jump = np.abs(np.diff(self.off[slow].real))
-        for place in np.nonzero(jump > least)[0]:
+        places = np.nonzero(jump > least)[0]
+        if places.size > 3:
+            fast = hertz(float(self.frequency[slow[places[0]]]))
+            end = hertz(float(self.frequency[slow[places[-1] + 1]]))
+            yield Finding(
+                "step",
+                Severity.DOUBT,
+                f"|Z| steps by {100 * jump[places].min():.1f} to {100 * jump[places].max():.1f} % "
+                f"at {places.size} places between {fast} and {end}, which no circuit does: the "
+                "panel or the instrument's range changed during the sweep.",
+                tuple(int(slow[p]) for p in places),
+                (("percent", 100 * float(jump[places].max())),),
+            )
+            return
+        for place in places:
             here, there = int(slow[place]), int(slow[place + 1])
             yield Finding(
                 "step",

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from typing import Any
 
+import numpy as np
 import pyqtgraph as pg
 
 from coatgui.window.numbers import prefixed
@@ -43,22 +44,46 @@ class DecadeAxis(pg.AxisItem):  # type: ignore[misc, unused-ignore]
         return [prefixed(10.0**value, self.unit, digits) for value in values]
 
 
+class AmountAxis(pg.AxisItem):  # type: ignore[misc, unused-ignore]
+    """An axis for plain values, its ticks written with engineering prefixes."""
+
+    def __init__(self, orientation: str, unit: str) -> None:
+        super().__init__(orientation)
+        self.unit = unit
+        self.enableAutoSIPrefix(False)
+
+    def tickValues(self, low: float, high: float, size: float) -> list[tuple[float, list[float]]]:
+        """The coarsest ticks alone, and of them so many as have room for their words."""
+        spacing, values = super().tickValues(low, high, size)[0]
+        values = list(values)
+        step = max(int(np.ceil(len(values) * 64.0 / max(size, 1.0))), 1)
+        return [(spacing, values[::step])]
+
+    def tickStrings(self, values: list[float], scale: float, spacing: float) -> list[str]:
+        return ["0" if abs(v) < 1e-9 * spacing else prefixed(v, self.unit, 2) for v in values]
+
+
 class Plot(pg.PlotWidget):  # type: ignore[misc, unused-ignore]
     """A plot with decade axes where a unit is given, plain ones elsewhere, in our colours."""
 
     def __init__(
-        self, name: str, bottom: tuple[str, str | None], left: tuple[str, str | None]
+        self,
+        name: str,
+        bottom: tuple[str, str | None],
+        left: tuple[str, str | None],
+        *,
+        decades: bool = True,
     ) -> None:
         axes: dict[str, Any] = {}
         for side, (_, unit) in (("bottom", bottom), ("left", left)):
             if unit is not None:
-                axes[side] = DecadeAxis(side, unit)
+                axes[side] = (DecadeAxis if decades else AmountAxis)(side, unit)
         super().__init__(axisItems=axes)
         self._titles = {"bottom": bottom[0], "left": left[0]}
         self.setAccessibleName(name)
         self.setMenuEnabled(False)
         self.hideButtons()
-        self.getPlotItem().getAxis("left").setWidth(74)
+        self.getPlotItem().getAxis("left").setWidth(88)
 
     def paint_in(self, ground: str, ink: str, line: str) -> None:
         """Take on the window's colours."""

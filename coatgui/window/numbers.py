@@ -9,7 +9,7 @@ from coatgui.records import Bound, Quantity
 _PREFIXES = {-15: "f", -12: "p", -9: "n", -6: "µ", -3: "m", 0: "", 3: "k", 6: "M", 9: "G", 12: "T"}
 _PLAIN_UNITS = ("", "vol-%", "%", "h")
 WORDS = {
-    Bound.TWO_SIDED: "between the limits",
+    Bound.TWO_SIDED: "two-sided",
     Bound.AT_LEAST: "→ at least",
     Bound.AT_MOST: "← at most",
     Bound.FIXED: "fixed",
@@ -25,14 +25,12 @@ def prefixed(value: float, unit: str, digits: int = 3) -> str:
         return f"{value:.{digits}g} {unit}".strip()
     power = min(max(3 * math.floor(math.log10(abs(value)) / 3 + 1e-9), -15), 12)
     scaled = value / 10.0**power
-    if (
-        round(scaled, max(digits - 1 - math.floor(math.log10(abs(scaled))), 0)) >= 1000
-        and power < 12
-    ):
+    if abs(float(f"{scaled:.{digits}g}")) >= 1000 and power < 12:
         power += 3
         scaled /= 1000.0
+    scaled = float(f"{scaled:.{digits}g}")
     places = max(digits - 1 - math.floor(math.log10(abs(scaled))), 0)
-    number = f"{scaled:.{places}f}" if abs(scaled) < 10.0**digits * 10 else f"{scaled:.{digits}g}"
+    number = f"{scaled:.{places}f}"
     if not unit[:1].isalpha() and unit[:1] not in "Ω°":
         return f"{value:.{digits}g} {unit}"
     return f"{number} {_PREFIXES[power]}{unit}"

@@ -60,7 +60,13 @@ def ramp(share: float, dark: bool) -> tuple[QColor, QColor]:
     share = min(max(share, 0.0), 1.0)
     lightness = 0.93 - 0.65 * share
     ground = QColor.fromHslF(0.56, 0.30, lightness)
-    return ground, QColor("#20282E" if lightness > 0.58 else "#FFFFFF")
+    # Black and white stand at equal contrast where the relative luminance is 0.179.
+    linear = [
+        c / 12.92 if c <= 0.04045 else ((c + 0.055) / 1.055) ** 2.4
+        for c in (ground.redF(), ground.greenF(), ground.blueF())
+    ]
+    luminance = 0.2126 * linear[0] + 0.7152 * linear[1] + 0.0722 * linear[2]
+    return ground, QColor("#000000" if luminance > 0.179 else "#FFFFFF")
 
 
 def apply(application: QApplication, tone: Colours) -> None:

@@ -1,0 +1,148 @@
+"""A matrix of dialects: every combination is read to the exact numbers."""
+
+from __future__ import annotations
+
+from itertools import product
+from pathlib import Path
+
+import numpy as np
+import pytest
+
+from coatgui.intake import Unreadable, UnreadableFolder, read_files, read_folder, read_spectra
+
+FREQUENCY = np.logspace(5, -2, 29)
+S = 2j * np.pi * FREQUENCY
+IMPEDANCE = 120 + 1 / (2e-9 * S**0.95 + 1 / (4e6 + 1 / (3e-7 * S**0.85)))
+
+HEADINGS = {
+    "english": ("Frequency ({f})", "Zreal ({z})", "{s}Zimag ({z})", "|Z| ({z})", "{s}Phase ({p})"),
+    "german": ("Frequenz [{f}]", "Realteil [{z}]", "{s}Imaginärteil [{z}]", "Betrag [{z}]",
+               "{s}Phasenwinkel [{p}]"),
+    "symbols": ("f / {f}", "Z' / {z}", "{s}Z'' / {z}", "|Z| / {z}", "{s}phase / {p}"),
+    "none": (),
+}  # fmt: skip
+UNITS = {"plain": ("Hz", 1.0, "Ohm", 1.0), "kilo": ("kHz", 1e3, "kOhm", 1e3)}
+
+MATRIX = [
+    case
+    for case in product(
+        (",", ";", "\t", " "),
+        (".", ","),
+        ("utf-8", "utf-8-sig", "utf-16", "cp1252"),
+        HEADINGS,
+        UNITS,
+        (False, True),  # sign of the imaginary part turned
+        (False, True),  # ascending
+        (False, True),  # polar
+    )
+    # The decimal sign cannot be the delimiter; units need headings; blanks part headings too.
+    if case[0] != case[1]
+    and not (case[3] == "none" and case[4] == "kilo")
+    and not (case[0] == " " and case[3] != "none")
+]
+
+
+def write(case: tuple[str, str, str, str, str, bool, bool, bool]) -> bytes:
+    delimiter, sign, encoding, language, units, turned, ascending, polar = case
+    f_unit, f_factor, z_unit, z_factor = UNITS[units]
+    first = np.abs(IMPEDANCE) if polar else IMPEDANCE.real
+    second = np.degrees(np.angle(IMPEDANCE)) if polar else IMPEDANCE.imag / z_factor
+    second = -second if turned else second
+    rows = np.column_stack([FREQUENCY / f_factor, first / z_factor, second])
+    rows = rows[::-1] if ascending else rows
+    lines = []
+    names = HEADINGS[language]
+    if names:
+        chosen = (names[0], names[3], names[4]) if polar else names[:3]
+        words = [n.format(f=f_unit, z=z_unit, p="deg", s="-" if turned else "") for n in chosen]
+        lines += ["Bench 3, second cell", delimiter.join(words)]
+    for row in rows:
+        lines.append(delimiter.join(repr(float(v)).replace(".", sign) for v in row))
+    return ("\r\n".join(lines) + "\r\n").encode(encoding)
+
+
+def test_the_matrix_is_large() -> None:
+    assert len(MATRIX) >= 600
+
+
+@pytest.mark.parametrize("chunk", range(12))
+def test_every_dialect_is_read_to_the_numbers(chunk: int) -> None:
+    for case in MATRIX[chunk::12]:
+        (piece,) = read_spectra(write(case), "x.csv")
+        assert np.allclose(piece.spectrum.frequency_hz, FREQUENCY, rtol=1e-12), case
+        assert np.allclose(piece.spectrum.impedance_ohm, IMPEDANCE, rtol=1e-9), case
+
+
+BASE = "frequency_hz,real_ohm,imaginary_ohm\n" + "\n".join(
+    f"{f!r},{z.real!r},{z.imag!r}"
+    for f, z in zip(FREQUENCY.tolist(), IMPEDANCE.tolist(), strict=True)
+)
+
+
+@pytest.mark.parametrize(
+    ("data", "words"),
+    [
+        (b"", "no table"),
+        (b"only words here\nand here\n", "no table"),
+        (b"\x89PNG\r\n\x1a\n\x00\x00\x00\rIHDR" + bytes(range(256)) * 8, "not text"),
+        (BASE.replace("120", "12o", 1).encode(), "not a number"),
+        ("\n".join(BASE.splitlines()[:12]).rsplit(",", 1)[0].encode(), "cut short"),
+        (BASE.replace("frequency_hz", "height").encode(), "frequency"),
+        (BASE.replace(repr(float(FREQUENCY[3])), "-5.0").encode(), "not positive"),
+    ],
+)
+def test_what_cannot_be_read_is_refused_with_a_reason(data: bytes, words: str) -> None:
+    with pytest.raises(Unreadable, match=words):
+        read_spectra(data, "x.csv")
+
+
+def test_stacked_times_become_readings_of_one_panel(tmp_path: Path) -> None:
+    lines = ["time (h);f (Hz);Zre (ohm);Zim (ohm)"]
+    for hours in (1, 24, 168):
+        for f, z in zip(FREQUENCY, IMPEDANCE * hours, strict=True):
+            lines.append(f"{hours};{f!r};{z.real!r};{z.imag!r}".replace("np.float64", "").translate(
+                {ord("("): "", ord(")"): ""}))  # fmt: skip
+    (tmp_path / "A7.csv").write_text("\n".join(lines), encoding="utf-8")
+    found = read_files([tmp_path / "A7.csv"])
+    assert [(r.panel, r.exposure_h, len(r.spectrum)) for r in found.readings] == [
+        ("A7", 1.0, 29), ("A7", 24.0, 29), ("A7", 168.0, 29)
+    ]  # fmt: skip
+    assert [r.source.part for r in found.readings] == ["1 h", "24 h", "168 h"]
+
+
+def test_names_lists_and_doubles(tmp_path: Path) -> None:
+    (tmp_path / "B-2_14d.csv").write_text(BASE, encoding="utf-8")
+    (tmp_path / "again_1h.csv").write_text(BASE, encoding="utf-8")
+    (tmp_path / "ümläut ß.csv").write_text(BASE.replace("120", "121"), encoding="utf-8")
+    (tmp_path / "lost.csv").write_text(BASE + "\n", encoding="utf-8")
+    (tmp_path / "panels.csv").write_text(
+        "panel,formulation,area_cm2,colour\nB-2,Grey,12.5,blue\n", encoding="utf-8"
+    )
+    (tmp_path / "readings.csv").write_text(
+        "file,panel,exposure_h,temperature_c\nümläut ß.csv,B-2,24,22.5\ngone.csv,B-2,1,\n",
+        encoding="utf-8",
+    )
+    found = read_folder(tmp_path)
+    times = sorted((r.panel, r.exposure_h) for r in found.readings)
+    assert times == [("B-2", 24.0), ("B-2", 336.0)]
+    assert found.panels[0].notes == (("colour", "blue"),)
+    reasons = {r.file: r.reason for r in found.refused}
+    assert set(reasons) == {"again_1h.csv", "lost.csv", "gone.csv"}
+    assert "B-2_14d.csv" in reasons["again_1h.csv"]
+
+
+def test_a_few_positive_points_stay_as_measured() -> None:
+    odd = IMPEDANCE.copy()
+    odd[:4] = odd[:4].conj()
+    text = "f,Zre,Zim\n" + "\n".join(
+        f"{f},{z.real},{z.imag}" for f, z in zip(FREQUENCY, odd, strict=True)
+    )
+    (piece,) = read_spectra(text.encode(), "x.csv")
+    assert (piece.spectrum.impedance_ohm.imag > 0).sum() == 4
+
+
+def test_a_folder_with_nothing_in_it(tmp_path: Path) -> None:
+    with pytest.raises(UnreadableFolder):
+        read_folder(tmp_path)
+    with pytest.raises(UnreadableFolder):
+        read_folder(tmp_path / "nowhere")
