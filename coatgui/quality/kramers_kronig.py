@@ -19,14 +19,14 @@ import numpy as np
 from coatgui.records import BoolArray, ComplexArray, FloatArray
 
 _TERMS_PER_DECADE = 4.0
-_RIDGES = np.logspace(-9, -1, 9)
+_RIDGES = np.logspace(-18, -2, 9)
 _ROUNDS = 4
 _BIWEIGHT = 6.0
 
 
 def _basis(omega: FloatArray, admittance: bool) -> ComplexArray:
     """Columns (N, K) of the measurement model."""
-    low, high = np.log10(1.0 / omega.max()) - 0.5, np.log10(1.0 / omega.min()) + 0.5
+    low, high = np.log10(1.0 / omega.max()) - 1.0, np.log10(1.0 / omega.min()) + 1.0
     count = max(int(np.ceil((high - low) * _TERMS_PER_DECADE)), 4)
     tau = np.logspace(low, high, count)
     relaxation = 1.0 / (1.0 + 1j * omega[:, None] * tau)

@@ -1,0 +1,112 @@
+"""The command line on the sample campaign and on wrong calls."""
+
+from __future__ import annotations
+
+import json
+from pathlib import Path
+
+import openpyxl
+import pytest
+
+from coatgui import __version__
+from coatgui.cli import main
+from coatgui.shipped import sample_panels
+
+
+@pytest.fixture(scope="module")
+def outputs(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    folder = tmp_path_factory.mktemp("outputs")
+    status = main(
+        [
+            *("assess", str(sample_panels()), "--quiet", "--workers", "1"),
+            *("--json", str(folder / "o.json"), "--workbook", str(folder / "o.xlsx")),
+            *("--campaign", str(folder / "o.coatgui")),
+        ]
+    )
+    assert status == 1  # some input was refused, on purpose
+    return folder
+
+
+def test_the_json_keeps_to_its_schema(outputs: Path) -> None:
+    data = json.loads((outputs / "o.json").read_text(encoding="utf-8"))
+    assert data["schema"] == "coatgui-assessment/1"
+    assert len(data["readings"]) == 107
+    assert {r["file"] for r in data["refused"]} == {"K4_3h.csv", "notes.txt", "K1_24h_again.csv"}
+    reading = next(r for r in data["readings"] if r["panel"] == "P1" and r["exposure_h"] == 336)
+    assert set(reading["modulus"]) == {"0.1", "0.01"}
+    assert reading["modulus"]["0.1"]["status"] in ("measured", "interpolated", "not_reached")
+    assert {"read", "used", "left_out"} == set(reading["points"])
+    assert {"symbol", "value", "unit", "low", "high", "bound"} <= set(reading["parameters"][0])
+    assert {"f_per_cm2", "low", "high", "method"} <= set(reading["coating_capacitance"])
+    assert {"ohm_cm2", "low", "high", "bound"} <= set(reading["pore_resistance"])
+    assert {"volume_percent", "low", "high", "method", "reference_h"} <= set(
+        reading["water_uptake"]
+    )
+    rejected = next(r for r in data["readings"] if r["panel"] == "P3" and r["exposure_h"] == 504)
+    assert rejected["model"] is None
+    assert "reject" in {f["severity"] for f in rejected["findings"]}
+
+
+def test_the_workbook_reads_back(outputs: Path) -> None:
+    book = openpyxl.load_workbook(outputs / "o.xlsx")
+    assert book.sheetnames[:3] == ["Summary", "Readings", "Parameters"]
+    rows = list(book["Readings"].iter_rows(values_only=True))
+    assert len(rows) == 108
+    assert "at least" in {cell for row in rows for cell in row}
+    for sheet in book:
+        for row in sheet.iter_rows():
+            assert all(cell.data_type != "f" for cell in row)
+
+
+def test_a_kept_campaign_is_sound_and_gives_the_same(
+    outputs: Path, capsys: pytest.CaptureFixture[str], tmp_path: Path
+) -> None:
+    assert main(["check", str(outputs / "o.coatgui")]) == 0
+    again = tmp_path / "again.json"
+    kept = str(outputs / "o.coatgui")
+    assert main(["assess", kept, "--json", str(again), "--workers", "1"]) == 1
+    first = json.loads((outputs / "o.json").read_text(encoding="utf-8"))
+    second = json.loads(again.read_text(encoding="utf-8"))
+    first.pop("title"), second.pop("title")
+    assert first == second
+    shown = capsys.readouterr()
+    assert "K slow-cure epoxy is ahead" in shown.out
+    assert "does not predict service life" in shown.out
+    assert "refused notes.txt" in shown.err
+
+
+@pytest.mark.parametrize(
+    ("arguments", "words"),
+    [
+        (["assess"], "required"),
+        (["assess", "no such folder"], "there is no"),
+        (["assess", ".", "--workers", "0"], "at least 1"),
+        (["assess", ".", "--json", "no such folder/x.json"], "make it first"),
+        (["assess", ".", "--campaign", "x.sqlite"], ".coatgui"),
+        (["assess", ".", "--json", "x.j", "--workbook", "x.j"], "same file"),
+        (["check", "no such file"], ""),
+        (["no such folder"], "there is no"),
+        (["--frobnicate"], "--help"),
+    ],
+)
+def test_a_wrong_call_is_one_line_and_two(
+    arguments: list[str], words: str, capsys: pytest.CaptureFixture[str]
+) -> None:
+    assert main(arguments) == 2
+    error = capsys.readouterr().err
+    assert words in error
+    assert "Traceback" not in error
+
+
+def test_nothing_usable(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    (tmp_path / "prose.txt").write_text("no numbers here", encoding="utf-8")
+    assert main(["assess", str(tmp_path)]) == 2
+    assert "nothing usable" in capsys.readouterr().err
+    assert main(["assess", str(tmp_path / "prose.txt")]) == 2
+
+
+def test_the_version(capsys: pytest.CaptureFixture[str]) -> None:
+    with pytest.raises(SystemExit) as stopped:
+        main(["--version"])
+    assert stopped.value.code == 0
+    assert __version__ in capsys.readouterr().out
