@@ -4,33 +4,35 @@ A constant-phase element Q (jω)^n is not a capacitor; which capacitance it stan
 case, so the law is always named (formulas from memory of the papers, checked by their limit C = Q
 for n → 1):
 
+* film, at the settings' high frequency ω (10 kHz), where its capacitance carries the current
+  whether it blocks or has pores:  C = Im(Q (jω)^n)/ω = Q sin(nπ/2) ω^{n−1}
 * film whose parallel resistance R turns over inside the window (Hsu and Mansfeld, Corrosion 57
-  (2001) 747):                  C = Q^{1/n} R^{(1−n)/n}
-* film that blocks as far as the window reaches: its capacitance at the settings' high frequency ω,
-                                C = Im(Q (jω)^n)/ω = Q sin(nπ/2) ω^{n−1}
+  (2001) 747):                     C = Q^{1/n} R^{(1−n)/n}
 * interface with the ohmic resistance R_e in front of it (Brug et al., J. Electroanal. Chem. 176
-  (1984) 275):                  C = Q^{1/n} (1/R_e + 1/R_ct)^{(n−1)/n}
+  (1984) 275):                     C = Q^{1/n} (1/R_e + 1/R_ct)^{(n−1)/n}
 
 Below n = 0.7 nothing is converted.
 
-The two film laws can differ by half their value at n = 0.95, so a panel whose pores begin to
-conduct would seem to jump if each reading went by its own case. A panel therefore uses one law for
-all its readings: Hsu and Mansfeld where every one of them allows it, else the capacitance at the
-high frequency. Water uptake needs the strictest footing of all and *always* uses the latter.
+The two film laws read the element at different frequencies: 10 kHz, and the turning frequency
+1/(2πRC), which wanders as the pores open. At n = 0.975 and a turning at 0.2 Hz they differ by a
+third, and on a film that keeps its water Hsu and Mansfeld's falls week by week with R. So *the*
+coating capacitance, its course, drying and water uptake all rest on the first law, in every reading
+alike; where the second one's case is given, its value stands beside it among the parameters (C_c).
+
+The open leads lie in parallel with the film; their capacitance is taken away from the film's.
 
 Limits: the gradient of ln C on the logarithms of the parameters, with the fit's covariance. Without
 one, the absolute contributions are added, as if all errors conspired; but where the high frequency
 lies inside the used points, the curve runs through them and cannot miss by more than their scatter.
 
 Straight from the data at one frequency: parallel C = −Z″/(ω|Z|²), series C = −1/(ωZ″), after taking
-away the admittance of the open leads, which lie in parallel with the film.
+away the admittance of the open leads.
 """
 
 from __future__ import annotations
 
 import math
 from dataclasses import dataclass
-from enum import Enum, auto
 
 import numpy as np
 
@@ -48,14 +50,6 @@ from coatgui.records import (
     Severity,
     Spectrum,
 )
-
-
-class FilmLaw(Enum):
-    """Which law turns the film's constant-phase element into a capacitance."""
-
-    HSU_MANSFELD = auto()
-    HIGH_FREQUENCY = auto()
-
 
 # Symbols of Q, n and the resistance in parallel, for every layer that can belong to a film.
 _FILM_LAYERS = (("Q_c", "n_c", "R_po"), ("Q_1", "n_1", "R_1"), ("Q_2", "n_2", "R_2"))
@@ -101,19 +95,20 @@ def small_exponent_finding(fit: Fit) -> Finding | None:
     )
 
 
-def law_that_fits(fit: Fit, spectrum: Spectrum) -> FilmLaw:
-    """The film law for this reading on its own: Hsu and Mansfeld where one film layer has a
-    two-sided resistance whose turning frequency (RQ)^(-1/n)/2π lies among the used points."""
+def turning_frequency(fit: Fit, spectrum: Spectrum) -> float | None:
+    """(RQ)^(-1/n)/2π in Hz, where the film's resistance takes over from its capacitance; None where
+    it does not lie among the used points, the data do not hold R from both sides, or the film is
+    not a single layer."""
     layers = _film_layers(fit)
     if len(layers) != 1 or layers[0].r is None:
-        return FilmLaw.HIGH_FREQUENCY
+        return None
     q, n, r = layers[0].q.quantity, layers[0].n.quantity, layers[0].r.quantity
     if r.bound is not Bound.TWO_SIDED or not (q.value and n.value and r.value):
-        return FilmLaw.HIGH_FREQUENCY
-    turning = (r.value * q.value) ** (-1 / n.value) / (2 * math.pi)
+        return None
+    turning = float((r.value * q.value) ** (-1 / n.value) / (2 * math.pi))
     used = spectrum.frequency_hz[fit.used]
     inside = bool(used.size) and float(used[-1]) < turning < float(used[0])
-    return FilmLaw.HSU_MANSFELD if inside else FilmLaw.HIGH_FREQUENCY
+    return turning if inside else None
 
 
 # ---------------------------------------------------------------------------------------------
@@ -142,29 +137,57 @@ def at_frequency(q: float, n: float, frequency_hz: float) -> float:
 def film_capacitance(
     fit: Fit,
     spectrum: Spectrum,
-    law: FilmLaw,
     frequency_hz: float,
     area_cm2: float | None,
+    open_lead: Spectrum | None = None,
 ) -> Quantity | None:
-    """The film's capacitance by `law`, F/cm² (F without area); stacked layers count in series.
+    """The film's capacitance at one frequency, F/cm² (F without area); stacked layers in series.
 
     None where the model has no film, an n is below 0.7, or no limits can be given.
     """
     layers = _film_layers(fit)
     if not layers or small_exponent_finding(fit) is not None:
         return None
-    if law is FilmLaw.HSU_MANSFELD:
-        value, gradient, method = _by_hsu_mansfeld(layers[0])
-    else:
-        value, gradient, method = _at_high_frequency(layers, frequency_hz)
+    value, gradient, method = _at_high_frequency(layers, frequency_hz)
     deviation = _deviation(fit, gradient)
-    if law is FilmLaw.HIGH_FREQUENCY and fit.log_covariance is None:
+    if fit.log_covariance is None:
         used = spectrum.frequency_hz[fit.used]
         if used.size and used[-1] <= frequency_hz <= used[0]:
             scatter = relative_scatter(spectrum, fit.used, fit, frequency_hz)
             deviation = scatter if deviation is None else min(scatter, deviation)
+    return _without_leads(value, deviation, method, frequency_hz, area_cm2, open_lead)
+
+
+def hsu_mansfeld_capacitance(
+    fit: Fit, spectrum: Spectrum, area_cm2: float | None, open_lead: Spectrum | None = None
+) -> Quantity | None:
+    """The film's capacitance by Hsu and Mansfeld, F/cm² (F without area); None where the film's
+    resistance does not turn over inside the window or its n is below 0.7."""
+    turning = turning_frequency(fit, spectrum)
+    if turning is None or small_exponent_finding(fit) is not None:
+        return None
+    value, gradient, method = _by_hsu_mansfeld(_film_layers(fit)[0])
+    return _without_leads(value, _deviation(fit, gradient), method, turning, area_cm2, open_lead)
+
+
+def _without_leads(
+    value: float,
+    deviation: float | None,
+    method: str,
+    frequency_hz: float,
+    area_cm2: float | None,
+    open_lead: Spectrum | None,
+) -> Quantity | None:
+    """The capacitance less that of the leads at a frequency, keeping its absolute error."""
     if deviation is None or not math.isfinite(deviation):
         return None
+    if open_lead is not None:
+        admittance = complex(leads_admittance(open_lead, np.array([frequency_hz]))[0])
+        film = value - admittance.imag / (2 * math.pi * frequency_hz)
+        if film <= 0:
+            return None
+        deviation, value = deviation * value / film, film
+        method += ", without the open leads"
     return per_area(from_logarithm(value, deviation, "F", method), area_cm2)
 
 
@@ -176,7 +199,7 @@ def _by_hsu_mansfeld(layer: _Layer) -> tuple[float, dict[str, float], str]:
         layer.n.symbol: -math.log(q * r) / n,
         layer.r.symbol: (1 - n) / n,
     }
-    method = "Hsu–Mansfeld, with the film's resistance inside the window"
+    method = "Hsu–Mansfeld, at the film's own turning frequency"
     return hsu_mansfeld(q, n, r), gradient, method
 
 

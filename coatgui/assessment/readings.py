@@ -13,6 +13,8 @@ import numpy as np
 
 from coatgui.assessment.amounts import parameters_per_area
 from coatgui.assessment.capacitance import (
+    film_capacitance,
+    hsu_mansfeld_capacitance,
     interface_capacitance,
     measured_capacitance,
     small_exponent_finding,
@@ -33,6 +35,7 @@ from coatgui.records import (
     Reading,
     ReadingAssessment,
     Severity,
+    Spectrum,
 )
 
 NO_FORMULATION = "Unassigned"
@@ -117,6 +120,14 @@ def draw_readings(
             campaign.open_lead,
         )
         if d.fit is not None:
+            d.coating_capacitance = film_capacitance(
+                d.fit,
+                spectrum,
+                settings.capacitance_frequency_hz,
+                d.area_cm2,
+                campaign.open_lead,
+            )
+            d.parameters = _parameters(d.fit, spectrum, d.area_cm2, campaign.open_lead)
             d.pore_resistance = pore_resistance(d.fit, spectrum, d.area_cm2, campaign.open_lead)
             d.findings.extend(
                 f for f in (note, small_exponent_finding(d.fit), *_fit_findings(d.fit)) if f
@@ -174,7 +185,7 @@ def reading_assessment(
         counts=d.counts,
         modulus=tuple(m for m in d.moduli if m.frequency_hz in modulus_frequencies_hz),
         fit=d.fit,
-        parameters=_parameters(d.fit, d.area_cm2),
+        parameters=d.parameters,
         coating_capacitance=d.coating_capacitance,
         capacitance_at_high_frequency=d.measured_capacitance,
         pore_resistance=d.pore_resistance,
@@ -182,14 +193,29 @@ def reading_assessment(
     )
 
 
-def _parameters(fit: Fit | None, area_cm2: float | None) -> tuple[Parameter, ...]:
-    """The fit's parameters per area, and the interface's capacitance that follows from them."""
-    if fit is None:
-        return ()
+def _parameters(
+    fit: Fit, spectrum: Spectrum, area_cm2: float | None, open_lead: Spectrum | None
+) -> tuple[Parameter, ...]:
+    """The fit's parameters per area, and the capacitances that follow from them by the laws of film
+    and interface."""
     parameters = parameters_per_area(fit.parameters, area_cm2)
-    interface = interface_capacitance(fit, area_cm2)
-    if interface is None or any(p.symbol == "C_dl" for p in parameters):
-        return parameters
-    layer = next(p.layer for p in parameters if p.symbol == "Q_dl")
-    meaning = "capacitance of the interface, from Q_dl and n_dl"
-    return (*parameters, Parameter("C_dl", meaning, layer, interface))
+    layers = {p.symbol: p.layer for p in parameters}
+    derived = (
+        (
+            "C_c",
+            "Q_c",
+            "capacitance of the film, from Q_c, n_c and R_po",
+            hsu_mansfeld_capacitance(fit, spectrum, area_cm2, open_lead),
+        ),
+        (
+            "C_dl",
+            "Q_dl",
+            "capacitance of the interface, from Q_dl and n_dl",
+            interface_capacitance(fit, area_cm2),
+        ),
+    )
+    return parameters + tuple(
+        Parameter(symbol, meaning, layers[origin], quantity)
+        for symbol, origin, meaning, quantity in derived
+        if quantity is not None and symbol not in layers and origin in layers
+    )

@@ -1,7 +1,7 @@
 """One panel's readings together: what a single reading cannot say.
 
-The law for the film's capacitance, the dry film and with it the water uptake, events, and when a
-limit was crossed. Only readings that count take part.
+The dry film and with it the water uptake, events, and when a limit was crossed. Only readings that
+count take part.
 """
 
 from __future__ import annotations
@@ -9,12 +9,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
-from coatgui.assessment.capacitance import (
-    FilmLaw,
-    film_capacitance,
-    has_film,
-    law_that_fits,
-)
+from coatgui.assessment.capacitance import turning_frequency
 from coatgui.assessment.events import (
     Drying,
     drying,
@@ -38,6 +33,7 @@ from coatgui.records import (
     Fit,
     LimitCrossing,
     Modulus,
+    Parameter,
     Quantity,
     Reading,
     Severity,
@@ -59,6 +55,7 @@ class Drawn:
     findings: list[Finding]
     fit: Fit | None = None
     moduli: tuple[Modulus, ...] = ()
+    parameters: tuple[Parameter, ...] = ()
     coating_capacitance: Quantity | None = None
     measured_capacitance: Quantity | None = None
     pore_resistance: Quantity | None = None
@@ -79,30 +76,13 @@ class SeriesResult:
     findings: tuple[Finding, ...]
 
 
-def panel_law(series: Sequence[Drawn]) -> FilmLaw:
-    """One law for all of a panel's readings: Hsu and Mansfeld only where each of them allows it."""
-    laws = {
-        law_that_fits(d.fit, d.reading.spectrum)
-        for d in series
-        if d.counts and d.fit is not None and has_film(d.fit)
-    }
-    return FilmLaw.HSU_MANSFELD if laws == {FilmLaw.HSU_MANSFELD} else FilmLaw.HIGH_FREQUENCY
-
-
 def uptake_basis(series: Sequence[Drawn], frequency_hz: float) -> tuple[list[Quantity | None], str]:
     """The capacitances that the water uptake rests on, all on one footing, and its name.
 
     The fitted film's at the high frequency; readings whose model has no film stay without. Only
     where more than half of the readings are so, the measured parallel capacitance serves for all.
     """
-    fitted = [
-        None
-        if d.fit is None
-        else film_capacitance(
-            d.fit, d.reading.spectrum, FilmLaw.HIGH_FREQUENCY, frequency_hz, d.area_cm2
-        )
-        for d in series
-    ]
+    fitted = [d.coating_capacitance for d in series]
     if 2 * sum(q is not None for q in fitted) >= len(series):
         return fitted, f"fitted film at {frequency_hz:g} Hz"
     return (
@@ -118,14 +98,8 @@ def draw_series(
     modulus_frequency_hz: float,
     criteria: Sequence[Criterion],
 ) -> SeriesResult:
-    """Work out one panel from its readings, sorted by exposure time; fills in their film
-    capacitance, their water uptake and the findings that follow from it."""
-    law = panel_law(series)
-    for d in series:
-        if d.fit is not None:
-            d.coating_capacitance = film_capacitance(
-                d.fit, d.reading.spectrum, law, capacitance_frequency_hz, d.area_cm2
-            )
+    """Work out one panel from its readings, sorted by exposure time; fills in their water uptake
+    and the findings that follow from it."""
     counting = [d for d in series if d.counts]
     if not counting:
         return SeriesResult(None, None, (), (), ())
@@ -161,7 +135,7 @@ def _pores_conduct(d: Drawn) -> bool:
         d.fit is not None
         and d.pore_resistance is not None
         and d.pore_resistance.bound is Bound.TWO_SIDED
-        and law_that_fits(d.fit, d.reading.spectrum) is FilmLaw.HSU_MANSFELD
+        and turning_frequency(d.fit, d.reading.spectrum) is not None
     )
 
 

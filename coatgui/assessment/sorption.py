@@ -147,11 +147,18 @@ def _fit(hours: FloatArray, y: FloatArray, deviation: FloatArray) -> _FickFit:
         a_low=float((profile.a - reach)[inside].min()),
         a_high=float((profile.a + reach)[inside].max()),
         closed=not inside[-1],
-        k_low=None if inside[0] else float(k[inside].min()),
-        k_high=None if inside[-1] else float(k[inside].max()),
+        k_low=None if inside[0] else _edge(k, room, int(np.argmax(inside))),
+        k_high=None if inside[-1] else _edge(k, room, inside.size - int(np.argmax(inside[::-1]))),
         misfit=math.sqrt(least / freedom),
         before_saturation=int((fickian_uptake(k[best] * hours) < rule("sorption.saturated")).sum()),
     )
+
+
+def _edge(k: FloatArray, room: FloatArray, place: int) -> float:
+    """Where `room` passes zero between the places before `place` and `place`, k on a log scale."""
+    before, after = float(room[place - 1]), float(room[place])
+    share = before / (before - after)
+    return float(k[place - 1] * (k[place] / k[place - 1]) ** share)
 
 
 def dry_capacitance(

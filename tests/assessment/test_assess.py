@@ -148,7 +148,15 @@ def test_whole_campaign(known: Known) -> None:
     assert reading is not None
     assert reading.points_used == reading.points_read == 71
     assert reading.counts
-    assert [p.quantity.unit for p in reading.parameters] == ["Ω cm²", "S·sⁿ/cm²", "", "Ω cm²"]
+    assert [p.quantity.unit for p in reading.parameters] == [
+        "Ω cm²",
+        "S·sⁿ/cm²",
+        "",
+        "Ω cm²",
+        "F/cm²",
+    ]
+    assert reading.parameters[-1].symbol == "C_c"
+    assert "Hsu–Mansfeld" in reading.parameters[-1].quantity.method
     assert reading.pore_resistance is not None
     assert reading.pore_resistance.value == pytest.approx(1.1e9 * AREA_CM2)
     assert reading.coating_capacitance is not None

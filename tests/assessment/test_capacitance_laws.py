@@ -12,17 +12,17 @@ from hypothesis import strategies as st
 
 from coatgui.assessment.amounts import log_deviation
 from coatgui.assessment.capacitance import (
-    FilmLaw,
     at_frequency,
     brug,
     film_capacitance,
     hsu_mansfeld,
+    hsu_mansfeld_capacitance,
     interface_capacitance,
-    law_that_fits,
     measured_capacitance,
     small_exponent_finding,
+    turning_frequency,
 )
-from coatgui.records import Bound, Fit, Spectrum
+from coatgui.records import Bound, Fit, Quantity, Spectrum
 
 Made = Callable[..., tuple[Spectrum, Fit]]
 PORES = {"R_s": 50.0, "Q_c": 2e-10, "n_c": 0.95, "R_po": 1e6, "Q_dl": 1e-7, "n_dl": 0.85}
@@ -55,40 +55,52 @@ def test_brug_gives_the_double_layer_of_a_distributed_electrode() -> None:
     assert brug(q, n, conductance) == pytest.approx(conductance / omega, rel=1e-9)
 
 
-def test_case_decides_the_law(made: Made) -> None:
-    spectrum, fit = made(PORES)  # (RQ)^(-1/n)/2π is about 1 kHz: inside the window
-    assert law_that_fits(fit, spectrum) is FilmLaw.HSU_MANSFELD
-    spectrum, fit = made(PORES, bounds={"R_po": Bound.AT_LEAST})
-    assert law_that_fits(fit, spectrum) is FilmLaw.HIGH_FREQUENCY
-    spectrum, fit = made(PORES | {"R_po": 1e13})
-    assert law_that_fits(fit, spectrum) is FilmLaw.HIGH_FREQUENCY
-    spectrum, fit = made({"R_s": 50.0, "Q_c": 2e-10, "n_c": 0.97}, model="closed_film")
-    assert law_that_fits(fit, spectrum) is FilmLaw.HIGH_FREQUENCY
-
-
-@pytest.mark.parametrize("law", list(FilmLaw))
-def test_film_capacitance_is_named_and_scales_with_area(made: Made, law: FilmLaw) -> None:
+def test_hsu_and_mansfeld_has_its_case(made: Made) -> None:
+    """Only where the film's resistance is held and turns over inside the window."""
     spectrum, fit = made(PORES)
-    whole = film_capacitance(fit, spectrum, law, 1e4, None)
-    per_cm2 = film_capacitance(fit, spectrum, law, 1e4, 10.0)
+    turning = turning_frequency(fit, spectrum)
+    assert turning == pytest.approx((1e6 * 2e-10) ** (-1 / 0.95) / (2 * math.pi))
+    assert hsu_mansfeld_capacitance(fit, spectrum, None) is not None
+    for values, bounds in (
+        (PORES, {"R_po": Bound.AT_LEAST}),
+        (PORES | {"R_po": 1e13}, {}),
+        ({"R_s": 50.0, "Q_c": 2e-10, "n_c": 0.97}, {}),
+        (PORES | {"n_c": 0.6}, {}),
+    ):
+        spectrum, fit = made(values, bounds=bounds)
+        assert hsu_mansfeld_capacitance(fit, spectrum, None) is None
+
+
+Law = Callable[[Fit, Spectrum, float | None], Quantity | None]
+
+
+def _at_ten_kilohertz(fit: Fit, spectrum: Spectrum, area_cm2: float | None) -> Quantity | None:
+    return film_capacitance(fit, spectrum, 1e4, area_cm2)
+
+
+def _value(law: Law, q: float, n: float, r: float) -> float:
+    return hsu_mansfeld(q, n, r) if law is hsu_mansfeld_capacitance else at_frequency(q, n, 1e4)
+
+
+@pytest.mark.parametrize(
+    ("law", "name"),
+    [(_at_ten_kilohertz, "10000 Hz"), (hsu_mansfeld_capacitance, "Hsu–Mansfeld")],
+)
+def test_film_capacitance_is_named_and_scales_with_area(made: Made, law: Law, name: str) -> None:
+    spectrum, fit = made(PORES)
+    whole, per_cm2 = law(fit, spectrum, None), law(fit, spectrum, 10.0)
     assert whole is not None
     assert per_cm2 is not None
     assert (whole.unit, per_cm2.unit) == ("F", "F/cm²")
-    expected = (
-        hsu_mansfeld(2e-10, 0.95, 1e6)
-        if law is FilmLaw.HSU_MANSFELD
-        else at_frequency(2e-10, 0.95, 1e4)
-    )
-    assert whole.value == pytest.approx(expected)
+    assert whole.value == pytest.approx(_value(law, 2e-10, 0.95, 1e6))
     for part in ("value", "low", "high"):
         assert getattr(per_cm2, part) == pytest.approx(getattr(whole, part) / 10)
-    assert ("Hsu–Mansfeld" if law is FilmLaw.HSU_MANSFELD else "10000 Hz") in whole.method
+    assert name in whole.method
 
 
-@pytest.mark.parametrize("law", list(FilmLaw))
-def test_limits_follow_the_covariance(made: Made, law: FilmLaw) -> None:
+@pytest.mark.parametrize("law", [_at_ten_kilohertz, hsu_mansfeld_capacitance])
+def test_limits_follow_the_covariance(made: Made, law: Law) -> None:
     """Against draws from the covariance, with Q and n as strongly correlated as they are."""
-    symbols = list(PORES)
     deviations = np.array([0.0, 0.02, 0.002, 0.05, 0.0, 0.0])
     correlation = np.eye(6)
     correlation[1, 2] = correlation[2, 1] = -0.97
@@ -96,33 +108,57 @@ def test_limits_follow_the_covariance(made: Made, law: FilmLaw) -> None:
     correlation[1, 3] = correlation[3, 1] = -0.3
     covariance = correlation * np.outer(deviations, deviations)
     spectrum, fit = made(PORES, covariance=covariance)
-    quantity = film_capacitance(fit, spectrum, law, 1e4, None)
+    quantity = law(fit, spectrum, None)
     assert quantity is not None
-    centre = np.log([PORES[s] for s in symbols])
+    centre = np.log(list(PORES.values()))
     draws = np.exp(np.random.default_rng(3).multivariate_normal(centre, covariance, 4000))
-    values = [
-        hsu_mansfeld(q, n, r) if law is FilmLaw.HSU_MANSFELD else at_frequency(q, n, 1e4)
-        for _, q, n, r, _, _ in draws
-    ]
+    values = [_value(law, q, n, r) for _, q, n, r, _, _ in draws]
     assert log_deviation(quantity) == pytest.approx(float(np.std(np.log(values))), rel=0.06)
 
 
 def test_without_covariance_the_limits_are_wider_but_not_than_the_scatter(made: Made) -> None:
     spectrum, fit = made(PORES, percent=2.0, scatter=0.5)
-    quantity = film_capacitance(fit, spectrum, FilmLaw.HIGH_FREQUENCY, 1e4, None)
+    quantity = film_capacitance(fit, spectrum, 1e4, None)
     assert quantity is not None
     assert log_deviation(quantity) == pytest.approx(0.005)
-    spectrum, fit = made(PORES, percent=2.0, scatter=0.5)
-    by_resistance = film_capacitance(fit, spectrum, FilmLaw.HSU_MANSFELD, 1e4, None)
+    by_resistance = hsu_mansfeld_capacitance(fit, spectrum, None)
     assert by_resistance is not None
     deviation = log_deviation(by_resistance)
     assert deviation is not None
     assert deviation > 0.02 / 0.95  # more than Q alone would bring
 
 
+def test_capacitance_of_the_film_does_not_move_with_its_pores(made: Made) -> None:
+    """A film that keeps its water keeps its capacitance, whatever its pores do."""
+    values = []
+    for ohm in (1e9, 1e6, 1e4):
+        spectrum, fit = made(PORES | {"R_po": ohm})
+        quantity = film_capacitance(fit, spectrum, 1e4, 10.0)
+        assert quantity is not None
+        values.append(quantity.value)
+    assert values[0] == values[1] == values[2]
+
+
+def test_fitted_film_is_freed_from_the_open_leads(made: Made) -> None:
+    film, leads = 1.5e-10, 6e-12
+    spectrum, fit = made({"R_s": 1.0, "Q_c": film + leads, "n_c": 1.0}, percent=1.0, scatter=9.0)
+    open_lead, _ = made({"Q_c": leads, "n_c": 1.0})
+    bare = film_capacitance(fit, spectrum, 1e4, None)
+    freed = film_capacitance(fit, spectrum, 1e4, None, open_lead)
+    assert bare is not None
+    assert freed is not None
+    assert freed.value == pytest.approx(film)
+    bare_deviation, freed_deviation = log_deviation(bare), log_deviation(freed)
+    assert bare_deviation is not None
+    assert freed_deviation == pytest.approx(bare_deviation * (film + leads) / film)
+    assert "without the open leads" in freed.method
+    too_much, _ = made({"Q_c": 2 * film, "n_c": 1.0})
+    assert film_capacitance(fit, spectrum, 1e4, None, too_much) is None
+
+
 def test_small_exponent_is_not_converted(made: Made) -> None:
     spectrum, fit = made(PORES | {"n_c": 0.66})
-    assert film_capacitance(fit, spectrum, FilmLaw.HIGH_FREQUENCY, 1e4, 10.0) is None
+    assert film_capacitance(fit, spectrum, 1e4, 10.0) is None
     finding = small_exponent_finding(fit)
     assert finding is not None
     assert "0.66" in finding.text
