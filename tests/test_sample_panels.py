@@ -152,3 +152,19 @@ def test_the_course_of_the_campaign(assessment: Assessment) -> None:
     assert crossed == [(72.0, 168.0)]
     dried = [event for event in panels["M3"].events if "lost water" in event.text]
     assert [(event.after_h, event.by_h) for event in dried] == [(168.0, 336.0)]
+
+
+def test_film_capacitance_is_recovered(assessment: Assessment) -> None:
+    """Where the law is the fitted element at 10 kHz, the truth's own footing."""
+    inside = total = 0
+    for reading in assessment.readings:
+        known = TRUTH["readings"][name_of(reading)]
+        quantity = reading.coating_capacitance
+        if quantity is None or name_of(reading) in FAULTY or "at 10000 Hz" not in quantity.method:
+            continue
+        total += 1
+        assert quantity.low is not None
+        assert quantity.high is not None
+        inside += quantity.low <= known["capacitance_f_per_cm2"] <= quantity.high
+    assert total >= 30
+    assert inside >= 0.9 * total

@@ -118,7 +118,10 @@ def _read(files: Sequence[Path], folder: Path | None, progress: Progress) -> Fou
             if path.stem == _OPEN_LEAD:
                 open_lead = (found[0].spectrum, Source(name, digest, "", found[0].dialect))
             else:
-                readings += [_reading(piece, name, digest, listed.get(name)) for piece in found]
+                readings += [
+                    _reading(piece, name, digest, listed.get(name), alone=len(found) == 1)
+                    for piece in found
+                ]
             first_of[digest] = name
             raw[digest] = data
         except Unreadable as error:
@@ -135,7 +138,9 @@ def _read(files: Sequence[Path], folder: Path | None, progress: Progress) -> Fou
     return Found(panels, tuple(readings), open_lead, tuple(refused), raw)
 
 
-def _reading(piece: Piece, name: str, digest: str, listed: ListedReading | None) -> FoundReading:
+def _reading(
+    piece: Piece, name: str, digest: str, listed: ListedReading | None, *, alone: bool
+) -> FoundReading:
     by_name = panel_and_hours(name)
     stem = Path(name).stem
     panel = (
@@ -145,7 +150,8 @@ def _reading(piece: Piece, name: str, digest: str, listed: ListedReading | None)
         or (stem if piece.exposure_h is not None else "")
     )
     hours = piece.exposure_h
-    if listed and listed.exposure_h is not None:
+    # One time for a file of several would make them all the same reading.
+    if listed and listed.exposure_h is not None and (alone or hours is None):
         hours = listed.exposure_h
     if hours is None and by_name:
         hours = by_name[1]

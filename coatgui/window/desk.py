@@ -153,8 +153,9 @@ class Desk(QObject):
     def _take(self, file: CampaignFile, folder: Path | None) -> None:
         self.close()
         self.file, self.unsaved_folder = file, folder
-        first = file.campaign.readings[0].reading_id if file.campaign.readings else ""
-        self.selection = first
+        readings = file.campaign.readings
+        first = min(readings, key=lambda r: r.exposure_h, default=None)
+        self.selection = "" if first is None else first.reading_id
         self.campaign_changed.emit()
         refused = len(file.campaign.refused)
         if refused:
