@@ -42,6 +42,8 @@ def said(quantity: Quantity | None, digits: int = 3) -> str:
         return "–"
     if quantity.bound is Bound.UNDETERMINED or quantity.value is None:
         return "cannot be determined"
+    if quantity.low and quantity.high and quantity.high < 1.02 * quantity.low:
+        digits += 1  # narrow limits need one more digit to show that they are two
     number = prefixed(quantity.value, quantity.unit, digits)
     if quantity.bound is Bound.AT_LEAST:
         return f"at least {number}"
@@ -51,6 +53,9 @@ def said(quantity: Quantity | None, digits: int = 3) -> str:
         return number
     low = prefixed(quantity.low, quantity.unit, digits)
     high = prefixed(quantity.high, quantity.unit, digits)
-    if low.split()[-1] == high.split()[-1]:
-        low = low.split()[0]
+    # A unit that all three share is said once.
+    unit = number.partition(" ")[2]
+    if low.partition(" ")[2] == high.partition(" ")[2]:
+        low = low.partition(" ")[0]
+        high = high.partition(" ")[0] if high.partition(" ")[2] == unit else high
     return f"{number} ({low}–{high})"

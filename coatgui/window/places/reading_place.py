@@ -72,6 +72,7 @@ class ReadingPlace(Place):
         header = self.table.horizontalHeader()
         header.setSectionResizeMode(QHeaderView.ResizeMode.ResizeToContents)
         header.setStretchLastSection(True)
+        self.table.setWordWrap(True)
         side.addWidget(self.table, 1)
         self.findings = plain_label()
         side.addWidget(self.findings)
@@ -184,6 +185,7 @@ class ReadingPlace(Place):
                 item = QTableWidgetItem(text)
                 item.setToolTip(f"{meaning} ({WORDS[quantity.bound]}). {quantity.method}")
                 self.table.setItem(i, j, item)
+        self.table.resizeRowsToContents()
 
     def _clicked(self, _item: Any, points: Any) -> None:
         reading, known = self.desk.reading(), self.desk.reading_assessment()
