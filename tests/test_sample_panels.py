@@ -130,6 +130,20 @@ def test_metal_and_diffusion_are_seen(assessment: Assessment) -> None:
     assert wrong == []
 
 
+@pytest.mark.xfail(
+    strict=True, reason="P3 gets its diffusion tail at 168 and 336 h already, before the truth does"
+)
+def test_diffusion_is_seen_when_it_is_there_and_not_before(assessment: Assessment) -> None:
+    wrong = []
+    for reading in assessment.readings:
+        known = TRUTH["readings"][name_of(reading)]
+        if reading.fit is None or known["fault"]:
+            continue
+        if (known["family"] == "diffusion") != (reading.fit.model == "pores_diffusion_tail"):
+            wrong.append(name_of(reading))
+    assert wrong == []
+
+
 def test_faults_are_named(assessment: Assessment) -> None:
     by_name = {name_of(reading): reading for reading in assessment.readings}
 
@@ -137,7 +151,8 @@ def test_faults_are_named(assessment: Assessment) -> None:
         return {finding.code for finding in by_name[name].findings}
 
     assert "wild_point" in codes("K2_72h")
-    assert codes("M1_168h") & {"mains_pick_up", "wild_point"}
+    assert "mains_pick_up" in codes("M1_168h")
+    assert "wild_point" not in codes("M1_168h")
     assert codes("P2_336h") & {"drift", "kramers_kronig"}
     assert not by_name["P3_504h"].counts
     assert by_name["P3_504h"].fit is None
