@@ -7,18 +7,22 @@ import math
 from pathlib import Path
 from typing import Any
 
+from coatgui.output.text import whole_text
 from coatgui.output.whole import write_whole
 from coatgui.records import Assessment, Finding, LimitCrossing, Quantity, ReadingAssessment
 
 SCHEMA = "coatgui-assessment/1"
 
 
-def _finite(value: Any) -> Any:
-    """The same structure with every number that is not finite as null."""
+def _writable(value: Any) -> Any:
+    """The same structure with every number that is not finite as null, and text that UTF-8 can
+    hold."""
     if isinstance(value, dict):
-        return {key: _finite(inner) for key, inner in value.items()}
+        return {_writable(key): _writable(inner) for key, inner in value.items()}
     if isinstance(value, list | tuple):
-        return [_finite(inner) for inner in value]
+        return [_writable(inner) for inner in value]
+    if isinstance(value, str):
+        return whole_text(value)
     if isinstance(value, float):
         return float(value) if math.isfinite(value) else None
     return value
@@ -29,7 +33,12 @@ def _limits(quantity: Quantity) -> dict[str, Any]:
 
 
 def _finding(finding: Finding) -> dict[str, Any]:
-    return {"code": finding.code, "severity": finding.severity.value, "text": finding.text}
+    return {
+        "code": finding.code,
+        "severity": finding.severity.value,
+        "text": finding.text,
+        "evidence": dict(finding.evidence),
+    }
 
 
 def _amount(quantity: Quantity | None, key: str) -> dict[str, Any] | None:
@@ -175,7 +184,7 @@ def assessment_json(assessment: Assessment) -> dict[str, Any]:
         "findings": [_finding(finding) for finding in assessment.findings],
         "cautions": list(assessment.cautions),
     }
-    result: dict[str, Any] = _finite(data)
+    result: dict[str, Any] = _writable(data)
     return result
 
 

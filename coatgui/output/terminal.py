@@ -3,77 +3,111 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 
-from coatgui.records import Assessment, Bound, Quantity, ReadingAssessment, Severity
+from coatgui.output.text import columns_of, one_line
+from coatgui.records import Assessment, Bound, Finding, Quantity, ReadingAssessment, Severity
 
 _SIGNS = {Bound.AT_LEAST: "≥ ", Bound.AT_MOST: "≤ "}
-_HEADINGS = (
-    ("panel", 8),
-    ("hours", 7),
-    ("|Z|·A 0.1 Hz", 13),
-    ("model", 36),
-    ("film capacitance", 17),
-    ("water %", 8),
-    ("pore resistance", 16),
-    ("", 10),
-)
 
 
-def _number(quantity: Quantity | None, digits: int = 3, unit: str = "") -> str:
+def _number(quantity: Quantity | None) -> str:
     if quantity is None:
         return "–"
-    if quantity.value is None or not math.isfinite(quantity.value):
+    value = quantity.value
+    if quantity.bound is Bound.UNDETERMINED or value is None or not math.isfinite(value):
         return "undetermined"
-    sign = _SIGNS.get(quantity.bound, "")
-    plain = 0.01 <= abs(quantity.value) < 1000
-    number = f"{quantity.value:.{digits}g}" if plain else f"{quantity.value:.{digits - 1}e}"
-    return f"{sign}{number}{unit}"
+    number = f"{value:.3g}" if value == 0 or 0.01 <= abs(value) < 1000 else f"{value:.2e}"
+    return f"{_SIGNS.get(quantity.bound, '')}{number}"
 
 
-def _state(reading: ReadingAssessment) -> str:
-    worst = {finding.severity for finding in reading.findings}
-    if Severity.REJECT in worst:
-        return "■ rejected"
-    return "▲ doubt" if Severity.DOUBT in worst else ""
+def _state(findings: Sequence[Finding]) -> str:
+    severities = [finding.severity for finding in findings]
+    doubts, notes = severities.count(Severity.DOUBT), severities.count(Severity.NOTE)
+    said = ["■ rejected"] if Severity.REJECT in severities else []
+    if doubts:
+        said.append(f"▲ {doubts} doubt{'s' if doubts > 1 else ''}")
+    if notes:
+        said.append(f"{notes} note{'s' if notes > 1 else ''}")
+    return ", ".join(said)
 
 
-def _row(reading: ReadingAssessment) -> list[str]:
-    modulus = reading.modulus_at(0.1)
-    water = reading.water_uptake.quantity if reading.water_uptake else None
+def _headings(frequency_hz: float) -> list[str]:
+    modulus = f"|Z|·A at {frequency_hz:g} Hz"
+    capacitance, water, pores = "film capacitance", "water, vol-%", "pore resistance"
+    return ["panel", "hours", modulus, "model", capacitance, water, pores, "findings"]
+
+
+def _row(reading: ReadingAssessment, frequency_hz: float) -> list[str]:
+    modulus = reading.modulus_at(frequency_hz)
     return [
-        reading.panel,
+        one_line(reading.panel),
         f"{reading.exposure_h:g}",
         _number(modulus.quantity if modulus else None),
-        reading.fit.model_name if reading.fit else "not fitted",
+        one_line(reading.fit.model_name) if reading.fit else "not fitted",
         _number(reading.coating_capacitance),
-        _number(water),
+        _number(reading.water_uptake.quantity if reading.water_uptake else None),
         _number(reading.pore_resistance),
-        _state(reading),
+        _state(reading.findings),
     ]
+
+
+def _table(assessment: Assessment) -> list[str]:
+    """Readings under the name of their formulation; columns as wide as what stands in them."""
+    # The first of the wanted frequencies is the one the campaign is judged by.
+    frequencies = [m.frequency_hz for reading in assessment.readings for m in reading.modulus]
+    frequency_hz = frequencies[0] if frequencies else 0.1
+    headings = _headings(frequency_hz)
+    rows = [_row(reading, frequency_hz) for reading in assessment.readings]
+    widths = [max(map(columns_of, column)) for column in zip(headings, *rows, strict=True)]
+
+    def line(cells: Sequence[str]) -> str:
+        padded = (
+            cell + " " * (width - columns_of(cell))
+            for cell, width in zip(cells, widths, strict=True)
+        )
+        return "  ".join(padded).rstrip()
+
+    lines: list[str] = []
+    formulation = None
+    for reading, row in zip(assessment.readings, rows, strict=True):
+        if reading.formulation != formulation:
+            formulation = reading.formulation
+            lines += ["", one_line(formulation), line(headings)]
+        lines.append(line(row))
+    return [
+        *lines,
+        "",
+        "Amounts in Ω cm² and F/cm², or Ω and F where the panel has no area; ≥ at least, "
+        "≤ at most, – no value.",
+    ]
+
+
+def _panels(assessment: Assessment) -> list[str]:
+    lines = []
+    for panel in assessment.panels:
+        said = [event.text for event in panel.events]
+        said += [crossing.text for crossing in panel.limit_crossings if crossing.by_h is not None]
+        said += [f.text for f in panel.findings if f.severity is not Severity.NOTE]
+        if said:
+            lines.append(one_line(f"{panel.panel}: {' '.join(said)}"))
+    return lines
 
 
 def terminal_table(assessment: Assessment) -> str:
     """Readings by formulation and panel, then what they say together, what was refused, and the
-    cautions. Amounts are in Ω cm² and F/cm² (per specimen where a panel has no area)."""
-    lines = [assessment.title, assessment.headline, ""]
-    heading = "  ".join(f"{name:<{width}}" for name, width in _HEADINGS).rstrip()
-    formulation = None
-    for reading in assessment.readings:
-        if reading.formulation != formulation:
-            formulation = reading.formulation
-            lines += ["", formulation, heading]
-        cells = zip(_row(reading), _HEADINGS, strict=True)
-        lines.append("  ".join(f"{cell:<{width}}" for cell, (_, width) in cells).rstrip())
-    lines += ["", "Amounts in Ω cm² and F/cm²; ≥ at least, ≤ at most, – not held by the data."]
-    lines += ["", assessment.ranking_text]
-    for panel in assessment.panels:
-        said = [event.text for event in panel.events]
-        said += [c.text for c in panel.limit_crossings if c.by_h is not None]
-        if said:
-            lines.append(f"{panel.panel}: {' '.join(said)}")
+    cautions. Text from outside cannot steer the terminal."""
+    parts = [
+        [one_line(assessment.title), one_line(assessment.headline)],
+        _table(assessment) if assessment.readings else ["There are no readings."],
+        [one_line(assessment.ranking_text)],
+        _panels(assessment),
+        [one_line(finding.text) for finding in assessment.findings],
+    ]
     if assessment.refused:
-        lines += ["", "Refused:"]
-        lines += [f"  {refusal.file}: {refusal.reason}" for refusal in assessment.refused]
-    lines += ["", "Cautions:"]
-    lines += [f"  {caution}" for caution in assessment.cautions]
-    return "\n".join(lines)
+        refused = [f"  {one_line(r.file)}: {one_line(r.reason)}" for r in assessment.refused]
+        parts.append(["Refused:", *refused])
+    if assessment.cautions:
+        parts.append(["Cautions:", *(f"  {one_line(caution)}" for caution in assessment.cautions)])
+    blocks = ("\n".join(part).strip("\n") for part in parts)
+    return "\n\n".join(block for block in blocks if block)
