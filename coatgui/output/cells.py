@@ -1,4 +1,4 @@
-"""Writing cells safely: text from outside is never a formula, numbers that are not finite are left
+"""Writing sheets safely: text from outside is never a formula, numbers that are not finite are left
 empty, and the file's bytes depend on its content alone."""
 
 from __future__ import annotations
@@ -7,20 +7,32 @@ import io
 import math
 import re
 import zipfile
-from collections.abc import Sequence
+from collections.abc import Callable, Iterable, Sequence
+from dataclasses import dataclass
 from datetime import datetime
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Generic, TypeVar
 
 if TYPE_CHECKING:
     from openpyxl.workbook import Workbook
-    from openpyxl.worksheet.worksheet import Worksheet
 
 Value = str | int | float | None
+Row = TypeVar("Row")
 
 _CONTROL = re.compile(r"[\x00-\x08\x0b\x0c\x0e-\x1f\ufffe\uffff\ud800-\udfff]")
+_LIKE_A_FORMULA = ("=", "+", "-", "@", "\t", "\r")
 _LONGEST_TEXT = 32_000
 _WIDEST, _NARROWEST = 60, 9
+_WIDEST_HEADING = 18
 _FIXED_TIME = (1980, 1, 1, 0, 0, 0)
+
+
+@dataclass(frozen=True, slots=True)
+class Column(Generic[Row]):
+    """A column of a sheet: its heading, how its value comes out of a row, its number format."""
+
+    heading: str
+    value: Callable[[Row], Value]
+    number_format: str = "General"
 
 
 def clean(text: str) -> str:
@@ -31,60 +43,62 @@ def clean(text: str) -> str:
 def add_sheet(
     book: Workbook,
     title: str,
-    headings: Sequence[str],
-    rows: Sequence[Sequence[Value]],
+    columns: Sequence[Column[Row]],
+    rows: Iterable[Row],
     *,
-    formats: dict[str, str] | None = None,
     colours: dict[str, str] | None = None,
-) -> Worksheet:
-    """A sheet with a frozen, filtered heading row. `formats` gives number formats by heading;
-    `colours` fills cells whose text is a key (the text stands there too, so nothing depends on
-    colour)."""
+    standing: int = 0,
+) -> None:
+    """A sheet with a frozen, filtered heading row that is printed on every page. `colours` fills
+    cells whose text is a key (the text stands there too, so nothing depends on colour); the first
+    `standing` columns stay in sight."""
     from openpyxl.styles import Alignment, Font, PatternFill
     from openpyxl.utils import get_column_letter
 
-    sheet: Worksheet = book.create_sheet(title)
-    for column, heading in enumerate(headings, start=1):
-        head = sheet.cell(1, column, heading)
-        head.font = Font(bold=True)
-        head.alignment = Alignment(wrap_text=True, vertical="top")
-    widths = [len(heading) for heading in headings]
-    for row, values in enumerate(rows, start=2):
-        for column, value in enumerate(values, start=1):
-            if value is None or (isinstance(value, float) and not math.isfinite(value)):
+    bold, top = Font(bold=True), Alignment(wrap_text=True, vertical="top")
+    fills = {text: PatternFill("solid", fgColor=c) for text, c in (colours or {}).items()}
+    sheet = book.create_sheet(title)
+    for place, column in enumerate(columns, start=1):
+        head = sheet.cell(1, place, column.heading)
+        head.font, head.alignment = bold, top
+    widths = [min(len(column.heading), _WIDEST_HEADING) for column in columns]
+    last = 1
+    for last, row in enumerate(rows, start=2):
+        for place, column in enumerate(columns, start=1):
+            value = column.value(row)
+            if value in (None, "") or (isinstance(value, float) and not math.isfinite(value)):
                 continue
-            cell = sheet.cell(row, column)
-            if isinstance(value, str):
-                text = clean(value)
-                cell.value = text
-                cell.data_type = "s"
-                widths[column - 1] = max(widths[column - 1], len(text))
-                colour = (colours or {}).get(text)
-                if colour:
-                    cell.fill = PatternFill("solid", fgColor=colour)
-                if len(text) > _WIDEST:
-                    cell.alignment = Alignment(wrap_text=True, vertical="top")
-            else:
-                cell.value = float(value) if isinstance(value, float) else value
-                number_format = (formats or {}).get(headings[column - 1])
-                if number_format:
-                    cell.number_format = number_format
-    for column, width in enumerate(widths, start=1):
-        letter = get_column_letter(column)
+            cell = sheet.cell(last, place)
+            if not isinstance(value, str):
+                cell.value = value
+                cell.number_format = column.number_format
+                continue
+            text = clean(value)
+            cell.value = text
+            cell.data_type = "s"
+            if text in fills:
+                cell.fill = fills[text]
+            if len(text) > _WIDEST:
+                cell.alignment = top
+            if text.startswith(_LIKE_A_FORMULA):
+                cell.quotePrefix = True  # stays text when someone edits the cell
+            widths[place - 1] = max(widths[place - 1], len(text))
+    for place, width in enumerate(widths, start=1):
+        letter = get_column_letter(place)
         sheet.column_dimensions[letter].width = min(max(width + 2, _NARROWEST), _WIDEST)
-    sheet.freeze_panes = "A2"
-    if headings:
-        sheet.auto_filter.ref = f"A1:{get_column_letter(len(headings))}{len(rows) + 1}"
-    return sheet
+    sheet.freeze_panes = f"{get_column_letter(standing + 1)}2"
+    sheet.auto_filter.ref = f"A1:{get_column_letter(len(columns))}{last}"
+    sheet.print_title_rows = "1:1"
+    sheet.page_setup.orientation = "landscape"
+    sheet.page_setup.fitToHeight = 0
+    sheet.sheet_properties.pageSetUpPr.fitToPage = True
 
 
 def workbook_bytes(book: Workbook) -> bytes:
     """The workbook as bytes that depend on nothing but its content: no clock enters the file."""
-    moment = datetime(2000, 1, 1)
-    book.properties.created = moment
-    raw = io.BytesIO()
+    book.properties.created = datetime(2000, 1, 1)
+    raw, result = io.BytesIO(), io.BytesIO()
     book.save(raw)
-    result = io.BytesIO()
     with (
         zipfile.ZipFile(raw) as source,
         zipfile.ZipFile(result, "w", zipfile.ZIP_DEFLATED) as target,
