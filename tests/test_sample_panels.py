@@ -130,9 +130,6 @@ def test_metal_and_diffusion_are_seen(assessment: Assessment) -> None:
     assert wrong == []
 
 
-@pytest.mark.xfail(
-    strict=True, reason="P3 gets its diffusion tail at 168 and 336 h already, before the truth does"
-)
 def test_diffusion_is_seen_when_it_is_there_and_not_before(assessment: Assessment) -> None:
     wrong = []
     for reading in assessment.readings:

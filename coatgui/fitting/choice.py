@@ -4,8 +4,10 @@ Mathematics. Each model's evidence on each spectrum is AICc with the number of i
 N_eff = 2N (1 − ρ)/(1 + ρ), ρ the lag-one correlation of the richest model's residuals: residuals
 that follow one another would otherwise buy elements that describe nothing but each other. Every
 parameter costs a little more than AICc asks, and changing the model between two inspections has a
-price of its own, so that the choice does not go back and forth within the scatter; the cheapest
-path through the series is found by dynamic programming (Viterbi). Prices stand in
+price of its own, so that the choice does not go back and forth within the scatter. The catalogue
+stands in the order in which films give way, and a film goes on more readily than it heals: going
+back costs more, and no stage is skipped only to save the price of a change. The cheapest path
+through the series is found by dynamic programming (Viterbi). Prices stand in
 `resources/fitting.toml`.
 """
 
@@ -37,7 +39,12 @@ def choose_path(scores: FloatArray, pinned: list[int | None]) -> list[int]:
     """The model of each reading of one series: `scores` (T, M) are prices in the order of exposure
     time; a pinned reading has its model given. Ties go to the earlier model of the catalogue."""
     times, models = scores.shape
-    switching = rule("aicc_price_of_switching")
+    earlier, later = np.indices((models, models))
+    change = np.where(
+        later > earlier,
+        rule("aicc_price_of_going_on"),
+        np.where(later < earlier, rule("aicc_price_of_going_back"), 0.0),
+    )
     total = np.empty((times, models))
     came_from = np.zeros((times, models), dtype=np.intp)
     for t in range(times):
@@ -51,14 +58,13 @@ def choose_path(scores: FloatArray, pinned: list[int | None]) -> list[int]:
         if t == 0:
             total[t] = own
             continue
-        best = int(np.argmin(total[t - 1]))
-        moved = total[t - 1, best] + switching
         # A person's pin is no evidence about its neighbours: leaving it costs nothing.
-        if pinned[t - 1] is not None or given is not None:
-            moved = total[t - 1, best]
-        stay = total[t - 1] <= moved
-        total[t] = np.where(stay, total[t - 1], moved) + own
-        came_from[t] = np.where(stay, np.arange(models), best)
+        free = pinned[t - 1] is not None or given is not None
+        routes = total[t - 1][:, None] + change * (not free)
+        cheapest = routes.min(axis=0)
+        stays = np.diagonal(routes) <= cheapest
+        came_from[t] = np.where(stays, np.arange(models), np.argmin(routes, axis=0))
+        total[t] = cheapest + own
     path = [int(np.argmin(total[-1]))]
     for t in range(times - 1, 0, -1):
         path.append(int(came_from[t, path[-1]]))
