@@ -158,9 +158,10 @@ class CoatingModel:
         high = self.natural(np.array([p.high for p in self.parameters]))
         return low, high
 
-    def impedance(self, theta: FloatArray, frequency_hz: FloatArray) -> ComplexArray:
+    def impedance(self, theta: FloatArray, frequency_hz: FloatArray | Grid) -> ComplexArray:
         """Impedance (B, N) in Ω at natural coordinates `theta` (B, P)."""
-        return impedance(self.network, Grid.of_hertz(frequency_hz), theta)
+        grid = frequency_hz if isinstance(frequency_hz, Grid) else Grid.of_hertz(frequency_hz)
+        return impedance(self.network, grid, theta)
 
     def evaluate(self, theta: FloatArray, grid: Grid) -> Evaluation:
         """Impedance and, on demand, derivatives, at natural coordinates `theta` (B, P)."""

@@ -1,11 +1,12 @@
 """Series and parallel composition, with the derivative of the whole for each part.
 
-Mathematics. Going up the tree, impedances of a series node add, and admittances of a parallel node
-add. Going down, the sensitivity f = ∂Z_whole/∂Z_node starts at the root with what the caller gives
-(1, or the weights of a fit, so that a weighted Jacobian costs nothing more), passes unchanged
-through a series node, and is multiplied by (Z_parallel/Z_child)² on the way into a child of a
-parallel node. A leaf then writes f·∂Z_leaf/∂θ. One complex product per parameter is all a nested
-model costs, however deep it is.
+Mathematics. A child of a series node is known by its impedance, a child of a parallel node by its
+admittance, so that either node only adds. Going up the tree, a node whose parent asks for the other
+form is inverted once. Going down, the sensitivity f = ∂Z_whole/∂(value of the node in its form)
+starts at the root with what the caller gives (1, or the weights of a fit, so that a weighted
+Jacobian costs nothing more), passes unchanged to the children of a node that only adds, and is
+multiplied by −v² where the node was inverted to v. A leaf then writes f·∂Z_leaf/∂θ or f·∂Y_leaf/∂θ.
+Two divisions a layer and one product per parameter are all a nested model costs.
 """
 
 from __future__ import annotations
@@ -52,53 +53,54 @@ def leaves(node: Node) -> Iterator[Leaf]:
             yield from leaves(child)
 
 
-def _upward(node: Node, grid: Grid, theta: FloatArray, found: dict[int, ComplexArray]) -> None:
-    """Impedance of every node, kept by the node's identity."""
+def _upward(
+    node: Node, grid: Grid, theta: FloatArray, admittance: bool, found: dict[int, ComplexArray]
+) -> ComplexArray:
+    """The value of a node in the form its parent asks for; of all nodes kept by identity."""
     if isinstance(node, Leaf):
-        found[id(node)] = node.element.impedance(grid, theta[:, node.places])
-        return
-    for child in node.children:
-        _upward(child, grid, theta, found)
-    parts = [found[id(child)] for child in node.children]
-    if isinstance(node, Series):
-        total = parts[0]
-        for part in parts[1:]:
-            total = total + part
-        found[id(node)] = total
+        part = theta[:, node.places]
+        element = node.element
+        value = element.admittance(grid, part) if admittance else element.impedance(grid, part)
     else:
-        admittance = 1.0 / parts[0]
-        for part in parts[1:]:
-            admittance = admittance + 1.0 / part
-        found[id(node)] = 1.0 / admittance
+        inner = isinstance(node, Parallel)
+        first, *others = node.children
+        value = _upward(first, grid, theta, inner, found)
+        for child in others:
+            value = value + _upward(child, grid, theta, inner, found)
+        if inner != admittance:
+            value = np.reciprocal(value)
+    found[id(node)] = value
+    return value
 
 
 def _downward(
     node: Node,
     grid: Grid,
     theta: FloatArray,
+    admittance: bool,
     found: dict[int, ComplexArray],
     factor: ComplexArray,
     out: ComplexArray,
 ) -> None:
+    value = found[id(node)]
     if isinstance(node, Leaf):
-        part = theta[:, node.places]
-        node.element.derivatives(grid, part, found[id(node)], factor, out[:, node.places])
+        element = node.element
+        write = element.admittance_derivatives if admittance else element.derivatives
+        write(grid, theta[:, node.places], value, factor, out[:, node.places])
         return
+    inner = isinstance(node, Parallel)
+    if inner != admittance:
+        factor = factor * value
+        factor *= value
+        np.negative(factor, out=factor)
     for child in node.children:
-        if isinstance(node, Series):
-            passed = factor
-        else:
-            ratio = found[id(node)] / found[id(child)]
-            passed = ratio * ratio
-            passed *= factor
-        _downward(child, grid, theta, found, passed, out)
+        _downward(child, grid, theta, inner, found, factor, out)
 
 
 def impedance(node: Node, grid: Grid, theta: FloatArray) -> ComplexArray:
     """Impedance (B, N) in Ω of the network at natural coordinates `theta` (B, P)."""
-    found: dict[int, ComplexArray] = {}
-    _upward(node, grid, theta, found)
-    return np.broadcast_to(found[id(node)], (theta.shape[0], grid.omega.size))
+    value = _upward(node, grid, theta, False, {})
+    return np.broadcast_to(value, (theta.shape[0], grid.omega.size))
 
 
 class Evaluation:
@@ -107,14 +109,13 @@ class Evaluation:
     def __init__(self, node: Node, grid: Grid, theta: FloatArray) -> None:
         self._node, self._grid, self._theta = node, grid, theta
         self._found: dict[int, ComplexArray] = {}
-        _upward(node, grid, theta, self._found)
-        self.impedance: ComplexArray = np.broadcast_to(
-            self._found[id(node)], (theta.shape[0], grid.omega.size)
-        )
+        value = _upward(node, grid, theta, False, self._found)
+        self.impedance: ComplexArray = np.broadcast_to(value, (theta.shape[0], grid.omega.size))
 
-    def derivatives(self, factor: ComplexArray) -> ComplexArray:
-        """factor·∂Z/∂θ, (B, P, N) and contiguous; `factor` is (B, N)."""
+    def derivatives(self, factor: ComplexArray, out: ComplexArray | None = None) -> ComplexArray:
+        """factor·∂Z/∂θ, (B, P, N), written into `out` where given; `factor` is (B, N)."""
         rows, count = self._theta.shape
-        out = np.empty((rows, count, self._grid.omega.size), dtype=np.complex128)
-        _downward(self._node, self._grid, self._theta, self._found, factor, out)
+        if out is None:
+            out = np.empty((rows, count, self._grid.omega.size), dtype=np.complex128)
+        _downward(self._node, self._grid, self._theta, False, self._found, factor, out)
         return out

@@ -16,14 +16,17 @@ from coatgui.fitting.choice import choose_path, evidence
 from coatgui.fitting.limits import correlation_along, parameter_limits
 from coatgui.fitting.results import build_fit, film_capacitance
 from coatgui.fitting.rules import rule
-from coatgui.fitting.search import Batch, ask_neighbours, search
+from coatgui.fitting.search import Batch, ask_neighbours, search, settle
 from coatgui.fitting.solver import BoolArray, FloatArray, Solution
 from coatgui.progress import Progress, Spread, one_after_another
 from coatgui.records import Fit, Spectrum, Trial
 
 # Part of the key of cached results: raise it with every change that can change a result.
-ENGINE_VERSION = "1"
-_SHARE = 120
+ENGINE_VERSION = "2"
+# Shares of the work: few enough to be fast, enough of them for every processor and for progress.
+_SMALLEST_SHARE, _LARGEST_SHARE, _SHARES = 60, 500, 4
+# A simpler model that does as well as a richer one has nothing to learn from it.
+_WORTH_ASKING = 1.005
 
 
 @dataclass(frozen=True)
@@ -66,10 +69,11 @@ def fit_spectra(
         (i for i in range(len(spectra)) if int(used[i].sum()) >= fewest),
         key=lambda i: (series[i], exposure_h[i]),
     )
+    share_size = min(max(_SMALLEST_SHARE, len(order) // _SHARES), _LARGEST_SHARE)
     shares: list[list[int]] = []
     last = None
     for i in order:
-        if not shares or (len(shares[-1]) >= _SHARE and series[i] != last):
+        if not shares or (len(shares[-1]) >= share_size and series[i] != last):
             shares.append([])
         shares[-1].append(i)
         last = series[i]
@@ -132,16 +136,18 @@ def _neighbours(task: _Task, theta: FloatArray) -> list[FloatArray]:
 
 def _add_projected(
     offers: list[FloatArray],
+    wanted: BoolArray,
     groups: list[tuple[list[int], Batch]],
     model: CoatingModel,
     richer: CoatingModel,
     solutions: list[Solution],
 ) -> None:
-    """Offer each reading the richer model's solution with what `model` lacks left away."""
+    """Offer each `wanted` reading the richer model's solution with what `model` lacks left away."""
     kept = [richer.index(symbol) for symbol in model.symbols]
     for (own, _), found in zip(groups, solutions, strict=True):
         for row, i in enumerate(own):
-            offers[i] = np.concatenate([offers[i], found.theta[row : row + 1, kept]])
+            if wanted[i]:
+                offers[i] = np.concatenate([offers[i], found.theta[row : row + 1, kept]])
 
 
 def _fit_task(task: _Task) -> list[Fit]:
@@ -157,12 +163,16 @@ def _fit_task(task: _Task) -> list[Fit]:
         model = models[k]
         first = [search(model, batch) for _, batch in groups]
         theta = np.full((number, len(model.parameters)), np.nan)
+        found_cost = np.full(number, np.inf)
         for (own, _), found in zip(groups, first, strict=True):
-            theta[own] = found.theta
+            theta[own], found_cost[own] = found.theta, found.cost
         offers = _neighbours(task, theta)
-        for richer in models:
+        for j, richer in enumerate(models):
             if richer.model_id in solutions and set(model.symbols) < set(richer.symbols):
-                _add_projected(offers, groups, model, richer, solutions[richer.model_id])
+                suspicious = found_cost > _WORTH_ASKING * cost[:, j]
+                _add_projected(
+                    offers, suspicious, groups, model, richer, solutions[richer.model_id]
+                )
         solutions[model.model_id] = [
             ask_neighbours(model, batch, found, [offers[i] for i in own])
             for (own, batch), found in zip(groups, first, strict=True)
@@ -192,28 +202,12 @@ def _fit_task(task: _Task) -> list[Fit]:
                 continue
             found = solutions[model.model_id][group]
             part = Batch(batch.frequency_hz, batch.impedance[place], batch.used[place])
-            limits = parameter_limits(
-                model,
-                part,
-                found.theta[place],
-                found.cost[place],
-                found.normal[place],
-                found.at_bound[place],
-            )
+            settled = settle(model, part, found.theta[place])
+            limits = parameter_limits(model, part, settled)
             for row, where in enumerate(place):
                 i = own[where]
                 shown = _as_seen(model, capacitance[i, k] / area[i], task.pinned[i])
-                fits[i] = build_fit(
-                    shown,
-                    part,
-                    row,
-                    found.theta[where],
-                    float(found.cost[where]),
-                    int(found.status[where]),
-                    limits,
-                    trials[i],
-                    task.leads_ohm,
-                )
+                fits[i] = build_fit(shown, part, row, settled, limits, trials[i], task.leads_ohm)
     return [fit for fit in fits if fit is not None]
 
 

@@ -24,14 +24,21 @@ import numpy as np
 from coatgui.circuits import CoatingModel
 from coatgui.circuits.elements import ComplexArray
 from coatgui.fitting.search import Batch
-from coatgui.fitting.solver import BoolArray, FloatArray, IndexArray, Tolerance, minimise
+from coatgui.fitting.solver import (
+    BoolArray,
+    FloatArray,
+    IndexArray,
+    Solution,
+    Tolerance,
+    minimise,
+)
 
 _WIDE = 0.405  # ln 1.5
 _TIED = 0.95
 _ROUNDS = 9
 _FARTHEST = 14.0  # in natural units: a factor of a million is no limit any more
 _NEAR_ENOUGH = 0.03
-_REFIT = Tolerance(cosine=1e-3, reduction=1e-5, iterations=30)
+_REFIT = Tolerance(cosine=1e-3, reduction=1e-5, iterations=30, damping=1e-3)
 
 
 @dataclass(frozen=True)
@@ -81,13 +88,11 @@ def _covariance(normal: FloatArray, held: BoolArray, variance: FloatArray) -> Fl
 def parameter_limits(
     model: CoatingModel,
     batch: Batch,
-    theta: FloatArray,
-    cost: FloatArray,
-    normal: FloatArray,
-    at_bound: BoolArray,
+    fits: Solution,
     check: Callable[[], None] | None = None,
 ) -> Limits:
-    """Limits of the fits `theta` (B, P) of `model` to the spectra of `batch`."""
+    """Limits of the `fits` of `model` to the spectra of `batch`, row by row."""
+    theta, cost, at_bound = fits.theta, fits.cost, fits.at_bound
     size, count = theta.shape
     rows = np.arange(size)
     objective = batch.objective(model)
@@ -95,7 +100,7 @@ def parameter_limits(
     rho = correlation_along(objective.residuals(theta, rows), batch.used)
     reach = student_t(freedom) * np.sqrt((1.0 + rho) / (1.0 - rho))
     variance = np.maximum(cost, 1e-300) / freedom
-    covariance = _covariance(normal, at_bound, variance * (1.0 + rho) / (1.0 - rho))
+    covariance = _covariance(fits.normal, at_bound, variance * (1.0 + rho) / (1.0 - rho))
     error = np.sqrt(np.maximum(np.einsum("bii->bi", covariance), 0.0))
     half = student_t(freedom)[:, None] * error
     with np.errstate(divide="ignore", invalid="ignore"):

@@ -9,7 +9,7 @@ from coatgui.circuits.layers import ParameterSpec
 from coatgui.fitting.limits import Limits
 from coatgui.fitting.rules import rule
 from coatgui.fitting.search import Batch
-from coatgui.fitting.solver import MESSAGES, FloatArray, Status
+from coatgui.fitting.solver import MESSAGES, FloatArray, Solution, Status
 from coatgui.records import Bound, Fit, Parameter, Quantity, Trial
 
 
@@ -50,14 +50,13 @@ def build_fit(
     model: CoatingModel,
     batch: Batch,
     row: int,
-    theta: FloatArray,
-    cost: float,
-    status: int,
+    fits: Solution,
     limits: Limits,
     trials: tuple[Trial, ...],
     leads_ohm: float | None,
 ) -> Fit:
-    """The record of one fit: `row` of `batch` and of `limits`, at `theta` (P,)."""
+    """The record of one fit: `row` of `batch`, of `fits` and of `limits`."""
+    theta, cost, status = fits.theta[row], float(fits.cost[row]), int(fits.status[row])
     low, high = limits.low[row], limits.high[row].copy()
     parameters = []
     for place, spec in enumerate(model.parameters):

@@ -18,10 +18,16 @@ from coatgui.fitting.solver import (
     Tolerance,
     minimise,
 )
-from coatgui.fitting.starts import best_starts, candidates
+from coatgui.fitting.starts import approach_bounds, best_starts, candidates
 
 _STARTS = 5
+_ENOUGH_POINTS = 12
+_FAR_WORSE = 30.0  # in sum of squares
+_SAME_PLACE = 0.2  # in natural coordinates
 _APPROACH = Tolerance(cosine=1e-2, reduction=1e-3, step=2.0, iterations=25)
+# Near enough to compare models: the cost is then known to a few parts in 100,000.
+_COMPARE = Tolerance(cosine=1e-4, reduction=1e-6, iterations=60)
+_SETTLE = Tolerance(damping=1e-3)
 
 
 @dataclass(frozen=True)
@@ -31,6 +37,13 @@ class Batch:
     frequency_hz: FloatArray
     impedance: ComplexArray
     used: BoolArray
+
+    def thinned(self) -> Batch:
+        """Every third point, where there are enough: what ranking rough starts needs."""
+        if self.frequency_hz.size < 3 * _ENOUGH_POINTS:
+            return self
+        kept = slice(None, None, 3)
+        return Batch(self.frequency_hz[kept], self.impedance[:, kept], self.used[:, kept])
 
     def objective(self, model: CoatingModel, *, logarithmic: bool = False) -> ImpedanceObjective:
         return ImpedanceObjective(
@@ -74,18 +87,62 @@ def better_of(first: Solution, second: Solution) -> Solution:
     )
 
 
+def _worth_going_on(near: Solution, rows: IndexArray) -> BoolArray:
+    """Of the approaches of each row (S,), which to follow to the end: those not far worse than the
+    best, and of several that arrived at one place only the best."""
+    order = np.lexsort((near.cost, rows))
+    best = np.full(int(rows.max()) + 1, np.inf)
+    np.minimum.at(best, rows, near.cost)
+    going = near.cost <= _FAR_WORSE * best[rows]
+    followed: dict[int, list[int]] = {}
+    for i in order:
+        if not going[i]:
+            continue
+        kept = followed.setdefault(int(rows[i]), [])
+        if kept and (np.abs(near.theta[kept] - near.theta[i]).max(axis=1) < _SAME_PLACE).any():
+            going[i] = False
+        else:
+            kept.append(int(i))
+    return going
+
+
 def search(model: CoatingModel, batch: Batch, check: Callable[[], None] | None = None) -> Solution:
     """The best fit of `model` to each spectrum of the batch, from the spectrum's own starts."""
     size = batch.impedance.shape[0]
     low, high = model.bounds
     approach = batch.objective(model, logarithmic=True)
     offered = candidates(model, batch.frequency_hz, batch.impedance, batch.used)
-    starts, rows = best_starts(approach, offered, _STARTS)
-    near = minimise(approach, starts, low, high, tolerance=_APPROACH, rows=rows, check=check)
+    starts, rows = best_starts(batch.thinned().objective(model), offered, _STARTS)
+    ends = approach_bounds(model, batch.impedance, batch.used)
+    near = minimise(
+        approach, starts, ends[0][rows], ends[1][rows], tolerance=_APPROACH, rows=rows, check=check
+    )
     # The logarithm may have led a start nowhere that can be evaluated; its start is as good then.
-    theta = np.where(np.isfinite(near.cost)[:, None], near.theta, starts)
-    found = minimise(batch.objective(model), theta, low, high, rows=rows, check=check)
-    return _best_of(found, rows, size)
+    lost = ~np.isfinite(near.cost)
+    near.theta[lost] = starts[lost]
+    near.cost[lost] = np.inf
+    going = _worth_going_on(near, rows)
+    found = minimise(
+        batch.objective(model),
+        near.theta[going],
+        low,
+        high,
+        tolerance=_COMPARE,
+        rows=rows[going],
+        check=check,
+    )
+    return _best_of(found, rows[going], size)
+
+
+def settle(
+    model: CoatingModel,
+    batch: Batch,
+    theta: FloatArray,
+    check: Callable[[], None] | None = None,
+) -> Solution:
+    """The fits `theta` (B, P), known well enough to compare models, brought to rest."""
+    low, high = model.bounds
+    return minimise(batch.objective(model), theta, low, high, tolerance=_SETTLE, check=check)
 
 
 def ask_neighbours(
@@ -104,7 +161,9 @@ def ask_neighbours(
     objective = batch.objective(model)
     offers = [offer for offer in neighbours if offer is not None and len(offer)]
     place = np.repeat(np.array(rows, dtype=np.intp), [len(offer) for offer in offers])
-    again = minimise(objective, np.concatenate(offers), low, high, rows=place, check=check)
+    again = minimise(
+        objective, np.concatenate(offers), low, high, tolerance=_COMPARE, rows=place, check=check
+    )
     best = _best_of(again, np.searchsorted(np.array(rows), place), len(rows))
     full = Solution(
         found.theta.copy(),

@@ -18,7 +18,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass
 from enum import IntEnum
-from typing import Protocol
+from typing import Any, Protocol
 
 import numpy as np
 from numpy.typing import NDArray
@@ -74,16 +74,19 @@ class Solution:
 class Tolerance:
     """When a row has settled. `cosine` is the largest cosine between residual and Jacobian
     columns; `reduction` the smallest relative fall of S worth another step; `step` the largest
-    change of a coordinate in one step."""
+    change of a coordinate in one step; `damping` the λ of the first step: far from the solution
+    full first steps tend to run off along a direction that the data hardly hold."""
 
     cosine: float = 1e-5
     reduction: float = 1e-8
     step: float = 3.0
     iterations: int = 100
+    damping: float = 0.3
 
 
 _TINY = 1e-300
-_WORKING_SET = 256
+_WORKING_SET = 512
+_FASTEST_EASING = 0.2
 
 
 def _steps(
@@ -104,6 +107,11 @@ def _steps(
     return np.asarray(scaled * scale, dtype=np.float64)
 
 
+def _of_rows(values: NDArray[Any], rows: IndexArray) -> NDArray[Any]:
+    """The rows' own values, or the one row of values that all share."""
+    return values if values.shape[0] == 1 else values[rows]
+
+
 def _free(
     theta: FloatArray, gradient: FloatArray, low: FloatArray, high: FloatArray, fixed: BoolArray
 ) -> BoolArray:
@@ -111,9 +119,9 @@ def _free(
 
 
 class _Working:
-    """The rows at work: arrays of one length, refilled from the queue."""
+    """The rows at work: arrays of one length. Rows that end give their places to waiting ones."""
 
-    def __init__(self, rows: IndexArray, start: FloatArray) -> None:
+    def __init__(self, rows: IndexArray, start: FloatArray, damping: float) -> None:
         size, count = start.shape
         self.rows = rows
         self.theta = start.copy()
@@ -121,18 +129,20 @@ class _Working:
         self.cost = np.full(size, np.inf)
         self.normal = np.zeros((size, count, count))
         self.gradient = np.zeros((size, count))
-        self.damping = np.full(size, 1e-3)
+        self.damping = np.full(size, damping)
         self.growth = np.full(size, 2.0)
         self.predicted = np.zeros(size)
         self.spent = np.zeros(size, dtype=np.int64)
 
-    def keep(self, mask: BoolArray) -> None:
+    def replace(self, places: IndexArray, other: _Working) -> None:
         for name, value in vars(self).items():
-            setattr(self, name, value[mask])
+            value[places] = getattr(other, name)
 
-    def add(self, other: _Working) -> None:
+    def remove(self, places: IndexArray) -> None:
+        kept = np.ones(self.rows.size, dtype=np.bool_)
+        kept[places] = False
         for name, value in vars(self).items():
-            setattr(self, name, np.concatenate([value, getattr(other, name)]))
+            setattr(self, name, value[kept])
 
 
 def minimise(
@@ -157,9 +167,8 @@ def minimise(
     tolerance = tolerance or Tolerance()
     size, count = start.shape
     rows = np.arange(size) if rows is None else rows
-    low = np.broadcast_to(low, (size, count))
-    high = np.broadcast_to(high, (size, count))
-    fixed = np.zeros((size, count), dtype=np.bool_) if fixed is None else fixed
+    fixed = np.zeros((1, count), dtype=np.bool_) if fixed is None else fixed
+    low, high = np.atleast_2d(low), np.atleast_2d(high)
     theta = np.clip(start, low, high)
     result = Solution(
         theta,
@@ -171,14 +180,15 @@ def minimise(
         np.zeros((size, count), dtype=np.bool_),
     )
     begun = min(size, working_set)
-    work = _Working(np.arange(begun), theta[:begun])
+    work = _Working(np.arange(begun), theta[:begun], tolerance.damping)
     while work.rows.size:
         if check is not None:
             check()
         own = work.rows
-        status = _iterate(objective, work, rows[own], low[own], high[own], fixed[own], tolerance)
-        ended = status >= 0
-        if ended.any():
+        limits = (_of_rows(low, own), _of_rows(high, own), _of_rows(fixed, own))
+        status = _iterate(objective, work, rows[own], *limits, tolerance)
+        ended = np.flatnonzero(status >= 0)
+        if ended.size:
             place = own[ended]
             result.theta[place] = work.theta[ended]
             result.cost[place] = work.cost[ended]
@@ -186,12 +196,13 @@ def minimise(
             result.gradient[place] = work.gradient[ended]
             result.iterations[place] = work.spent[ended]
             result.status[place] = status[ended]
-            work.keep(~ended)
-            more = min(size - begun, int(ended.sum()))
-            if more:
-                new = np.arange(begun, begun + more)
-                work.add(_Working(new, theta[new]))
-                begun += more
+            waiting = np.arange(begun, min(size, begun + ended.size))
+            begun += waiting.size
+            if waiting.size:
+                fresh = _Working(waiting, theta[waiting], tolerance.damping)
+                work.replace(ended[: waiting.size], fresh)
+            if waiting.size < ended.size:
+                work.remove(ended[waiting.size :])
     at_bound = (result.theta <= low) | (result.theta >= high)
     np.logical_and(at_bound, ~fixed, out=result.at_bound)
     return result
@@ -218,7 +229,7 @@ def _iterate(
         gain = np.where(first | (work.predicted <= 0), 1.0, fall / work.predicted)
         small = better & ~first & (fall <= tolerance.reduction * work.cost)
     # Nielsen's rule: trust grows smoothly with the gain, and shrinks ever faster on refusals.
-    easing = np.maximum(1.0 / 3.0, 1.0 - (2.0 * np.clip(gain, -1.0, 1.5) - 1.0) ** 3)
+    easing = np.maximum(_FASTEST_EASING, 1.0 - (2.0 * np.clip(gain, -1.0, 1.5) - 1.0) ** 3)
     work.damping = np.where(
         better, np.where(first, work.damping, work.damping * easing), work.damping * work.growth
     )
@@ -243,13 +254,11 @@ def _iterate(
     status[np.isfinite(work.cost) & (cosine <= tolerance.cosine)] = Status.GRADIENT
     status[work.cost <= _TINY] = Status.GRADIENT
 
-    going = status < 0
-    if going.any():
-        step = _steps(work.normal[going], work.gradient[going], free[going], work.damping[going])
-        step = np.clip(step, -tolerance.step, tolerance.step)
-        trial = np.clip(work.theta[going] + step, low[going], high[going])
-        step = trial - work.theta[going]
-        curved = (work.normal[going] @ step[:, :, None])[:, :, 0]
-        work.predicted[going] = -(step * (2.0 * work.gradient[going] + curved)).sum(axis=1)
-        work.trial[going] = trial
+    # Rows that have ended take part once more: sorting them out would cost as much.
+    step = _steps(work.normal, work.gradient, free, work.damping)
+    np.clip(step, -tolerance.step, tolerance.step, out=step)
+    np.clip(work.theta + step, low, high, out=work.trial)
+    step = work.trial - work.theta
+    curved = np.einsum("bij,bj->bi", work.normal, step)
+    work.predicted = -(step * (2.0 * work.gradient + curved)).sum(axis=1)
     return status

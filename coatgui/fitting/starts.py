@@ -4,9 +4,9 @@ A two-layer panel seen from the fast end: the film's capacitance is what the hig
 show, the pore resistance is near |Z| where one arc gives way to the next, the interface's
 capacitance is what the slow end shows, and the resistances add up to about |Z| at the slowest
 point or are far above it. Where the arcs meet is not known, so several places are tried: every
-combination becomes a candidate, the logarithmic residual ranks them, and the best few are fitted.
-The logarithmic residual is used because the ordinary one saturates at 1 where a model is far too
-small, and so cannot tell bad from worse.
+combination becomes a candidate, a symmetric misfit ranks them, and the best few are fitted. It is
+symmetric because the ordinary residual saturates at 1 where a model is far too small, and so cannot
+tell bad from worse.
 """
 
 from __future__ import annotations
@@ -24,6 +24,7 @@ _SPLITS = (0.15, 0.3, 0.45, 0.6, 0.75)
 _SLOW_FACTORS = (1.0, 8.0)
 _FAST_CAPACITANCES = ("parallel", "series")
 _FILM_EXPONENTS = (0.96, 0.82)
+_LEAST_VISIBLE = 1e-4  # of |Z|; no instrument of the trade resolves as little
 
 
 class _Spectra:
@@ -66,7 +67,10 @@ def _values(
         inner = spec.layer == layers and (layers > 1 or model.layers[0].role == "interface")
         exponent = 0.85 if inner else film_n
         if inner:
-            capacitance, omega = outline.capacitance(0.9 if layers > 1 else split, "series")
+            # Where the slow arc closes within the sweep, its capacitance shows soon after the arcs
+            # meet; where it does not close, at the slow end.
+            place = split if layers == 1 else 0.9 if slow > 1.0 else min(split + 0.15, 0.9)
+            capacitance, omega = outline.capacitance(place, "series")
         else:
             capacitance, omega = outline.capacitance(0.05, fast)
         if spec.kind is Kind.RESISTANCE:
@@ -125,7 +129,7 @@ def best_starts(
     places, trials, size, _ = offered.shape
     rows = np.arange(size)
     costs = np.stack(
-        [[objective.cost(offered[s, k], rows) for k in range(trials)] for s in range(places)]
+        [[objective.misfit(offered[s, k], rows) for k in range(trials)] for s in range(places)]
     )
     costs = np.where(np.isfinite(costs), costs, np.inf)
     within = np.argmin(costs, axis=1)
@@ -134,3 +138,18 @@ def best_starts(
     chosen = np.argsort(cheapest, axis=0, kind="stable")[:count]
     starts = offered[chosen, within[chosen, rows], rows]
     return starts.transpose(1, 0, 2).reshape(size * count, -1), np.repeat(rows, count)
+
+
+def approach_bounds(
+    model: CoatingModel, impedance: ComplexArray, used: BoolArray
+) -> tuple[FloatArray, FloatArray]:
+    """Ends of the search (B, P) while a fit is still far away: the solution resistance stays above
+    what the data could show at all, because a first step may throw it to the very end, and from
+    there it takes many steps to come back."""
+    low, high = model.bounds
+    size = impedance.shape[0]
+    low, high = np.tile(low, (size, 1)), np.tile(high, (size, 1))
+    smallest = np.where(used, np.abs(impedance), np.inf).min(axis=1)
+    place = model.index("R_s")
+    low[:, place] = np.maximum(low[:, place], np.log(_LEAST_VISIBLE * smallest))
+    return low, high
