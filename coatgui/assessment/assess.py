@@ -14,6 +14,7 @@ from coatgui.assessment.cache import ResultCache, fits_from_bytes, fits_to_bytes
 from coatgui.assessment.cautions import cautions
 from coatgui.assessment.ranking import ranking
 from coatgui.assessment.readings import draw_readings, reading_assessment, start_reading
+from coatgui.assessment.repeats import deviations
 from coatgui.assessment.rules import default_criteria
 from coatgui.assessment.series import Drawn, draw_series
 from coatgui.assessment.summary import (
@@ -125,6 +126,7 @@ def _fits(
     cache: ResultCache | None,
 ) -> list[Fit | None]:
     """Fits of the readings that count, in the order of `drawn`; None for the others."""
+    scatter = deviations(drawn)
     by_panel: dict[str, list[int]] = {}
     for place, d in enumerate(drawn):
         if d.counts:
@@ -137,6 +139,7 @@ def _fits(
             [drawn[i].reading.exposure_h for i in places],
             [drawn[i].reading.pinned_model for i in places],
             campaign.open_lead,
+            [scatter[i] for i in places],
         )
         for panel_id, places in by_panel.items()
     }
@@ -163,6 +166,7 @@ def _fits(
         exposure_h=[drawn[i].reading.exposure_h for i in places],
         pinned=[drawn[i].reading.pinned_model for i in places],
         open_lead=campaign.open_lead,
+        deviation=[scatter[i] for i in places],
         progress=progress,
         spread=spread,
     )

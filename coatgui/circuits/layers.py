@@ -7,7 +7,7 @@ below turns that description into a network and gives every parameter its symbol
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from typing import Any
 
@@ -15,7 +15,15 @@ import numpy as np
 
 from coatgui.circuits import elements as el
 from coatgui.circuits.elements import ComplexArray, FloatArray, Grid, Kind, Scale
-from coatgui.circuits.network import Evaluation, Leaf, Node, Parallel, Series, impedance
+from coatgui.circuits.network import (
+    Evaluation,
+    Leaf,
+    Node,
+    Parallel,
+    RestrictedEvaluation,
+    Series,
+    impedance,
+)
 
 
 class ModelError(ValueError):
@@ -112,7 +120,9 @@ class CoatingModel:
     """A coating model ready to be evaluated. Build it with `build_model` or `model_from_data`.
 
     `automatic` models take part in the choice of model; the others are a person's to pick.
-    `family` orders the automatic models from a closed film to attacked metal.
+    `parameters` are the P free ones, which are fitted; `all_parameters` are the F of the network,
+    among them those that are fixed or tied to another: `source` (F,) says which free parameter
+    gives each, −1 for none, and `constant` (F,) holds natural coordinates of the fixed ones.
     """
 
     model_id: str
@@ -123,6 +133,9 @@ class CoatingModel:
     automatic: bool
     twin: str
     parameters: tuple[ParameterSpec, ...]
+    all_parameters: tuple[ParameterSpec, ...]
+    source: tuple[int, ...]
+    constant: tuple[float, ...]
     network: Node = field(repr=False)
 
     @property
@@ -158,13 +171,34 @@ class CoatingModel:
         high = self.natural(np.array([p.high for p in self.parameters]))
         return low, high
 
+    @property
+    def restricted(self) -> bool:
+        """Whether some parameter is fixed or tied to another."""
+        return len(self.parameters) < len(self.all_parameters)
+
+    def whole(self, theta: FloatArray) -> FloatArray:
+        """Natural coordinates (B, F) of all parameters, from those of the free ones (B, P)."""
+        if not self.restricted:
+            return theta
+        source = np.array(self.source)
+        return np.where(source < 0, np.array(self.constant), theta[:, np.maximum(source, 0)])
+
+    @property
+    def selection(self) -> FloatArray:
+        """∂(all parameters)/∂(free parameters), (F, P): ones and zeros."""
+        source = np.array(self.source)
+        chosen: FloatArray = (source[:, None] == np.arange(len(self.parameters))).astype(np.float64)
+        return chosen
+
     def impedance(self, theta: FloatArray, frequency_hz: FloatArray | Grid) -> ComplexArray:
         """Impedance (B, N) in Ω at natural coordinates `theta` (B, P)."""
         grid = frequency_hz if isinstance(frequency_hz, Grid) else Grid.of_hertz(frequency_hz)
-        return impedance(self.network, grid, theta)
+        return impedance(self.network, grid, self.whole(theta))
 
     def evaluate(self, theta: FloatArray, grid: Grid) -> Evaluation:
         """Impedance and, on demand, derivatives, at natural coordinates `theta` (B, P)."""
+        if self.restricted:
+            return RestrictedEvaluation(self.network, grid, self.whole(theta), self.selection)
         return Evaluation(self.network, grid, theta)
 
 
@@ -245,6 +279,43 @@ def _check(model_id: str, layers: tuple[Layer, ...]) -> None:
         raise ModelError(f"{where} has diffusion in two layers: one spectrum cannot hold both.")
 
 
+def _restrict(
+    model_id: str,
+    specs: tuple[ParameterSpec, ...],
+    fixed: Mapping[str, float],
+    tied: Sequence[Sequence[str]],
+) -> tuple[tuple[int, ...], tuple[float, ...], tuple[ParameterSpec, ...]]:
+    """Source, constant and free parameters of a model with fixed and tied parameters."""
+    where = f"Coating model '{model_id}'"
+    place = {spec.symbol: i for i, spec in enumerate(specs)}
+    for symbol in (*fixed, *(symbol for group in tied for symbol in group)):
+        if symbol not in place:
+            raise ModelError(f"{where} has no parameter {symbol}; it has {', '.join(place)}.")
+    leader = {symbol: group[0] for group in tied for symbol in group[1:]}
+    named = [*fixed, *leader, *{group[0] for group in tied if group}]
+    if len(set(named)) != len(named):
+        raise ModelError(f"{where}: a parameter is fixed or tied twice; say it once.")
+    for symbol, first in leader.items():
+        if specs[place[symbol]].kind is not specs[place[first]].kind:
+            raise ModelError(f"{where}: {symbol} and {first} differ in kind and cannot be tied.")
+    constant = [0.0] * len(specs)
+    for symbol, value in fixed.items():
+        spec = specs[place[symbol]]
+        if not spec.low <= value <= spec.high:
+            raise ModelError(
+                f"{where}: {symbol} is fixed at {value:g}; it must lie between {spec.low:g} and "
+                f"{spec.high:g}."
+            )
+        plain = spec.kind.scale is Scale.PLAIN
+        constant[place[symbol]] = float(value if plain else np.log(value))
+    free = [spec.symbol for spec in specs if spec.symbol not in fixed and spec.symbol not in leader]
+    source = tuple(
+        -1 if spec.symbol in fixed else free.index(leader.get(spec.symbol, spec.symbol))
+        for spec in specs
+    )
+    return source, tuple(constant), tuple(spec for spec in specs if spec.symbol in free)
+
+
 def build_model(
     model_id: str,
     name: str,
@@ -254,8 +325,12 @@ def build_model(
     inductance: bool = False,
     automatic: bool = False,
     twin: str = "",
+    fixed: Mapping[str, float] | None = None,
+    tied: Sequence[Sequence[str]] = (),
 ) -> CoatingModel:
-    """A model from its layers. Raises ModelError where the description makes no circuit."""
+    """A model from its layers. `fixed` holds parameters at physical values by symbol; the symbols
+    of each group of `tied` share one value. Raises ModelError where the description makes no
+    circuit."""
     _check(model_id, layers)
     builder = _Builder()
     parts: list[Node] = []
@@ -265,8 +340,20 @@ def build_model(
     parts.append(builder.layer(layers, 1))
     network = Series(tuple(parts))
     specs = tuple(builder.specs)
+    source, constant, free = _restrict(model_id, specs, fixed or {}, tied)
     return CoatingModel(
-        model_id, name, meaning, layers, inductance, automatic, twin, specs, network
+        model_id=model_id,
+        name=name,
+        meaning=meaning,
+        layers=layers,
+        inductance=inductance,
+        automatic=automatic,
+        twin=twin,
+        parameters=free,
+        all_parameters=specs,
+        source=source,
+        constant=constant,
+        network=network,
     )
 
 
@@ -283,6 +370,8 @@ def model_from_data(data: Mapping[str, Any]) -> CoatingModel:
             inductance=data.get("inductance", False),
             automatic=data.get("automatic", False),
             twin=data.get("twin", ""),
+            fixed=data.get("fixed"),
+            tied=data.get("tied", ()),
         )
     except (KeyError, TypeError) as error:
         raise ModelError(

@@ -119,3 +119,19 @@ class Evaluation:
             out = np.empty((rows, count, self._grid.omega.size), dtype=np.complex128)
         _downward(self._node, self._grid, self._theta, False, self._found, factor, out)
         return out
+
+
+class RestrictedEvaluation(Evaluation):
+    """A network whose parameters are not all free: derivatives are for the free ones only."""
+
+    def __init__(self, node: Node, grid: Grid, theta: FloatArray, selection: FloatArray) -> None:
+        super().__init__(node, grid, theta)
+        self._selection = selection
+
+    def derivatives(self, factor: ComplexArray, out: ComplexArray | None = None) -> ComplexArray:
+        """factor·∂Z/∂θ, (B, P, N), for the free parameters; otherwise as above."""
+        of_free: ComplexArray = self._selection.T @ super().derivatives(factor)
+        if out is None:
+            return of_free
+        out[...] = of_free
+        return out

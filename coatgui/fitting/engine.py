@@ -39,6 +39,8 @@ class _Task:
     series: tuple[str, ...]
     pinned: tuple[str, ...]
     leads_ohm: float | None
+    deviation: tuple[FloatArray | None, ...]
+    own_models: tuple[CoatingModel, ...]
 
 
 def fit_spectra(
@@ -50,19 +52,23 @@ def fit_spectra(
     exposure_h: Sequence[float],
     pinned: Sequence[str],
     open_lead: Spectrum | None = None,
+    deviation: Sequence[FloatArray | None] | None = None,
+    own_models: Sequence[CoatingModel] = (),
     progress: Progress | None = None,
     spread: Spread = one_after_another,
 ) -> list[Fit | None]:
     """Fit every spectrum with the catalogue and choose a model along each series.
 
     `used` are masks (N,) of points to fit; `series` says whose spectrum it is, `exposure_h` when;
-    `pinned` names a model or is empty. The result is in the order given; None where fewer points
-    are used than a coating model needs. Raises KeyError for an unknown pinned model, Cancelled.
+    `pinned` names a model or is empty. `deviation` holds relative standard deviations (N,) of a
+    spectrum's points up to a factor, None where all scatter alike; `own_models` stand beside the
+    catalogue. The result is in the order given; None where fewer points are used than a coating
+    model needs. Raises KeyError for an unknown pinned model, Cancelled.
     """
     progress = progress or Progress()
-    models = catalogue()
+    known = {*catalogue(), *(model.model_id for model in own_models)}
     for name in pinned:
-        if name and name not in models:
+        if name and name not in known:
             raise KeyError(f"There is no coating model '{name}'.")
     fewest = rule("fewest_points")
     order = sorted(
@@ -86,6 +92,8 @@ def fit_spectra(
             tuple(series[i] for i in share),
             tuple(pinned[i] for i in share),
             leads,
+            tuple(None if deviation is None else deviation[i] for i in share),
+            tuple(own_models),
         )
         for share in shares
     ]
@@ -104,17 +112,25 @@ def _groups(task: _Task) -> list[tuple[list[int], Batch]]:
     places: dict[bytes, list[int]] = {}
     for i, spectrum in enumerate(task.spectra):
         places.setdefault(spectrum.frequency_hz.tobytes(), []).append(i)
-    return [
-        (
-            own,
-            Batch(
-                task.spectra[own[0]].frequency_hz,
-                np.stack([task.spectra[i].impedance_ohm for i in own]),
-                np.stack([task.used[i] for i in own]),
-            ),
+    groups = []
+    for own in places.values():
+        frequency_hz = task.spectra[own[0]].frequency_hz
+        given = [task.deviation[i] for i in own]
+        alike = np.ones(frequency_hz.size)
+        groups.append(
+            (
+                own,
+                Batch(
+                    frequency_hz,
+                    np.stack([task.spectra[i].impedance_ohm for i in own]),
+                    np.stack([task.used[i] for i in own]),
+                    np.stack([alike if d is None else d for d in given])
+                    if any(d is not None for d in given)
+                    else None,
+                ),
+            )
         )
-        for own in places.values()
-    ]
+    return groups
 
 
 def _neighbours(task: _Task, theta: FloatArray) -> list[FloatArray]:
@@ -152,7 +168,11 @@ def _add_projected(
 
 def _fit_task(task: _Task) -> list[Fit]:
     """All fits of one share of the work."""
-    models = [m for m in catalogue().values() if m.automatic or m.model_id in task.pinned]
+    models = [
+        model
+        for model in (*catalogue().values(), *task.own_models)
+        if model.automatic or model.model_id in task.pinned
+    ]
     groups = _groups(task)
     number = len(task.spectra)
     solutions: dict[str, list[Solution]] = {}
@@ -201,7 +221,7 @@ def _fit_task(task: _Task) -> list[Fit]:
             if not place:
                 continue
             found = solutions[model.model_id][group]
-            part = Batch(batch.frequency_hz, batch.impedance[place], batch.used[place])
+            part = batch.rows(place)
             settled = settle(model, part, found.theta[place])
             limits = parameter_limits(model, part, settled)
             for row, where in enumerate(place):

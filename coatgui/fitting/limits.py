@@ -142,7 +142,10 @@ def _profile(
     rise = np.maximum(cost[row], 1e-300) * reach[row] ** 2 / freedom[row]
     objective = batch.objective(model)
     number = row.size
-    distance = np.minimum(np.clip(np.nan_to_num(half[row, place], nan=1.0), 1e-6, 1.0), farthest)
+    # A parameter at an end of its search has no width of its own to start from.
+    width = half[row, place]
+    width = np.where(np.isfinite(width) & (width > 0), np.clip(width, 1e-4, 1.0), 1.0)
+    distance = np.minimum(width, farthest)
     below = np.zeros(number)
     below_w = np.zeros(number)
     above = np.full(number, np.inf)

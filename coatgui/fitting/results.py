@@ -17,7 +17,8 @@ def film_capacitance(model: CoatingModel, theta: FloatArray) -> FloatArray:
     """Rough capacitance (B,) in F of the outermost layer, to tell a film from bare metal: C, or Q
     read at the frequency where the layer's resistance or 1 kHz sets it."""
     capacitance = np.full(theta.shape[0], np.nan)
-    for place, spec in enumerate(model.parameters):
+    theta = model.whole(theta)
+    for place, spec in enumerate(model.all_parameters):
         if spec.layer != 1:
             continue
         if spec.kind is Kind.CAPACITANCE:
@@ -56,47 +57,62 @@ def build_fit(
     leads_ohm: float | None,
 ) -> Fit:
     """The record of one fit: `row` of `batch`, of `fits` and of `limits`."""
-    theta, cost, status = fits.theta[row], float(fits.cost[row]), int(fits.status[row])
+    theta, status = fits.theta[row], int(fits.status[row])
     low, high = limits.low[row], limits.high[row].copy()
+    whole = model.whole(theta[None, :])[0]
     parameters = []
-    for place, spec in enumerate(model.parameters):
+    for place, (spec, source) in enumerate(zip(model.all_parameters, model.source, strict=True)):
+        if source < 0:
+            value = _physical(spec, float(whole[place]))
+            held = Quantity(value, None, None, Bound.FIXED, spec.kind.unit, "held by a person")
+            parameters.append(Parameter(spec.symbol, spec.meaning, spec.layer, held))
+            continue
         method = "95 % limits of the fit"
         leaky = leads_ohm is not None and spec.kind is Kind.RESISTANCE and spec.layer > 0
         if leaky and leads_ohm is not None:
-            share = float(np.exp(theta[place])) / leads_ohm
+            share = float(np.exp(theta[source])) / leads_ohm
             if share * rule("leads_factor") > 1.0:
-                high[place] = np.inf
+                high[source] = np.inf
                 method = "the open lead's own resistance is near: the leads, not the film, set this"
-            elif np.isfinite(high[place]):
+            elif np.isfinite(high[source]):
                 # The leads lie in parallel: without them the film's resistance would be this much
                 # higher at the most.
-                high[place] -= np.log1p(-share)
+                high[source] -= np.log1p(-share)
         parameters.append(
             Parameter(
                 spec.symbol,
                 spec.meaning,
                 spec.layer,
-                _quantity(spec, float(theta[place]), low[place], high[place], method),
+                _quantity(spec, float(theta[source]), low[source], high[source], method),
             )
         )
     used = batch.used[row]
     # ∂ln p/∂θ is 1 where θ = ln p and 1/p where θ = p.
     slope = np.array(
         [
-            1.0 / theta[i] if spec.kind is Kind.EXPONENT else 1.0
-            for i, spec in enumerate(model.parameters)
+            1.0 / whole[i] if spec.kind is Kind.EXPONENT else 1.0
+            for i, spec in enumerate(model.all_parameters)
         ]
     )
-    covariance = limits.covariance[row] * slope[:, None] * slope[None, :]
+    selection = model.selection * slope[:, None]
+    covariance = selection @ limits.covariance[row] @ selection.T
+    modelled = model.impedance(theta[None, :], batch.frequency_hz)[0].copy()
+    relative = (modelled / batch.impedance[row] - 1.0)[used]
+    ends = [
+        spec.symbol for spec, end in zip(model.parameters, fits.at_bound[row], strict=True) if end
+    ]
+    message = MESSAGES[Status(status)]
+    if ends:
+        message += f"; {', '.join(ends)} ran to the end of the search"
     return Fit(
         model=model.model_id,
         model_name=model.name,
         parameters=tuple(parameters),
-        modelled_ohm=model.impedance(theta[None, :], batch.frequency_hz)[0].copy(),
+        modelled_ohm=modelled,
         used=used.copy(),
-        residual_rms_percent=100.0 * float(np.sqrt(cost / (2.0 * used.sum()))),
+        residual_rms_percent=100.0 * float(np.sqrt(np.mean(np.abs(relative) ** 2) / 2.0)),
         converged=status != Status.ITERATIONS,
-        message=MESSAGES[Status(status)],
+        message=message,
         trials=trials,
         log_covariance=covariance,
     )

@@ -32,22 +32,39 @@ _SETTLE = Tolerance(damping=1e-3)
 
 @dataclass(frozen=True)
 class Batch:
-    """Spectra that share a grid. `frequency_hz` (N,), `impedance` (B, N), `used` (B, N)."""
+    """Spectra that share a grid. `frequency_hz` (N,), `impedance` (B, N), `used` (B, N);
+    `deviation` (B, N) the relative standard deviation of each point up to a factor, or None where
+    all points of a spectrum scatter alike."""
 
     frequency_hz: FloatArray
     impedance: ComplexArray
     used: BoolArray
+    deviation: FloatArray | None = None
+
+    def rows(self, places: Sequence[int]) -> Batch:
+        """Some of the spectra."""
+        chosen = list(places)
+        deviation = None if self.deviation is None else self.deviation[chosen]
+        return Batch(self.frequency_hz, self.impedance[chosen], self.used[chosen], deviation)
 
     def thinned(self) -> Batch:
         """Every third point, where there are enough: what ranking rough starts needs."""
         if self.frequency_hz.size < 3 * _ENOUGH_POINTS:
             return self
         kept = slice(None, None, 3)
-        return Batch(self.frequency_hz[kept], self.impedance[:, kept], self.used[:, kept])
+        deviation = None if self.deviation is None else self.deviation[:, kept]
+        return Batch(
+            self.frequency_hz[kept], self.impedance[:, kept], self.used[:, kept], deviation
+        )
 
     def objective(self, model: CoatingModel, *, logarithmic: bool = False) -> ImpedanceObjective:
         return ImpedanceObjective(
-            model, self.frequency_hz, self.impedance, self.used, logarithmic=logarithmic
+            model,
+            self.frequency_hz,
+            self.impedance,
+            self.used,
+            deviation=None if self.deviation is None else self.deviation * np.abs(self.impedance),
+            logarithmic=logarithmic,
         )
 
 

@@ -223,9 +223,9 @@ def _iterate(
     work.spent += 1
     finite = np.isfinite(cost) & np.isfinite(gradient).all(axis=1)
     first = ~np.isfinite(work.cost)
-    fall = np.where(first, np.inf, work.cost - np.where(finite, cost, np.inf))
-    better = finite & (fall > 0)
     with np.errstate(divide="ignore", invalid="ignore"):
+        fall = np.where(first, np.inf, work.cost - np.where(finite, cost, np.inf))
+        better = finite & (fall > 0)
         gain = np.where(first | (work.predicted <= 0), 1.0, fall / work.predicted)
         small = better & ~first & (fall <= tolerance.reduction * work.cost)
     # Nielsen's rule: trust grows smoothly with the gain, and shrinks ever faster on refusals.
@@ -242,8 +242,8 @@ def _iterate(
 
     free = _free(work.theta, work.gradient, low, high, fixed)
     count = work.theta.shape[1]
-    scale = np.sqrt(work.normal[:, np.arange(count), np.arange(count)] * work.cost[:, None])
     with np.errstate(invalid="ignore"):
+        scale = np.sqrt(work.normal[:, np.arange(count), np.arange(count)] * work.cost[:, None])
         cosine = np.where(
             free & (scale > 0), np.abs(work.gradient) / np.maximum(scale, _TINY), 0.0
         ).max(axis=1)

@@ -150,6 +150,7 @@ def approach_bounds(
     size = impedance.shape[0]
     low, high = np.tile(low, (size, 1)), np.tile(high, (size, 1))
     smallest = np.where(used, np.abs(impedance), np.inf).min(axis=1)
-    place = model.index("R_s")
-    low[:, place] = np.maximum(low[:, place], np.log(_LEAST_VISIBLE * smallest))
+    if "R_s" in model.symbols:
+        place = model.index("R_s")
+        low[:, place] = np.maximum(low[:, place], np.log(_LEAST_VISIBLE * smallest))
     return low, high

@@ -52,6 +52,7 @@ def test_key_changes_with_everything_it_rests_on(made: Made) -> None:
         "exposure_h": [24.0],
         "pinned": [""],
         "open_lead": None,
+        "deviation": [None],
     }
     changed: dict[str, Any] = {
         "spectra": [other],
@@ -60,6 +61,7 @@ def test_key_changes_with_everything_it_rests_on(made: Made) -> None:
         "exposure_h": [25.0],
         "pinned": ["closed_film"],
         "open_lead": other,
+        "deviation": [np.ones(fit.used.size)],
     }
     keys = {series_key(**(same | {name: value})) for name, value in changed.items()}
     assert len(keys) == len(changed)
