@@ -35,7 +35,9 @@ from coatgui.records.measured import (
     Spectrum,
 )
 from coatgui.records.results import (
+    ActiveArea,
     Assessment,
+    Breakpoint,
     Check,
     Course,
     CoursePoint,
@@ -56,9 +58,11 @@ from coatgui.records.results import (
 )
 
 __all__ = [
+    "ActiveArea",
     "Assessment",
     "BoolArray",
     "Bound",
+    "Breakpoint",
     "Campaign",
     "Check",
     "Column",
