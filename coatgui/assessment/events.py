@@ -24,20 +24,17 @@ from coatgui.assessment.fick import time_to_share
 from coatgui.assessment.rules import rule
 from coatgui.assessment.sorption import Sorption
 from coatgui.assessment.words import hours as in_hours
-from coatgui.assessment.words import power_of_ten
 from coatgui.records import (
     Bound,
-    Criterion,
     Event,
     Fit,
     FloatArray,
-    LimitCrossing,
     Modulus,
     Quantity,
 )
 
 
-def _when(after_h: float | None, by_h: float, first_h: float) -> str:
+def when(after_h: float | None, by_h: float, first_h: float) -> str:
     if after_h is not None:
         return f"between {in_hours(after_h)} and {in_hours(by_h)}"
     if by_h <= first_h:
@@ -53,7 +50,7 @@ def _event(
     what: str,
     confirmed: bool = True,
 ) -> Event:
-    text = f"{what} {_when(after_h, by_h, exposure_h[0])}"
+    text = f"{what} {when(after_h, by_h, exposure_h[0])}"
     if not confirmed:
         text += "; only the last reading shows it, the next will confirm it or not"
     return Event(code, text + ".", after_h, by_h, confirmed)
@@ -293,50 +290,3 @@ def rebound_event(
         lowest = min(lowest, now)
         before_h = time
     return None
-
-
-def limit_crossing(
-    criterion: Criterion, exposure_h: Sequence[float], moduli: Sequence[Modulus | None]
-) -> LimitCrossing:
-    """When |Z|·A first fell below the criterion.
-
-    A reading is below only where its upper limit is, above only where its lower limit is; one whose
-    limits hold the criterion between them does not tell, and neither does a bound from the leads
-    below it or a frequency that was not reached. So the interval is wide enough to hold the
-    crossing. `moduli` are those at the criterion's frequency.
-    """
-    limit = f"{power_of_ten(criterion.ohm_cm2)} Ω cm² at {criterion.frequency_hz:g} Hz"
-    above_h: float | None = None
-    below: tuple[float | None, float] | None = None
-    watched_h: float | None = None
-    again = False
-    unclear: list[float] = []
-    for time, modulus in zip(exposure_h, moduli, strict=True):
-        quantity = None if modulus is None else modulus.quantity
-        if quantity is None or quantity.value is None:
-            continue
-        low = quantity.value if quantity.low is None else quantity.low
-        is_above = quantity.bound is not Bound.AT_MOST and low >= criterion.ohm_cm2
-        is_below = quantity.high is not None and quantity.high < criterion.ohm_cm2
-        if is_below:
-            below = below or (above_h, time)
-            watched_h = time
-        elif is_above:
-            above_h = watched_h = time
-            again = again or below is not None
-        elif quantity.bound is Bound.TWO_SIDED and below is None:
-            unclear.append(time)
-    on_it = ""
-    if unclear and unclear[-1] > (-1.0 if watched_h is None else watched_h):
-        on_it = f" The reading at {in_hours(unclear[-1])} lies on it within its limits."
-    if watched_h is None:
-        text = f"Nothing can be said about {limit}.{on_it}"
-        return LimitCrossing(criterion, None, None, text)
-    if below is None:
-        text = f"Not below {limit} up to {in_hours(watched_h)}.{on_it}"
-        return LimitCrossing(criterion, None, None, text, watched_h)
-    after_h, by_h = below
-    text = f"Below {limit} {_when(after_h, by_h, exposure_h[0])}"
-    if again:
-        text += "; above it again later"
-    return LimitCrossing(criterion, after_h, by_h, text + ".", watched_h)

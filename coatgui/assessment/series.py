@@ -15,7 +15,6 @@ from coatgui.assessment.events import (
     Drying,
     drying,
     fall_event,
-    limit_crossing,
     rebound_event,
     sorption_events,
     stage_events,
@@ -30,6 +29,7 @@ from coatgui.assessment.film import (
     widened,
 )
 from coatgui.assessment.interface import active_area, breakpoint_figures
+from coatgui.assessment.limits import limit_crossing
 from coatgui.assessment.panel_water import (
     draw_water,
     in_mass,

@@ -11,13 +11,13 @@ from coatgui.assessment.amounts import from_logarithm
 from coatgui.assessment.events import (
     drying,
     fall_event,
-    limit_crossing,
     rebound_event,
     replicate_noise,
     sorption_events,
     stage_events,
 )
 from coatgui.assessment.fick import fickian_uptake
+from coatgui.assessment.limits import limit_crossing
 from coatgui.assessment.sorption import dry_capacitance
 from coatgui.records import Bound, Criterion, Fit, Modulus, ModulusStatus, Quantity, Spectrum
 
