@@ -8,15 +8,22 @@ together, the formulations, their comparison.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+import math
+from collections.abc import Mapping, Sequence
+
+import numpy as np
 
 from coatgui.assessment.cache import ResultCache, fits_from_bytes, fits_to_bytes, series_key
 from coatgui.assessment.cautions import cautions
+from coatgui.assessment.courses import inspections
+from coatgui.assessment.drawn import Drawn
+from coatgui.assessment.events import replicate_noise
+from coatgui.assessment.film import film_facts
 from coatgui.assessment.ranking import ranking
 from coatgui.assessment.readings import draw_readings, reading_assessment, start_reading
 from coatgui.assessment.repeats import deviations
 from coatgui.assessment.rules import default_criteria
-from coatgui.assessment.series import Drawn, draw_series
+from coatgui.assessment.series import draw_series
 from coatgui.assessment.summary import (
     campaign_findings,
     formulation_assessment,
@@ -45,10 +52,7 @@ def assess(
     """
     progress = progress or Progress()
     settings = campaign.settings
-    criteria = settings.criteria or default_criteria()
-    watched_hz = (*settings.modulus_frequencies_hz, _USUAL_FREQUENCY_HZ)[0]
     panels = {panel.panel_id: panel for panel in campaign.panels}
-    names = {f.formulation_id: f.name for f in campaign.formulations}
     place = {panel.panel_id: i for i, panel in enumerate(campaign.panels)}
     readings = sorted(
         (r for r in campaign.readings if r.panel_id in panels),
@@ -70,20 +74,35 @@ def assess(
     ]
     for d, fit in zip(drawn, _fits(drawn, campaign, progress, spread, cache), strict=True):
         d.fit = fit
+    return conclude(campaign, drawn, progress)
+
+
+def conclude(campaign: Campaign, drawn: Sequence[Drawn], progress: Progress) -> Assessment:
+    """The conclusions from readings that are checked and fitted, sorted by panel in the campaign's
+    order and exposure time."""
+    settings = campaign.settings
+    criteria = settings.criteria or default_criteria()
+    watched_hz = (*settings.modulus_frequencies_hz, _USUAL_FREQUENCY_HZ)[0]
+    panels = {panel.panel_id: panel for panel in campaign.panels}
+    names = {f.formulation_id: f.name for f in campaign.formulations}
     by_panel: dict[str, list[Drawn]] = {panel_id: [] for panel_id in panels}
-    for d in drawn:  # sorted by exposure time within a panel
+    for d in drawn:
         by_panel[d.reading.panel_id].append(d)
-    panel_results = []
     for done, panel in enumerate(campaign.panels):
         progress.at("Drawing conclusions", done, len(campaign.panels))
+        draw_readings(by_panel[panel.panel_id], campaign, criteria)
+    noise = _noise(campaign, by_panel, watched_hz)
+    panel_results = []
+    for panel in campaign.panels:
         own = by_panel[panel.panel_id]
-        draw_readings(own, campaign, criteria)
         series = draw_series(
             own,
-            panel.thickness_um,
+            panel,
+            film_facts(panel),
             settings.capacitance_frequency_hz,
             watched_hz,
             criteria,
+            noise.get(panel.formulation_id),
         )
         panel_results.append(panel_assessment(panel, names, series, own))
     in_order = tuple(
@@ -116,6 +135,29 @@ def assess(
         cautions=cautions(),
         headline=headline(in_order, panel_results, findings),
     )
+
+
+def _noise(
+    campaign: Campaign, by_panel: Mapping[str, Sequence[Drawn]], frequency_hz: float
+) -> dict[str, float | None]:
+    """The replicates' scatter of log₁₀|Z| for each formulation id."""
+    found = {}
+    for formulation_id in {panel.formulation_id for panel in campaign.panels}:
+        own = [
+            [d for d in by_panel[panel.panel_id] if d.counts]
+            for panel in campaign.panels
+            if panel.formulation_id == formulation_id
+        ]
+        groups = inspections([d.reading.exposure_h for series in own for d in series])
+        column = {time: i for i, group in enumerate(groups) for time in group}
+        table = np.full((len(own), len(groups)), np.nan)
+        for row, series in enumerate(own):
+            for d in series:
+                at = d.modulus_at(frequency_hz)
+                if at is not None and at.quantity is not None and at.quantity.value:
+                    table[row, column[d.reading.exposure_h]] = math.log10(at.quantity.value)
+        found[formulation_id] = replicate_noise(table)
+    return found
 
 
 def _fits(

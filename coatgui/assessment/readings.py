@@ -19,10 +19,10 @@ from coatgui.assessment.capacitance import (
     measured_capacitance,
     small_exponent_finding,
 )
+from coatgui.assessment.drawn import Drawn
 from coatgui.assessment.modulus import moduli
 from coatgui.assessment.pores import pore_resistance
 from coatgui.assessment.rules import rule
-from coatgui.assessment.series import Drawn
 from coatgui.records import (
     Campaign,
     Check,
@@ -32,6 +32,7 @@ from coatgui.records import (
     LeftOutPoint,
     Panel,
     Parameter,
+    Quantity,
     Reading,
     ReadingAssessment,
     Severity,
@@ -127,7 +128,10 @@ def draw_readings(
                 d.area_cm2,
                 campaign.open_lead,
             )
-            d.parameters = _parameters(d.fit, spectrum, d.area_cm2, campaign.open_lead)
+            d.interface_capacitance = interface_capacitance(d.fit, d.area_cm2)
+            d.parameters = _parameters(
+                d.fit, spectrum, d.area_cm2, campaign.open_lead, d.interface_capacitance
+            )
             d.pore_resistance = pore_resistance(d.fit, spectrum, d.area_cm2, campaign.open_lead)
             d.findings.extend(
                 f for f in (note, small_exponent_finding(d.fit), *_fit_findings(d.fit)) if f
@@ -190,11 +194,19 @@ def reading_assessment(
         capacitance_at_high_frequency=d.measured_capacitance,
         pore_resistance=d.pore_resistance,
         water_uptake=d.water_uptake,
+        relative_permittivity=d.relative_permittivity,
+        film_resistivity=d.film_resistivity,
+        breakpoint=d.breakpoint,
+        active_area=d.active_area,
     )
 
 
 def _parameters(
-    fit: Fit, spectrum: Spectrum, area_cm2: float | None, open_lead: Spectrum | None
+    fit: Fit,
+    spectrum: Spectrum,
+    area_cm2: float | None,
+    open_lead: Spectrum | None,
+    interface: Quantity | None,
 ) -> tuple[Parameter, ...]:
     """The fit's parameters per area, and the capacitances that follow from them by the laws of film
     and interface."""
@@ -211,7 +223,7 @@ def _parameters(
             "C_dl",
             "Q_dl",
             "capacitance of the interface, from Q_dl and n_dl",
-            interface_capacitance(fit, area_cm2),
+            interface,
         ),
     )
     return parameters + tuple(

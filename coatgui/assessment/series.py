@@ -6,126 +6,174 @@ count take part.
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 from coatgui.assessment.capacitance import turning_frequency
+from coatgui.assessment.drawn import Drawn
 from coatgui.assessment.events import (
     Drying,
     drying,
-    limit_crossing,
+    fall_event,
     rebound_event,
+    sorption_events,
     stage_events,
 )
-from coatgui.assessment.sorption import Sorption, diffusion_coefficient, dry_capacitance
-from coatgui.assessment.water import (
-    apparent_uptake,
-    dry_out_finding,
-    temperature_finding,
-    uptake_finding,
+from coatgui.assessment.film import (
+    FilmFacts,
+    film_resistivity,
+    measured_dry,
+    permittivity_finding,
+    relative_permittivity,
+    thickness_deviation,
+    widened,
 )
+from coatgui.assessment.interface import active_area, breakpoint_figures
+from coatgui.assessment.limits import limit_crossing
+from coatgui.assessment.panel_water import (
+    draw_water,
+    in_mass,
+    panel_sorption,
+    saturation_uptake,
+    sorption_finding,
+    uptake_basis,
+)
+from coatgui.assessment.sorption import Sorption, diffusion_coefficient
 from coatgui.records import (
-    BoolArray,
     Bound,
     Criterion,
     Event,
     Finding,
-    Fit,
     LimitCrossing,
-    Modulus,
-    Parameter,
+    Panel,
     Quantity,
-    Reading,
-    Severity,
     WaterUptake,
 )
-
-
-@dataclass(slots=True)
-class Drawn:
-    """What has been drawn from one reading so far; `assess` fills it step by step. `left_out` maps
-    the place of each point left out to the reason."""
-
-    reading: Reading
-    used: BoolArray
-    left_out: Mapping[int, str]
-    counts: bool
-    temperature_c: float
-    area_cm2: float | None
-    findings: list[Finding]
-    fit: Fit | None = None
-    moduli: tuple[Modulus, ...] = ()
-    parameters: tuple[Parameter, ...] = ()
-    coating_capacitance: Quantity | None = None
-    measured_capacitance: Quantity | None = None
-    pore_resistance: Quantity | None = None
-    water_uptake: WaterUptake | None = None
-
-    def modulus_at(self, frequency_hz: float) -> Modulus | None:
-        return next((m for m in self.moduli if m.frequency_hz == frequency_hz), None)
 
 
 @dataclass(frozen=True, slots=True)
 class SeriesResult:
     """What a panel's series says; the readings' own part is written into their `Drawn`."""
 
-    dry_capacitance: Quantity | None
-    diffusion_coefficient: Quantity | None
-    events: tuple[Event, ...]
-    limit_crossings: tuple[LimitCrossing, ...]
-    findings: tuple[Finding, ...]
-
-
-def uptake_basis(series: Sequence[Drawn], frequency_hz: float) -> tuple[list[Quantity | None], str]:
-    """The capacitances that the water uptake rests on, all on one footing, and its name.
-
-    The fitted film's at the high frequency; readings whose model has no film stay without. Only
-    where more than half of the readings are so, the measured parallel capacitance serves for all.
-    """
-    fitted = [d.coating_capacitance for d in series]
-    if 2 * sum(q is not None for q in fitted) >= len(series):
-        return fitted, f"fitted film at {frequency_hz:g} Hz"
-    return (
-        [d.measured_capacitance for d in series],
-        f"measured parallel capacitance at {frequency_hz:g} Hz",
-    )
+    dry_capacitance: Quantity | None = None
+    diffusion_coefficient: Quantity | None = None
+    dry_permittivity: Quantity | None = None
+    saturation_uptake: WaterUptake | None = None
+    saturation_mass_percent: Quantity | None = None
+    events: tuple[Event, ...] = ()
+    limit_crossings: tuple[LimitCrossing, ...] = ()
+    findings: tuple[Finding, ...] = ()
 
 
 def draw_series(
     series: Sequence[Drawn],
-    thickness_um: float | None,
+    panel: Panel,
+    facts: FilmFacts,
     capacitance_frequency_hz: float,
     modulus_frequency_hz: float,
     criteria: Sequence[Criterion],
+    noise: float | None = None,
 ) -> SeriesResult:
-    """Work out one panel from its readings, sorted by exposure time; fills in their water uptake
-    and the findings that follow from it."""
+    """Work out one panel from its readings, sorted by exposure time; fills in their water uptake,
+    film and pore figures and the findings that follow from them. `noise` is the scatter of
+    log₁₀|Z| against the sister panels."""
     counting = [d for d in series if d.counts]
     if not counting:
-        return SeriesResult(None, None, (), (), ())
+        return SeriesResult()
     exposure_h = [d.reading.exposure_h for d in counting]
     basis, basis_name = uptake_basis(counting, capacitance_frequency_hz)
     dry_out = drying(exposure_h, basis)
-    sorption = _sorption(exposure_h, basis, basis_name, dry_out)
-    _water(counting, basis, sorption, dry_out)
+    sorption = panel_sorption(exposure_h, basis, basis_name, dry_out, measured_dry(facts))
+    dry = None if sorption is None else sorption.dry_capacitance
+    uncertain = thickness_deviation(facts, panel.thickness_um)
+    dry_epsilon = None if dry is None else relative_permittivity(dry, panel.thickness_um)
+    if dry_epsilon is not None:
+        dry_epsilon = widened(dry_epsilon, uncertain)
+    draw_water(counting, basis, sorption, dry_out, dry_epsilon)
+    _film_and_pores(counting, panel, uncertain, dry_epsilon)
+    diffusion = None if sorption is None else diffusion_coefficient(sorption, panel.thickness_um)
+    if diffusion is not None:
+        diffusion = widened(diffusion, 2 * uncertain)
+    saturation = saturation_uptake(counting, sorption, panel, facts, dry_epsilon)
+    findings = [] if sorption is None else [sorption_finding(sorption)]
+    if dry_epsilon is not None and (strange := permittivity_finding(dry_epsilon)) is not None:
+        findings.append(strange)
+    return SeriesResult(
+        dry,
+        diffusion,
+        dry_epsilon,
+        saturation,
+        in_mass(saturation, facts),
+        _events(counting, exposure_h, basis, sorption, dry_out, modulus_frequency_hz, noise),
+        tuple(
+            limit_crossing(c, exposure_h, [d.modulus_at(c.frequency_hz) for d in counting])
+            for c in (criteria if panel.area_cm2 is not None else ())
+        ),
+        tuple(findings),
+    )
+
+
+def _events(
+    counting: Sequence[Drawn],
+    exposure_h: Sequence[float],
+    basis: Sequence[Quantity | None],
+    sorption: Sorption | None,
+    dry_out: Drying,
+    modulus_frequency_hz: float,
+    noise: float | None,
+) -> tuple[Event, ...]:
     moduli = [d.modulus_at(modulus_frequency_hz) for d in counting]
-    rebound = rebound_event(exposure_h, moduli)
+    fall = fall_event(exposure_h, moduli, noise)
+    rebound = rebound_event(exposure_h, moduli, noise)
     events = [
-        *stage_events(exposure_h, [d.fit for d in counting], [_pores_conduct(d) for d in counting]),
+        *sorption_events(exposure_h, sorption, basis),
+        *stage_events(
+            exposure_h,
+            [d.fit for d in counting],
+            [d.pore_resistance for d in counting],
+            [_pores_conduct(d) for d in counting],
+        ),
+        *([fall] if fall else []),
         *dry_out.events,
         *([rebound] if rebound else []),
     ]
-    crossings = [
-        limit_crossing(c, exposure_h, [d.modulus_at(c.frequency_hz) for d in counting])
-        for c in (criteria if counting[0].area_cm2 is not None else ())
-    ]
-    return SeriesResult(
-        None if sorption is None else sorption.dry_capacitance,
-        None if sorption is None else diffusion_coefficient(sorption, thickness_um),
-        tuple(sorted(events, key=lambda event: event.by_h or 0.0)),
-        tuple(crossings),
-        () if sorption is None else (_sorption_finding(sorption),),
-    )
+    return tuple(sorted(events, key=lambda event: event.by_h or 0.0))
+
+
+def _film_and_pores(
+    counting: Sequence[Drawn],
+    panel: Panel,
+    uncertain: float,
+    dry_permittivity: Quantity | None,
+) -> None:
+    """Effective permittivity and resistivity of each reading, breakpoint and active area."""
+    value = None if dry_permittivity is None else dry_permittivity.value
+    for d in counting:
+        if d.coating_capacitance is not None:
+            film = relative_permittivity(d.coating_capacitance, panel.thickness_um)
+            d.relative_permittivity = None if film is None else widened(film, uncertain)
+        if d.pore_resistance is None:
+            continue
+        resistivity = film_resistivity(d.pore_resistance, panel.thickness_um)
+        d.film_resistivity = None if resistivity is None else widened(resistivity, uncertain)
+        if not _pores_conduct(d):
+            continue
+        d.breakpoint = breakpoint_figures(
+            d.reading.spectrum,
+            d.used,
+            d.pore_resistance,
+            d.coating_capacitance,
+            d.interface_capacitance,
+        )
+        if panel.area_cm2 is not None:
+            d.active_area = active_area(
+                d.pore_resistance,
+                d.interface_capacitance,
+                d.breakpoint,
+                panel.thickness_um,
+                value,
+                panel.electrolyte,
+            )
 
 
 def _pores_conduct(d: Drawn) -> bool:
@@ -137,48 +185,3 @@ def _pores_conduct(d: Drawn) -> bool:
         and d.pore_resistance.bound is Bound.TWO_SIDED
         and turning_frequency(d.fit, d.reading.spectrum) is not None
     )
-
-
-def _sorption_finding(sorption: Sorption) -> Finding:
-    followed = sorption.misfit is not None
-    return Finding(
-        "sorption_fickian" if followed else "dry_capacitance_taken",
-        Severity.NOTE,
-        sorption.text,
-        evidence=(("misfit", sorption.misfit),) if sorption.misfit is not None else (),
-    )
-
-
-def _sorption(
-    exposure_h: Sequence[float],
-    basis: Sequence[Quantity | None],
-    basis_name: str,
-    dry_out: Drying,
-) -> Sorption | None:
-    before = [
-        (time, quantity)
-        for time, quantity in zip(exposure_h[: dry_out.first], basis[: dry_out.first], strict=True)
-        if quantity is not None
-    ]
-    return dry_capacitance([t for t, _ in before], [q for _, q in before], basis_name)
-
-
-def _water(
-    counting: Sequence[Drawn],
-    basis: Sequence[Quantity | None],
-    sorption: Sorption | None,
-    dry_out: Drying,
-) -> None:
-    for d, quantity, fallen in zip(counting, basis, dry_out.fallen_percent, strict=True):
-        if fallen is not None:
-            d.findings.append(dry_out_finding(fallen))
-        if quantity is None or sorption is None:
-            continue
-        uptake = apparent_uptake(quantity, sorption.dry_capacitance, d.temperature_c)
-        if uptake is None:
-            d.findings.append(temperature_finding(d.temperature_c))
-            continue
-        d.water_uptake = WaterUptake(uptake, sorption.reference_h)
-        finding = uptake_finding(uptake)
-        if finding is not None:
-            d.findings.append(finding)

@@ -1,29 +1,19 @@
-"""Sorption of water into a film on metal, and the dry film's capacitance by extrapolation.
+"""What a panel's capacitances say about its dry film and about the water that goes in.
 
-A film of thickness L takes up water from one face; the metal lets nothing through. By Fick's law
-with a constant D and the surface in equilibrium from t = 0 (Crank, The Mathematics of Diffusion,
-chapter 4), with x = D t/L²,
+The law and its fit are in `fick.py`; here it is decided what may be concluded.
 
-    M(x) = M_t/M_∞ = 1 − (8/π²) Σ_{n≥0} (2n+1)^-2 exp(−(2n+1)² π² x/4)              (long times)
-         = 2 √x [ π^-½ + 2 Σ_{n≥1} (−1)^n ierfc(n/√x) ]                              (short times)
-
-where ierfc(z) = π^-½ exp(−z²) − z erfc(z). Both hold for all x; each needs only a few terms on its
-side of x = 0.2. Such a film is one half of a sheet of thickness 2L that is open on both faces.
-
-With Brasher–Kingsbury the logarithm of the capacitance follows the water,
-
-    ln C(t) = a + b M(k t),      k = D/L²,   a = ln C_0,   b = φ_∞ ln ε_w,
-
-which is linear in a and b. So k is searched on a logarithmic grid and then refined, and for each k
-the line is solved (separable least squares, weights 1/s_i²). Limits of a are by profile: all a for
-which some k and b bring the weighted sum of squares to within 1.96² × scale of the least, scale =
-max(1, least/(m−3)). Small k is the √t line, so that line needs no case of its own.
-
-The dry capacitance counts as known only where this interval closes inside the range of k that the
-exposure times can tell apart, at least three readings lie before 95 % saturation, and Fick's law
-describes the readings. Later readings often leave it (a second stage, conducting pores): they are
-dropped from the end until the rest follows, and how many followed is said. Otherwise the first
-reading is the reference and the dry value is at most that.
+* Fick's law is laid on all readings while the film soaks. Where a straight line in time after some
+  reading explains what the law alone leaves over, that is a second stage of uptake (relaxation of
+  the polymer, water at the metal, conducting pores): dry film, saturation and D then rest on the
+  first stage, the second is named.
+* Where neither describes all readings, they are dropped from the end until the rest follows, and
+  how many followed is said.
+* The dry film counts as known only where its limits are held by the readings and at least three of
+  them lie before 95 % saturation. A dry value that was measured enters as a reading at 0 h.
+* Two readings, or too few early ones: the share M rises with √t and bends down, so the chord
+  through the first two readings meets t = 0 at or above the dry value. That is a bound, and a
+  better one than the first reading. Where no rise is seen, the first reading is the bound.
+* D is quoted only where a reading more than the law has unknowns checks it.
 """
 
 from __future__ import annotations
@@ -33,48 +23,30 @@ from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
-from numpy.typing import ArrayLike
 
 from coatgui.assessment.amounts import NORMAL_95, from_logarithm, log_deviation, scaled
+from coatgui.assessment.fick import FickFit, fickian_uptake, fit, misfits, rates, second_stage
 from coatgui.assessment.rules import rule
 from coatgui.records import Bound, FloatArray, Quantity
 
-_CHANGE_OF_SERIES = 0.2
-_TERMS = 6
-_GRID = 240
+__all__ = ["Sorption", "diffusion_coefficient", "dry_capacitance", "fickian_uptake"]
+
 _SECONDS_PER_HOUR = 3600.0
 _CM_PER_UM = 1e-4
-
-
-def fickian_uptake(x: ArrayLike) -> FloatArray:
-    """M_t/M_∞ at x = D t/L² for a film open on one face, any shape, x ≥ 0; exact to 1e-15."""
-    from scipy.special import erfc
-
-    x = np.asarray(x, dtype=np.float64)
-    long = np.maximum(x, _CHANGE_OF_SERIES)
-    odd = 2 * np.arange(_TERMS) + 1
-    decay = np.exp(-(odd**2) * np.pi**2 / 4 * long[..., None]) / odd**2
-    late = 1 - 8 / np.pi**2 * decay.sum(axis=-1)
-    root = np.sqrt(np.minimum(x, _CHANGE_OF_SERIES))
-    count = np.arange(1, _TERMS)
-    with np.errstate(divide="ignore"):
-        z = np.where(root[..., None] > 0, count / root[..., None], np.inf)
-    z = np.minimum(z, 30.0)  # beyond it, ierfc is nothing and z·erfc(z) would be ∞·0
-    ierfc = np.exp(-(z**2)) / math.sqrt(np.pi) - z * erfc(z)
-    early = 2 * root * (1 / math.sqrt(np.pi) + 2 * ((-1.0) ** count * ierfc).sum(axis=-1))
-    share: FloatArray = np.where(x > _CHANGE_OF_SERIES, late, early)
-    return share
+_STAGE_UNKNOWNS = 5
 
 
 @dataclass(frozen=True, slots=True)
 class Sorption:
-    """What the early readings of a panel say about its dry film.
+    """What the early readings of a panel say about its film and its water.
 
-    `dry_capacitance`: two-sided where extrapolated or measured at 0 h, AT_MOST where the first
-    reading had to serve; `reference_h` its exposure time. `rate_per_h` = D/L², in 1/h, is None
-    where Fick's law does not fit or the readings do not hold it from both sides. `misfit` is the
-    root mean square of the weighted residuals (1 = the readings' own scatter), over the first
-    `followed` readings.
+    `dry_capacitance`: two-sided where extrapolated or measured at 0 h, AT_MOST where only a bound
+    could be had; `reference_h` is the exposure time of its reading (0 where extrapolated).
+    `saturated_capacitance` and `log_rise` = ln(C_∞/C_0) come from the fit; `log_rise` is at least
+    what it says where saturation was not reached. `rate_per_h` = D/L², in 1/h, is None where Fick's
+    law does not fit, cannot be checked or the readings do not hold it from both sides. `misfit` is
+    the root mean square of the weighted residuals (1 = the readings' own scatter), over the first
+    `followed` readings; `second_stage_h` the inspections between which a second stage begins.
     """
 
     dry_capacitance: Quantity
@@ -83,153 +55,187 @@ class Sorption:
     misfit: float | None = None
     followed: int = 0
     text: str = ""
-
-
-@dataclass(frozen=True, slots=True)
-class _Profile:
-    """For each k of the grid: the weighted sum of squares, a, b and the variance of a."""
-
-    k: FloatArray
-    squares: FloatArray
-    a: FloatArray
-    b: FloatArray
-    variance: FloatArray
-
-
-def _lines(k: FloatArray, hours: FloatArray, y: FloatArray, weight: FloatArray) -> _Profile:
-    share = fickian_uptake(k[:, None] * hours)
-    total = weight.sum()
-    mean_share = (share * weight).sum(axis=1) / total
-    mean_y = float((y * weight).sum() / total)
-    centred = share - mean_share[:, None]
-    spread = np.maximum((weight * centred**2).sum(axis=1), 1e-300)
-    b = (weight * centred * (y - mean_y)).sum(axis=1) / spread
-    a = mean_y - b * mean_share
-    residual = y - a[:, None] - b[:, None] * share
-    squares = (weight * residual**2).sum(axis=1)
-    return _Profile(k, squares, a, b, 1 / total + mean_share**2 / spread)
-
-
-@dataclass(frozen=True, slots=True)
-class _FickFit:
-    k: float
-    a: float
-    b: float
-    a_low: float
-    a_high: float
-    closed: bool
-    k_low: float | None
-    k_high: float | None
-    misfit: float
-    before_saturation: int
-
-
-def _fit(hours: FloatArray, y: FloatArray, deviation: FloatArray) -> _FickFit:
-    weight = 1 / deviation**2
-    positive = hours[hours > 0]
-    # From "even the last reading is on the √t line" to "even the first is all but saturated".
-    k = np.geomspace(0.02 / positive[-1], 3.0 / positive[0], _GRID)
-    freedom = max(hours.size - 3, 1)
-    best = int(np.argmin(_lines(k, hours, y, weight).squares))
-    near = np.geomspace(k[max(best - 1, 0)], k[min(best + 1, k.size - 1)], 101)
-    k = np.unique(np.concatenate([k, near]))
-    profile = _lines(k, hours, y, weight)
-    best = int(np.argmin(profile.squares))
-    least = float(profile.squares[best])
-    allowed = NORMAL_95**2 * max(1.0, least / freedom)
-    room = least + allowed - profile.squares
-    inside = room >= 0
-    reach = np.sqrt(np.maximum(room, 0) * profile.variance)
-    return _FickFit(
-        k=float(k[best]),
-        a=float(profile.a[best]),
-        b=float(profile.b[best]),
-        a_low=float((profile.a - reach)[inside].min()),
-        a_high=float((profile.a + reach)[inside].max()),
-        closed=not inside[-1],
-        k_low=None if inside[0] else _edge(k, room, int(np.argmax(inside))),
-        k_high=None if inside[-1] else _edge(k, room, inside.size - int(np.argmax(inside[::-1]))),
-        misfit=math.sqrt(least / freedom),
-        before_saturation=int((fickian_uptake(k[best] * hours) < rule("sorption.saturated")).sum()),
-    )
-
-
-def _edge(k: FloatArray, room: FloatArray, place: int) -> float:
-    """Where `room` passes zero between the places before `place` and `place`, k on a log scale."""
-    before, after = float(room[place - 1]), float(room[place])
-    share = before / (before - after)
-    return float(k[place - 1] * (k[place] / k[place - 1]) ** share)
+    saturated_capacitance: Quantity | None = None
+    log_rise: Quantity | None = None
+    second_stage_h: tuple[float, float] | None = None
 
 
 def dry_capacitance(
-    hours: Sequence[float], capacitance: Sequence[Quantity], method: str
+    hours: Sequence[float],
+    capacitance: Sequence[Quantity],
+    method: str,
+    measured_dry: Quantity | None = None,
 ) -> Sorption | None:
-    """The dry film's capacitance from a panel's readings while it soaks.
+    """The dry film, the saturated film and the rate from a panel's readings while it soaks.
 
     `hours` (m,) ascending and not negative; `capacitance` (m,) on one basis, named by `method`.
-    Readings that do not count, and those after a drying, are to be left away by the caller. None
-    where no reading has a capacitance with limits.
+    Readings that do not count, and those after a drying, are to be left away by the caller.
+    `measured_dry` is a dry value measured apart, on the same basis. None where no reading has a
+    capacitance with limits.
     """
-    known = [
-        (t, c, s)
-        for t, c in zip(hours, capacitance, strict=True)
-        if c.value and (s := log_deviation(c)) is not None
-    ]
+    pairs = list(zip(hours, capacitance, strict=True))
+    if measured_dry is not None and (not pairs or pairs[0][0] > 0):
+        pairs.insert(0, (0.0, measured_dry))
+    known = [(t, c, s) for t, c in pairs if c.value and (s := log_deviation(c)) is not None]
     if not known:
         return None
     time = np.array([t for t, _, _ in known], dtype=np.float64)
     y = np.log([float(c.value or 0) for _, c, _ in known])
     deviation = np.hypot([s for _, _, s in known], rule("capacitance.repeatability"))
     unit = known[0][1].unit
+    found, why = _law(time, y, deviation)
+    if found is not None:
+        fick, count = found
+        return _extrapolated(fick, count, time, unit, method)
+    if time[0] == 0:
+        dry = from_logarithm(
+            math.exp(y[0]), float(deviation[0]), unit, f"measured at 0 h; {method}"
+        )
+        return Sorption(dry, 0.0, text="The dry capacitance is that of the reading at 0 h.")
+    chord = _root_bound(time, y, deviation, unit, method)
+    return chord or _first_reading(time[0], y[0], deviation[0], unit, method, why)
+
+
+def _law(
+    time: FloatArray, y: FloatArray, deviation: FloatArray
+) -> tuple[tuple[FickFit, int] | None, str]:
+    """The fit that may be used, with how many readings follow it; or None and why not."""
     early = int(rule("sorption.early_readings"))
     worst = rule("sorption.misfit")
-    why = f"fewer than {early} readings"
-    for count in range(time.size, early - 1, -1):
-        if time[count - 1] <= time[0]:
-            break
-        fit = _fit(time[:count], y[:count], deviation[:count])
-        if fit.misfit > worst or fit.b < 0:
-            why = "the early readings do not follow Fick's law"
-            continue
-        if not fit.closed or fit.before_saturation < early:
-            why = "the film was near saturation before enough readings were taken"
-            break
-        return _extrapolated(fit, count, time.size, unit, method)
-    return _first_reading(float(time[0]), float(y[0]), float(deviation[0]), unit, method, why)
+    if time.size < early or time[early - 1] <= time[0]:
+        return None, f"fewer than {early} readings"
+    weight = 1 / deviation**2
+    grid = rates(time)
+    whole = misfits(grid, time, y, weight)
+    stage = _stage(grid, time, y, deviation, early)
+    if stage is not None and stage.misfit <= worst and stage.rise.value > 0:
+        return _judged(stage, time.size, time, early)
+    follows = np.flatnonzero(whole[early - 1 :] <= worst) + early
+    follows = follows[time[follows - 1] > time[0]]
+    for count in follows[::-1]:
+        fick = fit(time[:count], y[:count], deviation[:count])
+        if fick.rise.value > 0:
+            return _judged(fick, int(count), time, early)
+    return None, "the early readings do not follow Fick's law"
 
 
-def _extrapolated(fit: _FickFit, count: int, total: int, unit: str, method: str) -> Sorption:
+def _stage(
+    grid: FloatArray, time: FloatArray, y: FloatArray, deviation: FloatArray, early: int
+) -> FickFit | None:
+    """The law with a second stage, where the readings demand one."""
+    if time.size < _STAGE_UNKNOWNS + 1:
+        return None
+    place, both, single = second_stage(grid, time, y, 1 / deviation**2, early)
+    scale = max(1.0, both / (time.size - _STAGE_UNKNOWNS))
+    if single - both <= rule("sorption.second_stage_gain") * scale:
+        return None
+    return fit(time, y, deviation, place)
+
+
+def _judged(
+    fick: FickFit, count: int, time: FloatArray, early: int
+) -> tuple[tuple[FickFit, int] | None, str]:
+    share = fickian_uptake(fick.rate_per_h.value * time[:count])
+    before = int((share < rule("sorption.saturated")).sum())
+    if not fick.closed or before < early:
+        return None, "the film was near saturation before enough readings were taken"
+    return (fick, count), ""
+
+
+def _extrapolated(fick: FickFit, count: int, time: FloatArray, unit: str, method: str) -> Sorption:
+    first_stage = count if fick.second_from is None else fick.second_from + 1
+    how = f"Fickian sorption through the first {first_stage} readings; {method}"
+    low, high = fick.dry.low, fick.dry.high
+    assert low is not None  # closed, or it would not have come here
+    assert high is not None
     dry = Quantity(
-        math.exp(fit.a),
-        math.exp(fit.a_low),
-        math.exp(fit.a_high),
+        math.exp(fick.dry.value),
+        math.exp(low),
+        math.exp(high),
         Bound.TWO_SIDED,
         unit,
-        f"extrapolated to 0 h along Fickian sorption through the first {count} readings; {method}",
+        f"extrapolated to 0 h along {how}",
     )
     rate = None
-    if fit.k_low is not None and fit.k_high is not None:
-        rate = Quantity(fit.k, fit.k_low, fit.k_high, Bound.TWO_SIDED, "1/h", "Fickian sorption")
+    k = fick.rate_per_h
+    if k.low is not None and k.high is not None and fick.freedom > 0:
+        rate = Quantity(k.value, k.low, k.high, Bound.TWO_SIDED, "1/h", "Fickian sorption")
+    full = fick.full
+    assert full.low is not None
+    if full.high is None:
+        at_saturation = Quantity(
+            math.exp(full.low), math.exp(full.low), None, Bound.AT_LEAST, unit, how
+        )
+        assert fick.rise.low is not None
+        rise = Quantity(fick.rise.low, fick.rise.low, None, Bound.AT_LEAST, "", how)
+    else:
+        at_saturation = Quantity(
+            math.exp(full.value),
+            math.exp(full.low),
+            math.exp(full.high),
+            Bound.TWO_SIDED,
+            unit,
+            how,
+        )
+        rise = Quantity(fick.rise.value, fick.rise.low, fick.rise.high, Bound.TWO_SIDED, "", how)
     text = (
-        f"Fickian sorption describes the first {count} of {total} readings, with residuals "
-        f"{fit.misfit:.1f} times their own scatter."
+        f"Fickian sorption describes the first {first_stage} of {time.size} readings, with "
+        f"residuals {fick.misfit:.1f} times their own scatter."
     )
-    return Sorption(dry, 0.0, rate, fit.misfit, count, text)
+    if fick.freedom <= 0:
+        text += " No reading is left over to check the law, so no diffusion coefficient is given."
+    stage = None
+    if fick.second_from is not None:
+        stage = float(time[fick.second_from]), float(time[fick.second_from + 1])
+        direction = "rises" if fick.slope_per_h > 0 else "falls"
+        text += (
+            f" From {stage[0]:g} h on the capacitance {direction} steadily "
+            f"({100 * fick.slope_per_h * 168:+.2g} percent a week): a second stage that "
+            "one-stage diffusion does not explain; it is kept apart."
+        )
+    return Sorption(dry, 0.0, rate, fick.misfit, first_stage, text, at_saturation, rise, stage)
+
+
+def _root_bound(
+    time: FloatArray, y: FloatArray, deviation: FloatArray, unit: str, method: str
+) -> Sorption | None:
+    """The bound by the chord on √t through the first two readings, where they rise."""
+    later = np.flatnonzero(time > time[0])
+    if not later.size:
+        return None
+    second = int(later[0])
+    lever = math.sqrt(time[0]) / (math.sqrt(time[second]) - math.sqrt(time[0]))
+    rise = float(y[second] - y[0])
+    if rise <= NORMAL_95 * math.hypot(float(deviation[0]), float(deviation[second])):
+        return None
+    spread = math.hypot((1 + lever) * float(deviation[0]), lever * float(deviation[second]))
+    bound = float(y[0]) - lever * rise + NORMAL_95 * spread
+    if bound >= float(y[0]) + NORMAL_95 * float(deviation[0]):
+        return None  # the chord says less than the first reading does
+    most = math.exp(bound)
+    named = (
+        f"at most: √t line through the readings at {time[0]:g} and {time[second]:g} h met at 0 h; "
+        f"{method}"
+    )
+    text = (
+        "Too few early readings follow the uptake, so the dry capacitance is only bounded: the √t "
+        f"line through the readings at {time[0]:g} and {time[second]:g} h. Every uptake is a lower "
+        "bound."
+    )
+    return Sorption(Quantity(most, None, most, Bound.AT_MOST, unit, named), 0.0, text=text)
 
 
 def _first_reading(
     hour: float, y: float, deviation: float, unit: str, method: str, why: str
 ) -> Sorption:
-    if hour == 0:
-        dry = from_logarithm(math.exp(y), deviation, unit, f"measured at 0 h; {method}")
-        return Sorption(dry, 0.0, text="The dry capacitance is that of the reading at 0 h.")
     most = math.exp(y + NORMAL_95 * deviation)
     named = f"taken from the first reading, at {hour:g} h, which was already wet ({why}); {method}"
     text = (
         f"The dry capacitance could not be extrapolated: {why}. The first reading, at {hour:g} h, "
         "serves as the reference, so every uptake is a lower bound."
     )
-    return Sorption(Quantity(most, None, most, Bound.AT_MOST, unit, named), hour, text=text)
+    bound = Quantity(most, None, most, Bound.AT_MOST, unit, named)
+    return Sorption(bound, float(hour), text=text)
 
 
 def diffusion_coefficient(sorption: Sorption, thickness_um: float | None) -> Quantity | None:

@@ -5,9 +5,10 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 
 from coatgui.assessment.courses import courses, inspections
+from coatgui.assessment.drawn import Drawn
 from coatgui.assessment.readings import NO_FORMULATION
 from coatgui.assessment.rules import default_criteria
-from coatgui.assessment.series import Drawn, SeriesResult
+from coatgui.assessment.series import SeriesResult
 from coatgui.assessment.words import counted, hours, power_of_ten
 from coatgui.records import (
     Bound,
@@ -67,6 +68,9 @@ def panel_assessment(
         thickness_um=panel.thickness_um,
         dry_capacitance=series.dry_capacitance,
         diffusion_coefficient=series.diffusion_coefficient,
+        dry_permittivity=series.dry_permittivity,
+        saturation_uptake=series.saturation_uptake,
+        saturation_mass_percent=series.saturation_mass_percent,
         findings=(*findings, *series.findings),
         events=series.events,
         limit_crossings=series.limit_crossings,

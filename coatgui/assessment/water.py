@@ -75,6 +75,31 @@ def apparent_uptake(
     return Quantity(value, value - down, value + up, Bound.TWO_SIDED, "vol-%", method)
 
 
+def uptake_of_rise(
+    log_rise: Quantity, temperature_c: float, thickness_ratio: float = 1.0
+) -> Quantity | None:
+    """Water at saturation in volume-percent from ln(C_∞/C_0) of a joint fit, with its limits;
+    L_∞/L_0 is multiplied in where the film swells in thickness. None outside 0–100 °C."""
+    permittivity = float(water_permittivity(temperature_c))
+    if math.isnan(permittivity):
+        return None
+    percent = 100 / math.log(permittivity)
+    swelling = math.log(thickness_ratio)
+
+    def of(rise: float | None) -> float | None:
+        return None if rise is None else percent * (rise + swelling)
+
+    method = (
+        f"Brasher–Kingsbury at saturation, apparent; ε_w = {permittivity:.2f} at "
+        f"{temperature_c:g} °C; {log_rise.method}"
+    )
+    if swelling:
+        method += f"; swollen in thickness by {100 * (thickness_ratio - 1):.1f} percent"
+    return Quantity(
+        of(log_rise.value), of(log_rise.low), of(log_rise.high), log_rise.bound, "vol-%", method
+    )
+
+
 def uptake_finding(uptake: Quantity) -> Finding | None:
     """A doubt where the uptake is beyond what a sound film holds: the law's assumptions failed.
     The number is kept."""

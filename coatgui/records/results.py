@@ -126,11 +126,44 @@ class Modulus:
 
 @dataclass(frozen=True, slots=True)
 class WaterUptake:
-    """Apparent water uptake; `reference_h` is the exposure time of the dry reference (0 where it
-    was extrapolated)."""
+    """Apparent water uptake by Brasher–Kingsbury; `reference_h` is the exposure time of the dry
+    reference (0 where it was extrapolated). `by_law` gives what other mixing laws make of the same
+    capacitances, in volume-percent (None where a law fails), `law_low` and `law_high` the ends over
+    those that count as mixtures: the bracket that the choice of law leaves, apart from scatter."""
 
     quantity: Quantity
     reference_h: float
+    law_low: float | None = None
+    law_high: float | None = None
+    by_law: tuple[tuple[str, float | None], ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class Breakpoint:
+    """Where the phase of a film with pores passes −45° and where it is least, after the circuit
+    R_po, C_c, C_dl with R_ct → ∞ and R_s → 0. `ratio` is C_c/C_dl; above 0.207 the phase never
+    comes above −45° and `valid` is False: the formula's numbers then mean nothing and are None.
+    `measured_hz` is the crossing in the measured points, None where there is none."""
+
+    measured_hz: float | None
+    from_fit_hz: float | None
+    minimum_phase_hz: float | None
+    minimum_phase_deg: float | None
+    ratio: float | None
+    valid: bool | None
+    text: str
+
+
+@dataclass(frozen=True, slots=True)
+class ActiveArea:
+    """Delaminated or active share of the area by up to three routes; `low` and `high` are the ends
+    over all routes and their limits. The routes rest on different assumptions and may differ by
+    decades: it is a bracket, not a measurement."""
+
+    routes: tuple[tuple[str, Quantity], ...]
+    low: float
+    high: float
+    text: str
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -158,6 +191,10 @@ class ReadingAssessment:
     capacitance_at_high_frequency: Quantity | None
     pore_resistance: Quantity | None
     water_uptake: WaterUptake | None
+    relative_permittivity: Quantity | None = None
+    film_resistivity: Quantity | None = None
+    breakpoint: Breakpoint | None = None
+    active_area: ActiveArea | None = None
 
     def modulus_at(self, frequency_hz: float) -> Modulus | None:
         return next((m for m in self.modulus if m.frequency_hz == frequency_hz), None)
@@ -165,23 +202,32 @@ class ReadingAssessment:
 
 @dataclass(frozen=True, slots=True)
 class Event:
-    """Something that happened to a panel between two inspections."""
+    """Something that happened to a panel between two inspections.
+
+    `code` is one of film_saturated, pores_conducting, interface_reacting, diffusion_control,
+    modulus_falling, rebound, dried_out, wetted_again, second_stage_sorption. `after_h` is None
+    where it had happened before the first reading: that reading cannot date it. `confirmed` is
+    False where only one reading shows it.
+    """
 
     code: str
     text: str
     after_h: float | None
     by_h: float | None
+    confirmed: bool = True
 
 
 @dataclass(frozen=True, slots=True)
 class LimitCrossing:
     """When a panel fell below a criterion: between `after_h` and `by_h`. `after_h` is None where
-    the first reading was already below; both are None where it was never below."""
+    the first reading was already below; both are None where it was never below. `watched_h` is the
+    last reading that told anything: until then a panel that never fell is known to have held."""
 
     criterion: Criterion
     after_h: float | None
     by_h: float | None
     text: str
+    watched_h: float | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -196,6 +242,10 @@ class PanelAssessment:
     findings: tuple[Finding, ...] = ()
     events: tuple[Event, ...] = ()
     limit_crossings: tuple[LimitCrossing, ...] = ()
+    dry_permittivity: Quantity | None = None
+    saturation_uptake: WaterUptake | None = None
+    saturation_mass_percent: Quantity | None = None
+    advice: tuple[str, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
@@ -239,6 +289,8 @@ class Rank:
     rank_low: int
     rank_high: int
     group: str
+    bootstrap_low: int | None = None
+    bootstrap_high: int | None = None
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -105,11 +105,14 @@ def reading_of() -> Callable[..., ReadingAssessment]:
         unit: str = "Ω cm²",
         uptake: float | None = None,
         counts: bool = True,
+        percent: float = 0.5,
     ) -> ReadingAssessment:
         quantity = None
         if ohm_cm2 is not None:
-            high = None if bound is Bound.AT_LEAST else ohm_cm2 * 1.01
-            quantity = Quantity(ohm_cm2, ohm_cm2 / 1.01, high, bound, unit)
+            spread = 1 + 1.96 * percent / 100
+            high = None if bound is Bound.AT_LEAST else ohm_cm2 * spread
+            low = ohm_cm2 if bound is Bound.AT_LEAST else ohm_cm2 / spread
+            quantity = Quantity(ohm_cm2, low, high, bound, unit)
         status = ModulusStatus.NOT_REACHED if quantity is None else ModulusStatus.MEASURED
         water = None
         if uptake is not None:

@@ -190,10 +190,12 @@ def test_panels_carry_what_their_series_says(known: Known) -> None:
     assert panel.diffusion_coefficient.low < 1e-9 < panel.diffusion_coefficient.high
     (crossing,) = panel.limit_crossings
     assert (crossing.after_h, crossing.by_h) == (None, 1.0)
-    assert [e.code for e in panel.events] == ["pores_conducting"]
+    assert [e.code for e in panel.events] == ["pores_conducting", "film_saturated"]
+    assert panel.events[0].after_h is None  # a leaky film: its first reading dates nothing
     # A film so tight that its capacitance carries the current all the way down has closed pores.
     tight = assess(_campaign(known, ohm=1e12))
-    assert next(p for p in tight.panels if p.panel == "K1").events == ()
+    told = next(p for p in tight.panels if p.panel == "K1").events
+    assert [e.code for e in told] == ["film_saturated"]
 
 
 def test_mask_is_checks_less_kept_in_plus_left_out(known: Known) -> None:
