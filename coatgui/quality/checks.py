@@ -134,17 +134,19 @@ def _check(
     findings += positive_imaginary(
         frequency, impedance, batch.positive[row], searched.scatter, suggested
     )
-    twice = list(repeats(frequency, impedance, limits))
+    named = [
+        *repeats(frequency, impedance, limits),
+        *negative_real(frequency, impedance, searched.scatter, suggested),
+    ]
     consistency = Consistency(
         frequency,
         searched,
         limits,
         settings.mains_hz,
         blocked,
-        {p for f in twice for p in f.points},
+        {p for f in named for p in f.points},
     )
-    findings += [*twice, *consistency.findings(suggested)]
-    findings += negative_real(frequency, impedance, searched.scatter, suggested)
+    findings += [*named, *consistency.findings(suggested)]
     findings += limit.findings(spectrum, limits)
     used = ~blocked
     used[list(suggested)] = False

@@ -24,6 +24,8 @@ from coatgui.records import BoolArray, ComplexArray, FloatArray
 _MOST = 0.4  # of the points may be found faulty before the search stops
 _BARE = 1e-3  # a pattern of whose square the model leaves less cannot be seen
 _LEAST = 0.02  # the same for the number that a point's part is divided by
+_INNER = 2.5
+_INNER_SHARE = 0.9112  # variance of a normal distribution cut off there
 
 _Rows = NDArray[np.intp]
 
@@ -54,11 +56,16 @@ class Searched:
 
 
 def _deviation(rest: FloatArray, own: FloatArray) -> tuple[FloatArray, FloatArray]:
-    """What is left (B, 2N) scaled to one standard deviation for all, and that deviation (B,), from
-    the median. `own` is the share of its own square that the model leaves to each part."""
+    """What is left (B, 2N) scaled to one standard deviation for all, and that deviation (B,):
+    from the median, made sharper by the mean square of what lies within 2.5 of it. `own` is the
+    share of its own square that the model leaves to each part."""
     seen = own > _LEAST
     scaled = np.where(seen, rest / np.sqrt(np.maximum(own, _LEAST)), np.nan)
-    deviation = 1.4826 * np.nanmedian(np.abs(scaled), axis=1)
+    size = np.abs(scaled)
+    first = 1.4826 * np.nanmedian(size, axis=1)
+    inner = size <= _INNER * first[:, None]
+    squares = np.where(inner, np.nan_to_num(scaled) ** 2, 0.0).sum(axis=1)
+    deviation = np.sqrt(squares / np.maximum(inner.sum(axis=1), 1) / _INNER_SHARE)
     return np.nan_to_num(scaled), np.maximum(deviation, 1e-7)
 
 

@@ -17,8 +17,9 @@ point has the same weight and all spectra on one grid share one decomposition: t
 is one product of matrices.
 
 Number of terms. As |θ| is about 1 at most, a singular direction of the basis with singular value s
-carries about s of ln Z; directions below the scatter say nothing. How many are kept is decided for
-each spectrum by generalised cross-validation among a few levels of s.
+carries about s of ln Z: directions well below the scatter are not offered, for they could only
+follow what is no panel, and those above it are all needed. Where between to stop is left to
+generalised cross-validation, for each spectrum by itself.
 """
 
 from __future__ import annotations
@@ -30,9 +31,11 @@ import numpy as np
 from coatgui.records import ComplexArray, FloatArray
 
 _INTERVALS_PER_DECADE = 3.0  # a relaxation between two of them is met to 1e-5
-_BEYOND = 1.5  # decades of time constants beyond the window, either side
+_BEYOND = 1.0  # decades of time constants beyond the window, either side
 _CONSTANT = 30.0  # the modulus itself is free: ln|Z| goes up to about this
-_LEVELS = (1e-2, 2e-3, 1.5e-4)
+_LEVELS = (3e-2, 1e-2, 2e-3, 1.5e-4)
+_USUAL = 1  # the level that shows the scatter
+_SAYING = (0.05, 5.0)  # singular values, in units of the scatter, where the levels may end
 
 
 def parts(values: ComplexArray) -> FloatArray:
@@ -67,17 +70,26 @@ class MeasurementModel:
         )
         u, singular, _ = np.linalg.svd(parts(basis.T).T, full_matrices=False)
         # Few points cannot hold many terms: at least half of the numbers stay free.
-        counts = [min(int((singular > level).sum()), frequency_hz.size) for level in _LEVELS]
-        self.levels = tuple(sorted(set(counts)))
+        self.levels = tuple(
+            min(int((singular > level).sum()), frequency_hz.size) for level in _LEVELS
+        )
         self.directions: FloatArray = u[:, : self.levels[-1]]
 
     def level(self, logarithm: FloatArray) -> list[int]:
         """For each of (B, 2N) stacked logarithms the number of directions to keep."""
+        usual = self.residuals(logarithm, self.levels[_USUAL])
+        scatter = 1.4826 * np.median(np.abs(usual), axis=1)
         squares = np.cumsum((logarithm @ self.directions) ** 2, axis=1)
         whole = (logarithm**2).sum(axis=1)
-        free = logarithm.shape[1]
+        # The finest of all is for spectra that hardly scatter.
+        scatter = np.maximum(scatter, 1.01 * _LEVELS[-1] / _SAYING[1])
         scores = [
-            np.maximum(whole - squares[:, k - 1], 0.0) / (1.0 - k / free) ** 2 for k in self.levels
+            np.where(
+                (level > _SAYING[0] * scatter) & (level < _SAYING[1] * scatter),
+                np.maximum(whole - squares[:, k - 1], 0.0) / (1.0 - k / logarithm.shape[1]) ** 2,
+                np.inf,
+            )
+            for k, level in zip(self.levels, _LEVELS, strict=True)
         ]
         return [self.levels[place] for place in np.argmin(scores, axis=0)]
 

@@ -20,6 +20,8 @@ _MOST = 0.5  # share of the points
 _BETTER = 0.3  # of the departure is left if another reading of the phase is right
 _FOLLOWED = 0.01  # departure of a phase that was understood
 _SURE_SIGMA = 5.0
+_ROUNDS = 8
+_WOUND = 0.018
 
 _MISTAKES = {
     "wrong_sign": (
@@ -70,15 +72,18 @@ def misread_phase(model: MeasurementModel, logarithm: FloatArray) -> list[Findin
         "phase_in_radians": np.degrees(phase),
         "phase_in_degrees": _wound(model, logarithm[rows, :half], phase),
     }
+    best = np.full(rows.size, np.inf)
     for code, other in others.items():
         off = departure(with_phase(other))
         right = (off < _BETTER * as_read[rows]) & (as_read[rows] > _FOLLOWED)
         if code == "wrong_sign":
             right |= mostly[rows] & (off < as_read[rows])
-        else:
-            right &= off < _FOLLOWED
-        for row in rows[right].tolist():
-            result[row] = result[row] or Finding(code, Severity.REJECT, _MISTAKES[code])
+        elif code == "phase_in_degrees":
+            # Turns can always be found that leave about 0.03: less is asked for.
+            right &= off < _WOUND
+        for at in np.nonzero(right & (off < best))[0].tolist():
+            result[rows[at]] = Finding(code, Severity.REJECT, _MISTAKES[code])
+        best = np.where(right, np.minimum(best, off), best)
     return result
 
 
@@ -88,9 +93,13 @@ def _wound(model: MeasurementModel, modulus: FloatArray, phase: FloatArray) -> F
     half = modulus.shape[1]
     u = model.directions[:, : model.levels[0]]
     answer = np.linalg.lstsq(u[:half], modulus.T, rcond=1e-3)[0]
-    expected = np.degrees((u[half:] @ answer).T)
-    turns = np.round((expected - phase) / (2 * np.pi))
-    return np.asarray(np.radians(phase + 2 * np.pi * turns), dtype=np.float64)
+    expected = (u[half:] @ answer).T
+    wound = phase
+    for _ in range(_ROUNDS):
+        wound = np.radians(phase + 2 * np.pi * np.round((np.degrees(expected) - phase) / 2 / np.pi))
+        both = np.hstack([modulus, wound])
+        expected = wound - model.residuals(both, model.levels[0])[:, half:]
+    return np.asarray(wound, dtype=np.float64)
 
 
 def positive_imaginary(
@@ -132,11 +141,13 @@ def negative_real(
     scatter: float,
     suggested: dict[int, str],
 ) -> Iterator[Finding]:
-    """A negative real part: a phase beyond -90°, from cables, screens or the instrument's input."""
+    """A negative real part over several points or at the fast end: a phase beyond -90°, from
+    cables, their screens or the instrument's input."""
     least = max(_SURE_SIGMA * scatter, 0.005)
     mask = impedance.real < -least * np.abs(impedance)
-    mask[list(suggested)] = False
     for start, stop in stretches(mask):
+        if stop - start == 1 and start > 0:
+            continue  # one point alone is a wild point, if it is one
         slow, fast = (hertz(float(frequency_hz[p])) for p in (stop - 1, start))
         degrees = float(np.degrees(np.abs(np.angle(impedance[start:stop]))).max())
         for place in range(start, stop):
