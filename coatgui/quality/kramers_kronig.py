@@ -1,99 +1,109 @@
-"""Kramers–Kronig by a linear measurement model (Boukamp, J. Electrochem. Soc. 142 (1995) 1885).
+"""Kramers–Kronig by a linear measurement model, in the logarithm of the impedance.
 
-Mathematics. What obeys the Kramers–Kronig relations can be written as R_∞ + Σ R_k/(1 + jωτ_k) with
-fixed, log-spaced τ_k; a film that blocks needs 1/(jωC) beside it, leads need jωL. The model is
-linear in R_k, so one small least-squares problem, weighted by 1/|Z|, tests a spectrum without
-knowing its circuit. A blocking film is better said in admittances: 1/R + jωC + Σ jωC_k/(1 + jωτ_k).
-Both forms are fitted and the better one kept. A small ridge, by generalised cross-validation,
-replaces the choice of a number of terms: with many τ_k and none too free, the model follows any
-causal spectrum down to its scatter but not a wild point. Points that stand far off are given less
-weight (Tukey's biweight) and the fit repeated, so that one does not smear over its neighbours.
+Mathematics. Boukamp's test (J. Electrochem. Soc. 142 (1995) 1885) lays a sum of relaxations with
+fixed, log-spaced time constants on the data: linear, so that a causal and stable spectrum is
+followed down to its scatter without knowing its circuit, and what cannot be followed breaks the
+Kramers–Kronig relations. A passive specimen has neither zeros nor poles in the right half-plane,
+so that the logarithm of its impedance obeys the same relations (Bode, Network Analysis and
+Feedback Amplifier Design, 1945, chapter 14: the phase follows from the modulus), and
 
-Spectra on one grid share the basis and its decomposition; all are solved together.
+    ln Z = c - Σ θ_k [ln(1 + jωτ_{k+1}) - ln(1 + jωτ_k)],   τ_k fixed, log-spaced,
+
+is linear as well. -θ_k·90° is about the phase at 1/τ_k, so no |θ_k| is much above 1. With the first
+τ at 0 and the last at infinity a blocking film is part of the model (θ = 1 up to infinity is the
+series capacitance), leads are (θ = -1 down to 0), and ln Y = -ln Z makes the form in impedances and
+the form in admittances one and the same. The error of ln Z is the relative error of Z, so every
+point has the same weight and all spectra on one grid share one decomposition: testing many of them
+is one product of matrices.
+
+Number of terms. As |θ| is about 1 at most, a singular direction of the basis with singular value s
+carries about s of ln Z: directions well below the scatter are not offered, for they could only
+follow what is no panel, and those above it are all needed. Where between to stop is left to
+generalised cross-validation, for each spectrum by itself.
 """
 
 from __future__ import annotations
 
+from functools import lru_cache
+
 import numpy as np
 
-from coatgui.records import BoolArray, ComplexArray, FloatArray
+from coatgui.records import ComplexArray, FloatArray
 
-_TERMS_PER_DECADE = 4.0
-_RIDGES = np.logspace(-18, -2, 9)
-_ROUNDS = 4
-_BIWEIGHT = 6.0
-
-
-def _basis(omega: FloatArray, admittance: bool) -> ComplexArray:
-    """Columns (N, K) of the measurement model."""
-    low, high = np.log10(1.0 / omega.max()) - 1.0, np.log10(1.0 / omega.min()) + 1.0
-    count = max(int(np.ceil((high - low) * _TERMS_PER_DECADE)), 4)
-    tau = np.logspace(low, high, count)
-    relaxation = 1.0 / (1.0 + 1j * omega[:, None] * tau)
-    one = np.ones((omega.size, 1), dtype=np.complex128)
-    s = 1j * omega[:, None]
-    if admittance:
-        return np.hstack([one, s, s * tau * relaxation])
-    return np.hstack([one, s, 1.0 / s, relaxation])
+_INTERVALS_PER_DECADE = 3.0  # a relaxation between two of them is met to 1e-5
+_BEYOND = 1.0  # decades of time constants beyond the window, either side
+_CONSTANT = 30.0  # the modulus itself is free: ln|Z| goes up to about this
+_LEVELS = (3e-2, 1e-2, 2e-3, 1.5e-4)
+_USUAL = 1  # the level that shows the scatter
+_SAYING = (0.05, 5.0)  # singular values, in units of the scatter, where the levels may end
 
 
-def _stacked(values: ComplexArray) -> FloatArray:
-    return np.concatenate([values.real, values.imag], axis=0)
+def parts(values: ComplexArray) -> FloatArray:
+    """Real parts, then imaginary parts, along the last axis: (…, N) to (…, 2N)."""
+    return np.concatenate([values.real, values.imag], axis=-1)
 
 
-def _solve(basis: ComplexArray, target: ComplexArray, weight: FloatArray) -> ComplexArray:
-    """Modelled values (N,) of one spectrum, with the ridge of the best cross-validation score."""
-    matrix = _stacked(basis * weight[:, None])
-    size = np.sqrt((matrix**2).sum(axis=0))
-    size[size == 0] = 1.0
-    right = _stacked(target * weight)
-    u, singular, vt = np.linalg.svd(matrix / size, full_matrices=False)
-    along = u.T @ right
-    outside = max(float(right @ right - along @ along), 0.0)
-    counted = 2.0 * np.count_nonzero(weight)
-    best: tuple[float, FloatArray] | None = None
-    for ridge in _RIDGES:
-        damp = singular**2 / (singular**2 + ridge * singular[0] ** 2)
-        residual = float((((1.0 - damp) * along) ** 2).sum()) + outside
-        score = residual / max(counted - 1.4 * damp.sum(), 1.0) ** 2
-        if best is None or score < best[0]:
-            best = (score, vt.T @ (damp / singular * along))
-    assert best is not None
-    return np.asarray(basis @ (best[1] / size), dtype=np.complex128)
+def complexes(values: FloatArray) -> ComplexArray:
+    """The way back: (…, 2N) to (…, N)."""
+    half = values.shape[-1] // 2
+    return values[..., :half] + 1j * values[..., half:]
 
 
-def residuals(
-    frequency_hz: FloatArray, impedance: ComplexArray, used: BoolArray
-) -> tuple[ComplexArray, FloatArray]:
-    """Residuals (B, N) of the measurement model relative to |Z|, and the usual scatter (B,) of one
-    part of them (robust standard deviation). `impedance` and `used` are (B, N); points not used do
-    not shape the model but have their residual."""
-    omega = 2.0 * np.pi * frequency_hz
-    result = np.empty(impedance.shape, dtype=np.complex128)
-    scatter = np.empty(impedance.shape[0])
-    forms = [(form, _basis(omega, form)) for form in (False, True)]
-    for row, z in enumerate(impedance):
-        best: tuple[float, ComplexArray] | None = None
-        for admittance, basis in forms:
-            target = 1.0 / z if admittance else z
-            weight = used[row] / np.abs(target)
-            trust = np.ones(z.size)
-            for _ in range(_ROUNDS):
-                modelled = _solve(basis, target, weight * trust)
-                model_z = 1.0 / modelled if admittance else modelled
-                off = (model_z - z) / np.abs(z)
-                spread = max(_spread(off[used[row]]), 1e-6)
-                distance = np.abs(off) / (np.sqrt(2.0) * spread * _BIWEIGHT)
-                trust = np.where(distance < 1.0, (1.0 - np.minimum(distance, 1.0) ** 2) ** 2, 0.0)
-                if np.count_nonzero(trust * used[row]) < 6:
-                    trust = np.ones(z.size)
-            if best is None or spread < best[0]:
-                best = (spread, off)
-        assert best is not None
-        scatter[row], result[row] = best
-    return result, scatter
+class MeasurementModel:
+    """The model on one grid of N frequencies. `directions` (2N, K) are orthonormal, the most
+    important first; `levels` are numbers of them to choose from."""
+
+    def __init__(self, frequency_hz: FloatArray) -> None:
+        self.frequency_hz = frequency_hz
+        s = 2j * np.pi * frequency_hz[:, None]
+        low = -np.log10(np.abs(s).max()) - _BEYOND
+        high = -np.log10(np.abs(s).min()) + _BEYOND
+        tau = np.logspace(low, high, int(np.ceil((high - low) * _INTERVALS_PER_DECADE)) + 1)
+        logs = np.log1p(s * tau)
+        basis = np.hstack(
+            [
+                np.full_like(s, _CONSTANT),
+                logs[:, :1],
+                np.diff(logs, axis=1),
+                np.log(s * tau[-1]) - logs[:, -1:],
+            ]
+        )
+        u, singular, _ = np.linalg.svd(parts(basis.T).T, full_matrices=False)
+        # Few points cannot hold many terms: at least half of the numbers stay free.
+        self.levels = tuple(
+            min(int((singular > level).sum()), frequency_hz.size) for level in _LEVELS
+        )
+        self.directions: FloatArray = u[:, : self.levels[-1]]
+
+    def level(self, logarithm: FloatArray) -> list[int]:
+        """For each of (B, 2N) stacked logarithms the number of directions to keep."""
+        usual = self.residuals(logarithm, self.levels[_USUAL])
+        scatter = 1.4826 * np.median(np.abs(usual), axis=1)
+        squares = np.cumsum((logarithm @ self.directions) ** 2, axis=1)
+        whole = (logarithm**2).sum(axis=1)
+        # The finest of all is for spectra that hardly scatter.
+        scatter = np.maximum(scatter, 1.01 * _LEVELS[-1] / _SAYING[1])
+        scores = [
+            np.where(
+                (level > _SAYING[0] * scatter) & (level < _SAYING[1] * scatter),
+                np.maximum(whole - squares[:, k - 1], 0.0) / (1.0 - k / logarithm.shape[1]) ** 2,
+                np.inf,
+            )
+            for k, level in zip(self.levels, _LEVELS, strict=True)
+        ]
+        return [self.levels[place] for place in np.argmin(scores, axis=0)]
+
+    def residuals(self, logarithm: FloatArray, kept: int) -> FloatArray:
+        """What `kept` directions leave of (B, 2N)."""
+        u = self.directions[:, :kept]
+        return np.asarray(logarithm - (logarithm @ u) @ u.T, dtype=np.float64)
 
 
-def _spread(values: ComplexArray) -> float:
-    parts = np.concatenate([values.real, values.imag])
-    return float(1.4826 * np.median(np.abs(parts)))
+@lru_cache(maxsize=32)
+def _model(grid: bytes) -> MeasurementModel:
+    return MeasurementModel(np.frombuffer(grid, dtype=np.float64))
+
+
+def measurement_model(frequency_hz: FloatArray) -> MeasurementModel:
+    """The model on a grid (N,), kept for the next spectrum on the same grid."""
+    return _model(np.ascontiguousarray(frequency_hz, dtype=np.float64).tobytes())

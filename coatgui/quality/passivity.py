@@ -1,0 +1,164 @@
+"""Signs and units: what no panel can do, whatever its circuit.
+
+A panel gives out no energy: its real part is not negative, and apart from leads its imaginary part
+is not positive. The phase follows from the modulus (see `kramers_kronig`), so a phase that was
+written with the other sign or in the other unit gives itself away.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+
+import numpy as np
+
+from coatgui.quality.consistency import stretches
+from coatgui.quality.kramers_kronig import MeasurementModel
+from coatgui.quality.words import hertz
+from coatgui.records import BoolArray, ComplexArray, Finding, FloatArray, Severity
+
+_MOST = 0.5  # share of the points
+_BETTER = 0.3  # of the departure is left if another reading of the phase is right
+_FOLLOWED = 0.01  # departure of a phase that was understood
+_SURE_SIGMA = 5.0
+_ROUNDS = 8
+_WOUND = 0.018
+
+_MISTAKES = {
+    "wrong_sign": (
+        "The phase fits the modulus only with the other sign: the imaginary part was counted the "
+        "other way round, or the cell was connected wrongly. Turn the sign of its column."
+    ),
+    "phase_in_radians": (
+        "The phase fits the modulus only when it is 57.3 times larger: radians were taken for "
+        "degrees. Correct the unit of the phase column."
+    ),
+    "phase_in_degrees": (
+        "The phase fits the modulus only when its numbers are degrees: they were taken for "
+        "radians. Correct the unit of the phase column."
+    ),
+}
+
+
+def positive_end(impedance: ComplexArray) -> BoolArray:
+    """Points of the fast end (B, N), as one stretch, whose imaginary part is positive. Where most
+    points are, the sign is wrong and none is marked."""
+    positive = impedance.imag > 0
+    stretch = np.cumprod(positive, axis=1).astype(bool)
+    stretch[positive.mean(axis=1) > _MOST] = False
+    return stretch
+
+
+def misread_phase(model: MeasurementModel, logarithm: FloatArray) -> list[Finding | None]:
+    """For each of (B, 2N) stacked logarithms a rejection where the phase only fits the modulus when
+    it is read otherwise."""
+    half = logarithm.shape[1] // 2
+
+    def departure(values: FloatArray) -> FloatArray:
+        off = model.residuals(values, model.levels[-1])
+        return 1.4826 * np.median(np.abs(off), axis=1)
+
+    def with_phase(phase: FloatArray) -> FloatArray:
+        return np.hstack([logarithm[rows, :half], phase])
+
+    result: list[Finding | None] = [None] * len(logarithm)
+    as_read = departure(logarithm)
+    mostly = (logarithm[:, half:] > 0).mean(axis=1) > _MOST
+    rows = np.nonzero((as_read > _FOLLOWED) | mostly)[0]
+    if not rows.size:
+        return result
+    phase = logarithm[rows, half:]
+    others = {
+        "wrong_sign": -phase,
+        "phase_in_radians": np.degrees(phase),
+        "phase_in_degrees": _wound(model, logarithm[rows, :half], phase),
+    }
+    best = np.full(rows.size, np.inf)
+    for code, other in others.items():
+        off = departure(with_phase(other))
+        right = (off < _BETTER * as_read[rows]) & (as_read[rows] > _FOLLOWED)
+        if code == "wrong_sign":
+            right |= mostly[rows] & (off < as_read[rows])
+        elif code == "phase_in_degrees":
+            # Turns can always be found that leave about 0.03: less is asked for.
+            right &= off < _WOUND
+        for at in np.nonzero(right & (off < best))[0].tolist():
+            result[rows[at]] = Finding(code, Severity.REJECT, _MISTAKES[code])
+        best = np.where(right, np.minimum(best, off), best)
+    return result
+
+
+def _wound(model: MeasurementModel, modulus: FloatArray, phase: FloatArray) -> FloatArray:
+    """Phases (b, N) in rad, had their numbers been degrees: turns are added back to come closest to
+    the phase that follows from the modulus."""
+    half = modulus.shape[1]
+    u = model.directions[:, : model.levels[0]]
+    answer = np.linalg.lstsq(u[:half], modulus.T, rcond=1e-3)[0]
+    expected = (u[half:] @ answer).T
+    wound = phase
+    for _ in range(_ROUNDS):
+        wound = np.radians(phase + 2 * np.pi * np.round((np.degrees(expected) - phase) / 2 / np.pi))
+        both = np.hstack([modulus, wound])
+        expected = wound - model.residuals(both, model.levels[0])[:, half:]
+    return np.asarray(wound, dtype=np.float64)
+
+
+def positive_imaginary(
+    frequency_hz: FloatArray,
+    impedance: ComplexArray,
+    stretch: BoolArray,
+    scatter: float,
+    suggested: dict[int, str],
+) -> Iterator[Finding]:
+    """A positive imaginary part at the fast end: an inductive tail, or an artefact."""
+    places = np.nonzero(stretch)[0]
+    z = impedance[places]
+    # Where the impedance is all but real, scatter alone turns a sign now and then.
+    if not places.size or float((z.imag / np.abs(z)).max()) < _SURE_SIGMA * scatter:
+        return
+    lowest = hertz(float(frequency_hz[places[-1]]))
+    inductance = z.imag / (2 * np.pi * frequency_hz[places])
+    tail = places.size > 2 and inductance.max() < 2 * inductance[0]
+    for place in places.tolist():
+        suggested[place] = "positive imaginary part at the fast end"
+    what = (
+        f"an inductance of about {1e6 * inductance[0]:.2g} µH, as leads have"
+        if tail
+        else "leads or instrument, not the panel"
+    )
+    yield Finding(
+        "inductive_tail" if tail else "positive_imaginary_part",
+        Severity.DOUBT if places.size > 2 else Severity.NOTE,
+        f"The imaginary part is positive from {lowest} up: {what}. Shorten or twist the leads, or "
+        "leave these points out.",
+        tuple(places.tolist()),
+        (("points", float(places.size)), ("lowest_hz", float(frequency_hz[places[-1]]))),
+    )
+
+
+def negative_real(
+    frequency_hz: FloatArray,
+    impedance: ComplexArray,
+    scatter: float,
+    suggested: dict[int, str],
+) -> Iterator[Finding]:
+    """A negative real part over several points or at the fast end: a phase beyond -90°, from
+    cables, their screens or the instrument's input."""
+    least = max(_SURE_SIGMA * scatter, 0.005)
+    mask = impedance.real < -least * np.abs(impedance)
+    for start, stop in stretches(mask):
+        if stop - start == 1 and start > 0:
+            continue  # one point alone is a wild point, if it is one
+        slow, fast = (hertz(float(frequency_hz[p])) for p in (stop - 1, start))
+        degrees = float(np.degrees(np.abs(np.angle(impedance[start:stop]))).max())
+        for place in range(start, stop):
+            suggested[place] = "negative real part"
+        where = f"At {slow}" if stop - start == 1 else f"Between {slow} and {fast}"
+        yield Finding(
+            "negative_real_part",
+            Severity.DOUBT,
+            f"{where} the real part is negative (phase up to {degrees:.3g}° from the real axis), "
+            "which no panel does: cables, their screens or the instrument's input at its limit. "
+            "Leave these points out.",
+            tuple(range(start, stop)),
+            (("largest_phase_degrees", degrees),),
+        )

@@ -1,0 +1,161 @@
+"""How often the checks find faults of graded strength, and how often they cry wolf.
+
+Run `python tests/benchmarks/checks.py [--each N] [--moved]`. With --moved every spectrum is fitted
+with and without its fault, and the last columns count only faults that move a fitted parameter out
+of the 95 % limits of the fit without the fault.
+"""
+
+from __future__ import annotations
+
+import argparse
+import time
+
+import numpy as np
+from checks_faults import FAULTS, FREQUENCY_HZ, Fault, Specimen, scattered, specimens
+
+from coatgui.circuits import catalogue
+from coatgui.fitting import fit_spectra
+from coatgui.quality import check_spectra
+from coatgui.records import Bound, Check, Fit, Settings, Severity, Spectrum
+
+NOISE = (0.002, 0.02)
+
+
+def checked(impedance: list[np.ndarray]) -> list[Check]:
+    spectra = [Spectrum(FREQUENCY_HZ, z) for z in impedance]
+    return check_spectra(spectra, settings=Settings(), area_cm2=[10.0] * len(spectra))
+
+
+def named(check: Check, fault: Fault, points: set[int]) -> bool:
+    """Whether the fault is named, and its points are suggested out where that is asked."""
+    found = [f for f in check.findings if f.code in fault.codes]
+    if fault.all_points and not any(f.code == "step" for f in found):
+        return bool(found) and points <= set(dict(check.suggested))
+    touched = {p for f in found for p in f.points}
+    return bool(found) and (not points or bool(points & touched))
+
+
+def fitted(impedance: list[np.ndarray], models: list[str]) -> list[Fit | None]:
+    number = len(impedance)
+    return fit_spectra(
+        [Spectrum(FREQUENCY_HZ, z) for z in impedance],
+        [np.ones(FREQUENCY_HZ.size, dtype=bool)] * number,
+        area_cm2=[10.0] * number,
+        series=[str(i) for i in range(number)],
+        exposure_h=[0.0] * number,
+        pinned=models,
+    )
+
+
+def moved(before: Fit | None, after: Fit | None) -> bool:
+    """Whether a parameter that the data held has left its limits."""
+    if before is None or after is None:
+        return False
+    for parameter in before.parameters:
+        q, new = parameter.quantity, after.parameter(parameter.symbol)
+        if q.bound is Bound.TWO_SIDED and new is not None and new.value is not None:
+            assert q.low is not None
+            assert q.high is not None
+            if not q.low <= new.value <= q.high:
+                return True
+    return False
+
+
+def strength_words(fault: Fault, strength: float) -> str:
+    if fault.unit == "%":
+        return f"{100 * strength:g} %"
+    return f"{strength:g} {fault.unit}" if fault.unit else ""
+
+
+def rates(
+    fault: Fault, strength: float, each: int, seed: int, with_fits: bool
+) -> tuple[list[bool], list[bool], list[bool]]:
+    """For every specimen whether the fault is named, whether anything of weight is said, and
+    whether the fault moves a fitted parameter."""
+    rng = np.random.default_rng(seed)
+    faulty, clean, where, models = [], [], [], []
+    for specimen in specimens(rng, each):
+        noise = 10 ** rng.uniform(*np.log10(NOISE))
+        again = int(rng.integers(2**32))
+        z, points = fault.put(np.random.default_rng(again), specimen, noise, strength)
+        faulty.append(z)
+        where.append(points)
+        models.append(specimen.model)
+        clean.append(scattered(np.random.default_rng(again), specimen.impedance(), noise))
+    answers = checked(faulty)
+    hits = [named(c, fault, p) for c, p in zip(answers, where, strict=True)]
+    weighty = [any(f.severity is not Severity.NOTE for f in c.findings) for c in answers]
+    shifts = [False] * len(hits)
+    if with_fits:
+        pairs = zip(fitted(clean, models), fitted(faulty, models), strict=True)
+        shifts = [moved(before, after) for before, after in pairs]
+    return hits, weighty, shifts
+
+
+def percent(values: list[bool]) -> str:
+    return f"{100 * sum(values) / len(values):6.1f}" if values else "     –"
+
+
+def false_alarms(each: int) -> None:
+    rng = np.random.default_rng(7)
+    print(f"{'clean spectra, 0.2 to 2 % noise':34} {'number':>8} {'doubts %':>9} {'rejects %':>9}")
+    total = []
+    by_model: dict[str, list[Specimen]] = {name: [] for name in catalogue()}
+    for specimen in specimens(rng, each):
+        by_model[specimen.model].append(specimen)
+    for name, those in by_model.items():
+        answers = checked(
+            [scattered(rng, s.impedance(), 10 ** rng.uniform(*np.log10(NOISE))) for s in those]
+        )
+        severities = [{f.severity for f in c.findings} for c in answers]
+        total += severities
+        doubts = [Severity.DOUBT in s for s in severities]
+        rejects = [Severity.REJECT in s for s in severities]
+        print(f"{name:34} {len(those):8} {percent(doubts):>9} {percent(rejects):>9}")
+    doubts = [Severity.DOUBT in s for s in total]
+    rejects = [Severity.REJECT in s for s in total]
+    print(f"{'all':34} {len(total):8} {percent(doubts):>9} {percent(rejects):>9}\n")
+
+
+def speed() -> None:
+    """Checking against fitting, as a ratio."""
+    rng = np.random.default_rng(3)
+    impedance = [scattered(rng, s.impedance(), 0.005) for s in specimens(rng, 25)]
+    checked(impedance[:8])
+    start = time.perf_counter()
+    checked(impedance)
+    checking = time.perf_counter() - start
+    start = time.perf_counter()
+    fitted(impedance, [""] * len(impedance))
+    fitting = time.perf_counter() - start
+    number = len(impedance)
+    print(
+        f"checking {1e3 * checking / number:.2f} ms a spectrum, fitting "
+        f"{1e3 * fitting / number:.1f} ms: ratio {checking / fitting:.3f}"
+    )
+
+
+def main() -> None:
+    parser = argparse.ArgumentParser(description=__doc__)
+    parser.add_argument("--each", type=int, default=100, help="specimens of every model")
+    parser.add_argument("--moved", action="store_true", help="fit with and without the fault")
+    options = parser.parse_args()
+    false_alarms(5 * options.each)
+    heading = f"{'fault':26} {'strength':>22} {'named %':>8} {'any doubt %':>12}"
+    print(heading + (f" {'moving':>7} {'of them named / doubted %':>26}" if options.moved else ""))
+    for fault in FAULTS:
+        for strength in fault.strengths:
+            hits, weighty, shifts = rates(fault, strength, options.each, 11, options.moved)
+            line = f"{fault.name:26} {strength_words(fault, strength):>22} {percent(hits):>8}"
+            line += f" {percent(weighty):>12}"
+            if options.moved:
+                those = [h for h, s in zip(hits, shifts, strict=True) if s]
+                doubted = [w for w, s in zip(weighty, shifts, strict=True) if s]
+                line += f" {len(those):7} {percent(those):>16} / {percent(doubted)}"
+            print(line, flush=True)
+    print()
+    speed()
+
+
+if __name__ == "__main__":
+    main()
