@@ -31,10 +31,21 @@ def pieces(table: Table, encoding: str, delimiter: str, decimal_sign: str) -> li
         omega = table.values("angular_frequency")
         assert omega is not None
         frequency = omega / (2.0 * np.pi)
-    if not (frequency > 0).all():
-        line = table.first_line + int(np.argmin(frequency > 0))
-        raise Unreadable(f"Line {line}: the frequency is not positive; correct or remove the line.")
+    usable = np.isfinite(frequency) & (frequency > 0)
+    if not usable.all():
+        line = table.lines[int(np.argmin(usable))]
+        raise Unreadable(
+            f"Line {line}: the frequency is not a positive number; correct or remove the line."
+        )
     impedance, remarks = _impedance(table)
+    # Zero is what an instrument writes for a point that it did not measure.
+    usable = np.isfinite(impedance) & (impedance != 0)
+    if not usable.all():
+        line = table.lines[int(np.argmin(usable))]
+        raise Unreadable(
+            f"Line {line}: the impedance is zero or not a finite number, so this point was not "
+            "measured; correct or remove the line."
+        )
     groups = _groups(table)
     result = []
     for (hours, panel), rows in groups.items():

@@ -16,12 +16,14 @@ _WORDS_WITHOUT_NUMBERS = ("panel",)
 
 @dataclass(frozen=True, eq=False)
 class Table:
-    """One table of a file. `numbers` (R, C) has NaN in columns of words; `words` holds those."""
+    """One table of a file. `numbers` (R, C) has NaN in columns of words; `words` holds those;
+    `lines` (R) says on which line of the file each row stands, counted from 1."""
 
     columns: tuple[Column, ...]
     numbers: FloatArray
     words: dict[int, tuple[str, ...]]
     first_line: int
+    lines: tuple[int, ...]
     remarks: tuple[str, ...]
 
     def place(self, role: str) -> int | None:
@@ -53,6 +55,7 @@ def find_table(grid: Grid) -> Table:
     if not any(meanings):
         is_word = [not is_number(cell, sign) for cell in lines[start]]
     rows: list[tuple[str, ...]] = []
+    numbered: list[int] = []
     for number in range(start, end):
         row = lines[number]
         if not any(row):
@@ -61,6 +64,7 @@ def find_table(grid: Grid) -> Table:
             continue  # the heading said once more above a further block
         _check_row(row, width, is_word, sign, number)
         rows.append(row)
+        numbered.append(number + 1)
     numbers = np.full((len(rows), width), np.nan)
     words: dict[int, tuple[str, ...]] = {}
     for i in range(width):
@@ -73,7 +77,7 @@ def find_table(grid: Grid) -> Table:
     else:
         columns, more = columns_by_behaviour(numbers, is_word)
         remarks += more
-    return Table(columns, numbers, words, start + 1, tuple(remarks))
+    return Table(columns, numbers, words, start + 1, tuple(numbered), tuple(remarks))
 
 
 def _is_words(what: Meaning | None) -> bool:

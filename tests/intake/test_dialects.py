@@ -79,6 +79,12 @@ BASE = "frequency_hz,real_ohm,imaginary_ohm\n" + "\n".join(
 )
 
 
+def with_point(second_and_third: str) -> bytes:
+    lines = BASE.splitlines()
+    lines[3] = f"{lines[3].split(',')[0]},{second_and_third}"
+    return "\n".join(lines).encode()
+
+
 @pytest.mark.parametrize(
     ("data", "words"),
     [
@@ -88,7 +94,13 @@ BASE = "frequency_hz,real_ohm,imaginary_ohm\n" + "\n".join(
         (BASE.replace("120", "12o", 1).encode(), "not a number"),
         ("\n".join(BASE.splitlines()[:12]).rsplit(",", 1)[0].encode(), "cut short"),
         (BASE.replace("frequency_hz", "height").encode(), "frequency"),
-        (BASE.replace(repr(float(FREQUENCY[3])), "-5.0").encode(), "not positive"),
+        (BASE.replace(repr(float(FREQUENCY[3])), "-5.0").encode(), "not a positive number"),
+        (BASE.replace(repr(float(FREQUENCY[3])), "0").encode(), "Line 5: the frequency"),
+        (BASE.replace(repr(float(FREQUENCY[3])), "1e999").encode(), "Line 5: the frequency"),
+        (with_point("0,0"), "Line 4: the impedance is zero"),
+        (with_point("1e999,-5"), "Line 4: the impedance is zero or not a finite number"),
+        (with_point("nan,-5"), "Line 4"),
+        ("\n".join(BASE.splitlines()[:5]).encode(), "only 4 points"),
     ],
 )
 def test_what_cannot_be_read_is_refused_with_a_reason(data: bytes, words: str) -> None:
