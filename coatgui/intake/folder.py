@@ -6,12 +6,12 @@ import hashlib
 from collections.abc import Sequence
 from pathlib import Path
 
-from coatgui.intake.decode import LARGEST_FILE, Unreadable, cells, decode
+from coatgui.intake.decode import LARGEST_FILE
+from coatgui.intake.errors import Unreadable
 from coatgui.intake.lists import ListedReading, read_panels, read_readings
 from coatgui.intake.names import panel_and_hours
-from coatgui.intake.spectra import Piece, pieces
-from coatgui.intake.table import find_table
-from coatgui.intake.workbook import sheets
+from coatgui.intake.reading import read_spectra
+from coatgui.intake.spectra import Piece
 from coatgui.progress import Progress
 from coatgui.records import Found, FoundPanel, FoundReading, Refusal, Source, Spectrum
 
@@ -21,26 +21,6 @@ _PANEL_LIST, _READINGS_LIST, _OPEN_LEAD = "panels.csv", "readings.csv", "open_le
 
 class UnreadableFolder(Exception):
     """The folder as a whole cannot be used; the message is one sentence for a person."""
-
-
-def read_spectra(data: bytes, name: str) -> list[Piece]:
-    """All spectra in the bytes of one file. Raises Unreadable with one sentence."""
-    if name.lower().endswith(".xlsx"):
-        found: list[Piece] = []
-        book = sheets(data)
-        for title, grid in book:
-            table = find_table(grid)
-            for piece in pieces(table, grid.encoding, grid.delimiter, grid.decimal_sign):
-                part = f"{title}, {piece.part}".strip(", ") if len(book) > 1 else piece.part
-                found.append(
-                    Piece(piece.spectrum, part, piece.exposure_h, piece.panel, piece.dialect)
-                )
-        if not found:
-            raise Unreadable("The workbook holds no table of numbers: nothing to read.")
-        return found
-    text, encoding = decode(data)
-    grid = cells(text, encoding)
-    return pieces(find_table(grid), grid.encoding, grid.delimiter, grid.decimal_sign)
 
 
 def read_folder(folder: Path, *, progress: Progress | None = None) -> Found:
@@ -141,6 +121,8 @@ def _read(files: Sequence[Path], folder: Path | None, progress: Progress) -> Fou
 def _reading(
     piece: Piece, name: str, digest: str, listed: ListedReading | None, *, alone: bool
 ) -> FoundReading:
+    if piece.per_area:
+        raise Unreadable("The impedance is per area (Ω cm²): export it per specimen, in Ω.")
     by_name = panel_and_hours(name)
     stem = Path(name).stem
     panel = (

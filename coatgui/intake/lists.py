@@ -5,7 +5,9 @@ from __future__ import annotations
 import csv
 from dataclasses import dataclass
 
-from coatgui.intake.decode import Unreadable, decode, is_number, to_number
+from coatgui.intake.decode import decode
+from coatgui.intake.errors import Unreadable
+from coatgui.intake.numbers import Style, number
 from coatgui.records import FoundPanel
 
 _PANEL_WORDS = ("formulation", "substrate", "electrolyte", "regime", "remark")
@@ -37,10 +39,10 @@ def _rows(data: bytes, name: str, wanted: str) -> list[dict[str, str]]:
     if wanted not in headings:
         raise Unreadable(f"The list has no column '{wanted}': add it to the first line of {name}.")
     result = []
-    for number, row in enumerate(rows[1:], start=2):
+    for line, row in enumerate(rows[1:], start=2):
         if len(row) > len(headings):
             raise Unreadable(
-                f"Line {number} has {len(row)} cells where the heading has {len(headings)}: put "
+                f"Line {line} has {len(row)} cells where the heading has {len(headings)}: put "
                 "text that holds the delimiter between quotation marks."
             )
         cells = [cell.strip() for cell in row] + [""] * (len(headings) - len(row))
@@ -53,8 +55,8 @@ def _number(row: dict[str, str], name: str, line: int, *, positive: bool = False
     if not text:
         return None
     for sign in (".", ","):
-        if is_number(text, sign):
-            value = to_number(text, sign)
+        value = number(text, Style(sign))
+        if value is not None:
             if positive and not value > 0:
                 raise Unreadable(f"Line {line}: {name} is {text}; it must be above zero.")
             return value
