@@ -82,6 +82,8 @@ def _section(
         for row in rows[place + 1 :]:
             _take_units(meanings, row, block.width)
     said = _said(above, bare=place is None or previous is not None)
+    if place is not None and said.hours is None:
+        said = _with_label_below(said, rows[place + 1 :])
     labels = _labels_above(above, rows[place].line if place is not None else None)
     groups = _groups(meanings, labels) if any(meanings) else []
     return Section(block, headings, meanings, groups, said, dict(units), place is not None)
@@ -144,7 +146,14 @@ def _best_parting(words: list[str], width: int) -> list[str] | None:
 
 def _take_units(meanings: list[Meaning | None], row: TextRow, width: int) -> None:
     """A row of units between headings and numbers."""
-    for cells in _alignments(row, width):
+    given = [str(cell) for cell in row.cells if cell != ""]
+    wanting = [i for i, m in enumerate(meanings) if m is not None and kind_of(m.role)]
+    ways = _alignments(row, width)
+    if len(row.cells) != width and len(given) == len(wanting):
+        # Blanks part the cells, and a column of words has no unit to fill its place.
+        over = dict(zip(wanting, given, strict=True))
+        ways.insert(0, [over.get(i, "") for i in range(width)])
+    for cells in ways:
         taken = [
             take_unit(what, cell) if what is not None and what.unit is None and cell else None
             for what, cell in zip(meanings, cells, strict=True)
@@ -201,6 +210,12 @@ def _said(rows: list[TextRow], bare: bool) -> Said:
         if hours is not None and len(panel.split()) <= 2:
             said = Said(panel, hours)
     return said
+
+
+def _with_label_below(said: Said, rows: list[TextRow]) -> Said:
+    """A label between the headings and the first of several blocks."""
+    label = _said(rows[-1:], bare=True)
+    return replace(said, panel=said.panel or label.panel, hours=label.hours)
 
 
 def _with_pair(said: Said, key: str, value: str) -> Said:

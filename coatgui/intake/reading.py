@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import codecs
 from collections.abc import Iterator
 from dataclasses import replace
 from itertools import islice
@@ -9,9 +10,9 @@ from itertools import islice
 from coatgui.intake.cut import NOTHING, find_cut
 from coatgui.intake.decode import encoding_of, lines_of
 from coatgui.intake.errors import NoSpectrum, Unreadable
-from coatgui.intake.layout import sections_of
+from coatgui.intake.layout import Section, sections_of
 from coatgui.intake.segments import segment_rows, segment_text
-from coatgui.intake.spectra import Origin, Piece, piece_as_told, pieces, with_parts
+from coatgui.intake.spectra import Origin, Piece, pieces, pieces_as_told, with_parts
 from coatgui.intake.workbook import Sheet, is_workbook, read_workbook
 from coatgui.records import Dialect, FoundReading, Source
 
@@ -92,34 +93,49 @@ def _of_sheet(sheet: Sheet) -> list[Piece]:
 def read_again(
     data: bytes, source: Source, dialect: Dialect, panel: str, exposure_h: float
 ) -> FoundReading:
-    """Stored bytes read as a corrected dialect says: encoding, delimiter (the sheet's name in a
-    workbook), decimal sign, the line of the spectrum's first point, and roles, units and factors
+    """One spectrum of stored bytes, as `read_as_told` reads it, for the reading it belongs to.
+    Raises Unreadable."""
+    piece = read_as_told(data, dialect)[0]
+    return FoundReading(piece.spectrum, replace(source, dialect=piece.dialect), panel, exposure_h)
+
+
+def read_as_told(data: bytes, dialect: Dialect, part: str = "") -> list[Piece]:
+    """Bytes read as a dialect says: encoding, delimiter (the sheet's name in a workbook), decimal
+    sign, the line of the spectrum's first point (0 for every table), and roles, units and factors
     of the columns, signs included, all taken at their word. Raises Unreadable."""
-    if is_workbook(data):
-        sheet = next((s for s in read_workbook(data) if s.title == dialect.delimiter), None)
-        if sheet is None:
-            raise Unreadable(f"The workbook has no sheet '{dialect.delimiter}'.")
-        for rows in sheet.tables():
-            sections, _ = sections_of(segment_rows(rows, sheet.style))
-            if any(dialect.first_data_line in section.block.lines for section in sections):
-                break
-    else:
-        lines = _known_lines(data, dialect.encoding)
-        cut = find_cut(lines[:_SAMPLE_LINES], dialect.delimiter, dialect.decimal_sign)
-        sections, _ = sections_of(segment_text(lines, cut))
-    piece = piece_as_told(sections, dialect)
+    found: list[Piece] = []
+    for sections in _sections_as_told(data, dialect):
+        found += pieces_as_told(sections, dialect)
+    if not found:
+        raise Unreadable(
+            f"No spectrum begins in line {dialect.first_data_line}: say in which line its first "
+            "point stands."
+            if dialect.first_data_line
+            else NOTHING
+        )
     remarks = (*(r for r in dialect.remarks if r != _BY_HAND), _BY_HAND)
-    told = replace(piece.dialect, remarks=remarks)
-    return FoundReading(piece.spectrum, replace(source, dialect=told), panel, exposure_h)
+    found = [replace(p, dialect=replace(p.dialect, remarks=remarks)) for p in found]
+    return [replace(p, part=part) for p in found] if part else with_parts(found)
 
 
 _BY_HAND = "The dialect was corrected by hand."
 
 
-def _known_lines(data: bytes, encoding: str) -> list[str]:
+def _sections_as_told(data: bytes, dialect: Dialect) -> Iterator[list[Section]]:
+    if is_workbook(data):
+        sheet = next((s for s in read_workbook(data) if s.title == dialect.delimiter), None)
+        if sheet is None:
+            raise Unreadable(f"The workbook has no sheet '{dialect.delimiter[:40]}'.")
+        for rows in sheet.tables():
+            yield sections_of(segment_rows(rows, sheet.style))[0]
+        return
     try:
-        return list(lines_of(data, encoding))
+        codecs.lookup(dialect.encoding)
+        cut = find_cut(
+            _sample(lines_of(data, dialect.encoding)), dialect.delimiter, dialect.decimal_sign
+        )
+        yield sections_of(segment_text(lines_of(data, dialect.encoding), cut))[0]
     except (LookupError, UnicodeError):
         raise Unreadable(
-            f"The file cannot be read as '{encoding}': choose another encoding."
+            f"The file cannot be read as '{dialect.encoding[:20]}': choose another encoding."
         ) from None

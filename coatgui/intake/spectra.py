@@ -89,29 +89,27 @@ def pieces(sections: Sequence[Section], after: Sequence[TextRow], origin: Origin
     return with_parts(result)
 
 
-def piece_as_told(sections: Sequence[Section], dialect: Dialect) -> Piece:
-    """The one spectrum that a dialect describes, with its columns and factors exactly as they
-    stand there. Raises Unreadable where the file has no such spectrum."""
+def pieces_as_told(sections: Sequence[Section], dialect: Dialect) -> list[Piece]:
+    """The spectra that begin in the dialect's first line, or all where that is 0, with columns and
+    factors exactly as they stand there. Raises Unreadable."""
+    roles = Counter(c.role for c in dialect.columns if c.role != "other")
+    double = next((role for role, times in roles.items() if times > 1), None)
+    if double is not None:
+        raise Unreadable(f"Two columns are said to be the {double}: choose one.")
     origin = Origin(dialect.encoding, dialect.delimiter, dialect.decimal_sign)
+    first = dialect.first_data_line
+    found: list[Piece] = []
     for section in sections:
-        if dialect.first_data_line not in section.block.lines:
+        if first and first not in section.block.lines:
             continue
-        for column in dialect.columns:
-            if not 0 <= column.position < section.block.width:
-                raise Unreadable(f"The table has no column {column.position + 1}.")
-        roles = [c.role for c in dialect.columns if c.role != "other"]
-        double = next((role for role, times in Counter(roles).items() if times > 1), None)
-        if double is not None:
-            raise Unreadable(f"Two columns are said to be the {double}: choose one.")
+        if any(not 0 <= c.position < section.block.width for c in dialect.columns):
+            if first:
+                raise Unreadable(f"The table has only {section.block.width} columns.")
+            continue
         made = extract(section, dialect.columns, section.said, alone=False)
         made.told = True
-        for piece in _cut(made, origin, [], []):
-            if piece.dialect.first_data_line == dialect.first_data_line:
-                return piece
-    raise Unreadable(
-        f"No spectrum begins in line {dialect.first_data_line}: say in which line its first point "
-        "stands."
-    )
+        found += _cut(made, origin, [], [])
+    return [p for p in found if not first or p.dialect.first_data_line == first]
 
 
 # ---------------------------------------------------------------------------------------------
