@@ -11,8 +11,8 @@ from coatgui.records import Column, FloatArray
 DEGREE = np.pi / 180.0
 # How far a spectrum may be, in the median, from the gain-phase relation in its local form (rad),
 # and how much better one account must be than the next. Own choice: smooth spectra of films and of
-# active metal stay within 0.2 rad, wrong accounts are off by 0.5 rad and more.
-_WITHIN = 0.35
+# active metal stay within 0.1 rad, wrong accounts are off by 0.3 rad and more.
+_WITHIN = 0.2
 _BETTER = 2.0
 _ASK = "say which columns they are, or add a line of headings."
 

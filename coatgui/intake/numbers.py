@@ -80,6 +80,7 @@ def style_of(cells: Iterable[str], told: str = "") -> Style | None:
             sure = bool(gaps) or len(body) > 1 or len(right) != 3
             sure |= not 1 <= len(left) <= 3 or left.startswith("0")
             (decimal if sure else unsure).add(signs[0])
+            plain_thousands |= sure and len(left) >= 4 and not gaps
     marks = thousands & {".", ","}
     if not decimal and marks:
         decimal = {",", "."} - marks

@@ -313,12 +313,14 @@ def _sweeps(frequency: FloatArray, rows: np.ndarray, made: Extract) -> list[np.n
         steps = np.diff(np.log10(frequency[rows]))
     if not np.isfinite(steps).all():
         return [rows]
-    way = np.sign(np.median(steps))
+    # Most sweeps run one way throughout; one that turns round has no median to go by.
+    way = np.sign(np.median(steps)) or np.sign(steps[np.flatnonzero(steps)[:1]].sum())
     span = float(np.ptp(np.log10(frequency[rows])))
     back = np.flatnonzero((steps * way < 0) & (np.abs(steps) > max(0.5, 0.5 * span)))
     if back.size == 0:
-        against = steps * way < -0.5 * abs(float(np.median(steps)))
-        if way != 0 and np.count_nonzero(against) >= _FEWEST_POINTS and against[-1]:
+        # A step against the way may be a point measured twice; a row of them is a way back.
+        usual = 0.5 * float(np.median(np.abs(steps)))
+        if np.count_nonzero(steps * way < -usual) >= _FEWEST_POINTS:
             raise Unclear(
                 "The frequency runs one way and back again: say which half is to be used, or "
                 "remove the other."
