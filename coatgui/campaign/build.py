@@ -2,14 +2,19 @@
 
 Facts that a panel list gives fill what is not known yet. Where they contradict what is known,
 what is known stays, and the contradiction is put on the list of refusals for a person to settle.
+
+A reading is recognised by the SHA-256 of its file and its part of it: brought in once more it is
+counted and otherwise passed over. A file with other bytes for the panel and time of a reading that
+is there is a corrected export: it takes that reading's place. The reading's remark says so, the
+bytes and the spectrum from before stay in the campaign file, and undo brings them back.
 """
 
 from __future__ import annotations
 
 import math
 import secrets
-from collections.abc import Iterable
-from dataclasses import replace
+from collections.abc import Collection, Iterable
+from dataclasses import dataclass, replace
 from typing import Any
 
 from coatgui.records import (
@@ -55,35 +60,63 @@ def campaign_from_found(found: Found, title: str, settings: Settings | None = No
     formulation belongs to "Unassigned".
     """
     empty = Campaign(new_id(), title.strip() or "Untitled campaign", settings or Settings())
-    return gather(empty, found)
+    return gather(empty, found).campaign
 
 
-def gather(campaign: Campaign, found: Found) -> Campaign:
+@dataclass(frozen=True, slots=True)
+class Gathered:
+    """A campaign with a find added. `standing` says of each reading of the find, in its order,
+    what became of it: new, present, replaces or refused."""
+
+    campaign: Campaign
+    standing: tuple[str, ...]
+
+    def count(self, standing: str) -> int:
+        return self.standing.count(standing)
+
+
+def gather(campaign: Campaign, found: Found) -> Gathered:
     """The campaign with what was found added at the ends; see the rules above. Records that do
     not change stay the same objects."""
-    gathering = _Gathering(campaign)
+    gathering = _Gathering(campaign, {r.source.sha256 for r in found.readings})
     for listed in found.panels:
         gathering.add_listed(listed)
-    for reading in found.readings:
-        gathering.add_reading(reading)
+    standing = tuple(gathering.add_reading(reading) for reading in found.readings)
     if found.open_lead is not None:
         gathering.add_open_lead(*found.open_lead)
     for refusal in found.refused:
         gathering.refuse(refusal.file, refusal.reason)
-    return gathering.campaign()
+    return Gathered(gathering.campaign(), standing)
+
+
+def panel_by_name(campaign: Campaign, name: str) -> tuple[Campaign, str]:
+    """The id of the panel of this name, and the campaign, to which it was added if it is new."""
+    name = name.strip()
+    for panel in campaign.panels:
+        if panel.name == name:
+            return campaign, panel.panel_id
+    gathering = _Gathering(campaign, ())
+    panel_id = gathering.panel(name).panel_id
+    return gathering.campaign(), panel_id
 
 
 class _Gathering:
     """A campaign while things are added to it, each kind by what it is recognised by."""
 
-    def __init__(self, campaign: Campaign) -> None:
+    def __init__(self, campaign: Campaign, arriving: Collection[str]) -> None:
+        """`arriving` are the SHA-256 of the files that readings are about to come from."""
         self._before = campaign
+        self._arriving = arriving
         self._formulations = {f.name: f for f in campaign.formulations}
         self._formulation_names = {f.formulation_id: f.name for f in campaign.formulations}
         self._panels = {p.name: p for p in campaign.panels}
         self._panel_names = {p.panel_id: p.name for p in campaign.panels}
         self._readings = list(campaign.readings)
         self._present = {(r.source.sha256, r.source.part): r for r in campaign.readings}
+        self._at: dict[tuple[str, float], list[Reading]] = {}
+        for reading in campaign.readings:
+            self._at.setdefault((reading.panel_id, reading.exposure_h), []).append(reading)
+        self._said_before = {r.file for r in campaign.refused}
         self._refused = dict.fromkeys(campaign.refused)
         self._lead = (campaign.open_lead, campaign.open_lead_source)
 
@@ -168,43 +201,89 @@ class _Gathering:
 
     # A reading, and the run without a specimen
 
-    def add_reading(self, found: FoundReading) -> None:
+    def add_reading(self, found: FoundReading) -> str:
+        """Says what became of it, in the words of `Gathered`."""
         source = _storable_source(found.source)
         name = _storable(found.panel).strip()
         where = f"{source.file} ({source.part})" if source.part else source.file
-        same = self._present.get((source.sha256, source.part))
-        if same is not None:
-            self.refuse(
-                source.file,
-                f"{where} holds the same bytes as {same.source.file}, which is in the campaign "
-                f"already as panel {self._panel_names[same.panel_id]} at {same.exposure_h:g} h: "
-                "it was not added again.",
-            )
-        elif not name:
+        if not name:
             self.refuse(source.file, f"{where} names no panel: say in readings.csv whose it is.")
-        elif not (math.isfinite(found.exposure_h) and found.exposure_h >= 0):
+            return "refused"
+        if not (math.isfinite(found.exposure_h) and found.exposure_h >= 0):
             self.refuse(
                 source.file,
                 f"{where} has no possible exposure time ({found.exposure_h:g} h): say in "
                 "readings.csv when it was taken.",
             )
-        else:
-            panel = self._panels.get(name)
-            if panel is None:
-                panel = self._panels[name] = self._new_panel(name, "")
-            reading = Reading(
-                reading_id=new_id(),
-                panel_id=panel.panel_id,
-                exposure_h=float(found.exposure_h),
-                spectrum=found.spectrum,
-                source=source,
-                temperature_c=_finite(found.temperature_c),
-                amplitude_mv=_finite(found.amplitude_mv),
-                potential_mv=_finite(found.potential_mv),
-                remark=_storable(found.remark),
-            )
-            self._present[source.sha256, source.part] = reading
+            return "refused"
+        same = self._present.get((source.sha256, source.part))
+        if same is not None:
+            return self._recognise(same, source.file, where, name, found.exposure_h)
+        panel = self.panel(name)
+        reading = Reading(
+            reading_id=new_id(),
+            panel_id=panel.panel_id,
+            exposure_h=float(found.exposure_h),
+            spectrum=found.spectrum,
+            source=source,
+            temperature_c=_finite(found.temperature_c),
+            amplitude_mv=_finite(found.amplitude_mv),
+            potential_mv=_finite(found.potential_mv),
+            remark=_storable(found.remark),
+        )
+        self._settle(source.file)
+        earlier = self._earlier(reading)
+        if earlier is None:
             self._readings.append(reading)
+            self._present[source.sha256, source.part] = reading
+            return "new"
+        if earlier.spectrum == reading.spectrum:
+            return "present"  # the same numbers, saved once more
+        after = _replaced(earlier, reading)
+        self._readings[next(i for i, r in enumerate(self._readings) if r is earlier)] = after
+        self._at[after.panel_id, after.exposure_h].remove(earlier)
+        self._present[source.sha256, source.part] = after
+        return "replaces"
+
+    def _recognise(
+        self, same: Reading, file: str, where: str, panel: str, exposure_h: float
+    ) -> str:
+        """The bytes are there already. Under their own name, or for the same panel and time, that
+        is all; under another name and for another reading, one of the two must be wrong."""
+        its_panel = self._panel_names[same.panel_id]
+        if file == same.source.file or (its_panel, same.exposure_h) == (panel, exposure_h):
+            return "present"
+        self.refuse(
+            file,
+            f"{where} holds the same bytes as {same.source.file}, which is in the campaign "
+            f"already as panel {its_panel} at {same.exposure_h:g} h: it was not added again.",
+        )
+        return "refused"
+
+    def _earlier(self, reading: Reading) -> Reading | None:
+        """The reading from before whose place a new one takes. One whose own file has come along
+        again was measured besides, not exported again; so were two of one panel and time, unless
+        the name of the file tells which is meant."""
+        there = [
+            earlier
+            for earlier in self._at.get((reading.panel_id, reading.exposure_h), ())
+            if earlier.source.sha256 not in self._arriving
+        ]
+        named = [
+            earlier
+            for earlier in there
+            if (earlier.source.file, earlier.source.part)
+            == (reading.source.file, reading.source.part)
+        ]
+        chosen = named or there
+        return chosen[0] if len(chosen) == 1 else None
+
+    def _settle(self, file: str) -> None:
+        """A file that was refused before and can be used now is off the list."""
+        if file in self._said_before:
+            self._said_before.discard(file)
+            for refusal in [r for r in self._before.refused if r.file == file]:
+                self._refused.pop(refusal, None)
 
     def add_open_lead(self, spectrum: Spectrum, source: Source) -> None:
         present, present_source = self._lead
@@ -220,6 +299,11 @@ class _Gathering:
 
     # Records that something else needs
 
+    def panel(self, name: str) -> Panel:
+        if name not in self._panels:
+            self._panels[name] = self._new_panel(name, "")
+        return self._panels[name]
+
     def _new_panel(self, name: str, formulation: str) -> Panel:
         panel = Panel(new_id(), name, self._formulation_id(formulation or UNASSIGNED))
         self._panel_names[panel.panel_id] = name
@@ -231,6 +315,29 @@ class _Gathering:
             self._formulations[name] = made
             self._formulation_names[made.formulation_id] = name
         return self._formulations[name].formulation_id
+
+
+def _replaced(before: Reading, after: Reading) -> Reading:
+    """The reading with the corrected export in place of what it held. What a person decided about
+    single points, or in spite of a rejection, was about other numbers and does not stay."""
+    old = before.source
+    note = f"Corrected export; before: {old.file}, SHA-256 {old.sha256[:12]}."
+    decided = bool(before.left_out or before.kept_in or before.overruled_because)
+    if decided:
+        note += " Points left out or kept in, and an overruled rejection, were reset."
+    return replace(
+        after,
+        reading_id=before.reading_id,
+        temperature_c=_first(after.temperature_c, before.temperature_c),
+        amplitude_mv=_first(after.amplitude_mv, before.amplitude_mv),
+        potential_mv=_first(after.potential_mv, before.potential_mv),
+        remark="\n".join(dict.fromkeys(t for t in (before.remark, after.remark, note) if t)),
+        pinned_model=before.pinned_model,
+    )
+
+
+def _first(value: float | None, otherwise: float | None) -> float | None:
+    return otherwise if value is None else value
 
 
 def _finite(value: float | None) -> float | None:

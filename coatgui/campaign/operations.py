@@ -7,12 +7,14 @@ cannot take it: an id it does not have, an empty or taken name, a number that ma
 
 from __future__ import annotations
 
-from collections.abc import Collection, Iterable
+from collections.abc import Collection, Iterable, Mapping
 from dataclasses import fields as fields_of
 from dataclasses import replace
 from typing import Any, TypeVar
 
-from coatgui.campaign.build import gather, new_id
+import numpy as np
+
+from coatgui.campaign.build import gather, new_id, panel_by_name
 from coatgui.campaign.changes import Operation
 from coatgui.campaign.errors import OperationRefused
 from coatgui.campaign.rules import operation
@@ -20,6 +22,7 @@ from coatgui.records import (
     Campaign,
     Formulation,
     Found,
+    FoundReading,
     Panel,
     Reading,
     Refusal,
@@ -58,18 +61,29 @@ _WORDS = {
 
 
 def import_found(campaign: Campaign, found: Found) -> Operation:
-    """Add what intake found. Readings whose bytes and part are present already, and panel facts
-    that contradict what is known, are noted under `refused` instead."""
-    after = gather(campaign, found)
+    """Add what intake found. Readings that are present already are counted in the name, corrected
+    exports take the place of what they correct, and panel facts that contradict what is known are
+    noted under `refused`."""
+    gathered = gather(campaign, found)
+    after = gathered.campaign
+    settled = sum(r not in after.refused for r in campaign.refused)
     counts = (
-        (len(after.readings) - len(campaign.readings), "reading"),
+        (gathered.count("new"), "reading"),
+        (gathered.count("replaces"), "corrected reading"),
         (len(after.panels) - len(campaign.panels), "panel"),
         (int(after.open_lead is not campaign.open_lead), "open-lead run"),
-        (len(after.refused) - len(campaign.refused), "refusal"),
+        (len(after.refused) + settled - len(campaign.refused), "refusal"),
     )
     added = [_count(number, what) for number, what in counts if number]
     name = f"Import {_listed(added)}" if added else "Import panel facts"
-    return operation(name, campaign, after, found.raw)
+    present = gathered.count("present")
+    if present:
+        name += f"; {_count(present, 'reading')} there already"
+    made = operation(name, campaign, after, found.raw)
+    if not made.changes:
+        there = f"; {_count(present, 'reading')} there already" if present else ""
+        return replace(made, name=f"Nothing new{there}")
+    return made
 
 
 def rename_campaign(campaign: Campaign, title: str) -> Operation:
@@ -212,6 +226,41 @@ def edit_reading(campaign: Campaign, reading_id: str, **fields: Any) -> Operatio
 
 # What a person decides about a reading has operations of its own.
 _DECISIONS = ("left_out", "kept_in", "pinned_model", "overruled_because")
+
+
+def read_again(campaign: Campaign, corrected: Mapping[str, FoundReading]) -> Operation:
+    """Put another reading of the same stored bytes in place of readings, by their ids: columns,
+    units or sign were corrected, or panel and time. `coatgui.intake.read_again` makes them. What
+    was decided about points stays where the frequencies are the same."""
+    after = campaign
+    for reading_id, found in corrected.items():
+        reading = _reading(campaign, reading_id)
+        if found.source.sha256 != reading.source.sha256:
+            raise OperationRefused(
+                f"The reading {_where(campaign, reading)} can only be read again from its own "
+                "stored file: import another file instead."
+            )
+        after, panel_id = panel_by_name(after, found.panel)
+        same_points = np.array_equal(found.spectrum.frequency_hz, reading.spectrum.frequency_hz)
+        changed = replace(
+            reading,
+            panel_id=panel_id,
+            exposure_h=float(found.exposure_h),
+            spectrum=found.spectrum,
+            source=found.source,
+            left_out=reading.left_out if same_points else (),
+            kept_in=reading.kept_in if same_points else (),
+        )
+        after = replace(after, readings=_swap(after.readings, [(reading, changed)]))
+    if not corrected:
+        raise OperationRefused("Choose at least one reading to read again.")
+    one = next(iter(corrected))
+    what = (
+        f"the reading {_where(campaign, _reading(campaign, one))}"
+        if len(corrected) == 1
+        else f"{len(corrected)} readings"
+    )
+    return operation(f"Read {what} again, corrected", campaign, after)
 
 
 def remove_reading(campaign: Campaign, reading_id: str) -> Operation:

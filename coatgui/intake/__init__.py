@@ -1,18 +1,32 @@
 """Reading what the laboratory hands over: spectra and refusals, never a half-read spectrum."""
 
-from coatgui.intake.decode import Unreadable
+from coatgui.intake.errors import Unclear, Unreadable
 from coatgui.intake.folder import (
     SPECTRUM_ENDINGS,
     UnreadableFolder,
+    propose_files,
+    propose_folder,
     read_files,
     read_folder,
-    read_spectra,
 )
+from coatgui.intake.names import NamePattern
+from coatgui.intake.proposals import Correction, DryRun, Proposal, Standing, Told
+from coatgui.intake.reading import read_again, read_spectra
 
 __all__ = [
     "SPECTRUM_ENDINGS",
+    "Correction",
+    "DryRun",
+    "NamePattern",
+    "Proposal",
+    "Standing",
+    "Told",
+    "Unclear",
     "Unreadable",
     "UnreadableFolder",
+    "propose_files",
+    "propose_folder",
+    "read_again",
     "read_files",
     "read_folder",
     "read_spectra",

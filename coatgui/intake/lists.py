@@ -3,9 +3,12 @@
 from __future__ import annotations
 
 import csv
+from collections.abc import Iterable
 from dataclasses import dataclass
 
-from coatgui.intake.decode import Unreadable, decode, is_number, to_number
+from coatgui.intake.decode import decode
+from coatgui.intake.errors import Unreadable
+from coatgui.intake.numbers import Style, number
 from coatgui.records import FoundPanel
 
 _PANEL_WORDS = ("formulation", "substrate", "electrolyte", "regime", "remark")
@@ -15,9 +18,10 @@ _READING_NUMBERS = ("exposure_h", "temperature_c", "amplitude_mv", "potential_mv
 
 @dataclass(frozen=True, slots=True)
 class ListedReading:
-    """A row of the readings list."""
+    """A row of the readings list. `part` names one spectrum of a file of several, "" for all."""
 
     file: str
+    part: str
     panel: str
     exposure_h: float | None
     temperature_c: float | None
@@ -37,10 +41,10 @@ def _rows(data: bytes, name: str, wanted: str) -> list[dict[str, str]]:
     if wanted not in headings:
         raise Unreadable(f"The list has no column '{wanted}': add it to the first line of {name}.")
     result = []
-    for number, row in enumerate(rows[1:], start=2):
+    for line, row in enumerate(rows[1:], start=2):
         if len(row) > len(headings):
             raise Unreadable(
-                f"Line {number} has {len(row)} cells where the heading has {len(headings)}: put "
+                f"Line {line} has {len(row)} cells where the heading has {len(headings)}: put "
                 "text that holds the delimiter between quotation marks."
             )
         cells = [cell.strip() for cell in row] + [""] * (len(headings) - len(row))
@@ -53,8 +57,8 @@ def _number(row: dict[str, str], name: str, line: int, *, positive: bool = False
     if not text:
         return None
     for sign in (".", ","):
-        if is_number(text, sign):
-            value = to_number(text, sign)
+        value = number(text, Style(sign))
+        if value is not None:
             if positive and not value > 0:
                 raise Unreadable(f"Line {line}: {name} is {text}; it must be above zero.")
             return value
@@ -63,9 +67,19 @@ def _number(row: dict[str, str], name: str, line: int, *, positive: bool = False
 
 def read_panels(data: bytes, name: str) -> tuple[FoundPanel, ...]:
     """The rows of a panel list. Raises Unreadable with the line."""
+    return panels_of(_rows(data, name, "panel"))
+
+
+def read_readings(data: bytes, name: str) -> dict[tuple[str, str], ListedReading]:
+    """The rows of a readings list by file and part. Raises Unreadable with the line."""
+    return readings_of(_rows(data, name, "file"))
+
+
+def panels_of(rows: Iterable[dict[str, str]]) -> tuple[FoundPanel, ...]:
+    """Panels from rows by heading; the headings stand in line 1."""
     known = {"panel", *_PANEL_WORDS, *_PANEL_NUMBERS}
     panels: dict[str, FoundPanel] = {}
-    for line, row in enumerate(_rows(data, name, "panel"), start=2):
+    for line, row in enumerate(rows, start=2):
         if not row["panel"]:
             raise Unreadable(f"Line {line} names no panel.")
         if row["panel"] in panels:
@@ -85,17 +99,22 @@ def read_panels(data: bytes, name: str) -> tuple[FoundPanel, ...]:
     return tuple(panels.values())
 
 
-def read_readings(data: bytes, name: str) -> dict[str, ListedReading]:
-    """The rows of a readings list by file. Raises Unreadable with the line."""
-    listed: dict[str, ListedReading] = {}
-    for line, row in enumerate(_rows(data, name, "file"), start=2):
+def readings_of(rows: Iterable[dict[str, str]]) -> dict[tuple[str, str], ListedReading]:
+    """Readings by file and part from rows by heading; the headings stand in line 1."""
+    listed: dict[tuple[str, str], ListedReading] = {}
+    for line, row in enumerate(rows, start=2):
         file = row["file"].replace("\\", "/")
         if not file:
             raise Unreadable(f"Line {line} names no file.")
         numbers = {field: _number(row, field, line) for field in _READING_NUMBERS}
         if (numbers["exposure_h"] or 0.0) < 0:
             raise Unreadable(f"Line {line}: exposure_h is below zero.")
-        listed[file] = ListedReading(
-            file=file, panel=row.get("panel", ""), remark=row.get("remark", ""), **numbers
+        part = row.get("part", "")
+        listed[file, part] = ListedReading(
+            file=file,
+            part=part,
+            panel=row.get("panel", ""),
+            remark=row.get("remark", ""),
+            **numbers,
         )
     return listed

@@ -2,8 +2,15 @@ import hashlib
 from dataclasses import replace
 
 import numpy as np
+import pytest
 
-from coatgui.campaign import UNASSIGNED, CampaignFile, campaign_from_found, operations
+from coatgui.campaign import (
+    UNASSIGNED,
+    CampaignFile,
+    OperationRefused,
+    campaign_from_found,
+    operations,
+)
 from coatgui.records import (
     Campaign,
     Found,
@@ -160,10 +167,112 @@ def test_importing_the_same_again_adds_no_reading(file: CampaignFile) -> None:
     file.apply(operations.import_found(once, found))
     assert file.campaign.readings == once.readings
     assert file.campaign.panels == once.panels
-    assert len(file.campaign.refused) == len(once.refused) + 1
-    assert "already as panel C3 at 500 h" in file.campaign.refused[-1].reason
-    # A third time there is nothing new to say.
+    assert file.campaign.refused == once.refused
+    again = operations.import_found(file.campaign, found)
+    assert (again.changes, again.name) == ((), "Nothing new; 1 reading there already")
+    more = replace(found, readings=(*found.readings, reading("C3", 600, b"more")), raw=raw(b"more"))
+    name = operations.import_found(file.campaign, more).name
+    assert name == "Import 1 reading; 1 reading there already"
+
+
+def test_a_reading_moved_by_hand_is_recognised_by_its_file(file: CampaignFile) -> None:
+    found = Found((), (reading("C3", 500, b"new"),), raw=raw(b"new"))
+    file.apply(operations.import_found(file.campaign, found))
+    moved = file.campaign.readings[-1].reading_id
+    file.apply(operations.edit_reading(file.campaign, moved, exposure_h=510))
     assert operations.import_found(file.campaign, found).changes == ()
+
+
+def test_a_corrected_export_replaces_visibly(file: CampaignFile) -> None:
+    first = Found((), (reading("C3", 500, b"first"),), raw=raw(b"first"))
+    file.apply(operations.import_found(file.campaign, first))
+    before = file.campaign
+    old = before.readings[-1]
+    file.apply(operations.leave_out_points(before, old.reading_id, [1], "spike"))
+    better = Found((), (reading("C3", 500, b"corrected"),), raw=raw(b"corrected"))
+    operation = operations.import_found(file.campaign, better)
+    assert operation.name == "Import 1 corrected reading"
+    file.apply(operation)
+    new = file.campaign.readings[-1]
+    assert len(file.campaign.readings) == len(before.readings)
+    assert (new.reading_id, new.spectrum) == (old.reading_id, better.readings[0].spectrum)
+    assert new.left_out == ()
+    assert f"before: C3_500h.csv, SHA-256 {old.source.sha256[:12]}" in new.remark
+    assert "were reset" in new.remark
+    # The old bytes stay, the new ones are there, and undo brings the old reading back.
+    assert file.raw(old.source.sha256) == b"first"
+    assert file.raw(new.source.sha256) == b"corrected"
+    file.undo()
+    file.undo()
+    assert file.campaign.readings[-1] == old
+
+
+def test_the_same_numbers_saved_again_change_nothing(file: CampaignFile) -> None:
+    file.apply(operations.import_found(file.campaign, Found((), (reading("C3", 500, b"abc"),))))
+    again = Found((), (reading("C3", 500, b"cba"),))  # other bytes, the same spectrum
+    assert operations.import_found(file.campaign, again).changes == ()
+
+
+def test_a_repeated_measurement_is_no_correction(file: CampaignFile) -> None:
+    first = reading("C3", 500, b"first")
+    file.apply(operations.import_found(file.campaign, Found((), (first,))))
+    second = replace(
+        reading("C3", 500, b"second one"), source=Source("repeat.csv", raw(b"2").popitem()[0])
+    )
+    both = operations.import_found(file.campaign, Found((), (first, second)))
+    assert both.name == "Import 1 reading; 1 reading there already"
+    file.apply(both)
+    # Of two that are there, the file's name tells which is meant; without it none is replaced.
+    third = Found((), (replace(second, source=Source("x.csv", "3" * 64)),))
+    third = replace(third, readings=(replace(third.readings[0], spectrum=spectrum(77.0)),))
+    assert operations.import_found(file.campaign, third).name == "Import 1 reading"
+    named = replace(third.readings[0], source=Source("repeat.csv", "3" * 64))
+    replaced = operations.import_found(file.campaign, Found((), (named,)))
+    assert replaced.name == "Import 1 corrected reading"
+
+
+def test_a_file_that_can_be_used_now_is_no_longer_refused(file: CampaignFile) -> None:
+    said = Refusal("C3_500h.csv", "It was cut short.")
+    file.apply(operations.import_found(file.campaign, Found(refused=(said,))))
+    assert said in file.campaign.refused
+    file.apply(operations.import_found(file.campaign, Found((), (reading("C3", 500, b"whole"),))))
+    assert said not in file.campaign.refused
+    file.undo()
+    assert said in file.campaign.refused
+
+
+def test_stored_bytes_are_read_again_in_one_operation(
+    file: CampaignFile, campaign: Campaign
+) -> None:
+    r1, r3 = campaign.readings[0], campaign.readings[2]
+    assert r1.source.dialect is not None
+    dialect = replace(r1.source.dialect, delimiter=",")
+    turned = Spectrum(r1.spectrum.frequency_hz, r1.spectrum.impedance_ohm.conj())
+    corrected = {
+        "r1": FoundReading(turned, replace(r1.source, dialect=dialect), "A1", 2.0),
+        "r3": FoundReading(spectrum(4.0), r3.source, "New one", 168.0),
+    }
+    operation = operations.read_again(campaign, corrected)
+    assert operation.name == "Read 2 readings again, corrected"
+    file.apply(operation)
+    after = file.campaign
+    assert after.readings[0] == replace(
+        r1, spectrum=turned, exposure_h=2.0, source=corrected["r1"].source
+    )
+    assert after.readings[0].left_out == r1.left_out  # the same frequencies, the same points
+    assert after.readings[2].spectrum == spectrum(4.0)
+    assert names(after)["New one"] == UNASSIGNED
+    file.undo()
+    assert file.campaign == campaign
+    for wrong, words in (
+        ({}, "at least one"),
+        ({"nobody": corrected["r1"]}, "not in the campaign"),
+        ({"r3": corrected["r1"]}, "its own"),
+        ({"r1": replace(corrected["r1"], exposure_h=-1.0)}, "0 h or more"),
+        ({"r1": replace(corrected["r1"], panel=" ")}, "name that is not empty"),
+    ):
+        with pytest.raises(OperationRefused, match=words):
+            operations.read_again(campaign, wrong)
 
 
 def test_known_facts_are_kept(file: CampaignFile, campaign: Campaign) -> None:

@@ -1,0 +1,96 @@
+"""How the lines of a text file are cut into cells: delimiter and number style, found together."""
+
+from __future__ import annotations
+
+import csv
+import re
+from collections import Counter
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+
+from coatgui.intake.errors import NoSpectrum, Unclear
+from coatgui.intake.numbers import Style, looks_numeric, number, style_of
+
+BLANKS = " "
+_DELIMITERS = (";", "\t", "|", ",", BLANKS)
+_FEWEST_COLUMNS = 3
+_HINT = re.compile(r"^\ufeff?sep=(.)$", re.IGNORECASE)
+NOTHING = "The file holds no table of numbers: nothing to read."
+
+
+@dataclass(frozen=True, slots=True)
+class Cut:
+    """A way to cut lines. `split` gives the cells of one line, trimmed, without empty last ones."""
+
+    delimiter: str
+    style: Style
+
+    def splitter(self) -> Callable[[str], list[str]]:
+        return _splitter(self.delimiter)
+
+
+def _splitter(delimiter: str) -> Callable[[str], list[str]]:
+    if delimiter == BLANKS:
+        return str.split
+
+    def split(line: str) -> list[str]:
+        if '"' in line:
+            try:
+                (cells,) = list(csv.reader([line], delimiter=delimiter, skipinitialspace=True))
+            except (csv.Error, ValueError):
+                cells = line.split(delimiter)
+        else:
+            cells = line.split(delimiter)
+        cells = [cell.strip() for cell in cells]
+        while cells and not cells[-1]:
+            cells.pop()
+        return cells
+
+    return split
+
+
+def find_cut(sample: Sequence[str], delimiter: str = "", decimal_sign: str = "") -> Cut:
+    """The cut under which most lines of the sample are rows of numbers of one width. What is given
+    is taken as told. Raises NoSpectrum where no cut gives a table, Unclear where two do."""
+    hint = next((_HINT.match(line) for line in sample[:1]), None)
+    wanted: Sequence[str] = (delimiter,) if delimiter else (hint[1],) if hint else _DELIMITERS
+    best: list[tuple[float, int, Cut]] = []
+    unclear: Unclear | None = None
+    for place, candidate in enumerate(wanted):
+        if candidate != BLANKS and not any(candidate in line for line in sample):
+            continue
+        try:
+            scored = _score(sample, candidate, decimal_sign)
+        except Unclear as question:
+            unclear = unclear or question
+            continue
+        if scored is not None:
+            score, style = scored
+            best.append((score, -place, Cut(candidate, style)))
+    if not best:
+        raise unclear or NoSpectrum(NOTHING)
+    return max(best, key=lambda entry: entry[:2])[2]
+
+
+def _score(sample: Sequence[str], delimiter: str, decimal_sign: str) -> tuple[float, Style] | None:
+    """Rows of the usual width times the share of numbers on them, with the style, or None."""
+    split = _splitter(delimiter)
+    rows = []
+    for line in sample:
+        cells = split(line)
+        numeric = [cell for cell in cells if cell and looks_numeric(cell)]
+        if len(numeric) >= _FEWEST_COLUMNS and 3 * len(numeric) >= len(cells):
+            rows.append((cells, numeric))
+    if not rows:
+        return None
+    width = Counter(len(cells) for cells, _ in rows).most_common(1)[0][0]
+    usual = [(cells, numeric) for cells, numeric in rows if len(cells) == width]
+    style = style_of((cell for _, numeric in usual for cell in numeric), decimal_sign)
+    if style is None:
+        return None
+    # Quoted cells may hold the delimiter as one of their signs.
+    if delimiter in (style.decimal_sign, style.thousands) and not any('"' in s for s in sample):
+        return None
+    read = sum(number(cell, style) is not None for _, numeric in usual for cell in numeric)
+    cells_there = sum(sum(map(bool, cells)) for cells, _ in usual)
+    return len(usual) * read / cells_there, style

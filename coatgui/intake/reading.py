@@ -1,0 +1,141 @@
+"""The spectra in the bytes of one file, whatever they are: text or workbook, by content."""
+
+from __future__ import annotations
+
+import codecs
+from collections.abc import Iterator
+from dataclasses import replace
+from itertools import islice
+
+from coatgui.intake.cut import NOTHING, find_cut
+from coatgui.intake.decode import encoding_of, lines_of
+from coatgui.intake.errors import NoSpectrum, Unreadable
+from coatgui.intake.layout import Section, sections_of
+from coatgui.intake.segments import segment_rows, segment_text
+from coatgui.intake.spectra import Origin, Piece, pieces, pieces_as_told, with_parts
+from coatgui.intake.workbook import Sheet, is_workbook, read_workbook
+from coatgui.records import Dialect, FoundReading, Source
+
+_SAMPLE_LINES = 400
+_SAMPLE_CHARACTERS = 400_000
+WORKBOOK = "xlsx"
+
+
+def read_spectra(data: bytes, name: str = "") -> list[Piece]:
+    """All spectra in the bytes of one file. Raises Unreadable, or Unclear where a person must say
+    something, with one sentence. The name is not looked at."""
+    if is_workbook(data):
+        return _of_workbook(data)
+    encoding = encoding_of(data)
+    cut = find_cut(_sample(lines_of(data, encoding)))
+    sections, after = sections_of(segment_text(lines_of(data, encoding), cut))
+    if not sections:
+        raise NoSpectrum(NOTHING)
+    origin = Origin(encoding, cut.delimiter, cut.style.decimal_sign)
+    return pieces(sections, after, origin)
+
+
+def _sample(lines: Iterator[str]) -> list[str]:
+    """The first lines, by which the cut is chosen."""
+    result = []
+    characters = 0
+    for line in islice(lines, _SAMPLE_LINES):
+        characters += len(line)
+        if characters > _SAMPLE_CHARACTERS:
+            break
+        result.append(line)
+    return result
+
+
+def _of_workbook(data: bytes) -> list[Piece]:
+    """Tables may stand anywhere on any sheet. A sheet without one is passed over, as long as
+    another has one."""
+    sheets = read_workbook(data)
+    found: list[Piece] = []
+    passed_over: list[str] = []
+    nothing: NoSpectrum | None = None
+    for sheet in sheets:
+        try:
+            of_sheet = _of_sheet(sheet)
+        except NoSpectrum as problem:
+            if sheet.holds_numbers:
+                nothing = nothing or problem
+                passed_over.append(f"Sheet '{sheet.title[:40]}' holds no spectrum.")
+            continue
+        except Unreadable as problem:
+            raise type(problem)(f"Sheet '{sheet.title[:40]}': {problem}") from None
+        for piece in of_sheet:
+            part = f"{sheet.title}, {piece.part}".strip(", ") if len(sheets) > 1 else piece.part
+            found.append(replace(piece, part=part))
+    if not found:
+        raise nothing or NoSpectrum("The workbook holds no table of numbers: nothing to read.")
+    return [
+        replace(p, dialect=replace(p.dialect, remarks=(*p.dialect.remarks, *passed_over)))
+        for p in found
+    ]
+
+
+def _of_sheet(sheet: Sheet) -> list[Piece]:
+    found: list[Piece] = []
+    origin = Origin(WORKBOOK, sheet.title, sheet.style.decimal_sign)
+    nothing = NoSpectrum(NOTHING)
+    for rows in sheet.tables():
+        sections, after = sections_of(segment_rows(rows, sheet.style))
+        try:
+            found += pieces(sections, after, origin)
+        except NoSpectrum as problem:
+            nothing = problem
+    if not found:
+        raise nothing
+    return with_parts(found)
+
+
+def read_again(
+    data: bytes, source: Source, dialect: Dialect, panel: str, exposure_h: float
+) -> FoundReading:
+    """One spectrum of stored bytes, as `read_as_told` reads it, for the reading it belongs to.
+    Raises Unreadable."""
+    piece = read_as_told(data, dialect)[0]
+    return FoundReading(piece.spectrum, replace(source, dialect=piece.dialect), panel, exposure_h)
+
+
+def read_as_told(data: bytes, dialect: Dialect, part: str = "") -> list[Piece]:
+    """Bytes read as a dialect says: encoding, delimiter (the sheet's name in a workbook), decimal
+    sign, the line of the spectrum's first point (0 for every table), and roles, units and factors
+    of the columns, signs included, all taken at their word. Raises Unreadable."""
+    found: list[Piece] = []
+    for sections in _sections_as_told(data, dialect):
+        found += pieces_as_told(sections, dialect)
+    if not found:
+        raise Unreadable(
+            f"No spectrum begins in line {dialect.first_data_line}: say in which line its first "
+            "point stands."
+            if dialect.first_data_line
+            else NOTHING
+        )
+    remarks = (*(r for r in dialect.remarks if r != _BY_HAND), _BY_HAND)
+    found = [replace(p, dialect=replace(p.dialect, remarks=remarks)) for p in found]
+    return [replace(p, part=part) for p in found] if part else with_parts(found)
+
+
+_BY_HAND = "The dialect was corrected by hand."
+
+
+def _sections_as_told(data: bytes, dialect: Dialect) -> Iterator[list[Section]]:
+    if is_workbook(data):
+        sheet = next((s for s in read_workbook(data) if s.title == dialect.delimiter), None)
+        if sheet is None:
+            raise Unreadable(f"The workbook has no sheet '{dialect.delimiter[:40]}'.")
+        for rows in sheet.tables():
+            yield sections_of(segment_rows(rows, sheet.style))[0]
+        return
+    try:
+        codecs.lookup(dialect.encoding)
+        cut = find_cut(
+            _sample(lines_of(data, dialect.encoding)), dialect.delimiter, dialect.decimal_sign
+        )
+        yield sections_of(segment_text(lines_of(data, dialect.encoding), cut))[0]
+    except (LookupError, UnicodeError):
+        raise Unreadable(
+            f"The file cannot be read as '{dialect.encoding[:20]}': choose another encoding."
+        ) from None
