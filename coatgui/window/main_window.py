@@ -21,7 +21,6 @@ from PySide6.QtWidgets import (
     QMessageBox,
     QProgressBar,
     QPushButton,
-    QScrollArea,
     QSplitter,
     QStackedWidget,
     QTreeView,
@@ -34,7 +33,8 @@ from coatgui.shipped import sample_panels
 from coatgui.window import palette
 from coatgui.window.actions import ACTIONS, Entry
 from coatgui.window.desk import Desk
-from coatgui.window.facts import facts
+from coatgui.window.exposure_strip import ExposureStrip
+from coatgui.window.facts import FactsView, facts
 from coatgui.window.places.course_place import CoursePlace
 from coatgui.window.places.doubts_place import DoubtsPlace
 from coatgui.window.places.map_place import MapPlace
@@ -136,6 +136,7 @@ class MainWindow(QMainWindow):
         self.tree.setAccessibleName("Project tree")
         self.tree.setHeaderHidden(True)
         self.tree.setUniformRowHeights(True)
+        self.tree.setIndentation(14)
         self.tree.setModel(self.model)
         self.tree.selectionModel().currentChanged.connect(self._tree_picked)
         left.addWidget(self.filter)
@@ -167,17 +168,13 @@ class MainWindow(QMainWindow):
         self.buttons.idClicked.connect(self.go)
         column.addLayout(bar)
         column.addWidget(self.stack, 1)
+        self.strip = ExposureStrip(self.desk, self.tone)
+        self.strip.picked.connect(self.desk.select)
+        column.addWidget(self.strip)
         splitter.addWidget(middle)
-        self.facts = plain_label()
-        self.facts.setAlignment(Qt.AlignmentFlag.AlignTop)
-        self.facts.setContentsMargins(12, 12, 12, 12)
-        self.facts.setAccessibleName("Facts of the selection")
-        scroll = QScrollArea()
-        scroll.setWidget(self.facts)
-        scroll.setWidgetResizable(True)
-        scroll.setFrameShape(QFrame.Shape.NoFrame)
-        splitter.addWidget(scroll)
-        splitter.setSizes([200, 830, 250])
+        self.facts = FactsView()
+        splitter.addWidget(self.facts)
+        splitter.setSizes([210, 820, 250])
         splitter.setStretchFactor(1, 1)
         return splitter
 
@@ -245,7 +242,8 @@ class MainWindow(QMainWindow):
         self._show_facts()
 
     def _show_facts(self) -> None:
-        self.facts.setText(facts(self.desk.reading_assessment(), self.desk.assessment))
+        self.facts.show_facts(facts(self.desk.reading_assessment(), self.desk.assessment))
+        self.strip.refresh()
 
     def _worked(self, stage: str, done: int, total: int) -> None:
         for widget in (self.doing, self.bar, self.halt):
@@ -309,6 +307,9 @@ class MainWindow(QMainWindow):
     def go(self, place: int) -> None:
         self.stack.setCurrentIndex(place)
         self.buttons.button(place).setChecked(True)
+        # The reading's own place shows the same values where they lie in the coating.
+        self.facts.setVisible(not isinstance(self.places[place], ReadingPlace))
+        self.strip.setVisible(not isinstance(self.places[place], DoubtsPlace))
 
     def go_map(self) -> None:
         self.go(0)
@@ -336,6 +337,8 @@ class MainWindow(QMainWindow):
             palette.apply(application, self.tone)
         for place in self.places:
             place.paint_in(self.tone)
+        self.strip.tone = self.tone
+        self.strip.update()
 
     def show_cautions(self) -> None:
         box = QMessageBox(self)
