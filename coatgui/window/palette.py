@@ -38,13 +38,11 @@ def colours(dark: bool) -> Colours:
     return Colours(**_data()["dark" if dark else "light"], dark=dark)
 
 
-def formulation_look(place: int) -> tuple[str, str]:
+def formulation_look(place: int, dark: bool) -> tuple[str, str]:
     """Colour and marker shape of the formulation at a place in the campaign."""
     looks = _data()["formulations"]
-    return (
-        looks["colours"][place % len(looks["colours"])],
-        looks["shapes"][place % len(looks["shapes"])],
-    )
+    hues = looks["dark" if dark else "light"]
+    return hues[place % len(hues)], looks["shapes"][place % len(looks["shapes"])]
 
 
 def system_is_dark() -> bool:
@@ -154,6 +152,17 @@ def apply(application: QApplication, tone: Colours) -> None:
         QLabel#fact_title {{ font-size: 16px; }}
         QLabel#fact_name {{ font-size: 11px; color: {tone.second}; }}
         QLabel#fact_note, QLabel#fact_caution {{ font-size: 11px; color: {tone.second}; }}
+        QPushButton#first {{ background: {tone.verdigris}; color: {tone.ground};
+            border-color: {tone.verdigris}; }}
+        QPushButton#first:focus {{ border: 2px solid {tone.ink}; padding: 5px 13px; }}
+        QPushButton#link {{ background: transparent; border: 1px solid transparent;
+            color: {tone.verdigris}; text-align: left; padding: 3px 6px; }}
+        QPushButton#link:focus, QPushButton#link:hover {{ border-color: {tone.verdigris}; }}
+        QPushButton:hover {{ border-color: {tone.second}; }}
+        QPushButton:disabled {{ color: {tone.faint}; }}
+        QFrame#trouble {{ background: {tone.panel}; border: 0;
+            border-bottom: 1px solid {tone.line}; }}
+        QFrame#trouble QLabel {{ color: {tone.rust}; }}
         QFrame#side {{ background: {tone.panel}; }}
         """
     )

@@ -163,7 +163,7 @@ class ReadingPlace(Place):
             self.about.setText("No reading is picked: pick one in the tree or on the map.")
             return
         if known is None:
-            self.about.setText("This reading is being judged …")
+            self.about.setText(self.desk.unjudged_words())
             return
         text = f"{known.panel} of {known.formulation} after {known.exposure_h:g} h: "
         if known.fit is None:
