@@ -7,7 +7,8 @@ from dataclasses import dataclass
 
 @dataclass(frozen=True)
 class Entry:
-    """`method` is the main window's; `needs` is what must be there: "", campaign, undo or redo."""
+    """`method` is the main window's; `needs` is what must be there: "", campaign, work
+    (something under way), undo or redo."""
 
     menu: str
     name: str
@@ -31,6 +32,12 @@ ACTIONS = (
           "write_workbook", "campaign"),
     Entry("Campaign", "Write data (JSON)…", "", "Write the assessment as data for scripts",
           "write_data", "campaign"),
+    Entry("Campaign", "Judge the readings again", "F5", "Check and fit what has changed",
+          "judge_again", "campaign"),
+    Entry("Campaign", "Stop the work under way", "Esc", "Nothing is left half-written",
+          "halt_work", "work"),
+    Entry("Campaign", "Close campaign", "Ctrl+W", "Go back to the welcome page", "close_campaign",
+          "campaign"),
     Entry("Campaign", "Quit", "Ctrl+Q", "Close the program", "close"),
     Entry("Edit", "Undo", "Ctrl+Z", "Take back the last edit", "undo", "undo"),
     Entry("Edit", "Redo", "Ctrl+Shift+Z", "Do it again", "redo", "redo"),

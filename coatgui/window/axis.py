@@ -7,6 +7,7 @@ from typing import Any
 
 import numpy as np
 import pyqtgraph as pg
+from PySide6.QtCore import QRectF, Qt, Signal
 
 from coatgui.window.numbers import prefixed
 
@@ -60,7 +61,41 @@ class AmountAxis(pg.AxisItem):  # type: ignore[misc, unused-ignore]
         return [(spacing, values[::step])]
 
     def tickStrings(self, values: list[float], scale: float, spacing: float) -> list[str]:
-        return ["0" if abs(v) < 1e-9 * spacing else prefixed(v, self.unit, 2) for v in values]
+        texts = ["0" if abs(v) < 1e-9 * spacing else prefixed(v, self.unit, 2) for v in values]
+        return [text.replace("-", "−") for text in texts]
+
+
+class PlainAxis(pg.AxisItem):  # type: ignore[misc, unused-ignore]
+    """An axis of plain numbers: no prefix hidden in its title, and a minus that is one."""
+
+    def __init__(self, orientation: str) -> None:
+        super().__init__(orientation)
+        self.enableAutoSIPrefix(False)
+
+    def tickValues(self, low: float, high: float, size: float) -> list[tuple[float, list[float]]]:
+        ticks = super().tickValues(low, high, size)
+        return [ticks[0]] if len(ticks[0][1]) >= 2 else list(ticks[:2])
+
+    def tickStrings(self, values: list[float], scale: float, spacing: float) -> list[str]:
+        return [s.replace("-", "−") for s in super().tickStrings(values, 1.0, spacing)]
+
+
+class BoxView(pg.ViewBox):  # type: ignore[misc, unused-ignore]
+    """A view in which dragging with Shift draws a box, reported in the plot's own coordinates."""
+
+    boxed = Signal(QRectF)
+
+    def mouseDragEvent(self, ev: Any, axis: int | None = None) -> None:
+        if not ev.modifiers() & Qt.KeyboardModifier.ShiftModifier:
+            super().mouseDragEvent(ev, axis)
+            return
+        ev.accept()
+        if ev.isFinish():
+            self.rbScaleBox.hide()
+            area = QRectF(ev.buttonDownPos(), ev.pos()).normalized()
+            self.boxed.emit(self.childGroup.mapRectFromParent(area).normalized())
+        else:
+            self.updateScaleBox(ev.buttonDownPos(), ev.pos())
 
 
 class Plot(pg.PlotWidget):  # type: ignore[misc, unused-ignore]
@@ -78,7 +113,11 @@ class Plot(pg.PlotWidget):  # type: ignore[misc, unused-ignore]
         for side, (_, unit) in (("bottom", bottom), ("left", left)):
             if unit is not None:
                 axes[side] = (DecadeAxis if decades else AmountAxis)(side, unit)
-        super().__init__(axisItems=axes)
+            else:
+                axes[side] = PlainAxis(side)
+        view = BoxView()
+        super().__init__(axisItems=axes, viewBox=view)
+        self.boxed = view.boxed
         self._titles = {"bottom": bottom[0], "left": left[0]}
         self.setAccessibleName(name)
         self.setMenuEnabled(False)
@@ -94,3 +133,8 @@ class Plot(pg.PlotWidget):  # type: ignore[misc, unused-ignore]
             axis.setTextPen(ink)
             axis.setLabel(title, color=ink)
         self.showGrid(x=True, y=True, alpha=0.12)
+        box = self.getPlotItem().vb.rbScaleBox
+        box.setPen(pg.mkPen(ink, width=1, style=Qt.PenStyle.DashLine))
+        shade = pg.mkColor(ink)
+        shade.setAlpha(30)
+        box.setBrush(shade)

@@ -15,6 +15,7 @@ from coatgui.assessment import assess
 from coatgui.campaign import (
     CampaignFile,
     CampaignFileError,
+    Change,
     Operation,
     campaign_from_found,
     operations,
@@ -61,13 +62,15 @@ def _export(
 class Desk(QObject):
     """Signals: `campaign_changed` when the campaign is another or was edited, `assessed` when a
     new assessment is there, `selected` with a reading's id, `worked` with what a job is doing
-    ("" when idle), `told` with a sentence for the status line."""
+    ("" when idle), `told` with a sentence for the status line, `failed` with one that a person must
+    see: something that was asked for was not done."""
 
     campaign_changed = Signal()
     assessed = Signal()
     selected = Signal(str)
     worked = Signal(str, int, int)
     told = Signal(str)
+    failed = Signal(str)
 
     def __init__(self, parent: QObject | None = None) -> None:
         super().__init__(parent)
@@ -77,7 +80,9 @@ class Desk(QObject):
         self.unsaved_folder: Path | None = None
         self.job: Job | None = None
         self._then: Callable[[Any], None] | None = None
-        self._again = False
+        self._stale = False  # the assessment is not of the campaign as it is now
+        self._halted = False  # a person stopped the judging
+        self._waiting: list[Callable[[], None]] = []
         self._timer = QTimer(self)
         self._timer.setInterval(_POLL_MS)
         self._timer.timeout.connect(self._poll)
@@ -99,15 +104,22 @@ class Desk(QObject):
     def reading_assessment(self) -> ReadingAssessment | None:
         return None if self.assessment is None else self.assessment.reading(self.selection)
 
+    def unjudged_words(self) -> str:
+        """What stands where an assessment is missing."""
+        if self._halted:
+            return "The readings have not been judged: F5 judges them."
+        if self.campaign is not None and not self.campaign.readings:
+            return "No readings yet: bring in files with spectra, or drop them here."
+        return "The readings are being judged …"
+
     # --- background work -------------------------------------------------------------------
 
     def _start(self, then: Callable[[Any], None], function: Callable[..., Any], *a: Any) -> None:
-        if self.job is not None:
-            self.job.cancel()
-            self.job.wait(30.0)
+        self._put_aside()
         self._then = then
         self.job = run_in_background(function, *a)
         self._timer.start()
+        self.worked.emit("Beginning", 0, 0)
 
     def _poll(self) -> None:
         job = self.job
@@ -123,18 +135,39 @@ class Desk(QObject):
         self.worked.emit("", 0, 0)
         error = job.error
         if job.cancelled or isinstance(error, Cancelled):
+            self._waiting.clear()
+            self._halted = True
             self.told.emit("Stopped; nothing was half-written.")
-        elif isinstance(error, (UnreadableFolder, CampaignFileError, OSError)):
-            self.told.emit(str(error))
+            self.campaign_changed.emit()
+            return
+        if isinstance(error, (UnreadableFolder, CampaignFileError, OSError)):
+            self.failed.emit(str(error))
         elif error is not None:
-            self.told.emit(f"That went wrong in a way it should not: {error}")
+            self.failed.emit(f"That went wrong in a way it should not: {error}")
+            # What fails beyond explanation would fail again.
+            self._stale = False
         elif self._then is not None:
             self._then(job.result)
+        if self.job is None and self._stale:
+            self.judge()  # the work just done had put the judging aside
+        while self.job is None and self._waiting:
+            self._waiting.pop(0)()
 
     def stop(self) -> None:
         """Give up the work under way."""
         if self.job is not None:
             self.job.cancel()
+
+    def _put_aside(self) -> bool:
+        """End the work under way at once, without a word; True where there was any."""
+        if self.job is None:
+            return False
+        self.job.cancel()
+        self.job.wait(30.0)
+        self.job = None
+        self._timer.stop()
+        self.worked.emit("", 0, 0)
+        return True
 
     # --- campaigns -------------------------------------------------------------------------
 
@@ -153,9 +186,7 @@ class Desk(QObject):
     def _take(self, file: CampaignFile, folder: Path | None) -> None:
         self.close()
         self.file, self.unsaved_folder = file, folder
-        readings = file.campaign.readings
-        first = min(readings, key=lambda r: r.exposure_h, default=None)
-        self.selection = "" if first is None else first.reading_id
+        self._pick_first()
         self.campaign_changed.emit()
         refused = len(file.campaign.refused)
         if refused:
@@ -163,34 +194,39 @@ class Desk(QObject):
             self.told.emit(f"{files} refused; Doubts says which and why.")
         self.judge()
 
+    def _pick_first(self) -> None:
+        readings = () if self.campaign is None else self.campaign.readings
+        first = min(readings, key=lambda r: r.exposure_h, default=None)
+        self.selection = "" if first is None else first.reading_id
+
     def save_as(self, path: Path) -> None:
         """Keep the campaign under another name and go on with that file."""
         if self.file is None:
             return
-        self.stop()
-        if self.job is not None:
-            self.job.wait(30.0)
+        if self.is_saved and self.file.path == path.absolute():
+            self.told.emit(f"{path.name} holds every edit already.")
+            return
+        self._put_aside()
         try:
             self.file.save_copy(path, replace=True)
             file = CampaignFile.open(path)
         except (CampaignFileError, OSError) as error:
-            self.told.emit(str(error))
-            return
-        selection, assessment = self.selection, self.assessment
-        self.close()
-        self.file, self.selection, self.assessment = file, selection, assessment
-        self.campaign_changed.emit()
-        if assessment is not None:
-            self.assessed.emit()
-        self.told.emit(f"Saved as {path.name}.")
+            self.failed.emit(str(error))
+        else:
+            selection, assessment, stale = self.selection, self.assessment, self._stale
+            self.close()
+            self.file, self.selection, self.assessment = file, selection, assessment
+            self._stale = stale
+            self.campaign_changed.emit()
+            self.told.emit(f"Saved as {path.name}.")
+        if self._stale:
+            self.judge()
 
     def close(self) -> None:
         """Put the campaign away; what was never saved is deleted."""
-        if self.job is not None:
-            self.job.cancel()
-            self.job.wait(30.0)
-            self.job = None
-        self._timer.stop()
+        self._put_aside()
+        self._waiting.clear()
+        self._stale = self._halted = False
         if self.file is not None:
             self.file.close()
         if self.unsaved_folder is not None:
@@ -200,10 +236,14 @@ class Desk(QObject):
     def judge(self) -> None:
         """Assess the campaign in the background."""
         if self.file is not None and self.file.campaign.readings:
+            self._stale, self._halted = True, False
             self._start(self._judged, _assess, self.file.campaign, self.file)
+        elif self.file is not None:
+            self.assessment, self._stale = None, False
+            self.assessed.emit()
 
     def _judged(self, assessment: Assessment) -> None:
-        self.assessment = assessment
+        self.assessment, self._stale = assessment, False
         self.assessed.emit()
 
     # --- edits -----------------------------------------------------------------------------
@@ -212,22 +252,30 @@ class Desk(QObject):
         """Carry out one named operation and judge anew."""
         if self.file is None:
             return
-        try:
-            change = self.file.apply(make(self.file.campaign, *arguments, **keywords))
-        except CampaignFileError as error:
-            self.told.emit(str(error))
-            return
-        self._changed(change.name)
+        file = self.file
+        self._change(lambda: file.apply(make(file.campaign, *arguments, **keywords)), "{}")
 
     def undo(self) -> None:
-        if self.file is not None and (change := self.file.undo()) is not None:
-            self._changed(f"Undone: {change.name}")
+        if self.file is not None:
+            self._change(self.file.undo, "Undone: {}")
 
     def redo(self) -> None:
-        if self.file is not None and (change := self.file.redo()) is not None:
-            self._changed(f"Done again: {change.name}")
+        if self.file is not None:
+            self._change(self.file.redo, "Done again: {}")
+
+    def _change(self, make: Callable[[], Change | None], words: str) -> None:
+        try:
+            change = make()
+        except CampaignFileError as error:
+            self.failed.emit(str(error))
+            return
+        if change is not None and change.kinds:
+            self._changed(words.format(change.name))
 
     def _changed(self, words: str) -> None:
+        self._stale = True
+        if self.reading() is None:
+            self._pick_first()
         self.campaign_changed.emit()
         self.told.emit(words)
         self.judge()
@@ -238,7 +286,7 @@ class Desk(QObject):
             self.open(paths[0])
             return
         if self.file is None:
-            self.told.emit("Open a folder or a campaign first, then drop files onto it.")
+            self.failed.emit("Open a folder or a campaign first, then drop files onto it.")
             return
 
         def read(found: list[Found]) -> None:
@@ -267,8 +315,12 @@ class Desk(QObject):
 
     def export(self, path: Path) -> None:
         """Write the workbook or the JSON, by the ending of the name."""
-        if self.assessment is None or self.campaign is None:
-            self.told.emit("There is nothing to write yet: wait for the assessment.")
+        if self.job is not None:
+            self._waiting.append(lambda: self.export(path))
+            self.told.emit(f"{path.name} will be written when the work under way is done.")
+            return
+        if self.assessment is None or self.campaign is None or self._stale:
+            self.failed.emit("There is nothing to write: the readings have not been judged.")
             return
 
         def written(where: Path) -> None:

@@ -2,45 +2,104 @@
 
 from __future__ import annotations
 
-from coatgui.records import Assessment, Bound, ReadingAssessment
+from dataclasses import dataclass
+
+from PySide6.QtCore import Qt
+from PySide6.QtWidgets import QFrame, QLabel, QScrollArea, QVBoxLayout, QWidget
+
+from coatgui.records import Assessment, Bound, Quantity, ReadingAssessment
 from coatgui.window.numbers import said
+from coatgui.window.places.place import plain_label
 
 
-def facts(reading: ReadingAssessment | None, assessment: Assessment | None) -> str:
+@dataclass(frozen=True)
+class Fact:
+    """A line of the column: `kind` is title, name, value, note or caution."""
+
+    kind: str
+    text: str
+
+
+def facts(reading: ReadingAssessment | None, assessment: Assessment | None) -> list[Fact]:
     """What a colleague would say about the picked reading and its panel."""
     if reading is None or assessment is None:
-        return ""
-    lines = [f"{reading.panel}, {reading.formulation}", f"after {reading.exposure_h:g} h", ""]
+        return []
+    lines = [
+        Fact("title", f"{reading.panel}, {reading.exposure_h:g} h"),
+        Fact("note", reading.formulation),
+    ]
     if not reading.counts:
-        lines.append("This reading is kept out of every conclusion.")
+        lines.append(Fact("value", "■ This reading is kept out of every conclusion."))
     for modulus in reading.modulus:
+        name = f"|Z|·A at {modulus.frequency_hz:g} Hz"
         if modulus.quantity is None:
-            lines.append(f"|Z| at {modulus.frequency_hz:g} Hz was not reached.")
+            lines += [Fact("name", name), Fact("value", "not reached by the sweep")]
         else:
-            lines.append(
-                f"|Z|·A at {modulus.frequency_hz:g} Hz: {said(modulus.quantity)}, "
-                f"{modulus.status.value.replace('_', ' ')}."
-            )
-    if reading.coating_capacitance is not None:
-        lines.append(
-            f"Film capacitance {said(reading.coating_capacitance)}, by "
-            f"{reading.coating_capacitance.method}."
-        )
-    if reading.water_uptake is not None:
-        lines.append(
-            f"Apparent water uptake {said(reading.water_uptake.quantity)}, "
-            f"{reading.water_uptake.quantity.method}."
-        )
-    if reading.pore_resistance is not None:
-        text = f"Pore resistance {said(reading.pore_resistance)}."
-        if reading.pore_resistance.bound is Bound.AT_LEAST:
-            text += f" {reading.pore_resistance.method[:1].upper()}"
-            text += f"{reading.pore_resistance.method[1:]}."
-        lines.append(text)
+            lines += _said(name, modulus.quantity, modulus.status.value.replace("_", " "))
+    lines += _said("Film capacitance", reading.coating_capacitance)
+    water = reading.water_uptake.quantity if reading.water_uptake else None
+    lines += _said("Apparent water uptake", water)
+    pores = reading.pore_resistance
+    if pores is not None:
+        note = pores.method if pores.bound is Bound.AT_LEAST else ""
+        lines += _said("Pore resistance", pores, note)
     panel = next((p for p in assessment.panels if p.panel_id == reading.panel_id), None)
     if panel is not None:
-        said_of_it = [event.text for event in panel.events]
-        said_of_it += [crossing.text for crossing in panel.limit_crossings]
-        lines += ["", f"Panel {panel.panel} so far:", *said_of_it]
-    lines += ["", *assessment.cautions[:1]]
-    return "\n".join(lines)
+        told = [event.text for event in panel.events]
+        told += [crossing.text for crossing in panel.limit_crossings]
+        if told:
+            lines.append(Fact("name", f"Panel {panel.panel} so far"))
+            lines += [Fact("value", text) for text in told]
+    lines += [Fact("caution", text) for text in assessment.cautions[:1]]
+    return lines
+
+
+def _said(name: str, quantity: Quantity | None, note: str | None = None) -> list[Fact]:
+    if quantity is None:
+        return []
+    note = quantity.method if note is None else note
+    lines = [Fact("name", name), Fact("value", said(quantity))]
+    return [*lines, Fact("note", note)] if note else lines
+
+
+class FactsView(QScrollArea):
+    """The column of facts, as labels that can be selected and copied."""
+
+    def __init__(self) -> None:
+        super().__init__()
+        self.setWidgetResizable(True)
+        self.setFrameShape(QFrame.Shape.NoFrame)
+        self.setHorizontalScrollBarPolicy(Qt.ScrollBarPolicy.ScrollBarAlwaysOff)
+        self.setAccessibleName("Facts of the selection")
+        page = QWidget()
+        self._column = QVBoxLayout(page)
+        self._column.setContentsMargins(12, 12, 12, 12)
+        self._column.setSpacing(0)
+        self._column.addStretch(1)
+        self._labels: list[QLabel] = []
+        self._shown: list[Fact] = []
+        self.setWidget(page)
+
+    def show_facts(self, lines: list[Fact]) -> None:
+        self._shown = lines
+        while len(self._labels) < len(lines):
+            label = plain_label()
+            self._column.insertWidget(len(self._labels), label)
+            self._labels.append(label)
+        for number, label in enumerate(self._labels):
+            label.setVisible(number < len(lines))
+            if number >= len(lines):
+                continue
+            fact = lines[number]
+            if label.objectName() != f"fact_{fact.kind}":
+                label.setObjectName(f"fact_{fact.kind}")
+                label.style().unpolish(label)
+                label.style().polish(label)
+            top = {"title": 0, "name": 12, "value": 2, "note": 2, "caution": 16}[fact.kind]
+            label.setContentsMargins(0, top, 0, 0)
+            label.setText(fact.text)
+        self.setAccessibleDescription(self.text())
+
+    def text(self) -> str:
+        """All of it, a line each."""
+        return "\n".join(fact.text for fact in self._shown)

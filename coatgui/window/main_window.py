@@ -18,10 +18,8 @@ from PySide6.QtWidgets import (
     QLineEdit,
     QMainWindow,
     QMenu,
-    QMessageBox,
     QProgressBar,
     QPushButton,
-    QScrollArea,
     QSplitter,
     QStackedWidget,
     QTreeView,
@@ -33,18 +31,22 @@ from coatgui.assessment.cautions import cautions
 from coatgui.shipped import sample_panels
 from coatgui.window import palette
 from coatgui.window.actions import ACTIONS, Entry
+from coatgui.window.asking import Leave, file_to_write, how_to_leave, say_plainly
 from coatgui.window.desk import Desk
-from coatgui.window.facts import facts
+from coatgui.window.exposure_strip import ExposureStrip
+from coatgui.window.facts import FactsView, facts
 from coatgui.window.places.course_place import CoursePlace
 from coatgui.window.places.doubts_place import DoubtsPlace
 from coatgui.window.places.map_place import MapPlace
-from coatgui.window.places.place import Place, plain_label
+from coatgui.window.places.place import Place
 from coatgui.window.places.reading_place import ReadingPlace
 from coatgui.window.tree_model import TreeModel
+from coatgui.window.welcome import Trouble, Welcome
 
 _FILES = "Spectra and lists (*.csv *.txt *.dat *.tsv *.xlsx)"
 _CAMPAIGNS = "Campaigns (*.coatgui)"
 _RECENT = 8
+_UNSAVED = "not saved yet"
 
 
 class MainWindow(QMainWindow):
@@ -60,8 +62,23 @@ class MainWindow(QMainWindow):
         self._began = 0.0
         self._build_menus()
         self.pages = QStackedWidget()
-        self.setCentralWidget(self.pages)
-        self.pages.addWidget(self._welcome())
+        self.trouble = Trouble()
+        middle = QWidget()
+        column = QVBoxLayout(middle)
+        column.setContentsMargins(0, 0, 0, 0)
+        column.setSpacing(0)
+        column.addWidget(self.trouble)
+        column.addWidget(self.pages, 1)
+        self.setCentralWidget(middle)
+        self.welcome = Welcome(
+            [
+                ("Open a folder of spectra…", self.open_folder),
+                ("Open a campaign…", self.open_campaign),
+                ("Try the sample campaign", self.open_sample),
+            ]
+        )
+        self.welcome.picked.connect(lambda name: self.open_path(Path(name)))
+        self.pages.addWidget(self.welcome)
         self.pages.addWidget(self._work())
         self._build_status()
         self.desk.campaign_changed.connect(self._campaign_changed)
@@ -69,6 +86,7 @@ class MainWindow(QMainWindow):
         self.desk.selected.connect(self._selected)
         self.desk.worked.connect(self._worked)
         self.desk.told.connect(self._told)
+        self.desk.failed.connect(self.trouble.say)
         self._campaign_changed()
 
     # --- building --------------------------------------------------------------------------
@@ -92,34 +110,6 @@ class MainWindow(QMainWindow):
         self.recent.aboutToShow.connect(self._fill_recent)
         menus["Campaign"].insertMenu(menus["Campaign"].actions()[3], self.recent)
 
-    def _welcome(self) -> QWidget:
-        page = QWidget()
-        column = QVBoxLayout(page)
-        column.setAlignment(Qt.AlignmentFlag.AlignCenter)
-        column.setSpacing(16)
-        headline = plain_label("headline")
-        headline.setText("Coated panels, judged from their impedance spectra.")
-        words = plain_label()
-        words.setText(
-            "Open a folder of spectra, or drop it here: every reading is checked, fitted and "
-            "bounded, and the panels are followed over exposure time."
-        )
-        words.setMaximumWidth(560)
-        column.addWidget(headline)
-        column.addWidget(words)
-        row = QHBoxLayout()
-        row.setAlignment(Qt.AlignmentFlag.AlignLeft)
-        for text, call in (
-            ("Try the sample campaign", self.open_sample),
-            ("Open a folder of spectra…", self.open_folder),
-            ("Open a campaign…", self.open_campaign),
-        ):
-            button = QPushButton(text)
-            button.clicked.connect(lambda _checked=False, do=call: do())
-            row.addWidget(button)
-        column.addLayout(row)
-        return page
-
     def _work(self) -> QWidget:
         splitter = QSplitter()
         splitter.setHandleWidth(1)
@@ -136,6 +126,7 @@ class MainWindow(QMainWindow):
         self.tree.setAccessibleName("Project tree")
         self.tree.setHeaderHidden(True)
         self.tree.setUniformRowHeights(True)
+        self.tree.setIndentation(14)
         self.tree.setModel(self.model)
         self.tree.selectionModel().currentChanged.connect(self._tree_picked)
         left.addWidget(self.filter)
@@ -167,17 +158,13 @@ class MainWindow(QMainWindow):
         self.buttons.idClicked.connect(self.go)
         column.addLayout(bar)
         column.addWidget(self.stack, 1)
+        self.strip = ExposureStrip(self.desk, self.tone)
+        self.strip.picked.connect(self.desk.select)
+        column.addWidget(self.strip)
         splitter.addWidget(middle)
-        self.facts = plain_label()
-        self.facts.setAlignment(Qt.AlignmentFlag.AlignTop)
-        self.facts.setContentsMargins(12, 12, 12, 12)
-        self.facts.setAccessibleName("Facts of the selection")
-        scroll = QScrollArea()
-        scroll.setWidget(self.facts)
-        scroll.setWidgetResizable(True)
-        scroll.setFrameShape(QFrame.Shape.NoFrame)
-        splitter.addWidget(scroll)
-        splitter.setSizes([200, 830, 250])
+        self.facts = FactsView()
+        splitter.addWidget(self.facts)
+        splitter.setSizes([210, 820, 250])
         splitter.setStretchFactor(1, 1)
         return splitter
 
@@ -187,7 +174,8 @@ class MainWindow(QMainWindow):
         self.bar.setFixedWidth(180)
         self.bar.setTextVisible(False)
         self.bar.setAccessibleName("Progress of the work under way")
-        self.halt = QPushButton("stop")
+        self.halt = QPushButton("Stop")
+        self.halt.setAccessibleDescription("Give up the work under way (Esc)")
         self.halt.clicked.connect(self.desk.stop)
         self.kept = QLabel()
         for widget in (self.doing, self.bar, self.halt):
@@ -203,16 +191,23 @@ class MainWindow(QMainWindow):
         title = "coatgui"
         if file is not None:
             title = f"{file.campaign.title} · coatgui"
-            self.kept.setText("kept in its file" if self.desk.is_saved else "not saved yet")
+            self.kept.setText(f"kept in {file.path.name}" if self.desk.is_saved else _UNSAVED)
             if self.desk.is_saved:
                 self._remember(file.path)
+        else:
+            self.kept.setText("")
+            self.welcome.show_recent(self._recent_names())
         self.setWindowTitle(title)
         for entry, action in self._actions:
             name = None
             if entry.needs in ("undo", "redo"):
                 name = getattr(file, f"{entry.needs}_name", None)
                 action.setText(f"{entry.name}: {name}" if name else entry.name)
-            there = {"": True, "campaign": file is not None}.get(entry.needs, name is not None)
+            there = {
+                "": True,
+                "campaign": file is not None,
+                "work": self.desk.job is not None,
+            }.get(entry.needs, name is not None)
             action.setEnabled(there)
         self._fill_tree()
         for place in self.places:
@@ -245,11 +240,15 @@ class MainWindow(QMainWindow):
         self._show_facts()
 
     def _show_facts(self) -> None:
-        self.facts.setText(facts(self.desk.reading_assessment(), self.desk.assessment))
+        self.facts.show_facts(facts(self.desk.reading_assessment(), self.desk.assessment))
+        self.strip.refresh()
 
     def _worked(self, stage: str, done: int, total: int) -> None:
         for widget in (self.doing, self.bar, self.halt):
             widget.setVisible(bool(stage))
+        for entry, action in self._actions:
+            if entry.needs == "work":
+                action.setEnabled(bool(stage))
         if not stage:
             self._began = 0.0
             return
@@ -257,7 +256,8 @@ class MainWindow(QMainWindow):
         self._began = self._began or now
         left = ""
         if total and 0 < done < total and now - self._began > 2.0:
-            left = f", {(now - self._began) / done * (total - done):.0f} s left"
+            # An estimate from what is done so far, never to the second.
+            left = f", about {(now - self._began) / done * (total - done):.0f} s left"
         self.doing.setText(f"{stage} {done} of {total}{left}" if total > 1 else stage)
         self.bar.setMaximum(max(total, 0) if total > 1 else 0)
         self.bar.setValue(done)
@@ -267,38 +267,78 @@ class MainWindow(QMainWindow):
 
     # --- actions ---------------------------------------------------------------------------
 
+    def _may_leave(self) -> bool:
+        """Whether the campaign may be put away: asks where edits would be lost."""
+        file = self.desk.file
+        if file is None or self.desk.is_saved or not file.undo_name:
+            return True
+        answer = how_to_leave(self, file.campaign.title)
+        if answer is Leave.SAVE:
+            self.save_as()
+            return self.desk.is_saved
+        return answer is Leave.LOSE
+
+    def open_path(self, path: Path) -> None:
+        """Open a campaign file or a folder, asking first where edits would be lost."""
+        if self._may_leave():
+            self.trouble.hide()
+            self.settings.setValue("folder", str(path.parent))
+            self.desk.open(path)
+
     def open_folder(self) -> None:
-        name = QFileDialog.getExistingDirectory(self, "A folder of spectra")
+        name = QFileDialog.getExistingDirectory(self, "A folder of spectra", self._folder())
         if name:
-            self.desk.open(Path(name))
+            self.open_path(Path(name))
 
     def open_campaign(self) -> None:
-        name, _ = QFileDialog.getOpenFileName(self, "A campaign", "", _CAMPAIGNS)
+        name, _ = QFileDialog.getOpenFileName(self, "A campaign", self._folder(), _CAMPAIGNS)
         if name:
-            self.desk.open(Path(name))
+            self.open_path(Path(name))
 
     def open_sample(self) -> None:
-        self.desk.open(sample_panels())
+        if self._may_leave():
+            self.trouble.hide()
+            self.desk.open(sample_panels())
 
     def bring_in(self) -> None:
-        names, _ = QFileDialog.getOpenFileNames(self, "Spectra to bring in", "", _FILES)
+        names, _ = QFileDialog.getOpenFileNames(self, "Spectra to bring in", self._folder(), _FILES)
         if names:
             self.desk.bring_in([Path(name) for name in names])
 
+    def _folder(self) -> str:
+        """Where the last file was opened or written."""
+        return str(self.settings.value("folder", ""))
+
+    def _to_write(self, title: str, kinds: str, ending: str) -> Path | None:
+        file = self.desk.file
+        name = "campaign" if file is None else file.campaign.title.replace("/", "-")
+        path = file_to_write(self, title, kinds, Path(self._folder()) / f"{name}{ending}")
+        if path is not None:
+            self.settings.setValue("folder", str(path.parent))
+        return path
+
     def save_as(self) -> None:
-        name, _ = QFileDialog.getSaveFileName(self, "Keep the campaign as", "", _CAMPAIGNS)
-        if name:
-            self.desk.save_as(Path(name).with_suffix(".coatgui"))
+        if path := self._to_write("Keep the campaign as", _CAMPAIGNS, ".coatgui"):
+            self.desk.save_as(path)
 
     def write_workbook(self) -> None:
-        name, _ = QFileDialog.getSaveFileName(self, "Workbook", "", "Workbooks (*.xlsx)")
-        if name:
-            self.desk.export(Path(name).with_suffix(".xlsx"))
+        if path := self._to_write("Workbook", "Workbooks (*.xlsx)", ".xlsx"):
+            self.desk.export(path)
 
     def write_data(self) -> None:
-        name, _ = QFileDialog.getSaveFileName(self, "Data", "", "JSON (*.json)")
-        if name:
-            self.desk.export(Path(name).with_suffix(".json"))
+        if path := self._to_write("Data", "JSON (*.json)", ".json"):
+            self.desk.export(path)
+
+    def close_campaign(self) -> None:
+        if self._may_leave():
+            self.desk.close()
+            self._campaign_changed()
+
+    def judge_again(self) -> None:
+        self.desk.judge()
+
+    def halt_work(self) -> None:
+        self.desk.stop()
 
     def undo(self) -> None:
         self.desk.undo()
@@ -309,6 +349,9 @@ class MainWindow(QMainWindow):
     def go(self, place: int) -> None:
         self.stack.setCurrentIndex(place)
         self.buttons.button(place).setChecked(True)
+        # The reading's own place shows the same values where they lie in the coating.
+        self.facts.setVisible(not isinstance(self.places[place], ReadingPlace))
+        self.strip.setVisible(not isinstance(self.places[place], DoubtsPlace))
 
     def go_map(self) -> None:
         self.go(0)
@@ -336,14 +379,11 @@ class MainWindow(QMainWindow):
             palette.apply(application, self.tone)
         for place in self.places:
             place.paint_in(self.tone)
+        self.strip.tone = self.tone
+        self.strip.update()
 
     def show_cautions(self) -> None:
-        box = QMessageBox(self)
-        box.setWindowTitle("Cautions")
-        box.setTextFormat(Qt.TextFormat.PlainText)
-        box.setText("What the results do not say")
-        box.setInformativeText("\n\n".join(cautions()))
-        box.exec()
+        say_plainly(self, "Cautions", "What the results do not say", "\n\n".join(cautions()))
 
     # --- recent campaigns, drops, closing --------------------------------------------------
 
@@ -360,7 +400,7 @@ class MainWindow(QMainWindow):
         for name in filter(None, self._recent_names()):
             action = self.recent.addAction(Path(name).name.replace("&", "&&"))
             action.setToolTip(name)
-            action.triggered.connect(lambda _c=False, path=name: self.desk.open(Path(path)))
+            action.triggered.connect(lambda _c=False, path=name: self.open_path(Path(path)))
         if self.recent.isEmpty():
             self.recent.addAction("none yet").setEnabled(False)
 
@@ -370,20 +410,15 @@ class MainWindow(QMainWindow):
 
     def dropEvent(self, event: QDropEvent) -> None:
         paths = [Path(url.toLocalFile()) for url in event.mimeData().urls() if url.isLocalFile()]
-        if len(paths) == 1 and paths[0].suffix == ".coatgui":
-            self.desk.open(paths[0])
+        is_campaign = len(paths) == 1 and paths[0].suffix == ".coatgui"
+        if is_campaign or (len(paths) == 1 and self.desk.file is None):
+            self.open_path(paths[0])
         elif paths:
             self.desk.bring_in(paths)
 
     def closeEvent(self, event: QCloseEvent) -> None:
-        if not self.desk.is_saved and self.desk.file is not None and self.desk.file.undo_name:
-            answer = QMessageBox.question(
-                self,
-                "Not saved",
-                "This campaign was edited and never saved. Close it and lose it?",
-            )
-            if answer != QMessageBox.StandardButton.Yes:
-                event.ignore()
-                return
+        if not self._may_leave():
+            event.ignore()
+            return
         self.desk.close()
         event.accept()

@@ -24,6 +24,7 @@ class Colours:
     rust: str
     amber: str
     slate: str
+    faint: str
     dark: bool
 
 
@@ -37,13 +38,11 @@ def colours(dark: bool) -> Colours:
     return Colours(**_data()["dark" if dark else "light"], dark=dark)
 
 
-def formulation_look(place: int) -> tuple[str, str]:
+def formulation_look(place: int, dark: bool) -> tuple[str, str]:
     """Colour and marker shape of the formulation at a place in the campaign."""
     looks = _data()["formulations"]
-    return (
-        looks["colours"][place % len(looks["colours"])],
-        looks["shapes"][place % len(looks["shapes"])],
-    )
+    hues = looks["dark" if dark else "light"]
+    return hues[place % len(hues)], looks["shapes"][place % len(looks["shapes"])]
 
 
 def system_is_dark() -> bool:
@@ -67,6 +66,14 @@ def ramp(share: float, dark: bool) -> tuple[QColor, QColor]:
     ]
     luminance = 0.2126 * linear[0] + 0.7152 * linear[1] + 0.0722 * linear[2]
     return ground, QColor("#000000" if luminance > 0.179 else "#FFFFFF")
+
+
+def time_colour(share: float, dark: bool) -> QColor:
+    """Line colour for a share of the exposure time, 0 fresh to 1 longest: one hue, evenly stepped
+    from what just shows on the ground to what shows strongly."""
+    share = min(max(share, 0.0), 1.0)
+    lightness = 0.50 + 0.36 * share if dark else 0.56 - 0.38 * share
+    return QColor.fromHslF(0.585, 0.34, lightness)
 
 
 def apply(application: QApplication, tone: Colours) -> None:
@@ -93,6 +100,7 @@ def apply(application: QApplication, tone: Colours) -> None:
     disabled = QPalette.ColorGroup.Disabled
     for which in (role.Text, role.WindowText, role.ButtonText):
         palette.setColor(disabled, which, QColor(tone.second))
+    arrow = resource("icons/opens_down.svg").as_posix()
     application.setStyle("Fusion")
     application.setPalette(palette)
     application.setStyleSheet(
@@ -106,6 +114,26 @@ def apply(application: QApplication, tone: Colours) -> None:
         QMenu::item:selected, QMenuBar::item:selected {{ background: {tone.verdigris};
             color: {tone.ground}; }}
         QSplitter::handle {{ background: {tone.line}; }}
+        QMenu {{ border: 1px solid {tone.line}; padding: 4px 0; }}
+        QMenu::item {{ padding: 5px 24px 5px 16px; }}
+        QMenu::item:disabled {{ color: {tone.faint}; }}
+        QMenu::separator {{ height: 1px; background: {tone.line}; margin: 4px 12px; }}
+        QComboBox::drop-down {{ border: 0; width: 22px; }}
+        QComboBox::down-arrow {{ image: url("{arrow}"); width: 14px; height: 14px; }}
+        QComboBox QAbstractItemView {{ background: {tone.ground}; color: {tone.ink};
+            border: 1px solid {tone.line}; selection-background-color: {tone.verdigris};
+            selection-color: {tone.ground}; outline: 0; }}
+        QToolTip {{ background: {tone.panel}; color: {tone.ink}; border: 1px solid {tone.line};
+            padding: 4px; }}
+        QProgressBar {{ background: {tone.ground}; border: 1px solid {tone.line};
+            border-radius: 3px; height: 10px; }}
+        QProgressBar::chunk {{ background: {tone.verdigris}; }}
+        QScrollBar:vertical {{ background: transparent; width: 10px; margin: 0; }}
+        QScrollBar:horizontal {{ background: transparent; height: 10px; margin: 0; }}
+        QScrollBar::handle {{ background: {tone.faint}; border-radius: 3px; margin: 2px;
+            min-height: 24px; min-width: 24px; }}
+        QScrollBar::add-line, QScrollBar::sub-line {{ width: 0; height: 0; }}
+        QScrollBar::add-page, QScrollBar::sub-page {{ background: transparent; }}
         QLineEdit, QComboBox {{ background: {tone.ground}; border: 1px solid {tone.line};
             border-radius: 3px; padding: 3px 6px; }}
         QPushButton {{ background: {tone.panel}; border: 1px solid {tone.line};
@@ -121,6 +149,20 @@ def apply(application: QApplication, tone: Colours) -> None:
         QLabel#headline {{ font-size: 20px; color: {tone.ink}; }}
         QLabel#question {{ font-size: 16px; color: {tone.ink}; }}
         QLabel#small {{ font-size: 11px; color: {tone.second}; }}
+        QLabel#fact_title {{ font-size: 16px; }}
+        QLabel#fact_name {{ font-size: 11px; color: {tone.second}; }}
+        QLabel#fact_note, QLabel#fact_caution {{ font-size: 11px; color: {tone.second}; }}
+        QPushButton#first {{ background: {tone.verdigris}; color: {tone.ground};
+            border-color: {tone.verdigris}; }}
+        QPushButton#first:focus {{ border: 2px solid {tone.ink}; padding: 5px 13px; }}
+        QPushButton#link {{ background: transparent; border: 1px solid transparent;
+            color: {tone.verdigris}; text-align: left; padding: 3px 6px; }}
+        QPushButton#link:focus, QPushButton#link:hover {{ border-color: {tone.verdigris}; }}
+        QPushButton:hover {{ border-color: {tone.second}; }}
+        QPushButton:disabled {{ color: {tone.faint}; }}
+        QFrame#trouble {{ background: {tone.panel}; border: 0;
+            border-bottom: 1px solid {tone.line}; }}
+        QFrame#trouble QLabel {{ color: {tone.rust}; }}
         QFrame#side {{ background: {tone.panel}; }}
         """
     )

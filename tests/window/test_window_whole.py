@@ -106,7 +106,7 @@ def test_a_folder_that_is_none_is_answered_in_a_sentence(
     window: MainWindow, wait: Wait, tmp_path: Path
 ) -> None:
     told: list[str] = []
-    window.desk.told.connect(told.append)
+    window.desk.failed.connect(told.append)
     window.desk.open(tmp_path)
     wait(lambda: window.desk.job is None)
     assert any("holds no file" in sentence for sentence in told)
@@ -114,6 +114,8 @@ def test_a_folder_that_is_none_is_answered_in_a_sentence(
     window.desk.open(tmp_path / "x.coatgui")
     wait(lambda: window.desk.job is None)
     assert len(told) == 2
+    assert window.trouble.isVisible()
+    assert "x.coatgui" in window.trouble.words.text()
     assert window.desk.file is None
 
 

@@ -6,20 +6,25 @@ from typing import Any
 
 import numpy as np
 import pyqtgraph as pg
+from PySide6.QtCore import Qt, QTimer
 from PySide6.QtWidgets import QComboBox, QHBoxLayout
 
-from coatgui.records import Assessment, Bound
+from coatgui.records import Assessment, Bound, FormulationAssessment
 from coatgui.window.axis import DecadeAxis, Plot
 from coatgui.window.desk import Desk
+from coatgui.window.legend import Legend
 from coatgui.window.palette import Colours, formulation_look
 from coatgui.window.places.map_place import QUANTITIES, amount
 from coatgui.window.places.place import Place, plain_label
 
 _TIMES = {
-    "exposure time, log": "log",
-    "exposure time, √t": "root",
-    "exposure time, linear": "plain",
+    "Exposure time, log": "log",
+    "Exposure time, √t": "root",
+    "Exposure time, linear": "plain",
 }
+_AXIS_WIDTH = 108
+# Labels of the time axis stand at least this share of its width apart.
+_APART = 1 / 16
 
 
 class CoursePlace(Place):
@@ -34,17 +39,26 @@ class CoursePlace(Place):
         self.times = QComboBox()
         self.times.setAccessibleName("Scale of exposure time")
         self.times.addItems(list(_TIMES))
-        self.legend = plain_label("small")
+        self.explained = plain_label("small")
         for choice in (self.chooser, self.times):
             choice.currentIndexChanged.connect(self.show_campaign)
             bar.addWidget(choice)
-        bar.addWidget(self.legend, 1)
+        bar.addWidget(self.explained, 1)
         self.column.addLayout(bar)
+        self.legend = Legend(tone)
+        self.column.addWidget(self.legend)
         self.course = Plot("Course of the quantity", ("", None), ("", "Ω cm²"))
         self.water = Plot("Course of the water uptake", ("", None), ("water / vol-%", None))
         self.water.setXLink(self.course)
+        for plot in (self.course, self.water):
+            plot.getPlotItem().getAxis("left").setWidth(_AXIS_WIDTH)
         self.column.addWidget(self.course, 3)
         self.column.addWidget(self.water, 2)
+        self._own = {plot: pg.PlotCurveItem() for plot in (self.course, self.water)}
+        self._here = {plot: pg.ScatterPlotItem() for plot in (self.course, self.water)}
+
+    def _code(self) -> str:
+        return QUANTITIES[self.chooser.currentText()]
 
     def _across(self, hours: np.ndarray) -> np.ndarray:
         scale = _TIMES[self.times.currentText()]
@@ -53,97 +67,154 @@ class CoursePlace(Place):
         return np.asarray(np.sqrt(hours) if scale == "root" else hours)
 
     def show_campaign(self) -> None:
-        assessment = self.desk.assessment
-        code = QUANTITIES[self.chooser.currentText()]
+        assessment, code = self.desk.assessment, self._code()
         for plot in (self.course, self.water):
             plot.clear()
             plot.paint_in(self.tone.ground, self.tone.second, self.tone.line)
-        unit = "F/cm²" if code == "coating_capacitance" else "Ω cm²"
         axis = self.course.getPlotItem().getAxis("left")
         if isinstance(axis, DecadeAxis):
-            axis.unit = unit
+            axis.unit = "F/cm²" if code == "coating_capacitance" else "Ω cm²"
             axis.setLabel(self.chooser.currentText(), color=self.tone.second)
         if assessment is None:
-            self.legend.setText("The course appears when the readings have been judged.")
+            self.explained.setText(self.desk.unjudged_words())
+            self.legend.show_names([], self.tone)
             return
-        shapes = {"o": "●", "s": "■", "t": "▼", "d": "◆", "t1": "▲", "p": "⬟"}
-        names = [
-            f"{shapes[formulation_look(i)[1]]} {f.formulation}"
-            for i, f in enumerate(assessment.formulations)
-        ]
-        self.legend.setText("   ".join(names) + "   band: 95 % limits of the mean; ↑ only at least")
-        self._draw(self.course, assessment, code, logarithm=True)
-        self._draw(self.water, assessment, "water_uptake", logarithm=False)
+        self.explained.setText(
+            "Thick: mean of the panels with its 95 % band. Thin: each panel. ↑ at least, ↓ at most."
+        )
+        self.legend.show_names([f.formulation for f in assessment.formulations], self.tone)
+        for plot, of, logarithm in (
+            (self.course, code, True),
+            (self.water, "water_uptake", False),
+        ):
+            for place, formulation in enumerate(assessment.formulations):
+                self._draw(plot, assessment, formulation, place, of, logarithm)
+            plot.addItem(self._own[plot])
+            plot.addItem(self._here[plot], ignoreBounds=True)
+        self._limits(assessment, code)
         self._ticks(assessment)
+        self.show_selection()
         for plot in (self.course, self.water):
-            plot.autoRange()
+            plot.autoRange(padding=0.04)
 
     def _ticks(self, assessment: Assessment) -> None:
-        hours = np.array(sorted({r.exposure_h for r in assessment.readings}))
-        places = self._across(hours)
-        kept: list[tuple[float, str]] = []
-        width = max(float(np.ptp(places)), 1e-9)
-        for x, h in zip(places, hours, strict=True):
-            if not kept or x - kept[-1][0] > width / 18:
-                kept.append((float(x), f"{h:g} h"))
+        """Label the inspections: the last and the first always, others where there is room."""
+        hours = sorted({r.exposure_h for r in assessment.readings})
+        places = [float(x) for x in self._across(np.array(hours))]
+        if not places:
+            return
+        width = max(places[-1] - places[0], 1e-9)
+        kept: dict[float, str] = {}
+        for at in (len(hours) - 1, 0, *range(len(hours) - 2, 0, -1)):
+            if all(abs(places[at] - other) > width * _APART for other in kept):
+                kept[places[at]] = f"{hours[at]:g} h"
         for plot in (self.course, self.water):
-            plot.getPlotItem().getAxis("bottom").setTicks([kept])
+            plot.getPlotItem().getAxis("bottom").setTicks([sorted(kept.items())])
 
-    def _draw(self, plot: Plot, assessment: Assessment, code: str, *, logarithm: bool) -> None:
-        for i, formulation in enumerate(assessment.formulations):
-            colour, shape = formulation_look(i)
-            faint = pg.mkColor(colour)
-            faint.setAlpha(110)
-            panels = [p for p in assessment.panels if p.formulation == formulation.formulation]
-            for panel in panels:
-                self._panel(plot, assessment, panel.panel_id, code, faint, shape, logarithm)
-            course = next((c for c in formulation.courses if c.code == code), None)
-            if course is None:
+    def _limits(self, assessment: Assessment, code: str) -> None:
+        criteria = {c.criterion for panel in assessment.panels for c in panel.limit_crossings}
+        for criterion in criteria:
+            if code != f"modulus_{criterion.frequency_hz:g}":
                 continue
-            points = [p for p in course.points if p.quantity.value is not None]
-            if not points:
-                continue
-            x = self._across(np.array([p.exposure_h for p in points]))
-            mean = np.array([p.quantity.value for p in points], dtype=float)
-            low = np.array([p.quantity.low or p.quantity.value for p in points], dtype=float)
-            high = np.array([p.quantity.high or p.quantity.value for p in points], dtype=float)
-            if logarithm:
-                mean, low, high = (np.log10(np.maximum(v, 1e-30)) for v in (mean, low, high))
-            edge = pg.mkPen(colour, width=0)
-            lower, upper = pg.PlotCurveItem(x, low, pen=edge), pg.PlotCurveItem(x, high, pen=edge)
-            shade = pg.mkColor(colour)
-            shade.setAlpha(38)
-            plot.addItem(pg.FillBetweenItem(lower, upper, brush=shade))
-            plot.plot(x, mean, pen=pg.mkPen(colour, width=2))
+            line = pg.InfiniteLine(
+                float(np.log10(criterion.ohm_cm2)),
+                angle=0,
+                pen=pg.mkPen(self.tone.rust, width=1, style=Qt.PenStyle.DashLine),
+                label=criterion.name,
+                labelOpts={"position": 0.06, "color": self.tone.rust, "anchors": [(0, 1), (0, 1)]},
+            )
+            self.course.addItem(line, ignoreBounds=True)
 
-    def _panel(
+    def _draw(
         self,
         plot: Plot,
         assessment: Assessment,
-        panel_id: str,
+        formulation: FormulationAssessment,
+        place: int,
         code: str,
-        colour: Any,
-        shape: str,
         logarithm: bool,
     ) -> None:
-        own = [r for r in assessment.readings if r.panel_id == panel_id and r.counts]
-        found = [(r, q) for r in own if (q := amount(r, code)) is not None and q.value]
-        if not found:
+        colour, shape = formulation_look(place, self.tone.dark)
+        for panel in assessment.panels:
+            if panel.formulation == formulation.formulation:
+                self._panel(plot, panel.panel_id, code, colour, shape, logarithm)
+        course = next((c for c in formulation.courses if c.code == code), None)
+        points = [p for p in course.points if p.quantity.value is not None] if course else []
+        if not points:
             return
-        x = self._across(np.array([r.exposure_h for r, _ in found]))
-        y = np.array([q.value for _, q in found], dtype=float)
-        y = np.log10(y) if logarithm else y
-        bounded = np.array([q.bound is Bound.AT_LEAST for _, q in found])
-        ids = np.array([r.reading_id for r, _ in found], dtype=object)
-        plot.plot(x, y, pen=pg.mkPen(colour, width=1))
-        for mask, symbol in ((~bounded, shape), (bounded, "arrow_up")):
-            if mask.any():
-                marks = plot.plot(
-                    x[mask], y[mask], pen=None, symbol=symbol, symbolSize=8,
-                    symbolPen=pg.mkPen(colour), symbolBrush=None, data=ids[mask],
-                )  # fmt: skip
-                marks.sigPointsClicked.connect(self._clicked)
+        x = self._across(np.array([p.exposure_h for p in points]))
+        mean = np.array([p.quantity.value for p in points], dtype=float)
+        # A limit that the data do not hold leaves the band at the mean.
+        low = np.array(
+            [p.quantity.value if p.quantity.low is None else p.quantity.low for p in points]
+        )
+        high = np.array(
+            [p.quantity.value if p.quantity.high is None else p.quantity.high for p in points]
+        )
+        if logarithm:
+            mean, low, high = (
+                np.log10(np.maximum(v.astype(float), 1e-30)) for v in (mean, low, high)
+            )
+        edge = pg.mkPen(None)
+        lower, upper = pg.PlotCurveItem(x, low, pen=edge), pg.PlotCurveItem(x, high, pen=edge)
+        shade = pg.mkColor(colour)
+        shade.setAlpha(34)
+        plot.addItem(lower)
+        plot.addItem(upper)
+        plot.addItem(pg.FillBetweenItem(lower, upper, brush=shade))
+        plot.plot(x, mean, pen=pg.mkPen(colour, width=2.4))
 
-    def _clicked(self, _item: Any, points: Any) -> None:
+    def _series(
+        self, panel_id: str, code: str, logarithm: bool
+    ) -> tuple[np.ndarray, np.ndarray, list[Bound], list[str]]:
+        """Across, up, kinds of bound and ids of a panel's readings that count."""
+        assessment = self.desk.assessment
+        own = [r for r in assessment.readings if r.panel_id == panel_id] if assessment else []
+        found = [
+            (r, q.value, q.bound)
+            for r in own
+            if r.counts and (q := amount(r, code)) is not None and q.value is not None
+            if not logarithm or q.value > 0
+        ]
+        x = self._across(np.array([r.exposure_h for r, _, _ in found], dtype=float))
+        y = np.array([value for _, value, _ in found], dtype=float)
+        y = np.log10(y) if logarithm else y
+        return x, y, [bound for _, _, bound in found], [r.reading_id for r, _, _ in found]
+
+    def _panel(
+        self, plot: Plot, panel_id: str, code: str, colour: Any, shape: str, logarithm: bool
+    ) -> None:
+        x, y, bounds, ids = self._series(panel_id, code, logarithm)
+        if not ids:
+            return
+        faint = pg.mkColor(colour)
+        faint.setAlpha(150)
+        plot.plot(x, y, pen=pg.mkPen(faint, width=1))
+        symbols = {Bound.AT_LEAST: "arrow_up", Bound.AT_MOST: "arrow_down"}
+        marks = pg.ScatterPlotItem(
+            x, y, symbol=[symbols.get(bound, shape) for bound in bounds], size=8,
+            pen=pg.mkPen(colour), brush=None, data=ids,
+        )  # fmt: skip
+        marks.sigClicked.connect(self._clicked)
+        plot.addItem(marks)
+
+    def show_selection(self) -> None:
+        """The picked panel's line stands out, and the picked reading on it."""
+        reading = self.desk.reading()
+        for plot, code, logarithm in (
+            (self.course, self._code(), True),
+            (self.water, "water_uptake", False),
+        ):
+            panel_id = reading.panel_id if reading else ""
+            x, y, _, ids = self._series(panel_id, code, logarithm)
+            self._own[plot].setData(x, y, pen=pg.mkPen(self.tone.ink, width=1.2))
+            here = [i for i, key in enumerate(ids) if key == self.desk.selection]
+            self._here[plot].setData(
+                x[here], y[here], symbol="o", size=15, brush=None,
+                pen=pg.mkPen(self.tone.verdigris, width=2),
+            )  # fmt: skip
+
+    def _clicked(self, _item: Any, points: Any, _event: Any = None) -> None:
         if len(points):
-            self.desk.select(str(points[0].data()))
+            picked = str(points[0].data())
+            QTimer.singleShot(0, self, lambda: self.desk.select(picked))

@@ -49,7 +49,7 @@ class DoubtsPlace(Place):
         self.counted.setText(
             f"{number} findings on readings, {refused} files refused. Pick one to see its spectrum."
             if assessment
-            else "The readings are being judged …"
+            else self.desk.unjudged_words()
         )
 
     def _picked(self, item: QListWidgetItem) -> None:

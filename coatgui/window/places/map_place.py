@@ -250,9 +250,7 @@ class MapPlace(Place):
         if campaign is None:
             return
         known = {r.reading_id: r for r in assessment.readings} if assessment else {}
-        self.headline.setText(
-            assessment.headline if assessment else "The readings are being judged …"
-        )
+        self.headline.setText(assessment.headline if assessment else self.desk.unjudged_words())
         self.ranking.setText(assessment.ranking_text if assessment else "")
         unit = {
             "water_uptake": "Numbers in vol-%",

@@ -1,19 +1,18 @@
-"""Reading: what one spectrum says. Plots left, the fitted parameters right, findings below."""
+"""Reading: what one spectrum says. Plots left, the section and the parameters right, the findings
+below."""
 
 from __future__ import annotations
 
-from typing import Any
-
 import numpy as np
-import pyqtgraph as pg
-from PySide6.QtCore import Qt
+from PySide6.QtCore import Qt, QTimer
+from PySide6.QtGui import QResizeEvent
 from PySide6.QtWidgets import (
     QAbstractItemView,
     QComboBox,
-    QGridLayout,
+    QFrame,
     QHBoxLayout,
     QHeaderView,
-    QLabel,
+    QScrollArea,
     QTableWidget,
     QTableWidgetItem,
     QVBoxLayout,
@@ -22,13 +21,19 @@ from PySide6.QtWidgets import (
 from coatgui.campaign import operations
 from coatgui.circuits import catalogue
 from coatgui.records import Reading, ReadingAssessment
-from coatgui.window.axis import Plot
 from coatgui.window.desk import Desk
-from coatgui.window.numbers import WORDS, prefixed, said
+from coatgui.window.numbers import WORDS, said
 from coatgui.window.palette import Colours
 from coatgui.window.places.place import Place, plain_label
+from coatgui.window.section import SectionView, section_of
+from coatgui.window.spectrum_plots import Drawn, SpectrumPlots
 
+_MOST_LINES = 5
 _AUTOMATIC = "Model chosen by the data"
+_MARKS = {"note": "◦", "doubt": "▲", "reject": "■"}
+_HINT = "Click a point to leave it out or take it back; drag with Shift for several."
+ALONE, OTHER_TIMES, REPLICATES = range(3)
+_OVERLAYS = ("This reading alone", "With the panel's other times", "With its replicates")
 
 
 class ReadingPlace(Place):
@@ -41,164 +46,188 @@ class ReadingPlace(Place):
         row = QHBoxLayout()
         row.setSpacing(12)
         self.column.addLayout(row, 1)
-        self.modulus = Plot(
-            "Bode plot of the modulus", ("frequency", "Hz"), ("|Z| of the specimen", "Ω")
-        )
-        self.phase = Plot("Bode plot of the phase", ("frequency", "Hz"), ("phase / °", None))
-        self.plane = Plot("Complex plane", ("Z′", "Ω"), ("−Z″", "Ω"), decades=False)
-        self.plane.setAspectLocked(True)
-        self.residual = Plot("Residuals", ("frequency", "Hz"), ("residual / %", None))
-        self.phase.setXLink(self.modulus)
-        self.residual.setXLink(self.modulus)
-        grid = QGridLayout()
-        grid.setSpacing(6)
-        for place, plot in enumerate((self.modulus, self.plane, self.phase, self.residual)):
-            grid.addWidget(plot, place // 2, place % 2)
-        row.addLayout(grid, 4)
+        left = QVBoxLayout()
+        left.setSpacing(4)
+        self.plots = SpectrumPlots()
+        self.plots.toggled.connect(self._later)
+        self.plots.pointed.connect(self._pointed)
+        left.addWidget(self.plots, 1)
+        under = QHBoxLayout()
+        self.overlay = QComboBox()
+        self.overlay.setAccessibleName("Spectra drawn with this one")
+        self.overlay.addItems(list(_OVERLAYS))
+        self.overlay.currentIndexChanged.connect(self.show_selection)
+        self.read_out = plain_label("small")
+        self.read_out.setText(_HINT)
+        under.addWidget(self.overlay)
+        under.addWidget(self.read_out, 1)
+        left.addLayout(under)
+        row.addLayout(left, 1)
+        row.addLayout(self._side(tone))
+        self.findings = plain_label()
+        self.findings.setAccessibleName("Findings on this reading")
+        area = QScrollArea()
+        area.setWidget(self.findings)
+        area.setWidgetResizable(True)
+        area.setFrameShape(QFrame.Shape.NoFrame)
+        area.setHorizontalScrollBarPolicy(Qt.ScrollBarPolicy.ScrollBarAlwaysOff)
+        self.findings_area = area
+        self.column.addWidget(area)
+        self.toggling: list[int] = []
+
+    def _side(self, tone: Colours) -> QVBoxLayout:
         side = QVBoxLayout()
+        side.setSpacing(8)
         self.model = QComboBox()
         self.model.setAccessibleName("Coating model of this reading")
         self.model.addItem(_AUTOMATIC, "")
         for name, model in catalogue().items():
             self.model.addItem(model.name, name)
+            self.model.setItemData(
+                self.model.count() - 1, model.meaning, Qt.ItemDataRole.ToolTipRole
+            )
         self.model.activated.connect(self._pin)
         side.addWidget(self.model)
+        self.section = SectionView(tone)
+        side.addWidget(self.section, 3)
         self.table = QTableWidget(0, 2)
         self.table.setAccessibleName("Fitted parameters with limits")
-        self.table.setHorizontalHeaderLabels(["", "value (95 % limits)"])
+        self.table.setHorizontalHeaderLabels(["parameter", "value (95 % limits)"])
         self.table.verticalHeader().hide()
+        self.table.verticalHeader().setMinimumSectionSize(18)
+        self.table.verticalHeader().setDefaultSectionSize(21)
         self.table.setEditTriggers(QAbstractItemView.EditTrigger.NoEditTriggers)
+        self.table.setSelectionBehavior(QAbstractItemView.SelectionBehavior.SelectRows)
         self.table.setShowGrid(False)
+        self.table.setHorizontalScrollBarPolicy(Qt.ScrollBarPolicy.ScrollBarAlwaysOff)
         header = self.table.horizontalHeader()
+        header.setDefaultAlignment(Qt.AlignmentFlag.AlignLeft)
         header.setSectionResizeMode(QHeaderView.ResizeMode.ResizeToContents)
         header.setStretchLastSection(True)
-        self.table.setWordWrap(True)
-        side.addWidget(self.table, 1)
-        self.findings = plain_label()
-        side.addWidget(self.findings)
-        row.addLayout(side, 2)
-        self.read_out = QLabel()
-        self.read_out.setObjectName("small")
-        self.column.addWidget(self.read_out)
-        self.cursors = [
-            pg.InfiniteLine(angle=90, movable=False)
-            for _ in (self.modulus, self.phase, self.residual)
-        ]
-        self.modulus.scene().sigMouseMoved.connect(self._moved)
-        self._points: dict[Any, np.ndarray] = {}
+        header.setHighlightSections(False)
+        self.table.setFixedWidth(330)
+        side.addWidget(self.table, 2)
+        return side
 
     def show_campaign(self) -> None:
         self.show_selection()
 
     def show_selection(self) -> None:
         reading, known = self.desk.reading(), self.desk.reading_assessment()
-        for plot in (self.modulus, self.phase, self.plane, self.residual):
-            plot.clear()
-            plot.paint_in(self.tone.ground, self.tone.second, self.tone.line)
+        panel = None
+        if reading is not None and self.desk.campaign is not None:
+            panel = next(
+                (p for p in self.desk.campaign.panels if p.panel_id == reading.panel_id), None
+            )
+        self.section.show_section(section_of(known, panel), self.tone)
+        self.section.setVisible(self.section.section is not None)
         self.table.setRowCount(0)
-        self.findings.setText("")
-        if reading is None:
-            self.about.setText("No reading is picked: pick one in the tree or on the map.")
-            return
         self._say(reading, known)
-        self._draw(reading, known)
+        if reading is None:
+            self.plots.show_spectrum(None, (), self.tone)
+            return
+        self.plots.show_spectrum(drawn(reading, known), self._overlaid(reading), self.tone)
         self.model.setCurrentIndex(max(self.model.findData(reading.pinned_model), 0))
         if known is not None:
             self._tabulate(known)
 
-    def _say(self, reading: Reading, known: ReadingAssessment | None) -> None:
-        if known is None:
-            self.about.setText(f"{reading.exposure_h:g} h: not judged yet.")
+    def _overlaid(self, reading: Reading) -> list[tuple[Drawn, float]]:
+        """The other spectra to draw, each with its share of the exposure time."""
+        campaign, assessment = self.desk.campaign, self.desk.assessment
+        if campaign is None or self.overlay.currentIndex() == ALONE:
+            return []
+        if self.overlay.currentIndex() == OTHER_TIMES:
+            found = [r for r in campaign.readings if r.panel_id == reading.panel_id]
+        else:
+            own = {p.panel_id: p.formulation_id for p in campaign.panels}
+            found = [
+                r
+                for r in campaign.readings
+                if own.get(r.panel_id) == own.get(reading.panel_id)
+                and r.exposure_h == reading.exposure_h
+            ]
+        times = sorted({r.exposure_h for r in found})
+        return [
+            (
+                drawn(r, assessment.reading(r.reading_id) if assessment else None),
+                times.index(r.exposure_h) / max(len(times) - 1, 1),
+            )
+            for r in found
+            if r is not reading
+        ]
+
+    def _say(self, reading: Reading | None, known: ReadingAssessment | None) -> None:
+        self.findings.setText("")
+        self.findings_area.hide()
+        if reading is None:
+            self.about.setText("No reading is picked: pick one in the tree or on the map.")
             return
-        text = f"{known.panel} of {known.formulation} at {known.exposure_h:g} h: "
+        if known is None:
+            self.about.setText(self.desk.unjudged_words())
+            return
+        text = f"{known.panel} of {known.formulation} after {known.exposure_h:g} h: "
         if known.fit is None:
-            text += "not fitted; the findings say why."
+            text += "not fitted; the findings below say why."
         else:
             text += (
                 f"{known.fit.model_name}, residual {known.fit.residual_rms_percent:.2f} %, "
                 f"{known.points_used} of {known.points_read} points used; {known.fit.message}."
             )
+        lines = [f"{_MARKS[f.severity.value]}  {f.text}" for f in known.findings]
+        if not lines:
+            text += " Nothing speaks against this reading."
         self.about.setText(text)
-        marks = {"note": "◦", "doubt": "▲", "reject": "■"}
-        lines = [f"{marks[f.severity.value]} {f.text}" for f in known.findings]
-        self.findings.setText("\n".join(lines[:6]) or "◦ Nothing to say against this reading.")
+        self.findings.setText("\n".join(lines))
+        self.findings_area.setVisible(bool(lines))
+        self._fit_findings()
 
-    def _draw(self, reading: Reading, known: ReadingAssessment | None) -> None:
-        tone, z = self.tone, reading.spectrum.impedance_ohm
-        x = np.log10(reading.spectrum.frequency_hz)
-        fit = known.fit if known else None
-        used = fit.used if fit is not None else np.ones(x.size, dtype=bool)
-        series = {
-            self.modulus: (x, np.log10(np.abs(z))),
-            self.phase: (x, np.degrees(np.angle(z))),
-            self.plane: (z.real, -z.imag),
-        }
-        if fit is not None:
-            model = fit.modelled_ohm
-            pen = pg.mkPen(tone.verdigris, width=1.6)
-            self.modulus.plot(x, np.log10(np.abs(model)), pen=pen)
-            self.phase.plot(x, np.degrees(np.angle(model)), pen=pen)
-            self.plane.plot(model.real, -model.imag, pen=pen)
-            off = 100.0 * (z - model) / np.abs(z)
-            self.residual.plot([x.min(), x.max()], [0, 0], pen=pg.mkPen(tone.line))
-            for part, symbol, colour in ((off.real, "o", tone.slate), (off.imag, "t", tone.amber)):
-                self.residual.plot(
-                    x[used], part[used], pen=None, symbol=symbol, symbolSize=5,
-                    symbolPen=pg.mkPen(colour), symbolBrush=None,
-                )  # fmt: skip
-        for plot, (across, up) in series.items():
-            shown = plot.plot(
-                across[used], up[used], pen=None, symbol="o", symbolSize=7,
-                symbolPen=pg.mkPen(tone.slate, width=1.2), symbolBrush=None,
-                data=np.nonzero(used)[0],
-            )  # fmt: skip
-            shown.sigPointsClicked.connect(self._clicked)
-            if not used.all():
-                crosses = plot.plot(
-                    across[~used], up[~used], pen=None, symbol="x", symbolSize=7,
-                    symbolPen=pg.mkPen(tone.second), symbolBrush=None,
-                    data=np.nonzero(~used)[0],
-                )  # fmt: skip
-                crosses.sigPointsClicked.connect(self._clicked)
-        for plot, cursor in zip(
-            (self.modulus, self.phase, self.residual), self.cursors, strict=True
-        ):
-            cursor.setPen(pg.mkPen(tone.second, width=1))
-            cursor.hide()
-            plot.addItem(cursor, ignoreBounds=True)
-        for plot in (self.modulus, self.phase, self.plane, self.residual):
-            plot.autoRange()
+    def _fit_findings(self) -> None:
+        """As high as the findings need, up to some whole lines; the rest is scrolled to."""
+        line = self.findings.fontMetrics().lineSpacing()
+        needed = self.findings.heightForWidth(max(self.width() - 40, 200))
+        self.findings_area.setFixedHeight(min(needed, _MOST_LINES * line) + 2)
+
+    def resizeEvent(self, event: QResizeEvent) -> None:
+        super().resizeEvent(event)
+        self._fit_findings()
 
     def _tabulate(self, known: ReadingAssessment) -> None:
         rows = [(p.symbol, p.meaning, p.quantity) for p in known.parameters]
-        for name, quantity in (
-            ("C film", known.coating_capacitance),
-            ("|Z| 0.1 Hz", q.quantity if (q := known.modulus_at(0.1)) else None),
-            ("water", known.water_uptake.quantity if known.water_uptake else None),
-        ):
-            if quantity is not None:
-                rows.append((name, quantity.method, quantity))
+        rows += [
+            (f"|Z|·A {m.frequency_hz:g} Hz", m.status.value.replace("_", " "), m.quantity)
+            for m in known.modulus
+            if m.quantity is not None
+        ]
         self.table.setRowCount(len(rows))
         for i, (symbol, meaning, quantity) in enumerate(rows):
-            cells = (symbol, said(quantity))
-            for j, text in enumerate(cells):
+            for j, text in enumerate((symbol, said(quantity))):
                 item = QTableWidgetItem(text)
                 item.setToolTip(f"{meaning} ({WORDS[quantity.bound]}). {quantity.method}")
                 self.table.setItem(i, j, item)
-        self.table.resizeRowsToContents()
 
-    def _clicked(self, _item: Any, points: Any) -> None:
+    def _pointed(self, words: str) -> None:
+        self.read_out.setText(words or _HINT)
+
+    # --- edits -----------------------------------------------------------------------------
+
+    def _later(self, places: list[int]) -> None:
+        """Edit when the click has been delivered, for the edit draws the plots anew."""
+        self.toggling = places
+        QTimer.singleShot(0, self, self._toggle)
+
+    def _toggle(self) -> None:
+        places, self.toggling = self.toggling, []
         reading, known = self.desk.reading(), self.desk.reading_assessment()
-        if reading is None or not len(points):
+        if reading is None or not places:
             return
-        place = int(points[0].data())
-        fit = known.fit if known else None
-        left_out = fit is not None and not fit.used[place]
-        if left_out:
-            self.desk.edit(operations.take_back_points, reading.reading_id, [place])
+        used = drawn(reading, known).used
+        if any(used[place] for place in places):
+            chosen = [place for place in places if used[place]]
+            self.desk.edit(
+                operations.leave_out_points, reading.reading_id, chosen, "left out by hand"
+            )
         else:
-            reason = "left out by hand"
-            self.desk.edit(operations.leave_out_points, reading.reading_id, [place], reason)
+            self.desk.edit(operations.take_back_points, reading.reading_id, places)
 
     def _pin(self, index: int) -> None:
         reading = self.desk.reading()
@@ -206,20 +235,18 @@ class ReadingPlace(Place):
         if reading is not None and name != reading.pinned_model:
             self.desk.edit(operations.pin_model, [reading.reading_id], name)
 
-    def _moved(self, position: Any) -> None:
-        reading = self.desk.reading()
-        if reading is None:
-            return
-        x = float(self.modulus.getPlotItem().vb.mapSceneToView(position).x())
-        logs = np.log10(reading.spectrum.frequency_hz)
-        place = int(np.abs(logs - x).argmin())
-        for cursor in self.cursors:
-            cursor.setValue(float(logs[place]))
-            cursor.show()
-        z = reading.spectrum.impedance_ohm[place]
-        frequency = float(reading.spectrum.frequency_hz[place])
-        self.read_out.setText(
-            f"{prefixed(frequency, 'Hz')}   |Z| {prefixed(float(abs(z)), 'Ω')}   "
-            f"phase {float(np.degrees(np.angle(z))):.1f}°"
-        )
-        self.read_out.setTextFormat(Qt.TextFormat.PlainText)
+
+def drawn(reading: Reading, known: ReadingAssessment | None) -> Drawn:
+    """A reading as the plots want it. Points that a person has just left out or taken back stand
+    so before the new fit is there."""
+    fit = known.fit if known else None
+    if fit is not None:
+        used = np.array(fit.used)
+    else:
+        used = np.ones(len(reading.spectrum), dtype=bool)
+        for point in known.left_out if known else ():
+            used[reading.spectrum.frequency_hz == point.frequency_hz] = False
+    for place, _ in reading.left_out:
+        used[place] = False
+    used[list(reading.kept_in)] = True
+    return Drawn(reading.spectrum, fit, used)
