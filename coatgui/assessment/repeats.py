@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from coatgui.assessment.series import Drawn
+from coatgui.assessment.drawn import Drawn
 from coatgui.fitting import scatter_of_repeats
 from coatgui.records import Finding, FloatArray, Severity
 

@@ -271,6 +271,8 @@ class Desk(QObject):
             return
         if change is not None and change.kinds:
             self._changed(words.format(change.name))
+        elif change is not None:
+            self.told.emit(change.name)
 
     def _changed(self, words: str) -> None:
         self._stale = True
