@@ -19,6 +19,8 @@ from coatgui.assessment.courses import inspections
 from coatgui.assessment.drawn import Drawn
 from coatgui.assessment.events import replicate_noise
 from coatgui.assessment.film import film_facts
+from coatgui.assessment.leads import leads_of, put_back, take_away
+from coatgui.assessment.own_models import known_pins, own_models
 from coatgui.assessment.ranking import ranking
 from coatgui.assessment.readings import draw_readings, reading_assessment, start_reading
 from coatgui.assessment.repeats import deviations
@@ -66,12 +68,15 @@ def assess(
         settings=settings,
         area_cm2=areas,
         open_lead=campaign.open_lead,
+        input_resistance_ohm=settings.input_resistance_ohm,
+        input_capacitance_f=settings.input_capacitance_f,
         progress=progress,
     )
     drawn = [
         start_reading(reading, panels[reading.panel_id], check, settings.temperature_c)
         for reading, check in zip(readings, checks, strict=True)
     ]
+    take_away(drawn, leads_of(campaign))
     for d, fit in zip(drawn, _fits(drawn, campaign, progress, spread, cache), strict=True):
         d.fit = fit
     return conclude(campaign, drawn, progress)
@@ -85,12 +90,13 @@ def conclude(campaign: Campaign, drawn: Sequence[Drawn], progress: Progress) -> 
     watched_hz = (*settings.modulus_frequencies_hz, _USUAL_FREQUENCY_HZ)[0]
     panels = {panel.panel_id: panel for panel in campaign.panels}
     names = {f.formulation_id: f.name for f in campaign.formulations}
+    leads = leads_of(campaign)
     by_panel: dict[str, list[Drawn]] = {panel_id: [] for panel_id in panels}
     for d in drawn:
         by_panel[d.reading.panel_id].append(d)
     for done, panel in enumerate(campaign.panels):
         progress.at("Drawing conclusions", done, len(campaign.panels))
-        draw_readings(by_panel[panel.panel_id], campaign, criteria)
+        draw_readings(by_panel[panel.panel_id], campaign, leads, criteria)
     noise = _noise(campaign, by_panel, watched_hz)
     panel_results = []
     for panel in campaign.panels:
@@ -105,6 +111,9 @@ def conclude(campaign: Campaign, drawn: Sequence[Drawn], progress: Progress) -> 
             noise.get(panel.formulation_id),
         )
         panel_results.append(panel_assessment(panel, names, series, own))
+    for d in drawn:
+        if d.fit is not None:
+            d.fit = put_back(d.fit, d.reading.spectrum.frequency_hz, leads)
     in_order = tuple(
         reading_assessment(d, panels[d.reading.panel_id], names, settings.modulus_frequencies_hz)
         for d in drawn
@@ -122,7 +131,7 @@ def conclude(campaign: Campaign, drawn: Sequence[Drawn], progress: Progress) -> 
         watched_hz,
     )
     progress.at("Drawing conclusions", len(panels), len(panels))
-    findings = campaign_findings(campaign)
+    findings = (*campaign_findings(campaign), *own_models(campaign)[1])
     return Assessment(
         title=campaign.title,
         readings=in_order,
@@ -169,6 +178,9 @@ def _fits(
 ) -> list[Fit | None]:
     """Fits of the readings that count, in the order of `drawn`; None for the others."""
     scatter = deviations(drawn)
+    models, _ = own_models(campaign)
+    pins = known_pins(drawn, models)
+    limit = leads_of(campaign).limit
     by_panel: dict[str, list[int]] = {}
     for place, d in enumerate(drawn):
         if d.counts:
@@ -179,9 +191,10 @@ def _fits(
             [drawn[i].used for i in places],
             drawn[places[0]].area_cm2,
             [drawn[i].reading.exposure_h for i in places],
-            [drawn[i].reading.pinned_model for i in places],
-            campaign.open_lead,
+            [pins[i] for i in places],
+            limit,
             [scatter[i] for i in places],
+            campaign.settings.own_models,
         )
         for panel_id, places in by_panel.items()
     }
@@ -206,9 +219,10 @@ def _fits(
         area_cm2=[drawn[i].area_cm2 for i in places],
         series=[drawn[i].reading.panel_id for i in places],
         exposure_h=[drawn[i].reading.exposure_h for i in places],
-        pinned=[drawn[i].reading.pinned_model for i in places],
-        open_lead=campaign.open_lead,
+        pinned=[pins[i] for i in places],
+        open_lead=limit,
         deviation=[scatter[i] for i in places],
+        own_models=models,
         progress=progress,
         spread=spread,
     )

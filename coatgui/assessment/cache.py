@@ -2,8 +2,8 @@
 
 A panel's readings are fitted as a series, each helped by its neighbours; so the fits of one panel
 are kept together, under a key made of everything they rest on: the spectra, the points used, area,
-exposure times, pinned models, the open lead, weights and the version of the engine. Content that
-cannot be read back (an older layout, damage) counts as not there.
+exposure times, pinned models, the open lead, weights, own models and the version of the engine.
+Content that cannot be read back (an older layout, damage) counts as not there.
 """
 
 from __future__ import annotations
@@ -47,6 +47,7 @@ def series_key(
     pinned: Sequence[str],
     open_lead: Spectrum | None,
     deviation: Sequence[FloatArray | None],
+    own_models: Sequence[str],
 ) -> str:
     """Key of the fits of one panel's series; changes with anything that the fits rest on."""
     content = {
@@ -58,6 +59,7 @@ def series_key(
         "exposure_h": list(exposure_h),
         "pinned": list(pinned),
         "open_lead": None if open_lead is None else open_lead.content_key(),
+        "own_models": list(own_models),
         "deviation": [None if one is None else one.tolist() for one in deviation],
     }
     digest = hashlib.sha256(json.dumps(content, sort_keys=True).encode("utf-8"))

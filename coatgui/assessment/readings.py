@@ -20,6 +20,7 @@ from coatgui.assessment.capacitance import (
     small_exponent_finding,
 )
 from coatgui.assessment.drawn import Drawn
+from coatgui.assessment.leads import Leads
 from coatgui.assessment.modulus import moduli
 from coatgui.assessment.pores import pore_resistance
 from coatgui.assessment.rules import rule
@@ -94,7 +95,7 @@ def _left_out(reading: Reading, check: Check) -> dict[int, str]:
 
 
 def draw_readings(
-    drawn: Sequence[Drawn], campaign: Campaign, criteria: Sequence[Criterion]
+    drawn: Sequence[Drawn], campaign: Campaign, leads: Leads, criteria: Sequence[Criterion]
 ) -> None:
     """What each reading says by itself."""
     settings = campaign.settings
@@ -107,7 +108,7 @@ def draw_readings(
         [d.fit for d in drawn],
         [d.area_cm2 for d in drawn],
         wanted,
-        campaign.open_lead,
+        leads.limit,
     )
     for d, at in zip(drawn, at_frequencies, strict=True):
         d.moduli = at
@@ -118,7 +119,7 @@ def draw_readings(
             d.fit,
             settings.capacitance_frequency_hz,
             d.area_cm2,
-            campaign.open_lead,
+            leads.parallel,
         )
         if d.fit is not None:
             d.coating_capacitance = film_capacitance(
@@ -126,13 +127,13 @@ def draw_readings(
                 spectrum,
                 settings.capacitance_frequency_hz,
                 d.area_cm2,
-                campaign.open_lead,
+                leads.parallel,
             )
             d.interface_capacitance = interface_capacitance(d.fit, d.area_cm2)
             d.parameters = _parameters(
-                d.fit, spectrum, d.area_cm2, campaign.open_lead, d.interface_capacitance
+                d.fit, spectrum, d.area_cm2, leads.parallel, d.interface_capacitance
             )
-            d.pore_resistance = pore_resistance(d.fit, spectrum, d.area_cm2, campaign.open_lead)
+            d.pore_resistance = pore_resistance(d.fit, spectrum, d.area_cm2, leads.limit)
             d.findings.extend(
                 f for f in (note, small_exponent_finding(d.fit), *_fit_findings(d.fit)) if f
             )

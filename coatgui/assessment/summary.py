@@ -6,6 +6,7 @@ from collections.abc import Mapping, Sequence
 
 from coatgui.assessment.courses import courses, inspections
 from coatgui.assessment.drawn import Drawn
+from coatgui.assessment.leads import leads_of
 from coatgui.assessment.readings import NO_FORMULATION
 from coatgui.assessment.rules import default_criteria
 from coatgui.assessment.series import SeriesResult
@@ -104,13 +105,14 @@ def _shown(quantity: Quantity) -> str:
 
 def campaign_findings(campaign: Campaign) -> tuple[Finding, ...]:
     found = []
-    if campaign.readings and campaign.open_lead is None:
+    if campaign.readings and leads_of(campaign).measured is None:
         found.append(
             Finding(
                 "no_open_lead",
                 Severity.NOTE,
-                "There is no open-lead run, so how high the measuring set-up can see is not known: "
-                "a very high |Z| may be that of the leads.",
+                "There is no open-lead run, nor a statement of the instrument's input, so how high "
+                "the measuring set-up can see is not known: a very high |Z| may be that of the "
+                "leads.",
             )
         )
     if not campaign.settings.criteria and campaign.readings:

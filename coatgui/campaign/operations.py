@@ -54,6 +54,10 @@ _WORDS = {
     "mains_hz": "mains frequency",
     "criteria": "criteria",
     "thresholds": "thresholds",
+    "input_resistance_ohm": "resistance of the instrument's input",
+    "input_capacitance_f": "capacitance of the instrument's input",
+    "take_leads_away": "correction for the leads",
+    "own_models": "coating models",
 }
 
 # ---------------------------------------------------------------------------------------------

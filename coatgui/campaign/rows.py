@@ -56,6 +56,10 @@ def settings_row(campaign_id: str, settings: Settings) -> Row:
             ]
         ),
         "thresholds": to_json([[name, float(value)] for name, value in settings.thresholds]),
+        "input_resistance_ohm": _float(settings.input_resistance_ohm),
+        "input_capacitance_f": _float(settings.input_capacitance_f),
+        "take_leads_away": int(settings.take_leads_away),
+        "own_models": to_json([json.loads(text) for text in settings.own_models]),
     }
 
 
@@ -199,6 +203,10 @@ def settings_of(row: Row) -> Settings:
         thresholds=tuple(
             (_string(name), _number(value)) for name, value in _list(row["thresholds"])
         ),
+        input_resistance_ohm=_number_or_none(row["input_resistance_ohm"]),
+        input_capacitance_f=_number_or_none(row["input_capacitance_f"]),
+        take_leads_away=bool(_whole(row["take_leads_away"])),
+        own_models=tuple(to_json(_object(model)) for model in _list(row["own_models"])),
     )
 
 
@@ -318,6 +326,12 @@ def _list(cell: Any) -> list[Any]:
     value = json.loads(_string(cell))
     if not isinstance(value, list):
         raise TypeError("A list was expected.")
+    return value
+
+
+def _object(value: Any) -> dict[str, Any]:
+    if not isinstance(value, dict):
+        raise TypeError("A JSON object was expected.")
     return value
 
 

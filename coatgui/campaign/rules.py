@@ -7,6 +7,7 @@ stays cheap.
 
 from __future__ import annotations
 
+import json
 import math
 from collections import Counter
 from collections.abc import Callable, Iterable, Iterator, Mapping
@@ -181,6 +182,24 @@ def _refuse_unsound_settings(settings: Settings) -> None:
         _positive(criterion.ohm_cm2, f"The limit of criterion {criterion.name} in Ω cm²")
     for name, value in settings.thresholds:
         _finite(value, f"The threshold {name}")
+    _positive(settings.input_resistance_ohm, "The resistance of the instrument's input in Ω")
+    _positive(settings.input_capacitance_f, "The capacitance of the instrument's input in F")
+    names = [_model_id(text) for text in settings.own_models]
+    _once(names, "coating model", "the id")
+
+
+def _model_id(text: str) -> str:
+    """The id of a coating model of a person's own. What it describes is `circuits`' to judge."""
+    try:
+        model = json.loads(text)
+        name = model["id"]
+    except (ValueError, TypeError, KeyError, RecursionError):
+        raise OperationRefused(
+            "A coating model must be a JSON object with an id, a name and its layers."
+        ) from None
+    if not isinstance(model, dict) or not isinstance(name, str) or not name.strip():
+        raise OperationRefused("A coating model needs an id that is not empty.")
+    return name
 
 
 def _named(name: str, what: str, fact: str = "name") -> None:

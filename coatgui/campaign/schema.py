@@ -138,7 +138,21 @@ _FIRST_TABLES = (
 ) STRICT""",
 )
 
-MIGRATIONS: tuple[Callable[[sqlite3.Connection], None], ...] = (lay_the_first_tables,)
+
+def add_the_input_and_own_models(connection: sqlite3.Connection) -> None:
+    for column in (
+        "input_resistance_ohm REAL CHECK (input_resistance_ohm > 0)",
+        "input_capacitance_f REAL CHECK (input_capacitance_f > 0)",
+        "take_leads_away INTEGER NOT NULL DEFAULT 0 CHECK (take_leads_away IN (0, 1))",
+        "own_models TEXT NOT NULL DEFAULT '[]'",
+    ):
+        connection.execute(f"ALTER TABLE settings ADD COLUMN {column}")
+
+
+MIGRATIONS: tuple[Callable[[sqlite3.Connection], None], ...] = (
+    lay_the_first_tables,
+    add_the_input_and_own_models,
+)
 
 
 def version(connection: sqlite3.Connection) -> int:

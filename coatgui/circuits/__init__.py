@@ -11,6 +11,7 @@ from coatgui.circuits.layers import (
     model_from_data,
 )
 from coatgui.circuits.network import Evaluation
+from coatgui.circuits.told_apart import tied_by_the_circuit
 
 __all__ = [
     "CoatingModel",
@@ -24,4 +25,5 @@ __all__ = [
     "build_model",
     "catalogue",
     "model_from_data",
+    "tied_by_the_circuit",
 ]

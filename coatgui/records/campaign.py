@@ -66,7 +66,10 @@ class Criterion:
 @dataclass(frozen=True, slots=True)
 class Settings:
     """What a person can set for a campaign. `thresholds` override single entries of
-    `resources/checks.toml`, by name."""
+    `resources/checks.toml`, by name. `input_resistance_ohm` and `input_capacitance_f` are what the
+    instrument's maker states for its input; `take_leads_away` corrects every spectrum for the open
+    leads or that input. `own_models` are coating models as JSON texts, in the form of
+    `resources/models.toml`."""
 
     temperature_c: float = 25.0
     modulus_frequencies_hz: tuple[float, ...] = (0.1, 0.01)
@@ -74,6 +77,10 @@ class Settings:
     mains_hz: float = 50.0
     criteria: tuple[Criterion, ...] = ()
     thresholds: tuple[tuple[str, float], ...] = ()
+    input_resistance_ohm: float | None = None
+    input_capacitance_f: float | None = None
+    take_leads_away: bool = False
+    own_models: tuple[str, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)

@@ -53,6 +53,7 @@ def test_key_changes_with_everything_it_rests_on(made: Made) -> None:
         "pinned": [""],
         "open_lead": None,
         "deviation": [None],
+        "own_models": [],
     }
     changed: dict[str, Any] = {
         "spectra": [other],
@@ -62,6 +63,7 @@ def test_key_changes_with_everything_it_rests_on(made: Made) -> None:
         "pinned": ["closed_film"],
         "open_lead": other,
         "deviation": [np.ones(fit.used.size)],
+        "own_models": ["{}"],
     }
     keys = {series_key(**(same | {name: value})) for name, value in changed.items()}
     assert len(keys) == len(changed)

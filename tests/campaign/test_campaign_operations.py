@@ -8,7 +8,7 @@ from typing import Any
 import pytest
 
 from coatgui.campaign import CampaignFile, Operation, OperationRefused, operations
-from coatgui.records import Campaign, Criterion, Found, Panel, Reading, Settings, Source
+from coatgui.records import Campaign, Criterion, Found, Panel, Reading, Source
 
 
 def reading(campaign: Campaign, reading_id: str) -> Reading:
@@ -70,7 +70,16 @@ CASES: dict[
         lambda c: operations.edit_settings(
             c, mains_hz=50, criteria=[LIMIT], modulus_frequencies_hz=[1], thresholds=[["x", 2]]
         ),
-        lambda c: replace(c, settings=Settings(23.4, (1.0,), 9e3, 50.0, (LIMIT,), (("x", 2.0),))),
+        lambda c: replace(
+            c,
+            settings=replace(
+                c.settings,
+                mains_hz=50.0,
+                criteria=(LIMIT,),
+                modulus_frequencies_hz=(1.0,),
+                thresholds=(("x", 2.0),),
+            ),
+        ),
         {"settings"},
         "Set mains frequency, criteria, frequencies for the modulus and thresholds",
     ),
@@ -326,6 +335,12 @@ REFUSED: dict[str, tuple[Callable[[Campaign], Operation], str]] = {
     "threshold": (
         lambda c: operations.edit_settings(c, thresholds=(("x", float("inf")),)),
         "threshold x",
+    ),
+    "input": (lambda c: operations.edit_settings(c, input_resistance_ohm=-1.0), "greater than 0"),
+    "model": (lambda c: operations.edit_settings(c, own_models=("[]",)), "JSON object"),
+    "model twice": (
+        lambda c: operations.edit_settings(c, own_models=('{"id": "a"}', '{"id": "a"}')),
+        "already a coating model",
     ),
 }
 

@@ -56,8 +56,6 @@ def test_scipy_finds_no_better_optimum(model_id: str) -> None:
 
 @pytest.mark.parametrize("model_id", [m.model_id for m in catalogue().values() if m.automatic])
 def test_the_best_valley_is_found_from_the_spectrum_alone(model_id: str) -> None:
-    if model_id == "closed_film":
-        pytest.skip("synthetic spectra of a closed film have no model of their own here")
     made = make(model_id, 400, np.random.default_rng(12))
     batch, _, cost = found(made)
     from_truth = minimise(batch.objective(made.model), made.truth, *made.model.bounds).cost
