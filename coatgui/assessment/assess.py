@@ -16,12 +16,13 @@ import numpy as np
 from coatgui.assessment.cache import ResultCache, fits_from_bytes, fits_to_bytes, series_key
 from coatgui.assessment.cautions import cautions
 from coatgui.assessment.courses import inspections
+from coatgui.assessment.decide import decide
 from coatgui.assessment.drawn import Drawn
 from coatgui.assessment.events import replicate_noise
 from coatgui.assessment.film import film_facts
 from coatgui.assessment.leads import leads_of, put_back, take_away
 from coatgui.assessment.own_models import known_pins, own_models
-from coatgui.assessment.ranking import ranking
+from coatgui.assessment.planning import next_inspection
 from coatgui.assessment.readings import draw_readings, reading_assessment, start_reading
 from coatgui.assessment.repeats import deviations
 from coatgui.assessment.rules import default_criteria
@@ -35,7 +36,7 @@ from coatgui.assessment.summary import (
 from coatgui.fitting import fit_spectra
 from coatgui.progress import Progress, Spread, one_after_another
 from coatgui.quality import check_spectra
-from coatgui.records import Assessment, Campaign, Fit
+from coatgui.records import Assessment, Campaign, Fit, Questions
 
 _USUAL_FREQUENCY_HZ = 0.1
 
@@ -46,11 +47,13 @@ def assess(
     progress: Progress | None = None,
     spread: Spread = one_after_another,
     cache: ResultCache | None = None,
+    questions: Questions | None = None,
 ) -> Assessment:
-    """All that is concluded from a campaign.
+    """All that is concluded from a campaign, and the answers to further questions.
 
     Raises Cancelled at a step of `progress` where the result is no longer wanted; nothing is kept
-    then. With a `cache`, fits of panels in which nothing changed are taken from it.
+    then. With a `cache`, fits of panels in which nothing changed are taken from it. Raises
+    ValueError, in a sentence that can be shown, for a question that cannot be understood.
     """
     progress = progress or Progress()
     settings = campaign.settings
@@ -79,10 +82,12 @@ def assess(
     take_away(drawn, leads_of(campaign))
     for d, fit in zip(drawn, _fits(drawn, campaign, progress, spread, cache), strict=True):
         d.fit = fit
-    return conclude(campaign, drawn, progress)
+    return conclude(campaign, drawn, progress, questions or Questions())
 
 
-def conclude(campaign: Campaign, drawn: Sequence[Drawn], progress: Progress) -> Assessment:
+def conclude(
+    campaign: Campaign, drawn: Sequence[Drawn], progress: Progress, questions: Questions
+) -> Assessment:
     """The conclusions from readings that are checked and fitted, sorted by panel in the campaign's
     order and exposure time."""
     settings = campaign.settings
@@ -126,23 +131,31 @@ def conclude(campaign: Campaign, drawn: Sequence[Drawn], progress: Progress) -> 
     by_formulation = {
         f.formulation: [r for r in in_order if r.formulation == f.formulation] for f in formulations
     }
-    compared = ranking(
-        {name: those for name, those in by_formulation.items() if any(r.counts for r in those)},
-        watched_hz,
-    )
+    counting = {
+        name: those for name, those in by_formulation.items() if any(r.counts for r in those)
+    }
+    decided = decide(counting, watched_hz, criteria, questions, panel_results)
     progress.at("Drawing conclusions", len(panels), len(panels))
     findings = (*campaign_findings(campaign), *own_models(campaign)[1])
     return Assessment(
         title=campaign.title,
         readings=in_order,
-        panels=tuple(panel_results),
+        panels=decided.panels,
         formulations=formulations,
-        ranking=compared.ranks,
-        ranking_text=compared.text,
+        ranking=decided.comparison.ranks,
+        ranking_text=decided.comparison.text,
         refused=campaign.refused,
         findings=findings,
         cautions=cautions(),
         headline=headline(in_order, panel_results, findings),
+        limit_studies=decided.limit_studies,
+        trends=decided.trends,
+        comparison=decided.comparison,
+        further_comparisons=decided.further_comparisons,
+        projections=decided.projections,
+        ratings=decided.ratings,
+        rating_correlations=decided.rating_correlations,
+        next_inspection=next_inspection(panel_results, in_order, criteria),
     )
 
 

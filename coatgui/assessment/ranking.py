@@ -1,177 +1,118 @@
-"""Which formulation is ahead, and which cannot be told apart.
+"""Comparisons in words: who is ahead, who cannot be told apart, and what it would take.
 
-Compared is log₁₀(|Z|·A) at the first wanted frequency (0.1 Hz), at the last inspection that all
-formulations share; the panel is the unit. Each pair is tested by Welch's t (unequal variances),
-
-    t = (m₁ − m₂)/√(v₁ + v₂),  v = s²/n,  ν = (v₁ + v₂)²/(v₁²/(n₁−1) + v₂²/(n₂−1)),
-
-and Holm's step-down keeps the chance of any false difference among all pairs below 5 %. Values that
-are only a lower bound enter at the bound. A formulation whose *lower* mean rests on such bounds may
-in truth be as high as any other, so it is then not told apart.
-
-The best place of a formulation is one more than the number of those proved better, its worst place
-the number of all less those proved worse. Formulations share a letter when no difference inside
-their group is proved: the letters are the maximal sets without a proved difference.
+The usual question is asked of every campaign: log₁₀(|Z|·A) at the first wanted frequency (0.1 Hz),
+at the last inspection that all formulations share, by Welch's test with Holm's correction. The
+tests themselves are in `significance.py`, the samples in `samples.py`.
 """
 
 from __future__ import annotations
 
 import math
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
-from itertools import combinations
+from itertools import pairwise
 
 import numpy as np
 
+from coatgui.assessment.comparison import FEWEST_PANELS, Outcome, compare
 from coatgui.assessment.courses import inspections, panel_values
+from coatgui.assessment.effort import detectable, panels_needed
+from coatgui.assessment.quantities import Kind, kind
 from coatgui.assessment.rules import rule
+from coatgui.assessment.samples import Readings, Samples, samples
+from coatgui.assessment.significance import Entry, fewest_provable
 from coatgui.assessment.words import counted, hours, listed
-from coatgui.records import Bound, Quantity, Rank, ReadingAssessment
+from coatgui.records import (
+    Comparison,
+    Judge,
+    Method,
+    Question,
+    ReadingAssessment,
+    VisualRating,
+)
 
-_FEWEST_PANELS = 2
-
-
-def welch(first: Sequence[float], second: Sequence[float]) -> float:
-    """Two-sided probability that two samples of unequal variance share their mean. Each sample has
-    at least two values. Samples without any spread differ for certain or not at all."""
-    from scipy.special import stdtr
-
-    a, b = np.asarray(first, dtype=np.float64), np.asarray(second, dtype=np.float64)
-    va, vb = float(a.var(ddof=1)) / a.size, float(b.var(ddof=1)) / b.size
-    difference = float(a.mean() - b.mean())
-    if va + vb == 0:
-        return 1.0 if difference == 0 else 0.0
-    freedom = (va + vb) ** 2 / (va**2 / (a.size - 1) + vb**2 / (b.size - 1))
-    return float(2 * stdtr(freedom, -abs(difference) / math.sqrt(va + vb)))
-
-
-def holm(probabilities: Sequence[float]) -> list[float]:
-    """Probabilities adjusted by Holm's step-down, in the order given."""
-    order = sorted(range(len(probabilities)), key=lambda i: probabilities[i])
-    adjusted = [0.0] * len(probabilities)
-    running = 0.0
-    for step, place in enumerate(order):
-        running = max(running, min(1.0, (len(probabilities) - step) * probabilities[place]))
-        adjusted[place] = running
-    return adjusted
+_NAMES = {
+    Method.WELCH: "Welch, Holm",
+    Method.TUKEY: "Tukey and Kramer",
+    Method.GAMES_HOWELL: "Games and Howell",
+    Method.DUNNETT: "Dunnett",
+    Method.RANKS: "Gehan's ranks, Holm",
+}
+_ORDINAL = (Judge.TIME_TO_LIMIT, Judge.RATING)
+_MOST_ADVICE = 3
 
 
-def group_letters(names: Sequence[str], differ: set[frozenset[str]]) -> dict[str, str]:
-    """Letters such that two names share one exactly where their pair is not in `differ`. `names`
-    from best to worst; "a" goes to the group of the best."""
-    groups: list[set[str]] = []
-
-    def grow(group: set[str], candidates: list[str], seen: list[str]) -> None:
-        if not candidates and not seen:
-            groups.append(group)
-        for place, name in enumerate(candidates):
-            alike = [o for o in candidates[place + 1 :] if frozenset((name, o)) not in differ]
-            also_seen = [o for o in seen + candidates[:place] if frozenset((name, o)) not in differ]
-            grow(group | {name}, alike, also_seen)
-
-    grow(set(), list(names), [])
-    groups.sort(key=lambda group: sorted(names.index(name) for name in group))
-    letters = dict.fromkeys(names, "")
-    for place, group in enumerate(groups):
-        for name in group:
-            letters[name] += _letter(place)
-    return letters
+def ranking(readings: Mapping[str, Sequence[ReadingAssessment]], frequency_hz: float) -> Comparison:
+    """The usual comparison of formulations, given the readings of each by name; those that do not
+    count are passed over. Ranks run from best to worst; empty where there is nothing to compare."""
+    return answer(Question(frequency_hz=frequency_hz), readings)
 
 
-def _letter(place: int) -> str:
-    alphabet = "abcdefghijklmnopqrstuvwxyz"
-    return alphabet[place] if place < len(alphabet) else f"{alphabet[place % 26]}{place // 26}"
-
-
-@dataclass(frozen=True, slots=True)
-class Ranking:
-    ranks: tuple[Rank, ...]
-    text: str
-
-
-def ranking(readings: Mapping[str, Sequence[ReadingAssessment]], frequency_hz: float) -> Ranking:
-    """Rank formulations, given the readings of each by name; those that do not count are passed
-    over. Ranks run from best to worst; empty where there is nothing to compare."""
+def answer(
+    question: Question, readings: Readings, ratings: Sequence[VisualRating] = ()
+) -> Comparison:
+    """Answer a question. What is ordinal or censored in itself (ratings, times to a limit) is
+    compared by ranks whatever the method. Raises ValueError for a question that cannot be
+    understood."""
     if len(readings) < 2:
-        return Ranking((), "There is only one formulation, so there is nothing to compare.")
-    time, values = _last_shared(readings, frequency_hz)
-    what = f"|Z|·A at {frequency_hz:g} Hz"
-    if time is None:
-        return Ranking(
-            (), f"The formulations share no inspection with {what}, so they are not compared."
-        )
-    few = [name for name, panels in values.items() if len(panels) < _FEWEST_PANELS]
+        return _nothing(question, "There is only one formulation, so there is nothing to compare.")
+    found = samples(question, readings, ratings)
+    if found.text or not found.by_name:
+        return _nothing(question, found.text, found.what)
+    few = [name for name, panels in found.by_name.items() if len(panels) < FEWEST_PANELS]
     if few:
-        return Ranking(
-            (),
-            f"At {hours(time)}, the last inspection that all formulations share, {listed(few)} "
-            f"{'has' if len(few) == 1 else 'have'} fewer than two panels with {what}: without "
-            "replicates the formulations cannot be compared.",
+        when = found.when[:1].upper() + found.when[1:]
+        shared = ", the last inspection that all formulations share," if found.exposure_h else ""
+        start = f"{when}{shared} " if when else ""
+        return _nothing(
+            question,
+            f"{start}{listed(few)} {'has' if len(few) == 1 else 'have'} fewer than two panels "
+            f"with {found.what}: without replicates the formulations cannot be compared.",
+            found.what,
         )
-    logs = {name: [math.log10(q.value or 1.0) for q in panels] for name, panels in values.items()}
-    names = sorted(logs, key=lambda name: (-float(np.mean(logs[name])), name))
-    bounded = {n: sum(q.bound is not Bound.TWO_SIDED for q in values[n]) for n in names}
-    pairs = list(combinations(names, 2))  # the first of each pair has the higher mean
-    adjusted = holm(
-        [1.0 if bounded[worse] else welch(logs[better], logs[worse]) for better, worse in pairs]
+    method = Method.RANKS if question.judge in _ORDINAL else question.method
+    outcome = compare(found.by_name, method, found.unit, question.reference, found.better)
+    return Comparison(
+        question,
+        found.what,
+        found.exposure_h,
+        outcome.ranks,
+        outcome.pairs,
+        _in_words(outcome, found, method, question.reference),
+        _effort(outcome, found, method, question, readings),
     )
-    proved = {
-        pair for pair, p in zip(pairs, adjusted, strict=True) if p < rule("ranking.significance")
-    }
-    letters = group_letters(names, {frozenset(pair) for pair in proved})
-    ranks = tuple(
-        Rank(
-            name,
-            1 + sum(worse == name for _, worse in proved),
-            len(names) - sum(better == name for better, _ in proved),
-            letters[name],
-        )
-        for name in names
-    )
-    counts = {name: len(panels) for name, panels in values.items()}
-    return Ranking(ranks, _in_words(names, proved, counts, bounded, time, what))
 
 
-def _last_shared(
-    readings: Mapping[str, Sequence[ReadingAssessment]], frequency_hz: float
-) -> tuple[float | None, dict[str, list[Quantity]]]:
-    """The last inspection at which every formulation has two panels with a value, or else one."""
-
-    def take(reading: ReadingAssessment) -> Quantity | None:
-        modulus = reading.modulus_at(frequency_hz)
-        return None if modulus is None else modulus.quantity
-
-    times = [r.exposure_h for group in readings.values() for r in group if r.counts]
-    single: tuple[float, dict[str, list[Quantity]]] | None = None
-    for group in reversed(inspections(times)):
-        there = set(group)
-        values = {
-            name: list(
-                panel_values([r for r in those if r.exposure_h in there], take, True).values()
-            )
-            for name, those in readings.items()
-        }
-        fewest = min(len(panels) for panels in values.values())
-        if fewest >= _FEWEST_PANELS and _one_unit(values):
-            return float(np.mean(group)), values
-        if fewest and single is None and _one_unit(values):
-            single = float(np.mean(group)), values
-    return single or (None, {})
+def _nothing(question: Question, text: str, what: str = "") -> Comparison:
+    return Comparison(question, what, None, (), (), text)
 
 
-def _one_unit(values: Mapping[str, Sequence[Quantity]]) -> bool:
-    return len({q.unit for panels in values.values() for q in panels}) == 1
-
-
-def _in_words(
-    names: Sequence[str],
-    proved: set[tuple[str, str]],
-    counts: Mapping[str, int],
-    bounded: Mapping[str, int],
-    time: float,
-    what: str,
-) -> str:
+def _in_words(outcome: Outcome, found: Samples, method: Method, reference: str) -> str:
     """Who is ahead, who is behind, who cannot be told apart; then what it was judged by."""
+    counts = {name: len(panels) for name, panels in found.by_name.items()}
+    if method is Method.DUNNETT:
+        parts = _against(outcome, reference, counts)
+    else:
+        parts = _order(outcome.names, outcome.proved, counts)
+    when = f" {found.when}" if found.when else ""
+    percent = 100 * rule("ranking.significance")
+    judged = f"{found.what}{when} ({_NAMES[method]}, {percent:g} percent)"
+    text = f"{'; '.join(parts)}. Judged by {judged}."
+    bounded = found.bounded
+    total = sum(bounded.values())
+    if total and method is not Method.RANKS:
+        text += (
+            f" {counted(total, 'value')} at the measuring limit entered as "
+            f"{'a lower bound' if total == 1 else 'lower bounds'}, so the true distance of "
+            f"{listed([n for n in outcome.names if bounded[n]])} may be larger."
+        )
+    if method is Method.RANKS:
+        text += _rank_warning(outcome, counts)
+    return text
+
+
+def _order(
+    names: Sequence[str], proved: set[tuple[str, str]], counts: Mapping[str, int]
+) -> list[str]:
     parts: list[str] = []
     rest = list(names)
     # Peel off whoever is proved better than all that remain, from the top.
@@ -192,15 +133,43 @@ def _in_words(
                 if behind:
                     parts.append(f"{better} is ahead of {listed(behind)}")
             parts.append(f"the other pairs cannot be told apart with {panels}")
-    text = "; ".join(parts) + f". Judged by {what} at {hours(time)} (Welch, Holm, 5 percent)."
-    total = sum(bounded.values())
-    if total:
-        text += (
-            f" {counted(total, 'value')} at the measuring limit entered as "
-            f"{'a lower bound' if total == 1 else 'lower bounds'}, so the true distance of "
-            f"{listed([n for n in names if bounded[n]])} may be larger."
-        )
-    return text
+    return parts
+
+
+def _against(outcome: Outcome, reference: str, counts: Mapping[str, int]) -> list[str]:
+    ahead = [a for a, b in outcome.proved if b == reference]
+    behind = [b for a, b in outcome.proved if a == reference]
+    rest = [n for n in outcome.names if n not in (*ahead, *behind, reference)]
+    parts = []
+    if ahead:
+        parts.append(f"{listed(sorted(ahead))} {_is(ahead)} ahead of {reference}")
+    if behind:
+        parts.append(f"{listed(sorted(behind))} {_is(behind)} behind {reference}")
+    if rest:
+        panels = _how_many([counts[name] for name in (*rest, reference)])
+        parts.append(f"{listed(rest)} cannot be told from {reference} with {panels}")
+    return parts
+
+
+def _is(names: Sequence[str]) -> str:
+    return "is" if len(names) == 1 else "are"
+
+
+def _rank_warning(outcome: Outcome, counts: Mapping[str, int]) -> str:
+    """Said where so few panels cannot give a significant rank test whatever they read."""
+    pairs = len(outcome.pairs)
+    level = rule("ranking.significance")
+    mute = [
+        pair
+        for pair in outcome.pairs
+        if fewest_provable(counts[pair.first], counts[pair.second]) * pairs > level
+    ]
+    if not mute or len(mute) < pairs:
+        return ""
+    return (
+        " With so few panels a test by ranks cannot prove any difference, however large: read the "
+        "order, and take more panels."
+    )
 
 
 def _how_many(counts: Sequence[int]) -> str:
@@ -208,3 +177,112 @@ def _how_many(counts: Sequence[int]) -> str:
     if len(set(counts)) == 1:
         return f"{words.get(counts[0], str(counts[0]))} panels each"
     return f"{min(counts)} to {max(counts)} panels each"
+
+
+# ---------------------------------------------------------------------------------------------
+# What it would take
+
+
+def _effort(
+    outcome: Outcome, found: Samples, method: Method, question: Question, readings: Readings
+) -> tuple[str, ...]:
+    """For neighbours in the order that are not told apart: panels needed, or a longer exposure."""
+    if method is Method.RANKS:
+        return ()
+    proved = outcome.proved
+    alpha = rule("ranking.significance") / max(len(outcome.pairs), 1)
+    wanted = rule("ranking.power")
+    said: list[str] = []
+    for ahead, behind in pairwise(outcome.names):
+        if (ahead, behind) in proved or len(said) == _MOST_ADVICE:
+            continue
+        first, second = found.by_name[ahead], found.by_name[behind]
+        if any(e.censored for e in (*first, *second)):
+            said.append(
+                f"{ahead} and {behind} read at the measuring limit: more panels do not separate "
+                "them, a longer exposure or a more sensitive set-up may."
+            )
+            continue
+        said.append(_one_effort(ahead, behind, first, second, alpha, wanted, found))
+        longer = _longer(ahead, behind, first, second, alpha, question, readings)
+        if longer:
+            said[-1] += " " + longer
+    return tuple(said)
+
+
+def _sd(sample: Sequence[Entry]) -> float:
+    return float(np.std([e.value for e in sample], ddof=1))
+
+
+def _one_effort(
+    ahead: str,
+    behind: str,
+    first: Sequence[Entry],
+    second: Sequence[Entry],
+    alpha: float,
+    wanted: float,
+    found: Samples,
+) -> str:
+    apart = abs(float(np.mean([e.value for e in first]) - np.mean([e.value for e in second])))
+    needed = panels_needed(apart, _sd(first), _sd(second), alpha, wanted)
+    few = min(len(first), len(second))
+    shows = detectable(_sd(first), _sd(second), few, alpha, wanted)
+    start = f"{ahead} and {behind} differ by {apart:.2g} {found.unit}, not proved. "
+    if needed is None:
+        start += "At this distance and scatter more than 50 panels each would not prove it"
+    else:
+        start += f"At this distance and scatter about {needed} panels each would"
+    return (
+        f"{start} (chance {100 * wanted:.0f} percent); with {few} panels each a difference from "
+        f"{shows:.2g} {found.unit} on would show."
+    )
+
+
+def _longer(
+    ahead: str,
+    behind: str,
+    first: Sequence[Entry],
+    second: Sequence[Entry],
+    alpha: float,
+    question: Question,
+    readings: Readings,
+) -> str:
+    """Where the distance has been growing, when it would show if it went on; else nothing."""
+    if question.judge is not Judge.AT_TIME:
+        return ""
+    of = kind(question.quantity, question.frequency_hz)
+    times, apart = _distances(of, readings[ahead], readings[behind])
+    if len(times) < 4:
+        return ""
+    t, d = np.array(times[-6:]), of.better * np.array(apart[-6:])
+    slope, level = np.polyfit(t, d, 1)
+    residual = d - np.polyval([slope, level], t)
+    spread = float(residual @ residual) / (t.size - 2) / float(((t - t.mean()) ** 2).sum())
+    if slope <= 0 or slope < 2 * math.sqrt(spread):
+        return ""
+    few = min(len(first), len(second))
+    shows = detectable(_sd(first), _sd(second), few, alpha, rule("ranking.power"))
+    at = float((shows - level) / slope)
+    if not t[-1] < at <= 2 * t[-1]:
+        return ""
+    return (
+        "The distance has been growing; if that goes on, it would show at about "
+        f"{hours(round(at))} with the panels there are (a rough guide, not a prediction)."
+    )
+
+
+def _distances(
+    of: Kind, first: Sequence[ReadingAssessment], second: Sequence[ReadingAssessment]
+) -> tuple[list[float], list[float]]:
+    times, apart = [], []
+    for group in inspections([r.exposure_h for r in (*first, *second) if r.counts]):
+        means = []
+        for own in (first, second):
+            there = [r for r in own if r.exposure_h in group]
+            values = [q.value or 1.0 for q in panel_values(there, of.take, of.logarithmic).values()]
+            if values:
+                means.append(float(np.mean(np.log10(values) if of.logarithmic else values)))
+        if len(means) == 2:
+            times.append(float(np.mean(group)))
+            apart.append(means[0] - means[1])
+    return times, apart

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 from coatgui.records.campaign import Criterion
 from coatgui.records.measured import (
@@ -14,6 +15,17 @@ from coatgui.records.measured import (
     Refusal,
     Severity,
 )
+
+if TYPE_CHECKING:
+    from coatgui.records.decisions import (
+        Comparison,
+        LimitStudy,
+        NextInspection,
+        Projection,
+        RatingCorrelation,
+        RatingCourse,
+        Trend,
+    )
 
 
 @dataclass(frozen=True, slots=True)
@@ -307,6 +319,14 @@ class Assessment:
     findings: tuple[Finding, ...]
     cautions: tuple[str, ...]
     headline: str = ""
+    limit_studies: tuple[LimitStudy, ...] = ()
+    trends: tuple[Trend, ...] = ()
+    comparison: Comparison | None = None
+    further_comparisons: tuple[Comparison, ...] = ()
+    projections: tuple[Projection, ...] = ()
+    ratings: tuple[RatingCourse, ...] = ()
+    rating_correlations: tuple[RatingCorrelation, ...] = ()
+    next_inspection: NextInspection | None = None
 
     def reading(self, reading_id: str) -> ReadingAssessment | None:
         return next((r for r in self.readings if r.reading_id == reading_id), None)

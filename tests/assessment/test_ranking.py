@@ -1,4 +1,4 @@
-"""Ranking against scipy's tests, letters against their definition, and the words."""
+"""Comparisons of formulations: order, groups, words, and how often they are wrong."""
 
 from __future__ import annotations
 
@@ -10,8 +10,19 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from coatgui.assessment.ranking import group_letters, holm, ranking, welch
-from coatgui.records import Bound, ReadingAssessment
+from coatgui.assessment.comparison import compare, probabilities
+from coatgui.assessment.ranking import answer, ranking
+from coatgui.assessment.rules import rule
+from coatgui.assessment.significance import Entry, welch
+from coatgui.records import (
+    Bound,
+    Judge,
+    Limit,
+    Method,
+    Question,
+    ReadingAssessment,
+    VisualRating,
+)
 
 Made = Callable[..., ReadingAssessment]
 
@@ -25,47 +36,6 @@ def _readings(
         ]
         for name, values in logs.items()
     }
-
-
-@pytest.mark.parametrize("seed", range(6))
-def test_welch_agrees_with_scipy(seed: int) -> None:
-    from scipy.stats import ttest_ind
-
-    random = np.random.default_rng(seed)
-    first = random.normal(9, 0.3, random.integers(2, 8))
-    second = random.normal(8.5, 1.0, random.integers(2, 8))
-    expected = ttest_ind(first, second, equal_var=False).pvalue
-    assert welch(first, second) == pytest.approx(float(expected), rel=1e-9)
-
-
-def test_samples_without_spread() -> None:
-    assert welch([9.0, 9.0], [9.0, 9.0, 9.0]) == 1.0
-    assert welch([9.0, 9.0], [8.0, 8.0]) == 0.0
-
-
-def test_holm_by_hand() -> None:
-    """0.01, 0.04, 0.03 → 3·0.01, 2·0.03, and no less than the one before."""
-    assert holm([0.01, 0.04, 0.03]) == pytest.approx([0.03, 0.06, 0.06])
-    assert holm([]) == []
-    assert holm([0.9, 0.8]) == [1.0, 1.0]
-
-
-@given(
-    count=st.integers(2, 7),
-    data=st.data(),
-)
-def test_letters_are_shared_exactly_where_nothing_is_proved(
-    count: int, data: st.DataObject
-) -> None:
-    names = [f"F{i}" for i in range(count)]
-    pairs = [frozenset(pair) for pair in combinations(names, 2)]
-    differ = {pair for pair in pairs if data.draw(st.booleans())}
-    letters = group_letters(names, differ)
-    assert all(letters.values())
-    for pair in pairs:
-        first, second = pair
-        shared = set(letters[first]) & set(letters[second])
-        assert bool(shared) == (pair not in differ)
 
 
 def test_best_is_named_and_the_rest_cannot_be_told_apart(reading_of: Made) -> None:
@@ -150,3 +120,140 @@ def test_scaling_all_areas_changes_no_rank(factor: float) -> None:
         ]
 
     assert groups(float(np.log10(factor))) == pytest.approx(groups(0.0), rel=1e-6)
+
+
+def _panels(random: np.random.Generator, means: list[float], panels: int) -> list[list[float]]:
+    """log₁₀|Z| of formulations whose spread between panels is itself between 0.15 and 0.5."""
+    return [random.normal(m, random.uniform(0.15, 0.5), panels).tolist() for m in means]
+
+
+@pytest.mark.parametrize("method", [Method.WELCH, Method.RANKS])
+def test_identical_formulations_are_seldom_called_different(method: Method) -> None:
+    """At most 5 percent of a thousand campaigns, with 3 to 5 panels of each of three
+    formulations."""
+    random = np.random.default_rng(11)
+    total = 1000
+    wrong = 0
+    for number in range(total):
+        logs = _panels(random, [8.0, 8.0, 8.0], 3 + number % 3)
+        entries = [[Entry(v, v, v) for v in values] for values in logs]
+        _, adjusted = probabilities("KMP", entries, method, "")
+        wrong += min(adjusted.values()) < rule("ranking.significance")
+    assert wrong <= 0.05 * total
+
+
+@pytest.mark.parametrize(("panels", "least"), [(3, 0.30), (4, 0.50), (5, 0.65)])
+def test_power_at_one_decade(panels: int, least: float) -> None:
+    """Two formulations a decade apart, 0.15 to 0.5 decades between panels: how often proved."""
+    random = np.random.default_rng(12)
+    proved = 0
+    for _ in range(300):
+        a, b = _panels(random, [8.0, 7.0], panels)
+        entries = {"A": [Entry(v, v, v) for v in a], "B": [Entry(v, v, v) for v in b]}
+        proved += ("A", "B") in compare(entries, Method.WELCH, "decades").proved
+    assert proved >= least * 300
+
+
+def test_drawn_ranks_hold_the_order_open(reading_of: Made) -> None:
+    logs = {"K": [9.8, 9.9, 10.0, 9.7], "M": [7.1, 7.9, 7.4, 7.6], "P": [7.0, 7.7, 7.5, 7.2]}
+    by_name = {r.formulation: r for r in ranking(_readings(reading_of, logs), 0.1).ranks}
+    assert (by_name["K"].bootstrap_low, by_name["K"].bootstrap_high) == (1, 1)
+    assert (by_name["M"].bootstrap_low, by_name["M"].bootstrap_high) == (2, 3)
+
+
+def test_effort_says_what_it_would_take(reading_of: Made) -> None:
+    logs = {"K": [8.6, 8.2, 8.9], "M": [8.0, 7.9, 8.5]}
+    (said,) = ranking(_readings(reading_of, logs), 0.1).effort
+    assert said.startswith("K and M differ by 0.43 decades, not proved.")
+    assert "panels each would" in said
+    assert "with 3 panels each a difference from" in said
+    bounded = _readings(reading_of, {"K": [11.0, 11.1, 11.2]}, bound=Bound.AT_LEAST)
+    (said,) = ranking(bounded | _readings(reading_of, {"M": [10.9, 11.1, 11.3]}), 0.1).effort
+    assert "measuring limit" in said
+
+
+def test_growing_distance_says_how_much_longer(reading_of: Made) -> None:
+    random = np.random.default_rng(1)
+    readings: dict[str, list[ReadingAssessment]] = {"K": [], "M": []}
+    offsets = {name: random.normal(0, 0.25, 3) for name in readings}
+    for hours in (168.0, 336.0, 504.0, 672.0, 840.0):
+        for name, slope in (("K", 0.0), ("M", -0.5)):
+            logs = 9 + slope * hours / 840 + offsets[name]
+            readings[name] += _readings(reading_of, {name: logs.tolist()}, hours)[name]
+    (said,) = ranking(readings, 0.1).effort
+    assert "has been growing" in said
+    assert "not a prediction" in said
+
+
+def test_against_a_reference(reading_of: Made) -> None:
+    logs = {"K": [9.8, 9.9, 10.0], "M": [7.1, 7.9, 7.4], "P": [7.0, 7.7, 7.5]}
+    question = Question(method=Method.DUNNETT, reference="M")
+    found = answer(question, _readings(reading_of, logs))
+    assert found.text.startswith("K is ahead of M; P cannot be told from M with three panels each.")
+    assert {(p.first, p.second) for p in found.pairs} == {("K", "M"), ("M", "P")}
+    with pytest.raises(ValueError, match="reference"):
+        answer(Question(method=Method.DUNNETT, reference="Q"), _readings(reading_of, logs))
+
+
+def test_less_water_is_better(reading_of: Made) -> None:
+    readings = {
+        name: [
+            reading_of(name, f"{name}{i}", 168.0, 1e9, uptake=value)
+            for i, value in enumerate(values)
+        ]
+        for name, values in {"dry": [1.0, 1.1, 1.2], "wet": [5.0, 5.2, 5.1]}.items()
+    }
+    found = answer(Question(quantity="water_uptake", frequency_hz=None), readings)
+    assert found.text.startswith("dry is ahead of wet. Judged by Apparent water uptake at 168 h")
+    (pair,) = found.pairs
+    assert pair.difference is not None
+    assert pair.difference.value == pytest.approx(-4.0)
+    assert pair.difference.unit == "vol-%"
+
+
+def test_average_over_the_course(reading_of: Made) -> None:
+    """K is ahead early and level at the end: over the course it is ahead."""
+    readings: dict[str, list[ReadingAssessment]] = {"K": [], "M": []}
+    for hours, k, m in ((24.0, 10.0, 8.0), (168.0, 10.0, 8.0), (336.0, 8.0, 8.0)):
+        for i, offset in enumerate((-0.1, 0.0, 0.1)):
+            readings["K"].append(reading_of("K", f"K{i}", hours, 10 ** (k + offset)))
+            readings["M"].append(reading_of("M", f"M{i}", hours, 10 ** (m + offset)))
+    found = answer(Question(judge=Judge.AREA_UNDER_COURSE), readings)
+    (pair,) = found.pairs
+    assert pair.differ
+    assert pair.difference is not None
+    expected = (2 * 144 + 1 * 168) / 312  # trapezes, by hand
+    assert pair.difference.value == pytest.approx(expected)
+    assert "from 24 h to 336 h" in found.text
+
+
+def test_time_to_a_limit_is_compared_by_ranks(reading_of: Made) -> None:
+    readings: dict[str, list[ReadingAssessment]] = {"K": [], "M": []}
+    for i in range(5):
+        for hours in (24.0, 168.0, 336.0, 672.0):
+            readings["K"].append(reading_of("K", f"K{i}", hours, 1e9))
+            fallen = hours >= (168.0, 336.0)[i % 2]
+            readings["M"].append(reading_of("M", f"M{i}", hours, 1e5 if fallen else 1e9))
+    limit = Limit("Barrier limit", "modulus", 1e7, "Ω cm²", "", frequency_hz=0.1)
+    found = answer(Question(judge=Judge.TIME_TO_LIMIT, limit=limit), readings)
+    assert found.text.startswith("K is ahead of M. Judged by the time until below 10⁷ Ω cm²")
+    assert "Gehan" in found.text
+    with pytest.raises(ValueError, match="needs the limit"):
+        answer(Question(judge=Judge.TIME_TO_LIMIT), readings)
+
+
+def test_ratings_are_compared_by_ranks_and_never_averaged(reading_of: Made) -> None:
+    readings = {
+        name: [reading_of(name, f"{name}{i}", 672.0, 1e9) for i in range(3)] for name in ("K", "M")
+    }
+    ratings = [
+        VisualRating(f"{name}{i}", 672.0, "iso_4628_3", f"Ri {grade}")
+        for name, grade in (("K", 0), ("M", 3))
+        for i in range(3)
+    ]
+    question = Question(judge=Judge.RATING, scale="iso_4628_3")
+    found = answer(question, readings, ratings)
+    assert [r.formulation for r in found.ranks] == ["K", "M"]
+    assert "a test by ranks cannot prove any difference" in found.text
+    assert found.pairs[0].difference is None
+    assert answer(question, readings, []).ranks == ()
