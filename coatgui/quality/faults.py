@@ -62,6 +62,7 @@ def _deviation(rest: FloatArray, own: FloatArray) -> tuple[FloatArray, FloatArra
     seen = own > _LEAST
     scaled = np.where(seen, rest / np.sqrt(np.maximum(own, _LEAST)), np.nan)
     size = np.abs(scaled)
+    size[~seen.any(axis=1)] = 0.0
     first = 1.4826 * np.nanmedian(size, axis=1)
     inner = size <= _INNER * first[:, None]
     squares = np.where(inner, np.nan_to_num(scaled) ** 2, 0.0).sum(axis=1)

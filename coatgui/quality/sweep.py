@@ -67,8 +67,8 @@ def repeats(
     same = np.nonzero(np.diff(frequency_hz) > -_SAME * frequency_hz[1:])[0]
     for place in same.tolist():
         first, second = impedance[place], impedance[place + 1]
-        percent = 100 * abs(first - second) / max(min(abs(first), abs(second)), 1e-300)
-        if percent > limits["repeat_percent"]:
+        percent = 100 * abs(first - second) / max(abs(first), abs(second), 1e-300)
+        if first and second and percent > limits["repeat_percent"]:
             yield Finding(
                 "repeat_differs",
                 Severity.DOUBT,
