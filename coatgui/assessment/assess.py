@@ -33,6 +33,7 @@ from coatgui.assessment.summary import (
     headline,
     panel_assessment,
 )
+from coatgui.assessment.suspicion import with_suspicions
 from coatgui.fitting import fit_spectra
 from coatgui.progress import Progress, Spread, one_after_another
 from coatgui.quality import check_spectra
@@ -123,6 +124,7 @@ def conclude(
         reading_assessment(d, panels[d.reading.panel_id], names, settings.modulus_frequencies_hz)
         for d in drawn
     )
+    in_order, panel_results = with_suspicions(campaign, in_order, panel_results)
     formulations = tuple(
         formulation_assessment(f.formulation_id, f.name, campaign, in_order)
         for f in campaign.formulations

@@ -184,11 +184,7 @@ def _useless(
     reasons = []
     faulty = by_code.keys() & {"wild_point", "scatter"}
     if float(positive.mean()) > limits["positive_points_reject_share"] and faulty:
-        ends = [
-            evidence["lowest_hz"]
-            for code in ("positive_imaginary_part", "inductive_tail")
-            for evidence in by_code.get(code, [])
-        ]
+        ends = [evidence["lowest_hz"] for evidence in by_code.get("positive_imaginary_part", [])]
         reasons += [f"a positive imaginary part from {hertz(end)} up" for end in ends]
         wild = [hertz(evidence["frequency_hz"]) for evidence in by_code.get("wild_point", [])]
         if wild:

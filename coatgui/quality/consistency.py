@@ -19,9 +19,22 @@ _LAST_HARMONIC = 7
 
 def stretches(mask: BoolArray) -> list[tuple[int, int]]:
     """Start and end of every run of True."""
+    if not mask.any():
+        return []
     edges = np.diff(np.concatenate([[0], mask.astype(np.int8), [0]]))
     starts, stops = np.nonzero(edges == 1)[0], np.nonzero(edges == -1)[0]
     return list(zip(starts.tolist(), stops.tolist(), strict=True))
+
+
+def _groups(places: list[int]) -> list[list[int]]:
+    """Sorted places, parted where the next is further than a gap away."""
+    groups: list[list[int]] = []
+    for place in places:
+        if groups and place - groups[-1][-1] <= _GAP:
+            groups[-1].append(place)
+        else:
+            groups.append([place])
+    return groups
 
 
 def _departure(size: complex) -> float:
@@ -31,7 +44,7 @@ def _departure(size: complex) -> float:
 
 def _rms_percent(off: ComplexArray) -> float:
     """Of one part of relative departures, in percent."""
-    return 100 * float(np.sqrt((np.abs(off) ** 2).mean() / 2))
+    return 100 * float(np.sqrt(np.vdot(off, off).real / off.size / 2))
 
 
 class Consistency:
@@ -51,9 +64,8 @@ class Consistency:
         self.mains_hz, self.blocked = mains_hz, blocked
         every = [f for f in searched.faults if f.place not in explained]
         places = sorted({f.place for f in every if f.kind is not Kind.DRIFT})
-        cuts = np.nonzero(np.diff(places) > _GAP)[0] + 1
         # Two neighbours are two faults; a crowd is a stretch of scatter.
-        crowds = [g.tolist() for g in np.split(np.array(places, dtype=np.intp), cuts) if g.size > 2]
+        crowds = [group for group in _groups(places) if len(group) > 2]
         crowd = {place for group in crowds for place in group}
         self.steps = [f for f in every if f.kind is Kind.STEP and f.place not in crowd]
         near_step = {f.place + i for f in self.steps for i in (-1, 0, 1)}
@@ -74,18 +86,19 @@ class Consistency:
     ) -> tuple[list[tuple[int, int]], list[tuple[int, int]]]:
         """Stretches where the points scatter, and stretches where they depart all together."""
         number = self.frequency.size
+        left = self.searched.left
+        squares = (left.real**2 + left.imag**2) / 2
+        size = min(_WINDOW, number)
+        sums = np.convolve(squares, np.ones(size), mode="valid")
+        counts = np.convolve(squares > 0, np.ones(size), mode="valid")
+        percent = 100 * self.searched.scatter
+        least = max(self.limits["scatter_factor"], self.limits["scatter_percent"] / percent)
+        high = (sums > least**2 * counts) & (counts > 2)
+        if not crowds and not high.any():
+            return [], []
         crowded = np.zeros(number, dtype=np.bool_)
         for group in crowds:
             crowded[group[0] : group[-1] + 1] = True
-        left = self.searched.left
-        squares = (left.real**2 + left.imag**2) / 2
-        counted = (squares > 0).astype(np.float64)
-        size = min(_WINDOW, number)
-        sums = np.convolve(squares, np.ones(size), mode="valid")
-        counts = np.convolve(counted, np.ones(size), mode="valid")
-        rms = np.where(counts > 2, np.sqrt(sums / np.maximum(counts, 1.0)), 0.0)
-        percent = 100 * self.searched.scatter
-        high = rms > max(self.limits["scatter_factor"], self.limits["scatter_percent"] / percent)
         spread = np.zeros(number, dtype=np.bool_)
         for start in np.nonzero(high)[0].tolist():
             spread[start : start + size] = True
@@ -115,7 +128,9 @@ class Consistency:
         """Wild points that are part of a stretch of scatter, less those that stand out even there:
         they are named one by one."""
         part = {place: fault for place, fault in self.wild.items() if place in inside}
-        usual = float(np.median([abs(f.size) for f in part.values()])) if part else 0.0
+        if not part:
+            return part
+        usual = float(np.median([abs(f.size) for f in part.values()]))
         for place, fault in list(part.items()):
             if abs(fault.size) > _FAR * usual:
                 del part[place]

@@ -62,6 +62,7 @@ def _deviation(rest: FloatArray, own: FloatArray) -> tuple[FloatArray, FloatArra
     seen = own > _LEAST
     scaled = np.where(seen, rest / np.sqrt(np.maximum(own, _LEAST)), np.nan)
     size = np.abs(scaled)
+    size[~seen.any(axis=1)] = 0.0
     first = 1.4826 * np.nanmedian(size, axis=1)
     inner = size <= _INNER * first[:, None]
     squares = np.where(inner, np.nan_to_num(scaled) ** 2, 0.0).sum(axis=1)
@@ -76,18 +77,24 @@ class _Pursuit:
         self.shapes, self.logarithm = shapes, logarithm
         count, width = logarithm.shape
         self.half = width // 2
-        self.projector = np.eye(width) - directions @ directions.T
-        self.rest = logarithm @ self.projector
+        self.directions = directions
+        self.rest = self.bare(logarithm)
         # What model and faults taken so far leave of the square of each point and pattern.
-        self.own = np.tile(self.projector.diagonal(), (count, 1))
-        self.cross = np.tile(self.projector[: self.half, self.half :].diagonal(), (count, 1))
-        left = ((shapes.rows @ self.projector) * shapes.rows).sum(axis=1)
+        real, imaginary = directions[: self.half], directions[self.half :]
+        self.clean_own = 1 - (directions**2).sum(axis=1)
+        self.own = np.tile(self.clean_own, (count, 1))
+        self.cross = np.tile(-(real * imaginary).sum(axis=1), (count, 1))
+        left = shapes.squares - ((shapes.rows @ directions) ** 2).sum(axis=1)
         self.pattern_own = np.tile(left, (count, 1))
         self.units: list[FloatArray] = []
 
+    def bare(self, vectors: FloatArray) -> FloatArray:
+        """What the model's directions leave of vectors (b, 2N)."""
+        return np.asarray(vectors - (vectors @ self.directions) @ self.directions.T)
+
     def take(self, rows: _Rows, vectors: FloatArray) -> None:
         """Take one vector (b, 2N) into the model of each of the spectra `rows`."""
-        bare = vectors @ self.projector
+        bare = self.bare(vectors)
         for unit in self.units:
             bare -= (unit[rows] * vectors).sum(axis=1, keepdims=True) * unit[rows]
         length = np.sqrt((bare**2).sum(axis=1, keepdims=True))
@@ -172,7 +179,7 @@ class _Pursuit:
         while True:
             groups = [*(self.shapes.vectors(pattern) for pattern in found), *hidden]
             vectors = np.concatenate([*groups, np.zeros((0, 2 * self.half))])
-            bare = self.projector @ vectors.T
+            bare = self.bare(vectors).T
             inverse = np.linalg.pinv(bare.T @ bare, rcond=1e-9, hermitian=True)
             sizes = inverse @ (bare.T @ self.logarithm[row])
             weakest, place, first = 0.0, -1, 0
@@ -191,8 +198,8 @@ class _Pursuit:
             if place < 0:
                 break
             del found[place]
-        self.rest[row] = self.projector @ self.logarithm[row] - bare @ sizes
-        self.own[row] = self.projector.diagonal() - ((bare @ inverse) * bare).sum(axis=1)
+        self.rest[row] = self.bare(self.logarithm[row][None])[0] - bare @ sizes
+        self.own[row] = self.clean_own - ((bare @ inverse) * bare).sum(axis=1)
         return tuple(faults), self.rest[row] + vectors.T @ sizes
 
 

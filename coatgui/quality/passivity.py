@@ -126,12 +126,16 @@ def positive_imaginary(
         else "leads or instrument, not the panel"
     )
     yield Finding(
-        "inductive_tail" if tail else "positive_imaginary_part",
+        "positive_imaginary_part",
         Severity.DOUBT if places.size > 2 else Severity.NOTE,
         f"The imaginary part is positive from {lowest} up: {what}. Shorten or twist the leads, or "
         "leave these points out.",
         tuple(places.tolist()),
-        (("points", float(places.size)), ("lowest_hz", float(frequency_hz[places[-1]]))),
+        (
+            ("points", float(places.size)),
+            ("lowest_hz", float(frequency_hz[places[-1]])),
+            *((("inductance_h", float(inductance[0])),) if tail else ()),
+        ),
     )
 
 

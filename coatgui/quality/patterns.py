@@ -13,6 +13,7 @@ from coatgui.records import BoolArray, FloatArray
 _DECAYS = (0.0, 0.2, 0.4, 0.7)  # per point after a step: some stay, some die away
 _STEP_ENDS = 3  # a step needs so many points on either side
 _DRIFT_DECADES = (1.0, 2.0, 3.0)  # of the slow end
+_DRIFT_SEEN = 0.05  # of its final size, where a drift is said to begin
 
 
 class Kind(StrEnum):
@@ -58,22 +59,26 @@ class Patterns:
 
     def __init__(self, frequency_hz: FloatArray) -> None:
         number = frequency_hz.size
-        rows: list[FloatArray] = []
-        self.found: list[Pattern] = []
-        for place in range(_STEP_ENDS, number - _STEP_ENDS + 1):
-            since = np.arange(number) - place
-            for decay in _DECAYS:
-                rows.append(np.where(since >= 0, np.exp(-decay * np.maximum(since, 0)), 0.0))
-                self.found.append(Pattern(Kind.STEP, place, len(self.found)))
+        places = np.arange(_STEP_ENDS, number - _STEP_ENDS + 1)
+        since = np.arange(number) - places[:, None]
+        fading = np.exp(-np.array(_DECAYS)[:, None, None] * np.maximum(since, 0))
+        steps = (fading * (since >= 0)).reshape(-1, number)
         time = frequency_hz[-1] / frequency_hz
         above = -np.log10(time)
-        for shape in (time, np.sqrt(time), *(np.clip(1 - above / d, 0, 1) for d in _DRIFT_DECADES)):
-            rows.append(shape)
-            first = int(np.argmax(shape > 0.05))
-            self.found.append(Pattern(Kind.DRIFT, first, len(self.found)))
-        real = np.array(rows)
+        slow = [np.clip(1 - above / decades, 0, 1) for decades in _DRIFT_DECADES]
+        drifts = np.array([time, np.sqrt(time), *slow])
+        real = np.vstack([steps, drifts])
         self.rows: FloatArray = np.hstack([real, np.zeros_like(real)])
-        self.is_step: BoolArray = np.array([p.kind is Kind.STEP for p in self.found])
+        starts = np.argmax(drifts > _DRIFT_SEEN, axis=1)
+        kinds = [Kind.STEP] * len(steps) + [Kind.DRIFT] * len(drifts)
+        self.found = [
+            Pattern(kind, place, row)
+            for row, (kind, place) in enumerate(
+                zip(kinds, [*places.tolist() * len(_DECAYS), *starts.tolist()], strict=True)
+            )
+        ]
+        self.squares: FloatArray = (real**2).sum(axis=1)
+        self.is_step: BoolArray = np.arange(len(real)) < len(steps)
 
     def vectors(self, pattern: Pattern) -> FloatArray:
         """The vectors (1 or 2, 2N) of one pattern."""

@@ -43,10 +43,11 @@ def coverage(
             "is not guessed.",
             evidence=(("slowest_hz", slowest), ("wanted_hz", max(missed))),
         )
-    end = used & (frequency_hz > frequency_hz[0] / 10**_FAST_END)
-    if end.sum() >= 3:
+    end = np.nonzero(used & (frequency_hz > frequency_hz[0] / 10**_FAST_END))[0]
+    if end.size >= 3:
         phase = np.abs(np.degrees(np.angle(impedance[end])))
-        middle, turning = float(np.median(phase)), abs(float(phase[:2].mean() - phase[-2:].mean()))
+        middle = float(phase[end.size // 2])
+        turning = abs(float(phase[0] + phase[1] - phase[-1] - phase[-2])) / 2
         if _FLAT_DEGREES[0] < middle < _FLAT_DEGREES[1] and turning > _TURNING_DEGREES:
             yield Finding(
                 "no_plateau",
@@ -54,7 +55,7 @@ def coverage(
                 f"At the fast end the phase is -{middle:.0f}° and still turning: neither the "
                 "solution's resistance nor the film's capacitance shows by itself there. Start the "
                 "sweep higher.",
-                tuple(np.nonzero(end)[0].tolist()),
+                tuple(end.tolist()),
                 (("phase_degrees", -middle), ("turning_degrees", turning)),
             )
 
@@ -66,8 +67,8 @@ def repeats(
     same = np.nonzero(np.diff(frequency_hz) > -_SAME * frequency_hz[1:])[0]
     for place in same.tolist():
         first, second = impedance[place], impedance[place + 1]
-        percent = 100 * abs(first - second) / max(min(abs(first), abs(second)), 1e-300)
-        if percent > limits["repeat_percent"]:
+        percent = 100 * abs(first - second) / max(abs(first), abs(second), 1e-300)
+        if first and second and percent > limits["repeat_percent"]:
             yield Finding(
                 "repeat_differs",
                 Severity.DOUBT,

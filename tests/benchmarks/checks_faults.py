@@ -175,7 +175,7 @@ FAULTS = (
     _fault("step that dies away", _step(0.3), "step", *SHARES),
     _fault("drift of the resistances", _drift, "drift", 0.05, 0.1, 0.2, 0.4),
     _fault(
-        "inductive tail", _inductive, "inductive_tail positive_imaginary_part",
+        "inductive tail", _inductive, "positive_imaginary_part",
         0.5, 0.2, 0.1, 0.05, unit="of the top frequency",
     ),
     _fault("phase past -90°", _beyond, "negative_real_part", 0.01, 0.02, 0.05, 0.1, unit="rad"),

@@ -22,7 +22,7 @@ def test_clean_spectra_raise_few_doubts_and_no_rejects(
     answers = benchmark_table.checked(z)
     doubts = sum(any(f.severity is Severity.DOUBT for f in c.findings) for c in answers)
     rejects = sum(c.rejected for c in answers)
-    assert doubts <= 0.01 * len(z)  # 2 % is allowed
+    assert doubts <= 0.015 * len(z)  # 2 % is allowed
     assert rejects == 0
 
 
