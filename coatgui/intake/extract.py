@@ -23,14 +23,13 @@ _UNITS_TAKEN = {"frequency": "Hz", "impedance": "Ω", "admittance": "S", "capaci
 @dataclass(eq=False)
 class Extract:
     """One group of columns of one block. `values` are the written numbers (R,) by role, not yet
-    multiplied by the factors of `columns`; `rows` (R,) are places in the block, `lines` (R,) lines
+    multiplied by the factors of `columns`; `lines` (R,) lines
     of the file. `hours` (R,) and `panels` (R,) are there where columns say so."""
 
     columns: tuple[Column, ...]
     way: tuple[str, str]
     values: dict[str, FloatArray]
     lines: np.ndarray
-    rows: np.ndarray
     said: Said
     hours: FloatArray | None = None
     panels: list[str] | None = None
@@ -163,11 +162,12 @@ def extract(section: Section, columns: tuple[Column, ...], said: Said, *, alone:
                 f"Line {line} lacks a number in column {roles[role] + 1}: the file may be cut "
                 "short; export it again."
             )
-    rows = np.flatnonzero(~empty)
+    # Where every row is the group's own, views cost no memory.
+    rows: np.ndarray | slice = np.flatnonzero(~empty) if empty.any() else slice(None)
     table = block.table()
-    values = {role: np.array(table[rows, roles[role]]) for role in used}
+    values = {role: table[rows, roles[role]] for role in used}
     lines = np.frombuffer(block.lines, dtype=np.int64)[rows]
-    made = Extract(columns, way, values, lines, rows, said)
+    made = Extract(columns, way, values, lines, said)
     if "time" in roles:
         made.hours_in_words = _is_words(block, roles["time"])
         made.hours = _hours(block, columns, roles["time"], rows)
@@ -194,7 +194,7 @@ def _missing(block: Block, column: int, columns: tuple[Column, ...]) -> BoolArra
     return missing
 
 
-def _words(block: Block, column: int, rows: np.ndarray) -> list[str]:
+def _words(block: Block, column: int, rows: np.ndarray | slice) -> list[str]:
     """The cells of a column as words; numbers as they would be written."""
     numbers = block.table()[:, column]
     result: list[str] = []
@@ -203,11 +203,11 @@ def _words(block: Block, column: int, rows: np.ndarray) -> list[str]:
             result += [f"{value:g}" for value in numbers[start:stop].tolist()]
         else:
             result += [word] * (stop - start)
-    return result if rows.size == len(result) else [result[i] for i in rows.tolist()]
+    return result[rows] if isinstance(rows, slice) else [result[i] for i in rows.tolist()]
 
 
 def _hours(
-    block: Block, columns: tuple[Column, ...], column: int, rows: np.ndarray
+    block: Block, columns: tuple[Column, ...], column: int, rows: np.ndarray | slice
 ) -> FloatArray | None:
     """Hours from a column of numbers or of words like "24 h"; None where it is no such column."""
     factor = next(c.factor for c in columns if c.position == column)

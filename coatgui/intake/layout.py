@@ -198,6 +198,8 @@ def _said(rows: list[TextRow], bare: bool) -> Said:
     said = Said()
     for row in rows:
         cells = [str(cell).strip() for cell in row.cells if cell != ""]
+        if len(cells) == 1:
+            cells = [cell.strip() for cell in re.split(r"[;\t|,]", cells[0]) if cell.strip()]
         pairs = [tuple(cells)] if len(cells) == 2 else []
         found = _KEY_AND_VALUE.match(row.raw or " ".join(cells))
         if found:

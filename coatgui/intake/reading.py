@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import codecs
+import re
 from collections.abc import Iterator
 from dataclasses import replace
 from itertools import islice
@@ -10,6 +11,7 @@ from itertools import islice
 from coatgui.intake.cut import NOTHING, find_cut
 from coatgui.intake.decode import encoding_of, lines_of
 from coatgui.intake.errors import NoSpectrum, Unreadable
+from coatgui.intake.labels import label_in
 from coatgui.intake.layout import Section, sections_of
 from coatgui.intake.segments import segment_rows, segment_text
 from coatgui.intake.spectra import Origin, Piece, pieces, pieces_as_told, with_parts
@@ -19,6 +21,11 @@ from coatgui.records import Dialect, FoundReading, Source
 _SAMPLE_LINES = 400
 _SAMPLE_CHARACTERS = 400_000
 WORKBOOK = "xlsx"
+# The names that programs give to sheets by themselves.
+_ANY_SHEET = re.compile(
+    r"(sheet|tabelle|blatt|feuil|feuille|hoja|folha|planilha|plan|foglio|data|daten)\s*\d*",
+    re.IGNORECASE,
+)
 
 
 def read_spectra(data: bytes, name: str = "") -> list[Piece]:
@@ -65,6 +72,7 @@ def _of_workbook(data: bytes) -> list[Piece]:
         except Unreadable as problem:
             raise type(problem)(f"Sheet '{sheet.title[:40]}': {problem}") from None
         for piece in of_sheet:
+            piece = _named_by_sheet(piece, sheet.title)
             part = f"{sheet.title}, {piece.part}".strip(", ") if len(sheets) > 1 else piece.part
             found.append(replace(piece, part=part))
     if not found:
@@ -73,6 +81,19 @@ def _of_workbook(data: bytes) -> list[Piece]:
         replace(p, dialect=replace(p.dialect, remarks=(*p.dialect.remarks, *passed_over)))
         for p in found
     ]
+
+
+def _named_by_sheet(piece: Piece, title: str) -> Piece:
+    """Panel and exposure time from the sheet's name, where its cells do not say."""
+    panel, hours = label_in(title)
+    if hours is None and (piece.exposure_h is None or _ANY_SHEET.fullmatch(panel)):
+        return piece
+    return replace(
+        piece,
+        panel=piece.panel or panel,
+        exposure_h=hours if piece.exposure_h is None else piece.exposure_h,
+        named_by_column=piece.named_by_column and bool(piece.panel),
+    )
 
 
 def _of_sheet(sheet: Sheet) -> list[Piece]:

@@ -14,7 +14,7 @@ from dataclasses import dataclass, field
 
 import numpy as np
 
-from coatgui.intake.cut import Cut
+from coatgui.intake.cut import BLANKS, Cut
 from coatgui.intake.errors import Unreadable
 from coatgui.intake.numbers import Style, number
 from coatgui.records import FloatArray
@@ -102,6 +102,18 @@ class Segmenter:
         else:
             self.numbers(line, values, words, cells, raw)
 
+    def more(self, line: int, values: list[float]) -> bool:
+        """A row of nothing but numbers in a table under way, the usual case; False where it is
+        anything else and wants a closer look."""
+        block = self._block
+        if block is None or block.words or len(values) != block.width:
+            return False
+        if len(block.lines) < _FEWEST_ROWS or not math.isfinite(sum(values)):
+            return False
+        block.numbers.extend(values)
+        block.lines.append(line)
+        return True
+
     def numbers(
         self,
         line: int,
@@ -151,19 +163,19 @@ def segment_text(lines: Iterable[str], cut: Cut) -> list[Piece]:
     """The pieces of a text file."""
     segmenter = Segmenter(cut.style)
     split = cut.splitter()
+    between = None if cut.delimiter == BLANKS else cut.delimiter
     comma = cut.style.decimal_sign == ","
     at_a_glance = not cut.style.thousands and not (comma and cut.delimiter == ",")
     for line, raw in enumerate(lines, start=1):
         # Python's numbers may hold underscores; a point among decimal commas needs a closer look.
         if at_a_glance and "_" not in raw and not (comma and "." in raw):
-            cells = split(raw.replace(",", ".") if comma else raw)
+            plain = raw.replace(",", ".") if comma else raw
             try:
-                values = list(map(float, cells))
+                values = list(map(float, plain.split(between)))
             except ValueError:
                 pass
             else:
-                if len(values) >= 2 and all(map(math.isfinite, values)):
-                    segmenter.numbers(line, values, {}, cells, raw)
+                if segmenter.more(line, values):
                     continue
         found = _COMMENT.match(raw)
         if found:

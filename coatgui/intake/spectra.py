@@ -82,7 +82,7 @@ def pieces(sections: Sequence[Section], after: Sequence[TextRow], origin: Origin
         _refuse_broken_end(after, extracts)
         remarks.append(f"Lines from {after[0].line} on hold no table and were taken as a footer.")
     _settle_units(extracts)
-    doubts = [*passed_over, *_settle_signs(extracts)]
+    doubts = (*passed_over, *_settle_signs(extracts))
     result: list[Piece] = []
     for made in extracts:
         result += _cut(made, origin, [*remarks, *made.remarks, *doubts], doubts)
@@ -108,7 +108,7 @@ def pieces_as_told(sections: Sequence[Section], dialect: Dialect) -> list[Piece]
             continue
         made = extract(section, dialect.columns, section.said, alone=False)
         made.told = True
-        found += _cut(made, origin, [], [])
+        found += _cut(made, origin, [], ())
     return [p for p in found if not first or p.dialect.first_data_line == first]
 
 
@@ -204,7 +204,7 @@ def _settle_signs(extracts: Sequence[Extract]) -> list[str]:
 
 
 def _cut(
-    made: Extract, origin: Origin, remarks: Sequence[str], doubts: Sequence[str]
+    made: Extract, origin: Origin, remarks: Sequence[str], doubts: tuple[str, ...]
 ) -> list[Piece]:
     """The spectra of one extract."""
     values = made.scaled()
@@ -214,6 +214,8 @@ def _cut(
     impedance = impedance_of(values, made.way, frequency)
     _refuse_not_measured(frequency, impedance, made)
     refuse_contradiction(values, impedance)
+    del values  # of a large file, as much as its spectra
+    told = tuple(dict.fromkeys(remarks))
     result = []
     for hours, panel, rows in _parts(made, frequency):
         if rows.size < _FEWEST_POINTS:
@@ -231,7 +233,7 @@ def _cut(
             int(made.lines[rows[0]]),
             made.columns,
             bool(own[0] < own[-1]),
-            tuple(dict.fromkeys(remarks)),
+            told,
         )
         said = made.said
         result.append(
@@ -245,7 +247,7 @@ def _cut(
                 said.moment,
                 said.moment_unsure,
                 made.per_area,
-                tuple(doubts),
+                doubts,
             )
         )
     return result
@@ -273,14 +275,26 @@ def _parts(made: Extract, frequency: FloatArray) -> list[tuple[float | None, str
     several follow each other."""
     size = frequency.size
     hours = _exposures(made, size)
-    keys: dict[tuple[float | None, str], int] = {}
-    times = [None] * size if hours is None else hours.tolist()
-    panels = made.panels or [""] * size
-    codes = np.fromiter(
-        (keys.setdefault(key, len(keys)) for key in zip(times, panels, strict=True)),
+    times: list[float | None] = [None]
+    time_codes = np.zeros(size, dtype=np.int64)
+    if hours is not None:
+        distinct, time_codes = np.unique(hours, return_inverse=True)
+        times = list(distinct.tolist())
+    panels: dict[str, int] = {}
+    panel_codes = np.fromiter(
+        (panels.setdefault(panel, len(panels)) for panel in made.panels or [""] * size),
         dtype=np.int64,
         count=size,
     )
+    names = list(panels)
+    # One number for each pair, in the order in which the pairs first come.
+    pairs, first, codes = np.unique(
+        time_codes * len(names) + panel_codes, return_index=True, return_inverse=True
+    )
+    rank = np.empty(pairs.size, dtype=np.int64)
+    rank[np.argsort(first)] = np.arange(pairs.size)
+    codes = rank[codes]
+    keys = [(times[p // len(names)], names[p % len(names)]) for p in pairs[np.argsort(first)]]
     order = np.argsort(codes, kind="stable")
     cuts = np.flatnonzero(np.diff(codes[order])) + 1
     result = []
@@ -311,7 +325,7 @@ def _sweeps(frequency: FloatArray, rows: np.ndarray, made: Extract) -> list[np.n
         return [rows]
     with np.errstate(all="ignore"):
         steps = np.diff(np.log10(frequency[rows]))
-    if not np.isfinite(steps).all():
+    if not np.isfinite(steps).all() or (steps > 0).all() or (steps < 0).all():
         return [rows]
     # Most sweeps run one way throughout; one that turns round has no median to go by.
     way = np.sign(np.median(steps)) or np.sign(steps[np.flatnonzero(steps)[:1]].sum())

@@ -26,6 +26,7 @@ from coatgui.intake.segments import MOST_COLUMNS, Cell
 _MOST_CELLS = 500_000
 _MOST_ROWS = 200_000
 _MOST_SHEETS = 200
+_LAST_ROW = 1_048_576
 _MOST_UNPACKED = 64_000_000
 _MOST_TEXT = 20_000_000
 _CHUNK = 1 << 16
@@ -61,13 +62,7 @@ class Sheet:
             return
         for own in starts.values():
             others = [(a, b) for a, b, _ in bands if (a, b) not in own]
-            yield [
-                (number, [
-                    "" if any(a <= i < b for a, b in others) else cell
-                    for i, cell in enumerate(cells)
-                ])
-                for number, cells in self.rows
-            ]  # fmt: skip
+            yield [(number, _without(cells, others)) for number, cells in self.rows]
 
     def _bands(self) -> list[tuple[int, int, int]]:
         """Columns that stand together and hold numbers: first, up to, first row of numbers."""
@@ -98,6 +93,15 @@ class Sheet:
             if len(rows) >= 1:
                 result.append((a, b, min(rows)))
         return result
+
+
+def _without(cells: Sequence[Cell], bands: Sequence[tuple[int, int]]) -> list[Cell]:
+    kept: list[Cell] = [
+        "" if any(a <= i < b for a, b in bands) else cell for i, cell in enumerate(cells)
+    ]
+    while kept and kept[-1] == "":
+        kept.pop()
+    return kept
 
 
 def is_workbook(data: bytes) -> bool:
@@ -296,6 +300,8 @@ class _Rows:
             self._inside = True
         elif tag == "row":
             given = int(attributes.get("r", self._row + 1))
+            if given > _LAST_ROW:
+                raise Unreadable(_DAMAGED)
             self._row = given if given > self._row else self._row + 1
             self._column = -1
 
