@@ -6,23 +6,20 @@ import time
 from collections.abc import Callable
 from pathlib import Path
 
-from PySide6.QtCore import QModelIndex, QSettings, Qt
+from PySide6.QtCore import QSettings, Qt
 from PySide6.QtGui import QAction, QCloseEvent, QDragEnterEvent, QDropEvent, QKeySequence
 from PySide6.QtWidgets import (
     QApplication,
     QButtonGroup,
     QFileDialog,
-    QFrame,
     QHBoxLayout,
     QLabel,
-    QLineEdit,
     QMainWindow,
     QMenu,
     QProgressBar,
     QPushButton,
     QSplitter,
     QStackedWidget,
-    QTreeView,
     QVBoxLayout,
     QWidget,
 )
@@ -40,7 +37,7 @@ from coatgui.window.places.doubts_place import DoubtsPlace
 from coatgui.window.places.map_place import MapPlace
 from coatgui.window.places.place import Place
 from coatgui.window.places.reading_place import ReadingPlace
-from coatgui.window.tree_model import TreeModel
+from coatgui.window.project_tree import ProjectTree
 from coatgui.window.welcome import Trouble, Welcome
 
 _FILES = "Spectra and lists (*.csv *.txt *.dat *.tsv *.xlsx)"
@@ -113,25 +110,8 @@ class MainWindow(QMainWindow):
     def _work(self) -> QWidget:
         splitter = QSplitter()
         splitter.setHandleWidth(1)
-        side = QFrame()
-        side.setObjectName("side")
-        left = QVBoxLayout(side)
-        left.setContentsMargins(8, 8, 8, 8)
-        self.filter = QLineEdit()
-        self.filter.setPlaceholderText("filter panels…")
-        self.filter.setAccessibleName("Filter panels by word")
-        self.filter.textChanged.connect(self._fill_tree)
-        self.model = TreeModel(self)
-        self.tree = QTreeView()
-        self.tree.setAccessibleName("Project tree")
-        self.tree.setHeaderHidden(True)
-        self.tree.setUniformRowHeights(True)
-        self.tree.setIndentation(14)
-        self.tree.setModel(self.model)
-        self.tree.selectionModel().currentChanged.connect(self._tree_picked)
-        left.addWidget(self.filter)
-        left.addWidget(self.tree, 1)
-        splitter.addWidget(side)
+        self.project = ProjectTree(self.desk, self.tone)
+        splitter.addWidget(self.project)
         middle = QWidget()
         column = QVBoxLayout(middle)
         column.setContentsMargins(0, 0, 0, 0)
@@ -209,32 +189,13 @@ class MainWindow(QMainWindow):
                 "work": self.desk.job is not None,
             }.get(entry.needs, name is not None)
             action.setEnabled(there)
-        self._fill_tree()
+        self.project.refresh()
         for place in self.places:
             place.show_campaign()
         self._show_facts()
 
-    def _fill_tree(self) -> None:
-        self.model.show(self.desk.campaign, self.desk.assessment, self.filter.text())
-        self.tree.expandToDepth(1)
-        self._mark_in_tree()
-
-    def _mark_in_tree(self) -> None:
-        index = self.model.index_of(self.desk.selection)
-        if index.isValid():
-            blocked = self.tree.selectionModel().blockSignals(True)
-            self.tree.setCurrentIndex(index)
-            self.tree.scrollTo(index)
-            self.tree.selectionModel().blockSignals(blocked)
-            self.tree.viewport().update()
-
-    def _tree_picked(self, index: QModelIndex) -> None:
-        node = self.model.node(index)
-        if node.kind == "reading":
-            self.desk.select(node.key)
-
     def _selected(self) -> None:
-        self._mark_in_tree()
+        self.project.mark(self.desk.selection)
         for place in self.places:
             place.show_selection()
         self._show_facts()
@@ -346,6 +307,15 @@ class MainWindow(QMainWindow):
     def redo(self) -> None:
         self.desk.redo()
 
+    def rename(self) -> None:
+        self.project.rename()
+
+    def remove(self) -> None:
+        self.project.remove()
+
+    def add_formulation(self) -> None:
+        self.project.add_formulation()
+
     def go(self, place: int) -> None:
         self.stack.setCurrentIndex(place)
         self.buttons.button(place).setChecked(True)
@@ -379,6 +349,7 @@ class MainWindow(QMainWindow):
             palette.apply(application, self.tone)
         for place in self.places:
             place.paint_in(self.tone)
+        self.project.paint_in(self.tone)
         self.strip.tone = self.tone
         self.strip.update()
 

@@ -30,7 +30,9 @@ def settled(window: MainWindow) -> Callable[[], bool]:
 
 
 def test_the_whole_job(window: MainWindow, wait: Wait, tmp_path: Path) -> None:
-    QAbstractItemModelTester(window.model, QAbstractItemModelTester.FailureReportingMode.Fatal)
+    QAbstractItemModelTester(
+        window.project.model, QAbstractItemModelTester.FailureReportingMode.Fatal
+    )
     window.desk.open(sample_panels())
     wait(settled(window))
     desk = window.desk
@@ -41,7 +43,7 @@ def test_the_whole_job(window: MainWindow, wait: Wait, tmp_path: Path) -> None:
     reading = next(r for r in desk.assessment.readings if r.panel == "P1" and r.exposure_h == 504)
     desk.select(reading.reading_id)
     assert "P1" in window.facts.text()
-    assert window.model.node(window.tree.currentIndex()).key == reading.reading_id
+    assert window.project.model.node(window.project.view.currentIndex()).key == reading.reading_id
 
     from coatgui.campaign import operations
 
@@ -180,7 +182,7 @@ def test_numbers_are_written_as_the_trade_does(
 
 
 def test_the_tree_is_a_sound_model(application: object) -> None:
-    model: QAbstractItemModel = TreeModel()
+    model: QAbstractItemModel = TreeModel(palette.colours(False))
     QAbstractItemModelTester(model, QAbstractItemModelTester.FailureReportingMode.Fatal)
 
 
