@@ -124,6 +124,11 @@ class MainWindow(QMainWindow):
             kind(self.desk, self.tone)
             for kind in (MapPlace, ReadingPlace, CoursePlace, DoubtsPlace)
         ]
+        for place in self.places:
+            if isinstance(place, MapPlace):
+                place.cells.opened.connect(self.go_reading)
+            elif isinstance(place, DoubtsPlace):
+                place.opened.connect(self.go_reading)
         self.buttons = QButtonGroup(self)
         for i, place in enumerate(self.places):
             button = QPushButton(place.noun)
@@ -192,7 +197,15 @@ class MainWindow(QMainWindow):
         self.project.refresh()
         for place in self.places:
             place.show_campaign()
+        self._count_doubts()
         self._show_facts()
+
+    def _count_doubts(self) -> None:
+        """How many wait for an eye stands beside the place's noun."""
+        for number, place in enumerate(self.places):
+            if isinstance(place, DoubtsPlace):
+                count = f"  {len(place.doubts)}" if place.doubts else ""
+                self.buttons.button(number).setText(f"{place.noun}{count}")
 
     def _selected(self) -> None:
         self.project.mark(self.desk.selection)
@@ -319,8 +332,9 @@ class MainWindow(QMainWindow):
     def go(self, place: int) -> None:
         self.stack.setCurrentIndex(place)
         self.buttons.button(place).setChecked(True)
-        # The reading's own place shows the same values where they lie in the coating.
-        self.facts.setVisible(not isinstance(self.places[place], ReadingPlace))
+        # The reading's own place shows the same values where they lie in the coating, and the
+        # doubts show their evidence.
+        self.facts.setVisible(isinstance(self.places[place], (MapPlace, CoursePlace)))
         self.strip.setVisible(not isinstance(self.places[place], DoubtsPlace))
 
     def go_map(self) -> None:

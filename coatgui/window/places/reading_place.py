@@ -24,7 +24,7 @@ from coatgui.records import Reading, ReadingAssessment
 from coatgui.window.desk import Desk
 from coatgui.window.numbers import WORDS, said
 from coatgui.window.palette import Colours
-from coatgui.window.places.place import Place, plain_label
+from coatgui.window.places.place import Place, plain_label, plain_tip
 from coatgui.window.section import SectionView, section_of
 from coatgui.window.spectrum_plots import Drawn, SpectrumPlots
 
@@ -202,7 +202,9 @@ class ReadingPlace(Place):
         for i, (symbol, meaning, quantity) in enumerate(rows):
             for j, text in enumerate((symbol, said(quantity))):
                 item = QTableWidgetItem(text)
-                item.setToolTip(f"{meaning} ({WORDS[quantity.bound]}). {quantity.method}")
+                item.setToolTip(
+                    plain_tip(f"{meaning} ({WORDS[quantity.bound]}). {quantity.method}")
+                )
                 self.table.setItem(i, j, item)
 
     def _pointed(self, words: str) -> None:
