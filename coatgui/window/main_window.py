@@ -93,7 +93,7 @@ class MainWindow(QMainWindow):
         for entry in ACTIONS:
             menu = menus.get(entry.menu)
             if menu is None:
-                menu = menus[entry.menu] = self.menuBar().addMenu(entry.menu)
+                menu = menus[entry.menu] = self.menuBar().addMenu(f"&{entry.menu}")
             action = QAction(entry.name, self)
             action.setToolTip(entry.tip)
             action.setStatusTip(entry.tip)
@@ -139,7 +139,6 @@ class MainWindow(QMainWindow):
             self.buttons.addButton(button, i)
             bar.addWidget(button)
             self.stack.addWidget(place)
-        self.buttons.button(0).setChecked(True)
         self.buttons.idClicked.connect(self.go)
         column.addLayout(bar)
         column.addWidget(self.stack, 1)
@@ -151,6 +150,7 @@ class MainWindow(QMainWindow):
         splitter.addWidget(self.facts)
         splitter.setSizes([210, 820, 250])
         splitter.setStretchFactor(1, 1)
+        self.go(0)
         return splitter
 
     def _build_status(self) -> None:
@@ -332,6 +332,10 @@ class MainWindow(QMainWindow):
     def go(self, place: int) -> None:
         self.stack.setCurrentIndex(place)
         self.buttons.button(place).setChecked(True)
+        policy = Qt.FocusPolicy
+        for button in self.buttons.buttons():
+            # Tab comes to the open place's button; left and right go on to the others.
+            button.setFocusPolicy(policy.StrongFocus if button.isChecked() else policy.ClickFocus)
         # The reading's own place shows the same values where they lie in the coating, and the
         # doubts show their evidence.
         self.facts.setVisible(isinstance(self.places[place], (MapPlace, CoursePlace)))

@@ -60,7 +60,7 @@ def shortcut(
 def choose(window: MainWindow, menu: str, name: str) -> None:
     """Open a menu with the mouse and choose an entry with the mouse."""
     bar = window.menuBar()
-    top = next(a for a in bar.actions() if a.text() == menu)
+    top = next(a for a in bar.actions() if a.text() == f"&{menu}")
     QTest.mouseClick(bar, LEFT, pos=bar.actionGeometry(top).center())
     shown = QApplication.activePopupWidget()
     assert isinstance(shown, QMenu)

@@ -13,7 +13,7 @@ pytest.importorskip("PySide6")
 
 from PySide6.QtCore import QAbstractItemModel, Qt
 from PySide6.QtTest import QAbstractItemModelTester, QTest
-from PySide6.QtWidgets import QAbstractButton, QComboBox, QLineEdit, QWidget
+from PySide6.QtWidgets import QWidget
 
 from coatgui.shipped import sample_panels
 from coatgui.window import palette
@@ -119,41 +119,6 @@ def test_a_folder_that_is_none_is_answered_in_a_sentence(
     assert window.trouble.isVisible()
     assert "x.coatgui" in window.trouble.words.text()
     assert window.desk.file is None
-
-
-def test_every_control_is_named(window: MainWindow) -> None:
-    for widget in window.findChildren(QWidget):
-        # Qt's own parts of a control carry names that begin with qt_.
-        if widget.objectName().startswith("qt_"):
-            continue
-        if isinstance(widget, QAbstractButton) and widget.parent() is not None:
-            assert widget.text() or widget.accessibleName(), widget
-        if isinstance(widget, (QComboBox,)) or (
-            isinstance(widget, QLineEdit) and not isinstance(widget.parent(), QComboBox)
-        ):
-            assert widget.accessibleName(), widget
-
-
-def luminance(colour: str) -> float:
-    parts = [int(colour[i : i + 2], 16) / 255 for i in (1, 3, 5)]
-    linear = [p / 12.92 if p <= 0.04045 else ((p + 0.055) / 1.055) ** 2.4 for p in parts]
-    return 0.2126 * linear[0] + 0.7152 * linear[1] + 0.0722 * linear[2]
-
-
-def contrast(one: str, other: str) -> float:
-    light, dark = sorted((luminance(one), luminance(other)), reverse=True)
-    return (light + 0.05) / (dark + 0.05)
-
-
-@pytest.mark.parametrize("dark", [False, True])
-def test_text_has_contrast(dark: bool) -> None:
-    tone = palette.colours(dark)
-    for ink in (tone.ink, tone.second, tone.verdigris, tone.rust, tone.amber, tone.slate):
-        for ground in (tone.ground, tone.panel):
-            assert contrast(ink, ground) >= 4.5
-    for share in range(21):
-        ground, ink = palette.ramp(share / 20, dark)
-        assert contrast(ground.name(), ink.name()) >= 4.5
 
 
 @pytest.mark.parametrize(("low", "high"), [(-2.0, 5.0), (3.1, 3.4), (9.0, 9.02), (-3.0, 11.0)])

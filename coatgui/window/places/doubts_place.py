@@ -57,6 +57,7 @@ class DoubtsPlace(Place):
         self.column.addWidget(self.counted)
         self.list = QListWidget()
         self.list.setAccessibleName("Findings to settle")
+        self.list.setAccessibleDescription("Up and down pick a finding, return opens its spectrum")
         self.list.setWordWrap(True)
         self.list.setSpacing(3)
         self.list.setHorizontalScrollBarPolicy(Qt.ScrollBarPolicy.ScrollBarAlwaysOff)

@@ -77,6 +77,7 @@ class Cells(QWidget):
         self.tone = tone
         self.setFocusPolicy(Qt.FocusPolicy.StrongFocus)
         self.setAccessibleName("Exposure map: panels by exposure time")
+        self.setAccessibleDescription("Arrow keys go from cell to cell, return opens the reading")
         self.setMouseTracking(True)
         self.rows: list[tuple[str, str]] = []  # (kind, text): formulation bands and panels
         self.times: list[float] = []
@@ -258,6 +259,7 @@ class MapPlace(Place):
         bar = QHBoxLayout()
         self.chooser = QComboBox()
         self.chooser.setAccessibleName("Quantity shown in the map")
+        self.chooser.setAccessibleDescription("What the cells are shaded by and numbered with")
         self.chooser.addItems(list(QUANTITIES))
         self.chooser.currentIndexChanged.connect(self.show_campaign)
         self.legend = plain_label("small")

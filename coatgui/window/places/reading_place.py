@@ -55,6 +55,7 @@ class ReadingPlace(Place):
         under = QHBoxLayout()
         self.overlay = QComboBox()
         self.overlay.setAccessibleName("Spectra drawn with this one")
+        self.overlay.setAccessibleDescription("Other spectra, fainter the shorter the exposure")
         self.overlay.addItems(list(_OVERLAYS))
         self.overlay.currentIndexChanged.connect(self.show_selection)
         self.read_out = plain_label("small")
@@ -69,6 +70,8 @@ class ReadingPlace(Place):
         area = QScrollArea()
         area.setWidget(self.findings)
         area.setWidgetResizable(True)
+        area.setAccessibleName("Findings on this reading")
+        area.setAccessibleDescription("Up and down scroll")
         area.setFrameShape(QFrame.Shape.NoFrame)
         area.setHorizontalScrollBarPolicy(Qt.ScrollBarPolicy.ScrollBarAlwaysOff)
         self.findings_area = area
@@ -80,6 +83,7 @@ class ReadingPlace(Place):
         side.setSpacing(8)
         self.model = QComboBox()
         self.model.setAccessibleName("Coating model of this reading")
+        self.model.setAccessibleDescription("Let the data choose, or insist on a model")
         self.model.addItem(_AUTOMATIC, "")
         for name, model in catalogue().items():
             self.model.addItem(model.name, name)
@@ -93,6 +97,8 @@ class ReadingPlace(Place):
         self.table = QTableWidget(0, 2)
         self.table.setAccessibleName("Fitted parameters with limits")
         self.table.setHorizontalHeaderLabels(["parameter", "value (95 % limits)"])
+        self.table.setAccessibleDescription("A row for each parameter; tips say how it was found")
+        self.table.setTabKeyNavigation(False)  # Tab leads on to the next control
         self.table.verticalHeader().hide()
         self.table.verticalHeader().setMinimumSectionSize(18)
         self.table.verticalHeader().setDefaultSectionSize(21)
