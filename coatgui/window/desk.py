@@ -239,6 +239,7 @@ class Desk(QObject):
             self._stale, self._halted = True, False
             self._start(self._judged, _assess, self.file.campaign, self.file)
         elif self.file is not None:
+            self._put_aside()
             self.assessment, self._stale = None, False
             self.assessed.emit()
 

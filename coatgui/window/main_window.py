@@ -6,23 +6,20 @@ import time
 from collections.abc import Callable
 from pathlib import Path
 
-from PySide6.QtCore import QModelIndex, QSettings, Qt
+from PySide6.QtCore import QSettings, Qt
 from PySide6.QtGui import QAction, QCloseEvent, QDragEnterEvent, QDropEvent, QKeySequence
 from PySide6.QtWidgets import (
     QApplication,
     QButtonGroup,
     QFileDialog,
-    QFrame,
     QHBoxLayout,
     QLabel,
-    QLineEdit,
     QMainWindow,
     QMenu,
     QProgressBar,
     QPushButton,
     QSplitter,
     QStackedWidget,
-    QTreeView,
     QVBoxLayout,
     QWidget,
 )
@@ -40,7 +37,7 @@ from coatgui.window.places.doubts_place import DoubtsPlace
 from coatgui.window.places.map_place import MapPlace
 from coatgui.window.places.place import Place
 from coatgui.window.places.reading_place import ReadingPlace
-from coatgui.window.tree_model import TreeModel
+from coatgui.window.project_tree import ProjectTree
 from coatgui.window.welcome import Trouble, Welcome
 
 _FILES = "Spectra and lists (*.csv *.txt *.dat *.tsv *.xlsx)"
@@ -96,7 +93,7 @@ class MainWindow(QMainWindow):
         for entry in ACTIONS:
             menu = menus.get(entry.menu)
             if menu is None:
-                menu = menus[entry.menu] = self.menuBar().addMenu(entry.menu)
+                menu = menus[entry.menu] = self.menuBar().addMenu(f"&{entry.menu}")
             action = QAction(entry.name, self)
             action.setToolTip(entry.tip)
             action.setStatusTip(entry.tip)
@@ -113,25 +110,8 @@ class MainWindow(QMainWindow):
     def _work(self) -> QWidget:
         splitter = QSplitter()
         splitter.setHandleWidth(1)
-        side = QFrame()
-        side.setObjectName("side")
-        left = QVBoxLayout(side)
-        left.setContentsMargins(8, 8, 8, 8)
-        self.filter = QLineEdit()
-        self.filter.setPlaceholderText("filter panels…")
-        self.filter.setAccessibleName("Filter panels by word")
-        self.filter.textChanged.connect(self._fill_tree)
-        self.model = TreeModel(self)
-        self.tree = QTreeView()
-        self.tree.setAccessibleName("Project tree")
-        self.tree.setHeaderHidden(True)
-        self.tree.setUniformRowHeights(True)
-        self.tree.setIndentation(14)
-        self.tree.setModel(self.model)
-        self.tree.selectionModel().currentChanged.connect(self._tree_picked)
-        left.addWidget(self.filter)
-        left.addWidget(self.tree, 1)
-        splitter.addWidget(side)
+        self.project = ProjectTree(self.desk, self.tone)
+        splitter.addWidget(self.project)
         middle = QWidget()
         column = QVBoxLayout(middle)
         column.setContentsMargins(0, 0, 0, 0)
@@ -144,6 +124,11 @@ class MainWindow(QMainWindow):
             kind(self.desk, self.tone)
             for kind in (MapPlace, ReadingPlace, CoursePlace, DoubtsPlace)
         ]
+        for place in self.places:
+            if isinstance(place, MapPlace):
+                place.cells.opened.connect(self.go_reading)
+            elif isinstance(place, DoubtsPlace):
+                place.opened.connect(self.go_reading)
         self.buttons = QButtonGroup(self)
         for i, place in enumerate(self.places):
             button = QPushButton(place.noun)
@@ -154,7 +139,6 @@ class MainWindow(QMainWindow):
             self.buttons.addButton(button, i)
             bar.addWidget(button)
             self.stack.addWidget(place)
-        self.buttons.button(0).setChecked(True)
         self.buttons.idClicked.connect(self.go)
         column.addLayout(bar)
         column.addWidget(self.stack, 1)
@@ -166,6 +150,7 @@ class MainWindow(QMainWindow):
         splitter.addWidget(self.facts)
         splitter.setSizes([210, 820, 250])
         splitter.setStretchFactor(1, 1)
+        self.go(0)
         return splitter
 
     def _build_status(self) -> None:
@@ -209,32 +194,21 @@ class MainWindow(QMainWindow):
                 "work": self.desk.job is not None,
             }.get(entry.needs, name is not None)
             action.setEnabled(there)
-        self._fill_tree()
+        self.project.refresh()
         for place in self.places:
             place.show_campaign()
+        self._count_doubts()
         self._show_facts()
 
-    def _fill_tree(self) -> None:
-        self.model.show(self.desk.campaign, self.desk.assessment, self.filter.text())
-        self.tree.expandToDepth(1)
-        self._mark_in_tree()
-
-    def _mark_in_tree(self) -> None:
-        index = self.model.index_of(self.desk.selection)
-        if index.isValid():
-            blocked = self.tree.selectionModel().blockSignals(True)
-            self.tree.setCurrentIndex(index)
-            self.tree.scrollTo(index)
-            self.tree.selectionModel().blockSignals(blocked)
-            self.tree.viewport().update()
-
-    def _tree_picked(self, index: QModelIndex) -> None:
-        node = self.model.node(index)
-        if node.kind == "reading":
-            self.desk.select(node.key)
+    def _count_doubts(self) -> None:
+        """How many wait for an eye stands beside the place's noun."""
+        for number, place in enumerate(self.places):
+            if isinstance(place, DoubtsPlace):
+                count = f"  {len(place.doubts)}" if place.doubts else ""
+                self.buttons.button(number).setText(f"{place.noun}{count}")
 
     def _selected(self) -> None:
-        self._mark_in_tree()
+        self.project.mark(self.desk.selection)
         for place in self.places:
             place.show_selection()
         self._show_facts()
@@ -346,11 +320,25 @@ class MainWindow(QMainWindow):
     def redo(self) -> None:
         self.desk.redo()
 
+    def rename(self) -> None:
+        self.project.rename()
+
+    def remove(self) -> None:
+        self.project.remove()
+
+    def add_formulation(self) -> None:
+        self.project.add_formulation()
+
     def go(self, place: int) -> None:
         self.stack.setCurrentIndex(place)
         self.buttons.button(place).setChecked(True)
-        # The reading's own place shows the same values where they lie in the coating.
-        self.facts.setVisible(not isinstance(self.places[place], ReadingPlace))
+        policy = Qt.FocusPolicy
+        for button in self.buttons.buttons():
+            # Tab comes to the open place's button; left and right go on to the others.
+            button.setFocusPolicy(policy.StrongFocus if button.isChecked() else policy.ClickFocus)
+        # The reading's own place shows the same values where they lie in the coating, and the
+        # doubts show their evidence.
+        self.facts.setVisible(isinstance(self.places[place], (MapPlace, CoursePlace)))
         self.strip.setVisible(not isinstance(self.places[place], DoubtsPlace))
 
     def go_map(self) -> None:
@@ -379,6 +367,7 @@ class MainWindow(QMainWindow):
             palette.apply(application, self.tone)
         for place in self.places:
             place.paint_in(self.tone)
+        self.project.paint_in(self.tone)
         self.strip.tone = self.tone
         self.strip.update()
 

@@ -106,7 +106,8 @@ def apply(application: QApplication, tone: Colours) -> None:
     application.setStyleSheet(
         f"""
         QWidget {{ font-size: 13px; }}
-        QTreeView, QTableWidget, QListWidget {{ border: 0; background: {tone.ground};
+        QTreeView, QTableWidget, QListWidget {{ border: 1px solid transparent;
+            background: {tone.ground};
             alternate-background-color: {tone.panel}; gridline-color: {tone.line}; }}
         QHeaderView::section {{ background: {tone.panel}; color: {tone.second}; border: 0;
             border-bottom: 1px solid {tone.line}; padding: 4px 8px; font-size: 11px; }}
@@ -160,6 +161,10 @@ def apply(application: QApplication, tone: Colours) -> None:
         QPushButton#link:focus, QPushButton#link:hover {{ border-color: {tone.verdigris}; }}
         QPushButton:hover {{ border-color: {tone.second}; }}
         QPushButton:disabled {{ color: {tone.faint}; }}
+        QScrollArea {{ border: 1px solid transparent; }}
+        QScrollArea:focus {{ border: 1px solid {tone.verdigris}; }}
+        QTreeView:focus, QListWidget:focus, QTableWidget:focus {{
+            border: 1px solid {tone.verdigris}; }}
         QFrame#trouble {{ background: {tone.panel}; border: 0;
             border-bottom: 1px solid {tone.line}; }}
         QFrame#trouble QLabel {{ color: {tone.rust}; }}

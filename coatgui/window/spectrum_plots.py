@@ -14,7 +14,7 @@ from typing import Any
 import numpy as np
 import pyqtgraph as pg
 from PySide6.QtCore import QEvent, QObject, QPointF, QRectF, Qt, Signal
-from PySide6.QtGui import QKeyEvent
+from PySide6.QtGui import QColor, QFocusEvent, QKeyEvent, QPainter, QPaintEvent
 from PySide6.QtWidgets import QGridLayout, QWidget
 
 from coatgui.records import Fit, Spectrum
@@ -79,12 +79,13 @@ class SpectrumPlots(QWidget):
         self.phase.setXLink(self.modulus)
         self.residual.setXLink(self.modulus)
         grid = QGridLayout(self)
-        grid.setContentsMargins(0, 0, 0, 0)
+        grid.setContentsMargins(2, 2, 2, 2)
         grid.setSpacing(8)
         for place, plot in enumerate((self.modulus, self.plane, self.phase, self.residual)):
             grid.addWidget(plot, place // 2, place % 2)
         self.drawn: Drawn | None = None
         self.place = -1
+        self._focus: QColor | None = None
         self._pressed: QPointF | None = None
         self._beside: list[Drawn] = []
         self._others: list[list[pg.PlotCurveItem]] = [[] for _ in self.plots]
@@ -126,6 +127,7 @@ class SpectrumPlots(QWidget):
         same = drawn is not None and drawn.spectrum == before
         same = same and len(others) == len(self._beside)
         self.drawn, self._beside = drawn, [other for other, _ in others]
+        self._focus = QColor(tone.verdigris)
         for plot in self.plots:
             plot.paint_in(tone.ground, tone.second, tone.line)
         self._draw_others(others, tone)
@@ -308,6 +310,21 @@ class SpectrumPlots(QWidget):
         inside &= (area.top() <= up) & (up <= area.bottom())
         if inside.any():
             self.toggled.emit([int(place) for place in np.nonzero(inside)[0]])
+
+    def paintEvent(self, event: QPaintEvent) -> None:
+        if self.hasFocus() and self._focus is not None:
+            painter = QPainter(self)
+            painter.setPen(self._focus)
+            painter.drawRect(self.rect().adjusted(0, 0, -1, -1))
+            painter.end()
+
+    def focusInEvent(self, event: QFocusEvent) -> None:
+        super().focusInEvent(event)
+        self.update()
+
+    def focusOutEvent(self, event: QFocusEvent) -> None:
+        super().focusOutEvent(event)
+        self.update()
 
     def keyPressEvent(self, event: QKeyEvent) -> None:
         last = -1 if self.drawn is None else len(self.drawn.spectrum) - 1

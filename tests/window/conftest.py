@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import os
+import shutil
 import threading
 import time
 from collections.abc import Callable, Iterator
@@ -13,9 +14,10 @@ import pytest
 os.environ.setdefault("QT_QPA_PLATFORM", "offscreen")
 pytest.importorskip("PySide6")
 
-from PySide6.QtCore import QSettings
-from PySide6.QtWidgets import QApplication
+from PySide6.QtCore import QEvent, QSettings
+from PySide6.QtWidgets import QApplication, QFrame, QMenu
 
+from coatgui.shipped import sample_panels
 from coatgui.window import palette
 from coatgui.window.main_window import MainWindow
 
@@ -54,8 +56,30 @@ def window(application: QApplication, tmp_path: Path) -> Iterator[MainWindow]:
     made.desk.close()
     made.hide()
     made.deleteLater()
+    # Nothing may be left behind: no thread, no running timer, no widget.
+    QApplication.sendPostedEvents(None, QEvent.Type.DeferredDelete.value)
     application.processEvents()
+    left = [w for w in application.topLevelWidgets() if not isinstance(w, (QMenu, QFrame))]
+    assert not left, left
     end = time.monotonic() + 10.0
     while threading.active_count() > before and time.monotonic() < end:
         time.sleep(0.01)
     assert threading.active_count() <= before
+
+
+@pytest.fixture
+def small(tmp_path: Path) -> Path:
+    """Two panels of the sample with seven inspections each: quick, and still a campaign."""
+    folder = tmp_path / "two panels"
+    folder.mkdir()
+    for name in ("panels.csv", "open_lead.csv"):
+        shutil.copy(sample_panels() / name, folder)
+    for hours in (1, 3, 8, 24, 168, 336, 672):
+        shutil.copy(sample_panels() / f"P1_{hours}h.dat", folder)
+        shutil.copy(sample_panels() / f"P2_{hours}h.dat", folder)
+    # Only these panels, so that the others do not stand there without readings.
+    lines = (folder / "panels.csv").read_text(encoding="utf-8").splitlines()
+    kept = [line for line in lines if line.startswith(("panel,", "P1,", "P2,"))]
+    (folder / "panels.csv").write_text("\n".join(kept) + "\n", encoding="utf-8")
+    (folder / "remark.txt").write_text("not a spectrum\n", encoding="utf-8")
+    return folder

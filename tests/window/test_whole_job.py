@@ -6,7 +6,6 @@ used as a person uses them; the desk is only read, to know when the work under w
 
 from __future__ import annotations
 
-import shutil
 from collections.abc import Callable
 from pathlib import Path
 from typing import Any
@@ -38,24 +37,6 @@ Wait = Callable[[Callable[[], bool]], None]
 LEFT = Qt.MouseButton.LeftButton
 
 
-@pytest.fixture
-def small(tmp_path: Path) -> Path:
-    """Two panels of the sample with seven inspections each: quick, and still a campaign."""
-    folder = tmp_path / "two panels"
-    folder.mkdir()
-    for name in ("panels.csv", "open_lead.csv"):
-        shutil.copy(sample_panels() / name, folder)
-    for hours in (1, 3, 8, 24, 168, 336, 672):
-        shutil.copy(sample_panels() / f"P1_{hours}h.dat", folder)
-        shutil.copy(sample_panels() / f"P2_{hours}h.dat", folder)
-    # Only these panels, so that the others do not stand there without readings.
-    lines = (folder / "panels.csv").read_text(encoding="utf-8").splitlines()
-    kept = [line for line in lines if line.startswith(("panel,", "P1,", "P2,"))]
-    (folder / "panels.csv").write_text("\n".join(kept) + "\n", encoding="utf-8")
-    (folder / "remark.txt").write_text("not a spectrum\n", encoding="utf-8")
-    return folder
-
-
 def settled(window: MainWindow) -> Callable[[], bool]:
     return lambda: window.desk.job is None and window.desk.assessment is not None
 
@@ -79,7 +60,7 @@ def shortcut(
 def choose(window: MainWindow, menu: str, name: str) -> None:
     """Open a menu with the mouse and choose an entry with the mouse."""
     bar = window.menuBar()
-    top = next(a for a in bar.actions() if a.text() == menu)
+    top = next(a for a in bar.actions() if a.text() == f"&{menu}")
     QTest.mouseClick(bar, LEFT, pos=bar.actionGeometry(top).center())
     shown = QApplication.activePopupWidget()
     assert isinstance(shown, QMenu)
@@ -176,7 +157,7 @@ def test_from_the_empty_window_to_the_campaign_opened_again(
     pick_cell(window, "P1", 336)
     assert "P1, 336 h" in window.facts.text()
     assert "P1, 336 h" in window.strip.accessibleDescription()
-    node = window.model.node(window.tree.currentIndex())
+    node = window.project.model.node(window.project.view.currentIndex())
     assert (node.kind, node.text) == ("reading", "336 h")
 
     # The reading: what is shown is what was found out.

