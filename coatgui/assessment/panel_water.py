@@ -27,12 +27,16 @@ from coatgui.records import Finding, FloatArray, Panel, Quantity, Severity, Wate
 def uptake_basis(series: Sequence[Drawn], frequency_hz: float) -> tuple[list[Quantity | None], str]:
     """The capacitances that the water uptake rests on, all on one footing, and its name.
 
-    The fitted film's at the high frequency; readings whose model has no film stay without. Only
-    where more than half of the readings are so, the measured parallel capacitance serves for all.
+    The fitted film's at the high frequency; readings whose model has no film stay without. Where
+    most fits show no film, there is no film that could take up water. Where most readings have no
+    fit at all, the measured parallel capacitance serves for all.
     """
     fitted = [d.coating_capacitance for d in series]
-    if 2 * sum(q is not None for q in fitted) >= len(series):
+    films, fits = sum(q is not None for q in fitted), sum(d.fit is not None for d in series)
+    if 2 * films >= len(series):
         return fitted, f"fitted film at {frequency_hz:g} Hz"
+    if 2 * (fits - films) > len(series):
+        return [None] * len(series), "no film shows"
     return (
         [d.measured_capacitance for d in series],
         f"measured parallel capacitance at {frequency_hz:g} Hz",

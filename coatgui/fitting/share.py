@@ -118,7 +118,7 @@ def fit_share(task: Share) -> list[Fit]:
     aicc = np.column_stack(
         [evidence(cost[:, k], points, rho, len(m.parameters)) for k, m in enumerate(models)]
     )
-    area = np.array([a or 1.0 for a in task.area_cm2])
+    area = np.array([a or rule("assumed_area_cm2") for a in task.area_cm2])
     chosen = _choose(task, models, aicc, capacitance / area[:, None])
     trials = [
         _trials(models, cost[i], points[i], aicc[i], chosen[i]) for i in range(len(task.spectra))
@@ -213,12 +213,14 @@ def _choose(
 
 
 def _as_seen(model: CoatingModel, per_area: float, pinned: str) -> CoatingModel:
-    """The same circuit named for what it is: film with pores, or bare metal, by capacitance."""
-    if pinned or model.model_id != "film_with_pores":
+    """The same circuit named for what it is: a film, or where even the outermost capacitance is a
+    metal's, the twin that claims none."""
+    if pinned or per_area < rule("interface_capacitance_from_f_per_cm2"):
         return model
-    if per_area < rule("interface_capacitance_from_f_per_cm2"):
-        return model
-    return catalogue()["bare_metal"]
+    for twin in catalogue().values():
+        if twin.twin == model.model_id and twin.layers[0].role in ("interface", "porous_layer"):
+            return twin
+    return model
 
 
 def _trials(
