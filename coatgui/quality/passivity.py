@@ -87,6 +87,15 @@ def misread_phase(model: MeasurementModel, logarithm: FloatArray) -> list[Findin
     return result
 
 
+def mostly_positive(impedance: ComplexArray) -> Finding | None:
+    """The same from the plain sight of one spectrum (N,), where no model can be laid on it: most
+    imaginary parts are positive although |Z| falls with frequency, as it does for capacitors."""
+    modulus = np.abs(impedance[impedance != 0])
+    if (impedance.imag > 0).mean() > _MOST and modulus[0] < modulus[-1]:
+        return Finding("wrong_sign", Severity.REJECT, _MISTAKES["wrong_sign"])
+    return None
+
+
 def _wound(model: MeasurementModel, modulus: FloatArray, phase: FloatArray) -> FloatArray:
     """Phases (b, N) in rad, had their numbers been degrees: turns are added back to come closest to
     the phase that follows from the modulus."""

@@ -218,6 +218,14 @@ def test_what_the_sweep_does_not_cover_is_said() -> None:
     assert "no_plateau" in codes(check(noisy(z), frequency_hz=slow))
 
 
+def test_points_too_far_apart_are_not_judged_but_the_sign_is() -> None:
+    sparse = np.logspace(5, -2, 12)
+    z = noisy(pores(sparse))
+    z[5] *= 1.5
+    assert codes(check(z, frequency_hz=sparse)) == {"kramers_kronig_not_tested", "few_points"}
+    assert codes(check(noisy(pores(sparse)).conj(), frequency_hz=sparse)) == {"wrong_sign"}
+
+
 LEADS = 1 / 5e11 + 1j * OMEGA * 5e-12
 
 
