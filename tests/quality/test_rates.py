@@ -100,6 +100,17 @@ def test_a_step_is_not_called_a_wild_point(faults: ModuleType, benchmark_table: 
     assert sum("wild_point" in {f.code for f in c.findings} for c in answers) <= 0.05 * len(z)
 
 
+def test_neighbouring_wild_points_are_not_called_a_step(
+    faults: ModuleType, benchmark_table: ModuleType
+) -> None:
+    """What was taken for a step first is given back when the points explain it."""
+    rng = np.random.default_rng(17)
+    fault = next(f for f in faults.FAULTS if f.name == "two wild neighbours")
+    z = [fault.put(rng, s, 0.005, 0.3)[0] for s in faults.specimens(rng, 30)]
+    answers = benchmark_table.checked(z)
+    assert sum("step" in {f.code for f in c.findings} for c in answers) <= 0.06 * len(z)
+
+
 def test_a_phase_in_the_wrong_unit_is_recognised(
     faults: ModuleType, benchmark_table: ModuleType
 ) -> None:
