@@ -5,7 +5,7 @@ fixed, log-spaced time constants on the data: linear, so that a causal and stabl
 followed down to its scatter without knowing its circuit, and what cannot be followed breaks the
 Kramers–Kronig relations. A passive specimen has neither zeros nor poles in the right half-plane,
 so that the logarithm of its impedance obeys the same relations (Bode, Network Analysis and
-Feedback Amplifier Design, 1945, chapter 14: the phase follows from the modulus), and
+Feedback Amplifier Design, 1945, from memory: the phase follows from the modulus), and
 
     ln Z = c - Σ θ_k [ln(1 + jωτ_{k+1}) - ln(1 + jωτ_k)],   τ_k fixed, log-spaced,
 
