@@ -124,5 +124,5 @@ def test_a_phase_in_the_wrong_unit_is_recognised(
         answers = benchmark_table.checked(z)
         recognised = [code in {f.code for f in c.findings} for c in answers]
         weighty = [any(f.severity is not Severity.NOTE for f in c.findings) for c in answers]
-        assert np.mean(recognised) >= 0.75, name
+        assert np.mean(recognised) >= 0.95, name
         assert np.mean(weighty) >= 0.98, name
