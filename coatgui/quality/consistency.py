@@ -191,9 +191,10 @@ class Consistency:
         for fault in sorted(self.steps, key=lambda f: f.place):
             before, after = (float(self.frequency[fault.place - i]) for i in (1, 0))
             percent = 100 * float(np.expm1(fault.size.real))
+            large = abs(percent) > self.limits["step_doubt_percent"]
             yield Finding(
                 "step",
-                Severity.DOUBT,
+                Severity.DOUBT if large else Severity.NOTE,
                 f"|Z| steps {'up' if percent > 0 else 'down'} by {abs(percent):.2g} % between "
                 f"{hertz(before)} and {hertz(after)}, which no circuit does: the instrument "
                 "changed its range there or the panel changed. Compare with a sweep on a fixed "

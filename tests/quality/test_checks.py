@@ -106,6 +106,14 @@ def test_a_step_is_named_between_its_two_points(decay: float) -> None:
     assert not found.suggested
 
 
+def test_a_small_step_is_a_note() -> None:
+    z = noisy(pores(), share=0.001)
+    z[55:] *= 1.02
+    assert finding(check(z), "step").severity is Severity.NOTE
+    z[55:] *= 1.02
+    assert finding(check(z), "step").severity is Severity.DOUBT
+
+
 def test_drift_is_told_from_scatter() -> None:
     elapsed = np.cumsum(1 / FREQUENCY) / np.sum(1 / FREQUENCY)
     drifting = check(noisy(pores() * (1 - 0.2 * elapsed)))
