@@ -5,7 +5,7 @@ fixed, log-spaced time constants on the data: linear, so that a causal and stabl
 followed down to its scatter without knowing its circuit, and what cannot be followed breaks the
 Kramers–Kronig relations. A passive specimen has neither zeros nor poles in the right half-plane,
 so that the logarithm of its impedance obeys the same relations (Bode, Network Analysis and
-Feedback Amplifier Design, 1945, chapter 14: the phase follows from the modulus), and
+Feedback Amplifier Design, 1945, from memory: the phase follows from the modulus), and
 
     ln Z = c - Σ θ_k [ln(1 + jωτ_{k+1}) - ln(1 + jωτ_k)],   τ_k fixed, log-spaced,
 
@@ -51,7 +51,8 @@ def complexes(values: FloatArray) -> ComplexArray:
 
 class MeasurementModel:
     """The model on one grid of N frequencies. `directions` (2N, K) are orthonormal, the most
-    important first; `levels` are numbers of them to choose from."""
+    important first; `levels` are numbers of them to choose from. Where `testable` is False the grid
+    is too sparse: the model has nearly as many terms as there are numbers, and tests nothing."""
 
     def __init__(self, frequency_hz: FloatArray) -> None:
         self.frequency_hz = frequency_hz
@@ -70,9 +71,9 @@ class MeasurementModel:
         )
         u, singular, _ = np.linalg.svd(parts(basis.T).T, full_matrices=False)
         # Few points cannot hold many terms: at least half of the numbers stay free.
-        self.levels = tuple(
-            min(int((singular > level).sum()), frequency_hz.size) for level in _LEVELS
-        )
+        needed = [int((singular > level).sum()) for level in _LEVELS]
+        self.levels = tuple(min(count, frequency_hz.size) for count in needed)
+        self.testable = needed[0] < frequency_hz.size
         self.directions: FloatArray = u[:, : self.levels[-1]]
 
     def level(self, logarithm: FloatArray) -> list[int]:

@@ -106,6 +106,14 @@ def test_a_step_is_named_between_its_two_points(decay: float) -> None:
     assert not found.suggested
 
 
+def test_a_small_step_is_a_note() -> None:
+    z = noisy(pores(), share=0.001)
+    z[55:] *= 1.02
+    assert finding(check(z), "step").severity is Severity.NOTE
+    z[55:] *= 1.02
+    assert finding(check(z), "step").severity is Severity.DOUBT
+
+
 def test_drift_is_told_from_scatter() -> None:
     elapsed = np.cumsum(1 / FREQUENCY) / np.sum(1 / FREQUENCY)
     drifting = check(noisy(pores() * (1 - 0.2 * elapsed)))
@@ -216,6 +224,14 @@ def test_what_the_sweep_does_not_cover_is_said() -> None:
     slow = np.logspace(2.5, -2, 46)
     z = panel("bare_metal", 20.0, 2e-5, 0.9, 1e5, frequency_hz=slow)
     assert "no_plateau" in codes(check(noisy(z), frequency_hz=slow))
+
+
+def test_points_too_far_apart_are_not_judged_but_the_sign_is() -> None:
+    sparse = np.logspace(5, -2, 12)
+    z = noisy(pores(sparse))
+    z[5] *= 1.5
+    assert codes(check(z, frequency_hz=sparse)) == {"kramers_kronig_not_tested", "few_points"}
+    assert codes(check(noisy(pores(sparse)).conj(), frequency_hz=sparse)) == {"wrong_sign"}
 
 
 LEADS = 1 / 5e11 + 1j * OMEGA * 5e-12
