@@ -24,9 +24,10 @@ STP, 1993) and can differ by decades, so their ends are given as a bracket.
 
 from __future__ import annotations
 
+import cmath
 import math
 import re
-from dataclasses import replace
+from functools import cache
 
 import numpy as np
 
@@ -79,16 +80,20 @@ def _held(quantity: Quantity | None) -> float | None:
 def _crossing(spectrum: Spectrum, used: BoolArray) -> float | None:
     """Highest frequency at which the used points' phase passes −45° from a capacitive stretch above
     it, Hz; interpolated on log f."""
-    degrees = np.degrees(np.angle(spectrum.impedance_ohm[used])) + 45
-    passes = np.flatnonzero((degrees[:-1] < 0) & (degrees[1:] >= 0))
+    places = np.flatnonzero(used)
+    impedance = spectrum.impedance_ohm[places]
+    # The phase is above −45° where the real part outweighs the imaginary one.
+    above = impedance.real + impedance.imag >= 0
+    passes = np.flatnonzero(~above[:-1] & above[1:])
     if not passes.size:
         return None
     at = int(passes[0])
-    share = degrees[at] / (degrees[at] - degrees[at + 1])
-    ends = np.log(spectrum.frequency_hz[used][at : at + 2])
-    return math.exp(float(ends[0] + share * (ends[1] - ends[0])))
+    before, after = (cmath.phase(complex(impedance[i])) + math.pi / 4 for i in (at, at + 1))
+    start, stop = (math.log(float(spectrum.frequency_hz[places[i]])) for i in (at, at + 1))
+    return math.exp(start + before / (before - after) * (stop - start))
 
 
+@cache
 def pore_resistivity(electrolyte: str) -> tuple[float | None, str]:
     """Resistivity of the panel's electrolyte in Ω cm and its name; None where it is known that
     there is none to use. An electrolyte that is not recognised gets the usual one."""
@@ -160,7 +165,12 @@ def active_area(
 def _bracketed(routes: list[tuple[str, Quantity]]) -> ActiveArea:
     failed = [name for name, q in routes if (q.value or 0.0) > 1]
     kept = [
-        (name, replace(q, value=min(q.value or 0.0, 1.0), high=min(q.high or 0.0, 1.0)))
+        (
+            name,
+            Quantity(
+                min(q.value or 0.0, 1.0), q.low, min(q.high or 0.0, 1.0), q.bound, q.unit, q.method
+            ),
+        )
         for name, q in routes
     ]
     low = min(min(q.low or 0.0, 1.0) for _, q in kept)

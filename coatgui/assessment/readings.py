@@ -16,11 +16,11 @@ from coatgui.assessment.capacitance import (
     film_capacitance,
     hsu_mansfeld_capacitance,
     interface_capacitance,
-    measured_capacitance,
     small_exponent_finding,
 )
 from coatgui.assessment.drawn import Drawn
-from coatgui.assessment.modulus import moduli
+from coatgui.assessment.measured_capacitance import measured_capacitance
+from coatgui.assessment.modulus import Scatter, moduli
 from coatgui.assessment.pores import pore_resistance
 from coatgui.assessment.rules import rule
 from coatgui.records import (
@@ -101,6 +101,7 @@ def draw_readings(
     wanted = tuple(
         dict.fromkeys((*settings.modulus_frequencies_hz, *(c.frequency_hz for c in criteria)))
     )
+    scatters = [Scatter(d.reading.spectrum, d.used, d.fit) for d in drawn]
     at_frequencies = moduli(
         [d.reading.spectrum for d in drawn],
         [d.used for d in drawn],
@@ -108,8 +109,9 @@ def draw_readings(
         [d.area_cm2 for d in drawn],
         wanted,
         campaign.open_lead,
+        scatters,
     )
-    for d, at in zip(drawn, at_frequencies, strict=True):
+    for d, at, scatter in zip(drawn, at_frequencies, scatters, strict=True):
         d.moduli = at
         spectrum = d.reading.spectrum
         d.measured_capacitance, note = measured_capacitance(
@@ -119,6 +121,7 @@ def draw_readings(
             settings.capacitance_frequency_hz,
             d.area_cm2,
             campaign.open_lead,
+            scatter,
         )
         if d.fit is not None:
             d.coating_capacitance = film_capacitance(
