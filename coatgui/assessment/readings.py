@@ -17,6 +17,7 @@ from coatgui.assessment.capacitance import (
     hsu_mansfeld_capacitance,
     interface_capacitance,
     small_exponent_finding,
+    turning_frequency,
 )
 from coatgui.assessment.drawn import Drawn
 from coatgui.assessment.measured_capacitance import measured_capacitance
@@ -24,6 +25,7 @@ from coatgui.assessment.modulus import Scatter, moduli
 from coatgui.assessment.pores import pore_resistance
 from coatgui.assessment.rules import rule
 from coatgui.records import (
+    Bound,
     Campaign,
     Check,
     Criterion,
@@ -136,6 +138,11 @@ def draw_readings(
                 d.fit, spectrum, d.area_cm2, campaign.open_lead, d.interface_capacitance
             )
             d.pore_resistance = pore_resistance(d.fit, spectrum, d.area_cm2, campaign.open_lead)
+            d.conducts = (
+                d.pore_resistance is not None
+                and d.pore_resistance.bound is Bound.TWO_SIDED
+                and turning_frequency(d.fit, spectrum) is not None
+            )
             d.findings.extend(
                 f for f in (note, small_exponent_finding(d.fit), *_fit_findings(d.fit)) if f
             )
