@@ -163,18 +163,14 @@ def active_area(
 
 
 def _bracketed(routes: list[tuple[str, Quantity]]) -> ActiveArea:
-    failed = [name for name, q in routes if (q.value or 0.0) > 1]
-    kept = [
-        (
-            name,
-            Quantity(
-                min(q.value or 0.0, 1.0), q.low, min(q.high or 0.0, 1.0), q.bound, q.unit, q.method
-            ),
-        )
-        for name, q in routes
-    ]
-    low = min(min(q.low or 0.0, 1.0) for _, q in kept)
-    high = max(q.high or 0.0 for _, q in kept)
+    failed, kept = [], []
+    low, high = 1.0, 0.0
+    for name, q in routes:
+        value, least, most = q.value or 0.0, q.low or 0.0, min(q.high or 0.0, 1.0)
+        if value > 1:
+            failed.append(name)
+        low, high = min(low, least), max(high, most)
+        kept.append((name, Quantity(min(value, 1.0), least, most, q.bound, q.unit, q.method)))
     count = len(kept)
     said = f"Between {low:.2g} and {high:.2g} of the area, by {count} route{'s' * (count > 1)}."
     if high > 10 * low > 0:
