@@ -112,7 +112,7 @@ def _bracketed(
     laws = bracket(ratio, water_permittivity(temperature_c), known, swelling)
     each, lows, highs = (_listed(part) for part in (laws.volume_percent.T, laws.low, laws.high))
     return [
-        WaterUptake(uptake, reference_h, low, high, tuple(zip(laws.names, values, strict=True)))
+        WaterUptake(uptake, reference_h, low, high, laws.names, tuple(values))
         for uptake, values, low, high in zip(uptakes, each, lows, highs, strict=True)
     ]
 
