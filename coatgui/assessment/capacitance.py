@@ -35,7 +35,7 @@ from functools import lru_cache
 import numpy as np
 
 from coatgui.assessment.amounts import from_logarithm, log_deviation, per_area
-from coatgui.assessment.modulus import relative_scatter
+from coatgui.assessment.modulus import relative_scatter, used_points
 from coatgui.assessment.rules import rule
 from coatgui.quality import leads_admittance
 from coatgui.records import (
@@ -106,8 +106,8 @@ def turning_frequency(fit: Fit, spectrum: Spectrum) -> float | None:
     turning = _turning(fit)
     if turning is None:
         return None
-    used = spectrum.frequency_hz[fit.used]
-    inside = bool(used.size) and float(used[-1]) < turning < float(used[0])
+    used, _ = used_points(spectrum, fit.used)
+    inside = bool(used) and used[0] < turning < used[-1]
     return turning if inside else None
 
 

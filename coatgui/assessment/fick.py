@@ -38,7 +38,7 @@ from coatgui.records import FloatArray
 
 _CHANGE_OF_SERIES = 0.2
 _TERMS = 6
-_COARSE, _FINE = 120, 61
+_COARSE, _FINE = 80, 41
 _TABLE_END, _TABLE_POINTS = 3.2, 8001
 
 

@@ -32,6 +32,7 @@ from functools import cache
 import numpy as np
 
 from coatgui.assessment.mixing import VACUUM_F_PER_CM
+from coatgui.assessment.modulus import used_points
 from coatgui.assessment.rules import table
 from coatgui.records import ActiveArea, BoolArray, Bound, Breakpoint, Quantity, Spectrum
 
@@ -80,8 +81,8 @@ def _held(quantity: Quantity | None) -> float | None:
 def _crossing(spectrum: Spectrum, used: BoolArray) -> float | None:
     """Highest frequency at which the used points' phase passes −45° from a capacitive stretch above
     it, Hz; interpolated on log f."""
-    places = np.flatnonzero(used)
-    impedance = spectrum.impedance_ohm[places]
+    frequency, _ = used_points(spectrum, used)
+    impedance = spectrum.impedance_ohm[used]
     # The phase is above −45° where the real part outweighs the imaginary one.
     above = impedance.real + impedance.imag >= 0
     passes = np.flatnonzero(~above[:-1] & above[1:])
@@ -89,7 +90,7 @@ def _crossing(spectrum: Spectrum, used: BoolArray) -> float | None:
         return None
     at = int(passes[0])
     before, after = (cmath.phase(complex(impedance[i])) + math.pi / 4 for i in (at, at + 1))
-    start, stop = (math.log(float(spectrum.frequency_hz[places[i]])) for i in (at, at + 1))
+    start, stop = (math.log(frequency[-1 - i]) for i in (at, at + 1))
     return math.exp(start + before / (before - after) * (stop - start))
 
 

@@ -9,7 +9,7 @@ import math
 import numpy as np
 
 from coatgui.assessment.amounts import from_logarithm, per_area
-from coatgui.assessment.modulus import Scatter, neighbours
+from coatgui.assessment.modulus import Scatter, neighbours, used_points
 from coatgui.assessment.rules import rule
 from coatgui.quality import leads_admittance
 from coatgui.records import BoolArray, Finding, Fit, Quantity, Severity, Spectrum
@@ -29,20 +29,19 @@ def measured_capacitance(
 
     None where the frequency is not within the used points or the current does not lead.
     """
-    frequency = spectrum.frequency_hz[used]
+    frequency, places = used_points(spectrum, used)
     within = rule("modulus.measured_within")
-    if frequency.size < 2 or not (
-        frequency[-1] * (1 - within) <= frequency_hz <= frequency[0] * (1 + within)
+    if len(frequency) < 2 or not (
+        frequency[0] * (1 - within) <= frequency_hz <= frequency[-1] * (1 + within)
     ):
         return None, None
-    inside = min(max(frequency_hz, float(frequency[-1])), float(frequency[0]))
+    inside = min(max(frequency_hz, frequency[0]), frequency[-1])
     beside = neighbours(frequency, inside)
     assert beside is not None
-    impedance = spectrum.impedance_ohm[used]
-    first, second = (complex(impedance[i]) for i in beside)
+    first, second = (complex(spectrum.impedance_ohm[places[i]]) for i in beside)
     if not (first and second):
         return None, None
-    above, below = (float(frequency[i]) for i in beside)
+    above, below = (frequency[i] for i in beside)
     share = 0.0 if above == below else math.log(above / inside) / math.log(above / below)
     modulus = abs(first) ** (1 - share) * abs(second) ** share
     phase = cmath.phase(first) + share * cmath.phase(second / first)

@@ -18,6 +18,7 @@ import math
 from bisect import bisect_left, bisect_right
 from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 
@@ -50,32 +51,44 @@ class ModulusAt:
 _NOT_REACHED = ModulusAt(None, ModulusStatus.NOT_REACHED)
 
 
-def neighbours(frequency: FloatArray, wanted_hz: float) -> tuple[int, int] | None:
+@lru_cache(maxsize=256)
+def _places(frequency: bytes, used: bytes) -> tuple[list[float], list[int]]:
+    places = np.flatnonzero(np.frombuffer(used, dtype=np.bool_))[::-1]
+    return np.frombuffer(frequency)[places].tolist(), places.tolist()
+
+
+def used_points(spectrum: Spectrum, used: BoolArray) -> tuple[list[float], list[int]]:
+    """Frequencies of the used points from the lowest up, and their places. The readings of a
+    campaign share a few grids, so these are kept; do not change what is handed out."""
+    return _places(spectrum.frequency_hz.tobytes(), used.tobytes())
+
+
+def neighbours(frequency: Sequence[float], wanted_hz: float) -> tuple[int, int] | None:
     """Places of the points on either side of a wanted frequency, the higher first; `frequency`
-    falls. None beyond its range."""
-    after = frequency.size - int(np.searchsorted(frequency[::-1], wanted_hz, side="right"))
-    if after == frequency.size:
+    rises. None beyond its range."""
+    above = bisect_left(frequency, wanted_hz)
+    if above == len(frequency):
         return None
-    if after == 0:
+    if above == 0:
         return (0, 0) if frequency[0] == wanted_hz else None
-    return after - 1, after
+    return above, above - 1
 
 
 def modulus_at(spectrum: Spectrum, used: BoolArray, frequency_hz: float) -> ModulusAt:
     """|Z| at `frequency_hz` from the used points only, never beyond their range."""
-    frequency = spectrum.frequency_hz[used]
-    if not frequency.size:
+    frequency, places = used_points(spectrum, used)
+    if not frequency:
         return _NOT_REACHED
-    after = frequency.size - int(np.searchsorted(frequency[::-1], frequency_hz, side="right"))
-    beside = [i for i in (after - 1, after) if 0 <= i < frequency.size]
+    above = bisect_left(frequency, frequency_hz)
+    beside = [i for i in (above, above - 1) if 0 <= i < len(frequency)]
     nearest = min(beside, key=lambda i: abs(math.log(frequency[i] / frequency_hz)))
-    impedance = spectrum.impedance_ohm[used]
+    impedance = spectrum.impedance_ohm
     if abs(frequency[nearest] / frequency_hz - 1) <= rule("modulus.measured_within"):
-        return ModulusAt(float(abs(impedance[nearest])), ModulusStatus.MEASURED)
-    if not frequency[-1] < frequency_hz < frequency[0]:
+        return ModulusAt(float(abs(impedance[places[nearest]])), ModulusStatus.MEASURED)
+    if not frequency[0] < frequency_hz < frequency[-1]:
         return _NOT_REACHED
     first, second = beside
-    moduli_ = abs(impedance[first]), abs(impedance[second])
+    moduli_ = abs(complex(impedance[places[first]])), abs(complex(impedance[places[second]]))
     if not all(moduli_):
         return _NOT_REACHED
     share = math.log(frequency[first] / frequency_hz) / math.log(
@@ -104,7 +117,7 @@ class Scatter:
         size = impedance.real**2 + impedance.imag**2
         with np.errstate(divide="ignore", invalid="ignore"):
             squares = (miss.real**2 + miss.imag**2) / size
-        self._frequency = spectrum.frequency_hz[fit.used][::-1].tolist()
+        self._frequency, _ = used_points(spectrum, fit.used)
         self._running = [0.0, *np.cumsum(squares[::-1]).tolist()]
 
     def at(self, frequency_hz: float) -> float:
