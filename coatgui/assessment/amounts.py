@@ -7,7 +7,6 @@ the standard error of its natural logarithm. The other way round, s = ln(high/lo
 from __future__ import annotations
 
 import math
-from dataclasses import replace
 
 from coatgui.assessment.rules import rule
 from coatgui.records import Bound, Parameter, Quantity
@@ -41,12 +40,14 @@ def at_least(bound: float, unit: str, method: str) -> Quantity:
 
 def scaled(quantity: Quantity, factor: float, unit: str) -> Quantity:
     """The quantity times a positive factor, in another unit."""
-    return replace(
-        quantity,
-        value=None if quantity.value is None else quantity.value * factor,
-        low=None if quantity.low is None else quantity.low * factor,
-        high=None if quantity.high is None else quantity.high * factor,
-        unit=unit,
+    value, low, high = quantity.value, quantity.low, quantity.high
+    return Quantity(
+        None if value is None else value * factor,
+        None if low is None else low * factor,
+        None if high is None else high * factor,
+        quantity.bound,
+        unit,
+        quantity.method,
     )
 
 
@@ -65,7 +66,9 @@ def per_area(quantity: Quantity, area_cm2: float | None) -> Quantity:
 def parameters_per_area(
     parameters: tuple[Parameter, ...], area_cm2: float | None
 ) -> tuple[Parameter, ...]:
-    return tuple(replace(p, quantity=per_area(p.quantity, area_cm2)) for p in parameters)
+    return tuple(
+        Parameter(p.symbol, p.meaning, p.layer, per_area(p.quantity, area_cm2)) for p in parameters
+    )
 
 
 def held_by_leads(ohm: float, leads_ohm: float | None) -> bool:

@@ -1,4 +1,4 @@
-"""Capacitances: of film and interface from a fit, and of the film straight from the data.
+"""Capacitances of film and interface from a fit.
 
 A constant-phase element Q (jω)^n is not a capacitor; which capacitance it stands for depends on the
 case, so the law is always named (formulas from memory of the papers, checked by their limit C = Q
@@ -24,24 +24,21 @@ The open leads lie in parallel with the film; their capacitance is taken away fr
 Limits: the gradient of ln C on the logarithms of the parameters, with the fit's covariance. Without
 one, the absolute contributions are added, as if all errors conspired; but where the high frequency
 lies inside the used points, the curve runs through them and cannot miss by more than their scatter.
-
-Straight from the data at one frequency: parallel C = −Z″/(ω|Z|²), series C = −1/(ωZ″), after taking
-away the admittance of the open leads.
 """
 
 from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 
 from coatgui.assessment.amounts import from_logarithm, log_deviation, per_area
-from coatgui.assessment.modulus import relative_scatter
+from coatgui.assessment.modulus import relative_scatter, used_points
 from coatgui.assessment.rules import rule
 from coatgui.quality import leads_admittance
 from coatgui.records import (
-    BoolArray,
     Bound,
     Finding,
     Fit,
@@ -63,10 +60,17 @@ class _Layer:
     r: Parameter | None
 
 
+# A panel's fits are asked for many things one after the other, so the last ones are kept.
+@lru_cache(maxsize=256)
+def _by_symbol(fit: Fit) -> dict[str, Parameter]:
+    return {p.symbol: p for p in fit.parameters}
+
+
 def _named(fit: Fit, symbol: str) -> Parameter | None:
-    return next((p for p in fit.parameters if p.symbol == symbol), None)
+    return _by_symbol(fit).get(symbol)
 
 
+@lru_cache(maxsize=256)
 def _film_layers(fit: Fit) -> list[_Layer]:
     layers = []
     for q_symbol, n_symbol, r_symbol in _FILM_LAYERS:
@@ -99,16 +103,23 @@ def turning_frequency(fit: Fit, spectrum: Spectrum) -> float | None:
     """(RQ)^(-1/n)/2π in Hz, where the film's resistance takes over from its capacitance; None where
     it does not lie among the used points, the data do not hold R from both sides, or the film is
     not a single layer."""
+    turning = _turning(fit)
+    if turning is None:
+        return None
+    used, _ = used_points(spectrum, fit.used)
+    inside = bool(used) and used[0] < turning < used[-1]
+    return turning if inside else None
+
+
+@lru_cache(maxsize=256)
+def _turning(fit: Fit) -> float | None:
     layers = _film_layers(fit)
     if len(layers) != 1 or layers[0].r is None:
         return None
     q, n, r = layers[0].q.quantity, layers[0].n.quantity, layers[0].r.quantity
     if r.bound is not Bound.TWO_SIDED or not (q.value and n.value and r.value):
         return None
-    turning = float((r.value * q.value) ** (-1 / n.value) / (2 * math.pi))
-    used = spectrum.frequency_hz[fit.used]
-    inside = bool(used.size) and float(used[-1]) < turning < float(used[0])
-    return turning if inside else None
+    return float((r.value * q.value) ** (-1 / n.value) / (2 * math.pi))
 
 
 # ---------------------------------------------------------------------------------------------
@@ -235,8 +246,17 @@ def _at_high_frequency(
 def _deviation(fit: Fit, gradient: dict[str, float]) -> float | None:
     """Standard error of a logarithm from its gradient on the parameters' logarithms."""
     if fit.log_covariance is not None:
-        slope = np.array([gradient.get(p.symbol, 0.0) for p in fit.parameters])
-        variance = float(slope @ fit.log_covariance @ slope)
+        # A handful of parameters: plain sums are quicker than arrays.
+        slopes = [
+            (place, gradient[p.symbol])
+            for place, p in enumerate(fit.parameters)
+            if p.symbol in gradient
+        ]
+        variance = 0.0
+        for i, a in slopes:
+            row = fit.log_covariance[i].tolist()
+            for j, b in slopes:
+                variance += a * b * row[j]
         return math.sqrt(variance) if variance >= 0 else None
     total = 0.0
     for symbol, slope_ in gradient.items():
@@ -291,61 +311,3 @@ def interface_capacitance(fit: Fit, area_cm2: float | None) -> Quantity | None:
     value = brug(q.quantity.value, exponent, conductance)
     method = "Brug, with the solution" + (" and the pores in front" if len(in_front) > 1 else "")
     return per_area(from_logarithm(value, deviation, "F", method), area_cm2)
-
-
-# ---------------------------------------------------------------------------------------------
-# Straight from the data
-
-
-def measured_capacitance(
-    spectrum: Spectrum,
-    used: BoolArray,
-    fit: Fit | None,
-    frequency_hz: float,
-    area_cm2: float | None,
-    open_lead: Spectrum | None = None,
-) -> tuple[Quantity | None, Finding | None]:
-    """Parallel capacitance at one frequency from the used points, and a note where the phase is so
-    small that it is not the film's alone. The series value stands beside it in the method.
-
-    None where the frequency is not within the used points or the current does not lead.
-    """
-    frequency = spectrum.frequency_hz[used]
-    within = rule("modulus.measured_within")
-    if frequency.size < 2 or not (
-        frequency[-1] * (1 - within) <= frequency_hz <= frequency[0] * (1 + within)
-    ):
-        return None, None
-    impedance = spectrum.impedance_ohm[used][::-1]
-    if not np.abs(impedance).all():
-        return None, None
-    at = math.log(frequency_hz)
-    log_frequency = np.log(frequency[::-1])
-    modulus = math.exp(float(np.interp(at, log_frequency, np.log(np.abs(impedance)))))
-    phase = float(np.interp(at, log_frequency, np.unwrap(np.angle(impedance))))
-    admittance = complex(math.cos(phase), -math.sin(phase)) / modulus
-    method = f"measured at {frequency_hz:g} Hz, parallel"
-    if open_lead is not None:
-        admittance -= complex(leads_admittance(open_lead, np.array([frequency_hz]))[0])
-        method += ", without the open leads"
-    omega = 2 * math.pi * frequency_hz
-    parallel = admittance.imag / omega
-    if parallel <= 0:
-        return None, None
-    series = abs(admittance) ** 2 / (admittance.imag * omega)
-    degrees = math.degrees(math.atan2(admittance.imag, admittance.real))
-    unit_area = 1.0 if area_cm2 is None else area_cm2
-    unit = "F" if area_cm2 is None else "F/cm²"
-    method += f" (series {series / unit_area:.3g} {unit}, phase −{degrees:.1f}°)"
-    scatter = relative_scatter(spectrum, used, fit, frequency_hz)
-    quantity = per_area(from_logarithm(parallel, scatter, "F", method), area_cm2)
-    if degrees >= rule("capacitance.phase_deg"):
-        return quantity, None
-    note = Finding(
-        "capacitance_phase",
-        Severity.NOTE,
-        f"At {frequency_hz:g} Hz the phase is only −{degrees:.0f}°: the capacitance read there is "
-        "not that of the film alone.",
-        evidence=(("phase_deg", -degrees),),
-    )
-    return quantity, note

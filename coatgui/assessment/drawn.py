@@ -1,4 +1,8 @@
-"""What has been drawn from one reading so far: the working record of an assessment."""
+"""What has been drawn from one reading so far: the working record of an assessment.
+
+`conducts`: the pores carry more than the film's capacitance at the low end of the window, by a
+resistance that the data hold from both sides, leads included.
+"""
 
 from __future__ import annotations
 
@@ -37,6 +41,7 @@ class Drawn:
     coating_capacitance: Quantity | None = None
     measured_capacitance: Quantity | None = None
     pore_resistance: Quantity | None = None
+    conducts: bool = False
     interface_capacitance: Quantity | None = None
     water_uptake: WaterUptake | None = None
     relative_permittivity: Quantity | None = None

@@ -15,6 +15,7 @@ Readings that do not count are not among those passed in.
 from __future__ import annotations
 
 import math
+from bisect import insort
 from collections.abc import Sequence
 from dataclasses import dataclass
 
@@ -196,8 +197,10 @@ def fall_event(
         for time, m in zip(exposure_h, moduli, strict=True)
         if m is not None and m.quantity is not None and m.quantity.value
     ]
+    before: list[float] = []
     for place in range(1, len(known)):
-        level = float(np.median([value for _, value, _ in known[:place]]))
+        insort(before, known[place - 1][1])
+        level = (before[(place - 1) // 2] + before[place // 2]) / 2  # their median
         time, now, modulus = known[place]
         if level - now <= least:
             continue

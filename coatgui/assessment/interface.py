@@ -24,13 +24,15 @@ STP, 1993) and can differ by decades, so their ends are given as a bracket.
 
 from __future__ import annotations
 
+import cmath
 import math
 import re
-from dataclasses import replace
+from functools import cache
 
 import numpy as np
 
 from coatgui.assessment.mixing import VACUUM_F_PER_CM
+from coatgui.assessment.modulus import used_points
 from coatgui.assessment.rules import table
 from coatgui.records import ActiveArea, BoolArray, Bound, Breakpoint, Quantity, Spectrum
 
@@ -79,16 +81,20 @@ def _held(quantity: Quantity | None) -> float | None:
 def _crossing(spectrum: Spectrum, used: BoolArray) -> float | None:
     """Highest frequency at which the used points' phase passes −45° from a capacitive stretch above
     it, Hz; interpolated on log f."""
-    degrees = np.degrees(np.angle(spectrum.impedance_ohm[used])) + 45
-    passes = np.flatnonzero((degrees[:-1] < 0) & (degrees[1:] >= 0))
+    frequency, _ = used_points(spectrum, used)
+    impedance = spectrum.impedance_ohm[used]
+    # The phase is above −45° where the real part outweighs the imaginary one.
+    above = impedance.real + impedance.imag >= 0
+    passes = np.flatnonzero(~above[:-1] & above[1:])
     if not passes.size:
         return None
     at = int(passes[0])
-    share = degrees[at] / (degrees[at] - degrees[at + 1])
-    ends = np.log(spectrum.frequency_hz[used][at : at + 2])
-    return math.exp(float(ends[0] + share * (ends[1] - ends[0])))
+    before, after = (cmath.phase(complex(impedance[i])) + math.pi / 4 for i in (at, at + 1))
+    start, stop = (math.log(frequency[-1 - i]) for i in (at, at + 1))
+    return math.exp(start + before / (before - after) * (stop - start))
 
 
+@cache
 def pore_resistivity(electrolyte: str) -> tuple[float | None, str]:
     """Resistivity of the panel's electrolyte in Ω cm and its name; None where it is known that
     there is none to use. An electrolyte that is not recognised gets the usual one."""
@@ -158,13 +164,14 @@ def active_area(
 
 
 def _bracketed(routes: list[tuple[str, Quantity]]) -> ActiveArea:
-    failed = [name for name, q in routes if (q.value or 0.0) > 1]
-    kept = [
-        (name, replace(q, value=min(q.value or 0.0, 1.0), high=min(q.high or 0.0, 1.0)))
-        for name, q in routes
-    ]
-    low = min(min(q.low or 0.0, 1.0) for _, q in kept)
-    high = max(q.high or 0.0 for _, q in kept)
+    failed, kept = [], []
+    low, high = 1.0, 0.0
+    for name, q in routes:
+        value, least, most = q.value or 0.0, q.low or 0.0, min(q.high or 0.0, 1.0)
+        if value > 1:
+            failed.append(name)
+        low, high = min(low, least), max(high, most)
+        kept.append((name, Quantity(min(value, 1.0), least, most, q.bound, q.unit, q.method)))
     count = len(kept)
     said = f"Between {low:.2g} and {high:.2g} of the area, by {count} route{'s' * (count > 1)}."
     if high > 10 * low > 0:

@@ -15,8 +15,10 @@ place. Where |Z_leads| < 10 |Z| the reading says only how large the film's |Z| i
 from __future__ import annotations
 
 import math
+from bisect import bisect_left, bisect_right
 from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 
@@ -34,7 +36,7 @@ from coatgui.records import (
     Spectrum,
 )
 
-_HALF_DECADE = 0.5
+_HALF_DECADE = math.sqrt(10.0) * (1 + 1e-12)
 _FEWEST_FOR_SCATTER = 5
 
 
@@ -46,39 +48,94 @@ class ModulusAt:
     status: ModulusStatus
 
 
+_NOT_REACHED = ModulusAt(None, ModulusStatus.NOT_REACHED)
+
+
+@lru_cache(maxsize=256)
+def _places(frequency: bytes, used: bytes) -> tuple[list[float], list[int]]:
+    places = np.flatnonzero(np.frombuffer(used, dtype=np.bool_))[::-1]
+    return np.frombuffer(frequency)[places].tolist(), places.tolist()
+
+
+def used_points(spectrum: Spectrum, used: BoolArray) -> tuple[list[float], list[int]]:
+    """Frequencies of the used points from the lowest up, and their places. The readings of a
+    campaign share a few grids, so these are kept; do not change what is handed out."""
+    return _places(spectrum.frequency_hz.tobytes(), used.tobytes())
+
+
+def neighbours(frequency: Sequence[float], wanted_hz: float) -> tuple[int, int] | None:
+    """Places of the points on either side of a wanted frequency, the higher first; `frequency`
+    rises. None beyond its range."""
+    above = bisect_left(frequency, wanted_hz)
+    if above == len(frequency):
+        return None
+    if above == 0:
+        return (0, 0) if frequency[0] == wanted_hz else None
+    return above, above - 1
+
+
 def modulus_at(spectrum: Spectrum, used: BoolArray, frequency_hz: float) -> ModulusAt:
     """|Z| at `frequency_hz` from the used points only, never beyond their range."""
-    frequency = spectrum.frequency_hz[used]
-    modulus = np.abs(spectrum.impedance_ohm[used])
-    if not frequency.size:
-        return ModulusAt(None, ModulusStatus.NOT_REACHED)
-    nearest = int(np.argmin(np.abs(np.log(frequency / frequency_hz))))
+    frequency, places = used_points(spectrum, used)
+    if not frequency:
+        return _NOT_REACHED
+    above = bisect_left(frequency, frequency_hz)
+    beside = [i for i in (above, above - 1) if 0 <= i < len(frequency)]
+    nearest = min(beside, key=lambda i: abs(math.log(frequency[i] / frequency_hz)))
+    impedance = spectrum.impedance_ohm
     if abs(frequency[nearest] / frequency_hz - 1) <= rule("modulus.measured_within"):
-        return ModulusAt(float(modulus[nearest]), ModulusStatus.MEASURED)
-    if not frequency[-1] < frequency_hz < frequency[0]:
-        return ModulusAt(None, ModulusStatus.NOT_REACHED)
-    if not modulus.all():
-        return ModulusAt(None, ModulusStatus.NOT_REACHED)
-    log_modulus = np.interp(math.log(frequency_hz), np.log(frequency[::-1]), np.log(modulus[::-1]))
-    return ModulusAt(math.exp(float(log_modulus)), ModulusStatus.INTERPOLATED)
+        return ModulusAt(float(abs(impedance[places[nearest]])), ModulusStatus.MEASURED)
+    if not frequency[0] < frequency_hz < frequency[-1]:
+        return _NOT_REACHED
+    first, second = beside
+    moduli_ = abs(complex(impedance[places[first]])), abs(complex(impedance[places[second]]))
+    if not all(moduli_):
+        return _NOT_REACHED
+    share = math.log(frequency[first] / frequency_hz) / math.log(
+        frequency[first] / frequency[second]
+    )
+    log_modulus = (1 - share) * math.log(moduli_[0]) + share * math.log(moduli_[1])
+    return ModulusAt(math.exp(log_modulus), ModulusStatus.INTERPOLATED)
+
+
+class Scatter:
+    """Scatter of one component of Z around a frequency, as a share of |Z|: from the fit's residuals
+    within half a decade, not less than over the whole reading; without a fit from the roughness.
+    Worked out once for all frequencies that are asked for."""
+
+    __slots__ = ("_frequency", "_least", "_running")
+
+    def __init__(self, spectrum: Spectrum, used: BoolArray, fit: Fit | None) -> None:
+        self._running: list[float] | None = None
+        self._frequency: list[float] = []
+        if fit is None:
+            self._least = _roughness(spectrum, used)
+            return
+        self._least = fit.residual_rms_percent / 100
+        impedance = spectrum.impedance_ohm[fit.used]
+        miss = impedance - fit.modelled_ohm[fit.used]
+        size = impedance.real**2 + impedance.imag**2
+        with np.errstate(divide="ignore", invalid="ignore"):
+            squares = (miss.real**2 + miss.imag**2) / size
+        self._frequency, _ = used_points(spectrum, fit.used)
+        self._running = [0.0, *np.cumsum(squares[::-1]).tolist()]
+
+    def at(self, frequency_hz: float) -> float:
+        if self._running is None:
+            return self._least
+        start = bisect_left(self._frequency, frequency_hz / _HALF_DECADE)
+        stop = bisect_right(self._frequency, frequency_hz * _HALF_DECADE)
+        if stop - start < _FEWEST_FOR_SCATTER:
+            return self._least
+        near = self._running[stop] - self._running[start]
+        return max(self._least, math.sqrt(max(near, 0.0) / (stop - start) / 2))
 
 
 def relative_scatter(
     spectrum: Spectrum, used: BoolArray, fit: Fit | None, frequency_hz: float
 ) -> float:
     """Standard deviation of one component of Z around a frequency, as a share of |Z|."""
-    if fit is not None:
-        return max(fit.residual_rms_percent / 100, _local_residual(spectrum, fit, frequency_hz))
-    return _roughness(spectrum, used)
-
-
-def _local_residual(spectrum: Spectrum, fit: Fit, frequency_hz: float) -> float:
-    near = fit.used & (np.abs(np.log10(spectrum.frequency_hz / frequency_hz)) <= _HALF_DECADE)
-    if near.sum() < _FEWEST_FOR_SCATTER:
-        return 0.0
-    impedance = spectrum.impedance_ohm[near]
-    residual = (impedance - fit.modelled_ohm[near]) / np.abs(impedance)
-    return float(np.sqrt(np.mean(np.abs(residual) ** 2) / 2))
+    return Scatter(spectrum, used, fit).at(frequency_hz)
 
 
 def _roughness(spectrum: Spectrum, used: BoolArray) -> float:
@@ -104,19 +161,23 @@ def moduli(
     area_cm2: Sequence[float | None],
     frequencies_hz: Sequence[float],
     open_lead: Spectrum | None = None,
+    scatters: Sequence[Scatter] | None = None,
 ) -> list[tuple[Modulus, ...]]:
-    """|Z|·A of many spectra at each wanted frequency, in the order of `spectra`.
+    """|Z|·A of many spectra at each wanted frequency, in the order of `spectra`; their scatter may
+    be handed in.
 
     `used[i]` (N_i,) says which points of spectrum i count. Unit "Ω cm²", or "Ω" per specimen where
     the area is None.
     """
     leads = _leads_modulus(open_lead, frequencies_hz)
+    if scatters is None:
+        scatters = [Scatter(s, mask, fit) for s, mask, fit in zip(spectra, used, fits, strict=True)]
     return [
         tuple(
-            _one(spectrum, mask, fit, area, frequency, leads_ohm)
+            _one(spectrum, mask, scatter, area, frequency, leads_ohm)
             for frequency, leads_ohm in zip(frequencies_hz, leads, strict=True)
         )
-        for spectrum, mask, fit, area in zip(spectra, used, fits, area_cm2, strict=True)
+        for spectrum, mask, scatter, area in zip(spectra, used, scatters, area_cm2, strict=True)
     ]
 
 
@@ -132,7 +193,7 @@ def _leads_modulus(
 def _one(
     spectrum: Spectrum,
     used: BoolArray,
-    fit: Fit | None,
+    scatter: Scatter,
     area_cm2: float | None,
     frequency_hz: float,
     leads_ohm: float | None,
@@ -142,7 +203,7 @@ def _one(
         return Modulus(frequency_hz, at.status, None)
     unit = "Ω" if area_cm2 is None else "Ω cm²"
     area = 1.0 if area_cm2 is None else area_cm2
-    spread = math.exp(NORMAL_95 * relative_scatter(spectrum, used, fit, frequency_hz))
+    spread = math.exp(NORMAL_95 * scatter.at(frequency_hz))
     how = (
         "measured at this frequency"
         if at.status is ModulusStatus.MEASURED

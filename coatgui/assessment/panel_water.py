@@ -4,6 +4,7 @@ uptake with the bracket of the mixing laws, the uptake at saturation."""
 from __future__ import annotations
 
 from collections.abc import Sequence
+from typing import Any
 
 import numpy as np
 
@@ -113,18 +114,22 @@ def _bracketed(
     if dry_permittivity is not None and permittivity_finding(dry_permittivity) is None:
         known = dry_permittivity.value
     laws = bracket(ratio, water_permittivity(temperature_c), known, swelling)
-    each = laws.volume_percent.T.tolist()
-    ends = zip(laws.low.tolist(), laws.high.tolist(), strict=True)
+    each, lows, highs = (_listed(part) for part in (laws.volume_percent.T, laws.low, laws.high))
     return [
-        WaterUptake(
-            uptake,
-            reference_h,
-            None if low != low else low,
-            None if high != high else high,
-            tuple((n, None if v != v else v) for n, v in zip(laws.names, values, strict=True)),
-        )
-        for uptake, values, (low, high) in zip(uptakes, each, ends, strict=True)
+        WaterUptake(uptake, reference_h, low, high, laws.names, tuple(values))
+        for uptake, values, low, high in zip(uptakes, each, lows, highs, strict=True)
     ]
+
+
+def _listed(values: FloatArray) -> list[Any]:
+    """As nested lists, with None for what is not a number."""
+    if np.isfinite(values).all():
+        plain: list[Any] = values.tolist()
+        return plain
+    holed = values.astype(object)
+    holed[~np.isfinite(values)] = None
+    listed: list[Any] = holed.tolist()
+    return listed
 
 
 def draw_water(

@@ -17,7 +17,7 @@ import numpy as np
 
 from coatgui.assessment.amounts import NORMAL_95, at_least, held_by_leads, per_area
 from coatgui.assessment.capacitance import has_film
-from coatgui.assessment.modulus import relative_scatter
+from coatgui.assessment.modulus import relative_scatter, used_points
 from coatgui.quality import leads_admittance
 from coatgui.records import Bound, Fit, Quantity, Spectrum
 
@@ -36,7 +36,7 @@ def pore_resistance(
     """Pore resistance, Ω cm² (Ω without area); None for a model without a film."""
     if not has_film(fit) or not fit.used.any():
         return None
-    lowest = float(spectrum.frequency_hz[fit.used][-1])
+    lowest = used_points(spectrum, fit.used)[0][0]
     leads_ohm = leads_resistance(open_lead, lowest)
     fitted = _fitted(fit)
     if fitted is None:

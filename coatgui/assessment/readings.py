@@ -16,15 +16,17 @@ from coatgui.assessment.capacitance import (
     film_capacitance,
     hsu_mansfeld_capacitance,
     interface_capacitance,
-    measured_capacitance,
     small_exponent_finding,
+    turning_frequency,
 )
 from coatgui.assessment.drawn import Drawn
 from coatgui.assessment.leads import Leads
-from coatgui.assessment.modulus import moduli
+from coatgui.assessment.measured_capacitance import measured_capacitance
+from coatgui.assessment.modulus import Scatter, moduli
 from coatgui.assessment.pores import pore_resistance
 from coatgui.assessment.rules import rule
 from coatgui.records import (
+    Bound,
     Campaign,
     Check,
     Criterion,
@@ -102,6 +104,7 @@ def draw_readings(
     wanted = tuple(
         dict.fromkeys((*settings.modulus_frequencies_hz, *(c.frequency_hz for c in criteria)))
     )
+    scatters = [Scatter(d.reading.spectrum, d.used, d.fit) for d in drawn]
     at_frequencies = moduli(
         [d.reading.spectrum for d in drawn],
         [d.used for d in drawn],
@@ -109,8 +112,9 @@ def draw_readings(
         [d.area_cm2 for d in drawn],
         wanted,
         leads.limit,
+        scatters,
     )
-    for d, at in zip(drawn, at_frequencies, strict=True):
+    for d, at, scatter in zip(drawn, at_frequencies, scatters, strict=True):
         d.moduli = at
         spectrum = d.reading.spectrum
         d.measured_capacitance, note = measured_capacitance(
@@ -120,6 +124,7 @@ def draw_readings(
             settings.capacitance_frequency_hz,
             d.area_cm2,
             leads.parallel,
+            scatter,
         )
         if d.fit is not None:
             d.coating_capacitance = film_capacitance(
@@ -134,6 +139,11 @@ def draw_readings(
                 d.fit, spectrum, d.area_cm2, leads.parallel, d.interface_capacitance
             )
             d.pore_resistance = pore_resistance(d.fit, spectrum, d.area_cm2, leads.limit)
+            d.conducts = (
+                d.pore_resistance is not None
+                and d.pore_resistance.bound is Bound.TWO_SIDED
+                and turning_frequency(d.fit, spectrum) is not None
+            )
             d.findings.extend(
                 f for f in (note, small_exponent_finding(d.fit), *_fit_findings(d.fit)) if f
             )

@@ -13,6 +13,7 @@ It assumes water spread evenly, no swelling and a purely capacitive film; what i
 from __future__ import annotations
 
 import math
+from functools import cache
 
 import numpy as np
 from numpy.typing import ArrayLike
@@ -29,6 +30,11 @@ def water_permittivity(temperature_c: ArrayLike) -> FloatArray:
     value = np.polynomial.polynomial.polyval(t, np.asarray(law["coefficients"], dtype=np.float64))
     inside = (t >= law["from_c"]) & (t <= law["to_c"])
     return np.where(inside, value, np.nan)
+
+
+@cache
+def _permittivity_at(temperature_c: float) -> float:
+    return float(water_permittivity(temperature_c))
 
 
 def brasher_kingsbury(capacitance: float, dry_capacitance: float, permittivity: float) -> float:
@@ -50,7 +56,7 @@ def apparent_uptake(
         capacitance.value and capacitance.low and dry_capacitance.value and dry_capacitance.high
     ):
         raise ValueError("Water uptake needs two capacitances with their limits.")
-    permittivity = float(water_permittivity(temperature_c))
+    permittivity = _permittivity_at(temperature_c)
     if math.isnan(permittivity):
         return None
     percent = 100 / math.log(permittivity)
@@ -80,7 +86,7 @@ def uptake_of_rise(
 ) -> Quantity | None:
     """Water at saturation in volume-percent from ln(C_∞/C_0) of a joint fit, with its limits;
     L_∞/L_0 is multiplied in where the film swells in thickness. None outside 0–100 °C."""
-    permittivity = float(water_permittivity(temperature_c))
+    permittivity = _permittivity_at(temperature_c)
     if math.isnan(permittivity):
         return None
     percent = 100 / math.log(permittivity)

@@ -18,10 +18,10 @@ from coatgui.assessment.capacitance import (
     hsu_mansfeld,
     hsu_mansfeld_capacitance,
     interface_capacitance,
-    measured_capacitance,
     small_exponent_finding,
     turning_frequency,
 )
+from coatgui.assessment.measured_capacitance import measured_capacitance
 from coatgui.records import Bound, Fit, Quantity, Spectrum
 
 Made = Callable[..., tuple[Spectrum, Fit]]
