@@ -11,7 +11,7 @@ from itertools import pairwise
 from coatgui.intake.headings import Meaning, meaning, take_unit
 from coatgui.intake.labels import label_in, moment_in, time_in
 from coatgui.intake.segments import Block, Piece, TextRow
-from coatgui.intake.units import Unit, kind_of, unit_of
+from coatgui.intake.units import Unit, data, kind_of, unit_of
 
 FREQUENCIES = ("frequency", "angular_frequency")
 SHARED = ("time", "panel", "date")
@@ -244,8 +244,6 @@ def _with_pair(said: Said, key: str, value: str) -> Said:
 
 def meaning_is_exposure(text: str) -> bool:
     """Whether a text speaks of exposure, and not of any time."""
-    from coatgui.intake.units import data
-
     words = re.findall(r"[^\W\d_]+", text.casefold())
     return any(word in data()["notion"]["exposure"] for word in words)
 

@@ -21,7 +21,7 @@ from coatgui.intake.impedance import (
     impedance_of,
     refuse_contradiction,
 )
-from coatgui.intake.layout import Section
+from coatgui.intake.layout import Section, meaning_is_exposure
 from coatgui.intake.segments import TextRow
 from coatgui.records import ComplexArray, Dialect, FloatArray, Spectrum
 
@@ -307,6 +307,8 @@ def _exposures(made: Extract, size: int) -> FloatArray | None:
     if np.unique(hours).size > max(1, size // _FEWEST_POINTS):
         return None  # a clock that runs through the sweep, not an exposure time
     column = made.column("time")
+    if column.factor < 1.0 and not (made.told or meaning_is_exposure(column.heading)):
+        return None  # seconds or minutes are how long something took
     if not (column.unit or made.hours_in_words or made.told):
         raise Unclear(
             f"The column '{column.heading[:40]}' names no unit: say whether the exposure is in "

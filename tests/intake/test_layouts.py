@@ -106,6 +106,13 @@ def test_an_exposure_without_a_unit_is_asked_about() -> None:
         == [24.0, 168.0]  # fmt: skip
 
 
+def test_seconds_are_no_exposure() -> None:
+    zero = np.zeros(29)
+    assert one(text("Time (s);f;Z';Z''", zero, FREQUENCY, Z.real, Z.imag)).exposure_h is None
+    exposed = one(text("Exposure (min);f;Z';Z''", zero + 90, FREQUENCY, Z.real, Z.imag))
+    assert exposed.exposure_h == pytest.approx(1.5)
+
+
 def test_a_line_of_words_among_the_points_is_no_new_table() -> None:
     lines = text("f;Z';Z''", FREQUENCY, Z.real, Z.imag).splitlines()
     lines[10] = "overload;;"
