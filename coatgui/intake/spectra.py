@@ -85,7 +85,8 @@ def pieces(sections: Sequence[Section], after: Sequence[TextRow], origin: Origin
     doubts = (*passed_over, *_settle_signs(extracts))
     result: list[Piece] = []
     for made in extracts:
-        result += _cut(made, origin, [*remarks, *made.remarks, *doubts], doubts)
+        own = (*made.doubts, *doubts)
+        result += _cut(made, origin, [*remarks, *made.remarks, *own], own)
     return with_parts(result)
 
 

@@ -72,6 +72,13 @@ def test_columns_without_headings() -> None:
         read_spectra(text("", MODULUS, Z.real, Z.imag).encode())
 
 
+def test_headings_that_are_not_understood_are_doubted() -> None:
+    piece = one(text("freq fit;real fit;imag fit", FREQUENCY, Z.real, Z.imag))
+    assert is_z(piece)
+    assert any("'freq fit, real fit, imag fit' were not understood" in d for d in piece.doubts)
+    assert not one(text("", FREQUENCY, Z.real, Z.imag)).doubts
+
+
 def test_a_phase_without_a_unit() -> None:
     assert is_z(one(text("f;|Z|;phase", FREQUENCY, MODULUS, DEGREES)))
     assert is_z(one(text("f;|Z|;phase", FREQUENCY, MODULUS, np.radians(DEGREES))))
