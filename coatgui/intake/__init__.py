@@ -12,11 +12,14 @@ from coatgui.intake.folder import (
 from coatgui.intake.names import NamePattern
 from coatgui.intake.proposals import Correction, DryRun, Proposal, Standing, Told
 from coatgui.intake.reading import read_again, read_spectra
+from coatgui.intake.template import read_lists, template
+from coatgui.intake.watch import FolderWatch
 
 __all__ = [
     "SPECTRUM_ENDINGS",
     "Correction",
     "DryRun",
+    "FolderWatch",
     "NamePattern",
     "Proposal",
     "Standing",
@@ -29,5 +32,7 @@ __all__ = [
     "read_again",
     "read_files",
     "read_folder",
+    "read_lists",
     "read_spectra",
+    "template",
 ]
