@@ -16,21 +16,12 @@ from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QApplication
 
 from coatgui.records import Bound, ReadingAssessment
-from coatgui.shipped import sample_panels
 from coatgui.window import palette
 from coatgui.window.main_window import MainWindow
 from coatgui.window.places.reading_place import OTHER_TIMES, REPLICATES, ReadingPlace
 from coatgui.window.section import SectionView, section_of
 
 Wait = Callable[[Callable[[], bool]], None]
-
-
-@pytest.fixture
-def sample(window: MainWindow, wait: Wait) -> MainWindow:
-    window.desk.open(sample_panels())
-    wait(lambda: window.desk.job is None and window.desk.assessment is not None)
-    window.go(1)
-    return window
 
 
 def known(window: MainWindow, panel: str, hours: float) -> ReadingAssessment:
@@ -41,6 +32,8 @@ def known(window: MainWindow, panel: str, hours: float) -> ReadingAssessment:
 
 
 def place_of(window: MainWindow) -> ReadingPlace:
+    window.go(1)
+    QApplication.processEvents()
     place = window.places[1]
     assert isinstance(place, ReadingPlace)
     return place
@@ -58,7 +51,7 @@ def drag(window: MainWindow, plot: object, start: QPoint, end: QPoint) -> None:
             Qt.MouseButton.NoButton, Qt.MouseButton.LeftButton, shift,
         )  # fmt: skip
         QApplication.sendEvent(view, move)
-        QApplication.processEvents()
+        QTest.qWait(20)  # the plots take no more than a hundred moves a second
     QTest.mouseRelease(view, Qt.MouseButton.LeftButton, shift, end)
     for _ in range(3):
         QApplication.processEvents()
@@ -82,16 +75,21 @@ def test_other_times_and_replicates_are_drawn_beside(sample: MainWindow) -> None
     assert not [c for c in curves if c.getData()[0] is not None and len(c.getData()[0])]
 
 
+def box(place: ReadingPlace) -> tuple[QPoint, QPoint]:
+    """Corners of a box about points 10 to 13 of the phase, as the plot stands now."""
+    for _ in range(3):
+        QApplication.processEvents()
+    chosen = place.plots._on_screen(place.plots.phase)[10:14]
+    start = QPoint(round(chosen[:, 0].min()) - 3, round(chosen[:, 1].min()) - 9)
+    return start, QPoint(round(chosen[:, 0].max()) + 3, round(chosen[:, 1].max()) + 9)
+
+
 def test_a_box_leaves_points_out_and_takes_them_back(sample: MainWindow, wait: Wait) -> None:
     place = place_of(sample)
     reading = known(sample, "M2", 168)
     sample.desk.select(reading.reading_id)
     QApplication.processEvents()
-    points = place.plots._on_screen(place.plots.phase)
-    chosen = points[10:14]
-    start = QPoint(round(chosen[:, 0].min()) - 3, round(chosen[:, 1].min()) - 9)
-    end = QPoint(round(chosen[:, 0].max()) + 3, round(chosen[:, 1].max()) + 9)
-    drag(sample, place.plots.phase, start, end)
+    drag(sample, place.plots.phase, *box(place))
     record = sample.desk.reading()
     assert record is not None
     assert [point for point, _ in record.left_out] == [10, 11, 12, 13]
@@ -99,7 +97,7 @@ def test_a_box_leaves_points_out_and_takes_them_back(sample: MainWindow, wait: W
     after = known(sample, "M2", 168)
     assert after.points_used == reading.points_used - 4
     # All that the box holds are left out already: the same box takes them back.
-    drag(sample, place.plots.phase, start, end)
+    drag(sample, place.plots.phase, *box(place))
     record = sample.desk.reading()
     assert record is not None
     assert not record.left_out

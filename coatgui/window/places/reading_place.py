@@ -3,9 +3,11 @@ below."""
 
 from __future__ import annotations
 
+import math
+
 import numpy as np
 from PySide6.QtCore import Qt, QTimer
-from PySide6.QtGui import QResizeEvent
+from PySide6.QtGui import QFontMetricsF, QResizeEvent
 from PySide6.QtWidgets import (
     QAbstractItemView,
     QComboBox,
@@ -71,7 +73,7 @@ class ReadingPlace(Place):
         row.addLayout(left, 1)
         row.addLayout(self._side(tone))
         self.findings = plain_label()
-        self.findings.setAccessibleName("Findings on this reading")
+        self.findings.setAlignment(Qt.AlignmentFlag.AlignTop)
         area = QScrollArea()
         area.setWidget(self.findings)
         area.setWidgetResizable(True)
@@ -195,9 +197,12 @@ class ReadingPlace(Place):
 
     def _fit_findings(self) -> None:
         """As high as the findings need, up to some whole lines; the rest is scrolled to."""
-        line = self.findings.fontMetrics().lineSpacing()
+        self.findings.ensurePolished()
+        line = math.ceil(QFontMetricsF(self.findings.font()).lineSpacing())
         needed = self.findings.heightForWidth(max(self.width() - 40, 200))
-        self.findings_area.setFixedHeight(min(needed, _MOST_LINES * line) + 2)
+        self.findings_area.setFixedHeight(
+            min(needed, _MOST_LINES * line) + 2 * self.findings_area.frameWidth() + 2
+        )
 
     def resizeEvent(self, event: QResizeEvent) -> None:
         super().resizeEvent(event)
