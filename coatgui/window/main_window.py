@@ -32,6 +32,7 @@ from coatgui.window.asking import Leave, file_to_write, how_to_leave, say_plainl
 from coatgui.window.desk import Desk
 from coatgui.window.exposure_strip import ExposureStrip
 from coatgui.window.facts import FactsView, facts
+from coatgui.window.figure import as_text, on_white, picture, save
 from coatgui.window.places.course_place import CoursePlace
 from coatgui.window.places.doubts_place import DoubtsPlace
 from coatgui.window.places.map_place import MapPlace
@@ -313,6 +314,48 @@ class MainWindow(QMainWindow):
 
     def halt_work(self) -> None:
         self.desk.stop()
+
+    def _on_paper(self, then: Callable[[list[QWidget], str], None]) -> None:
+        """Hand on the open place's plots while they wear the colours of paper."""
+        place = self.places[self.stack.currentIndex()]
+        if not place.figure():
+            self.trouble.say("There is no plot here to copy or save: go to Map, Reading or Course.")
+            return
+        place.paint_in(on_white())
+        try:
+            then(place.figure(), place.caption())
+        finally:
+            place.paint_in(self.tone)
+
+    def copy_picture(self) -> None:
+        def copy(widgets: list[QWidget], caption: str) -> None:
+            QApplication.clipboard().setImage(picture(widgets, caption))
+            self._told("The picture is on the clipboard.")
+
+        self._on_paper(copy)
+
+    def save_picture(self) -> None:
+        path = self._to_write("Picture", "Drawing (*.svg);;Picture (*.png)", ".svg")
+        if path is None:
+            return
+
+        def write(widgets: list[QWidget], caption: str) -> None:
+            try:
+                save(widgets, caption, path)
+            except OSError as error:
+                self.trouble.say(f"{path.name} could not be written: {error.strerror}.")
+            else:
+                self._told(f"Written: {path.name}")
+
+        self._on_paper(write)
+
+    def copy_table(self) -> None:
+        rows = self.places[self.stack.currentIndex()].data_rows()
+        if len(rows) < 2:
+            self.trouble.say("There are no data here to copy: go to Map, Reading or Course.")
+            return
+        QApplication.clipboard().setText(as_text(rows))
+        self._told(f"{len(rows) - 1} rows are on the clipboard, for a spreadsheet.")
 
     def undo(self) -> None:
         self.desk.undo()

@@ -3,9 +3,11 @@ below."""
 
 from __future__ import annotations
 
+import math
+
 import numpy as np
 from PySide6.QtCore import Qt, QTimer
-from PySide6.QtGui import QResizeEvent
+from PySide6.QtGui import QFontMetricsF, QResizeEvent
 from PySide6.QtWidgets import (
     QAbstractItemView,
     QComboBox,
@@ -16,6 +18,7 @@ from PySide6.QtWidgets import (
     QTableWidget,
     QTableWidgetItem,
     QVBoxLayout,
+    QWidget,
 )
 
 from coatgui.campaign import operations
@@ -28,6 +31,10 @@ from coatgui.window.places.place import Place, plain_label, plain_tip
 from coatgui.window.section import SectionView, section_of
 from coatgui.window.spectrum_plots import Drawn, SpectrumPlots
 
+_HEADINGS = (
+    "frequency_hz", "real_ohm", "imaginary_ohm", "modulus_ohm", "phase_degrees", "used",
+    "model_real_ohm", "model_imaginary_ohm",
+)  # fmt: skip
 _MOST_LINES = 5
 _AUTOMATIC = "Model chosen by the data"
 _MARKS = {"note": "◦", "doubt": "▲", "reject": "■"}
@@ -66,7 +73,7 @@ class ReadingPlace(Place):
         row.addLayout(left, 1)
         row.addLayout(self._side(tone))
         self.findings = plain_label()
-        self.findings.setAccessibleName("Findings on this reading")
+        self.findings.setAlignment(Qt.AlignmentFlag.AlignTop)
         area = QScrollArea()
         area.setWidget(self.findings)
         area.setWidgetResizable(True)
@@ -152,6 +159,7 @@ class ReadingPlace(Place):
                 if own.get(r.panel_id) == own.get(reading.panel_id)
                 and r.exposure_h == reading.exposure_h
             ]
+        found.sort(key=lambda r: r.exposure_h)  # the longest lies on top
         times = sorted({r.exposure_h for r in found})
         return [
             (
@@ -189,9 +197,12 @@ class ReadingPlace(Place):
 
     def _fit_findings(self) -> None:
         """As high as the findings need, up to some whole lines; the rest is scrolled to."""
-        line = self.findings.fontMetrics().lineSpacing()
+        self.findings.ensurePolished()
+        line = math.ceil(QFontMetricsF(self.findings.font()).lineSpacing())
         needed = self.findings.heightForWidth(max(self.width() - 40, 200))
-        self.findings_area.setFixedHeight(min(needed, _MOST_LINES * line) + 2)
+        self.findings_area.setFixedHeight(
+            min(needed, _MOST_LINES * line) + 2 * self.findings_area.frameWidth() + 2
+        )
 
     def resizeEvent(self, event: QResizeEvent) -> None:
         super().resizeEvent(event)
@@ -212,6 +223,41 @@ class ReadingPlace(Place):
                     plain_tip(f"{meaning} ({WORDS[quantity.bound]}). {quantity.method}")
                 )
                 self.table.setItem(i, j, item)
+
+    def figure(self) -> list[QWidget]:
+        return [] if self.desk.reading() is None else list(self.plots.plots)
+
+    def caption(self) -> str:
+        known = self.desk.reading_assessment()
+        if known is None:
+            return ""
+        model = f", {known.fit.model_name}" if known.fit else ""
+        return f"{known.panel} ({known.formulation}) after {known.exposure_h:g} h{model}"
+
+    def data_rows(self) -> list[list[object]]:
+        reading = self.desk.reading()
+        if reading is None:
+            return []
+        shown = drawn(reading, self.desk.reading_assessment())
+        z = reading.spectrum.impedance_ohm
+        model = shown.fit.modelled_ohm if shown.fit else [None] * z.size
+        rows: list[list[object]] = [list(_HEADINGS)]
+        for f, measured, fitted, used in zip(
+            reading.spectrum.frequency_hz, z, model, shown.used, strict=True
+        ):
+            rows.append(
+                [
+                    float(f), float(measured.real), float(measured.imag), float(abs(measured)),
+                    float(np.degrees(np.angle(measured))), "yes" if used else "no",
+                    None if fitted is None else float(fitted.real),
+                    None if fitted is None else float(fitted.imag),
+                ]
+            )  # fmt: skip
+        return rows
+
+    def paint_in(self, tone: Colours) -> None:
+        self.plots.point_at(-1)  # the cursor belongs to the mouse, not into a picture
+        super().paint_in(tone)
 
     def _pointed(self, words: str) -> None:
         self.read_out.setText(words or _HINT)
