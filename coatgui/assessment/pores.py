@@ -12,6 +12,7 @@ A closed film has no such resistance in its model. Any resistance in parallel wo
 from __future__ import annotations
 
 import math
+from functools import lru_cache
 
 import numpy as np
 
@@ -22,6 +23,7 @@ from coatgui.quality import leads_admittance
 from coatgui.records import Bound, Fit, Quantity, Spectrum
 
 
+@lru_cache(maxsize=64)
 def leads_resistance(open_lead: Spectrum | None, frequency_hz: float) -> float | None:
     """Parallel resistance of the open leads at a frequency, Ω; None where they have none."""
     if open_lead is None:
