@@ -72,9 +72,15 @@ def per_area(quantity: Quantity, area_cm2: float | None) -> Quantity:
 def parameters_per_area(
     parameters: tuple[Parameter, ...], area_cm2: float | None
 ) -> tuple[Parameter, ...]:
-    return tuple(
-        Parameter(p.symbol, p.meaning, p.layer, per_area(p.quantity, area_cm2)) for p in parameters
-    )
+    if area_cm2 is None:
+        return parameters
+    found = []
+    for p in parameters:
+        factor, unit = per_area_factor(p.quantity.unit, area_cm2)
+        if unit != p.quantity.unit:
+            p = Parameter(p.symbol, p.meaning, p.layer, scaled(p.quantity, factor, unit))
+        found.append(p)
+    return tuple(found)
 
 
 def held_by_leads(ohm: float, leads_ohm: float | None) -> bool:

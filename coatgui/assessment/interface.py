@@ -98,6 +98,14 @@ def phase_crossings(on: Sequence[Grid], count: int) -> list[float | None]:
 
 
 @cache
+def _bare_metal() -> tuple[float, float]:
+    """Between which the double layer of bare metal lies, F/cm²."""
+    data = table("interface")
+    low, high = (data[f"bare_metal_capacitance_{end}"] for end in ("low", "high"))
+    return float(low["value"]), float(high["value"])
+
+
+@cache
 def pore_resistivity(electrolyte: str) -> tuple[float | None, str]:
     """Resistivity of the panel's electrolyte in Ω cm and its name; None where it is known that
     there is none to use. An electrolyte that is not recognised gets the usual one."""
@@ -121,7 +129,6 @@ def active_area(
     """Active share of the area. Quantities per cm²; routes that lack what they need are left out,
     and None where none is left. Shares are between 0 and 1; a route that gives more than the whole
     area has failed and is said so."""
-    data = table("interface")
     resistivity, named = pore_resistivity(electrolyte)
     routes: list[tuple[str, Quantity]] = []
     measured = None if found is None or found.valid is False else found.measured_hz
@@ -131,8 +138,7 @@ def active_area(
         how = f"f_b/f_b⁰, f_b⁰ = {whole_hz:.2g} Hz with ε_r = {permittivity:.1f}, {named}"
         routes.append(("breakpoint", Quantity(share, share, share, Bound.TWO_SIDED, "", how)))
     if interface_capacitance is not None and _held(interface_capacitance):
-        low = float(data["bare_metal_capacitance_low"]["value"])
-        high = float(data["bare_metal_capacitance_high"]["value"])
+        low, high = _bare_metal()
         value = interface_capacitance.value or 0.0
         routes.append(
             (

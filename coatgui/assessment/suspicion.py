@@ -19,6 +19,7 @@ from coatgui.records import (
     Finding,
     Panel,
     PanelAssessment,
+    Quantity,
     Reading,
     ReadingAssessment,
     Severity,
@@ -52,6 +53,10 @@ def with_suspicions(
         for reading_id, finding in source:
             raised.setdefault(reading_id, []).append(finding)
     facts = {panel.panel_id: panel for panel in campaign.panels}
+    capacitances: dict[str, Quantity] = {}
+    for r in readings:
+        if r.counts and r.coating_capacitance is not None and r.coating_capacitance.value:
+            capacitances.setdefault(r.panel_id, r.coating_capacitance)
     return (
         tuple(
             replace(r, findings=(*r.findings, *raised[r.reading_id]))
@@ -61,7 +66,7 @@ def with_suspicions(
         ),
         [
             replace(p, findings=(*p.findings, *found))
-            if (found := tuple(_film(p, facts[p.panel_id], readings, limits)))
+            if (found := tuple(_film(p, facts[p.panel_id], capacitances.get(p.panel_id), limits)))
             else p
             for p in panels
         ],
@@ -261,15 +266,15 @@ def _amplitude(
 def _film(
     result: PanelAssessment,
     panel: Panel,
-    readings: Sequence[ReadingAssessment],
+    first: Quantity | None,
     limits: Mapping[str, float],
 ) -> Iterator[Finding]:
-    """A permittivity that no film has, from capacitance, area and thickness."""
+    """A permittivity that no film has, from capacitance (dry, or that of the `first` reading that
+    has one), area and thickness."""
     if panel.area_cm2 is None or panel.thickness_um is None:
         return
-    own = [r for r in readings if r.panel_id == panel.panel_id and r.counts]
-    candidates = [result.dry_capacitance, *(r.coating_capacitance for r in own)]
-    capacitance = next((q.value for q in candidates if q is not None and q.value), None)
+    dry = result.dry_capacitance
+    capacitance = next((q.value for q in (dry, first) if q is not None and q.value), None)
     if capacitance is None:
         return
     permittivity = capacitance * panel.thickness_um * _CM_PER_UM / _VACUUM_F_PER_CM

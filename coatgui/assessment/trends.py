@@ -86,7 +86,7 @@ def course_table(readings: Sequence[ReadingAssessment], of: Kind) -> Table | Non
     there = np.isfinite(values).any(axis=0)
     if there.sum() < 2:
         return None
-    times = np.array([float(np.mean(group)) for group in groups])
+    times = np.array([sum(group) / len(group) for group in groups])
     return Table(times[there], values[:, there], bounded[:, there], units.pop())
 
 
