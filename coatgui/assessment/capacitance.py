@@ -37,6 +37,7 @@ import numpy as np
 from coatgui.assessment.amounts import NORMAL_95, log_deviation, per_area_factor
 from coatgui.assessment.modulus import relative_scatter, used_points
 from coatgui.assessment.rules import rule
+from coatgui.assessment.words import hertz
 from coatgui.quality import leads_admittance
 from coatgui.records import (
     BoolArray,
@@ -358,7 +359,7 @@ def _at_high_frequency(
     if all(n.bound is Bound.FIXED and n.value == 1 for n in exponents):
         method = "fitted capacitor"
     else:
-        method = f"fitted film at {frequency_hz:g} Hz, C = Q sin(nπ/2) ω^(n−1)"
+        method = f"fitted film at {hertz(frequency_hz)}, C = Q sin(nπ/2) ω^(n−1)"
     if len(group.layers) > 1:
         method += "; layers in series"
     return value, gradient, method

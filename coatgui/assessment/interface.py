@@ -34,6 +34,7 @@ import numpy as np
 from coatgui.assessment.mixing import VACUUM_F_PER_CM
 from coatgui.assessment.modulus import Grid
 from coatgui.assessment.rules import table
+from coatgui.assessment.words import counted, hertz, power_of_ten
 from coatgui.records import ActiveArea, Bound, Breakpoint, Quantity
 
 _CM_PER_UM = 1e-4
@@ -60,13 +61,13 @@ def breakpoint_figures(
     largest = float(table("interface")["largest_ratio"]["value"])
     if ratio > largest:
         said = (
-            f"C_c/C_dl is {ratio:.2g}, above {largest:g}: the phase never passes −45°, so there is "
-            "no breakpoint and no area can be had from it."
+            f"C_c/C_dl is {power_of_ten(ratio)}, above {largest:g}: the phase never passes −45°, "
+            "so there is no breakpoint and no area can be had from it."
         )
         return Breakpoint(measured_hz, None, None, None, ratio, False, said)
     least_hz = math.sqrt((1 + ratio) / ratio) / (2 * math.pi * resistance * interface)
     least_deg = math.degrees(math.atan(2 * math.sqrt(ratio * (1 + ratio))))
-    said = f"C_c/C_dl is {ratio:.2g}, within the limit of {largest:g}."
+    said = f"C_c/C_dl is {power_of_ten(ratio)}, within the limit of {largest:g}."
     if ratio > 0.01:
         said += " Above 0.01 an area from f_b and f_min is too small, by 3 percent and more."
     return Breakpoint(measured_hz, from_fit, least_hz, -least_deg, ratio, True, said)
@@ -135,7 +136,8 @@ def active_area(
     if measured is not None and permittivity and resistivity:
         whole_hz = 1 / (2 * math.pi * permittivity * VACUUM_F_PER_CM * resistivity)
         share = measured / whole_hz
-        how = f"f_b/f_b⁰, f_b⁰ = {whole_hz:.2g} Hz with ε_r = {permittivity:.1f}, {named}"
+        whole = hertz(float(f"{whole_hz:.2g}"))
+        how = f"f_b/f_b⁰, f_b⁰ = {whole} with ε_r = {permittivity:.1f}, {named}"
         routes.append(("breakpoint", Quantity(share, share, share, Bound.TWO_SIDED, "", how)))
     if interface_capacitance is not None and _held(interface_capacitance):
         low, high = _bare_metal()
@@ -182,7 +184,8 @@ def _bracketed(routes: list[tuple[str, Quantity]]) -> ActiveArea:
         low, high = min(low, least), max(high, most)
         kept.append((name, Quantity(min(value, 1.0), least, most, q.bound, q.unit, q.method)))
     count = len(kept)
-    said = f"Between {low:.2g} and {high:.2g} of the area, by {count} route{'s' * (count > 1)}."
+    between = f"Between {power_of_ten(low)} and {power_of_ten(high)}"
+    said = f"{between} of the area, by {counted(count, 'route')}."
     if high > 10 * low > 0:
         said += f" They differ by {math.log10(high / low):.1f} decades: only the order is known."
     if failed:

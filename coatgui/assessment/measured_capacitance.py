@@ -11,6 +11,7 @@ import numpy as np
 from coatgui.assessment.amounts import from_logarithm, per_area
 from coatgui.assessment.modulus import Grid, neighbours
 from coatgui.assessment.rules import rule
+from coatgui.assessment.words import hertz, power_of_ten
 from coatgui.quality import leads_admittance
 from coatgui.records import Finding, Quantity, Severity, Spectrum
 
@@ -64,7 +65,7 @@ def _one(
     frequency_hz: float,
     area_cm2: float | None,
 ) -> tuple[Quantity | None, Finding | None]:
-    method = f"measured at {frequency_hz:g} Hz, parallel"
+    method = f"measured at {hertz(frequency_hz)}, parallel"
     if leads is not None:
         admittance -= leads
         method += ", without the open leads"
@@ -76,15 +77,15 @@ def _one(
     degrees = math.degrees(math.atan2(admittance.imag, admittance.real))
     unit_area = 1.0 if area_cm2 is None else area_cm2
     unit = "F" if area_cm2 is None else "F/cm²"
-    method += f" (series {series / unit_area:.3g} {unit}, phase −{degrees:.1f}°)"
+    method += f" (series {power_of_ten(series / unit_area, 3)} {unit}, phase −{degrees:.1f}°)"
     quantity = per_area(from_logarithm(parallel, deviation, "F", method), area_cm2)
     if degrees >= rule("capacitance.phase_deg"):
         return quantity, None
     note = Finding(
         "capacitance_phase",
         Severity.NOTE,
-        f"At {frequency_hz:g} Hz the phase is only −{degrees:.0f}°: the capacitance read there is "
-        "not that of the film alone.",
+        f"At {hertz(frequency_hz)} the phase is only −{degrees:.0f}°: the capacitance read there "
+        "is not that of the film alone.",
         evidence=(("phase_deg", -degrees),),
     )
     return quantity, note

@@ -11,8 +11,8 @@ import numpy as np
 
 from coatgui.assessment.neighbours import course_findings
 from coatgui.assessment.rules import rule
-from coatgui.assessment.words import hours
-from coatgui.quality import hertz, thresholds
+from coatgui.assessment.words import hertz, hours, power_of_ten
+from coatgui.quality import thresholds
 from coatgui.records import (
     BoolArray,
     Campaign,
@@ -255,9 +255,9 @@ def _amplitude(
     return Finding(
         "amplitude_large",
         Severity.DOUBT,
-        f"The amplitude of {amplitude_mv:g} mV is large for {what} (|Z|·A is {shown:.1e} Ω cm² at "
-        f"{hertz(float(reading.spectrum.frequency_hz[-1]))}; up to {limits[name]:g} mV is usual): "
-        f"at an interface with 120 mV a decade the answer would be off by {error:.2g} %. Measure "
+        f"The amplitude of {amplitude_mv:g} mV is large for {what} (|Z|·A is "
+        f"{power_of_ten(shown)} Ω cm² at {hertz(float(reading.spectrum.frequency_hz[-1]))}; up to "
+        f"{limits[name]:g} mV is usual): at an interface with 120 mV a decade the answer would be off by {error:.2g} %. Measure "
         "with a smaller amplitude.",
         evidence=(("amplitude_mv", amplitude_mv), ("limit_mv", limits[name])),
     )
