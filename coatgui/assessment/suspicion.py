@@ -257,8 +257,8 @@ def _amplitude(
         Severity.DOUBT,
         f"The amplitude of {amplitude_mv:g} mV is large for {what} (|Z|·A is "
         f"{power_of_ten(shown)} Ω cm² at {hertz(float(reading.spectrum.frequency_hz[-1]))}; up to "
-        f"{limits[name]:g} mV is usual): at an interface with 120 mV a decade the answer would be off by {error:.2g} %. Measure "
-        "with a smaller amplitude.",
+        f"{limits[name]:g} mV is usual): at an interface with 120 mV a decade the answer would be "
+        f"off by {error:.2g} %. Measure with a smaller amplitude.",
         evidence=(("amplitude_mv", amplitude_mv), ("limit_mv", limits[name])),
     )
 

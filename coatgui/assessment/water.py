@@ -49,8 +49,9 @@ def apparent_uptake(
 
     The limits of the two capacitances are taken as independent and added in squares. Where the dry
     capacitance is only known from above (AT_MOST: it is that of a film already wet), the uptake is
-    at least what comes out, and never less than nothing: that reading's own uptake is at least 0. None where the temperature is outside 0–100 °C. Raises ValueError where
-    a capacitance lacks its value, or the limit that is needed.
+    at least what comes out, and never less than nothing: that reading's own uptake is at least 0.
+    None where the temperature is outside 0–100 °C. Raises ValueError where a capacitance lacks its
+    value, or the limit that is needed.
     """
     if not (
         capacitance.value and capacitance.low and dry_capacitance.value and dry_capacitance.high
