@@ -16,6 +16,7 @@ from dataclasses import dataclass
 from functools import cache
 
 from coatgui.assessment.rules import rule
+from coatgui.assessment.words import hertz
 from coatgui.records import (
     Bound,
     Course,
@@ -77,7 +78,7 @@ def _kinds(modulus_frequencies_hz: Sequence[float]) -> list[_Kind]:
         return take
 
     kinds = [
-        _Kind(f"modulus_{f:g}", f"|Z| at {f:g} Hz", True, modulus(f))
+        _Kind(f"modulus_{f:g}", f"|Z| at {hertz(f)}", True, modulus(f))
         for f in modulus_frequencies_hz
     ]
     kinds.append(

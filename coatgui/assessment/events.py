@@ -24,6 +24,7 @@ import numpy as np
 from coatgui.assessment.fick import time_to_share
 from coatgui.assessment.rules import rule
 from coatgui.assessment.sorption import Sorption
+from coatgui.assessment.words import hertz
 from coatgui.assessment.words import hours as in_hours
 from coatgui.records import (
     Bound,
@@ -208,7 +209,7 @@ def fall_event(
         if not last and level - known[place + 1][1] <= least:
             continue
         at_level = [t for t, value, _ in known[:place] if level - value <= still]
-        what = f"|Z| at {modulus.frequency_hz:g} Hz left its level, by {level - now:.1f} decades,"
+        what = f"|Z| at {hertz(modulus.frequency_hz)} left its level, by {level - now:.1f} decades,"
         return _event(exposure_h, at_level[-1], time, "modulus_falling", what, not last)
     return None
 
@@ -286,7 +287,7 @@ def rebound_event(
             continue
         now = math.log10(modulus.quantity.value)
         if highest - lowest >= decades and now - lowest >= decades:
-            what = f"|Z| at {modulus.frequency_hz:g} Hz rose again by {now - lowest:.1f} decades,"
+            what = f"|Z| at {hertz(modulus.frequency_hz)} rose again by {now - lowest:.1f} decades,"
             return _event(exposure_h, before_h, time, "rebound", what)
         if now >= highest:
             highest, lowest = now, now

@@ -22,6 +22,7 @@ from coatgui.assessment.water import (
     uptake_of_rise,
     water_permittivity,
 )
+from coatgui.assessment.words import hertz
 from coatgui.records import Finding, FloatArray, Panel, Quantity, Severity, WaterUptake
 
 
@@ -35,12 +36,12 @@ def uptake_basis(series: Sequence[Drawn], frequency_hz: float) -> tuple[list[Qua
     fitted = [d.coating_capacitance for d in series]
     films, fits = sum(q is not None for q in fitted), sum(d.fit is not None for d in series)
     if 2 * films >= len(series):
-        return fitted, f"fitted film at {frequency_hz:g} Hz"
+        return fitted, f"fitted film at {hertz(frequency_hz)}"
     if 2 * (fits - films) > len(series):
         return [None] * len(series), "no film shows"
     return (
         [d.measured_capacitance for d in series],
-        f"measured parallel capacitance at {frequency_hz:g} Hz",
+        f"measured parallel capacitance at {hertz(frequency_hz)}",
     )
 
 

@@ -157,8 +157,7 @@ def _film_and_pores(
         if not d.conducts:
             continue
         d.breakpoint = breakpoint_figures(
-            d.reading.spectrum,
-            d.used,
+            d.crossing_hz,
             d.pore_resistance,
             d.coating_capacitance,
             d.interface_capacitance,

@@ -49,8 +49,9 @@ def apparent_uptake(
 
     The limits of the two capacitances are taken as independent and added in squares. Where the dry
     capacitance is only known from above (AT_MOST: it is that of a film already wet), the uptake is
-    at least what comes out. None where the temperature is outside 0–100 °C. Raises ValueError where
-    a capacitance lacks its value, or the limit that is needed.
+    at least what comes out, and never less than nothing: that reading's own uptake is at least 0.
+    None where the temperature is outside 0–100 °C. Raises ValueError where a capacitance lacks its
+    value, or the limit that is needed.
     """
     if not (
         capacitance.value and capacitance.low and dry_capacitance.value and dry_capacitance.high
@@ -70,9 +71,7 @@ def apparent_uptake(
         math.log(dry_capacitance.high / dry_capacitance.value),
     )
     if dry_capacitance.bound is Bound.AT_MOST or not dry_capacitance.low or not capacitance.high:
-        bound = value - down
-        if bound < 0 <= value + down:  # nothing taken up, as far as the scatter lets one see
-            bound = 0.0
+        bound = max(value - down, 0.0)
         return Quantity(bound, bound, None, Bound.AT_LEAST, "vol-%", method)
     up = percent * math.hypot(
         math.log(capacitance.high / capacitance.value),

@@ -174,7 +174,7 @@ def test_early_advice_is_given_where_the_dry_film_is_not_known() -> None:
         "K2", "K2", "K", 10.0, 80.0, known, Quantity(4e-9, 3e-9, 5e-9, Bound.TWO_SIDED, "cm²/s")
     )
     (text,) = early_advice(_panel("K1", None), [sister])
-    assert "sister panels have D = 4e-09" in text
+    assert "sister panels have D = 4·10⁻⁹" in text
 
 
 def test_next_inspection(reading_of: MakeReading) -> None:
