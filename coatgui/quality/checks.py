@@ -10,7 +10,7 @@ import numpy as np
 from coatgui.progress import Progress
 from coatgui.quality.consistency import Consistency
 from coatgui.quality.faults import Searched, search
-from coatgui.quality.kramers_kronig import measurement_model, parts
+from coatgui.quality.kramers_kronig import grid_key, measurement_model, parts
 from coatgui.quality.leads import Limit
 from coatgui.quality.passivity import (
     misread_phase,
@@ -68,7 +68,7 @@ def check_spectra(
     for i, spectrum in enumerate(spectra):
         whole = _too_little(spectrum, limits)
         if whole is None:
-            grids.setdefault(spectrum.frequency_hz.tobytes(), []).append(i)
+            grids.setdefault(grid_key(spectrum.frequency_hz), []).append(i)
         else:
             result[i] = whole
     done = sum(check is not None for check in result)

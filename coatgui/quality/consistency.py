@@ -191,7 +191,7 @@ class Consistency:
         for fault in sorted(self.steps, key=lambda f: f.place):
             before, after = (float(self.frequency[fault.place - i]) for i in (1, 0))
             percent = 100 * float(np.expm1(fault.size.real))
-            large = abs(percent) > self.limits["step_doubt_percent"]
+            large = 100 * abs(fault.size.real) >= self.limits["step_doubt_percent"]
             yield Finding(
                 "step",
                 Severity.DOUBT if large else Severity.NOTE,

@@ -35,6 +35,7 @@ _BEYOND = 1.0  # decades of time constants beyond the window, either side
 _CONSTANT = 30.0  # the modulus itself is free: ln|Z| goes up to about this
 _LEVELS = (3e-2, 1e-2, 2e-3, 1.5e-4)
 _USUAL = 1  # the level that shows the scatter
+_ALIKE = 1e-4  # of ln f
 _SAYING = (0.05, 5.0)  # singular values, in units of the scatter, where the levels may end
 
 
@@ -100,11 +101,19 @@ class MeasurementModel:
         return np.asarray(logarithm - (logarithm @ u) @ u.T, dtype=np.float64)
 
 
-@lru_cache(maxsize=32)
-def _model(grid: bytes) -> MeasurementModel:
-    return MeasurementModel(np.frombuffer(grid, dtype=np.float64))
+def grid_key(frequency_hz: FloatArray) -> bytes:
+    """What tells grids (N,) apart for the model: ratios of frequencies, for the time constants are
+    laid by the window, and to 1e-4, which moves ln Z by as much at most."""
+    ratios = np.log(frequency_hz / frequency_hz[0])
+    return bytes((np.round(ratios / _ALIKE) * _ALIKE + 0.0).tobytes())
+
+
+@lru_cache(maxsize=256)
+def _model(key: bytes) -> MeasurementModel:
+    return MeasurementModel(np.exp(np.frombuffer(key, dtype=np.float64)))
 
 
 def measurement_model(frequency_hz: FloatArray) -> MeasurementModel:
-    """The model on a grid (N,), kept for the next spectrum on the same grid."""
-    return _model(np.ascontiguousarray(frequency_hz, dtype=np.float64).tobytes())
+    """The model on a grid (N,), kept for the next spectrum on a grid of the same ratios; its own
+    frequencies are relative to the first."""
+    return _model(grid_key(frequency_hz))

@@ -21,6 +21,9 @@ _BETTER = 0.3  # of the departure is left if another reading of the phase is rig
 _FOLLOWED = 0.01  # departure of a phase that was understood
 _SURE_SIGMA = 5.0
 _TOGETHER = 3  # points whose real parts are averaged
+_TOGETHER_SIGMA = 3.7
+_AT_END = 4  # points of the fast end whose real parts are averaged
+_END_SIGMA = 2.8
 _LEAST_NEGATIVE = 0.005  # share of |Z|
 _ROUNDS = 8
 _WOUND = 0.018
@@ -161,9 +164,14 @@ def negative_real(
     share = impedance.real / np.maximum(np.abs(impedance), 1e-300)
     neighbours = np.convolve(np.ones(share.size), np.ones(_TOGETHER), mode="same")
     mean = np.convolve(share, np.ones(_TOGETHER), mode="same") / neighbours
-    together = mean < -np.maximum(_SURE_SIGMA * scatter / np.sqrt(neighbours), _LEAST_NEGATIVE)
+    together = mean < -np.maximum(_TOGETHER_SIGMA * scatter / np.sqrt(neighbours), _LEAST_NEGATIVE)
     alone = share < -max(_SURE_SIGMA * scatter, _LEAST_NEGATIVE)
-    mask = (share < 0) & (together | alone)
+    # Cables and inputs act at the fast end: few places to look at, so less is asked there.
+    count = np.arange(1, min(_AT_END, share.size) + 1)
+    first = np.cumsum(share)[: count.size] / count
+    beyond = first < -np.maximum(_END_SIGMA * scatter / np.sqrt(count), _LEAST_NEGATIVE)
+    at_end = np.arange(share.size) < (count[beyond].max() if beyond.any() else 0)
+    mask = (share < 0) & (together | alone | at_end)
     for start, stop in stretches(mask):
         if stop - start == 1 and start > 0:
             continue  # one point alone is a wild point, if it is one

@@ -23,17 +23,17 @@ def test_clean_spectra_raise_few_doubts_and_no_rejects(
     answers = benchmark_table.checked(z)
     doubts = sum(any(f.severity is Severity.DOUBT for f in c.findings) for c in answers)
     rejects = sum(c.rejected for c in answers)
-    assert doubts <= 0.015 * len(z)  # 2 % is allowed
+    assert doubts <= 0.02 * len(z)
     assert rejects == 0
 
 
-@pytest.mark.parametrize("points", [12, 20, 29, 141])
+@pytest.mark.parametrize("points", [12, 20, 29, 91, 141])
 def test_clean_spectra_are_left_in_peace_on_any_grid(faults: ModuleType, points: int) -> None:
     rng = np.random.default_rng(16)
     grid = np.logspace(5, -2, points)
     spectra = [
         Spectrum(grid, faults.scattered(rng, s.impedance(grid), 10 ** rng.uniform(-2.7, -1.7)))
-        for s in faults.specimens(rng, 60)
+        for s in faults.specimens(rng, 125)
     ]
     answers = check_spectra(spectra, settings=Settings(), area_cm2=[1.0] * len(spectra))
     weighty = [any(f.severity is not Severity.NOTE for f in c.findings) for c in answers]
@@ -49,7 +49,8 @@ WANTED = [
     ("two wild neighbours", 0.1, 0.93),
     ("burst of scatter", 0.05, 0.93),
     ("mains pick-up", 0.05, 0.95),
-    ("step that stays", 0.05, 0.95),
+    ("step that stays", 0.02, 0.8),
+    ("step that stays", 0.05, 0.97),
     ("step that dies away", 0.1, 0.95),
     ("inductive tail", 0.1, 0.98),
     ("phase past -90°", 0.05, 0.95),
@@ -70,6 +71,15 @@ def test_a_fault_is_named(
     fault = next(f for f in faults.FAULTS if f.name == name)
     hits, _, _ = benchmark_table.rates(fault, strength, 20, 12, False)
     assert np.mean(hits) >= least
+
+
+def test_a_step_of_five_percent_is_doubted_whatever_the_scatter(
+    faults: ModuleType, benchmark_table: ModuleType
+) -> None:
+    """At 0.2 to 2 %: where it is 2 %, chance alone hides every third."""
+    fault = next(f for f in faults.FAULTS if f.name == "step that stays")
+    _, weighty, _ = benchmark_table.rates(fault, 0.05, 50, 18, False)
+    assert np.mean(weighty) >= 0.95
 
 
 def test_a_resistance_that_drifts_by_a_fifth_fails(
