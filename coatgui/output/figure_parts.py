@@ -8,7 +8,7 @@ from coatgui.output.drawing import DASHES, SHAPES
 from coatgui.records import Assessment, Quantity, ReadingAssessment
 
 WIDTH = 480.0  # points: the width of the text on a page
-_INKS = ("#1F4E79", "#A63F1E", "#1E6F6A", "#7A3E70", "#8A5A00", "#545C61")
+INKS = ("#1F4E79", "#A63F1E", "#1E6F6A", "#7A3E70", "#8A5A00", "#545C61")
 
 Take = Callable[[ReadingAssessment], Quantity | None]
 
@@ -16,7 +16,7 @@ Take = Callable[[ReadingAssessment], Quantity | None]
 def ink_of(place: int) -> tuple[str, str, str]:
     """Colour, shape and dashes of the formulation at this place."""
     return (
-        _INKS[place % len(_INKS)],
+        INKS[place % len(INKS)],
         SHAPES[place % len(SHAPES)],
         DASHES[place % len(DASHES)],
     )
