@@ -29,6 +29,7 @@ _LIKE_A_FORMULA = ("=", "+", "-", "@", "\t", "\r")
 _LONGEST_TEXT = 32_000
 _WIDEST, _NARROWEST = 60, 9
 _WIDEST_HEADING = 18
+_LINE, _DEEPEST = 15.0, 27  # points; rows are at most 409 points high
 _FIXED_TIME = (1980, 1, 1, 0, 0, 0)
 _ROWS = re.compile(rb"<sheetData ?/>|<sheetData>.*?</sheetData>", re.DOTALL)
 
@@ -100,7 +101,7 @@ class Book:
         letters = [letter(i) for i in range(len(columns))]
         head = self._style("General", wrap=True, bold=True)
         lines = [
-            '<row r="1">'
+            f'<row r="1" ht="{_LINE * _lines_of_heading(columns):g}" customHeight="1">'
             + "".join(
                 _text(f"{name}1", head, column.heading)
                 for name, column in zip(letters, columns, strict=True)
@@ -115,6 +116,7 @@ class Book:
         last = 1
         for last, row in enumerate(rows, start=2):
             cells: list[str] = []
+            deep = 1
             for place, column in enumerate(columns):
                 value = column.value(row)
                 at = f"{letters[place]}{last}"
@@ -123,6 +125,9 @@ class Book:
                         continue
                     text = clean(value)
                     widths[place] = max(widths[place], len(text))
+                    # Without a height of its own a row hides all but the first line of a text.
+                    if len(text) > _WIDEST:
+                        deep = max(deep, min(math.ceil(len(text) / (_WIDEST - 8)), _DEEPEST))
                     style = self._style(
                         "General",
                         wrap=len(text) > _WIDEST,
@@ -140,7 +145,8 @@ class Book:
                     cells.append(f'<c r="{at}" s="{numbered[place]}"><v>{value!r}</v></c>')
                 elif column.to_edit:
                     cells.append(f'<c r="{at}" s="{numbered[place]}"/>')
-            lines.append(f'<row r="{last}">{"".join(cells)}</row>')
+            high = f' ht="{_LINE * deep:g}" customHeight="1"' if deep > 1 else ""
+            lines.append(f'<row r="{last}"{high}>{"".join(cells)}</row>')
         self._rows[title] = lines
         self._size[title] = (last, len(columns))
         for name, width in zip(letters, widths, strict=True):
@@ -186,12 +192,11 @@ class Book:
 
         cell = Cell(self.workbook.worksheets[0], row=1, column=1)
         cell.number_format = number_format
-        if wrap:
-            cell.alignment = Alignment(wrap_text=True, vertical="top")
+        cell.alignment = Alignment(wrap_text=wrap, vertical="top")
         if fill:
             cell.fill = PatternFill("solid", fgColor=fill)
         if bold:
-            cell.font = Font(bold=True)
+            cell.font = Font(name="Calibri", size=11, bold=True)
         if quoted:
             cell.quotePrefix = True  # stays text when someone edits the cell
         self._styles[key] = str(cell.style_id)
@@ -234,6 +239,10 @@ class Book:
         for start in range(0, len(rows), 500):
             write("".join(rows[start : start + 500]).encode("utf-8"))
         write(b"</sheetData>" + after)
+
+
+def _lines_of_heading(columns: Sequence[Column[Any]]) -> int:
+    return max(math.ceil(len(column.heading) / (_WIDEST_HEADING - 4)) for column in columns)
 
 
 def _for_print(sheet: Any) -> None:

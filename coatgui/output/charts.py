@@ -21,6 +21,7 @@ _MOST_LINES = 12  # series in one chart
 _MOST_CHARTS = 24  # of one kind
 MOST_POINTS = 60_000  # of spectra that are written without being asked for
 _WIDE, _HIGH = 20.0, 10.5  # cm
+_ROWS_EACH = 22  # rows of a sheet that a chart takes
 _MARKS = ("circle", "square", "triangle", "diamond", "x", "star")
 _DASHES = ("solid", "dash", "sysDot", "dashDot", "lgDash", "sysDashDot")
 
@@ -81,7 +82,11 @@ class _Page:
         self.count = 0
 
     def add(self, chart: ScatterChart) -> None:
-        row = 1 + 22 * (self.count // 2)
+        from openpyxl.worksheet.pagebreak import Break
+
+        row = 1 + _ROWS_EACH * (self.count // 2)
+        if self.count and self.count % 4 == 0:  # four charts to a printed page
+            self.sheet.row_breaks.append(Break(id=row - 1))
         self.sheet.add_chart(chart, f"{'AL'[self.count % 2]}{row}")
         self.count += 1
 

@@ -37,6 +37,7 @@ from coatgui.records import (
 )
 
 _MOST_PANELS = 200  # of a formulation whose means are formulas
+_FARTHEST = 300.0  # decades: beyond them a number cannot be written
 _FIRST_PANEL = 12  # the column of the first panel in the sheet Courses, counted from 0
 
 
@@ -213,6 +214,8 @@ def _entering(
         return ()
     means = np.array([np.mean(own) for own in values.values()])
     value = float(means.mean())
+    if logarithmic and not abs(value) < _FARTHEST:
+        return ()
     if not agrees(10.0**value if logarithmic else value, point.quantity.value):
         return ()
     if len(means) == 1 and any(len(own) > 1 for own in by_panel.values()):

@@ -117,7 +117,10 @@ def add_water(book: Book, assessment: Assessment, campaign: Campaign, places: Pl
     def temperature(row: _Water) -> Value:
         if row.kept is not None and row.kept.temperature_c is not None:
             return row.temperature_c
-        cell = f"Panels!$E${places.panel_row[row.reading.panel_id]}"
+        number = places.panel_row.get(row.reading.panel_id)
+        if number is None:
+            return row.temperature_c
+        cell = f"Panels!$E${number}"
         return Formula(f'IF({cell}="",temperature_c,{cell})', row.temperature_c)
 
     def permittivity(row: _Water) -> Value:
