@@ -141,7 +141,7 @@ def with_prefix(value: float) -> str:
     return f"{value / 10.0**power:.3g} {_PREFIXES[power]}".rstrip()
 
 
-def _drawable(value: float, kind: str) -> bool:
+def drawable(value: float, kind: str) -> bool:
     """Numbers near the ends of what a computer holds have no place on an axis."""
     if not abs(value) < 1e200 or (kind == "root" and value < 0):
         return False
@@ -162,7 +162,7 @@ class Scale:
         self._per = (end - start) / ((last - first) or 1.0)
 
     def _footing(self, value: float) -> float | None:
-        if not _drawable(value, self.kind):
+        if not drawable(value, self.kind):
             return None
         if self.kind == "log":
             return math.log10(value)
@@ -215,7 +215,7 @@ def _squares(high: float) -> list[float]:
 
 def span_of(values: Sequence[float | None], kind: str) -> tuple[float, float] | None:
     """The ends of an axis that holds all the values; None where none can be drawn."""
-    good = [v for v in values if v is not None and _drawable(v, kind)]
+    good = [v for v in values if v is not None and drawable(v, kind)]
     if not good:
         return None
     low, high = min(good), max(good)

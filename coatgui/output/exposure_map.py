@@ -8,7 +8,7 @@ from collections.abc import Iterator, Sequence
 from coatgui.assessment.courses import inspections
 from coatgui.assessment.words import counted
 from coatgui.output.document import Figure
-from coatgui.output.drawing import GRID, INK, PAPER, SECOND, Drawing
+from coatgui.output.drawing import GRID, INK, PAPER, SECOND, Drawing, drawable
 from coatgui.output.figure_parts import (
     WIDTH,
     Take,
@@ -35,7 +35,11 @@ def exposure_maps(assessment: Assessment) -> Iterator[Figure]:
     cells: dict[tuple[str, int], ReadingAssessment] = {}
     for reading in assessment.readings:
         cells[reading.panel_id, column_of[reading.exposure_h]] = reading
-    values = [q.value for r in assessment.readings if (q := take(r)) and q.value and q.value > 0]
+    values = [
+        q.value
+        for r in assessment.readings
+        if (q := take(r)) and q.value and drawable(q.value, "log")
+    ]
     ends = (min(values), max(values)) if values else (1.0, 10.0)
     rows = [(panel.panel_id, panel.panel, panel.formulation) for panel in assessment.panels]
     parts = [
@@ -102,7 +106,7 @@ def _cell(
         return "■", PAPER, INK
     if any(f.severity is Severity.DOUBT for f in reading.findings):
         mark = " ▲"
-    if quantity is None or not quantity.value or quantity.value <= 0:
+    if quantity is None or not quantity.value or not drawable(quantity.value, "log"):
         return f"–{mark}", PAPER, INK
     share = (math.log10(quantity.value) - math.log10(ends[0])) / (
         math.log10(ends[1] / ends[0]) or 1.0

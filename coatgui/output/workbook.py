@@ -59,10 +59,11 @@ def _quantity_columns(
         quantity = of(row)
         return "no value" if quantity is None else KINDS[quantity.bound]
 
+    of_unit = f" ({unit})" if unit else ""
     return [
-        Column(f"{name} ({unit})" if unit else name, part("value"), number_format),
-        Column(f"{name}, low 95 %", part("low"), number_format),
-        Column(f"{name}, high 95 %", part("high"), number_format),
+        Column(f"{name}{of_unit}", part("value"), number_format),
+        Column(f"{name}, low 95 %{of_unit}", part("low"), number_format),
+        Column(f"{name}, high 95 %{of_unit}", part("high"), number_format),
         Column(f"{name}, kind", kind),
     ]
 

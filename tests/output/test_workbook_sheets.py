@@ -53,8 +53,8 @@ def test_every_sheet_can_be_read_and_sorted(book: Workbook) -> None:
 def test_bounds_are_numbers_with_their_kind_beside(book: Workbook) -> None:
     first, second = table(book, "Readings")
     assert first[f"pore resistance {OHM}"] == 3e9
-    assert first["pore resistance, low 95 %"] == 3e9
-    assert first["pore resistance, high 95 %"] is None
+    assert first[f"pore resistance, low 95 % {OHM}"] == 3e9
+    assert first[f"pore resistance, high 95 % {OHM}"] is None
     assert first["pore resistance, kind"] == "at least"
     assert second["pore resistance, kind"] == "at most"
     assert first["|Z|·A at 0.1 Hz, how"] == "interpolated"
