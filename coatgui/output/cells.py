@@ -11,6 +11,7 @@ from __future__ import annotations
 import io
 import math
 import re
+import tempfile
 import zipfile
 from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass
@@ -30,6 +31,7 @@ _LONGEST_TEXT = 32_000
 _WIDEST, _NARROWEST = 60, 9
 _WIDEST_HEADING = 18
 _LINE, _DEEPEST = 15.0, 27  # points; rows are at most 409 points high
+_IN_MEMORY, _BLOCK = 1_000_000, 1_000_000  # bytes
 _FIXED_TIME = (1980, 1, 1, 0, 0, 0)
 _ROWS = re.compile(rb"<sheetData ?/>|<sheetData>.*?</sheetData>", re.DOTALL)
 
@@ -80,7 +82,8 @@ class Book:
 
         self.workbook = Workbook()
         self.workbook.remove(self.workbook.worksheets[0])
-        self._rows: dict[str, list[str]] = {}
+        # The rows of large campaigns would fill the memory: they wait in a file.
+        self._rows: dict[str, tempfile.SpooledTemporaryFile[bytes]] = {}
         self._size: dict[str, tuple[int, int]] = {}
         self._styles: dict[tuple[str, bool, str, bool, bool], str] = {}
 
@@ -100,14 +103,13 @@ class Book:
         colours = colours or {}
         letters = [letter(i) for i in range(len(columns))]
         head = self._style("General", wrap=True, bold=True)
-        lines = [
-            f'<row r="1" ht="{_LINE * _lines_of_heading(columns):g}" customHeight="1">'
-            + "".join(
-                _text(f"{name}1", head, column.heading)
-                for name, column in zip(letters, columns, strict=True)
-            )
-            + "</row>"
-        ]
+        lines = tempfile.SpooledTemporaryFile(_IN_MEMORY)  # noqa: SIM115 - closed with the book
+        heading = "".join(
+            _text(f"{name}1", head, column.heading)
+            for name, column in zip(letters, columns, strict=True)
+        )
+        high = _LINE * _lines_of_heading(columns)
+        lines.write(f'<row r="1" ht="{high:g}" customHeight="1">{heading}</row>'.encode())
         widths = [min(len(column.heading), _WIDEST_HEADING) for column in columns]
         numbered = [
             self._style(column.number_format, fill="FFF8DC" if column.to_edit else "")
@@ -145,8 +147,8 @@ class Book:
                     cells.append(f'<c r="{at}" s="{numbered[place]}"><v>{value!r}</v></c>')
                 elif column.to_edit:
                     cells.append(f'<c r="{at}" s="{numbered[place]}"/>')
-            high = f' ht="{_LINE * deep:g}" customHeight="1"' if deep > 1 else ""
-            lines.append(f'<row r="{last}"{high}>{"".join(cells)}</row>')
+            own = f' ht="{_LINE * deep:g}" customHeight="1"' if deep > 1 else ""
+            lines.write(f'<row r="{last}"{own}>{"".join(cells)}</row>'.encode())
         self._rows[title] = lines
         self._size[title] = (last, len(columns))
         for name, width in zip(letters, widths, strict=True):
@@ -235,9 +237,10 @@ class Book:
         content = re.sub(rb'<dimension ref="[^"]*"', extent, content)
         before, after = _ROWS.split(content, maxsplit=1)
         write(before + b"<sheetData>")
-        rows = self._rows[title]
-        for start in range(0, len(rows), 500):
-            write("".join(rows[start : start + 500]).encode("utf-8"))
+        with self._rows[title] as rows:
+            rows.seek(0)
+            while block := rows.read(_BLOCK):
+                write(block)
         write(b"</sheetData>" + after)
 
 

@@ -8,7 +8,7 @@ import math
 from dataclasses import fields, is_dataclass
 from enum import Enum
 from pathlib import Path
-from typing import Any
+from typing import IO, Any
 
 from coatgui.output.text import whole_text
 from coatgui.output.whole import write_whole
@@ -174,11 +174,19 @@ def _crossing(crossing: LimitCrossing) -> dict[str, Any]:
 
 def assessment_json(assessment: Assessment) -> dict[str, Any]:
     """The assessment as plain data; a number that is missing or not finite is None."""
-    data = {
+    data = _top(assessment)
+    data["readings"] = [_reading(reading) for reading in assessment.readings]
+    result: dict[str, Any] = _writable(data)
+    return result
+
+
+def _top(assessment: Assessment) -> dict[str, Any]:
+    """Everything but the readings, whose place is kept."""
+    return {
         "schema": SCHEMA,
         "title": assessment.title,
         "headline": assessment.headline,
-        "readings": [_reading(reading) for reading in assessment.readings],
+        "readings": [],
         "panels": [
             {
                 "panel": panel.panel,
@@ -234,11 +242,28 @@ def assessment_json(assessment: Assessment) -> dict[str, Any]:
         "rating_correlations": _plain(assessment.rating_correlations),
         "next_inspection": _plain(assessment.next_inspection),
     }
-    result: dict[str, Any] = _writable(data)
-    return result
 
 
 def write_json(assessment: Assessment, path: Path) -> None:
-    """Write the JSON file whole or not at all. Raises OSError."""
-    text = json.dumps(assessment_json(assessment), ensure_ascii=False, indent=1, allow_nan=False)
-    write_whole(path, lambda file: file.write(f"{text}\n".encode()))
+    """Write the JSON file whole or not at all, a reading to a line. Raises OSError."""
+
+    def text(value: Any) -> str:
+        return json.dumps(_writable(value), ensure_ascii=False, allow_nan=False)
+
+    def write(file: IO[bytes]) -> None:
+        # Piece by piece: the whole of a large campaign would fill the memory.
+        opening = "{"
+        for key, value in _top(assessment).items():
+            file.write(f"{opening}\n{text(key)}: ".encode())
+            opening = ","
+            if key != "readings":
+                file.write(text(value).encode())
+                continue
+            between = "[\n"
+            for reading in assessment.readings:
+                file.write(f"{between}{text(_reading(reading))}".encode())
+                between = ",\n"
+            file.write(b"\n]" if assessment.readings else b"[]")
+        file.write(b"\n}\n")
+
+    write_whole(path, write)

@@ -10,8 +10,7 @@ from __future__ import annotations
 import os
 import sys
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass, field
-from functools import partial
+from dataclasses import dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -31,7 +30,7 @@ from coatgui.output.text import printable
 from coatgui.output.whole import write_whole
 
 if TYPE_CHECKING:
-    from PySide6.QtGui import QFont, QPainter, QTextLayout
+    from PySide6.QtGui import QFont, QPainter, QPdfWriter, QTextLayout
 
 _DOTS = 1200  # to the inch: fine enough that whole pixels do not show
 UNIT = _DOTS / 72  # one point
@@ -85,15 +84,10 @@ def pdf_bytes(document: Document) -> bytes:
         QMarginsF(0, 0, 0, 0),
     )
     book = _Book(document)
-    blocks = list(document.numbered())
-    for (block, number), follows in zip(blocks, [*blocks[1:], (None, "")], strict=True):
-        book.add(block, number, follows[0])
-    raw = _written(
-        document.title,
-        document.author,
-        layout,
-        [partial(book.paint, place=i) for i in range(len(book.pages))],
-    )
+    # Once to count the pages, and once to paint them: pages kept would fill the memory.
+    total = _Book(document).set_out()
+    book = _Book(document, total)
+    raw = _written(document.title, document.author, layout, book.paint)
     return marked(
         raw,
         title=document.title,
@@ -120,7 +114,7 @@ def figure_pdf(figure: Figure) -> bytes:
     layout = QPageLayout(size, QPageLayout.Orientation.Portrait, QMarginsF(0, 0, 0, 0))
     whole = QRectF(0, 0, drawing.width * UNIT, drawing.height * UNIT)
     raw = _written(
-        figure.name, "", layout, [lambda painter: _picture(figure).render(painter, whole)]
+        figure.name, "", layout, lambda painter, _: _picture(figure).render(painter, whole)
     )
     everything = (0.0, 0.0, drawing.width, drawing.height)
     return marked(
@@ -162,7 +156,7 @@ def _picture(figure: Figure) -> Any:
 
 
 def _written(
-    title: str, author: str, layout: Any, pages: Sequence[Callable[[QPainter], object]]
+    title: str, author: str, layout: Any, paint: Callable[[QPainter, QPdfWriter], object]
 ) -> bytes:
     from PySide6.QtCore import QBuffer, QIODevice
     from PySide6.QtGui import QPainter, QPdfWriter
@@ -176,10 +170,7 @@ def _written(
     writer.setCreator("coatgui")
     writer.setResolution(_DOTS)
     painter = QPainter(writer)
-    for place, paint in enumerate(pages):
-        if place:
-            writer.newPage()
-        paint(painter)
+    paint(painter, writer)
     painter.end()
     buffer.close()
     return bytes(buffer.data().data())
@@ -223,21 +214,40 @@ def _font(size: float, bold: bool) -> QFont:
     return font
 
 
-@dataclass(slots=True)
-class _Page:
-    paints: list[Callable[[QPainter], object]] = field(default_factory=list)
-
-
 class _Book:
-    def __init__(self, document: Document) -> None:
-        self.document = document
-        self.pages: list[_Page] = [_Page()]
+    """Lays a document out and, where it has a painter, paints it as it goes."""
+
+    def __init__(self, document: Document, total: int = 0) -> None:
+        self.document, self.total = document, total
+        self.page = 0
         self.y = _TOP
         self.bookmarks: list[Bookmark] = []
         self.described: list[Described] = []
         self._fonts: dict[tuple[float, bool], QFont] = {}
-        self._flow(self._set(document.title, 18, _ACROSS, bold=True))
+        self._painter: QPainter | None = None
+        self._writer: QPdfWriter | None = None
+
+    def paint(self, painter: QPainter, writer: QPdfWriter) -> None:
+        self._painter, self._writer = painter, writer
+        self.set_out()
+
+    def set_out(self) -> int:
+        """Lay out the whole document; returns how many pages it takes."""
+        self._frame()
+        self._flow(self._set(self.document.title, 18, _ACROSS, bold=True))
         self.y += 4
+        blocks = list(self.document.numbered())
+        for (block, number), follows in zip(blocks, [*blocks[1:], (None, "")], strict=True):
+            self.add(block, number, follows[0])
+        return self.page + 1
+
+    def _turn(self) -> None:
+        """Begin a new page."""
+        self.page += 1
+        self.y = _TOP
+        if self._writer is not None:
+            self._writer.newPage()
+        self._frame()
 
     # Setting text
 
@@ -266,11 +276,11 @@ class _Book:
     def _need(self, height: float) -> None:
         """A new page where so much does not fit; never an empty one."""
         if height > self._room and self.y > _TOP:
-            self.pages.append(_Page())
-            self.y = _TOP
+            self._turn()
 
     def _paint(self, paint: Callable[[QPainter], object]) -> None:
-        self.pages[-1].paints.append(paint)
+        if self._painter is not None:
+            paint(self._painter)
 
     def _flow(self, text: _Text, x: float = 0.0, colour: str = INK) -> None:
         """A text that may go on over pages; no line of it stands alone."""
@@ -342,7 +352,7 @@ class _Book:
             self.y += before
         self._need(text.height + room)
         self.bookmarks.append(
-            Bookmark(f"{number} {heading.text}", heading.level, len(self.pages) - 1, self.y)
+            Bookmark(f"{number} {heading.text}", heading.level, self.page, self.y)
         )
         self._flow(text)
         self.y += 5
@@ -364,7 +374,7 @@ class _Book:
 
         self._paint(paint)
         where = (_LEFT, top, _LEFT + width, top + height)
-        self.described.append(Described(len(self.pages) - 1, where, figure.alternative))
+        self.described.append(Described(self.page, where, figure.alternative))
         self.y += height + 4
         self._flow(caption, colour=SECOND)
         self.y += 12
@@ -388,8 +398,7 @@ class _Book:
                 rest = (lines - first) * row[0].leading + 4
                 page = _HIGH - _TOP - _BOTTOM - _height(head) - 24
                 if rest > self._room and (rest <= page or self._room < 4 * row[0].leading):
-                    self.pages.append(_Page())
-                    self.y = _TOP
+                    self._turn()
                     again = self._set(f"{number}, continued", 8.5, _ACROSS)
                     self._flow(again, colour=SECOND)
                     self.y += 3
@@ -421,19 +430,14 @@ class _Book:
 
     # Pages
 
-    def paint(self, painter: QPainter, place: int) -> None:
-        from PySide6.QtGui import QColor
-
-        if place:
+    def _frame(self) -> None:
+        """Running head and page number."""
+        if self.page:
             running = self._set(self.document.running, 8, _ACROSS * 0.98)
-            painter.setPen(QColor(SECOND))
-            running.paint(painter, _LEFT, 34, 0, 1)
-            _line(painter, _LEFT, 48, _LEFT + _ACROSS, 0.5, GRID)
-        foot = self._set(f"Page {place + 1} of {len(self.pages)}", 8, _ACROSS, right=True)
-        painter.setPen(QColor(SECOND))
-        foot.paint(painter, _LEFT, _HIGH - 42, 0, 1)
-        for paint in self.pages[place].paints:
-            paint(painter)
+            self._text(running, _LEFT, 34, 0, 1, SECOND)
+            self._rule(48, 0.5, GRID)
+        foot = self._set(f"Page {self.page + 1} of {self.total}", 8, _ACROSS, right=True)
+        self._text(foot, _LEFT, _HIGH - 42, 0, 1, SECOND)
 
 
 def _height(cells: Sequence[_Text]) -> float:
