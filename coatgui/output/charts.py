@@ -8,8 +8,8 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
 from coatgui.assessment.words import counted
-from coatgui.output.cells import Book, Column
-from coatgui.output.figure_parts import INKS
+from coatgui.output.cells import Book, Column, clean
+from coatgui.output.figure_parts import INKS, shortened
 from coatgui.output.live_cells import Places
 from coatgui.records import Assessment, Campaign, ReadingAssessment
 
@@ -22,6 +22,7 @@ _MOST_CHARTS = 24  # of one kind
 MOST_POINTS = 60_000  # of spectra that are written without being asked for
 _WIDE, _HIGH = 20.0, 10.5  # cm
 _ROWS_EACH = 22  # rows of a sheet that a chart takes
+_GRID = "D9D3C7"
 _MARKS = ("circle", "square", "triangle", "diamond", "x", "star")
 _DASHES = ("solid", "dash", "sysDot", "dashDot", "lgDash", "sysDashDot")
 
@@ -42,16 +43,24 @@ def _chart(
     title: str, across: str, up: str, lines: Sequence[_Line], *, log_x: bool, log_y: bool
 ) -> ScatterChart:
     from openpyxl.chart import Reference, ScatterChart, Series
+    from openpyxl.chart.axis import ChartLines
     from openpyxl.chart.data_source import StrRef
     from openpyxl.chart.series import SeriesLabel
+    from openpyxl.chart.shapes import GraphicalProperties
+    from openpyxl.drawing.line import LineProperties
 
     chart: Any = ScatterChart()
-    chart.title, chart.style, chart.width, chart.height = title, 1, _WIDE, _HIGH
+    chart.title, chart.width, chart.height = clean(title), _WIDE, _HIGH
+    chart.style = 1
     chart.x_axis.title, chart.y_axis.title = across, up
     chart.x_axis.delete = chart.y_axis.delete = False  # or newer spreadsheet programs hide them
     chart.x_axis.crosses = chart.y_axis.crosses = "min"
     chart.x_axis.number_format = "0E+00" if log_x else "General"
     chart.y_axis.number_format = "0E+00" if log_y else "General"
+    for axis in (chart.x_axis, chart.y_axis):
+        axis.majorGridlines = ChartLines(
+            spPr=GraphicalProperties(ln=LineProperties(solidFill=_GRID))
+        )
     chart.legend.position = "r"
     if log_x:
         chart.x_axis.scaling.logBase = 10
@@ -122,8 +131,8 @@ def add_charts(
                 log_y=code != "water_uptake",
             )
         )
-    for place, formulation in enumerate(assessment.formulations[:_MOST_CHARTS], start=1):
-        _of_panels(book, page, assessment, places, formulation.formulation, place)
+    for formulation in assessment.formulations[:_MOST_CHARTS]:
+        _of_panels(book, page, assessment, places, formulation.formulation)
 
 
 def _unit(assessment: Assessment, code: str) -> str:
@@ -137,7 +146,7 @@ def _unit(assessment: Assessment, code: str) -> str:
 
 
 def _of_panels(
-    book: Book, page: _Page, assessment: Assessment, places: Places, formulation: str, place: int
+    book: Book, page: _Page, assessment: Assessment, places: Places, formulation: str
 ) -> None:
     """Panel by panel: modulus and capacitance over time, uptake over its root."""
     watched = next((m.frequency_hz for r in assessment.readings for m in r.modulus), None)
@@ -164,7 +173,7 @@ def _of_panels(
         more = f" ({counted(left_away, 'panel')} more in the sheet)" if left_away else ""
         across = "√ of exposure (√h)" if x == 4 else "exposure (h)"
         chart = _chart(
-            f"Panels of formulation {place}: {name}{more}",
+            f"Panels of {shortened(formulation, 60)}: {name}{more}",
             across,
             name,
             lines,
@@ -211,8 +220,8 @@ def add_spectra(book: Book, assessment: Assessment, campaign: Campaign) -> None:
     ]
     sheet = book.add_sheet("Spectra", columns, rows, standing=3)
     page = _Page(book.add_page("Bode plots"))
-    for number, (panel_id, own) in enumerate(list(blocks.items())[:_MOST_CHARTS], start=1):
-        del panel_id
+    names = {r.panel_id: r.panel for r in assessment.readings}
+    for panel_id, own in list(blocks.items())[:_MOST_CHARTS]:
         # The first and the last readings and those between, as many as a chart can show.
         step = max(math.ceil(len(own) / _MOST_LINES), 1)
         shown = own[::step]
@@ -220,7 +229,7 @@ def add_spectra(book: Book, assessment: Assessment, campaign: Campaign) -> None:
             lines = [_Line(sheet, f"$C${first}", 4, column, first, last) for first, last in shown]
             page.add(
                 _chart(
-                    f"Panel {number} of the sheet Panels, at its exposure times (h): {title}",
+                    f"Panel {shortened(names[panel_id], 60)}: {title} at its exposure times (h)",
                     "frequency (Hz)",
                     title,
                     lines,
