@@ -19,6 +19,18 @@ if TYPE_CHECKING:
 
 DONE, SOME_REFUSED, NOTHING = 0, 1, 2
 ENDING = ".coatgui"
+_SUMMARIES = (".pdf", ".html", ".htm")
+
+
+_FIELDS = {
+    "laboratory": "who tested",
+    "customer": "for whom",
+    "order": "the order's number",
+    "author": "who wrote the summary",
+    "reviewer": "who reviews it",
+    "date": "the date of the summary",
+    "standards": "the standards agreed on",
+}
 
 
 class Stop(Exception):
@@ -55,6 +67,28 @@ def _assess_parser() -> argparse.ArgumentParser:
         "--json", type=Path, metavar="OUT.json", help="write the assessment as data"
     )
     parser.add_argument("--workbook", type=Path, metavar="OUT.xlsx", help="write the workbook")
+    parser.add_argument(
+        "--summary",
+        type=Path,
+        metavar="OUT.pdf",
+        help="write the inspection summary, as .pdf (needs Qt) or .html",
+    )
+    parser.add_argument(
+        "--figures", type=Path, metavar="FOLDER", help="write every figure into a folder"
+    )
+    parser.add_argument(
+        "--figure-format",
+        choices=("svg", "pdf", "png"),
+        default="svg",
+        help="of the figures; pdf and png need Qt (default: svg)",
+    )
+    parser.add_argument(
+        "--tables", type=Path, metavar="FOLDER", help="write CSV tables and what they hold"
+    )
+    for field, what in _FIELDS.items():
+        parser.add_argument(
+            f"--{field}", default="", metavar="TEXT", help=f"{what}, for the summary"
+        )
     parser.add_argument("--workers", type=int, metavar="N", help="processes to share the work")
     parser.add_argument("--quiet", action="store_true", help="print no table and no progress")
     parser.add_argument(
@@ -186,7 +220,7 @@ def _add(options: argparse.Namespace) -> int:
 def _outputs(options: argparse.Namespace) -> None:
     """Find wrong output paths before the work begins. Raises Stop."""
     seen: dict[Path, str] = {}
-    for name in ("campaign", "json", "workbook"):
+    for name in ("campaign", "json", "workbook", "summary"):
         path: Path | None = getattr(options, name)
         if path is None:
             continue
@@ -204,8 +238,29 @@ def _outputs(options: argparse.Namespace) -> None:
         seen[place] = name
     if options.campaign is not None and options.campaign.suffix != ENDING:
         raise Stop(f"--campaign: a campaign file's name ends in {ENDING}.")
+    if options.summary is not None and options.summary.suffix.lower() not in _SUMMARIES:
+        raise Stop("--summary: the file's name ends in .pdf or .html.")
+    for name in ("figures", "tables"):
+        folder: Path | None = getattr(options, name)
+        if folder is not None and folder.exists() and not folder.is_dir():
+            raise Stop(f"--{name}: '{folder}' is a file; give a folder's name.")
+        if folder is not None and not folder.parent.is_dir():
+            raise Stop(f"--{name}: there is no folder '{folder.parent}'; make it first.")
+    _qt_if_needed(options)
     if options.workers is not None and options.workers < 1:
         raise Stop("--workers: at least 1.")
+
+
+def _qt_if_needed(options: argparse.Namespace) -> None:
+    """Find out before the work begins whether pages can be painted. Raises Stop."""
+    pages = options.summary is not None and options.summary.suffix.lower() == ".pdf"
+    if pages or (options.figures is not None and options.figure_format != "svg"):
+        from coatgui.output import PagesUnavailable, require_qt
+
+        try:
+            require_qt()
+        except PagesUnavailable as error:
+            raise Stop(str(error)) from None
 
 
 class _Shown:
@@ -264,7 +319,15 @@ def _finish(
     from coatgui.assessment import assess
     from coatgui.campaign import CampaignFile
     from coatgui.jobs import spread_over_processes
-    from coatgui.output import terminal_table, write_json, write_workbook
+    from coatgui.output import (
+        Identification,
+        terminal_table,
+        write_figures,
+        write_json,
+        write_summary,
+        write_tables,
+        write_workbook,
+    )
 
     refused = campaign.refused
     if not campaign.readings:
@@ -283,6 +346,13 @@ def _finish(
         write_json(assessment, options.json)
     if options.workbook is not None:
         write_workbook(assessment, campaign, options.workbook)
+    if options.summary is not None:
+        identification = Identification(**{field: getattr(options, field) for field in _FIELDS})
+        write_summary(assessment, campaign, options.summary, identification)
+    if options.figures is not None:
+        write_figures(assessment, campaign, options.figures, options.figure_format)
+    if options.tables is not None:
+        write_tables(assessment, campaign, options.tables)
     if not options.quiet:
         print(terminal_table(assessment))
     for refusal in refused:

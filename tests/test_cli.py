@@ -3,12 +3,15 @@
 from __future__ import annotations
 
 import json
+import sys
+from html import escape
 from pathlib import Path
 
 import openpyxl
 import pytest
 
 from coatgui import __version__
+from coatgui.assessment.cautions import cautions
 from coatgui.cli import main
 from coatgui.shipped import sample_panels
 
@@ -20,7 +23,9 @@ def outputs(tmp_path_factory: pytest.TempPathFactory) -> Path:
         [
             *("assess", str(sample_panels()), "--quiet", "--workers", "1"),
             *("--json", str(folder / "o.json"), "--workbook", str(folder / "o.xlsx")),
-            *("--campaign", str(folder / "o.coatgui")),
+            *("--campaign", str(folder / "o.coatgui"), "--summary", str(folder / "o.html")),
+            *("--figures", str(folder / "figures"), "--tables", str(folder / "tables")),
+            *("--customer", "=Estuary <Rowing> Club"),
         ]
     )
     assert status == 1  # some input was refused, on purpose
@@ -49,13 +54,18 @@ def test_the_json_keeps_to_its_schema(outputs: Path) -> None:
 
 def test_the_workbook_reads_back(outputs: Path) -> None:
     book = openpyxl.load_workbook(outputs / "o.xlsx")
-    assert book.sheetnames[:3] == ["Summary", "Readings", "Parameters"]
+    assert book.sheetnames[:3] == ["Summary", "Settings", "Panels"]
     rows = list(book["Readings"].iter_rows(values_only=True))
     assert len(rows) == 108
     assert "at least" in {cell for row in rows for cell in row}
-    for sheet in book:
-        for row in sheet.iter_rows():
-            assert all(cell.data_type != "f" for cell in row)
+    formulas = {
+        sheet.title
+        for sheet in book
+        for row in sheet.iter_rows()
+        for c in row
+        if c.data_type == "f"
+    }
+    assert formulas == {"Modulus", "Capacitance", "Water", "Pore resistance", "Courses", "Limits"}
 
 
 def test_a_kept_campaign_is_sound_and_gives_the_same(
@@ -75,6 +85,29 @@ def test_a_kept_campaign_is_sound_and_gives_the_same(
     assert "refused notes.txt" in shown.err
 
 
+def test_the_summary_figures_and_tables_are_written(outputs: Path) -> None:
+    text = (outputs / "o.html").read_text(encoding="utf-8")
+    assert "=Estuary &lt;Rowing&gt; Club" in text
+    for caution in cautions():
+        assert escape(caution) in text
+    figures = {path.name for path in (outputs / "figures").iterdir()}
+    assert {"map_1.svg", "water_uptake.svg", "comparison.svg", "spectra_K1.svg"} <= figures
+    described = json.loads((outputs / "tables" / "tables.json").read_text(encoding="utf-8"))
+    assert {t["file"] for t in described["tables"]} | {"tables.json"} == {
+        path.name for path in (outputs / "tables").iterdir()
+    }
+
+
+def test_a_pdf_without_qt_is_refused_before_the_work(
+    monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str], tmp_path: Path
+) -> None:
+    monkeypatch.setitem(sys.modules, "PySide6", None)
+    wanted = str(tmp_path / "s.pdf")
+    assert main(["assess", str(sample_panels()), "--summary", wanted]) == 2
+    assert "needs Qt's libraries" in capsys.readouterr().err
+    assert list(tmp_path.iterdir()) == []
+
+
 @pytest.mark.parametrize(
     ("arguments", "words"),
     [
@@ -84,6 +117,9 @@ def test_a_kept_campaign_is_sound_and_gives_the_same(
         (["assess", ".", "--json", "no such folder/x.json"], "make it first"),
         (["assess", ".", "--campaign", "x.sqlite"], ".coatgui"),
         (["assess", ".", "--json", "x.j", "--workbook", "x.j"], "same file"),
+        (["assess", ".", "--summary", "x.doc"], ".pdf or .html"),
+        (["assess", ".", "--figures", "pyproject.toml"], "is a file"),
+        (["assess", ".", "--tables", "no such folder/x"], "make it first"),
         (["check", "no such file"], ""),
         (["no such folder"], "there is no"),
         (["--frobnicate"], "--help"),

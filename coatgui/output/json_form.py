@@ -1,15 +1,26 @@
-"""The assessment as JSON, for scripts (schema `coatgui-assessment/1`)."""
+"""The assessment as JSON, for scripts: schema `coatgui-assessment/1`, published in
+`resources/assessment.schema.json`. Keys may be added, never renamed or removed."""
 
 from __future__ import annotations
 
 import json
 import math
+from dataclasses import fields, is_dataclass
+from enum import Enum
 from pathlib import Path
-from typing import Any
+from typing import IO, Any
 
 from coatgui.output.text import whole_text
 from coatgui.output.whole import write_whole
-from coatgui.records import Assessment, Finding, LimitCrossing, Quantity, ReadingAssessment
+from coatgui.records import (
+    ActiveArea,
+    Assessment,
+    Finding,
+    LimitCrossing,
+    Quantity,
+    ReadingAssessment,
+    WaterUptake,
+)
 
 SCHEMA = "coatgui-assessment/1"
 
@@ -25,6 +36,17 @@ def _writable(value: Any) -> Any:
         return whole_text(value)
     if isinstance(value, float):
         return float(value) if math.isfinite(value) else None
+    return value
+
+
+def _plain(value: Any) -> Any:
+    """A record as an object with its fields' names, and what lies in it likewise."""
+    if isinstance(value, Enum):
+        return value.value
+    if is_dataclass(value):
+        return {f.name: _plain(getattr(value, f.name)) for f in fields(value)}
+    if isinstance(value, tuple):
+        return [_plain(inner) for inner in value]
     return value
 
 
@@ -68,7 +90,7 @@ def _reading(reading: ReadingAssessment) -> dict[str, Any]:
         reading.water_uptake.quantity if reading.water_uptake else None, "volume_percent"
     )
     if uptake is not None and reading.water_uptake is not None:
-        uptake["reference_h"] = reading.water_uptake.reference_h
+        uptake |= _laws(reading.water_uptake)
     fit = reading.fit
     return {
         "panel": reading.panel,
@@ -109,7 +131,33 @@ def _reading(reading: ReadingAssessment) -> dict[str, Any]:
         ),
         "pore_resistance": _amount(reading.pore_resistance, "ohm_cm2"),
         "water_uptake": uptake,
+        "relative_permittivity": _plain(reading.relative_permittivity),
+        "film_resistivity": _amount(reading.film_resistivity, "ohm_cm"),
+        "breakpoint": _plain(reading.breakpoint),
+        "active_area": _active_area(reading.active_area),
     }
+
+
+def _laws(uptake: WaterUptake) -> dict[str, Any]:
+    return {
+        "reference_h": uptake.reference_h,
+        "law_low": uptake.law_low,
+        "law_high": uptake.law_high,
+        "by_law": dict(uptake.by_law),
+    }
+
+
+def _active_area(area: ActiveArea | None) -> dict[str, Any] | None:
+    if area is None:
+        return None
+    routes = {name: _plain(quantity) for name, quantity in area.routes}
+    return {"routes": routes, "low": area.low, "high": area.high, "text": area.text}
+
+
+def _saturation(uptake: WaterUptake | None) -> dict[str, Any] | None:
+    if uptake is None:
+        return None
+    return {**(_amount(uptake.quantity, "volume_percent") or {}), **_laws(uptake)}
 
 
 def _crossing(crossing: LimitCrossing) -> dict[str, Any]:
@@ -119,17 +167,26 @@ def _crossing(crossing: LimitCrossing) -> dict[str, Any]:
         "ohm_cm2": crossing.criterion.ohm_cm2,
         "after_h": crossing.after_h,
         "by_h": crossing.by_h,
+        "watched_h": crossing.watched_h,
         "text": crossing.text,
     }
 
 
 def assessment_json(assessment: Assessment) -> dict[str, Any]:
     """The assessment as plain data; a number that is missing or not finite is None."""
-    data = {
+    data = _top(assessment)
+    data["readings"] = [_reading(reading) for reading in assessment.readings]
+    result: dict[str, Any] = _writable(data)
+    return result
+
+
+def _top(assessment: Assessment) -> dict[str, Any]:
+    """Everything but the readings, whose place is kept."""
+    return {
         "schema": SCHEMA,
         "title": assessment.title,
         "headline": assessment.headline,
-        "readings": [_reading(reading) for reading in assessment.readings],
+        "readings": [],
         "panels": [
             {
                 "panel": panel.panel,
@@ -138,11 +195,12 @@ def assessment_json(assessment: Assessment) -> dict[str, Any]:
                 "thickness_um": panel.thickness_um,
                 "dry_capacitance": _amount(panel.dry_capacitance, "f_per_cm2"),
                 "diffusion_coefficient": _amount(panel.diffusion_coefficient, "cm2_per_s"),
+                "dry_permittivity": _plain(panel.dry_permittivity),
+                "saturation_uptake": _saturation(panel.saturation_uptake),
+                "saturation_mass_percent": _plain(panel.saturation_mass_percent),
+                "advice": list(panel.advice),
                 "findings": [_finding(finding) for finding in panel.findings],
-                "events": [
-                    {"code": e.code, "text": e.text, "after_h": e.after_h, "by_h": e.by_h}
-                    for e in panel.events
-                ],
+                "events": [_plain(e) for e in panel.events],
                 "limit_crossings": [_crossing(c) for c in panel.limit_crossings],
             }
             for panel in assessment.panels
@@ -170,25 +228,42 @@ def assessment_json(assessment: Assessment) -> dict[str, Any]:
             }
             for formulation in assessment.formulations
         ],
-        "ranking": [
-            {
-                "formulation": rank.formulation,
-                "rank_low": rank.rank_low,
-                "rank_high": rank.rank_high,
-                "group": rank.group,
-            }
-            for rank in assessment.ranking
-        ],
+        "ranking": [_plain(rank) for rank in assessment.ranking],
         "ranking_text": assessment.ranking_text,
         "refused": [{"file": r.file, "reason": r.reason} for r in assessment.refused],
         "findings": [_finding(finding) for finding in assessment.findings],
         "cautions": list(assessment.cautions),
+        "comparison": _plain(assessment.comparison),
+        "further_comparisons": _plain(assessment.further_comparisons),
+        "trends": _plain(assessment.trends),
+        "limit_studies": _plain(assessment.limit_studies),
+        "projections": _plain(assessment.projections),
+        "ratings": _plain(assessment.ratings),
+        "rating_correlations": _plain(assessment.rating_correlations),
+        "next_inspection": _plain(assessment.next_inspection),
     }
-    result: dict[str, Any] = _writable(data)
-    return result
 
 
 def write_json(assessment: Assessment, path: Path) -> None:
-    """Write the JSON file whole or not at all. Raises OSError."""
-    text = json.dumps(assessment_json(assessment), ensure_ascii=False, indent=1, allow_nan=False)
-    write_whole(path, lambda file: file.write(f"{text}\n".encode()))
+    """Write the JSON file whole or not at all, a reading to a line. Raises OSError."""
+
+    def text(value: Any) -> str:
+        return json.dumps(_writable(value), ensure_ascii=False, allow_nan=False)
+
+    def write(file: IO[bytes]) -> None:
+        # Piece by piece: the whole of a large campaign would fill the memory.
+        opening = "{"
+        for key, value in _top(assessment).items():
+            file.write(f"{opening}\n{text(key)}: ".encode())
+            opening = ","
+            if key != "readings":
+                file.write(text(value).encode())
+                continue
+            between = "[\n"
+            for reading in assessment.readings:
+                file.write(f"{between}{text(_reading(reading))}".encode())
+                between = ",\n"
+            file.write(b"\n]" if assessment.readings else b"[]")
+        file.write(b"\n}\n")
+
+    write_whole(path, write)

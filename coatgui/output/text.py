@@ -30,3 +30,9 @@ def columns_of(text: str) -> int:
         0 if unicodedata.combining(c) else 2 if unicodedata.east_asian_width(c) in "WF" else 1
         for c in text
     )
+
+
+def printable(text: str) -> str:
+    """Text for a page: one line, without control characters and without what turns the reading
+    order; nothing else is changed."""
+    return one_line(whole_text(text))

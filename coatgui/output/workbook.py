@@ -10,14 +10,27 @@ import tomllib
 from collections.abc import Callable, Iterator
 from operator import attrgetter, itemgetter
 from pathlib import Path
-from typing import TYPE_CHECKING, Any
+from typing import Any
 
 from coatgui import __version__
-from coatgui.output.cells import Column, Value, add_sheet, workbook_bytes
+from coatgui.output.cells import Book, Column, Value
+from coatgui.output.charts import MOST_POINTS, add_charts, add_spectra
+from coatgui.output.live_cells import (
+    COLOURS,
+    HOURS,
+    HUNDREDTHS,
+    SCIENTIFIC,
+    Places,
+    add_capacitance,
+    add_modulus,
+    add_pore_resistance,
+)
+from coatgui.output.live_courses import add_courses, add_limits, add_settings
+from coatgui.output.live_water import add_water
+from coatgui.output.shown import KINDS
 from coatgui.output.whole import write_whole
 from coatgui.records import (
     Assessment,
-    Bound,
     Campaign,
     Finding,
     Panel,
@@ -29,30 +42,12 @@ from coatgui.records import (
 )
 from coatgui.shipped import resource
 
-if TYPE_CHECKING:
-    from openpyxl.workbook import Workbook
-
-_KINDS = {
-    Bound.TWO_SIDED: "between the limits",
-    Bound.AT_LEAST: "at least",
-    Bound.AT_MOST: "at most",
-    Bound.FIXED: "fixed",
-    Bound.UNDETERMINED: "cannot be determined",
-}
-_COLOURS = {
-    "reject": "F3D5CB",
-    "no, rejected": "F3D5CB",
-    "doubt": "F3E3C3",
-    "at least": "DCE6EE",
-    "at most": "DCE6EE",
-}
-_SCIENTIFIC, _HUNDREDTHS = "0.00E+00", "0.00"
 _OHM_CM2 = "Ω cm², or Ω where the panel has no area"
 _F_PER_CM2 = "F/cm², or F where the panel has no area"
 
 
 def _quantity_columns(
-    name: str, unit: str, of: Callable[[Any], Quantity | None], number_format: str = _SCIENTIFIC
+    name: str, unit: str, of: Callable[[Any], Quantity | None], number_format: str = SCIENTIFIC
 ) -> list[Column[Any]]:
     """Value, 95 % limits and kind of a quantity that `of` finds in a row. `unit` is empty where
     it differs from row to row and has a column of its own."""
@@ -62,12 +57,13 @@ def _quantity_columns(
 
     def kind(row: Any) -> Value:
         quantity = of(row)
-        return "no value" if quantity is None else _KINDS[quantity.bound]
+        return "no value" if quantity is None else KINDS[quantity.bound]
 
+    of_unit = f" ({unit})" if unit else ""
     return [
-        Column(f"{name} ({unit})" if unit else name, part("value"), number_format),
-        Column(f"{name}, low 95 %", part("low"), number_format),
-        Column(f"{name}, high 95 %", part("high"), number_format),
+        Column(f"{name}{of_unit}", part("value"), number_format),
+        Column(f"{name}, low 95 %{of_unit}", part("low"), number_format),
+        Column(f"{name}, high 95 %{of_unit}", part("high"), number_format),
         Column(f"{name}, kind", kind),
     ]
 
@@ -76,32 +72,53 @@ def _who(of: Callable[[Any], ReadingAssessment]) -> list[Column[Any]]:
     return [
         Column("formulation", lambda row: of(row).formulation),
         Column("panel", lambda row: of(row).panel),
-        Column("exposure (h)", lambda row: of(row).exposure_h),
+        Column("exposure (h)", lambda row: of(row).exposure_h, HOURS),
     ]
 
 
-def write_workbook(assessment: Assessment, campaign: Campaign, path: Path) -> None:
-    """Write the workbook whole or not at all. Raises OSError."""
-    from openpyxl import Workbook
-
-    book = Workbook()
-    book.remove(book.worksheets[0])
-    readings = {reading.reading_id: reading for reading in campaign.readings}
-    _summary(book, assessment)
-    _readings(book, assessment, readings)
-    _parameters(book, assessment)
-    _panels(book, assessment, campaign)
-    _courses(book, assessment)
-    _findings(book, assessment)
-    _points_left_out(book, assessment)
-    _refused(book, assessment)
-    _method(book, assessment, campaign)
-    _provenance(book, assessment, campaign, readings)
-    content = workbook_bytes(book)
+def write_workbook(
+    assessment: Assessment, campaign: Campaign, path: Path, *, spectra: bool | None = None
+) -> None:
+    """Write the workbook whole or not at all. `spectra` says whether every point of every spectrum
+    goes into it; None: where there are not too many. Raises OSError."""
+    content = workbook_bytes(assessment, campaign, spectra)
     write_whole(path, lambda file: file.write(content))
 
 
-def _summary(book: Workbook, assessment: Assessment) -> None:
+def workbook_bytes(
+    assessment: Assessment, campaign: Campaign, spectra: bool | None = None
+) -> bytes:
+    """The workbook; the same assessment gives the same bytes."""
+    book = Book()
+    readings = {reading.reading_id: reading for reading in campaign.readings}
+    places = Places.of(assessment, campaign)
+    _summary(book, assessment)
+    add_settings(book, campaign, places)
+    _panels(book, assessment, campaign)
+    _readings(book, assessment, readings)
+    _parameters(book, assessment)
+    add_modulus(book, assessment, places)
+    add_capacitance(book, assessment, places)
+    add_water(book, assessment, campaign, places)
+    add_pore_resistance(book, assessment, places)
+    ranges = add_courses(book, assessment, places)
+    add_limits(book, assessment, places)
+    _comparison(book, assessment)
+    _ratings(book, assessment)
+    _findings(book, assessment)
+    _points_left_out(book, assessment)
+    _refused(book, assessment)
+    if ranges:
+        add_charts(book, assessment, places, ranges)
+    points = sum(len(reading.spectrum) for reading in campaign.readings)
+    if spectra or (spectra is None and 0 < points <= MOST_POINTS):
+        add_spectra(book, assessment, campaign)
+    _method(book, assessment)
+    _provenance(book, assessment, campaign, readings)
+    return book.content()
+
+
+def _summary(book: Book, assessment: Assessment) -> None:
     rows = [
         ("campaign", assessment.title),
         ("standing", assessment.headline),
@@ -121,10 +138,10 @@ def _summary(book: Workbook, assessment: Assessment) -> None:
     rows += [(f"refused: {refusal.file}", refusal.reason) for refusal in assessment.refused]
     rows += [("caution", caution) for caution in assessment.cautions]
     columns = [Column("what", itemgetter(0)), Column("text", itemgetter(1))]
-    add_sheet(book, "Summary", columns, rows, colours=_COLOURS)
+    book.add_sheet("Summary", columns, rows, colours=COLOURS)
 
 
-def _readings(book: Workbook, assessment: Assessment, readings: dict[str, Reading]) -> None:
+def _readings(book: Book, assessment: Assessment, readings: dict[str, Reading]) -> None:
     with_area = {p.panel_id for p in assessment.panels if p.area_cm2 is not None}
     # Every frequency that any reading has an answer for, in the order of the first that names it.
     frequencies = dict.fromkeys(m.frequency_hz for r in assessment.readings for m in r.modulus)
@@ -148,19 +165,19 @@ def _readings(book: Workbook, assessment: Assessment, readings: dict[str, Readin
             "apparent water uptake",
             "vol-%",
             lambda r: getattr(r.water_uptake, "quantity", None),
-            _HUNDREDTHS,
+            HUNDREDTHS,
         ),
         Column("dry reference (h)", lambda r: getattr(r.water_uptake, "reference_h", None)),
         Column("model", lambda r: r.fit.model_name if r.fit else "not fitted"),
         Column(
-            "residual rms (%)", lambda r: getattr(r.fit, "residual_rms_percent", None), _HUNDREDTHS
+            "residual rms (%)", lambda r: getattr(r.fit, "residual_rms_percent", None), HUNDREDTHS
         ),
         Column("points read", attrgetter("points_read")),
         Column("points used", attrgetter("points_used")),
         Column("decided by a person", lambda r: _decisions(readings.get(r.reading_id))),
         Column("remark", lambda r: getattr(readings.get(r.reading_id), "remark", None)),
     ]
-    add_sheet(book, "Readings", columns, assessment.readings, colours=_COLOURS, standing=3)
+    book.add_sheet("Readings", columns, assessment.readings, colours=COLOURS, standing=3)
 
 
 def _modulus_columns(frequency_hz: float) -> list[Column[Any]]:
@@ -193,7 +210,7 @@ def _decisions(reading: Reading | None) -> str | None:
     return "; ".join(said) or None
 
 
-def _parameters(book: Workbook, assessment: Assessment) -> None:
+def _parameters(book: Book, assessment: Assessment) -> None:
     columns: list[Column[Any]] = [
         *_who(itemgetter(0)),
         Column("model", lambda row: getattr(row[0].fit, "model_name", None)),
@@ -204,10 +221,10 @@ def _parameters(book: Workbook, assessment: Assessment) -> None:
         Column("unit", lambda row: row[1].quantity.unit),
     ]
     rows = [(reading, p) for reading in assessment.readings for p in reading.parameters]
-    add_sheet(book, "Parameters", columns, rows, colours=_COLOURS, standing=3)
+    book.add_sheet("Parameters", columns, rows, colours=COLOURS, standing=3)
 
 
-def _panels(book: Workbook, assessment: Assessment, campaign: Campaign) -> None:
+def _panels(book: Book, assessment: Assessment, campaign: Campaign) -> None:
     kept = {panel.panel_id: panel for panel in campaign.panels}
 
     def noted(name: str) -> Callable[[PanelAssessment], Value]:
@@ -216,11 +233,12 @@ def _panels(book: Workbook, assessment: Assessment, campaign: Campaign) -> None:
     columns: list[Column[Any]] = [
         Column("formulation", attrgetter("formulation")),
         Column("panel", attrgetter("panel")),
-        Column("area (cm²)", attrgetter("area_cm2")),
-        Column("film thickness (µm)", attrgetter("thickness_um")),
+        # The sheets with formulas look for these three in columns C, D and E.
+        Column("area (cm²)", attrgetter("area_cm2"), to_edit=True),
+        Column("film thickness (µm)", attrgetter("thickness_um"), to_edit=True),
+        Column("temperature (°C)", noted("temperature_c"), to_edit=True),
         Column("substrate", noted("substrate")),
         Column("electrolyte", noted("electrolyte")),
-        Column("temperature (°C)", noted("temperature_c")),
         Column("regime", noted("regime")),
         *_quantity_columns("dry capacitance", _F_PER_CM2, attrgetter("dry_capacitance")),
         *_quantity_columns(
@@ -231,31 +249,45 @@ def _panels(book: Workbook, assessment: Assessment, campaign: Campaign) -> None:
         Column("remark", noted("remark")),
         Column("notes", lambda panel: _notes(kept.get(panel.panel_id))),
     ]
-    add_sheet(book, "Panels", columns, assessment.panels, colours=_COLOURS, standing=2)
+    book.add_sheet("Panels", columns, assessment.panels, colours=COLOURS, standing=2)
 
 
 def _notes(panel: Panel | None) -> str | None:
     return "; ".join(f"{name}: {text}" for name, text in panel.notes) if panel else None
 
 
-def _courses(book: Workbook, assessment: Assessment) -> None:
+def _comparison(book: Book, assessment: Assessment) -> None:
+    everything = [assessment.comparison, *assessment.further_comparisons]
+    rows = [(c, pair) for c in everything if c is not None for pair in c.pairs]
+    columns: list[Column[Any]] = [
+        Column("judged by", lambda row: row[0].what),
+        Column("exposure (h)", lambda row: row[0].exposure_h, HOURS),
+        Column("first", lambda row: row[1].first),
+        Column("second", lambda row: row[1].second),
+        *_quantity_columns("first less second", "", lambda row: row[1].difference, "0.000"),
+        Column("unit", lambda row: getattr(row[1].difference, "unit", None)),
+        Column("probability", lambda row: row[1].probability, SCIENTIFIC),
+        Column("probability, corrected", lambda row: row[1].adjusted, SCIENTIFIC),
+        Column("result", lambda row: "differ" if row[1].differ else "cannot be told apart"),
+        Column("in words", lambda row: row[0].text),
+    ]
+    book.add_sheet("Comparison", columns, rows, colours=COLOURS)
+
+
+def _ratings(book: Book, assessment: Assessment) -> None:
+    if not assessment.ratings:
+        return
+    rows = [
+        (course, panel, value) for course in assessment.ratings for panel, value in course.ratings
+    ]
     columns: list[Column[Any]] = [
         Column("formulation", lambda row: row[0].formulation),
-        Column("quantity", lambda row: row[1].name),
-        Column("exposure (h)", lambda row: row[2].exposure_h),
-        *_quantity_columns("mean", "", lambda row: row[2].quantity),
-        Column("unit", lambda row: row[2].quantity.unit),
-        Column("kind of mean", lambda row: row[2].quantity.method),
-        Column("panels", lambda row: row[2].panels),
-        Column("of these only bounds", lambda row: row[2].censored),
+        Column("panel", itemgetter(1)),
+        Column("exposure (h)", lambda row: row[0].exposure_h, HOURS),
+        Column("scale", lambda row: row[0].scale),
+        Column("rating", itemgetter(2)),
     ]
-    rows = [
-        (formulation, course, point)
-        for formulation in assessment.formulations
-        for course in formulation.courses
-        for point in course.points
-    ]
-    add_sheet(book, "Courses", columns, rows, colours=_COLOURS, standing=3)
+    book.add_sheet("Ratings", columns, rows, standing=3)
 
 
 def _found(assessment: Assessment) -> Iterator[tuple[str, str, float | None, Finding]]:
@@ -270,7 +302,7 @@ def _found(assessment: Assessment) -> Iterator[tuple[str, str, float | None, Fin
             yield reading.formulation, reading.panel, reading.exposure_h, finding
 
 
-def _findings(book: Workbook, assessment: Assessment) -> None:
+def _findings(book: Book, assessment: Assessment) -> None:
     columns: list[Column[Any]] = [
         Column("formulation", itemgetter(0)),
         Column("panel", itemgetter(1)),
@@ -279,52 +311,39 @@ def _findings(book: Workbook, assessment: Assessment) -> None:
         Column("code", lambda row: row[3].code),
         Column("finding", lambda row: row[3].text),
     ]
-    add_sheet(book, "Findings", columns, _found(assessment), colours=_COLOURS)
+    book.add_sheet("Findings", columns, _found(assessment), colours=COLOURS)
 
 
-def _points_left_out(book: Workbook, assessment: Assessment) -> None:
+def _points_left_out(book: Book, assessment: Assessment) -> None:
     columns: list[Column[Any]] = [
         *_who(itemgetter(0)),
         Column("frequency (Hz)", lambda row: row[1].frequency_hz, "0.0000E+00"),
         Column("reason", lambda row: row[1].reason),
     ]
     rows = [(reading, point) for reading in assessment.readings for point in reading.left_out]
-    add_sheet(book, "Points left out", columns, rows)
+    book.add_sheet("Points left out", columns, rows)
 
 
-def _refused(book: Workbook, assessment: Assessment) -> None:
+def _refused(book: Book, assessment: Assessment) -> None:
     columns: list[Column[Any]] = [
         Column("file", attrgetter("file")),
         Column("reason", attrgetter("reason")),
     ]
-    add_sheet(book, "Refused", columns, assessment.refused)
+    book.add_sheet("Refused", columns, assessment.refused)
 
 
-def _method(book: Workbook, assessment: Assessment, campaign: Campaign) -> None:
+def _method(book: Book, assessment: Assessment) -> None:
     data = tomllib.loads(resource("method.toml").read_text(encoding="utf-8"))
     rows = [(e["quantity"], e["how"], e["source"]) for e in data["entry"]]
-    settings = campaign.settings
-    wanted = " and ".join(f"{f:g} Hz" for f in settings.modulus_frequencies_hz)
-    set_to = [
-        ("temperature where neither reading nor panel has one", f"{settings.temperature_c:g} °C"),
-        ("|Z|·A is given at", wanted),
-        ("high frequency for the capacitance", f"{settings.capacitance_frequency_hz:g} Hz"),
-        ("mains frequency", f"{settings.mains_hz:g} Hz"),
-        *((f"threshold {name}", f"{value:g}") for name, value in settings.thresholds),
-    ]
-    rows += [(f"Setting: {what}", value, "Settings of the campaign.") for what, value in set_to]
-    for limit in settings.criteria:
-        how = f"|Z|·A below {limit.ohm_cm2:g} Ω cm² at {limit.frequency_hz:g} Hz"
-        rows.append((f"Limit: {limit.name}", how, limit.source))
     rows += [("Caution", caution, "") for caution in assessment.cautions]
     rows.append(("Program", f"coatgui {__version__}", ""))
     headings = ["quantity", "how it was obtained", "source"]
     columns: list[Column[Any]] = [Column(h, itemgetter(i)) for i, h in enumerate(headings)]
-    add_sheet(book, "Method and cautions", columns, rows)
+    book.add_sheet("Method and cautions", columns, rows)
 
 
 def _provenance(
-    book: Workbook, assessment: Assessment, campaign: Campaign, readings: dict[str, Reading]
+    book: Book, assessment: Assessment, campaign: Campaign, readings: dict[str, Reading]
 ) -> None:
     rows: list[tuple[Value, ...]] = []
     for reading in assessment.readings:
@@ -339,7 +358,7 @@ def _provenance(
     headings = ["formulation", "panel", "exposure (h)", "file", "part", "SHA-256", "encoding"]
     headings += ["delimiter", "decimal sign", "columns as understood", "remarks", "model"]
     columns: list[Column[Any]] = [Column(h, itemgetter(i)) for i, h in enumerate(headings)]
-    add_sheet(book, "Provenance", columns, rows, standing=3)
+    book.add_sheet("Provenance", columns, rows, standing=3)
 
 
 def _origin(source: Source) -> tuple[Value, ...]:

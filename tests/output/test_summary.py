@@ -1,0 +1,308 @@
+"""The inspection summary: what it says, that it says no more, and its two forms."""
+
+from __future__ import annotations
+
+import re
+import shutil
+import subprocess
+import sys
+from dataclasses import replace
+from html.parser import HTMLParser
+from pathlib import Path
+
+import pytest
+
+from coatgui.assessment.cautions import cautions
+from coatgui.output import Identification, inspection_summary, require_qt, write_summary
+from coatgui.output.document import Document, Figure, Heading, Listing, Paragraph, Table
+from coatgui.output.html_form import html_document
+from coatgui.output.pages import PagesUnavailable, pdf_bytes
+from coatgui.records import Assessment, Bound, Campaign, Quantity
+
+IDENTIFICATION = Identification(laboratory="Slip Laboratory", order="RC-7", standards="none")
+HOSTILE = [
+    '<script>alert(1)</script><img src="http://x/y.png" onerror=a>',
+    "x" * 300,
+    "مرحبا بالعالم",
+    "長い名前の塗料",
+    "\"&'</td></table>",
+    "a\u202eb\x00c\x1b[31m\ud800",
+]
+
+
+def words_of(document: Document) -> str:
+    said = []
+    for block in document.blocks:
+        match block:
+            case Heading() | Paragraph():
+                said.append(block.text)
+            case Listing():
+                said += block.items
+            case Table():
+                said += [block.caption, *block.headings, *(c for row in block.rows for c in row)]
+            case Figure():
+                said += [block.caption, block.alternative]
+    return "\n".join(said)
+
+
+def qt() -> None:
+    try:
+        require_qt()
+    except PagesUnavailable as error:
+        pytest.skip(f"pages cannot be painted here: {error}")
+
+
+def named(assessment: Assessment, campaign: Campaign, name: str) -> tuple[Assessment, Campaign]:
+    """Everything that a person or a file can name, named alike."""
+    readings = tuple(
+        replace(
+            r,
+            panel=name,
+            formulation=name,
+            file=name,
+            findings=tuple(replace(f, text=name) for f in r.findings),
+            left_out=tuple(replace(p, reason=name) for p in r.left_out),
+        )
+        for r in assessment.readings
+    )
+    panels = tuple(
+        replace(p, panel=name, formulation=name, events=(replace(e, text=name),))
+        for p in assessment.panels
+        for e in assessment.panels[0].events
+    )
+    formulations = tuple(replace(f, formulation=name) for f in assessment.formulations)
+    ranking = tuple(replace(r, formulation=name) for r in assessment.ranking)
+    evil = replace(
+        assessment,
+        title=name,
+        headline=name,
+        ranking_text=name,
+        readings=readings,
+        panels=panels,
+        formulations=formulations,
+        ranking=ranking,
+        refused=(replace(assessment.refused[0], file=name, reason=name),),
+    )
+    own = tuple(
+        replace(p, name=name, substrate=name, electrolyte=name, regime=name, remark=name)
+        for p in campaign.panels
+    )
+    return evil, replace(campaign, panels=own)
+
+
+def test_it_says_what_was_found_and_how(assessment: Assessment, campaign: Campaign) -> None:
+    words = words_of(inspection_summary(assessment, campaign, IDENTIFICATION))
+    for said in (
+        "Slip Laboratory",
+        "A and B cannot be told apart.",
+        "That is not a proof that they are equal.",
+        "has fewer than three panels",
+        "has no area",
+        "The pores conduct.",
+        "Below the limit.",
+        "wild point",
+        "It drifted.",
+        "Measure again.",
+        "notes.txt",
+        "≥ 3·10⁹",
+        "cannot be determined",
+        "brine",
+        "Not recorded in the campaign",
+        "Mind the fog.",
+        "1" * 64,
+        "The program does not claim",
+    ):
+        assert said in words, said
+
+
+def test_an_empty_field_and_an_unknown_section_are_left_out(
+    assessment: Assessment, campaign: Campaign
+) -> None:
+    document = inspection_summary(assessment, campaign)
+    titles = [b.text for b in document.blocks if isinstance(b, Heading)]
+    assert "Identification" not in titles
+    assert "Visual ratings" not in titles
+    assert titles[0] == "What was found"
+
+
+def test_nothing_is_said_of_bounds_where_there_are_none(
+    assessment: Assessment, campaign: Campaign
+) -> None:
+    sure = Quantity(5e9, 4e9, 6e9, Bound.TWO_SIDED, "Ω cm²")
+    readings = tuple(replace(r, parameters=(), pore_resistance=sure) for r in assessment.readings)
+    words = words_of(inspection_summary(replace(assessment, readings=readings), campaign))
+    assert "is a bound" not in words
+    assert "do not hold it on either side" not in words
+
+
+def test_one_formulation_and_no_reading_have_their_sentences(
+    assessment: Assessment, campaign: Campaign
+) -> None:
+    one = replace(assessment, formulations=assessment.formulations[:1])
+    assert "nothing is compared" in words_of(inspection_summary(one, campaign))
+    empty = Assessment("t", (), (), (), (), "", (), (), ())
+    words = words_of(inspection_summary(empty, Campaign("c", "t")))
+    assert "There are no readings" in words
+    assert cautions()[0] in words  # cautions are never missing
+
+
+class Elements(HTMLParser):
+    def __init__(self, text: str) -> None:
+        super().__init__(convert_charrefs=True)
+        self.seen: list[tuple[str, dict[str, str | None]]] = []
+        self.open: list[str] = []
+        self.words: list[str] = []
+        self.feed(text)
+
+    def handle_starttag(self, tag: str, attrs: list[tuple[str, str | None]]) -> None:
+        self.seen.append((tag, dict(attrs)))
+        if tag not in ("meta", "polyline", "polygon", "rect", "circle"):
+            self.open.append(tag)
+
+    def handle_startendtag(self, tag: str, attrs: list[tuple[str, str | None]]) -> None:
+        self.seen.append((tag, dict(attrs)))
+
+    def handle_endtag(self, tag: str) -> None:
+        assert self.open.pop() == tag
+
+    def handle_data(self, data: str) -> None:
+        self.words.append(data)
+
+
+@pytest.mark.parametrize("name", HOSTILE)
+def test_html_takes_text_as_text(assessment: Assessment, campaign: Campaign, name: str) -> None:
+    text = html_document(inspection_summary(*named(assessment, campaign, name)))
+    text.encode("utf-8")
+    assert "\x00" not in text
+    assert "\u202e" not in text
+    elements = Elements(text)
+    assert elements.open == []
+    tags = {tag for tag, _ in elements.seen}
+    assert not tags & {"script", "img", "iframe", "object", "link", "a href"}
+    for tag, attributes in elements.seen:
+        assert not [key for key in attributes if key.startswith("on") or key == "src"], tag
+        assert (attributes.get("href") or "#").startswith("#")
+    if name.isprintable() and len(name) < 300:
+        assert name in "".join(elements.words)
+
+
+def test_every_picture_has_words_and_every_table_a_head(
+    assessment: Assessment, campaign: Campaign
+) -> None:
+    text = html_document(inspection_summary(assessment, campaign))
+    pictures = re.findall(r"<svg .*?</svg>", text, re.DOTALL)
+    assert pictures
+    for picture in pictures:
+        assert re.search(r"<desc [^>]*>\S", picture)
+    assert text.count("<thead>") == text.count("<table>") == text.count("<caption")
+    ids = re.findall(r' id="([^"]+)"', text)
+    assert len(ids) == len(set(ids))
+    for target in re.findall(r'href="#([^"]+)"', text):
+        assert target in ids
+
+
+def test_the_same_assessment_gives_the_same_html(
+    assessment: Assessment, campaign: Campaign, tmp_path: Path
+) -> None:
+    for name in ("1.html", "2.html"):
+        write_summary(assessment, campaign, tmp_path / name, IDENTIFICATION)
+    assert (tmp_path / "1.html").read_bytes() == (tmp_path / "2.html").read_bytes()
+
+
+def test_html_needs_no_qt() -> None:
+    code = (
+        "import os; os.environ['COATGUI_WITHOUT_QT'] = '1'\n"
+        "import sys; sys.modules['PySide6'] = None\n"
+        "from coatgui.output import inspection_summary, require_qt, PagesUnavailable\n"
+        "from coatgui.output.html_form import html_document\n"
+        "from coatgui.records import Assessment, Campaign\n"
+        "a = Assessment('t', (), (), (), (), '', (), (), ())\n"
+        "print(len(html_document(inspection_summary(a, Campaign('c', 't')))) > 1000)\n"
+        "try:\n    require_qt()\n"
+        "except PagesUnavailable as error:\n    print(error)\n"
+    )
+    shown = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
+    said = shown.stdout.splitlines()
+    assert said[0] == "True"
+    assert "needs Qt's libraries" in said[1]
+
+
+# ---------------------------------------------------------------------------------------------
+# Pages
+
+
+def page_text(path: Path) -> str:
+    tool = shutil.which("pdftotext")
+    if tool is None:
+        pytest.skip("pdftotext is not installed")
+    shown = subprocess.run([tool, "-layout", str(path), "-"], capture_output=True, check=True)
+    return " ".join(shown.stdout.decode("utf-8").split())
+
+
+def test_the_pdf_holds_every_caution_and_number_of_page(
+    assessment: Assessment, campaign: Campaign, tmp_path: Path
+) -> None:
+    qt()
+    full = replace(assessment, cautions=cautions())
+    write_summary(full, campaign, tmp_path / "s.pdf", IDENTIFICATION)
+    text = page_text(tmp_path / "s.pdf")
+    for caution in cautions():  # looked for without the blanks: lines break where they must
+        assert "".join(caution.split()) in "".join(text.split())
+    assert "Identification" in text  # no ligature, so that it is found
+    assert "Page 1 of" in text
+    assert "By hand · RC-7 · Slip Laboratory" in text
+
+
+def test_the_pdf_is_whole_has_bookmarks_and_embeds_its_fonts(
+    assessment: Assessment, campaign: Campaign, tmp_path: Path
+) -> None:
+    qt()
+    document = inspection_summary(assessment, campaign, IDENTIFICATION)
+    content = pdf_bytes(document)
+    for block in document.blocks:
+        if isinstance(block, Figure):
+            words = ("\ufeff" + block.alternative).encode("utf-16-be").hex().upper()
+            assert words.encode() in content
+    assert b"/Outlines" in content
+    assert content.count(b"/Title <") >= 1 + len(
+        [b for b in document.blocks if isinstance(b, Heading)]
+    )
+    if (tool := shutil.which("pdffonts")) is None:
+        pytest.skip("pdffonts is not installed")
+    path = tmp_path / "s.pdf"
+    path.write_bytes(content)
+    shown = subprocess.run([tool, str(path)], capture_output=True, text=True, check=True)
+    assert shown.stderr == ""
+    fonts = shown.stdout.splitlines()[2:]
+    assert fonts
+    for line in fonts:
+        assert line.split()[-5] == "yes", line  # the column "emb"
+
+
+def test_the_same_document_gives_the_same_pdf(assessment: Assessment, campaign: Campaign) -> None:
+    qt()
+    document = inspection_summary(assessment, campaign)
+    assert pdf_bytes(document) == pdf_bytes(document)
+
+
+@pytest.mark.parametrize("name", HOSTILE)
+def test_pages_take_any_text(
+    assessment: Assessment, campaign: Campaign, name: str, tmp_path: Path
+) -> None:
+    qt()
+    evil, own = named(assessment, campaign, name)
+    write_summary(evil, own, tmp_path / "s.pdf", Identification(author=name, customer=name))
+    text = page_text(tmp_path / "s.pdf")
+    if name.isascii() and name.isprintable() and len(name) < 300:
+        assert "".join(name.split()) in "".join(text.split())
+
+
+def test_a_row_longer_than_a_page_is_printed_whole(
+    assessment: Assessment, campaign: Campaign, tmp_path: Path
+) -> None:
+    qt()
+    words = " ".join(f"w{i}" for i in range(4000))
+    evil = replace(assessment, refused=(replace(assessment.refused[0], reason=words),))
+    write_summary(evil, campaign, tmp_path / "s.pdf")
+    text = page_text(tmp_path / "s.pdf").split()
+    assert {f"w{i}" for i in range(4000)} <= set(text)
