@@ -19,6 +19,7 @@ from coatgui.campaign.errors import (
 )
 from coatgui.campaign.file import CampaignFile
 from coatgui.campaign.lock import Holder
+from coatgui.campaign.recovery import Recovered, recover
 
 __all__ = [
     "UNASSIGNED",
@@ -32,9 +33,11 @@ __all__ = [
     "Holder",
     "Operation",
     "OperationRefused",
+    "Recovered",
     "RowChange",
     "StorageFailed",
     "campaign_from_found",
     "check_file",
     "operations",
+    "recover",
 ]

@@ -21,6 +21,7 @@ from pathlib import Path
 
 from coatgui.campaign import schema
 from coatgui.campaign.errors import (
+    CampaignDamaged,
     CampaignFileError,
     FileGone,
     OperationRefused,
@@ -70,9 +71,12 @@ def plain_words(path: Path) -> Iterator[None]:
             f"The computer's memory is not enough for {path.name}: close other programs first."
         ) from problem
     except sqlite3.Error as problem:
-        raise CampaignFileError(
-            f"{path.name} is damaged ({problem}): go back to a copy of it."
+        raise CampaignDamaged(
+            f"{path.name} is damaged ({_one_line(problem)}): go back to a copy of it, or have "
+            "recovered what can be read."
         ) from problem
+    except UnicodeDecodeError as problem:
+        raise _no_text(path) from problem
     except UnicodeEncodeError as problem:
         raise OperationRefused(
             "A text holds characters that cannot be stored: please write it differently."
@@ -86,6 +90,8 @@ def plain_words(path: Path) -> Iterator[None]:
 def _in_words(path: Path, problem: sqlite3.OperationalError) -> CampaignFileError:
     name = getattr(problem, "sqlite_errorname", "") or ""
     said = str(problem)
+    if said.startswith("Could not decode"):
+        return _no_text(path)
     if "locked" in said:
         return CampaignFileError(
             f"{path.name} is being written by another program: try again when it is done."
@@ -111,7 +117,20 @@ def _in_words(path: Path, problem: sqlite3.OperationalError) -> CampaignFileErro
             f"{path.name} cannot be reached or its folder cannot be written to. Look whether the "
             "disk or network folder is there, or save a copy elsewhere."
         )
-    return CampaignFileError(f"{path.name} cannot be used: {said}.")
+    return CampaignFileError(f"{path.name} cannot be used: {_one_line(problem)}.")
+
+
+def _no_text(path: Path) -> CampaignFileError:
+    return CampaignDamaged(
+        f"{path.name} is damaged (a text in it is none): go back to a copy of it, or have "
+        "recovered what can be read."
+    )
+
+
+def _one_line(problem: Exception) -> str:
+    """What SQLite says may quote whole tables of a damaged file."""
+    said = " ".join(str(problem).split())
+    return said if len(said) <= 120 else f"{said[:120]}…"
 
 
 def gone(path: Path) -> str:

@@ -8,6 +8,7 @@ that edits can go on meanwhile, written under another name and renamed when it i
 from __future__ import annotations
 
 import hashlib
+import shutil
 import sqlite3
 import threading
 import time
@@ -119,6 +120,24 @@ def back_up(
         connection.backup(copy, pages=_PAGES_AT_ONCE, progress=give_others_a_turn)
 
 
+def copy_with_journal(path: Path, target: Path, chain: str) -> bool:
+    """A copy of a file whose disk no longer lets SQLite take back a change that failed: the bytes
+    are copied together with the journal, and the change is taken back in the copy. False, and no
+    file, where the copy does not end with the line of history of that `chain`."""
+    journal = target.with_name(f"{target.name}-journal")
+    try:
+        shutil.copyfile(path, target)
+        with suppress(FileNotFoundError):
+            shutil.copyfile(path.with_name(f"{path.name}-journal"), journal)
+        if _chain_in(target) == chain:
+            return True
+    except OSError:
+        pass
+    target.unlink(missing_ok=True)
+    journal.unlink(missing_ok=True)
+    return False
+
+
 def fill_from_memory(
     connection: sqlite3.Connection, campaign: Campaign, target: Path
 ) -> tuple[str, ...]:
@@ -134,8 +153,8 @@ def fill_from_memory(
             row = connection.execute(
                 "SELECT bytes FROM raw_files WHERE sha256 = ?", (sha256,)
             ).fetchone()
-            content = None if row is None else bytes(row[0])
-        if content is not None and hashlib.sha256(content).hexdigest() == sha256:
+            content = None if row is None else row[0]
+        if isinstance(content, bytes) and hashlib.sha256(content).hexdigest() == sha256:
             raw[sha256] = content
         else:
             lost.append(name)

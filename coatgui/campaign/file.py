@@ -218,8 +218,8 @@ class CampaignFile:
             ).fetchone()
         if row is None:
             return None
-        content = bytes(row["bytes"])
-        if hashlib.sha256(content).hexdigest() != sha256:
+        content = row["bytes"]
+        if not isinstance(content, bytes) or hashlib.sha256(content).hexdigest() != sha256:
             raise CampaignFileError(
                 f"{self.path.name} is damaged: the stored bytes of an imported file "
                 f"(SHA-256 {sha256[:12]}…) have changed."
@@ -239,8 +239,8 @@ class CampaignFile:
                 try:
                     copies.back_up(self._connection, beside)
                 except sqlite3.Error:
-                    beside.unlink(missing_ok=True)
-                    missing = copies.fill_from_memory(self._connection, self.campaign, beside)
+                    if not copies.copy_with_journal(self.path, beside, self._trail.chain):
+                        missing = copies.fill_from_memory(self._connection, self.campaign, beside)
 
             database.write_whole_file(path, fill, replace=replace)
             return missing
@@ -261,7 +261,7 @@ class CampaignFile:
                     "SELECT result, sha256 FROM cached_results WHERE result_key = ?", (key,)
                 ).fetchone()
                 # One that was damaged on the disk is computed again.
-                if row is not None and seal.result_hash(key, row["result"]) == row["sha256"]:
+                if row and seal.result_hash(key, row["result"]) == row["sha256"] != "":
                     found[key] = bytes(row["result"])
             return found
 

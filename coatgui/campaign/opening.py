@@ -99,7 +99,7 @@ def _refuse_damaged(connection: sqlite3.Connection, path: Path, *, thorough: boo
     for of in checks:
         for (said,) in connection.execute(f"PRAGMA quick_check{of}"):
             if said != "ok":
-                raise _damaged(path, f"SQLite says “{said}”")
+                raise _damaged(path, f"SQLite says “{' '.join(str(said).split())}”")
 
 
 def _damaged(path: Path, why: str) -> CampaignDamaged:

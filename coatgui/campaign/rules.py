@@ -56,7 +56,7 @@ def operation(
             was = were.get(key)
             if record is was:
                 continue
-            _refuse_unsound(table, record)
+            refuse_unsound(table, record)
             changes += _change(table, key, was, record)
             for spectrum in _spectra_in(record):
                 if spectrum not in _spectra_in(was):
@@ -85,7 +85,7 @@ def all_rows(campaign: Campaign) -> Iterator[tuple[str, Row]]:
     _refuse_clashes(campaign, set(tables))
     for table, records in tables.items():
         for key, record in records.items():
-            _refuse_unsound(table, record)
+            refuse_unsound(table, record)
             yield table, _ROW[table](key, record)
 
 
@@ -142,7 +142,8 @@ def _spectra_in(record: Any) -> tuple[Spectrum, ...]:
 # Rules for one record
 
 
-def _refuse_unsound(table: str, record: Any) -> None:
+def refuse_unsound(table: str, record: Any) -> None:
+    """Raises OperationRefused where a record breaks a rule of its own."""
     if is_dataclass(record):
         _refuse_wrong_types(record)
     if table == "campaign":

@@ -263,9 +263,15 @@ def unexpected_structure(connection: sqlite3.Connection) -> tuple[str, ...]:
 @cache
 def columns(table: str) -> frozenset[str]:
     """The columns of one of the tables in `KEYS`, in the newest version."""
+    return frozenset(columns_in_order(table))
+
+
+@cache
+def columns_in_order(table: str) -> tuple[str, ...]:
+    """The columns of a table in the newest version, in the order in which a row stores them."""
     with closing(sqlite3.connect(":memory:", isolation_level=None)) as model:
         migrate(model)
-        return frozenset(row[1] for row in model.execute(f"PRAGMA table_info({table})"))
+        return tuple(row[1] for row in model.execute(f"PRAGMA table_info({table})"))
 
 
 def _structure(at_version: int) -> dict[tuple[str, str], str | None]:

@@ -28,7 +28,7 @@ _LINE = "entry_id, action, of_entry, name, who, when_utc, reason, changes, state
 
 def row_digest(table: str, row: Mapping[str, Any]) -> int:
     """The part that one row has in the state; `row` holds all its columns."""
-    told = json.dumps([table, *sorted(row.items())], ensure_ascii=False)
+    told = json.dumps([table, *sorted(row.items())], ensure_ascii=False, default=repr)
     return int.from_bytes(hashlib.sha256(told.encode("utf-8", "surrogatepass")).digest())
 
 
@@ -77,9 +77,11 @@ def link(before: str, line: Iterable[Any]) -> str:
     return digest.hexdigest()
 
 
-def result_hash(key: str, result: bytes) -> str:
+def result_hash(key: str, result: Any) -> str:
     """What is kept with a cached result, to see that it is still what was kept."""
-    return hashlib.sha256(key.encode("utf-8") + b":" + result).hexdigest()
+    if not isinstance(result, bytes):  # in a damaged file
+        return ""
+    return hashlib.sha256(str(key).encode("utf-8") + b":" + result).hexdigest()
 
 
 def broken_link(connection: sqlite3.Connection) -> int | None:

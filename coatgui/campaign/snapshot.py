@@ -143,6 +143,8 @@ class Snapshot:
 def record_of(table: str, row: Any, spectra: Mapping[str, Spectrum]) -> Any:
     """The record of a row of one of the ordered tables. Raises CampaignFileError."""
     try:
+        if not isinstance(row["place"], int):
+            raise TypeError("A place must be a whole number.")
         if table == "formulations":
             return rows.formulation_of(row)
         if table == "panels":
@@ -164,16 +166,19 @@ def read_spectra(
     connection: sqlite3.Connection, spectrum_id: str | None = None
 ) -> dict[str, Spectrum]:
     """The named spectrum, or all that readings and the open-lead run refer to, by id. Raises
-    CampaignFileError where one cannot be read."""
+    CampaignFileError where one cannot be read or is not what its id says."""
     columns = "SELECT spectrum_id, frequency_hz, real_ohm, imaginary_ohm FROM spectra"
     if spectrum_id is not None:
         found = connection.execute(f"{columns} WHERE spectrum_id = ?", (spectrum_id,))
     else:
         found = connection.execute(f"{columns} WHERE spectrum_id IN ({_IN_USE})")
     try:
-        return rows.spectra_of(found)
+        spectra = rows.spectra_of(found)
+        if not all(spectrum.content_key() == key for key, spectrum in spectra.items()):
+            raise ValueError("The numbers are not those that were kept.")
+        return spectra
     except rows.UNREADABLE as problem:
         which = "one of its spectra" if spectrum_id is None else f"spectrum {spectrum_id}"
         raise CampaignFileError(
-            f"This campaign file is damaged: {which} cannot be read."
+            f"This campaign file is damaged: {which} cannot be read, or was altered."
         ) from problem

@@ -32,7 +32,10 @@ def test_a_sound_file(file: CampaignFile) -> None:
     [
         ("UPDATE raw_files SET bytes = x'00' WHERE rowid = 2", "not what its SHA-256"),
         ("DELETE FROM raw_files WHERE rowid = 1", "bytes of one/a1.csv"),
-        ("UPDATE spectra SET real_ohm = replace(real_ohm, '1', '2')", "numbers of spectrum"),
+        (
+            "UPDATE spectra SET real_ohm = replace(real_ohm, '1', '2')",
+            "cannot be read, or was altered",
+        ),
         ("UPDATE spectra SET imaginary_ohm = '[]'", "cannot be read"),
         ("UPDATE readings SET panel_id = 'gone' WHERE reading_id = 'r1'", "refers to a row"),
         ("UPDATE readings SET kept_in = '[6]' WHERE reading_id = 'r2'", "row r2 of readings"),

@@ -42,8 +42,10 @@ def later(monkeypatch: pytest.MonkeyPatch) -> Iterator[pytest.MonkeyPatch]:
     """Pretend that the program has gone on to a next version."""
     monkeypatch.setattr(schema, "MIGRATIONS", (*schema.MIGRATIONS, add_a_column))
     schema.columns.cache_clear()
+    schema.columns_in_order.cache_clear()
     yield monkeypatch
     schema.columns.cache_clear()
+    schema.columns_in_order.cache_clear()
 
 
 def test_a_file_of_an_older_version_is_brought_up_to_date(
