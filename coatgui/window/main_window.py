@@ -38,6 +38,7 @@ from coatgui.window.places.doubts_place import DoubtsPlace
 from coatgui.window.places.map_place import MapPlace
 from coatgui.window.places.place import Place
 from coatgui.window.places.reading_place import ReadingPlace
+from coatgui.window.places.settings_place import SettingsPlace
 from coatgui.window.project_tree import ProjectTree
 from coatgui.window.welcome import Trouble, Welcome
 
@@ -123,7 +124,7 @@ class MainWindow(QMainWindow):
         self.stack = QStackedWidget()
         self.places: list[Place] = [
             kind(self.desk, self.tone)
-            for kind in (MapPlace, ReadingPlace, CoursePlace, DoubtsPlace)
+            for kind in (MapPlace, ReadingPlace, CoursePlace, DoubtsPlace, SettingsPlace)
         ]
         for place in self.places:
             if isinstance(place, MapPlace):
@@ -382,7 +383,7 @@ class MainWindow(QMainWindow):
         # The reading's own place shows the same values where they lie in the coating, and the
         # doubts show their evidence.
         self.facts.setVisible(isinstance(self.places[place], (MapPlace, CoursePlace)))
-        self.strip.setVisible(not isinstance(self.places[place], DoubtsPlace))
+        self.strip.setVisible(not isinstance(self.places[place], (DoubtsPlace, SettingsPlace)))
 
     def go_map(self) -> None:
         self.go(0)
@@ -395,6 +396,12 @@ class MainWindow(QMainWindow):
 
     def go_doubts(self) -> None:
         self.go(3)
+
+    def go_settings(self) -> None:
+        self.go_to(SettingsPlace)
+
+    def go_to(self, kind: type[Place]) -> None:
+        self.go(next(i for i, place in enumerate(self.places) if isinstance(place, kind)))
 
     def later(self) -> None:
         self.desk.step(1)

@@ -151,6 +151,7 @@ def apply(application: QApplication, tone: Colours) -> None:
         QLabel#question {{ font-size: 16px; color: {tone.ink}; }}
         QLabel#small {{ font-size: 11px; color: {tone.second}; }}
         QLabel#fact_title {{ font-size: 16px; }}
+        QLabel#wrong {{ color: {tone.rust}; }}
         QLabel#fact_name {{ font-size: 11px; color: {tone.second}; }}
         QLabel#fact_note, QLabel#fact_caution {{ font-size: 11px; color: {tone.second}; }}
         QPushButton#first {{ background: {tone.verdigris}; color: {tone.ground};
@@ -161,6 +162,12 @@ def apply(application: QApplication, tone: Colours) -> None:
         QPushButton#link:focus, QPushButton#link:hover {{ border-color: {tone.verdigris}; }}
         QPushButton:hover {{ border-color: {tone.second}; }}
         QPushButton:disabled {{ color: {tone.faint}; }}
+        QCheckBox::indicator {{ width: 12px; height: 12px; border: 1px solid {tone.second};
+            border-radius: 2px; background: {tone.ground}; }}
+        QCheckBox::indicator:checked {{ border: 4px solid {tone.verdigris}; width: 6px;
+            height: 6px; background: {tone.ink}; }}
+        QCheckBox:focus {{ color: {tone.verdigris}; }}
+        QCheckBox:disabled {{ color: {tone.faint}; }}
         QScrollArea {{ border: 1px solid transparent; }}
         QScrollArea:focus {{ border: 1px solid {tone.verdigris}; }}
         QTreeView:focus, QListWidget:focus, QTableWidget:focus {{
