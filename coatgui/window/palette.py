@@ -55,10 +55,13 @@ def system_is_dark() -> bool:
 
 def ramp(share: float, dark: bool) -> tuple[QColor, QColor]:
     """Ground and ink of a cell for a share from 0 (poor barrier, pale) to 1 (good, deep). One hue;
-    lightness falls evenly."""
+    lightness falls evenly. On dark ground the palest is a middle tone, for a white cell would
+    glare."""
     share = min(max(share, 0.0), 1.0)
-    lightness = 0.93 - 0.65 * share
-    ground = QColor.fromHslF(0.56, 0.30, lightness)
+    if dark:
+        ground = QColor.fromHslF(0.56, 0.28, 0.60 - 0.39 * share)
+    else:
+        ground = QColor.fromHslF(0.56, 0.30, 0.93 - 0.65 * share)
     # Black and white stand at equal contrast where the relative luminance is 0.179.
     linear = [
         c / 12.92 if c <= 0.04045 else ((c + 0.055) / 1.055) ** 2.4
