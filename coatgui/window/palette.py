@@ -144,6 +144,7 @@ def apply(application: QApplication, tone: Colours) -> None:
             border-radius: 3px; padding: 6px 14px; }}
         QPushButton:focus, QLineEdit:focus, QComboBox:focus {{
             border: 1px solid {tone.verdigris}; }}
+        QPushButton:checked {{ border: 1px solid {tone.verdigris}; color: {tone.verdigris}; }}
         QPushButton#place {{ background: transparent; border: 0; border-radius: 0;
             border-bottom: 2px solid transparent; padding: 8px 16px; color: {tone.second};
             font-size: 14px; }}

@@ -70,6 +70,8 @@ def written(value: float | None, unit: str) -> str:
         return ""
     if unit == "Ω cm²":
         return f"{written(value, 'Ω')} cm²"
+    if unit not in _SPELT:
+        return f"{value:g} {unit}".strip()
     number, _, after = prefixed(value, unit, 6).partition(" ")
     if "." in number and "e" not in number:
         number = number.rstrip("0").rstrip(".")
