@@ -57,6 +57,8 @@ ACTIONS = (
     Entry("Go", "Reading", "Ctrl+2", "What does this spectrum say?", "go_reading", "campaign"),
     Entry("Go", "Course", "Ctrl+3", "How is it going?", "go_course", "campaign"),
     Entry("Go", "Doubts", "Ctrl+4", "What needs a person's eye?", "go_doubts", "campaign"),
+    Entry("Go", "Water", "Ctrl+5", "How much water does the film take up, and how fast?",
+          "go_water", "campaign"),
     Entry("Go", "Settings", "Ctrl+7", "By what is this campaign judged?", "go_settings",
           "campaign"),
     Entry("Go", "Next inspection", "Ctrl+Right", "This panel, one inspection later", "later",

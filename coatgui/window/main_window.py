@@ -39,6 +39,7 @@ from coatgui.window.places.map_place import MapPlace
 from coatgui.window.places.place import Place
 from coatgui.window.places.reading_place import ReadingPlace
 from coatgui.window.places.settings_place import SettingsPlace
+from coatgui.window.places.water_place import WaterPlace
 from coatgui.window.project_tree import ProjectTree
 from coatgui.window.welcome import Trouble, Welcome
 
@@ -124,7 +125,14 @@ class MainWindow(QMainWindow):
         self.stack = QStackedWidget()
         self.places: list[Place] = [
             kind(self.desk, self.tone)
-            for kind in (MapPlace, ReadingPlace, CoursePlace, DoubtsPlace, SettingsPlace)
+            for kind in (
+                MapPlace,
+                ReadingPlace,
+                CoursePlace,
+                DoubtsPlace,
+                WaterPlace,
+                SettingsPlace,
+            )
         ]
         for place in self.places:
             if isinstance(place, MapPlace):
@@ -396,6 +404,9 @@ class MainWindow(QMainWindow):
 
     def go_doubts(self) -> None:
         self.go(3)
+
+    def go_water(self) -> None:
+        self.go_to(WaterPlace)
 
     def go_settings(self) -> None:
         self.go_to(SettingsPlace)
