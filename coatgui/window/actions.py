@@ -59,6 +59,8 @@ ACTIONS = (
     Entry("Go", "Doubts", "Ctrl+4", "What needs a person's eye?", "go_doubts", "campaign"),
     Entry("Go", "Water", "Ctrl+5", "How much water does the film take up, and how fast?",
           "go_water", "campaign"),
+    Entry("Go", "Comparison", "Ctrl+6", "Which is better, and are we sure?", "go_comparison",
+          "campaign"),
     Entry("Go", "Settings", "Ctrl+7", "By what is this campaign judged?", "go_settings",
           "campaign"),
     Entry("Go", "Next inspection", "Ctrl+Right", "This panel, one inspection later", "later",

@@ -33,6 +33,7 @@ from coatgui.window.desk import Desk
 from coatgui.window.exposure_strip import ExposureStrip
 from coatgui.window.facts import FactsView, facts
 from coatgui.window.figure import as_text, on_white, picture, save
+from coatgui.window.places.comparison_place import ComparisonPlace
 from coatgui.window.places.course_place import CoursePlace
 from coatgui.window.places.doubts_place import DoubtsPlace
 from coatgui.window.places.map_place import MapPlace
@@ -131,6 +132,7 @@ class MainWindow(QMainWindow):
                 CoursePlace,
                 DoubtsPlace,
                 WaterPlace,
+                ComparisonPlace,
                 SettingsPlace,
             )
         ]
@@ -391,7 +393,9 @@ class MainWindow(QMainWindow):
         # The reading's own place shows the same values where they lie in the coating, and the
         # doubts show their evidence.
         self.facts.setVisible(isinstance(self.places[place], (MapPlace, CoursePlace)))
-        self.strip.setVisible(not isinstance(self.places[place], (DoubtsPlace, SettingsPlace)))
+        self.strip.setVisible(
+            not isinstance(self.places[place], (DoubtsPlace, ComparisonPlace, SettingsPlace))
+        )
 
     def go_map(self) -> None:
         self.go(0)
@@ -407,6 +411,9 @@ class MainWindow(QMainWindow):
 
     def go_water(self) -> None:
         self.go_to(WaterPlace)
+
+    def go_comparison(self) -> None:
+        self.go_to(ComparisonPlace)
 
     def go_settings(self) -> None:
         self.go_to(SettingsPlace)
