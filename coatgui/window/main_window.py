@@ -33,11 +33,14 @@ from coatgui.window.desk import Desk
 from coatgui.window.exposure_strip import ExposureStrip
 from coatgui.window.facts import FactsView, facts
 from coatgui.window.figure import as_text, on_white, picture, save
+from coatgui.window.places.comparison_place import ComparisonPlace
 from coatgui.window.places.course_place import CoursePlace
 from coatgui.window.places.doubts_place import DoubtsPlace
 from coatgui.window.places.map_place import MapPlace
 from coatgui.window.places.place import Place
 from coatgui.window.places.reading_place import ReadingPlace
+from coatgui.window.places.settings_place import SettingsPlace
+from coatgui.window.places.water_place import WaterPlace
 from coatgui.window.project_tree import ProjectTree
 from coatgui.window.welcome import Trouble, Welcome
 
@@ -123,7 +126,15 @@ class MainWindow(QMainWindow):
         self.stack = QStackedWidget()
         self.places: list[Place] = [
             kind(self.desk, self.tone)
-            for kind in (MapPlace, ReadingPlace, CoursePlace, DoubtsPlace)
+            for kind in (
+                MapPlace,
+                ReadingPlace,
+                CoursePlace,
+                DoubtsPlace,
+                WaterPlace,
+                ComparisonPlace,
+                SettingsPlace,
+            )
         ]
         for place in self.places:
             if isinstance(place, MapPlace):
@@ -382,7 +393,9 @@ class MainWindow(QMainWindow):
         # The reading's own place shows the same values where they lie in the coating, and the
         # doubts show their evidence.
         self.facts.setVisible(isinstance(self.places[place], (MapPlace, CoursePlace)))
-        self.strip.setVisible(not isinstance(self.places[place], DoubtsPlace))
+        self.strip.setVisible(
+            not isinstance(self.places[place], (DoubtsPlace, ComparisonPlace, SettingsPlace))
+        )
 
     def go_map(self) -> None:
         self.go(0)
@@ -395,6 +408,18 @@ class MainWindow(QMainWindow):
 
     def go_doubts(self) -> None:
         self.go(3)
+
+    def go_water(self) -> None:
+        self.go_to(WaterPlace)
+
+    def go_comparison(self) -> None:
+        self.go_to(ComparisonPlace)
+
+    def go_settings(self) -> None:
+        self.go_to(SettingsPlace)
+
+    def go_to(self, kind: type[Place]) -> None:
+        self.go(next(i for i, place in enumerate(self.places) if isinstance(place, kind)))
 
     def later(self) -> None:
         self.desk.step(1)
