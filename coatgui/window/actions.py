@@ -7,8 +7,8 @@ from dataclasses import dataclass
 
 @dataclass(frozen=True)
 class Entry:
-    """`method` is the main window's; `needs` is what must be there: "", campaign, work
-    (something under way), undo or redo."""
+    """`method` is the main window's, or of its files or figures; `needs` is what must be there: "",
+    campaign, work (something under way), undo or redo."""
 
     menu: str
     name: str
