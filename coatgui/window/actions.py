@@ -47,6 +47,8 @@ ACTIONS = (
           "copy_picture", "campaign"),
     Entry("Edit", "Copy the data as a table", "Ctrl+Shift+T", "What the plot shows, for a "
           "spreadsheet", "copy_table", "campaign"),
+    Entry("Edit", "Paste a table of a spectrum", "Ctrl+V", "From the clipboard; it is shown before "
+          "it is taken", "paste_table"),
     Entry("Edit", "Rename", "F2", "Another name for the row picked in the tree", "rename",
           "campaign"),
     Entry("Edit", "Remove from the campaign", "", "Take out the row picked in the tree", "remove",

@@ -5,7 +5,7 @@ from __future__ import annotations
 
 import shutil
 import tempfile
-from collections.abc import Callable, Sequence
+from collections.abc import Callable
 from pathlib import Path
 from typing import Any
 
@@ -20,7 +20,7 @@ from coatgui.campaign import (
     campaign_from_found,
     operations,
 )
-from coatgui.intake import UnreadableFolder, read_files, read_folder
+from coatgui.intake import DryRun, Standing, UnreadableFolder, propose_folder
 from coatgui.jobs import Job, run_in_background, spread_over_processes
 from coatgui.output import write_json, write_workbook
 from coatgui.progress import Cancelled, Progress
@@ -34,21 +34,27 @@ def _assess(campaign: Campaign, file: CampaignFile, progress: Progress) -> Asses
         return assess(campaign, progress=progress, spread=spread, cache=file)
 
 
-def _open_folder(folder: Path, target: Path, progress: Progress) -> CampaignFile:
-    found = read_folder(folder, progress=progress)
-    return CampaignFile.create(target, campaign_from_found(found, folder.name), found.raw)
+def _open_folder(folder: Path, target: Path, progress: Progress) -> CampaignFile | DryRun:
+    """The campaign, or what is proposed where a person should look first."""
+    run = propose_folder(folder, progress=progress)
+    if run.count(Standing.ASKED) or run.count(Standing.DOUBTFUL):
+        return run
+    return _create(run.found, folder.name, target, progress)
+
+
+def _create(found: Found, title: str, target: Path, progress: Progress) -> CampaignFile:
+    progress.at("Making the campaign", 0, 1)
+    return CampaignFile.create(target, campaign_from_found(found, title), found.raw)
+
+
+def _import(file: CampaignFile, found: Found, progress: Progress) -> Change:
+    progress.at("Bringing in", 0, 1)
+    return file.apply(operations.import_found(file.campaign, found))
 
 
 def _open_file(path: Path, progress: Progress) -> CampaignFile:
     progress.at("Opening the campaign", 0, 1)
     return CampaignFile.open(path)
-
-
-def _read(paths: Sequence[Path], progress: Progress) -> list[Found]:
-    folders = [path for path in paths if path.is_dir()]
-    files = [path for path in paths if not path.is_dir()]
-    found = [read_folder(folder, progress=progress) for folder in folders]
-    return [*found, read_files(files, progress=progress)] if files else found
 
 
 def _export(
@@ -62,13 +68,15 @@ def _export(
 class Desk(QObject):
     """Signals: `campaign_changed` when the campaign is another or was edited, `assessed` when a
     new assessment is there, `selected` with a reading's id, `worked` with what a job is doing
-    ("" when idle), `told` with a sentence for the status line, `failed` with one that a person must
+    ("" when idle), `offered` with a folder to be opened and what is proposed, where something in it
+    is doubtful, `told` with a sentence for the status line, `failed` with one that a person must
     see: something that was asked for was not done."""
 
     campaign_changed = Signal()
     assessed = Signal()
     selected = Signal(str)
     worked = Signal(str, int, int)
+    offered = Signal(Path, object)
     told = Signal(str)
     failed = Signal(str)
 
@@ -82,6 +90,7 @@ class Desk(QObject):
         self._then: Callable[[Any], None] | None = None
         self._stale = False  # the assessment is not of the campaign as it is now
         self._halted = False  # a person stopped the judging
+        self._importing = False  # what is being brought in must not be put aside
         self._waiting: list[Callable[[], None]] = []
         self._timer = QTimer(self)
         self._timer.setInterval(_POLL_MS)
@@ -116,6 +125,7 @@ class Desk(QObject):
 
     def _start(self, then: Callable[[Any], None], function: Callable[..., Any], *a: Any) -> None:
         self._put_aside()
+        self._importing = function is _import
         self._then = then
         self.job = run_in_background(function, *a)
         self._timer.start()
@@ -131,7 +141,7 @@ class Desk(QObject):
         if not job.done:
             return
         self._timer.stop()
-        self.job = None
+        self.job, self._importing = None, False
         self.worked.emit("", 0, 0)
         error = job.error
         if job.cancelled or isinstance(error, Cancelled):
@@ -158,13 +168,19 @@ class Desk(QObject):
         if self.job is not None:
             self.job.cancel()
 
+    def _must_wait(self) -> bool:
+        """Whether files are being brought in; says so."""
+        if self._importing:
+            self.failed.emit("Files are being brought in: try again when they are there.")
+        return self._importing
+
     def _put_aside(self) -> bool:
         """End the work under way at once, without a word; True where there was any."""
         if self.job is None:
             return False
         self.job.cancel()
         self.job.wait(30.0)
-        self.job = None
+        self.job, self._importing = None, False
         self._timer.stop()
         self.worked.emit("", 0, 0)
         return True
@@ -176,12 +192,22 @@ class Desk(QObject):
         if path.is_dir():
             folder = Path(tempfile.mkdtemp(prefix="coatgui-"))
 
-            def opened(file: CampaignFile) -> None:
-                self._take(file, folder)
+            def opened(found: CampaignFile | DryRun) -> None:
+                if isinstance(found, CampaignFile):
+                    self._take(found, folder)
+                else:
+                    shutil.rmtree(folder, ignore_errors=True)
+                    self.offered.emit(path, found)
 
             self._start(opened, _open_folder, path, folder / f"{path.name or 'campaign'}.coatgui")
         else:
             self._start(lambda file: self._take(file, None), _open_file, path)
+
+    def create(self, found: Found, title: str) -> None:
+        """Make a new campaign, not saved yet, of what was found."""
+        folder = Path(tempfile.mkdtemp(prefix="coatgui-"))
+        target = folder / f"{title.replace('/', '-')}.coatgui"
+        self._start(lambda file: self._take(file, folder), _create, found, title, target)
 
     def _take(self, file: CampaignFile, folder: Path | None) -> None:
         self.close()
@@ -201,7 +227,7 @@ class Desk(QObject):
 
     def save_as(self, path: Path) -> None:
         """Keep the campaign under another name and go on with that file."""
-        if self.file is None:
+        if self.file is None or self._must_wait():
             return
         if self.is_saved and self.file.path == path.absolute():
             self.told.emit(f"{path.name} holds every edit already.")
@@ -235,6 +261,8 @@ class Desk(QObject):
 
     def judge(self) -> None:
         """Assess the campaign in the background."""
+        if self._importing:
+            return  # judging follows by itself
         if self.file is not None and self.file.campaign.readings:
             self._stale, self._halted = True, False
             self._start(self._judged, _assess, self.file.campaign, self.file)
@@ -265,6 +293,8 @@ class Desk(QObject):
             self._change(self.file.redo, "Done again: {}")
 
     def _change(self, make: Callable[[], Change | None], words: str) -> None:
+        if self._must_wait():
+            return
         try:
             change = make()
         except CampaignFileError as error:
@@ -283,20 +313,18 @@ class Desk(QObject):
         self.told.emit(words)
         self.judge()
 
-    def bring_in(self, paths: Sequence[Path]) -> None:
-        """Add files and folders to the campaign, or start one from them where there is none."""
-        if self.file is None and len(paths) == 1:
-            self.open(paths[0])
-            return
-        if self.file is None:
-            self.failed.emit("Open a folder or a campaign first, then drop files onto it.")
+    def import_found(self, found: Found) -> None:
+        """Add what was found to the campaign, in the background, as one operation."""
+        if self.file is None or self._must_wait():
             return
 
-        def read(found: list[Found]) -> None:
-            for each in found:
-                self.edit(operations.import_found, each)
+        def done(change: Change) -> None:
+            if change.kinds:
+                self._changed(change.name)
+            else:
+                self.told.emit(change.name)
 
-        self._start(read, _read, list(paths))
+        self._start(done, _import, self.file, found)
 
     # --- selection and output --------------------------------------------------------------
 

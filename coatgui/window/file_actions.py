@@ -6,11 +6,12 @@ from __future__ import annotations
 from pathlib import Path
 
 from PySide6.QtCore import QSettings
-from PySide6.QtWidgets import QFileDialog, QMainWindow, QMenu
+from PySide6.QtWidgets import QApplication, QFileDialog, QMainWindow, QMenu
 
 from coatgui.shipped import sample_panels
 from coatgui.window.asking import Leave, file_to_write, how_to_leave
 from coatgui.window.desk import Desk
+from coatgui.window.incoming import Incoming
 from coatgui.window.welcome import Trouble
 
 _FILES = "Spectra and lists (*.csv *.txt *.dat *.tsv *.xlsx)"
@@ -22,10 +23,15 @@ class FileActions:
     """The actions on files, for one window."""
 
     def __init__(
-        self, window: QMainWindow, desk: Desk, settings: QSettings, trouble: Trouble
+        self,
+        window: QMainWindow,
+        desk: Desk,
+        incoming: Incoming,
+        settings: QSettings,
+        trouble: Trouble,
     ) -> None:
-        self._window, self.desk, self.settings = window, desk, settings
-        self.trouble = trouble
+        self._window, self.desk, self.incoming = window, desk, incoming
+        self.settings, self.trouble = settings, trouble
 
     def may_leave(self) -> bool:
         """Whether the campaign may be put away: asks where edits would be lost."""
@@ -67,7 +73,10 @@ class FileActions:
             self._window, "Spectra to bring in", self._folder(), _FILES
         )
         if names:
-            self.desk.bring_in([Path(name) for name in names])
+            self.incoming.bring_in([Path(name) for name in names])
+
+    def paste_table(self) -> None:
+        self.incoming.paste(QApplication.clipboard().text())
 
     def _folder(self) -> str:
         """Where the last file was opened or written."""

@@ -24,22 +24,26 @@ from PySide6.QtWidgets import (
 )
 
 from coatgui.assessment.cautions import cautions
+from coatgui.campaign import CampaignFile
 from coatgui.window import palette
 from coatgui.window.actions import ACTIONS, Entry
 from coatgui.window.asking import say_plainly
 from coatgui.window.desk import Desk
+from coatgui.window.dry_run_page import DryRunPage
 from coatgui.window.exposure_strip import ExposureStrip
 from coatgui.window.facts import FactsView, facts
 from coatgui.window.figure_actions import FigureActions
 from coatgui.window.file_actions import FileActions
+from coatgui.window.incoming import Incoming
 from coatgui.window.places.course_place import CoursePlace
 from coatgui.window.places.doubts_place import DoubtsPlace
 from coatgui.window.places.map_place import MapPlace
 from coatgui.window.places.place import Place
 from coatgui.window.places.reading_place import ReadingPlace
 from coatgui.window.project_tree import ProjectTree
-from coatgui.window.welcome import Trouble, Welcome
+from coatgui.window.welcome import Trouble, Waiting, Welcome
 
+_WELCOME, _WORK, _PROPOSALS = range(3)
 _UNSAVED = "not saved yet"
 
 
@@ -54,8 +58,10 @@ class MainWindow(QMainWindow):
         self.resize(1280, 800)
         self._actions: list[tuple[Entry, QAction]] = []
         self._began = 0.0
+        self._shown: CampaignFile | None = None
         self.trouble = Trouble()
-        self.files = FileActions(self, self.desk, settings, self.trouble)
+        self.incoming = Incoming(self.desk, self)
+        self.files = FileActions(self, self.desk, self.incoming, settings, self.trouble)
         self.figures = FigureActions(self.desk, self.files, self.trouble, self.open_place)
         self._build_menus()
         self.pages = QStackedWidget()
@@ -63,7 +69,9 @@ class MainWindow(QMainWindow):
         column = QVBoxLayout(middle)
         column.setContentsMargins(0, 0, 0, 0)
         column.setSpacing(0)
+        self.waiting = Waiting()
         column.addWidget(self.trouble)
+        column.addWidget(self.waiting)
         column.addWidget(self.pages, 1)
         self.setCentralWidget(middle)
         self.welcome = Welcome(
@@ -76,6 +84,12 @@ class MainWindow(QMainWindow):
         self.welcome.picked.connect(lambda name: self.open_path(Path(name)))
         self.pages.addWidget(self.welcome)
         self.pages.addWidget(self._work())
+        self.dry_run = DryRunPage(self.incoming, self.tone)
+        self.dry_run.taken.connect(self.take_proposals)
+        self.dry_run.left.connect(self.set_proposals_aside)
+        self.waiting.look.connect(self.show_proposals)
+        self.pages.addWidget(self.dry_run)
+        self.incoming.changed.connect(self.show_proposals)
         self._build_status()
         self.desk.campaign_changed.connect(self._campaign_changed)
         self.desk.assessed.connect(self._campaign_changed)
@@ -172,7 +186,11 @@ class MainWindow(QMainWindow):
 
     def _campaign_changed(self) -> None:
         file = self.desk.file
-        self.pages.setCurrentIndex(0 if file is None else 1)
+        if self.pages.currentIndex() != _PROPOSALS:
+            self.pages.setCurrentIndex(_WELCOME if file is None else _WORK)
+        if file is not self._shown:
+            self._shown = file
+            self.set_proposals_aside()
         title = "coatgui"
         if file is not None:
             title = f"{file.campaign.title} · coatgui"
@@ -244,6 +262,27 @@ class MainWindow(QMainWindow):
     def open_path(self, path: Path) -> None:
         self.files.open_path(path)
 
+    def show_proposals(self) -> None:
+        """Show what the files on their way would become, or what is open where there are none."""
+        if self.incoming.is_there:
+            self.waiting.hide()
+            self.pages.setCurrentIndex(_PROPOSALS)
+        else:
+            self.set_proposals_aside()
+
+    def take_proposals(self) -> None:
+        """Bring in what is proposed; where that makes another campaign, ask first."""
+        if not self.incoming.title or self.files.may_leave():
+            self.incoming.take()
+
+    def set_proposals_aside(self) -> None:
+        """Go back to the campaign; proposals stay, and a quiet line says so."""
+        self.pages.setCurrentIndex(_WELCOME if self.desk.file is None else _WORK)
+        if self.incoming.is_there:
+            self.waiting.say(f"Files wait to be brought in: {self.incoming.summary()}.", "Look")
+        else:
+            self.waiting.hide()
+
     def judge_again(self) -> None:
         self.desk.judge()
 
@@ -307,6 +346,7 @@ class MainWindow(QMainWindow):
         for place in self.places:
             place.paint_in(self.tone)
         self.project.paint_in(self.tone)
+        self.dry_run.paint_in(self.tone)
         self.strip.tone = self.tone
         self.strip.update()
 
@@ -321,15 +361,18 @@ class MainWindow(QMainWindow):
 
     def dropEvent(self, event: QDropEvent) -> None:
         paths = [Path(url.toLocalFile()) for url in event.mimeData().urls() if url.isLocalFile()]
-        is_campaign = len(paths) == 1 and paths[0].suffix == ".coatgui"
-        if is_campaign or (len(paths) == 1 and self.desk.file is None):
-            self.open_path(paths[0])
+        alone = paths[0] if len(paths) == 1 else Path()
+        if alone.suffix == ".coatgui" or (
+            self.desk.file is None and len(paths) == 1 and alone.is_dir()
+        ):
+            self.open_path(alone)
         elif paths:
-            self.desk.bring_in(paths)
+            self.incoming.bring_in(paths)
 
     def closeEvent(self, event: QCloseEvent) -> None:
         if not self.files.may_leave():
             event.ignore()
             return
+        self.incoming.give_up()
         self.desk.close()
         event.accept()
