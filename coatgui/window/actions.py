@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 @dataclass(frozen=True)
 class Entry:
-    """`method` is the main window's, or of its files or figures; `needs` is what must be there: "",
+    """`method` is the main window's or of one of its helpers; `needs` is what must be there: "",
     campaign, work (something under way), undo or redo."""
 
     menu: str
@@ -28,6 +28,10 @@ ACTIONS = (
           "they are made", "save_as", "campaign"),
     Entry("Campaign", "Bring in files…", "Ctrl+I", "Add spectra to this campaign", "bring_in",
           "campaign"),
+    Entry("Campaign", "Watch a folder…", "", "New spectra in it are told, never taken unasked",
+          "watch_folder", "campaign"),
+    Entry("Campaign", "Stop watching the folder", "", "New files are no longer told",
+          "stop_watching", "campaign"),
     Entry("Campaign", "Write workbook…", "Ctrl+E", "Write the assessment as a workbook",
           "write_workbook", "campaign"),
     Entry("Campaign", "Write data (JSON)…", "", "Write the assessment as data for scripts",
@@ -62,6 +66,10 @@ ACTIONS = (
     Entry("Go", "Next inspection", "Ctrl+Right", "This panel, one inspection later", "later",
           "campaign"),
     Entry("Go", "Previous inspection", "Ctrl+Left", "This panel, one inspection earlier", "earlier",
+          "campaign"),
+    Entry("View", "Where does this number come from?", "Ctrl+H", "From the file to the number",
+          "show_origin", "campaign"),
+    Entry("View", "History", "Ctrl+Shift+H", "What was done, by whom and when", "show_history",
           "campaign"),
     Entry("View", "Light or dark", "Ctrl+L", "Change between light and dark colours", "turn_tone"),
     Entry("Help", "Cautions", "F1", "What the results do not say", "show_cautions"),

@@ -11,58 +11,15 @@ from typing import Any
 
 from PySide6.QtCore import QObject, QTimer, Signal
 
-from coatgui.assessment import assess
-from coatgui.campaign import (
-    CampaignFile,
-    CampaignFileError,
-    Change,
-    Operation,
-    campaign_from_found,
-    operations,
-)
-from coatgui.intake import DryRun, Standing, UnreadableFolder, propose_folder
-from coatgui.jobs import Job, run_in_background, spread_over_processes
+from coatgui.campaign import CampaignFile, CampaignFileError, Change, Operation
+from coatgui.intake import DryRun, UnreadableFolder
+from coatgui.jobs import Job, run_in_background
 from coatgui.output import write_json, write_workbook
-from coatgui.progress import Cancelled, Progress
+from coatgui.progress import Cancelled
 from coatgui.records import Assessment, Campaign, Found, Reading, ReadingAssessment
+from coatgui.window import desk_work as work
 
 _POLL_MS = 60
-
-
-def _assess(campaign: Campaign, file: CampaignFile, progress: Progress) -> Assessment:
-    with spread_over_processes(progress=progress) as spread:
-        return assess(campaign, progress=progress, spread=spread, cache=file)
-
-
-def _open_folder(folder: Path, target: Path, progress: Progress) -> CampaignFile | DryRun:
-    """The campaign, or what is proposed where a person should look first."""
-    run = propose_folder(folder, progress=progress)
-    if run.count(Standing.ASKED) or run.count(Standing.DOUBTFUL):
-        return run
-    return _create(run.found, folder.name, target, progress)
-
-
-def _create(found: Found, title: str, target: Path, progress: Progress) -> CampaignFile:
-    progress.at("Making the campaign", 0, 1)
-    return CampaignFile.create(target, campaign_from_found(found, title), found.raw)
-
-
-def _import(file: CampaignFile, found: Found, progress: Progress) -> Change:
-    progress.at("Bringing in", 0, 1)
-    return file.apply(operations.import_found(file.campaign, found))
-
-
-def _open_file(path: Path, progress: Progress) -> CampaignFile:
-    progress.at("Opening the campaign", 0, 1)
-    return CampaignFile.open(path)
-
-
-def _export(
-    write: Callable[..., None], arguments: tuple[Any, ...], path: Path, progress: Progress
-) -> Path:
-    progress.at("Writing the file", 0, 1)
-    write(*arguments, path)
-    return path
 
 
 class Desk(QObject):
@@ -86,11 +43,12 @@ class Desk(QObject):
         self.assessment: Assessment | None = None
         self.selection = ""
         self.unsaved_folder: Path | None = None
+        self.origin: Path | None = None  # the folder that the campaign was made of just now
         self.job: Job | None = None
         self._then: Callable[[Any], None] | None = None
         self._stale = False  # the assessment is not of the campaign as it is now
         self._halted = False  # a person stopped the judging
-        self._importing = False  # what is being brought in must not be put aside
+        self._importing = False  # the campaign is being changed: not to be put aside
         self._waiting: list[Callable[[], None]] = []
         self._timer = QTimer(self)
         self._timer.setInterval(_POLL_MS)
@@ -125,7 +83,7 @@ class Desk(QObject):
 
     def _start(self, then: Callable[[Any], None], function: Callable[..., Any], *a: Any) -> None:
         self._put_aside()
-        self._importing = function is _import
+        self._importing = function in (work.bring_in, work.walk_to)
         self._then = then
         self.job = run_in_background(function, *a)
         self._timer.start()
@@ -169,9 +127,9 @@ class Desk(QObject):
             self.job.cancel()
 
     def _must_wait(self) -> bool:
-        """Whether files are being brought in; says so."""
+        """Whether the campaign is being changed in the background; says so."""
         if self._importing:
-            self.failed.emit("Files are being brought in: try again when they are there.")
+            self.failed.emit("The campaign is being changed: try again when that is done.")
         return self._importing
 
     def _put_aside(self) -> bool:
@@ -194,24 +152,32 @@ class Desk(QObject):
 
             def opened(found: CampaignFile | DryRun) -> None:
                 if isinstance(found, CampaignFile):
-                    self._take(found, folder)
+                    self._take(found, folder, path)
                 else:
                     shutil.rmtree(folder, ignore_errors=True)
                     self.offered.emit(path, found)
 
-            self._start(opened, _open_folder, path, folder / f"{path.name or 'campaign'}.coatgui")
+            self._start(
+                opened, work.open_folder, path, folder / f"{path.name or 'campaign'}.coatgui"
+            )
         else:
-            self._start(lambda file: self._take(file, None), _open_file, path)
+            self._start(lambda file: self._take(file, None), work.open_file, path)
 
-    def create(self, found: Found, title: str) -> None:
-        """Make a new campaign, not saved yet, of what was found."""
+    def create(self, found: Found, title: str, origin: Path | None) -> None:
+        """Make a new campaign, not saved yet, of what was found (in the folder `origin`)."""
         folder = Path(tempfile.mkdtemp(prefix="coatgui-"))
         target = folder / f"{title.replace('/', '-')}.coatgui"
-        self._start(lambda file: self._take(file, folder), _create, found, title, target)
+        self._start(
+            lambda file: self._take(file, folder, origin),
+            work.create_campaign,
+            found,
+            title,
+            target,
+        )
 
-    def _take(self, file: CampaignFile, folder: Path | None) -> None:
+    def _take(self, file: CampaignFile, folder: Path | None, origin: Path | None = None) -> None:
         self.close()
-        self.file, self.unsaved_folder = file, folder
+        self.file, self.unsaved_folder, self.origin = file, folder, origin
         self._pick_first()
         self.campaign_changed.emit()
         refused = len(file.campaign.refused)
@@ -258,6 +224,7 @@ class Desk(QObject):
         if self.unsaved_folder is not None:
             shutil.rmtree(self.unsaved_folder, ignore_errors=True)
         self.file, self.assessment, self.unsaved_folder, self.selection = None, None, None, ""
+        self.origin = None
 
     def judge(self) -> None:
         """Assess the campaign in the background."""
@@ -265,7 +232,7 @@ class Desk(QObject):
             return  # judging follows by itself
         if self.file is not None and self.file.campaign.readings:
             self._stale, self._halted = True, False
-            self._start(self._judged, _assess, self.file.campaign, self.file)
+            self._start(self._judged, work.judge_campaign, self.file.campaign, self.file)
         elif self.file is not None:
             self._put_aside()
             self.assessment, self._stale = None, False
@@ -291,6 +258,17 @@ class Desk(QObject):
     def redo(self) -> None:
         if self.file is not None:
             self._change(self.file.redo, "Done again: {}")
+
+    def go_to(self, step: int) -> None:
+        """Go back or forward to a step of the history (0: before the first edit)."""
+        if self.file is None or step == (self.file.step or 0) or self._must_wait():
+            return
+
+        def gone(change: Change | None) -> None:
+            if change is not None:
+                self._changed("The campaign is as it was at that step; redo goes forward again.")
+
+        self._start(gone, work.walk_to, self.file, step)
 
     def _change(self, make: Callable[[], Change | None], words: str) -> None:
         if self._must_wait():
@@ -324,7 +302,7 @@ class Desk(QObject):
             else:
                 self.told.emit(change.name)
 
-        self._start(done, _import, self.file, found)
+        self._start(done, work.bring_in, self.file, found)
 
     # --- selection and output --------------------------------------------------------------
 
@@ -358,6 +336,8 @@ class Desk(QObject):
             self.told.emit(f"Written: {where.name}")
 
         if path.suffix == ".json":
-            self._start(written, _export, write_json, (self.assessment,), path)
+            self._start(written, work.export_to, write_json, (self.assessment,), path)
         else:
-            self._start(written, _export, write_workbook, (self.assessment, self.campaign), path)
+            self._start(
+                written, work.export_to, write_workbook, (self.assessment, self.campaign), path
+            )

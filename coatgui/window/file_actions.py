@@ -51,10 +51,13 @@ class FileActions:
             self.settings.setValue("folder", str(path.parent))
             self.desk.open(path)
 
+    def ask_folder(self, title: str) -> Path | None:
+        name = QFileDialog.getExistingDirectory(self._window, title, self._folder())
+        return Path(name) if name else None
+
     def open_folder(self) -> None:
-        name = QFileDialog.getExistingDirectory(self._window, "A folder of spectra", self._folder())
-        if name:
-            self.open_path(Path(name))
+        if folder := self.ask_folder("A folder of spectra"):
+            self.open_path(folder)
 
     def open_campaign(self) -> None:
         name, _ = QFileDialog.getOpenFileName(

@@ -258,10 +258,11 @@ class Incoming(QObject):
         list of refusals."""
         if self.busy or not self.runs:
             return
-        found, title = together(self.runs), self.title
+        found, title, first = together(self.runs), self.title, self.batches[0].folder
+        origin = first if len(self.batches) == 1 else None
         self.give_up()
         if title:
-            self.desk.create(found, title)
+            self.desk.create(found, title, origin)
         else:
             self.desk.import_found(found)
 

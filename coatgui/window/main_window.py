@@ -27,11 +27,10 @@ from coatgui.assessment.cautions import cautions
 from coatgui.campaign import CampaignFile
 from coatgui.window import palette
 from coatgui.window.actions import ACTIONS, Entry
+from coatgui.window.arrivals import PROPOSALS, WELCOME, WORK, Arrivals
 from coatgui.window.asking import say_plainly
 from coatgui.window.desk import Desk
-from coatgui.window.dry_run_page import DryRunPage
 from coatgui.window.exposure_strip import ExposureStrip
-from coatgui.window.facts import FactsView, facts
 from coatgui.window.figure_actions import FigureActions
 from coatgui.window.file_actions import FileActions
 from coatgui.window.incoming import Incoming
@@ -41,9 +40,9 @@ from coatgui.window.places.map_place import MapPlace
 from coatgui.window.places.place import Place
 from coatgui.window.places.reading_place import ReadingPlace
 from coatgui.window.project_tree import ProjectTree
-from coatgui.window.welcome import Trouble, Waiting, Welcome
+from coatgui.window.side_column import SideColumn
+from coatgui.window.welcome import Trouble, Welcome
 
-_WELCOME, _WORK, _PROPOSALS = range(3)
 _UNSAVED = "not saved yet"
 
 
@@ -63,16 +62,11 @@ class MainWindow(QMainWindow):
         self.incoming = Incoming(self.desk, self)
         self.files = FileActions(self, self.desk, self.incoming, settings, self.trouble)
         self.figures = FigureActions(self.desk, self.files, self.trouble, self.open_place)
-        self._build_menus()
         self.pages = QStackedWidget()
         middle = QWidget()
         column = QVBoxLayout(middle)
         column.setContentsMargins(0, 0, 0, 0)
         column.setSpacing(0)
-        self.waiting = Waiting()
-        column.addWidget(self.trouble)
-        column.addWidget(self.waiting)
-        column.addWidget(self.pages, 1)
         self.setCentralWidget(middle)
         self.welcome = Welcome(
             [
@@ -84,12 +78,14 @@ class MainWindow(QMainWindow):
         self.welcome.picked.connect(lambda name: self.open_path(Path(name)))
         self.pages.addWidget(self.welcome)
         self.pages.addWidget(self._work())
-        self.dry_run = DryRunPage(self.incoming, self.tone)
-        self.dry_run.taken.connect(self.take_proposals)
-        self.dry_run.left.connect(self.set_proposals_aside)
-        self.waiting.look.connect(self.show_proposals)
-        self.pages.addWidget(self.dry_run)
-        self.incoming.changed.connect(self.show_proposals)
+        self.arrivals = Arrivals(
+            self.desk, self.incoming, self.files, settings, self.tone, self.pages
+        )
+        self.dry_run, self.watching = self.arrivals.page, self.arrivals.watching
+        for line in (self.trouble, self.arrivals.waiting, self.arrivals.arrived):
+            column.addWidget(line)
+        column.addWidget(self.pages, 1)
+        self._build_menus()
         self._build_status()
         self.desk.campaign_changed.connect(self._campaign_changed)
         self.desk.assessed.connect(self._campaign_changed)
@@ -103,6 +99,7 @@ class MainWindow(QMainWindow):
 
     def _build_menus(self) -> None:
         menus: dict[str, QMenu] = {}
+        holders = (self, self.files, self.figures, self.arrivals, self.side)
         for entry in ACTIONS:
             menu = menus.get(entry.menu)
             if menu is None:
@@ -112,7 +109,7 @@ class MainWindow(QMainWindow):
             action.setStatusTip(entry.tip)
             if entry.shortcut:
                 action.setShortcut(QKeySequence(entry.shortcut))
-            holder = next(h for h in (self, self.files, self.figures) if hasattr(h, entry.method))
+            holder = next(h for h in holders if hasattr(h, entry.method))
             method: Callable[[], object] = getattr(holder, entry.method)
             action.triggered.connect(lambda _checked=False, call=method: call())
             menu.addAction(action)
@@ -160,8 +157,9 @@ class MainWindow(QMainWindow):
         self.strip.picked.connect(self.desk.select)
         column.addWidget(self.strip)
         splitter.addWidget(middle)
-        self.facts = FactsView()
-        splitter.addWidget(self.facts)
+        self.side = SideColumn(self.desk, self.tone)
+        self.facts = self.side.facts
+        splitter.addWidget(self.side)
         splitter.setSizes([210, 820, 250])
         splitter.setStretchFactor(1, 1)
         self.go(0)
@@ -186,11 +184,11 @@ class MainWindow(QMainWindow):
 
     def _campaign_changed(self) -> None:
         file = self.desk.file
-        if self.pages.currentIndex() != _PROPOSALS:
-            self.pages.setCurrentIndex(_WELCOME if file is None else _WORK)
+        if self.pages.currentIndex() != PROPOSALS:
+            self.pages.setCurrentIndex(WELCOME if file is None else WORK)
         if file is not self._shown:
             self._shown = file
-            self.set_proposals_aside()
+            self.arrivals.set_aside()
         title = "coatgui"
         if file is not None:
             title = f"{file.campaign.title} · coatgui"
@@ -232,7 +230,7 @@ class MainWindow(QMainWindow):
         self._show_facts()
 
     def _show_facts(self) -> None:
-        self.facts.show_facts(facts(self.desk.reading_assessment(), self.desk.assessment))
+        self.side.refresh()
         self.strip.refresh()
 
     def _worked(self, stage: str, done: int, total: int) -> None:
@@ -261,27 +259,6 @@ class MainWindow(QMainWindow):
 
     def open_path(self, path: Path) -> None:
         self.files.open_path(path)
-
-    def show_proposals(self) -> None:
-        """Show what the files on their way would become, or what is open where there are none."""
-        if self.incoming.is_there:
-            self.waiting.hide()
-            self.pages.setCurrentIndex(_PROPOSALS)
-        else:
-            self.set_proposals_aside()
-
-    def take_proposals(self) -> None:
-        """Bring in what is proposed; where that makes another campaign, ask first."""
-        if not self.incoming.title or self.files.may_leave():
-            self.incoming.take()
-
-    def set_proposals_aside(self) -> None:
-        """Go back to the campaign; proposals stay, and a quiet line says so."""
-        self.pages.setCurrentIndex(_WELCOME if self.desk.file is None else _WORK)
-        if self.incoming.is_there:
-            self.waiting.say(f"Files wait to be brought in: {self.incoming.summary()}.", "Look")
-        else:
-            self.waiting.hide()
 
     def judge_again(self) -> None:
         self.desk.judge()
@@ -347,6 +324,7 @@ class MainWindow(QMainWindow):
             place.paint_in(self.tone)
         self.project.paint_in(self.tone)
         self.dry_run.paint_in(self.tone)
+        self.side.paint_in(self.tone)
         self.strip.tone = self.tone
         self.strip.update()
 
@@ -373,6 +351,6 @@ class MainWindow(QMainWindow):
         if not self.files.may_leave():
             event.ignore()
             return
-        self.incoming.give_up()
+        self.arrivals.close()
         self.desk.close()
         event.accept()

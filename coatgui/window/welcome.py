@@ -111,7 +111,7 @@ class Waiting(QFrame):
         row = QHBoxLayout(self)
         row.setContentsMargins(12, 4, 8, 4)
         self.words = plain_label()
-        self.button = QPushButton()
+        self.button = QPushButton("Look")
         self.button.setAccessibleDescription("Show what waits")
         self.button.clicked.connect(self.look)
         self.dismiss = QPushButton("Not now")

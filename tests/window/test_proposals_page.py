@@ -147,9 +147,9 @@ def test_added_files_are_one_step_that_can_be_undone(
     # Nothing is blocked: set aside, look at the campaign, come back by the quiet line.
     QTest.mouseClick(page.back, LEFT)
     assert window.pages.currentIndex() == 1
-    assert window.waiting.isVisible()
+    assert window.arrivals.waiting.isVisible()
     window.go(2)
-    QTest.mouseClick(window.waiting.button, LEFT)
+    QTest.mouseClick(window.arrivals.waiting.button, LEFT)
     assert window.pages.currentWidget() is page
 
     pick(window, "left at the end.csv")
