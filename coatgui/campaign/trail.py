@@ -132,8 +132,10 @@ class Trail:
         ).fetchone()
         return row["name"], _changes(row["changes"], entry_id)
 
-    def entries(self) -> tuple[HistoryEntry, ...]:
-        """Every line, oldest first."""
+    def entries(self, with_changes: bool = True) -> tuple[HistoryEntry, ...]:
+        """Every line, oldest first. The rows of a large import are large, too: without them,
+        `changes` is empty everywhere."""
+        changes = "changes" if with_changes else "'[]' AS changes"
         return tuple(
             HistoryEntry(
                 entry_id=row["entry_id"],
@@ -147,7 +149,10 @@ class Trail:
                 reason=row["reason"],
                 chain=row["chain"],
             )
-            for row in self._connection.execute("SELECT * FROM history ORDER BY entry_id")
+            for row in self._connection.execute(
+                f"SELECT entry_id, action, of_entry, name, who, when_utc, {changes} "
+                "FROM history ORDER BY entry_id"
+            )
         )
 
     def _state(self, entry_id: int) -> str:

@@ -7,8 +7,8 @@ from dataclasses import dataclass
 
 @dataclass(frozen=True)
 class Entry:
-    """`method` is the main window's; `needs` is what must be there: "", campaign, work
-    (something under way), undo or redo."""
+    """`method` is the main window's or of one of its helpers; `needs` is what must be there: "",
+    campaign, work (something under way), undo or redo."""
 
     menu: str
     name: str
@@ -28,6 +28,10 @@ ACTIONS = (
           "they are made", "save_as", "campaign"),
     Entry("Campaign", "Bring in files…", "Ctrl+I", "Add spectra to this campaign", "bring_in",
           "campaign"),
+    Entry("Campaign", "Watch a folder…", "", "New spectra in it are told, never taken unasked",
+          "watch_folder", "campaign"),
+    Entry("Campaign", "Stop watching the folder", "", "New files are no longer told",
+          "stop_watching", "campaign"),
     Entry("Campaign", "Write workbook…", "Ctrl+E", "Write the assessment as a workbook",
           "write_workbook", "campaign"),
     Entry("Campaign", "Write data (JSON)…", "", "Write the assessment as data for scripts",
@@ -47,6 +51,8 @@ ACTIONS = (
           "copy_picture", "campaign"),
     Entry("Edit", "Copy the data as a table", "Ctrl+Shift+T", "What the plot shows, for a "
           "spreadsheet", "copy_table", "campaign"),
+    Entry("Edit", "Paste a table of a spectrum", "Ctrl+V", "From the clipboard; it is shown before "
+          "it is taken", "paste_table"),
     Entry("Edit", "Rename", "F2", "Another name for the row picked in the tree", "rename",
           "campaign"),
     Entry("Edit", "Remove from the campaign", "", "Take out the row picked in the tree", "remove",
@@ -66,6 +72,10 @@ ACTIONS = (
     Entry("Go", "Next inspection", "Ctrl+Right", "This panel, one inspection later", "later",
           "campaign"),
     Entry("Go", "Previous inspection", "Ctrl+Left", "This panel, one inspection earlier", "earlier",
+          "campaign"),
+    Entry("View", "Where does this number come from?", "Ctrl+H", "From the file to the number",
+          "show_origin", "campaign"),
+    Entry("View", "History", "Ctrl+Shift+H", "What was done, by whom and when", "show_history",
           "campaign"),
     Entry("View", "Light or dark", "Ctrl+L", "Change between light and dark colours", "turn_tone"),
     Entry("Help", "Cautions", "F1", "What the results do not say", "show_cautions"),

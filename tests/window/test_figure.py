@@ -93,14 +93,14 @@ def test_a_plot_is_saved(full: MainWindow, tmp_path: Path, ending: str) -> None:
 
 def test_a_picture_that_cannot_be_written_is_said(full: MainWindow, tmp_path: Path) -> None:
     full.go(1)
-    from coatgui.window import main_window
+    from coatgui.window import file_actions
 
-    original = main_window.file_to_write
-    main_window.file_to_write = lambda *_: tmp_path / "no such folder" / "a.svg"
+    original = file_actions.file_to_write
+    file_actions.file_to_write = lambda *_: tmp_path / "no such folder" / "a.svg"
     try:
-        full.save_picture()
+        full.figures.save_picture()
     finally:
-        main_window.file_to_write = original
+        file_actions.file_to_write = original
     assert "a.svg could not be written" in full.trouble.words.text()
 
 
