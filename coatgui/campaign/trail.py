@@ -150,7 +150,7 @@ class Trail:
                 chain=row["chain"],
             )
             for row in self._connection.execute(
-                f"SELECT entry_id, action, of_entry, name, who, when_utc, {changes} "
+                f"SELECT entry_id, action, of_entry, name, who, when_utc, reason, chain, {changes} "
                 "FROM history ORDER BY entry_id"
             )
         )
