@@ -13,6 +13,7 @@ from coatgui import __version__
 
 if TYPE_CHECKING:
     from coatgui.campaign import CampaignFile
+    from coatgui.intake import DryRun
     from coatgui.progress import Progress
     from coatgui.records import Campaign, Found
 
@@ -49,10 +50,12 @@ def _parser() -> argparse.ArgumentParser:
     parser = _Parser(
         prog="coatgui",
         description="Judges coated test panels from impedance spectra.",
-        epilog="Without 'assess' or 'check', the window opens on the campaign or folder given.",
+        epilog="Without one of the words 'assess', 'add', 'check', the window opens.",
     )
     parser.add_argument("--version", action="version", version=f"coatgui {__version__}")
-    parser.add_argument("target", nargs="?", help="a campaign file, a folder, 'assess' or 'check'")
+    parser.add_argument(
+        "target", nargs="?", help="a campaign file, a folder, 'assess', 'add' or 'check'"
+    )
     return parser
 
 
@@ -93,6 +96,21 @@ def _assess_parser() -> argparse.ArgumentParser:
         )
     parser.add_argument("--workers", type=int, metavar="N", help="processes to share the work")
     parser.add_argument("--quiet", action="store_true", help="print no table and no progress")
+    parser.add_argument(
+        "--dry-run", action="store_true", help="only say what each file of a folder would become"
+    )
+    return parser
+
+
+def _add_parser() -> argparse.ArgumentParser:
+    parser = _Parser(
+        prog="coatgui add", description="Add a folder's readings to a campaign, as one edit."
+    )
+    parser.add_argument("campaign", type=Path, help="a campaign file")
+    parser.add_argument("source", type=Path, help="a folder of spectra")
+    parser.add_argument(
+        "--dry-run", action="store_true", help="only say what each file would become"
+    )
     return parser
 
 
@@ -112,6 +130,8 @@ def main(argv: Sequence[str] | None = None) -> int:
     try:
         if arguments[:1] == ["assess"]:
             return _assess(_assess_parser().parse_args(arguments[1:]))
+        if arguments[:1] == ["add"]:
+            return _add(_add_parser().parse_args(arguments[1:]))
         if arguments[:1] == ["check"]:
             return _check(_check_parser().parse_args(arguments[1:]).file)
         target = _parser().parse_args(arguments).target
@@ -153,6 +173,53 @@ def _check(file: Path) -> int:
         return NOTHING
     print(f"{file}: sound")
     return DONE
+
+
+def _propose(folder: Path, areas_cm2: dict[str, float] | None = None) -> DryRun:
+    """What each file of a folder would become. Raises Stop."""
+    from coatgui.intake import Told, UnreadableFolder, propose_folder
+
+    try:
+        return propose_folder(folder, told=Told(areas_cm2=areas_cm2 or {}))
+    except UnreadableFolder as error:
+        raise Stop(str(error)) from None
+
+
+def _print_table(run: DryRun) -> None:
+    from coatgui.output.text import one_line
+
+    for line in run.table().splitlines():
+        indent = len(line) - len(line.lstrip())
+        print(f"{'':{indent}}{one_line(line)}")
+
+
+def _standing(run: DryRun) -> int:
+    if not run.found.readings:
+        return NOTHING
+    return SOME_REFUSED if run.found.refused else DONE
+
+
+def _add(options: argparse.Namespace) -> int:
+    """Add a folder to a campaign file in one undoable edit."""
+    from coatgui.campaign import CampaignFile, CampaignFileError, OperationRefused, operations
+    from coatgui.output.text import one_line
+
+    try:
+        with CampaignFile.open(options.campaign) as file:
+            areas = {p.name: p.area_cm2 for p in file.campaign.panels if p.area_cm2 is not None}
+            run = _propose(options.source, areas)
+            operation = operations.import_found(file.campaign, run.found)
+            if options.dry_run:
+                _print_table(run)
+                print(f"Would be done: {one_line(operation.name)}.")
+            else:
+                file.apply(operation)
+                print(f"{one_line(operation.name)}.")
+    except (CampaignFileError, OperationRefused) as error:
+        raise Stop(str(error)) from None
+    for refusal in run.found.refused:
+        _say(f"refused {refusal.file}: {refusal.reason}")
+    return _standing(run)
 
 
 def _outputs(options: argparse.Namespace) -> None:
@@ -225,6 +292,10 @@ def _assess(options: argparse.Namespace) -> int:
     source: Path = options.source
     if not source.exists():
         raise Stop(f"there is no '{source}': check the path.")
+    if options.dry_run:
+        run = _propose(source)
+        _print_table(run)
+        return _standing(run)
     shown = _Shown(options.quiet)
     progress = Progress(shown)
     try:

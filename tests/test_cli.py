@@ -146,3 +146,33 @@ def test_the_version(capsys: pytest.CaptureFixture[str]) -> None:
         main(["--version"])
     assert stopped.value.code == 0
     assert __version__ in capsys.readouterr().out
+
+
+def test_a_dry_run_says_what_each_file_would_become(capsys: pytest.CaptureFixture[str]) -> None:
+    assert main(["assess", str(sample_panels()), "--dry-run"]) == 1
+    said = capsys.readouterr().out
+    assert "K1_24h.csv: a reading of K1 at 24 h, 57 points" in said
+    assert said.splitlines()[-1].startswith("107 ready, 3 refused")
+
+
+def test_a_folder_is_added_in_one_edit(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    from coatgui.campaign import CampaignFile, campaign_from_found
+    from coatgui.intake import read_folder
+
+    folder, path = tmp_path / "week", tmp_path / "c.coatgui"
+    folder.mkdir()
+    sample = sample_panels()
+    (folder / "K1_1h.csv").write_bytes((sample / "K1_1h.csv").read_bytes())
+    found = read_folder(folder)
+    CampaignFile.create(path, campaign_from_found(found, "T"), found.raw).close()
+    (folder / "K1_8h.csv").write_bytes((sample / "K1_8h.csv").read_bytes())
+    assert main(["add", str(path), str(folder), "--dry-run"]) == 0
+    said = "Import 1 reading; 1 reading there already."
+    assert f"Would be done: {said}" in capsys.readouterr().out
+    assert main(["add", str(path), str(folder)]) == 0
+    assert capsys.readouterr().out.strip() == said
+    with CampaignFile.open(path) as file:
+        assert [r.exposure_h for r in file.campaign.readings] == [1.0, 8.0]
+        assert file.undo_name == said.rstrip(".")
+    assert main(["add", str(path), str(tmp_path / "nowhere")]) == 2
+    assert main(["add", str(tmp_path / "none.coatgui"), str(folder)]) == 2

@@ -172,7 +172,7 @@ def test_film_capacitance_is_recovered(assessment: Assessment) -> None:
     for reading in assessment.readings:
         known = TRUTH["readings"][name_of(reading)]
         quantity = reading.coating_capacitance
-        if quantity is None or name_of(reading) in FAULTY or "at 10000 Hz" not in quantity.method:
+        if quantity is None or name_of(reading) in FAULTY or "at 10 kHz" not in quantity.method:
             continue
         total += 1
         assert quantity.low is not None

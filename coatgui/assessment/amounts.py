@@ -7,7 +7,6 @@ the standard error of its natural logarithm. The other way round, s = ln(high/lo
 from __future__ import annotations
 
 import math
-from dataclasses import replace
 
 from coatgui.assessment.rules import rule
 from coatgui.records import Bound, Parameter, Quantity
@@ -41,31 +40,47 @@ def at_least(bound: float, unit: str, method: str) -> Quantity:
 
 def scaled(quantity: Quantity, factor: float, unit: str) -> Quantity:
     """The quantity times a positive factor, in another unit."""
-    return replace(
-        quantity,
-        value=None if quantity.value is None else quantity.value * factor,
-        low=None if quantity.low is None else quantity.low * factor,
-        high=None if quantity.high is None else quantity.high * factor,
-        unit=unit,
+    value, low, high = quantity.value, quantity.low, quantity.high
+    return Quantity(
+        None if value is None else value * factor,
+        None if low is None else low * factor,
+        None if high is None else high * factor,
+        quantity.bound,
+        unit,
+        quantity.method,
     )
 
 
+def per_area_factor(unit: str, area_cm2: float | None) -> tuple[float, str]:
+    """Factor and new unit by which a quantity is normalised by the area: resistances times it,
+    capacitances divided by it. Quantities of other units, and all of a panel without an area, stay
+    as they are, per specimen."""
+    if area_cm2 is not None:
+        if unit in _TIMES_AREA:
+            return area_cm2, _TIMES_AREA[unit]
+        if unit in _PER_AREA:
+            return 1 / area_cm2, _PER_AREA[unit]
+    return 1.0, unit
+
+
 def per_area(quantity: Quantity, area_cm2: float | None) -> Quantity:
-    """Normalised by the area: resistances times it, capacitances divided by it. Quantities of
-    other units, and all of a panel without an area, stay as they are, per specimen."""
-    if area_cm2 is None:
-        return quantity
-    if quantity.unit in _TIMES_AREA:
-        return scaled(quantity, area_cm2, _TIMES_AREA[quantity.unit])
-    if quantity.unit in _PER_AREA:
-        return scaled(quantity, 1 / area_cm2, _PER_AREA[quantity.unit])
-    return quantity
+    """The quantity normalised by the area, see `per_area_factor`."""
+    factor, unit = per_area_factor(quantity.unit, area_cm2)
+    return quantity if unit == quantity.unit else scaled(quantity, factor, unit)
 
 
 def parameters_per_area(
     parameters: tuple[Parameter, ...], area_cm2: float | None
 ) -> tuple[Parameter, ...]:
-    return tuple(replace(p, quantity=per_area(p.quantity, area_cm2)) for p in parameters)
+    if area_cm2 is None:
+        return parameters
+    found = []
+    for p in parameters:
+        factor, unit = per_area_factor(p.quantity.unit, area_cm2)
+        if unit != p.quantity.unit:
+            p = Parameter(p.symbol, p.meaning, p.layer, scaled(p.quantity, factor, unit))
+        found.append(p)
+    return tuple(found)
 
 
 def held_by_leads(ohm: float, leads_ohm: float | None) -> bool:

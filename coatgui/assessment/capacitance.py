@@ -1,4 +1,4 @@
-"""Capacitances: of film and interface from a fit, and of the film straight from the data.
+"""Capacitances of film and interface from a fit.
 
 A constant-phase element Q (jω)^n is not a capacitor; which capacitance it stands for depends on the
 case, so the law is always named (formulas from memory of the papers, checked by their limit C = Q
@@ -24,28 +24,27 @@ The open leads lie in parallel with the film; their capacitance is taken away fr
 Limits: the gradient of ln C on the logarithms of the parameters, with the fit's covariance. Without
 one, the absolute contributions are added, as if all errors conspired; but where the high frequency
 lies inside the used points, the curve runs through them and cannot miss by more than their scatter.
-
-Straight from the data at one frequency: parallel C = −Z″/(ω|Z|²), series C = −1/(ωZ″), after taking
-away the admittance of the open leads.
 """
 
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
 
-from coatgui.assessment.amounts import from_logarithm, log_deviation, per_area
-from coatgui.assessment.modulus import relative_scatter
+from coatgui.assessment.amounts import NORMAL_95, log_deviation, per_area_factor
+from coatgui.assessment.modulus import relative_scatter, used_points
 from coatgui.assessment.rules import rule
+from coatgui.assessment.words import hertz
 from coatgui.quality import leads_admittance
 from coatgui.records import (
     BoolArray,
     Bound,
     Finding,
     Fit,
-    Parameter,
+    FloatArray,
     Quantity,
     Severity,
     Spectrum,
@@ -53,299 +52,314 @@ from coatgui.records import (
 
 # Symbols of Q, n and the resistance in parallel, for every layer that can belong to a film.
 _FILM_LAYERS = (("Q_c", "n_c", "R_po"), ("Q_1", "n_1", "R_1"), ("Q_2", "n_2", "R_2"))
-_INTERFACE = ("Q_dl", "n_dl")
-
-
-@dataclass(frozen=True, slots=True)
-class _Layer:
-    q: Parameter
-    n: Parameter
-    r: Parameter | None
-
-
-def _named(fit: Fit, symbol: str) -> Parameter | None:
-    return next((p for p in fit.parameters if p.symbol == symbol), None)
-
-
-def _film_layers(fit: Fit) -> list[_Layer]:
-    layers = []
-    for q_symbol, n_symbol, r_symbol in _FILM_LAYERS:
-        q, n = _named(fit, q_symbol), _named(fit, n_symbol)
-        if q is not None and n is not None and q.quantity.value and n.quantity.value:
-            layers.append(_Layer(q, n, _named(fit, r_symbol)))
-    return layers
-
-
-def has_film(fit: Fit) -> bool:
-    """Whether the model has a film whose capacitance can be asked for at all."""
-    return bool(_film_layers(fit))
-
-
-def small_exponent_finding(fit: Fit) -> Finding | None:
-    """A doubt where a film layer's n is too small for its Q to be turned into a capacitance."""
-    smallest = min((layer.n.quantity.value or 0.0 for layer in _film_layers(fit)), default=1.0)
-    if smallest >= rule("capacitance.smallest_exponent"):
-        return None
-    return Finding(
-        "exponent_too_small",
-        Severity.DOUBT,
-        f"The film's constant-phase exponent is {smallest:.2f}; below "
-        f"{rule('capacitance.smallest_exponent'):g} it is not turned into a capacitance.",
-        evidence=(("n", smallest),),
-    )
-
-
-def turning_frequency(fit: Fit, spectrum: Spectrum) -> float | None:
-    """(RQ)^(-1/n)/2π in Hz, where the film's resistance takes over from its capacitance; None where
-    it does not lie among the used points, the data do not hold R from both sides, or the film is
-    not a single layer."""
-    layers = _film_layers(fit)
-    if len(layers) != 1 or layers[0].r is None:
-        return None
-    q, n, r = layers[0].q.quantity, layers[0].n.quantity, layers[0].r.quantity
-    if r.bound is not Bound.TWO_SIDED or not (q.value and n.value and r.value):
-        return None
-    turning = float((r.value * q.value) ** (-1 / n.value) / (2 * math.pi))
-    used = spectrum.frequency_hz[fit.used]
-    inside = bool(used.size) and float(used[-1]) < turning < float(used[0])
-    return turning if inside else None
-
+_LEAST_WEIGHT = 1e-3  # of a parameter in a logarithm, below which its error does not matter
 
 # ---------------------------------------------------------------------------------------------
 # The laws as plain functions
 
 
-def hsu_mansfeld(q: float, n: float, r: float) -> float:
+def hsu_mansfeld(q: FloatArray, n: FloatArray, r: FloatArray) -> FloatArray:
     """C in F from Q in S·sⁿ and the parallel R in Ω."""
-    return float(q ** (1 / n) * r ** ((1 - n) / n))
+    return np.asarray(q ** (1 / n) * r ** ((1 - n) / n))
 
 
-def brug(q: float, n: float, conductance: float) -> float:
+def brug(q: FloatArray, n: FloatArray, conductance: FloatArray) -> FloatArray:
     """C in F from Q in S·sⁿ and `conductance` = 1/R_e + 1/R_ct in S."""
-    return float(q ** (1 / n) * conductance ** ((n - 1) / n))
+    return np.asarray(q ** (1 / n) * conductance ** ((n - 1) / n))
 
 
-def at_frequency(q: float, n: float, frequency_hz: float) -> float:
+def at_frequency(q: FloatArray, n: FloatArray, frequency_hz: float) -> FloatArray:
     """C in F that a constant-phase element shows at one frequency."""
-    return float(q * math.sin(n * math.pi / 2) * (2 * math.pi * frequency_hz) ** (n - 1))
+    omega = 2 * math.pi * frequency_hz
+    return np.asarray(q * np.sin(n * math.pi / 2) * omega ** (n - 1))
 
 
 # ---------------------------------------------------------------------------------------------
-# From a fit
+# From fits
 
 
-def film_capacitance(
-    fit: Fit,
-    spectrum: Spectrum,
-    frequency_hz: float,
-    area_cm2: float | None,
-    open_lead: Spectrum | None = None,
-) -> Quantity | None:
-    """The film's capacitance at one frequency, F/cm² (F without area); stacked layers in series.
+@dataclass(frozen=True, slots=True)
+class _Layer:
+    """Columns of Q, n and, where there is one, the resistance in parallel."""
 
-    None where the model has no film, an n is below 0.7, or no limits can be given.
-    """
-    layers = _film_layers(fit)
-    if not layers or small_exponent_finding(fit) is not None:
-        return None
-    value, gradient, method = _at_high_frequency(layers, frequency_hz)
-    deviation = _deviation(fit, gradient)
-    if fit.log_covariance is None:
-        used = spectrum.frequency_hz[fit.used]
-        if used.size and used[-1] <= frequency_hz <= used[0]:
-            scatter = relative_scatter(spectrum, fit.used, fit, frequency_hz)
-            deviation = scatter if deviation is None else min(scatter, deviation)
-    return _without_leads(value, deviation, method, frequency_hz, area_cm2, open_lead)
+    q: int
+    n: int
+    r: int | None
 
 
-def hsu_mansfeld_capacitance(
-    fit: Fit, spectrum: Spectrum, area_cm2: float | None, open_lead: Spectrum | None = None
-) -> Quantity | None:
-    """The film's capacitance by Hsu and Mansfeld, F/cm² (F without area); None where the film's
-    resistance does not turn over inside the window or its n is below 0.7."""
-    turning = turning_frequency(fit, spectrum)
-    if turning is None or small_exponent_finding(fit) is not None:
-        return None
-    value, gradient, method = _by_hsu_mansfeld(_film_layers(fit)[0])
-    return _without_leads(value, _deviation(fit, gradient), method, turning, area_cm2, open_lead)
+class _Alike:
+    """Fits whose parameters are the same and held by the data in the same way: their values (m, p)
+    and the covariance of their logarithms (m, p, p), or None."""
 
+    def __init__(self, places: Sequence[int], fits: Sequence[Fit]) -> None:
+        self.places = places
+        self.fits = fits
+        self.like = fits[0].parameters
+        self.column = {p.symbol: i for i, p in enumerate(self.like)}
+        self.values = np.array([[p.quantity.value or 0.0 for p in f.parameters] for f in fits])
+        known = [f.log_covariance for f in fits if f.log_covariance is not None]
+        self.covariance = np.array(known) if known else None
+        self.layers = [
+            _Layer(self.column[q], self.column[n], self.column.get(r))
+            for q, n, r in _FILM_LAYERS
+            if self.has(q) and self.has(n)
+        ]
 
-def _without_leads(
-    value: float,
-    deviation: float | None,
-    method: str,
-    frequency_hz: float,
-    area_cm2: float | None,
-    open_lead: Spectrum | None,
-) -> Quantity | None:
-    """The capacitance less that of the leads at a frequency, keeping its absolute error."""
-    if deviation is None or not math.isfinite(deviation):
-        return None
-    if open_lead is not None:
-        admittance = complex(leads_admittance(open_lead, np.array([frequency_hz]))[0])
-        film = value - admittance.imag / (2 * math.pi * frequency_hz)
-        if film <= 0:
+    def has(self, symbol: str) -> bool:
+        column = self.column.get(symbol)
+        return column is not None and bool(self.like[column].quantity.value)
+
+    def smallest_exponent(self) -> FloatArray:
+        """The least n of the film's layers (m,), 1 where there is no film."""
+        columns = [layer.n for layer in self.layers]
+        return np.asarray(self.values[:, columns].min(axis=1, initial=1.0), dtype=np.float64)
+
+    def turning_hz(self) -> FloatArray | None:
+        """(RQ)^(-1/n)/2π of the film in Hz (m,); None where it is not a single layer with a
+        resistance that the data hold from both sides."""
+        if len(self.layers) != 1 or self.layers[0].r is None:
             return None
-        deviation, value = deviation * value / film, film
-        method += ", without the open leads"
-    return per_area(from_logarithm(value, deviation, "F", method), area_cm2)
+        layer = self.layers[0]
+        r = self.like[self.layers[0].r].quantity
+        if r.bound is not Bound.TWO_SIDED or not r.value:
+            return None
+        q, n, resistance = (self.values[:, column] for column in (layer.q, layer.n, layer.r))
+        return np.asarray((resistance * q) ** (-1 / n) / (2 * math.pi), dtype=np.float64)
+
+    def deviation(self, gradient: dict[int, FloatArray]) -> FloatArray:
+        """Standard error of a logarithm (m,) from its gradient on the parameters' logarithms, by
+        their columns; NaN where it is not known."""
+        columns = list(gradient)
+        slopes = np.stack(list(gradient.values()), axis=-1)
+        if self.covariance is not None:
+            part = self.covariance[:, columns][:, :, columns]
+            variance = np.einsum("mi,mij,mj->m", slopes, part, slopes)
+            return np.sqrt(np.where(variance >= 0, variance, np.nan))
+        own = [[log_deviation(f.parameters[c].quantity) for c in columns] for f in self.fits]
+        return np.asarray(
+            (np.abs(slopes) * np.array(own, dtype=np.float64)).sum(axis=1), dtype=np.float64
+        )
 
 
-def _by_hsu_mansfeld(layer: _Layer) -> tuple[float, dict[str, float], str]:
-    assert layer.r is not None
-    q, n, r = (p.quantity.value or 0.0 for p in (layer.q, layer.n, layer.r))
-    gradient = {
-        layer.q.symbol: 1 / n,
-        layer.n.symbol: -math.log(q * r) / n,
-        layer.r.symbol: (1 - n) / n,
-    }
-    method = "Hsu–Mansfeld, at the film's own turning frequency"
-    return hsu_mansfeld(q, n, r), gradient, method
+def _kind_of(fit: Fit) -> tuple[object, ...]:
+    """The same for fits that can be treated as one array."""
+    kinds: list[object] = [fit.log_covariance is None]
+    for parameter in fit.parameters:
+        q = parameter.quantity
+        fixed = q.value if q.bound is Bound.FIXED else bool(q.value)
+        kinds.append((parameter.symbol, q.bound, fixed, bool(q.low), bool(q.high)))
+    return tuple(kinds)
+
+
+class Capacitances:
+    """The capacitances of many fits; every list is in their order.
+
+    Those of a film are without the open leads' own. F/cm², or F for a panel without an area."""
+
+    def __init__(
+        self,
+        fits: Sequence[Fit],
+        spectra: Sequence[Spectrum],
+        area_cm2: Sequence[float | None],
+        open_lead: Spectrum | None = None,
+    ) -> None:
+        self._fits, self._spectra = fits, spectra
+        self._area_cm2, self._open_lead = area_cm2, open_lead
+        groups: dict[tuple[object, ...], list[int]] = {}
+        for place, fit in enumerate(fits):
+            groups.setdefault(_kind_of(fit), []).append(place)
+        self._groups = [_Alike(own, [fits[i] for i in own]) for own in groups.values()]
+
+    def small_exponents(self) -> list[Finding | None]:
+        """A doubt where a film layer's n is too small for its Q to be turned into a capacitance."""
+        found: list[Finding | None] = [None] * len(self._fits)
+        least = rule("capacitance.smallest_exponent")
+        for group in self._groups:
+            for place, n in zip(group.places, group.smallest_exponent().tolist(), strict=True):
+                if n < least:
+                    found[place] = Finding(
+                        "exponent_too_small",
+                        Severity.DOUBT,
+                        f"The film's constant-phase exponent is {n:.2f}; below {least:g} it is not "
+                        "turned into a capacitance.",
+                        evidence=(("n", n),),
+                    )
+        return found
+
+    def turning_hz(self) -> list[float | None]:
+        """(RQ)^(-1/n)/2π in Hz, where the film's resistance takes over from its capacitance; None
+        where it does not lie among the used points, the data do not hold R from both sides, or the
+        film is not a single layer."""
+        found: list[float | None] = [None] * len(self._fits)
+        for group in self._groups:
+            turning = group.turning_hz()
+            if turning is None:
+                continue
+            for place, frequency_hz in zip(group.places, turning.tolist(), strict=True):
+                used, _ = used_points(self._spectra[place], self._fits[place].used)
+                if used and used[0] < frequency_hz < used[-1]:
+                    found[place] = frequency_hz
+        return found
+
+    def film(self, frequency_hz: float) -> list[Quantity | None]:
+        """The film's capacitance at one frequency; stacked layers in series. None where the model
+        has no film, an n is below 0.7, or no limits can be given."""
+        found: list[Quantity | None] = [None] * len(self._fits)
+        for group in self._groups:
+            if not group.layers:
+                continue
+            value, gradient, method = _at_high_frequency(group, frequency_hz)
+            deviation = group.deviation(gradient)
+            if group.covariance is None:
+                # The curve runs through the points and cannot miss by more than their scatter.
+                scatter = [self._scatter(place, frequency_hz) for place in group.places]
+                deviation = np.fmin(deviation, scatter)
+            deviation[_too_small(group.smallest_exponent())] = np.nan
+            self._without_leads(found, group, value, deviation, method, np.array(frequency_hz))
+        return found
+
+    def _scatter(self, place: int, frequency_hz: float) -> float:
+        spectrum, fit = self._spectra[place], self._fits[place]
+        used = spectrum.frequency_hz[fit.used]
+        if not (used.size and used[-1] <= frequency_hz <= used[0]):
+            return math.nan
+        return relative_scatter(spectrum, fit.used, fit, frequency_hz)
+
+    def hsu_mansfeld(self) -> list[Quantity | None]:
+        """The film's capacitance by Hsu and Mansfeld; None where its resistance does not turn over
+        inside the window or its n is below 0.7."""
+        found: list[Quantity | None] = [None] * len(self._fits)
+        inside = np.array([turning is not None for turning in self.turning_hz()])
+        for group in self._groups:
+            turning = group.turning_hz()
+            if turning is None:
+                continue
+            layer = group.layers[0]
+            assert layer.r is not None
+            q, n, r = (group.values[:, column] for column in (layer.q, layer.n, layer.r))
+            gradient = {layer.q: 1 / n, layer.n: -np.log(q * r) / n, layer.r: (1 - n) / n}
+            deviation = group.deviation(gradient)
+            deviation[_too_small(n) | ~inside[group.places]] = np.nan
+            method = "Hsu–Mansfeld, at the film's own turning frequency"
+            value = hsu_mansfeld(q, n, r)
+            self._without_leads(found, group, value, deviation, method, turning)
+        return found
+
+    def interface(self) -> list[Quantity | None]:
+        """The interface's capacitance by Brug's law, per area of panel.
+
+        R_e is what lies in front: solution and, under a film, the pores. None where the model has
+        no interface, its n is below 0.7, or one of the parameters is not held by the data.
+        """
+        found: list[Quantity | None] = [None] * len(self._fits)
+        for group in self._groups:
+            column = group.column
+            in_front = [column[s] for s in ("R_s", "R_po") if s in column]
+            if not (group.has("Q_dl") and group.has("n_dl") and in_front):
+                continue
+            q, n = (group.values[:, column[s]] for s in ("Q_dl", "n_dl"))
+            ahead = group.values[:, in_front].sum(axis=1)
+            with np.errstate(divide="ignore", invalid="ignore"):
+                conductance = 1 / ahead
+                transfer = column["R_ct"] if group.has("R_ct") else None
+                if transfer is not None:
+                    conductance = conductance + 1 / group.values[:, transfer]
+                power = (n - 1) / n
+                gradient = {column["Q_dl"]: 1 / n, column["n_dl"]: -np.log(q / conductance) / n}
+                for c in in_front:
+                    gradient[c] = -power * group.values[:, c] / ahead**2 / conductance
+                if transfer is not None and group.like[transfer].quantity.bound is Bound.TWO_SIDED:
+                    gradient[transfer] = -power / group.values[:, transfer] / conductance
+            unknown = _too_small(n) | (ahead <= 0)
+            for c, slope in gradient.items():
+                # A resistance that the data leave open matters only as far as it carries weight.
+                weighty = np.abs(slope) > _LEAST_WEIGHT
+                gradient[c] = np.where(weighty, slope, 0.0)
+                if log_deviation(group.like[c].quantity) is None:
+                    unknown = unknown | weighty
+            held = {c: g for c, g in gradient.items() if g.any()}
+            deviation = group.deviation(held)
+            deviation[unknown] = np.nan
+            method = "Brug, with the solution"
+            if len(in_front) > 1:
+                method += " and the pores in front"
+            with np.errstate(divide="ignore", invalid="ignore"):
+                value = brug(q, n, conductance)
+            self._put(found, group, value, deviation, method)
+        return found
+
+    def _without_leads(
+        self,
+        found: list[Quantity | None],
+        group: _Alike,
+        value: FloatArray,
+        deviation: FloatArray,
+        method: str,
+        frequency_hz: FloatArray,
+    ) -> None:
+        """The capacitance less that of the leads at a frequency, keeping its absolute error."""
+        if self._open_lead is not None:
+            admittance = leads_admittance(self._open_lead, frequency_hz)
+            film = value - admittance.imag / (2 * math.pi * frequency_hz)
+            film = np.where(film > 0, film, np.nan)
+            deviation, value = deviation * value / film, film
+            method += ", without the open leads"
+        self._put(found, group, value, deviation, method)
+
+    def _put(
+        self,
+        found: list[Quantity | None],
+        group: _Alike,
+        value: FloatArray,
+        deviation: FloatArray,
+        method: str,
+    ) -> None:
+        """Quantities with their limits, where both value and deviation are numbers."""
+        spread = np.exp(np.minimum(NORMAL_95 * deviation, 300.0))
+        ends = np.stack([value, value / spread, value * spread], axis=-1)
+        told = np.isfinite(ends).all(axis=1) & np.isfinite(deviation)
+        for place, (middle, low, high), known in zip(
+            group.places, ends.tolist(), told.tolist(), strict=True
+        ):
+            if known:
+                factor, unit = per_area_factor("F", self._area_cm2[place])
+                found[place] = Quantity(
+                    middle * factor, low * factor, high * factor, Bound.TWO_SIDED, unit, method
+                )
+
+
+def _too_small(exponent: FloatArray) -> BoolArray:
+    return np.asarray(exponent < rule("capacitance.smallest_exponent"))
+
+
+def has_film(fit: Fit) -> bool:
+    """Whether the model has a film whose capacitance can be asked for at all."""
+    values = {p.symbol: p.quantity.value for p in fit.parameters}
+    return any(values.get(q) and values.get(n) for q, n, _ in _FILM_LAYERS)
 
 
 def _at_high_frequency(
-    layers: list[_Layer], frequency_hz: float
-) -> tuple[float, dict[str, float], str]:
+    group: _Alike, frequency_hz: float
+) -> tuple[FloatArray, dict[int, FloatArray], str]:
+    """Value (m,), its logarithm's gradient and the method's name."""
     omega = 2 * math.pi * frequency_hz
-    elastance = 0.0
-    each: list[tuple[_Layer, float]] = []
-    for layer in layers:
-        q, n = (p.quantity.value or 0.0 for p in (layer.q, layer.n))
-        capacitance = at_frequency(q, n, frequency_hz)
-        each.append((layer, capacitance))
-        elastance += 1 / capacitance
-    value = 1 / elastance
-    gradient: dict[str, float] = {}
-    for layer, capacitance in each:
-        n = layer.n.quantity.value or 0.0
+    each = [
+        at_frequency(group.values[:, layer.q], group.values[:, layer.n], frequency_hz)
+        for layer in group.layers
+    ]
+    value = 1 / np.sum([1 / capacitance for capacitance in each], axis=0)
+    gradient: dict[int, FloatArray] = {}
+    for layer, capacitance in zip(group.layers, each, strict=True):
+        n = group.values[:, layer.n]
         share = value / capacitance
-        slope = n * (math.pi / 2 / math.tan(n * math.pi / 2) + math.log(omega))
-        gradient[layer.q.symbol] = share
-        gradient[layer.n.symbol] = share * slope
-    exponents = [layer.n.quantity for layer in layers]
+        slope = n * (math.pi / 2 / np.tan(n * math.pi / 2) + math.log(omega))
+        gradient[layer.q] = share
+        gradient[layer.n] = share * slope
+    exponents = [group.like[layer.n].quantity for layer in group.layers]
     if all(n.bound is Bound.FIXED and n.value == 1 for n in exponents):
         method = "fitted capacitor"
     else:
-        method = f"fitted film at {frequency_hz:g} Hz, C = Q sin(nπ/2) ω^(n−1)"
-    if len(layers) > 1:
+        method = f"fitted film at {hertz(frequency_hz)}, C = Q sin(nπ/2) ω^(n−1)"
+    if len(group.layers) > 1:
         method += "; layers in series"
     return value, gradient, method
-
-
-def _deviation(fit: Fit, gradient: dict[str, float]) -> float | None:
-    """Standard error of a logarithm from its gradient on the parameters' logarithms."""
-    if fit.log_covariance is not None:
-        slope = np.array([gradient.get(p.symbol, 0.0) for p in fit.parameters])
-        variance = float(slope @ fit.log_covariance @ slope)
-        return math.sqrt(variance) if variance >= 0 else None
-    total = 0.0
-    for symbol, slope_ in gradient.items():
-        parameter = _named(fit, symbol)
-        deviation = None if parameter is None else log_deviation(parameter.quantity)
-        if deviation is None:
-            return None
-        total += abs(slope_) * deviation
-    return total
-
-
-def interface_capacitance(fit: Fit, area_cm2: float | None) -> Quantity | None:
-    """The interface's capacitance by Brug's law, F/cm² of panel (F without area).
-
-    R_e is what lies in front: solution and, under a film, the pores. None where the model has no
-    interface, its n is below 0.7, or one of the parameters is not held by the data.
-    """
-    q, n = (_named(fit, symbol) for symbol in _INTERFACE)
-    if q is None or n is None or not q.quantity.value or not n.quantity.value:
-        return None
-    exponent = n.quantity.value
-    if exponent < rule("capacitance.smallest_exponent"):
-        return None
-    in_front = [p for s in ("R_s", "R_po") if (p := _named(fit, s)) is not None]
-    transfer = _named(fit, "R_ct")
-    ahead = sum(p.quantity.value or 0.0 for p in in_front)
-    if ahead <= 0:
-        return None
-    conductance = 1 / ahead
-    charge = transfer.quantity.value if transfer is not None else None
-    if charge:
-        conductance += 1 / charge
-    power = (exponent - 1) / exponent
-    gradient = {
-        q.symbol: 1 / exponent,
-        n.symbol: -math.log(q.quantity.value / conductance) / exponent,
-    }
-    for p in in_front:
-        gradient[p.symbol] = -power * (p.quantity.value or 0.0) / ahead**2 / conductance
-    if transfer is not None and charge and transfer.quantity.bound is Bound.TWO_SIDED:
-        gradient[transfer.symbol] = -power / charge / conductance
-    # A resistance that the data leave open matters only as far as it carries weight.
-    gradient = {symbol: slope for symbol, slope in gradient.items() if abs(slope) > 1e-3}
-    if any(
-        (p := _named(fit, symbol)) is None or log_deviation(p.quantity) is None
-        for symbol in gradient
-    ):
-        return None
-    deviation = _deviation(fit, gradient)
-    if deviation is None or not math.isfinite(deviation):
-        return None
-    value = brug(q.quantity.value, exponent, conductance)
-    method = "Brug, with the solution" + (" and the pores in front" if len(in_front) > 1 else "")
-    return per_area(from_logarithm(value, deviation, "F", method), area_cm2)
-
-
-# ---------------------------------------------------------------------------------------------
-# Straight from the data
-
-
-def measured_capacitance(
-    spectrum: Spectrum,
-    used: BoolArray,
-    fit: Fit | None,
-    frequency_hz: float,
-    area_cm2: float | None,
-    open_lead: Spectrum | None = None,
-) -> tuple[Quantity | None, Finding | None]:
-    """Parallel capacitance at one frequency from the used points, and a note where the phase is so
-    small that it is not the film's alone. The series value stands beside it in the method.
-
-    None where the frequency is not within the used points or the current does not lead.
-    """
-    frequency = spectrum.frequency_hz[used]
-    within = rule("modulus.measured_within")
-    if frequency.size < 2 or not (
-        frequency[-1] * (1 - within) <= frequency_hz <= frequency[0] * (1 + within)
-    ):
-        return None, None
-    impedance = spectrum.impedance_ohm[used][::-1]
-    if not np.abs(impedance).all():
-        return None, None
-    at = math.log(frequency_hz)
-    log_frequency = np.log(frequency[::-1])
-    modulus = math.exp(float(np.interp(at, log_frequency, np.log(np.abs(impedance)))))
-    phase = float(np.interp(at, log_frequency, np.unwrap(np.angle(impedance))))
-    admittance = complex(math.cos(phase), -math.sin(phase)) / modulus
-    method = f"measured at {frequency_hz:g} Hz, parallel"
-    if open_lead is not None:
-        admittance -= complex(leads_admittance(open_lead, np.array([frequency_hz]))[0])
-        method += ", without the open leads"
-    omega = 2 * math.pi * frequency_hz
-    parallel = admittance.imag / omega
-    if parallel <= 0:
-        return None, None
-    series = abs(admittance) ** 2 / (admittance.imag * omega)
-    degrees = math.degrees(math.atan2(admittance.imag, admittance.real))
-    unit_area = 1.0 if area_cm2 is None else area_cm2
-    unit = "F" if area_cm2 is None else "F/cm²"
-    method += f" (series {series / unit_area:.3g} {unit}, phase −{degrees:.1f}°)"
-    scatter = relative_scatter(spectrum, used, fit, frequency_hz)
-    quantity = per_area(from_logarithm(parallel, scatter, "F", method), area_cm2)
-    if degrees >= rule("capacitance.phase_deg"):
-        return quantity, None
-    note = Finding(
-        "capacitance_phase",
-        Severity.NOTE,
-        f"At {frequency_hz:g} Hz the phase is only −{degrees:.0f}°: the capacitance read there is "
-        "not that of the film alone.",
-        evidence=(("phase_deg", -degrees),),
-    )
-    return quantity, note

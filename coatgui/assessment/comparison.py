@@ -90,7 +90,12 @@ def compare(
         proved = probability < level
         pairs.append(PairTest(names[i], names[j], difference, raw[i, j], probability, proved))
     proved_pairs = {(p.first, p.second) for p in pairs if p.differ}
-    letters = group_letters(names, {frozenset(pair) for pair in proved_pairs})
+    # Against a reference the other pairs are not tested, so there are no groups.
+    letters = (
+        dict.fromkeys(names, "")
+        if method is Method.DUNNETT
+        else group_letters(names, {frozenset(pair) for pair in proved_pairs})
+    )
     drawn = _drawn_ranks(ordered, by_ranks)
     ranks = tuple(
         Rank(

@@ -13,10 +13,10 @@ from __future__ import annotations
 import math
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
-
-import numpy as np
+from functools import cache
 
 from coatgui.assessment.rules import rule
+from coatgui.assessment.words import hertz
 from coatgui.records import (
     Bound,
     Course,
@@ -40,6 +40,20 @@ def inspections(exposure_h: Sequence[float]) -> tuple[tuple[float, ...], ...]:
     return tuple(tuple(group) for group in groups)
 
 
+def by_inspection(
+    readings: Sequence[ReadingAssessment], groups: Sequence[tuple[float, ...]]
+) -> list[list[ReadingAssessment]]:
+    """The readings of each inspection, in the order of `groups`; those of no group left away."""
+    column = {time: place for place, group in enumerate(groups) for time in group}
+    found: list[list[ReadingAssessment]] = [[] for _ in groups]
+    for reading in readings:
+        place = column.get(reading.exposure_h)
+        if place is not None:
+            found[place].append(reading)
+    return found
+
+
+@cache
 def student_95(freedom: int) -> float:
     """97.5 % point of Student's t."""
     from scipy.special import stdtrit
@@ -64,7 +78,7 @@ def _kinds(modulus_frequencies_hz: Sequence[float]) -> list[_Kind]:
         return take
 
     kinds = [
-        _Kind(f"modulus_{f:g}", f"|Z| at {f:g} Hz", True, modulus(f))
+        _Kind(f"modulus_{f:g}", f"|Z| at {hertz(f)}", True, modulus(f))
         for f in modulus_frequencies_hz
     ]
     kinds.append(
@@ -104,8 +118,8 @@ def one_of_panel(quantities: Sequence[Quantity], logarithmic: bool) -> Quantity:
 
 def _mean(values: Sequence[float], logarithmic: bool) -> float:
     if logarithmic:
-        return math.exp(float(np.mean(np.log(values))))
-    return float(np.mean(values))
+        return math.exp(math.fsum(math.log(value) for value in values) / len(values))
+    return math.fsum(values) / len(values)
 
 
 def replicate_mean(panels: Sequence[Quantity], logarithmic: bool) -> tuple[Quantity, int]:
@@ -114,13 +128,17 @@ def replicate_mean(panels: Sequence[Quantity], logarithmic: bool) -> tuple[Quant
     censored = [q.bound for q in panels if q.bound in _ONE_SIDED]
     if len(panels) == 1:
         return panels[0], len(censored)
-    values = np.array([q.value for q in panels], dtype=np.float64)
-    footing = np.log10(values) if logarithmic else values
-    middle = float(footing.mean())
-    half = student_95(values.size - 1) * float(footing.std(ddof=1)) / math.sqrt(values.size)
-    ends = np.array([middle, middle - half, middle + half])
-    value, low, high = (10.0 ** np.clip(ends, -300, 300) if logarithmic else ends).tolist()
-    method = ("geometric" if logarithmic else "arithmetic") + f" mean of {values.size} panels"
+    values = [q.value or 0.0 for q in panels]
+    footing = [math.log10(value) for value in values] if logarithmic else values
+    count = len(values)  # a handful: plain sums are quicker than arrays
+    middle = math.fsum(footing) / count
+    variance = math.fsum((x - middle) ** 2 for x in footing) / (count - 1)
+    half = student_95(count - 1) * math.sqrt(variance / count)
+    ends = (middle, middle - half, middle + half)
+    value, low, high = (
+        [10.0 ** min(max(end, -300.0), 300.0) for end in ends] if logarithmic else ends
+    )
+    method = ("geometric" if logarithmic else "arithmetic") + f" mean of {count} panels"
     if not censored:
         return Quantity(value, low, high, Bound.TWO_SIDED, panels[0].unit, method), 0
     method += f", {len(censored)} of them only bounds, taken at the bound"
@@ -162,15 +180,15 @@ def courses(
 ) -> tuple[Course, ...]:
     """The courses of one formulation's readings; empty ones are left away."""
     groups = inspections([r.exposure_h for r in readings if r.counts])
-    at_group = [(group, [r for r in readings if r.exposure_h in set(group)]) for group in groups]
+    at_group = by_inspection(readings, groups)
     found = []
     for kind in _kinds(modulus_frequencies_hz):
         points = []
-        for group, there in at_group:
+        for group, there in zip(groups, at_group, strict=True):
             values = list(panel_values(there, kind.take, kind.logarithmic).values())
             if values:
                 quantity, censored = replicate_mean(values, kind.logarithmic)
-                time = float(np.mean(group))
+                time = sum(group) / len(group)
                 points.append(CoursePoint(time, quantity, len(values), censored))
         if points:
             found.append(Course(kind.code, kind.name, tuple(points)))

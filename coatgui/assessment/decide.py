@@ -6,7 +6,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
-from coatgui.assessment.limit_studies import limit_studies
+from coatgui.assessment.limit_studies import criterion_studies, limit_studies
 from coatgui.assessment.planning import early_advice
 from coatgui.assessment.quantities import kind
 from coatgui.assessment.ranking import answer, ranking
@@ -16,7 +16,6 @@ from coatgui.assessment.trends import project, trend
 from coatgui.records import (
     Comparison,
     Criterion,
-    Limit,
     LimitStudy,
     PanelAssessment,
     Projection,
@@ -46,12 +45,9 @@ def decide(
     questions: Questions,
     panels: Sequence[PanelAssessment],
 ) -> Decided:
-    """`readings` by formulation. Criteria at a frequency that is not among the wanted ones are
-    judged panel by panel only. Raises ValueError for a question that cannot be understood."""
+    """`readings` by formulation. Raises ValueError for a question that cannot be understood."""
     for rating in questions.ratings:
         order(rating.scale, rating.value)  # says what is wrong with a rating before it is used
-    known = {m.frequency_hz for own in readings.values() for r in own for m in r.modulus}
-    limits = [Limit.of_criterion(c) for c in criteria if c.frequency_hz in known]
     kinds = [
         kind("modulus", modulus_frequency_hz),
         kind("coating_capacitance"),
@@ -61,7 +57,10 @@ def decide(
     trends = [trend(name, own, of) for name, own in readings.items() for of in kinds]
     return Decided(
         tuple(_advised(panels)),
-        limit_studies(readings, [*limits, *questions.limits]),
+        (
+            *criterion_studies(panels, list(readings), criteria),
+            *limit_studies(readings, questions.limits),
+        ),
         tuple(t for t in trends if t is not None),
         ranking(readings, modulus_frequency_hz),
         tuple(answer(q, readings, questions.ratings) for q in questions.comparisons),

@@ -1,4 +1,8 @@
-"""What has been drawn from one reading so far: the working record of an assessment."""
+"""What has been drawn from one reading so far: the working record of an assessment.
+
+`conducts`: the pores carry more than the film's capacitance at the low end of the window, by a
+resistance that the data hold from both sides, leads included.
+"""
 
 from __future__ import annotations
 
@@ -22,7 +26,7 @@ from coatgui.records import (
 @dataclass(slots=True)
 class Drawn:
     """What has been drawn from one reading so far; `assess` fills it step by step. `left_out` maps
-    the place of each point left out to the reason."""
+    the place of each point left out to the reason; at `crossing_hz` the phase passes −45°."""
 
     reading: Reading
     used: BoolArray
@@ -37,6 +41,8 @@ class Drawn:
     coating_capacitance: Quantity | None = None
     measured_capacitance: Quantity | None = None
     pore_resistance: Quantity | None = None
+    conducts: bool = False
+    crossing_hz: float | None = None
     interface_capacitance: Quantity | None = None
     water_uptake: WaterUptake | None = None
     relative_permittivity: Quantity | None = None

@@ -15,6 +15,7 @@ Readings that do not count are not among those passed in.
 from __future__ import annotations
 
 import math
+from bisect import insort
 from collections.abc import Sequence
 from dataclasses import dataclass
 
@@ -23,6 +24,7 @@ import numpy as np
 from coatgui.assessment.fick import time_to_share
 from coatgui.assessment.rules import rule
 from coatgui.assessment.sorption import Sorption
+from coatgui.assessment.words import hertz
 from coatgui.assessment.words import hours as in_hours
 from coatgui.records import (
     Bound,
@@ -196,8 +198,10 @@ def fall_event(
         for time, m in zip(exposure_h, moduli, strict=True)
         if m is not None and m.quantity is not None and m.quantity.value
     ]
+    before: list[float] = []
     for place in range(1, len(known)):
-        level = float(np.median([value for _, value, _ in known[:place]]))
+        insort(before, known[place - 1][1])
+        level = (before[(place - 1) // 2] + before[place // 2]) / 2  # their median
         time, now, modulus = known[place]
         if level - now <= least:
             continue
@@ -205,7 +209,7 @@ def fall_event(
         if not last and level - known[place + 1][1] <= least:
             continue
         at_level = [t for t, value, _ in known[:place] if level - value <= still]
-        what = f"|Z| at {modulus.frequency_hz:g} Hz left its level, by {level - now:.1f} decades,"
+        what = f"|Z| at {hertz(modulus.frequency_hz)} left its level, by {level - now:.1f} decades,"
         return _event(exposure_h, at_level[-1], time, "modulus_falling", what, not last)
     return None
 
@@ -283,7 +287,7 @@ def rebound_event(
             continue
         now = math.log10(modulus.quantity.value)
         if highest - lowest >= decades and now - lowest >= decades:
-            what = f"|Z| at {modulus.frequency_hz:g} Hz rose again by {now - lowest:.1f} decades,"
+            what = f"|Z| at {hertz(modulus.frequency_hz)} rose again by {now - lowest:.1f} decades,"
             return _event(exposure_h, before_h, time, "rebound", what)
         if now >= highest:
             highest, lowest = now, now

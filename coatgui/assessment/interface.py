@@ -26,49 +26,51 @@ from __future__ import annotations
 
 import math
 import re
-from dataclasses import replace
+from collections.abc import Sequence
+from functools import cache
 
 import numpy as np
 
 from coatgui.assessment.mixing import VACUUM_F_PER_CM
+from coatgui.assessment.modulus import Grid
 from coatgui.assessment.rules import table
-from coatgui.records import ActiveArea, BoolArray, Bound, Breakpoint, Quantity, Spectrum
+from coatgui.assessment.words import counted, hertz, power_of_ten
+from coatgui.records import ActiveArea, Bound, Breakpoint, Quantity
 
 _CM_PER_UM = 1e-4
 
 
 def breakpoint_figures(
-    spectrum: Spectrum,
-    used: BoolArray,
+    measured_hz: float | None,
     pore_resistance: Quantity | None,
     film_capacitance: Quantity | None,
     interface_capacitance: Quantity | None,
 ) -> Breakpoint | None:
-    """Breakpoint and minimum phase of a reading; None where its pores do not conduct. The
-    quantities on one footing: all per area or all per specimen."""
+    """Breakpoint and minimum phase of a reading; None where its pores do not conduct. `measured_hz`
+    is where its own phase passes −45°, see `phase_crossings`. The quantities on one footing: all
+    per area or all per specimen."""
     resistance, film = _held(pore_resistance), _held(film_capacitance)
     if resistance is None or film is None:
         return None
-    measured = _crossing(spectrum, used)
     from_fit = 1 / (2 * math.pi * resistance * film)
     interface = _held(interface_capacitance)
     if interface is None:
         said = "The capacitance of the interface is not known, so neither is how far f_b holds."
-        return Breakpoint(measured, from_fit, None, None, None, None, said)
+        return Breakpoint(measured_hz, from_fit, None, None, None, None, said)
     ratio = film / interface
     largest = float(table("interface")["largest_ratio"]["value"])
     if ratio > largest:
         said = (
-            f"C_c/C_dl is {ratio:.2g}, above {largest:g}: the phase never passes −45°, so there is "
-            "no breakpoint and no area can be had from it."
+            f"C_c/C_dl is {power_of_ten(ratio)}, above {largest:g}: the phase never passes −45°, "
+            "so there is no breakpoint and no area can be had from it."
         )
-        return Breakpoint(measured, None, None, None, ratio, False, said)
+        return Breakpoint(measured_hz, None, None, None, ratio, False, said)
     least_hz = math.sqrt((1 + ratio) / ratio) / (2 * math.pi * resistance * interface)
     least_deg = math.degrees(math.atan(2 * math.sqrt(ratio * (1 + ratio))))
-    said = f"C_c/C_dl is {ratio:.2g}, within the limit of {largest:g}."
+    said = f"C_c/C_dl is {power_of_ten(ratio)}, within the limit of {largest:g}."
     if ratio > 0.01:
         said += " Above 0.01 an area from f_b and f_min is too small, by 3 percent and more."
-    return Breakpoint(measured, from_fit, least_hz, -least_deg, ratio, True, said)
+    return Breakpoint(measured_hz, from_fit, least_hz, -least_deg, ratio, True, said)
 
 
 def _held(quantity: Quantity | None) -> float | None:
@@ -76,19 +78,35 @@ def _held(quantity: Quantity | None) -> float | None:
     return quantity.value or None if two_sided and quantity is not None else None
 
 
-def _crossing(spectrum: Spectrum, used: BoolArray) -> float | None:
+def phase_crossings(on: Sequence[Grid], count: int) -> list[float | None]:
     """Highest frequency at which the used points' phase passes −45° from a capacitive stretch above
-    it, Hz; interpolated on log f."""
-    degrees = np.degrees(np.angle(spectrum.impedance_ohm[used])) + 45
-    passes = np.flatnonzero((degrees[:-1] < 0) & (degrees[1:] >= 0))
-    if not passes.size:
-        return None
-    at = int(passes[0])
-    share = degrees[at] / (degrees[at] - degrees[at + 1])
-    ends = np.log(spectrum.frequency_hz[used][at : at + 2])
-    return math.exp(float(ends[0] + share * (ends[1] - ends[0])))
+    it, Hz, for the `count` readings on the grids; interpolated on log f."""
+    found: list[float | None] = [None] * count
+    for grid in on:
+        # The phase is above −45° where the real part outweighs the imaginary one.
+        above = grid.impedance.real + grid.impedance.imag >= 0
+        passes = above[:, :-1] & ~above[:, 1:]
+        rows = np.flatnonzero(passes.any(axis=1))
+        if not rows.size:
+            continue
+        low = passes.shape[1] - 1 - np.argmax(passes[rows, ::-1], axis=1)
+        stop, start = np.log(np.array(grid.frequency))[[low, low + 1]]
+        after, before = np.angle(grid.impedance[rows, [low, low + 1]]) + math.pi / 4
+        crossing = np.exp(start + before / (before - after) * (stop - start))
+        for row, frequency_hz in zip(rows.tolist(), crossing.tolist(), strict=True):
+            found[grid.places[row]] = frequency_hz
+    return found
 
 
+@cache
+def _bare_metal() -> tuple[float, float]:
+    """Between which the double layer of bare metal lies, F/cm²."""
+    data = table("interface")
+    low, high = (data[f"bare_metal_capacitance_{end}"] for end in ("low", "high"))
+    return float(low["value"]), float(high["value"])
+
+
+@cache
 def pore_resistivity(electrolyte: str) -> tuple[float | None, str]:
     """Resistivity of the panel's electrolyte in Ω cm and its name; None where it is known that
     there is none to use. An electrolyte that is not recognised gets the usual one."""
@@ -112,18 +130,17 @@ def active_area(
     """Active share of the area. Quantities per cm²; routes that lack what they need are left out,
     and None where none is left. Shares are between 0 and 1; a route that gives more than the whole
     area has failed and is said so."""
-    data = table("interface")
     resistivity, named = pore_resistivity(electrolyte)
     routes: list[tuple[str, Quantity]] = []
     measured = None if found is None or found.valid is False else found.measured_hz
     if measured is not None and permittivity and resistivity:
         whole_hz = 1 / (2 * math.pi * permittivity * VACUUM_F_PER_CM * resistivity)
         share = measured / whole_hz
-        how = f"f_b/f_b⁰, f_b⁰ = {whole_hz:.2g} Hz with ε_r = {permittivity:.1f}, {named}"
+        whole = hertz(float(f"{whole_hz:.2g}"))
+        how = f"f_b/f_b⁰, f_b⁰ = {whole} with ε_r = {permittivity:.1f}, {named}"
         routes.append(("breakpoint", Quantity(share, share, share, Bound.TWO_SIDED, "", how)))
     if interface_capacitance is not None and _held(interface_capacitance):
-        low = float(data["bare_metal_capacitance_low"]["value"])
-        high = float(data["bare_metal_capacitance_high"]["value"])
+        low, high = _bare_metal()
         value = interface_capacitance.value or 0.0
         routes.append(
             (
@@ -158,15 +175,17 @@ def active_area(
 
 
 def _bracketed(routes: list[tuple[str, Quantity]]) -> ActiveArea:
-    failed = [name for name, q in routes if (q.value or 0.0) > 1]
-    kept = [
-        (name, replace(q, value=min(q.value or 0.0, 1.0), high=min(q.high or 0.0, 1.0)))
-        for name, q in routes
-    ]
-    low = min(min(q.low or 0.0, 1.0) for _, q in kept)
-    high = max(q.high or 0.0 for _, q in kept)
+    failed, kept = [], []
+    low, high = 1.0, 0.0
+    for name, q in routes:
+        value, least, most = q.value or 0.0, q.low or 0.0, min(q.high or 0.0, 1.0)
+        if value > 1:
+            failed.append(name)
+        low, high = min(low, least), max(high, most)
+        kept.append((name, Quantity(min(value, 1.0), least, most, q.bound, q.unit, q.method)))
     count = len(kept)
-    said = f"Between {low:.2g} and {high:.2g} of the area, by {count} route{'s' * (count > 1)}."
+    between = f"Between {power_of_ten(low)} and {power_of_ten(high)}"
+    said = f"{between} of the area, by {counted(count, 'route')}."
     if high > 10 * low > 0:
         said += f" They differ by {math.log10(high / low):.1f} decades: only the order is known."
     if failed:

@@ -13,8 +13,10 @@ from coatgui.assessment.survival import curve, exact_limits, weibull
 from coatgui.assessment.words import counted, hours, listed
 from coatgui.records import (
     Bound,
+    Criterion,
     Limit,
     LimitStudy,
+    PanelAssessment,
     Quantity,
     ReadingAssessment,
     Side,
@@ -34,6 +36,25 @@ def limit_studies(
             standings = panel_standings(own, limit)
             if standings:
                 studies.append(_study(limit, formulation, standings))
+    return tuple(studies)
+
+
+def criterion_studies(
+    panels: Sequence[PanelAssessment], formulations: Sequence[str], criteria: Sequence[Criterion]
+) -> tuple[LimitStudy, ...]:
+    """The campaign's own criteria, from the crossings that its panels already carry."""
+    studies = []
+    for criterion in criteria:
+        for formulation in formulations:
+            standings = tuple(
+                Standing(p.panel, c.after_h, c.by_h, c.watched_h)
+                for p in panels
+                if p.formulation == formulation
+                for c in p.limit_crossings
+                if c.criterion == criterion and c.watched_h is not None
+            )
+            if standings:
+                studies.append(_study(Limit.of_criterion(criterion), formulation, standings))
     return tuple(studies)
 
 

@@ -11,8 +11,8 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 from coatgui.assessment.events import when
+from coatgui.assessment.words import hertz, power_of_ten
 from coatgui.assessment.words import hours as in_hours
-from coatgui.assessment.words import power_of_ten
 from coatgui.records import Bound, Criterion, Limit, LimitCrossing, Modulus, Quantity, Side
 
 
@@ -74,7 +74,7 @@ def limit_crossing(
     criterion: Criterion, exposure_h: Sequence[float], moduli: Sequence[Modulus | None]
 ) -> LimitCrossing:
     """When |Z|·A first fell below the criterion. `moduli` are those at its frequency."""
-    limit = f"{power_of_ten(criterion.ohm_cm2)} Ω cm² at {criterion.frequency_hz:g} Hz"
+    limit = f"{power_of_ten(criterion.ohm_cm2)} Ω cm² at {hertz(criterion.frequency_hz)}"
     found = crossed(
         exposure_h, [None if m is None else m.quantity for m in moduli], criterion.ohm_cm2
     )
@@ -93,5 +93,5 @@ def limit_crossing(
 
 def named(limit: Limit) -> str:
     """The limit as it stands in a sentence."""
-    at = "" if limit.frequency_hz is None else f" at {limit.frequency_hz:g} Hz"
+    at = "" if limit.frequency_hz is None else f" at {hertz(limit.frequency_hz)}"
     return f"{power_of_ten(limit.value)} {limit.unit}{at}"

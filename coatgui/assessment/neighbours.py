@@ -11,16 +11,44 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import ArrayLike
 
 from coatgui.assessment.rules import rule
 from coatgui.assessment.words import hours
-from coatgui.records import Campaign, ComplexArray, Finding, Panel, Reading, Severity
+from coatgui.records import Campaign, ComplexArray, Finding, FloatArray, Panel, Reading, Severity
 
 _FREQUENCIES = 12
 _DECADES = 2.0  # that all readings must share
 _UNITS = {1e3: "kΩ", 1e6: "MΩ"}
+
+
+@dataclass(frozen=True, slots=True)
+class _Course:
+    """The readings of one panel that have ln Z: times (m,), ascending, and ln Z (m, k)."""
+
+    times: FloatArray
+    logarithms: ComplexArray
+
+    def expected(self, exposure_h: ArrayLike) -> tuple[ComplexArray, FloatArray]:
+        """What the readings leave to expect at times (n,) between two of them, (n, k), and how far
+        these two are apart, (n,); NaN at the ends of the series. Readings of the same inspection
+        are left aside, so a reading does not enter its own expectation."""
+        now = np.asarray(exposure_h, dtype=np.float64)
+        same = 1 + rule("inspection.same_within")
+        before = np.searchsorted(self.times * same, now) - 1
+        after = np.searchsorted(self.times, now * same, side="right")
+        outside = (before < 0) | (after == self.times.size)
+        before, after = np.maximum(before, 0), np.minimum(after, self.times.size - 1)
+        first, last = self.logarithms[before], self.logarithms[after]
+        start, middle, end = (
+            np.log(np.maximum(t, 1e-3)) for t in (self.times[before], now, self.times[after])
+        )
+        share = np.where(outside, np.nan, middle - start) / np.where(outside, 1.0, end - start)
+        share = share[:, None]
+        return (1 - share) * first + share * last, _apart(first, last)
 
 
 class Courses:
@@ -29,79 +57,67 @@ class Courses:
     def __init__(self, campaign: Campaign, counting: set[str], limits: Mapping[str, float]) -> None:
         self.limits = limits
         self.panels = {panel.panel_id: panel for panel in campaign.panels}
-        self.readings = [r for r in campaign.readings if r.reading_id in counting]
+        readings = [r for r in campaign.readings if r.reading_id in counting]
+        logarithms = self._logarithms(readings)
         self.series: dict[str, list[Reading]] = {}
-        for reading in sorted(self.readings, key=lambda r: r.exposure_h):
-            self.series.setdefault(reading.panel_id, []).append(reading)
-        self.logarithms = self._logarithms()
+        for reading in sorted(readings, key=lambda r: r.exposure_h):
+            if reading.reading_id in logarithms:
+                self.series.setdefault(reading.panel_id, []).append(reading)
+        self.courses = {
+            panel_id: _Course(
+                np.array([r.exposure_h for r in own], dtype=np.float64),
+                np.array([logarithms[r.reading_id] for r in own]),
+            )
+            for panel_id, own in self.series.items()
+        }
 
-    def _logarithms(self) -> dict[str, ComplexArray]:
-        if not self.readings:
+    def _logarithms(self, readings: Sequence[Reading]) -> dict[str, ComplexArray]:
+        """ln Z·A of the readings at a few frequencies that all share, by their ids."""
+        if not readings:
             return {}
-        fast = min(float(r.spectrum.frequency_hz[0]) for r in self.readings)
-        slow = max(float(r.spectrum.frequency_hz[-1]) for r in self.readings)
+        fast = min(float(r.spectrum.frequency_hz[0]) for r in readings)
+        slow = max(float(r.spectrum.frequency_hz[-1]) for r in readings)
         if fast < slow * 10**_DECADES:
             return {}
         wanted = np.linspace(math.log(slow), math.log(fast), _FREQUENCIES)
-        result = {}
-        for reading in self.readings:
+        grids: dict[tuple[bytes, bytes], list[Reading]] = {}
+        for reading in readings:
             left_out = [p for p, _ in reading.left_out]
             use = reading.spectrum.impedance_ohm != 0
             use[[p for p in left_out if 0 <= p < use.size]] = False
-            if use.sum() < 2:
-                continue
-            x = np.log(reading.spectrum.frequency_hz[use])[::-1]
-            z = reading.spectrum.impedance_ohm[use][::-1]
-            modulus = np.interp(wanted, x, np.log(np.abs(z)))
-            phase = np.interp(wanted, x, np.angle(z))
-            area = self.panels[reading.panel_id].area_cm2 or 1.0
-            result[reading.reading_id] = modulus + math.log(area) + 1j * phase
-        return result
-
-    def expected(
-        self, panel_id: str, exposure_h: float, without: str = ""
-    ) -> tuple[ComplexArray, float] | None:
-        """What a panel's other readings leave to expect at a time between two of them, and how far
-        these two are apart. None at the ends of a series. Readings of the same inspection are left
-        aside."""
-        same = 1 + rule("inspection.same_within")
-        before = after = None
-        for reading in self.series.get(panel_id, ()):
-            if reading.reading_id == without or reading.reading_id not in self.logarithms:
-                continue
-            if reading.exposure_h * same < exposure_h:
-                before = reading
-            elif reading.exposure_h > exposure_h * same:
-                after = reading
-                break
-        if before is None or after is None:
-            return None
-        first, last = (self.logarithms[r.reading_id] for r in (before, after))
-        start, now, end = (
-            math.log(max(t, 1e-3)) for t in (before.exposure_h, exposure_h, after.exposure_h)
-        )
-        share = (now - start) / (end - start)
-        return (1 - share) * first + share * last, _apart(first, last)
+            if use.sum() >= 2:
+                grid = reading.spectrum.frequency_hz.tobytes(), use.tobytes()
+                grids.setdefault(grid, []).append(reading)
+        found: dict[str, ComplexArray] = {}
+        for (frequency, used), those in grids.items():
+            use = np.frombuffer(used, dtype=np.bool_)
+            x = np.log(np.frombuffer(frequency)[use])[::-1]
+            right = np.clip(np.searchsorted(x, wanted, side="right"), 1, x.size - 1)
+            share = np.clip((wanted - x[right - 1]) / (x[right] - x[right - 1]), 0.0, 1.0)
+            z = np.array([r.spectrum.impedance_ohm for r in those])[:, use][:, ::-1]
+            left, right_ = (_logarithm(z[:, place]) for place in (right - 1, right))
+            area = np.array([self.panels[r.panel_id].area_cm2 or 1.0 for r in those])
+            between = (1 - share) * left + share * right_ + np.log(area)[:, None]
+            found.update(zip((r.reading_id for r in those), between, strict=True))
+        return found
 
     def findings(self) -> Iterator[tuple[str, Finding]]:
         """Reading ids with what is odd about them."""
-        for reading in self.readings:
-            here = self.logarithms.get(reading.reading_id)
-            own = self.expected(reading.panel_id, reading.exposure_h, reading.reading_id)
-            if here is None or own is None:
-                continue
-            expectation, gap = own
-            odd = _apart(here, expectation)
-            if odd < max(self.limits["odd_share"], 2 * gap):
-                continue
-            allowed = self.limits["fits_better_share"] * odd
-            # A course between two readings is known no better than these are apart.
-            known = min(allowed, max(self.limits["odd_share"], gap))
-            finding = self._unit(reading, here - expectation, known) or self._panel(
-                reading, here, odd, allowed
-            )
-            if finding is not None:
-                yield reading.reading_id, finding
+        for panel_id, own in self.series.items():
+            course = self.courses[panel_id]
+            expectation, gaps = course.expected(course.times)
+            off = course.logarithms - expectation
+            odd = _apart(course.logarithms, expectation)
+            # Not a number at the ends of a series, where nothing can be expected.
+            for i in np.flatnonzero(odd >= np.maximum(self.limits["odd_share"], 2 * gaps)):
+                allowed = self.limits["fits_better_share"] * float(odd[i])
+                # A course between two readings is known no better than these are apart.
+                known = min(allowed, max(self.limits["odd_share"], float(gaps[i])))
+                finding = self._unit(own[i], off[i], known) or self._panel(
+                    own[i], course.logarithms[i], float(odd[i]), allowed
+                )
+                if finding is not None:
+                    yield own[i].reading_id, finding
 
     def _unit(self, reading: Reading, off: ComplexArray, allowed: float) -> Finding | None:
         area = self.panels[reading.panel_id].area_cm2
@@ -110,7 +126,7 @@ class Courses:
             factors[area] = "divided by the area already"
         for factor, words in factors.items():
             for sign, said in ((-1, words), (1, _other_way(words))):
-                if _apart(off, sign * math.log(factor)) < allowed:
+                if float(_apart(off, np.array(sign * math.log(factor)))) < allowed:
                     ratio = float(factor) ** sign
                     larger = ratio > 1
                     times = f"{max(ratio, 1 / ratio):.3g} times {'larger' if larger else 'smaller'}"
@@ -130,10 +146,10 @@ class Courses:
         for panel_id, panel in self.panels.items():
             if panel_id == reading.panel_id:
                 continue
-            expected = self.expected(panel_id, reading.exposure_h)
-            if expected is None:
+            if panel_id not in self.courses:
                 continue
-            apart = _apart(here, expected[0])
+            expectation, _ = self.courses[panel_id].expected([reading.exposure_h])
+            apart = float(_apart(here, expectation)[0])
             if apart < allowed and (best is None or apart < best[0]):
                 best = apart, panel
         if best is None:
@@ -157,9 +173,13 @@ def _other_way(words: str) -> str:
     return "multiplied by the area already"
 
 
-def _apart(first: ComplexArray, second: ComplexArray | float) -> float:
-    """Root mean square of the difference of two courses of ln Z."""
-    return float(np.sqrt((np.abs(first - second) ** 2).mean()))
+def _logarithm(impedance: ComplexArray) -> ComplexArray:
+    return np.asarray(np.log(np.abs(impedance)) + 1j * np.angle(impedance), dtype=np.complex128)
+
+
+def _apart(first: ComplexArray, second: ComplexArray) -> FloatArray:
+    """Root mean square, along the last axis, of the difference of two courses of ln Z."""
+    return np.asarray(np.sqrt((np.abs(first - second) ** 2).mean(axis=-1)), dtype=np.float64)
 
 
 def course_findings(

@@ -4,6 +4,7 @@ uptake with the bracket of the mixing laws, the uptake at saturation."""
 from __future__ import annotations
 
 from collections.abc import Sequence
+from typing import Any
 
 import numpy as np
 
@@ -21,21 +22,26 @@ from coatgui.assessment.water import (
     uptake_of_rise,
     water_permittivity,
 )
+from coatgui.assessment.words import hertz
 from coatgui.records import Finding, FloatArray, Panel, Quantity, Severity, WaterUptake
 
 
 def uptake_basis(series: Sequence[Drawn], frequency_hz: float) -> tuple[list[Quantity | None], str]:
     """The capacitances that the water uptake rests on, all on one footing, and its name.
 
-    The fitted film's at the high frequency; readings whose model has no film stay without. Only
-    where more than half of the readings are so, the measured parallel capacitance serves for all.
+    The fitted film's at the high frequency; readings whose model has no film stay without. Where
+    most fits show no film, there is no film that could take up water. Where most readings have no
+    fit at all, the measured parallel capacitance serves for all.
     """
     fitted = [d.coating_capacitance for d in series]
-    if 2 * sum(q is not None for q in fitted) >= len(series):
-        return fitted, f"fitted film at {frequency_hz:g} Hz"
+    films, fits = sum(q is not None for q in fitted), sum(d.fit is not None for d in series)
+    if 2 * films >= len(series):
+        return fitted, f"fitted film at {hertz(frequency_hz)}"
+    if 2 * (fits - films) > len(series):
+        return [None] * len(series), "no film shows"
     return (
         [d.measured_capacitance for d in series],
-        f"measured parallel capacitance at {frequency_hz:g} Hz",
+        f"measured parallel capacitance at {hertz(frequency_hz)}",
     )
 
 
@@ -109,18 +115,22 @@ def _bracketed(
     if dry_permittivity is not None and permittivity_finding(dry_permittivity) is None:
         known = dry_permittivity.value
     laws = bracket(ratio, water_permittivity(temperature_c), known, swelling)
-    each = laws.volume_percent.T.tolist()
-    ends = zip(laws.low.tolist(), laws.high.tolist(), strict=True)
+    each, lows, highs = (_listed(part) for part in (laws.volume_percent.T, laws.low, laws.high))
     return [
-        WaterUptake(
-            uptake,
-            reference_h,
-            None if low != low else low,
-            None if high != high else high,
-            tuple((n, None if v != v else v) for n, v in zip(laws.names, values, strict=True)),
-        )
-        for uptake, values, (low, high) in zip(uptakes, each, ends, strict=True)
+        WaterUptake(uptake, reference_h, low, high, laws.names, tuple(values))
+        for uptake, values, low, high in zip(uptakes, each, lows, highs, strict=True)
     ]
+
+
+def _listed(values: FloatArray) -> list[Any]:
+    """As nested lists, with None for what is not a number."""
+    if np.isfinite(values).all():
+        plain: list[Any] = values.tolist()
+        return plain
+    holed = values.astype(object)
+    holed[~np.isfinite(values)] = None
+    listed: list[Any] = holed.tolist()
+    return listed
 
 
 def draw_water(

@@ -18,7 +18,7 @@ import numpy as np
 
 from coatgui.assessment.courses import inspections
 from coatgui.assessment.rules import rule, table
-from coatgui.assessment.words import hours, listed
+from coatgui.assessment.words import hours, listed, power_of_ten
 from coatgui.records import (
     Bound,
     Criterion,
@@ -51,10 +51,11 @@ def early_advice(panel: PanelAssessment, sisters: Sequence[PanelAssessment]) -> 
     data = table("water")["diffusion"]
     if known:
         middle = float(np.exp(np.mean(np.log(known))))
-        how = f"sister panels have D = {middle:.1g} cm²/s"
+        how = f"sister panels have D = {power_of_ten(middle, 1)} cm²/s"
     else:
         middle = math.sqrt(float(data["low"]) * float(data["high"]))
-        how = f"D is taken as {middle:.0e} cm²/s, usual are {data['low']:.0e} to {data['high']:.0e}"
+        usual = " to ".join(power_of_ten(float(data[end])) for end in ("low", "high"))
+        how = f"D is taken as {power_of_ten(middle, 1)} cm²/s, usual are {usual}"
     times = early_times_h(panel.thickness_um, middle)
     text = (
         f"To have the dry film, read the next panel like {panel.panel} ({panel.thickness_um:g} µm) "

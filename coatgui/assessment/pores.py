@@ -12,16 +12,19 @@ A closed film has no such resistance in its model. Any resistance in parallel wo
 from __future__ import annotations
 
 import math
+from functools import lru_cache
 
 import numpy as np
 
 from coatgui.assessment.amounts import NORMAL_95, at_least, held_by_leads, per_area
 from coatgui.assessment.capacitance import has_film
-from coatgui.assessment.modulus import relative_scatter
+from coatgui.assessment.modulus import relative_scatter, used_points
+from coatgui.assessment.words import hertz, power_of_ten
 from coatgui.quality import leads_admittance
 from coatgui.records import Bound, Fit, Quantity, Spectrum
 
 
+@lru_cache(maxsize=64)
 def leads_resistance(open_lead: Spectrum | None, frequency_hz: float) -> float | None:
     """Parallel resistance of the open leads at a frequency, Ω; None where they have none."""
     if open_lead is None:
@@ -36,7 +39,7 @@ def pore_resistance(
     """Pore resistance, Ω cm² (Ω without area); None for a model without a film."""
     if not has_film(fit) or not fit.used.any():
         return None
-    lowest = float(spectrum.frequency_hz[fit.used][-1])
+    lowest = used_points(spectrum, fit.used)[0][0]
     leads_ohm = leads_resistance(open_lead, lowest)
     fitted = _fitted(fit)
     if fitted is None:
@@ -46,7 +49,7 @@ def pore_resistance(
             at_least(
                 modulus / spread,
                 "Ω",
-                f"no pores seen: at least |Z| at the lowest used frequency, {lowest:g} Hz",
+                f"no pores seen: at least |Z| at the lowest used frequency, {hertz(lowest)}",
             ),
             area_cm2,
         )
@@ -83,6 +86,6 @@ def _bounded_by_leads(fitted: Quantity, leads_ohm: float | None) -> Quantity:
     return at_least(
         1 / (1 / value + 1 / leads_ohm),
         "Ω",
-        f"from the fit; the open leads' own {leads_ohm:.2g} Ω lies within a factor of ten, so this "
-        "is the least that the film can have",
+        f"from the fit; the open leads' own {power_of_ten(leads_ohm)} Ω lies within a factor of "
+        "ten, so this is the least that the film can have",
     )

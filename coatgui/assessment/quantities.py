@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass
 
+from coatgui.assessment.words import hertz
 from coatgui.records import Quantity, ReadingAssessment
 
 Take = Callable[[ReadingAssessment], Quantity | None]
@@ -41,7 +42,7 @@ def kind(quantity: str, frequency_hz: float | None = None) -> Kind:
     if quantity == "modulus" and frequency_hz is not None:
         return Kind(
             f"modulus_{frequency_hz:g}",
-            f"|Z| at {frequency_hz:g} Hz",
+            f"|Z| at {hertz(frequency_hz)}",
             True,
             1,
             _modulus(frequency_hz),

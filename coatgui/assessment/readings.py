@@ -12,19 +12,16 @@ from collections.abc import Mapping, Sequence
 import numpy as np
 
 from coatgui.assessment.amounts import parameters_per_area
-from coatgui.assessment.capacitance import (
-    film_capacitance,
-    hsu_mansfeld_capacitance,
-    interface_capacitance,
-    measured_capacitance,
-    small_exponent_finding,
-)
+from coatgui.assessment.capacitance import Capacitances
 from coatgui.assessment.drawn import Drawn
+from coatgui.assessment.interface import phase_crossings
 from coatgui.assessment.leads import Leads
-from coatgui.assessment.modulus import moduli
+from coatgui.assessment.measured_capacitance import measured_capacitances
+from coatgui.assessment.modulus import grids, moduli
 from coatgui.assessment.pores import pore_resistance
 from coatgui.assessment.rules import rule
 from coatgui.records import (
+    Bound,
     Campaign,
     Check,
     Criterion,
@@ -37,7 +34,6 @@ from coatgui.records import (
     Reading,
     ReadingAssessment,
     Severity,
-    Spectrum,
 )
 
 NO_FORMULATION = "Unassigned"
@@ -102,41 +98,19 @@ def draw_readings(
     wanted = tuple(
         dict.fromkeys((*settings.modulus_frequencies_hz, *(c.frequency_hz for c in criteria)))
     )
-    at_frequencies = moduli(
-        [d.reading.spectrum for d in drawn],
-        [d.used for d in drawn],
-        [d.fit for d in drawn],
-        [d.area_cm2 for d in drawn],
-        wanted,
-        leads.limit,
-    )
-    for d, at in zip(drawn, at_frequencies, strict=True):
-        d.moduli = at
-        spectrum = d.reading.spectrum
-        d.measured_capacitance, note = measured_capacitance(
-            spectrum,
-            d.used,
-            d.fit,
-            settings.capacitance_frequency_hz,
-            d.area_cm2,
-            leads.parallel,
-        )
+    on = grids([d.reading.spectrum for d in drawn], [d.used for d in drawn], [d.fit for d in drawn])
+    areas = [d.area_cm2 for d in drawn]
+    frequency_hz = settings.capacitance_frequency_hz
+    at_frequencies = moduli(on, areas, wanted, leads.limit)
+    measured = measured_capacitances(on, frequency_hz, areas, leads.parallel)
+    crossings = phase_crossings(on, len(drawn))
+    for d, at, (capacitance, note), crossing_hz in zip(
+        drawn, at_frequencies, measured, crossings, strict=True
+    ):
+        d.moduli, d.crossing_hz = at, crossing_hz
+        d.measured_capacitance = capacitance
         if d.fit is not None:
-            d.coating_capacitance = film_capacitance(
-                d.fit,
-                spectrum,
-                settings.capacitance_frequency_hz,
-                d.area_cm2,
-                leads.parallel,
-            )
-            d.interface_capacitance = interface_capacitance(d.fit, d.area_cm2)
-            d.parameters = _parameters(
-                d.fit, spectrum, d.area_cm2, leads.parallel, d.interface_capacitance
-            )
-            d.pore_resistance = pore_resistance(d.fit, spectrum, d.area_cm2, leads.limit)
-            d.findings.extend(
-                f for f in (note, small_exponent_finding(d.fit), *_fit_findings(d.fit)) if f
-            )
+            d.findings.extend([note] if note else [])
         elif d.counts:
             d.findings.append(
                 Finding(
@@ -145,6 +119,39 @@ def draw_readings(
                     "No circuit could be laid on this reading: too few points are left.",
                 )
             )
+    _draw_fits([d for d in drawn if d.fit is not None], frequency_hz, leads)
+
+
+def _draw_fits(fitted: Sequence[Drawn], frequency_hz: float, leads: Leads) -> None:
+    """What the circuits say, of readings that have one."""
+    fits = [d.fit for d in fitted if d.fit is not None]
+    found = Capacitances(
+        fits,
+        [d.reading.spectrum for d in fitted],
+        [d.area_cm2 for d in fitted],
+        leads.parallel,
+    )
+    for d, fit, film, small, interface, own_turning, turning_hz in zip(
+        fitted,
+        fits,
+        found.film(frequency_hz),
+        found.small_exponents(),
+        found.interface(),
+        found.hsu_mansfeld(),
+        found.turning_hz(),
+        strict=True,
+    ):
+        d.coating_capacitance = film
+        d.interface_capacitance = interface
+        d.parameters = _parameters(fit, d.area_cm2, own_turning, interface)
+        d.pore_resistance = pore_resistance(fit, d.reading.spectrum, d.area_cm2, leads.limit)
+        d.conducts = (
+            d.pore_resistance is not None
+            and d.pore_resistance.bound is Bound.TWO_SIDED
+            and turning_hz is not None
+        )
+        d.findings.extend([small] if small else [])
+        d.findings.extend(_fit_findings(fit))
 
 
 def _fit_findings(fit: Fit) -> list[Finding]:
@@ -203,29 +210,15 @@ def reading_assessment(
 
 
 def _parameters(
-    fit: Fit,
-    spectrum: Spectrum,
-    area_cm2: float | None,
-    open_lead: Spectrum | None,
-    interface: Quantity | None,
+    fit: Fit, area_cm2: float | None, film: Quantity | None, interface: Quantity | None
 ) -> tuple[Parameter, ...]:
     """The fit's parameters per area, and the capacitances that follow from them by the laws of film
-    and interface."""
+    (Hsu and Mansfeld) and interface (Brug)."""
     parameters = parameters_per_area(fit.parameters, area_cm2)
     layers = {p.symbol: p.layer for p in parameters}
     derived = (
-        (
-            "C_c",
-            "Q_c",
-            "capacitance of the film, from Q_c, n_c and R_po",
-            hsu_mansfeld_capacitance(fit, spectrum, area_cm2, open_lead),
-        ),
-        (
-            "C_dl",
-            "Q_dl",
-            "capacitance of the interface, from Q_dl and n_dl",
-            interface,
-        ),
+        ("C_c", "Q_c", "capacitance of the film, from Q_c, n_c and R_po", film),
+        ("C_dl", "Q_dl", "capacitance of the interface, from Q_dl and n_dl", interface),
     )
     return parameters + tuple(
         Parameter(symbol, meaning, layers[origin], quantity)

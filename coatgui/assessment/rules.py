@@ -16,6 +16,7 @@ def table(name: str) -> dict[str, Any]:
     return tomllib.loads(resource(f"{name}.toml").read_text(encoding="utf-8"))
 
 
+@cache
 def rule(name: str) -> float:
     """The value of an entry of `resources/assessment.toml`, such as "leads.factor"."""
     group, entry = name.split(".")

@@ -9,7 +9,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from coatgui.assessment.comparison import FEWEST_PANELS, entry
-from coatgui.assessment.courses import inspections, one_of_panel, panel_values
+from coatgui.assessment.courses import by_inspection, inspections, one_of_panel, panel_values
 from coatgui.assessment.limit_studies import interval, panel_standings
 from coatgui.assessment.limits import named
 from coatgui.assessment.quantities import Kind, kind
@@ -104,14 +104,11 @@ def _shared(
     groups = inspections(times)
     if exposure_h is not None:
         groups = tuple(g for g in groups if g[0] <= exposure_h <= g[-1])
-    at = {
-        name: {g: [r for r in own if r.exposure_h in set(g)] for g in groups}
-        for name, own in readings.items()
-    }
+    at = {name: by_inspection(own, groups) for name, own in readings.items()}
     single: tuple[float, dict[str, list[Quantity]]] | None = None
-    for group in reversed(groups):
+    for place, group in reversed(list(enumerate(groups))):
         values = {
-            name: list(panel_values(own[group], of.take, of.logarithmic).values())
+            name: list(panel_values(own[place], of.take, of.logarithmic).values())
             for name, own in at.items()
         }
         fewest = min(len(panels) for panels in values.values())

@@ -9,7 +9,6 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 
-from coatgui.assessment.capacitance import turning_frequency
 from coatgui.assessment.drawn import Drawn
 from coatgui.assessment.events import (
     Drying,
@@ -40,7 +39,6 @@ from coatgui.assessment.panel_water import (
 )
 from coatgui.assessment.sorption import Sorption, diffusion_coefficient
 from coatgui.records import (
-    Bound,
     Criterion,
     Event,
     Finding,
@@ -131,7 +129,7 @@ def _events(
             exposure_h,
             [d.fit for d in counting],
             [d.pore_resistance for d in counting],
-            [_pores_conduct(d) for d in counting],
+            [d.conducts for d in counting],
         ),
         *([fall] if fall else []),
         *dry_out.events,
@@ -156,11 +154,10 @@ def _film_and_pores(
             continue
         resistivity = film_resistivity(d.pore_resistance, panel.thickness_um)
         d.film_resistivity = None if resistivity is None else widened(resistivity, uncertain)
-        if not _pores_conduct(d):
+        if not d.conducts:
             continue
         d.breakpoint = breakpoint_figures(
-            d.reading.spectrum,
-            d.used,
+            d.crossing_hz,
             d.pore_resistance,
             d.coating_capacitance,
             d.interface_capacitance,
@@ -174,14 +171,3 @@ def _film_and_pores(
                 value,
                 panel.electrolyte,
             )
-
-
-def _pores_conduct(d: Drawn) -> bool:
-    """Whether the pores carry more than the film's capacitance at the low end of the window, and by
-    a resistance that the data hold from both sides, leads included."""
-    return (
-        d.fit is not None
-        and d.pore_resistance is not None
-        and d.pore_resistance.bound is Bound.TWO_SIDED
-        and turning_frequency(d.fit, d.reading.spectrum) is not None
-    )

@@ -186,13 +186,19 @@ def _extrapolated(fick: FickFit, count: int, time: FloatArray, unit: str, method
         text += " No reading is left over to check the law, so no diffusion coefficient is given."
     stage = None
     if fick.second_from is not None:
-        stage = float(time[fick.second_from]), float(time[fick.second_from + 1])
-        direction = "rises" if fick.slope_per_h > 0 else "falls"
-        text += (
-            f" From {stage[0]:g} h on the capacitance {direction} steadily "
-            f"({100 * fick.slope_per_h * 168:+.2g} percent a week): a second stage that "
-            "one-stage diffusion does not explain; it is kept apart."
-        )
+        since = float(time[fick.second_from]), float(time[fick.second_from + 1])
+        pace = f"({100 * fick.slope_per_h * 168:+.2g} percent a week)"
+        if fick.slope_per_h > 0:
+            stage = since
+            text += (
+                f" From {since[0]:g} h on the capacitance rises steadily {pace}: a second stage "
+                "that one-stage diffusion does not explain; it is kept apart."
+            )
+        else:
+            text += (
+                f" From {since[0]:g} h on the capacitance falls steadily {pace}: the film changes "
+                "or loses water; that part is kept apart."
+            )
     return Sorption(dry, 0.0, rate, fick.misfit, first_stage, text, at_saturation, rise, stage)
 
 

@@ -10,7 +10,7 @@ from coatgui.assessment.leads import leads_of
 from coatgui.assessment.readings import NO_FORMULATION
 from coatgui.assessment.rules import default_criteria
 from coatgui.assessment.series import SeriesResult
-from coatgui.assessment.words import counted, hours, power_of_ten
+from coatgui.assessment.words import counted, hertz, hours, power_of_ten
 from coatgui.records import (
     Bound,
     Campaign,
@@ -122,7 +122,7 @@ def campaign_findings(campaign: Campaign) -> tuple[Finding, ...]:
                 Severity.NOTE,
                 "The campaign names no limits of its own, so the usual ones are used: "
                 + "; ".join(
-                    f"{power_of_ten(c.ohm_cm2)} Ω cm² at {c.frequency_hz:g} Hz"
+                    f"{power_of_ten(c.ohm_cm2)} Ω cm² at {hertz(c.frequency_hz)}"
                     for c in default_criteria()
                 )
                 + ". No standard fixes them.",
@@ -149,7 +149,7 @@ def headline(
             for c in panel.limit_crossings
             if c.criterion == criterion
         )
-        limit = f"{power_of_ten(criterion.ohm_cm2)} Ω cm² at {criterion.frequency_hz:g} Hz"
+        limit = f"{power_of_ten(criterion.ohm_cm2)} Ω cm² at {hertz(criterion.frequency_hz)}"
         parts.append(f"{counted(fallen, 'panel') if fallen else 'none'} fell below {limit}")
     rejected = sum(not r.counts for r in readings)
     if rejected:

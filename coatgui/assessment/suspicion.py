@@ -11,13 +11,15 @@ import numpy as np
 
 from coatgui.assessment.neighbours import course_findings
 from coatgui.assessment.rules import rule
-from coatgui.assessment.words import hours
-from coatgui.quality import hertz, thresholds
+from coatgui.assessment.words import hertz, hours, power_of_ten
+from coatgui.quality import thresholds
 from coatgui.records import (
+    BoolArray,
     Campaign,
     Finding,
     Panel,
     PanelAssessment,
+    Quantity,
     Reading,
     ReadingAssessment,
     Severity,
@@ -51,6 +53,10 @@ def with_suspicions(
         for reading_id, finding in source:
             raised.setdefault(reading_id, []).append(finding)
     facts = {panel.panel_id: panel for panel in campaign.panels}
+    capacitances: dict[str, Quantity] = {}
+    for r in readings:
+        if r.counts and r.coating_capacitance is not None and r.coating_capacitance.value:
+            capacitances.setdefault(r.panel_id, r.coating_capacitance)
     return (
         tuple(
             replace(r, findings=(*r.findings, *raised[r.reading_id]))
@@ -60,7 +66,7 @@ def with_suspicions(
         ),
         [
             replace(p, findings=(*p.findings, *found))
-            if (found := tuple(_film(p, facts[p.panel_id], readings, limits)))
+            if (found := tuple(_film(p, facts[p.panel_id], capacitances.get(p.panel_id), limits)))
             else p
             for p in panels
         ],
@@ -141,16 +147,18 @@ def _apart(
 def _odd_times(campaign: Campaign) -> _ByReading:
     """Two readings of a panel at one time; a time that no other panel has, in a panel that lacks
     one all others have."""
-    same = 1 + rule("inspection.same_within")
-    times = {
-        panel_id: sorted({r.exposure_h for r in series})
-        for panel_id, series in _by_panel(campaign).items()
-        if series
-    }
-    for panel_id, series in _by_panel(campaign).items():
-        seen: dict[float, Reading] = {}
-        for reading in series:
-            before = seen.setdefault(reading.exposure_h, reading)
+    series = _by_panel(campaign)
+    there = [panel_id for panel_id, own in series.items() if own]
+    times = sorted({r.exposure_h for own in series.values() for r in own})
+    column = {time: place for place, time in enumerate(times)}
+    seen = np.array(
+        [_near(times, sorted({r.exposure_h for r in series[panel_id]})) for panel_id in there]
+    )
+    having = seen.sum(axis=0) if there else np.empty(0)
+    for own in series.values():
+        first: dict[float, Reading] = {}
+        for reading in own:
+            before = first.setdefault(reading.exposure_h, reading)
             if before is not reading:
                 yield (
                     reading.reading_id,
@@ -161,16 +169,18 @@ def _odd_times(campaign: Campaign) -> _ByReading:
                         f"({before.source.file}): a repeat, or a wrong exposure time.",
                     ),
                 )
-        others = [those for other, those in times.items() if other != panel_id]
-        if len(others) < _FEWEST_PANELS or panel_id not in times:
-            continue
-
-        def near(time: float, those: Sequence[float]) -> bool:
-            return any(t <= same * time and time <= same * t for t in those)
-
-        common = [t for t in others[0] if all(near(t, those) for those in others)]
-        lacking = [t for t in common if not near(t, times[panel_id])]
-        alone = [r for r in series if not any(near(r.exposure_h, those) for those in others)]
+    if len(there) <= _FEWEST_PANELS:
+        return
+    for place, panel_id in enumerate(there):
+        # What all others have stands, too, in the first of them.
+        example = {r.exposure_h for r in series[there[0 if place else 1]]}
+        others = having - seen[place]
+        lacking = [
+            times[i]
+            for i in np.flatnonzero((others == len(there) - 1) & ~seen[place])
+            if times[i] in example
+        ]
+        alone = [r for r in series[panel_id] if not others[column[r.exposure_h]]]
         if lacking and len(alone) == 1:
             wanted = min(lacking, key=lambda t: abs(np.log(t / max(alone[0].exposure_h, 1e-3))))
             yield (
@@ -184,6 +194,15 @@ def _odd_times(campaign: Campaign) -> _ByReading:
                     evidence=(("exposure_h", alone[0].exposure_h), ("usual_h", wanted)),
                 ),
             )
+
+
+def _near(times: Sequence[float], own: Sequence[float]) -> BoolArray:
+    """Which of some exposure times (n,) a panel's own, ascending, have within one inspection."""
+    same = 1 + rule("inspection.same_within")
+    wanted, mine = np.asarray(times), np.asarray(own)
+    place = np.searchsorted(mine * same, wanted)
+    nearest = mine[np.minimum(place, mine.size - 1)]
+    return np.asarray((place < mine.size) & (nearest <= same * wanted), dtype=np.bool_)
 
 
 def _results(
@@ -236,10 +255,10 @@ def _amplitude(
     return Finding(
         "amplitude_large",
         Severity.DOUBT,
-        f"The amplitude of {amplitude_mv:g} mV is large for {what} (|Z|·A is {shown:.1e} Ω cm² at "
-        f"{hertz(float(reading.spectrum.frequency_hz[-1]))}; up to {limits[name]:g} mV is usual): "
-        f"at an interface with 120 mV a decade the answer would be off by {error:.2g} %. Measure "
-        "with a smaller amplitude.",
+        f"The amplitude of {amplitude_mv:g} mV is large for {what} (|Z|·A is "
+        f"{power_of_ten(shown)} Ω cm² at {hertz(float(reading.spectrum.frequency_hz[-1]))}; up to "
+        f"{limits[name]:g} mV is usual): at an interface with 120 mV a decade the answer would be "
+        f"off by {error:.2g} %. Measure with a smaller amplitude.",
         evidence=(("amplitude_mv", amplitude_mv), ("limit_mv", limits[name])),
     )
 
@@ -247,15 +266,15 @@ def _amplitude(
 def _film(
     result: PanelAssessment,
     panel: Panel,
-    readings: Sequence[ReadingAssessment],
+    first: Quantity | None,
     limits: Mapping[str, float],
 ) -> Iterator[Finding]:
-    """A permittivity that no film has, from capacitance, area and thickness."""
+    """A permittivity that no film has, from capacitance (dry, or that of the `first` reading that
+    has one), area and thickness."""
     if panel.area_cm2 is None or panel.thickness_um is None:
         return
-    own = [r for r in readings if r.panel_id == panel.panel_id and r.counts]
-    candidates = [result.dry_capacitance, *(r.coating_capacitance for r in own)]
-    capacitance = next((q.value for q in candidates if q is not None and q.value), None)
+    dry = result.dry_capacitance
+    capacitance = next((q.value for q in (dry, first) if q is not None and q.value), None)
     if capacitance is None:
         return
     permittivity = capacitance * panel.thickness_um * _CM_PER_UM / _VACUUM_F_PER_CM

@@ -23,7 +23,7 @@ import numpy as np
 from coatgui.assessment.courses import inspections, one_of_panel, student_95
 from coatgui.assessment.quantities import Kind
 from coatgui.assessment.rules import rule
-from coatgui.assessment.words import hours
+from coatgui.assessment.words import hours, power_of_ten
 from coatgui.records import (
     Bound,
     FloatArray,
@@ -86,7 +86,7 @@ def course_table(readings: Sequence[ReadingAssessment], of: Kind) -> Table | Non
     there = np.isfinite(values).any(axis=0)
     if there.sum() < 2:
         return None
-    times = np.array([float(np.mean(group)) for group in groups])
+    times = np.array([sum(group) / len(group) for group in groups])
     return Table(times[there], values[:, there], bounded[:, there], units.pop())
 
 
@@ -275,9 +275,10 @@ def project(
     )
     text = (
         f"{formulation}: if {of.name} goes on as since {hours(float(table.hours[start]))}, a new "
-        f"panel would read {value:.2g} {table.unit} at {hours(wanted.until_h)}, between {low:.2g} "
-        f"and {high:.2g} in 95 of 100 cases. This carries a laboratory course on by "
-        f"{hours(wanted.until_h - last)}; it is not a prediction of service life."
+        f"panel would read {power_of_ten(value)} {table.unit} at {hours(wanted.until_h)}, between "
+        f"{power_of_ten(low)} and {power_of_ten(high)} in 95 of 100 cases. This carries a "
+        f"laboratory course on by {hours(wanted.until_h - last)}; it is not a prediction of "
+        "service life."
     )
     return Projection(formulation, wanted, quantity, text)
 

@@ -13,6 +13,7 @@ It assumes water spread evenly, no swelling and a purely capacitive film; what i
 from __future__ import annotations
 
 import math
+from functools import cache
 
 import numpy as np
 from numpy.typing import ArrayLike
@@ -31,6 +32,11 @@ def water_permittivity(temperature_c: ArrayLike) -> FloatArray:
     return np.where(inside, value, np.nan)
 
 
+@cache
+def _permittivity_at(temperature_c: float) -> float:
+    return float(water_permittivity(temperature_c))
+
+
 def brasher_kingsbury(capacitance: float, dry_capacitance: float, permittivity: float) -> float:
     """Apparent volume fraction of water; the two capacitances in one unit, both positive."""
     return math.log(capacitance / dry_capacitance) / math.log(permittivity)
@@ -43,14 +49,15 @@ def apparent_uptake(
 
     The limits of the two capacitances are taken as independent and added in squares. Where the dry
     capacitance is only known from above (AT_MOST: it is that of a film already wet), the uptake is
-    at least what comes out. None where the temperature is outside 0–100 °C. Raises ValueError where
-    a capacitance lacks its value, or the limit that is needed.
+    at least what comes out, and never less than nothing: that reading's own uptake is at least 0.
+    None where the temperature is outside 0–100 °C. Raises ValueError where a capacitance lacks its
+    value, or the limit that is needed.
     """
     if not (
         capacitance.value and capacitance.low and dry_capacitance.value and dry_capacitance.high
     ):
         raise ValueError("Water uptake needs two capacitances with their limits.")
-    permittivity = float(water_permittivity(temperature_c))
+    permittivity = _permittivity_at(temperature_c)
     if math.isnan(permittivity):
         return None
     percent = 100 / math.log(permittivity)
@@ -64,9 +71,7 @@ def apparent_uptake(
         math.log(dry_capacitance.high / dry_capacitance.value),
     )
     if dry_capacitance.bound is Bound.AT_MOST or not dry_capacitance.low or not capacitance.high:
-        bound = value - down
-        if bound < 0 <= value + down:  # nothing taken up, as far as the scatter lets one see
-            bound = 0.0
+        bound = max(value - down, 0.0)
         return Quantity(bound, bound, None, Bound.AT_LEAST, "vol-%", method)
     up = percent * math.hypot(
         math.log(capacitance.high / capacitance.value),
@@ -80,7 +85,7 @@ def uptake_of_rise(
 ) -> Quantity | None:
     """Water at saturation in volume-percent from ln(C_∞/C_0) of a joint fit, with its limits;
     L_∞/L_0 is multiplied in where the film swells in thickness. None outside 0–100 °C."""
-    permittivity = float(water_permittivity(temperature_c))
+    permittivity = _permittivity_at(temperature_c)
     if math.isnan(permittivity):
         return None
     percent = 100 / math.log(permittivity)

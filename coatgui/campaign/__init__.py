@@ -9,20 +9,35 @@ from coatgui.campaign import operations
 from coatgui.campaign.build import UNASSIGNED, campaign_from_found
 from coatgui.campaign.changes import Change, HistoryEntry, Operation, RowChange
 from coatgui.campaign.check import check_file
-from coatgui.campaign.errors import CampaignFileError, CampaignTooNew, OperationRefused
+from coatgui.campaign.errors import (
+    CampaignDamaged,
+    CampaignFileError,
+    CampaignTooNew,
+    FileGone,
+    OperationRefused,
+    StorageFailed,
+)
 from coatgui.campaign.file import CampaignFile
+from coatgui.campaign.lock import Holder
+from coatgui.campaign.recovery import Recovered, recover
 
 __all__ = [
     "UNASSIGNED",
+    "CampaignDamaged",
     "CampaignFile",
     "CampaignFileError",
     "CampaignTooNew",
     "Change",
+    "FileGone",
     "HistoryEntry",
+    "Holder",
     "Operation",
     "OperationRefused",
+    "Recovered",
     "RowChange",
+    "StorageFailed",
     "campaign_from_found",
     "check_file",
     "operations",
+    "recover",
 ]

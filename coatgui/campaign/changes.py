@@ -39,12 +39,15 @@ class Operation:
     changes: tuple[RowChange, ...]
     spectra: tuple[Spectrum, ...] = ()
     raw: Mapping[str, bytes] = field(default_factory=dict)
+    reason: str = ""
+    """Why, in the person's words, where a reason is asked for."""
 
 
 @dataclass(frozen=True, slots=True)
 class Change:
     """What an applied operation touched: `kinds` are among campaign, settings, formulations,
-    panels, readings, open_lead and refused; empty where there was nothing to change."""
+    panels, readings, open_lead, refused, ratings and photographs; empty where there was nothing
+    to change."""
 
     kinds: frozenset[str]
     name: str
@@ -67,6 +70,9 @@ class HistoryEntry:
     when_utc: str
     changes: tuple[RowChange, ...]
     state: str
+    reason: str = ""
+    chain: str = ""
+    """The hash that this line and all before it lead to, see `seal`."""
 
 
 def inverse(changes: Iterable[RowChange]) -> tuple[RowChange, ...]:

@@ -10,7 +10,7 @@ from pathlib import Path
 
 from coatgui.campaign import changes as changes_of
 from coatgui.campaign import connection as database
-from coatgui.campaign import schema
+from coatgui.campaign import schema, seal
 from coatgui.campaign.errors import CampaignFileError
 from coatgui.campaign.snapshot import Snapshot, read_spectra, record_of
 from coatgui.campaign.trail import Trail
@@ -30,7 +30,6 @@ def check_file(path: Path) -> tuple[str, ...]:
         return (str(problem),)
     try:
         with database.plain_words(path):
-            connection.execute("PRAGMA query_only = ON")
             return tuple(_problems(connection))
     except CampaignFileError as problem:
         return (str(problem),)
@@ -46,11 +45,14 @@ def _problems(connection: sqlite3.Connection) -> Iterator[str]:
         return
     for (said,) in connection.execute("PRAGMA integrity_check"):
         if said != "ok":
-            yield f"SQLite finds the file damaged: {said}."
+            yield f"SQLite finds the file damaged: {' '.join(str(said).split())}."
     for table, row, target, _ in connection.execute("PRAGMA foreign_key_check"):
         yield f"Row {row} of {table} refers to a row of {target} that is missing."
     yield from _raw_problems(connection)
-    if schema.version(connection) == len(schema.MIGRATIONS):
+    found = schema.version(connection)
+    if found >= schema.SEALED_FROM:
+        yield from _seal_problems(connection)
+    if found == len(schema.MIGRATIONS):
         yield from _content_problems(connection)
         return
     # The records of an older version are read after bringing a copy up to date.
@@ -63,7 +65,7 @@ def _problems(connection: sqlite3.Connection) -> Iterator[str]:
 
 def _raw_problems(connection: sqlite3.Connection) -> Iterator[str]:
     for sha256, content in connection.execute("SELECT sha256, bytes FROM raw_files"):
-        if hashlib.sha256(content).hexdigest() != sha256:
+        if not isinstance(content, bytes) or hashlib.sha256(content).hexdigest() != sha256:
             yield f"The stored bytes of an imported file are not what its SHA-256 {sha256} says."
     for table in ("readings", "open_lead"):
         for (file,) in connection.execute(
@@ -71,6 +73,35 @@ def _raw_problems(connection: sqlite3.Connection) -> Iterator[str]:
             "AND sha256 NOT IN (SELECT sha256 FROM raw_files)"
         ):
             yield f"The bytes of {file}, which {table.replace('_', '-')} came from, are missing."
+
+
+def _seal_problems(connection: sqlite3.Connection) -> Iterator[str]:
+    """Whether the trail is whole and what the file holds is what the trail says."""
+    line = seal.broken_link(connection)
+    if line is not None:
+        yield f"Line {line} of the history, or one before it, was altered, taken out or put in."
+    row = connection.execute(
+        "SELECT entry_id, state FROM history ORDER BY entry_id DESC LIMIT 1"
+    ).fetchone()
+    tables = [
+        table
+        for table in schema.KEYS
+        if connection.execute("SELECT 1 FROM sqlite_schema WHERE name = ?", (table,)).fetchone()
+    ]
+    if row is None:
+        yield "The history is missing."
+    elif seal.state_of(connection, tables) != row["state"]:
+        yield (
+            f"What the file holds is not what line {row['entry_id']} of its history says of it: "
+            "something was changed from outside."
+        )
+    if row is not None:
+        last = connection.execute("SELECT seq FROM sqlite_sequence WHERE name = 'history'")
+        if [seq for (seq,) in last] != [row["entry_id"]]:
+            yield "Lines at the end of the history are missing."
+    for key, result, sha256 in connection.execute("SELECT * FROM cached_results"):
+        if not sha256 or seal.result_hash(key, result) != sha256:
+            yield f"The kept result {str(key)[:12]}… was altered; it will be computed again."
 
 
 def _content_problems(connection: sqlite3.Connection) -> Iterator[str]:
@@ -81,8 +112,6 @@ def _content_problems(connection: sqlite3.Connection) -> Iterator[str]:
         except CampaignFileError as problem:
             yield str(problem)
             continue
-        if found[spectrum_id].content_key() != spectrum_id:
-            yield f"The numbers of spectrum {spectrum_id} are not what its SHA-256 says."
         spectra.update(found)
     unreadable = False
     for table in schema.ORDERED:

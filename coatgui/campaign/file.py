@@ -18,13 +18,13 @@ from collections.abc import Iterable, Iterator, Mapping
 from contextlib import contextmanager, suppress
 from pathlib import Path
 from types import TracebackType
-from typing import Any
 
 from coatgui.campaign import changes as changes_of
 from coatgui.campaign import connection as database
-from coatgui.campaign import rows, rules, schema
-from coatgui.campaign.changes import Change, HistoryEntry, Operation, Row, RowChange
-from coatgui.campaign.errors import CampaignFileError, OperationRefused
+from coatgui.campaign import copies, opening, seal, writing
+from coatgui.campaign.changes import Change, HistoryEntry, Operation, RowChange
+from coatgui.campaign.errors import CampaignFileError, FileGone, OperationRefused
+from coatgui.campaign.lock import Holder
 from coatgui.campaign.snapshot import Snapshot
 from coatgui.campaign.trail import Trail
 from coatgui.records import Campaign, Spectrum
@@ -33,19 +33,28 @@ from coatgui.records import Campaign, Spectrum
 class CampaignFile:
     """An open campaign file. Make one with `create` or `open`; close it, or use it in `with`.
 
+    `read_only_because` says in a sentence why nothing can be changed, "" where it can; a change is
+    then refused with that sentence. `holder` is who has it, where that is the reason. `left_open`
+    is who had it open for writing before and did not close it, as after a crash.
+
     Edits, undo and redo belong to one thread, as their order matters. The methods of the cache
     may be called from any thread. Every method raises CampaignFileError, with one sentence, where
     it cannot do its work; then nothing has changed.
     """
 
-    def __init__(self, path: Path, connection: sqlite3.Connection) -> None:
-        """For `open` only: `connection` is to a file found sound and of the newest version."""
-        self.path = path.absolute()
-        self._connection = connection
+    def __init__(self, opened: opening.Opened) -> None:
+        """For `open` only."""
+        self.path = opened.path
+        self.read_only_because = opened.read_only_because
+        self.holder: Holder | None = opened.holder
+        self.left_open: Holder | None = opened.lock.left_behind if opened.lock else None
+        self._opened = opened
+        self._connection = opened.connection
         self._lock = threading.RLock()
         self._closed = False
-        self._snapshot = Snapshot(connection)
-        self._trail = Trail(connection)
+        self._snapshot = Snapshot(opened.connection)
+        self._trail = Trail(opened.connection)
+        self._total = opening.verified_total(opened, self._snapshot, self._trail)
 
     @classmethod
     def create(
@@ -54,23 +63,23 @@ class CampaignFile:
         """Write a campaign to a new file and open it. `raw` maps SHA-256 to the bytes of the files
         that the campaign was read from. An existing file is overwritten only where `replace`."""
         database.write_whole_file(
-            path, lambda beside: _fill(beside, campaign, raw), replace=replace
+            path,
+            lambda beside: writing.fill(beside, campaign, raw, "Create the campaign"),
+            replace=replace,
         )
         return cls.open(path)
 
     @classmethod
-    def open(cls, path: Path) -> CampaignFile:
-        """Open a campaign file, bringing one of an older version up to date."""
-        connection = database.connect(path)
+    def open(cls, path: Path, *, read_only: bool = False) -> CampaignFile:
+        """Open a campaign file, bringing one of an older version up to date after a copy of it was
+        made beside. Where somebody else has it, or it cannot be written to, it is opened for
+        reading only. Raises CampaignDamaged where it is not as the program left it."""
+        opened = opening.open_file(path, read_only=read_only)
         try:
             with database.plain_words(path):
-                problems = schema.unexpected_structure(connection)
-                if problems:
-                    raise CampaignFileError(f"{path.name} cannot be trusted: {problems[0]}")
-                schema.migrate(connection)
-                return cls(path, connection)
+                return cls(opened)
         except BaseException:
-            database.disconnect(connection, path)
+            opened.close()
             raise
 
     def close(self) -> None:
@@ -78,7 +87,7 @@ class CampaignFile:
         with self._lock:
             if not self._closed:
                 self._closed = True
-                database.disconnect(self._connection, self.path)
+                self._opened.close()
 
     def __enter__(self) -> CampaignFile:
         return self
@@ -105,7 +114,13 @@ class CampaignFile:
         if not operation.changes:
             return Change(frozenset(), operation.name)
         return self._carry_out(
-            "edit", None, operation.name, operation.changes, operation.spectra, operation.raw
+            "edit",
+            None,
+            operation.name,
+            operation.changes,
+            operation.spectra,
+            operation.raw,
+            operation.reason,
         )
 
     def undo(self) -> Change | None:
@@ -117,6 +132,11 @@ class CampaignFile:
         return self._again("redo", self._trail.to_redo)
 
     @property
+    def step(self) -> int | None:
+        """The newest edit that stands, by its number in the history."""
+        return self._trail.to_undo
+
+    @property
     def undo_name(self) -> str | None:
         """The name of the edit that `undo` would take back."""
         return self._trail.name(self._trail.to_undo)
@@ -126,10 +146,10 @@ class CampaignFile:
         """The name of the edit that `redo` would make again."""
         return self._trail.name(self._trail.to_redo)
 
-    def history(self) -> tuple[HistoryEntry, ...]:
-        """The audit trail, oldest line first."""
+    def history(self, *, with_changes: bool = True) -> tuple[HistoryEntry, ...]:
+        """The audit trail, oldest line first; quicker without the changed rows."""
         with self._using():
-            return self._trail.entries()
+            return self._trail.entries(with_changes)
 
     def _again(self, action: str, entry_id: int | None) -> Change | None:
         if entry_id is None:
@@ -148,19 +168,48 @@ class CampaignFile:
         changes: Iterable[RowChange],
         spectra: tuple[Spectrum, ...] = (),
         raw: Mapping[str, bytes] | None = None,
+        reason: str = "",
     ) -> Change:
         """The one door for every change."""
         with self._using():
-            with database.transaction(self._connection):
-                self._trail.refuse_if_behind()
-                _keep_spectra(self._connection, spectra)
-                _keep_raw(self._connection, raw or {})
-                done = tuple(_change_row(self._connection, change) for change in changes)
-                entry_id = self._trail.write(action, of_entry, name, done)
-                touched = self._snapshot.read_again(((c.table, c.key) for c in done), spectra)
-            self._trail.adopt(entry_id, action, of_entry, name)
+            self._refuse_unless_writable()
+            written: HistoryEntry | None = None
+            try:
+                with database.transaction(self._connection):
+                    self._trail.refuse_if_behind()
+                    total = self._total
+                    total += writing.keep_spectra(self._connection, spectra)
+                    total += writing.keep_raw(self._connection, raw or {})
+                    done, grown = writing.change_rows(self._connection, changes)
+                    touched = self._snapshot.read_again(((c.table, c.key) for c in done), spectra)
+                    total += grown + touched.total
+                    state = seal.state_text(total)
+                    written = self._trail.write(action, of_entry, name, done, state, reason)
+            except sqlite3.Error:
+                # A disk may fail after the change was made, in telling so: then it is made.
+                if written is None or not self._is_made(written):
+                    raise
+            self._trail.adopt(written, state)
             self._snapshot.adopt(touched)
+            self._total = total
             return Change(frozenset(change.table for change in done), name)
+
+    def _is_made(self, written: HistoryEntry) -> bool:
+        with suppress(sqlite3.Error):
+            return self._trail.ends_with(written)
+        return False
+
+    def changed_elsewhere(self) -> bool:
+        """Whether somebody else has changed the file since it was opened here: what is shown is
+        then no longer what it holds, and opening it again brings it up to date."""
+        with self._using():
+            return self._trail.is_behind()
+
+    def _refuse_unless_writable(self) -> None:
+        if self.read_only_because:
+            raise OperationRefused(self.read_only_because)
+        if not self._opened.is_in_place():
+            raise FileGone(database.gone(self.path))
 
     # -----------------------------------------------------------------------------------------
     # Raw files, copies, cached results
@@ -174,26 +223,39 @@ class CampaignFile:
             ).fetchone()
         if row is None:
             return None
-        content = bytes(row["bytes"])
-        if hashlib.sha256(content).hexdigest() != sha256:
+        content = row["bytes"]
+        if not isinstance(content, bytes) or hashlib.sha256(content).hexdigest() != sha256:
             raise CampaignFileError(
                 f"{self.path.name} is damaged: the stored bytes of an imported file "
                 f"(SHA-256 {sha256[:12]}…) have changed."
             )
         return content
 
-    def save_copy(self, path: Path, *, replace: bool = False) -> None:
-        """Write the whole campaign file, history and all, to another name; this one stays open."""
+    def save_copy(self, path: Path, *, replace: bool = False) -> tuple[str, ...]:
+        """Write the whole campaign file, history and all, to another name; this one stays open.
 
-        def fill(beside: Path) -> None:
-            copy = sqlite3.connect(beside)
-            try:
-                self._connection.backup(copy)
-            finally:
-                copy.close()
-
+        Where the file can no longer be read, as when its disk was taken away, what is in memory is
+        written. Returns sentences on what is then missing; usually none."""
         with self._using():
+            missing: tuple[str, ...] = ()
+
+            def fill(beside: Path) -> None:
+                nonlocal missing
+                try:
+                    copies.back_up(self._connection, beside)
+                except sqlite3.Error:
+                    if not copies.copy_with_journal(self.path, beside, self._trail.chain):
+                        missing = copies.fill_from_memory(self._connection, self.campaign, beside)
+
             database.write_whole_file(path, fill, replace=replace)
+            return missing
+
+    def keep_copy(self, folder: Path | None = None) -> Path | None:
+        """Make the next of the rolling copies and remove those that age makes superfluous; see
+        `copies`. `folder` None: the folder of copies beside the file. None where nothing changed
+        since the newest copy. From any thread; edits can go on meanwhile."""
+        with self._using():
+            return copies.keep(self._connection, self.path, folder, self._trail.chain, self._lock)
 
     def cached_results(self, keys: Iterable[str]) -> dict[str, bytes]:
         """Those of the results that were kept under these keys. From any thread."""
@@ -201,21 +263,23 @@ class CampaignFile:
             found = {}
             for key in keys:
                 row = self._connection.execute(
-                    "SELECT result FROM cached_results WHERE result_key = ?", (key,)
+                    "SELECT result, sha256 FROM cached_results WHERE result_key = ?", (key,)
                 ).fetchone()
-                if row is not None:
+                # One that was damaged on the disk is computed again.
+                if row and seal.result_hash(key, row["result"]) == row["sha256"] != "":
                     found[key] = bytes(row["result"])
             return found
 
     def keep_results(self, results: Mapping[str, bytes]) -> None:
         """Keep results under their keys. From any thread. Where the file is write-protected or
         busy they are not kept, which costs time later and nothing else."""
-        if not results:
+        if not results or self.read_only_because:
             return
         refused = suppress(sqlite3.OperationalError)
         with self._using(), refused, database.transaction(self._connection):
             self._connection.executemany(
-                "INSERT OR REPLACE INTO cached_results VALUES (?, ?)", results.items()
+                "INSERT OR REPLACE INTO cached_results VALUES (?, ?, ?)",
+                ((key, kept, seal.result_hash(key, kept)) for key, kept in results.items()),
             )
 
     @contextmanager
@@ -225,92 +289,3 @@ class CampaignFile:
                 raise CampaignFileError(f"{self.path.name} has been closed.")
             with database.plain_words(self.path):
                 yield
-
-
-# ---------------------------------------------------------------------------------------------
-# Writing rows
-
-
-def _fill(path: Path, campaign: Campaign, raw: Mapping[str, bytes]) -> None:
-    connection = database.connect_new(path)
-    try:
-        schema.migrate(connection)
-        with database.transaction(connection):
-            _keep_spectra(connection, rules.all_spectra(campaign))
-            _keep_raw(connection, raw)
-            for table, row in rules.all_rows(campaign):
-                _insert(connection, table, row)
-            Trail(connection).write("create", None, "Create the campaign", ())
-    finally:
-        connection.close()
-
-
-def _keep_spectra(connection: sqlite3.Connection, spectra: Iterable[Spectrum]) -> None:
-    connection.executemany(
-        "INSERT OR IGNORE INTO spectra VALUES "
-        "(:spectrum_id, :frequency_hz, :real_ohm, :imaginary_ohm)",
-        map(rows.spectrum_row, spectra),
-    )
-
-
-def _keep_raw(connection: sqlite3.Connection, raw: Mapping[str, bytes]) -> None:
-    for sha256, content in raw.items():
-        if hashlib.sha256(content).hexdigest() != sha256:
-            raise CampaignFileError("The bytes of an imported file do not fit their SHA-256.")
-        connection.execute("INSERT OR IGNORE INTO raw_files VALUES (?, ?)", (sha256, content))
-
-
-def _change_row(connection: sqlite3.Connection, change: RowChange) -> RowChange:
-    """Change one row. Returns the change with all that its inverse needs: the place of a row that
-    goes away."""
-    _refuse_unknown_names(change)
-    table, key = change.table, change.key
-    is_key = f"{schema.KEYS[table]} = ?"
-    present = connection.execute(f"SELECT * FROM {table} WHERE {is_key}", (key,)).fetchone()
-    if change.before is None:
-        if present is not None or change.after is None:
-            raise OperationRefused(f"This is already in the campaign's {_words(table)}.")
-        if change.after.get(schema.KEYS[table]) != key:
-            raise OperationRefused("A new row does not carry the key that it goes by.")
-        _insert(connection, table, change.after)
-        return change
-    if present is None:
-        raise OperationRefused(
-            f"This is no longer in the campaign's {_words(table)}: it was removed meanwhile."
-        )
-    if any(present[column] != value for column, value in change.before.items()):
-        raise OperationRefused(
-            f"This was changed meanwhile in the campaign's {_words(table)}: look at it and try "
-            "again."
-        )
-    if change.after is None:
-        connection.execute(f"DELETE FROM {table} WHERE {is_key}", (key,))
-        return RowChange(table, key, dict(zip(present.keys(), present, strict=True)), None)
-    settings = ", ".join(f"{column} = ?" for column in change.after)
-    connection.execute(
-        f"UPDATE {table} SET {settings} WHERE {is_key}", (*change.after.values(), key)
-    )
-    return change
-
-
-def _insert(connection: sqlite3.Connection, table: str, row: Row) -> None:
-    """Add a row; one of an ordered table that names no place goes to the end."""
-    values: dict[str, Any] = dict(row)
-    if table in schema.ORDERED and "place" not in values:
-        last = connection.execute(f"SELECT MAX(place) FROM {table}").fetchone()[0]
-        values["place"] = 0 if last is None else last + 1
-    connection.execute(
-        f"INSERT INTO {table} ({', '.join(values)}) VALUES ({', '.join('?' * len(values))})",
-        tuple(values.values()),
-    )
-
-
-def _refuse_unknown_names(change: RowChange) -> None:
-    """Tables and columns become part of SQL text: only our own may."""
-    named = {*(change.before or ()), *(change.after or ())}
-    if change.table not in schema.KEYS or not named <= schema.columns(change.table):
-        raise OperationRefused("The change names a table or column that a campaign does not have.")
-
-
-def _words(table: str) -> str:
-    return table.replace("_", "-")

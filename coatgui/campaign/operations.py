@@ -17,6 +17,15 @@ import numpy as np
 from coatgui.campaign.build import gather, new_id, panel_by_name
 from coatgui.campaign.changes import Operation
 from coatgui.campaign.errors import OperationRefused
+from coatgui.campaign.inspections import add_photograph as add_photograph
+from coatgui.campaign.inspections import add_ratings as add_ratings
+from coatgui.campaign.inspections import edit_photograph as edit_photograph
+from coatgui.campaign.inspections import edit_rating as edit_rating
+from coatgui.campaign.inspections import identify as identify
+from coatgui.campaign.inspections import rate_reading as rate_reading
+from coatgui.campaign.inspections import remove_photograph as remove_photograph
+from coatgui.campaign.inspections import remove_ratings as remove_ratings
+from coatgui.campaign.inspections import without_panel
 from coatgui.campaign.rules import operation
 from coatgui.records import (
     Campaign,
@@ -204,7 +213,7 @@ def move_panel(campaign: Campaign, panel_id: str, formulation_id: str) -> Operat
 
 
 def remove_panel(campaign: Campaign, panel_id: str) -> Operation:
-    """The panel goes with its readings."""
+    """The panel goes with its readings, ratings and photographs."""
     panel = _panel(campaign, panel_id)
     panels = tuple(p for p in campaign.panels if p is not panel)
     readings = tuple(r for r in campaign.readings if r.panel_id != panel_id)
@@ -212,7 +221,7 @@ def remove_panel(campaign: Campaign, panel_id: str) -> Operation:
     return operation(
         f"Remove panel {panel.name} with {_count(number, 'reading')}",
         campaign,
-        replace(campaign, panels=panels, readings=readings),
+        replace(without_panel(campaign, panel_id), panels=panels, readings=readings),
     )
 
 
@@ -290,9 +299,10 @@ def leave_out_points(
         left_out=tuple(sorted(left_out.items())),
         kept_in=tuple(point for point in reading.kept_in if point not in chosen),
     )
-    return _on_readings(
+    made = _on_readings(
         campaign, [(reading, changed)], f"Leave out {_count(len(chosen), 'point')} of"
     )
+    return replace(made, reason=reason.strip())
 
 
 def take_back_points(campaign: Campaign, reading_id: str, points: Iterable[int]) -> Operation:
@@ -326,7 +336,8 @@ def overrule(campaign: Campaign, reading_id: str, reason: str) -> Operation:
     reading = _reading(campaign, reading_id)
     changed = replace(reading, overruled_because=reason.strip())
     words = "Overrule the rejection of" if changed.overruled_because else "Accept the rejection of"
-    return _on_readings(campaign, [(reading, changed)], words)
+    made = _on_readings(campaign, [(reading, changed)], words)
+    return replace(made, reason=changed.overruled_because)
 
 
 def _on_readings(

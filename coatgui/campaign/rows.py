@@ -16,11 +16,13 @@ from typing import Any
 import numpy as np
 
 from coatgui.campaign.changes import Cell, Row
+from coatgui.campaign.rows_seen import identification_cells
 from coatgui.records import (
     Column,
     Criterion,
     Dialect,
     Formulation,
+    Identification,
     Panel,
     Reading,
     Refusal,
@@ -33,8 +35,13 @@ from coatgui.records import (
 # Records to rows
 
 
-def campaign_row(campaign_id: str, title: str, remark: str) -> Row:
-    return {"campaign_id": campaign_id, "title": title, "remark": remark}
+def campaign_row(campaign_id: str, title: str, remark: str, named: Identification) -> Row:
+    return {
+        "campaign_id": campaign_id,
+        "title": title,
+        "remark": remark,
+        **identification_cells(named),
+    }
 
 
 def settings_row(campaign_id: str, settings: Settings) -> Row:

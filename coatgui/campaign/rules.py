@@ -14,10 +14,24 @@ from collections.abc import Callable, Iterable, Iterator, Mapping
 from dataclasses import fields, is_dataclass
 from typing import Any
 
-from coatgui.campaign import rows
+from coatgui.campaign import photographs, rows, rows_seen
 from coatgui.campaign.changes import Operation, Row, RowChange
 from coatgui.campaign.errors import OperationRefused
-from coatgui.records import Campaign, Formulation, Panel, Reading, Settings, Spectrum
+from coatgui.records import (
+    Campaign,
+    Formulation,
+    Identification,
+    Panel,
+    Photograph,
+    Rating,
+    Reading,
+    Settings,
+    Spectrum,
+)
+
+LONGEST_TEXT = 20_000
+"""Characters of a remark or another text. Own choice: four printed pages, and no campaign file
+grows by a text pasted by mistake."""
 
 
 def operation(
@@ -42,7 +56,7 @@ def operation(
             was = were.get(key)
             if record is was:
                 continue
-            _refuse_unsound(table, record)
+            refuse_unsound(table, record)
             changes += _change(table, key, was, record)
             for spectrum in _spectra_in(record):
                 if spectrum not in _spectra_in(was):
@@ -71,7 +85,7 @@ def all_rows(campaign: Campaign) -> Iterator[tuple[str, Row]]:
     _refuse_clashes(campaign, set(tables))
     for table, records in tables.items():
         for key, record in records.items():
-            _refuse_unsound(table, record)
+            refuse_unsound(table, record)
             yield table, _ROW[table](key, record)
 
 
@@ -91,13 +105,15 @@ def _tables(campaign: Campaign) -> dict[str, dict[str, Any]]:
     key = campaign.campaign_id
     open_lead = (campaign.open_lead, campaign.open_lead_source)
     return {
-        "campaign": {key: (campaign.title, campaign.remark)},
+        "campaign": {key: (campaign.title, campaign.remark, campaign.identification)},
         "settings": {key: campaign.settings},
         "formulations": {f.formulation_id: f for f in campaign.formulations},
         "panels": {p.panel_id: p for p in campaign.panels},
         "readings": {r.reading_id: r for r in campaign.readings},
         "open_lead": {} if campaign.open_lead is None else {key: open_lead},
         "refused": {rows.refusal_key(r): r for r in campaign.refused},
+        "ratings": {r.rating_id: r for r in campaign.ratings},
+        "photographs": {p.photograph_id: p for p in campaign.photographs},
     }
 
 
@@ -109,6 +125,8 @@ _ROW: dict[str, Callable[[str, Any], Row]] = {
     "readings": lambda _, reading: rows.reading_row(reading),
     "open_lead": lambda key, run: rows.open_lead_row(key, *run),
     "refused": lambda _, refusal: rows.refusal_row(refusal),
+    "ratings": lambda _, rating: rows_seen.rating_row(rating),
+    "photographs": lambda _, photograph: rows_seen.photograph_row(photograph),
 }
 
 
@@ -124,11 +142,14 @@ def _spectra_in(record: Any) -> tuple[Spectrum, ...]:
 # Rules for one record
 
 
-def _refuse_unsound(table: str, record: Any) -> None:
+def refuse_unsound(table: str, record: Any) -> None:
+    """Raises OperationRefused where a record breaks a rule of its own."""
     if is_dataclass(record):
         _refuse_wrong_types(record)
     if table == "campaign":
         _named(record[0], "A campaign", "title")
+        _refuse_long_texts(record)
+        _refuse_wrong_identification(record[2])
     elif isinstance(record, Settings):
         _refuse_unsound_settings(record)
     elif isinstance(record, Formulation):
@@ -137,6 +158,10 @@ def _refuse_unsound(table: str, record: Any) -> None:
         _refuse_unsound_panel(record)
     elif isinstance(record, Reading):
         _refuse_unsound_reading(record)
+    elif isinstance(record, Rating):
+        _refuse_unsound_rating(record)
+    elif isinstance(record, Photograph):
+        _refuse_unsound_photograph(record)
 
 
 def _refuse_wrong_types(record: Any) -> None:
@@ -144,11 +169,50 @@ def _refuse_wrong_types(record: Any) -> None:
     for field in fields(record):
         value = getattr(record, field.name)
         words = field.name.replace("_", " ")
+        _refuse_long_texts((value,))
         kind = getattr(field.type, "__name__", field.type)  # "str", "float", "float | None", …
         if kind == "str" and not isinstance(value, str):
             raise OperationRefused(f"The {words} must be a text, not {value!r}.")
         if kind == "float" or (kind == "float | None" and value is not None):
             _finite(value, f"The {words}")
+
+
+def _refuse_long_texts(values: Iterable[Any]) -> None:
+    for value in values:
+        if isinstance(value, str) and len(value) > LONGEST_TEXT:
+            raise OperationRefused(
+                f"A text of {len(value)} characters is too long: {LONGEST_TEXT} are kept at most. "
+                f"It begins “{value[:40]}”."
+            )
+
+
+def _refuse_wrong_identification(named: Identification) -> None:
+    _refuse_wrong_types(named)
+    _refuse_long_texts(named.standards)
+    if not all(isinstance(name, str) and name.strip() for name in named.standards):
+        raise OperationRefused("A standard needs a name that is not empty.")
+
+
+def _refuse_unsound_rating(rating: Rating) -> None:
+    seen = rating.seen
+    _refuse_wrong_types(seen)
+    _named(seen.scale, "A rating", "scale")
+    _named(seen.value, "A rating", "grade")
+    _not_negative(seen.exposure_h, "The exposure time of a rating in h")
+
+
+def _refuse_unsound_photograph(photograph: Photograph) -> None:
+    if photograph.exposure_h is not None:
+        _not_negative(photograph.exposure_h, "The exposure time of a photograph in h")
+    if photograph.media_type not in photographs.MEDIA_TYPES:
+        raise OperationRefused(f"A photograph cannot be of the type {photograph.media_type!r}.")
+    if photograph.file != photographs.plain_name(photograph.file):
+        raise OperationRefused("The file name of a photograph cannot name a folder.")
+
+
+def _not_negative(value: float, what: str) -> None:
+    if _finite(value, what) < 0:
+        raise OperationRefused(f"{what} must be 0 or more, not {value:g}.")
 
 
 def _refuse_unsound_panel(panel: Panel) -> None:
@@ -242,6 +306,18 @@ def _refuse_clashes(campaign: Campaign, touched: set[str]) -> None:
                 raise OperationRefused(
                     f"The reading from {reading.source.file} needs a panel that exists."
                 )
+    if touched & {"ratings", "panels"}:
+        for rating in campaign.ratings:
+            if rating.seen.panel_id not in panels:
+                raise OperationRefused("A rating needs a panel that exists.")
+    if touched & {"photographs", "panels"}:
+        for photograph in campaign.photographs:
+            if photograph.panel_id not in panels:
+                raise OperationRefused("A photograph needs a panel that exists.")
+    if "ratings" in touched:
+        _once((r.rating_id for r in campaign.ratings), "rating", "the id")
+    if "photographs" in touched:
+        _once((p.photograph_id for p in campaign.photographs), "photograph", "the id")
     if "readings" in touched:
         _once((r.reading_id for r in campaign.readings), "reading", "the id")
 

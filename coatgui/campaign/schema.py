@@ -14,6 +14,7 @@ from collections.abc import Callable
 from contextlib import closing
 from functools import cache
 
+from coatgui.campaign import seal
 from coatgui.campaign.errors import CampaignFileError, CampaignTooNew
 
 APPLICATION_ID = 0x434F4154  # "COAT"
@@ -27,9 +28,13 @@ KEYS = {
     "readings": "reading_id",
     "open_lead": "campaign_id",
     "refused": "refusal_id",
+    "ratings": "rating_id",
+    "photographs": "photograph_id",
 }
 # Those of them that hold several rows in an order of their own, kept in the column `place`.
-ORDERED = ("formulations", "panels", "readings", "refused")
+ORDERED = ("formulations", "panels", "readings", "refused", "ratings", "photographs")
+# From this version on the trail carries hashes.
+SEALED_FROM = 3
 
 
 def lay_the_first_tables(connection: sqlite3.Connection) -> None:
@@ -149,9 +154,55 @@ def add_the_input_and_own_models(connection: sqlite3.Connection) -> None:
         connection.execute(f"ALTER TABLE settings ADD COLUMN {column}")
 
 
+def seal_the_trail_and_take_what_is_seen(connection: sqlite3.Connection) -> None:
+    """The trail is chained by hashes; results carry theirs; ratings, photographs and the names on
+    a summary have a place. `migrate` fills in the hashes of the lines that are there."""
+    for column in ("reason", "state", "chain"):
+        connection.execute(f"ALTER TABLE history ADD COLUMN {column} TEXT NOT NULL DEFAULT ''")
+    # Kept results may go at any time; those from before have no hash.
+    connection.execute("DELETE FROM cached_results")
+    connection.execute("ALTER TABLE cached_results ADD COLUMN sha256 TEXT NOT NULL DEFAULT ''")
+    for column in ("laboratory", "customer", "order_number", "author", "reviewer"):
+        connection.execute(f"ALTER TABLE campaign ADD COLUMN {column} TEXT NOT NULL DEFAULT ''")
+    connection.execute("ALTER TABLE campaign ADD COLUMN standards TEXT NOT NULL DEFAULT '[]'")
+    for statement in _TABLES_OF_WHAT_IS_SEEN:
+        connection.execute(statement)
+
+
+_TABLES_OF_WHAT_IS_SEEN = (
+    """CREATE TABLE ratings (
+    rating_id TEXT NOT NULL PRIMARY KEY,
+    place INTEGER NOT NULL UNIQUE,
+    panel_id TEXT NOT NULL
+        REFERENCES panels DEFERRABLE INITIALLY DEFERRED,
+    exposure_h REAL NOT NULL CHECK (exposure_h >= 0),
+    scale TEXT NOT NULL CHECK (scale <> ''), -- id of a scale in resources/ratings.toml
+    grade TEXT NOT NULL CHECK (grade <> ''), -- as that scale writes it
+    edition TEXT NOT NULL DEFAULT '',
+    rater TEXT NOT NULL DEFAULT '',
+    remark TEXT NOT NULL DEFAULT ''
+) STRICT""",
+    """CREATE INDEX ratings_of_panel ON ratings (panel_id, exposure_h)""",
+    """CREATE TABLE photographs (
+    photograph_id TEXT NOT NULL PRIMARY KEY,
+    place INTEGER NOT NULL UNIQUE,
+    panel_id TEXT NOT NULL
+        REFERENCES panels DEFERRABLE INITIALLY DEFERRED,
+    exposure_h REAL CHECK (exposure_h >= 0),
+    sha256 TEXT NOT NULL -- of the bytes in raw_files
+        REFERENCES raw_files DEFERRABLE INITIALLY DEFERRED,
+    media_type TEXT NOT NULL CHECK (media_type IN ('image/png', 'image/jpeg')),
+    caption TEXT NOT NULL DEFAULT '',
+    file TEXT NOT NULL DEFAULT ''
+) STRICT""",
+    """CREATE INDEX photographs_of_panel ON photographs (panel_id)""",
+)
+
+
 MIGRATIONS: tuple[Callable[[sqlite3.Connection], None], ...] = (
     lay_the_first_tables,
     add_the_input_and_own_models,
+    seal_the_trail_and_take_what_is_seen,
 )
 
 
@@ -178,6 +229,9 @@ def migrate(connection: sqlite3.Connection, up_to: int | None = None) -> None:
         connection.execute("BEGIN IMMEDIATE")
         try:
             MIGRATIONS[step](connection)
+            if step + 1 >= SEALED_FROM:
+                # The rows look different now, so what the last line says of them is said anew.
+                seal.seal_again(connection, KEYS)
             connection.execute(f"PRAGMA user_version = {step + 1}")
             connection.execute("COMMIT")
         except BaseException:
@@ -209,13 +263,25 @@ def unexpected_structure(connection: sqlite3.Connection) -> tuple[str, ...]:
 @cache
 def columns(table: str) -> frozenset[str]:
     """The columns of one of the tables in `KEYS`, in the newest version."""
+    return frozenset(columns_in_order(table))
+
+
+@cache
+def columns_in_order(table: str) -> tuple[str, ...]:
+    """The columns of a table in the newest version, in the order in which a row stores them."""
     with closing(sqlite3.connect(":memory:", isolation_level=None)) as model:
         migrate(model)
-        return frozenset(row[1] for row in model.execute(f"PRAGMA table_info({table})"))
+        return tuple(row[1] for row in model.execute(f"PRAGMA table_info({table})"))
 
 
 def _structure(at_version: int) -> dict[tuple[str, str], str | None]:
-    """What a sound file of that version holds, found by making one."""
+    return _structure_by(MIGRATIONS, at_version)
+
+
+@cache
+def _structure_by(migrations: object, at_version: int) -> dict[tuple[str, str], str | None]:
+    """What a sound file of that version holds, found by making one. `migrations` are named only to
+    keep one answer for each set of them."""
     with closing(sqlite3.connect(":memory:", isolation_level=None)) as model:
         migrate(model, at_version)
         return _read_structure(model)

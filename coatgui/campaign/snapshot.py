@@ -8,10 +8,10 @@ from __future__ import annotations
 
 import sqlite3
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass, field, replace
+from dataclasses import dataclass, replace
 from typing import Any
 
-from coatgui.campaign import rows
+from coatgui.campaign import rows, rows_seen, seal
 from coatgui.campaign.errors import CampaignFileError
 from coatgui.campaign.schema import KEYS, ORDERED
 from coatgui.records import Campaign, Spectrum
@@ -24,12 +24,15 @@ class Touched:
     """Rows read again after a change: `place` and record by table and key, None where the row is
     gone; and the facts of the campaign itself."""
 
-    held: dict[tuple[str, str], tuple[int, Any] | None] = field(default_factory=dict)
-    facts: dict[str, Any] = field(default_factory=dict)
+    held: dict[tuple[str, str], tuple[int, Any] | None]
+    facts: dict[str, Any]
+    total: int
+    """The sum of the parts these rows have in the state, see `seal`."""
 
 
 class Snapshot:
-    """`campaign` is the file's content as of the last `adopt`.
+    """`campaign` is the file's content as of the last `adopt`; `total` the sum of the parts of its
+    rows as they were first read, see `seal`.
 
     The connection must give rows as `sqlite3.Row`. Raises CampaignFileError where something
     cannot be read.
@@ -38,13 +41,12 @@ class Snapshot:
     def __init__(self, connection: sqlite3.Connection) -> None:
         self._connection = connection
         spectra = read_spectra(connection)
-        self._held: dict[str, dict[str, tuple[int, Any]]] = {
-            table: {
-                row[KEYS[table]]: (row["place"], record_of(table, row, spectra))
-                for row in connection.execute(f"SELECT * FROM {table} ORDER BY place, rowid")
-            }
-            for table in ORDERED
-        }
+        self._held: dict[str, dict[str, tuple[int, Any]]] = {table: {} for table in ORDERED}
+        self.total = seal.rows_total(connection, KEYS.keys() - set(ORDERED))
+        for table, held in self._held.items():
+            for row in connection.execute(f"SELECT * FROM {table} ORDER BY place, rowid"):
+                held[row[KEYS[table]]] = (row["place"], record_of(table, row, spectra))
+                self.total += seal.row_digest(table, dict(row))
         content = self._facts(spectra)
         content.update((table, self._in_order(table)) for table in ORDERED)
         self.campaign = Campaign(**content)
@@ -58,21 +60,25 @@ class Snapshot:
         lead = self.campaign.open_lead
         if lead is not None:
             at_hand[lead.content_key()] = lead
-        again = Touched()
-        for table, key in touched:
-            if table not in ORDERED:
-                again.facts.update(self._facts(at_hand))
-                continue
+        held: dict[tuple[str, str], tuple[int, Any] | None] = {}
+        facts: dict[str, Any] = {}
+        total = 0
+        for table, key in dict.fromkeys(touched):
             row = self._connection.execute(
                 f"SELECT * FROM {table} WHERE {KEYS[table]} = ?", (key,)
             ).fetchone()
+            if row is not None:
+                total += seal.row_digest(table, dict(row))
+            if table not in ORDERED:
+                facts.update(self._facts(at_hand))
+                continue
             if row is None:
-                again.held[table, key] = None
+                held[table, key] = None
                 continue
             if table == "readings" and row["spectrum_id"] not in at_hand:
                 at_hand.update(self._spectrum(row["spectrum_id"], key))
-            again.held[table, key] = (row["place"], record_of(table, row, at_hand))
-        return again
+            held[table, key] = (row["place"], record_of(table, row, at_hand))
+        return Touched(held, facts, total)
 
     def adopt(self, touched: Touched) -> None:
         """Make the rows read again part of the snapshot."""
@@ -115,6 +121,7 @@ class Snapshot:
                 "campaign_id": campaign["campaign_id"],
                 "title": campaign["title"],
                 "remark": campaign["remark"],
+                "identification": rows_seen.identification_of(campaign),
                 "settings": rows.settings_of(settings),
                 "open_lead": open_lead,
                 "open_lead_source": source,
@@ -136,12 +143,18 @@ class Snapshot:
 def record_of(table: str, row: Any, spectra: Mapping[str, Spectrum]) -> Any:
     """The record of a row of one of the ordered tables. Raises CampaignFileError."""
     try:
+        if not isinstance(row["place"], int):
+            raise TypeError("A place must be a whole number.")
         if table == "formulations":
             return rows.formulation_of(row)
         if table == "panels":
             return rows.panel_of(row)
         if table == "readings":
             return rows.reading_of(row, spectra)
+        if table == "ratings":
+            return rows_seen.rating_of(row)
+        if table == "photographs":
+            return rows_seen.photograph_of(row)
         return rows.refusal_of(row)
     except rows.UNREADABLE as problem:
         raise CampaignFileError(
@@ -153,16 +166,19 @@ def read_spectra(
     connection: sqlite3.Connection, spectrum_id: str | None = None
 ) -> dict[str, Spectrum]:
     """The named spectrum, or all that readings and the open-lead run refer to, by id. Raises
-    CampaignFileError where one cannot be read."""
+    CampaignFileError where one cannot be read or is not what its id says."""
     columns = "SELECT spectrum_id, frequency_hz, real_ohm, imaginary_ohm FROM spectra"
     if spectrum_id is not None:
         found = connection.execute(f"{columns} WHERE spectrum_id = ?", (spectrum_id,))
     else:
         found = connection.execute(f"{columns} WHERE spectrum_id IN ({_IN_USE})")
     try:
-        return rows.spectra_of(found)
+        spectra = rows.spectra_of(found)
+        if not all(spectrum.content_key() == key for key, spectrum in spectra.items()):
+            raise ValueError("The numbers are not those that were kept.")
+        return spectra
     except rows.UNREADABLE as problem:
         which = "one of its spectra" if spectrum_id is None else f"spectrum {spectrum_id}"
         raise CampaignFileError(
-            f"This campaign file is damaged: {which} cannot be read."
+            f"This campaign file is damaged: {which} cannot be read, or was altered."
         ) from problem

@@ -45,9 +45,9 @@ class ParameterSpec:
 
 @dataclass(frozen=True, slots=True)
 class Layer:
-    """`role` is film, film_1, film_2 or interface; `dielectric` is capacitor, constant_phase or
-    graded_film; `ionic` is none or resistor; `diffusion` is none, semi_infinite, open or closed;
-    `next_layer` is behind_ionic or behind_layer."""
+    """`role` is film, film_1, film_2, porous_layer (thin, on bare metal) or interface; `dielectric`
+    is capacitor, constant_phase or graded_film; `ionic` is none or resistor; `diffusion` is none,
+    semi_infinite, open or closed; `next_layer` is behind_ionic or behind_layer."""
 
     role: str
     dielectric: str = "constant_phase"
@@ -62,6 +62,7 @@ _ROLES = {
     "film_1": ("1", "1", "outer film"),
     "film_2": ("2", "2", "inner film"),
     "interface": ("dl", "ct", "interface"),
+    "porous_layer": ("L", "L", "porous layer"),
 }
 
 _DIELECTRICS: dict[str, tuple[el.Element, tuple[tuple[str, str], ...]]] = {
@@ -85,6 +86,7 @@ _RESISTANCE_WORDS = {
     "film_1": "resistance of the outer film",
     "film_2": "resistance of the inner film",
     "interface": "charge-transfer resistance",
+    "porous_layer": "resistance of the porous layer",
 }
 
 _DIFFUSIONS: dict[str, tuple[el.Element, tuple[tuple[str, str], ...]]] = {
@@ -111,7 +113,7 @@ _RANGES = {
     Kind.TIME: (1e-8, 1e8),
     Kind.DEPTH: (1e-3, 1e1),
 }
-_EXPONENT_RANGES = {"interface": (0.5, 1.0)}
+_EXPONENT_RANGES = {"interface": (0.5, 1.0), "porous_layer": (0.5, 1.0)}
 _FILM_EXPONENT_RANGE = (0.6, 1.0)
 
 

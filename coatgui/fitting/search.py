@@ -48,7 +48,7 @@ class Batch:
         return Batch(self.frequency_hz, self.impedance[chosen], self.used[chosen], deviation)
 
     def thinned(self) -> Batch:
-        """Every third point, where there are enough: what ranking rough starts needs."""
+        """Every third point, where there are enough: what the way from afar needs."""
         if self.frequency_hz.size < 3 * _ENOUGH_POINTS:
             return self
         kept = slice(None, None, 3)
@@ -127,9 +127,10 @@ def search(model: CoatingModel, batch: Batch, check: Callable[[], None] | None =
     """The best fit of `model` to each spectrum of the batch, from the spectrum's own starts."""
     size = batch.impedance.shape[0]
     low, high = model.bounds
-    approach = batch.objective(model, logarithmic=True)
+    rough = batch.thinned()
+    approach = rough.objective(model, logarithmic=True)
     offered = candidates(model, batch.frequency_hz, batch.impedance, batch.used)
-    starts, rows = best_starts(batch.thinned().objective(model), offered, _STARTS)
+    starts, rows = best_starts(rough.objective(model), offered, _STARTS)
     ends = approach_bounds(model, batch.impedance, batch.used)
     near = minimise(
         approach, starts, ends[0][rows], ends[1][rows], tolerance=_APPROACH, rows=rows, check=check

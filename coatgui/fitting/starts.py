@@ -18,6 +18,7 @@ import numpy as np
 from coatgui.circuits import CoatingModel, Kind
 from coatgui.circuits.elements import ComplexArray
 from coatgui.fitting.objective import ImpedanceObjective
+from coatgui.fitting.relaxation import relaxation_outline
 from coatgui.fitting.solver import BoolArray, FloatArray, IndexArray
 
 _SPLITS = (0.15, 0.3, 0.45, 0.6, 0.75)
@@ -154,3 +155,31 @@ def approach_bounds(
         place = model.index("R_s")
         low[:, place] = np.maximum(low[:, place], np.log(_LEAST_VISIBLE * smallest))
     return low, high
+
+
+def outline_start(
+    model: CoatingModel, frequency_hz: FloatArray, impedance: ComplexArray, used: BoolArray
+) -> FloatArray | None:
+    """A start (P,) in natural coordinates from the relaxation outline of one spectrum: its fastest
+    hump is the film's arc, its slowest the interface's. None where it shows fewer than two."""
+    outline = relaxation_outline(frequency_hz, impedance, used)
+    if outline is None or len(outline.peaks) < 2:
+        return None
+    film, interface = outline.peaks[0], outline.peaks[-1]
+    values = []
+    for spec in model.parameters:
+        hump = film if spec.layer < len(model.layers) else interface
+        if spec.kind is Kind.RESISTANCE:
+            value = outline.series_resistance_ohm if spec.layer == 0 else hump.resistance_ohm
+        elif spec.kind in (Kind.CAPACITANCE, Kind.CONSTANT_PHASE):
+            value = hump.time_constant_s / hump.resistance_ohm
+        elif spec.kind is Kind.EXPONENT:
+            value = 0.9
+        elif spec.kind is Kind.WARBURG:
+            value = 0.1 * hump.resistance_ohm / np.sqrt(hump.time_constant_s)
+        elif spec.kind is Kind.TIME:
+            value = hump.time_constant_s
+        else:
+            value = 0.1 if spec.kind is Kind.DEPTH else 1e-6
+        values.append(float(np.clip(value, spec.low, spec.high)))
+    return model.natural(np.array(values))

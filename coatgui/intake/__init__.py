@@ -11,12 +11,15 @@ from coatgui.intake.folder import (
 )
 from coatgui.intake.names import NamePattern
 from coatgui.intake.proposals import Correction, DryRun, Proposal, Standing, Told
-from coatgui.intake.reading import read_again, read_spectra
+from coatgui.intake.reading import first_guess, read_again, read_as_told, read_spectra
+from coatgui.intake.template import read_lists, template
+from coatgui.intake.watch import FolderWatch
 
 __all__ = [
     "SPECTRUM_ENDINGS",
     "Correction",
     "DryRun",
+    "FolderWatch",
     "NamePattern",
     "Proposal",
     "Standing",
@@ -24,10 +27,14 @@ __all__ = [
     "Unclear",
     "Unreadable",
     "UnreadableFolder",
+    "first_guess",
     "propose_files",
     "propose_folder",
     "read_again",
+    "read_as_told",
     "read_files",
     "read_folder",
+    "read_lists",
     "read_spectra",
+    "template",
 ]

@@ -40,7 +40,7 @@ def assigned(
     by_name = _name_says(file, known.told)
     doubts = list(piece.doubts)
     panel = _panel(piece, file, said, listed, by_name, several_panels, doubts)
-    hours = _hours(piece, panel, said, listed, by_name, known, alone, doubts)
+    hours = _hours(piece, panel, said, listed, by_name, known, alone, several_panels, doubts)
     if not panel or hours is None:
         raise Unclear(
             "Neither its name nor its columns nor a readings list says which panel and exposure "
@@ -106,6 +106,7 @@ def _hours(
     by_name: NameSays,
     known: Known,
     alone: bool,
+    several_panels: bool,
     doubts: list[str],
 ) -> float | None:
     if said.exposure_h is not None:
@@ -126,6 +127,11 @@ def _hours(
             )
         return piece.exposure_h
     if by_name.exposure_h is not None:
+        if not alone and not several_panels:
+            raise Unclear(
+                "The file holds several spectra, and its name gives all of them one panel and "
+                "time: say in readings.csv, with its column 'part', which is which."
+            )
         return by_name.exposure_h
     return _since_start(piece, panel, by_name, known)
 

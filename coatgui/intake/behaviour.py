@@ -24,7 +24,8 @@ def columns_by_behaviour(numbers: FloatArray, is_word: list[bool]) -> tuple[Colu
     running = [i for i in usable if i not in counting and _runs(numbers[:, i])]
     if not running:
         raise NoSpectrum(
-            "There are no headings, and no column runs like a frequency: add a line of headings."
+            "No headings say what the columns are, and no column runs like a frequency: add a "
+            "line of headings."
         )
     frequency = running[0]
     rest = [i for i in usable if i not in counting and i > frequency]
@@ -33,8 +34,8 @@ def columns_by_behaviour(numbers: FloatArray, is_word: list[bool]) -> tuple[Colu
         rest = _without_the_same_again(numbers, rest)
     if len(rest) != 2:
         raise Unclear(
-            f"There are no headings, and beside the frequency stand {len(rest)} columns where two "
-            f"are wanted: {_ASK}"
+            "No headings say what the columns are, and beside the frequency stand "
+            f"{len(rest)} columns where two are wanted: {_ASK}"
         )
     first, second, factor = _two_columns(
         numbers[:, frequency], numbers[:, rest[0]], numbers[:, rest[1]]
@@ -96,13 +97,13 @@ def _two_columns(
     errors.sort()
     if not errors or errors[0][0] > _WITHIN:
         raise Unclear(
-            "There are no headings, and the columns beside the frequency behave neither like real "
-            f"and imaginary part nor like modulus and phase: {_ASK}"
+            "No headings say what the columns are, and those beside the frequency behave neither "
+            f"like real and imaginary part nor like modulus and phase: {_ASK}"
         )
     if len(errors) > 1 and errors[1][0] < _BETTER * max(errors[0][0], 0.02):
         raise Unclear(
-            f"There are no headings, and the columns could be {errors[0][1]} and {errors[0][2]} or "
-            f"{errors[1][1]} and {errors[1][2]}: {_ASK}"
+            "No headings say what the columns are, and they could be "
+            f"{errors[0][1]} and {errors[0][2]} or {errors[1][1]} and {errors[1][2]}: {_ASK}"
         )
     return errors[0][1], errors[0][2], errors[0][3]
 

@@ -37,6 +37,7 @@ class Extract:
     hours_in_words: bool = False
     told: bool = False
     remarks: list[str] = field(default_factory=list)
+    doubts: list[str] = field(default_factory=list)
 
     def column(self, role: str) -> Column:
         return next(column for column in self.columns if column.role == role)
@@ -67,7 +68,14 @@ def extracts_of(section: Section) -> list[Extract]:
         is_word = [_is_words(block, i) for i in range(block.width)]
         columns = columns_by_behaviour(block.table(), is_word)
         made = extract(section, columns, section.said, alone=True)
-        made.remarks.append("No headings: the columns were recognised by their numbers.")
+        unknown = _headings_not_understood(section)
+        if unknown:
+            made.doubts.append(
+                f"The headings '{unknown[:60]}' were not understood: the columns were recognised "
+                "by their numbers."
+            )
+        else:
+            made.remarks.append("No headings: the columns were recognised by their numbers.")
         return [made]
     result = []
     for group, said in section.groups:
@@ -83,6 +91,15 @@ def extracts_of(section: Section) -> list[Extract]:
         made.remarks += remarks
         result.append(made)
     return result
+
+
+def _headings_not_understood(section: Section) -> str:
+    """A row of words, one over each column, right above the numbers."""
+    row = section.between[-1] if section.between else None
+    if row is None or section.block.lines[0] - row.line > 2 or section.block.width < 3:
+        return ""
+    words = [cell for cell in row.cells if isinstance(cell, str) and cell]
+    return ", ".join(words) if len(words) >= section.block.width else ""
 
 
 def _columns(section: Section, group: list[int]) -> tuple[tuple[Column, ...], bool, list[str]]:

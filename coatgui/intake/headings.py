@@ -7,7 +7,7 @@ import re
 import unicodedata
 from collections.abc import Iterator
 from dataclasses import dataclass, replace
-from functools import cache
+from functools import cache, lru_cache
 
 from coatgui.intake.labels import time_in
 from coatgui.intake.units import Unit, data, kind_of, unit_of
@@ -47,7 +47,7 @@ def _roles() -> dict[frozenset[str], str]:
     return {frozenset(way): role for role, ways in data()["role"].items() for way in ways}
 
 
-@cache
+@lru_cache(maxsize=5000)
 def meaning(heading: str) -> Meaning | None:
     """The meaning of a heading, or None where it is not one of the known ones."""
     text = unicodedata.normalize("NFKC", heading.translate(_PRIMES)).translate(_PRIMES).strip()
@@ -128,7 +128,7 @@ def _partings(text: str) -> Iterator[tuple[str, str, bool]]:
             yield name, "".join(pieces[-back:]).replace("_", " "), False
 
 
-@cache
+@lru_cache(maxsize=5000)
 def _named(name: str) -> Meaning | None:
     """The role that a name without a unit has, with the time and the label in it."""
     notions = _notions_in(name)

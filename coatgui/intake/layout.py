@@ -11,12 +11,13 @@ from itertools import pairwise
 from coatgui.intake.headings import Meaning, meaning, take_unit
 from coatgui.intake.labels import label_in, moment_in, time_in
 from coatgui.intake.segments import Block, Piece, TextRow
-from coatgui.intake.units import Unit, kind_of, unit_of
+from coatgui.intake.units import Unit, data, kind_of, unit_of
 
 FREQUENCIES = ("frequency", "angular_frequency")
 SHARED = ("time", "panel", "date")
 _KINDS = ("frequency", "angular_frequency", "impedance", "admittance", "capacitance", "angle")
 _ROWS_LOOKED_AT = 8
+_ROWS_WITH_UNITS = 60
 _MOST_WORDS_IN_HEADINGS = 60
 _KEY_AND_VALUE = re.compile(r"^\s*([^:=]{1,40}?)\s*[:=]\s*(\S.*)$")
 
@@ -55,8 +56,9 @@ def sections_of(pieces: Sequence[Piece]) -> tuple[list[Section], list[TextRow]]:
     for piece in pieces:
         if isinstance(piece, TextRow):
             rows.append(piece)
-            units = {**units, **_units_in(piece)}
             continue
+        for row in rows[-_ROWS_WITH_UNITS:]:
+            units = {**units, **_units_in(row)}
         previous = sections[-1] if sections else None
         section = _section(piece, rows, units, previous)
         if section is None:
@@ -196,7 +198,7 @@ def _said(rows: list[TextRow], bare: bool) -> Said:
     """From lines like "Exposure: 24 h", "Panel;A1", "Date: 2026-03-01 14:20"; and, where `bare`,
     from a line that is nothing but a label."""
     said = Said()
-    for row in rows:
+    for row in rows[-_ROWS_WITH_UNITS:]:
         cells = [str(cell).strip() for cell in row.cells if cell != ""]
         if len(cells) == 1:
             cells = [cell.strip() for cell in re.split(r"[;\t|,]", cells[0]) if cell.strip()]
@@ -242,8 +244,6 @@ def _with_pair(said: Said, key: str, value: str) -> Said:
 
 def meaning_is_exposure(text: str) -> bool:
     """Whether a text speaks of exposure, and not of any time."""
-    from coatgui.intake.units import data
-
     words = re.findall(r"[^\W\d_]+", text.casefold())
     return any(word in data()["notion"]["exposure"] for word in words)
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Iterable
+from collections.abc import Callable, Iterable
 from dataclasses import dataclass
 from functools import cache
 
@@ -34,15 +34,38 @@ def _pattern(style: Style) -> re.Pattern[str]:
     return re.compile(rf"[+\-−]?(?:{whole}(?:{point}\d*)?|{point}\d+){_EXPONENT}")
 
 
+def number_reader(style: Style) -> Callable[[str], float | None]:
+    """A function that gives the number in a cell, or None where it holds none. Numbers may overflow
+    to infinity."""
+    match = _pattern(style).fullmatch
+    thousands, comma = style.thousands, style.decimal_sign == ","
+
+    def read(cell: str) -> float | None:
+        if not match(cell):
+            return None
+        if thousands:
+            cell = cell.replace(thousands, "")
+        if comma:
+            cell = cell.replace(",", ".")
+        try:
+            return float(cell)
+        except ValueError:
+            return float(cell.translate(_ODD_MINUS))
+
+    return read
+
+
+@cache
+def line_pattern(style: Style, delimiter: str) -> re.Pattern[str]:
+    """Lines of nothing but numbers of a style, parted by a delimiter ("" for blanks)."""
+    one = rf"\s*{_pattern(style).pattern}\s*"
+    between = re.escape(delimiter) if delimiter else r"\s"
+    return re.compile(rf"{one}(?:{between}{one})+")
+
+
 def number(cell: str, style: Style) -> float | None:
-    """The number in a cell, or None where it holds none. It may overflow to infinity."""
-    if not _pattern(style).fullmatch(cell):
-        return None
-    if style.thousands:
-        cell = cell.replace(style.thousands, "")
-    if style.decimal_sign == ",":
-        cell = cell.replace(",", ".")
-    return float(cell.translate(_ODD_MINUS))
+    """The number in one cell; see `number_reader`."""
+    return number_reader(style)(cell)
 
 
 def looks_numeric(cell: str) -> bool:

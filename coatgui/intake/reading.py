@@ -16,7 +16,7 @@ from coatgui.intake.layout import Section, sections_of
 from coatgui.intake.segments import segment_rows, segment_text
 from coatgui.intake.spectra import Origin, Piece, pieces, pieces_as_told, with_parts
 from coatgui.intake.workbook import Sheet, is_workbook, read_workbook
-from coatgui.records import Dialect, FoundReading, Source
+from coatgui.records import Column, Dialect, FoundReading, Source
 
 _SAMPLE_LINES = 400
 _SAMPLE_CHARACTERS = 400_000
@@ -160,3 +160,39 @@ def _sections_as_told(data: bytes, dialect: Dialect) -> Iterator[list[Section]]:
         raise Unreadable(
             f"The file cannot be read as '{dialect.encoding[:20]}': choose another encoding."
         ) from None
+
+
+def first_guess(data: bytes) -> Dialect:
+    """How the first table of a file would be cut, for a person to say what its columns are where
+    that is not understood: line 0 for every table, "other" for a column of unknown meaning. Raises
+    Unreadable where there is no table of numbers."""
+    if is_workbook(data):
+        sheets = ((s, tables) for s in read_workbook(data) for tables in [list(s.tables())])
+        sheet, tables = next(((s, t) for s, t in sheets if t), (None, []))
+        if sheet is None:
+            raise NoSpectrum(NOTHING)
+        encoding, delimiter, sign = WORKBOOK, sheet.title, sheet.style.decimal_sign
+        sections = sections_of(segment_rows(tables[0], sheet.style))[0]
+    else:
+        encoding = encoding_of(data)
+        cut = find_cut(_sample(lines_of(data, encoding)))
+        delimiter, sign = cut.delimiter, cut.style.decimal_sign
+        sections = sections_of(segment_text(lines_of(data, encoding), cut))[0]
+    if not sections:
+        raise NoSpectrum(NOTHING)
+    section = sections[0]
+    columns = []
+    for place in range(section.block.width):
+        heading = section.headings[place] if place < len(section.headings) else ""
+        said = section.meanings[place] if place < len(section.meanings) else None
+        unit = said.unit if said is not None else None
+        columns.append(
+            Column(
+                place,
+                heading,
+                said.role if said is not None else "other",
+                unit.written if unit is not None else "",
+                unit.factor if unit is not None else 1.0,
+            )
+        )
+    return Dialect(encoding, delimiter, sign, 0, tuple(columns))

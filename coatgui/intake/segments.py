@@ -16,11 +16,14 @@ import numpy as np
 
 from coatgui.intake.cut import BLANKS, Cut
 from coatgui.intake.errors import Unreadable
-from coatgui.intake.numbers import Style, number
+from coatgui.intake.numbers import Style, line_pattern, number_reader
 from coatgui.records import FloatArray
 
 Cell = str | float
-MOST_COLUMNS = 500
+MOST_COLUMNS = 256
+_MOST_TABLES = 4_000
+_MOST_ODD_ROWS = 100_000
+_MOST_LABELS = 50_000
 _MOST_WORDS = 20_000_000  # characters outside tables
 _FEWEST_ROWS = 3
 _COMMENT = re.compile(r"^\s*(#+|%+|!+|//+|\*+)\s*")
@@ -40,12 +43,13 @@ class TextRow:
 class Block:
     """Consecutive rows of numbers. `numbers` is flat, row by row; cells that are words or empty
     are NaN there, and `words` says for each column which word holds from which row on (None where
-    it is a number)."""
+    it is a number); `present` are the words of the last row."""
 
     width: int
     numbers: array[float] = field(default_factory=lambda: array("d"))
     lines: array[int] = field(default_factory=lambda: array("q"))
     words: dict[int, list[tuple[int, str | None]]] = field(default_factory=dict)
+    present: dict[int, str] = field(default_factory=dict)
     first: list[TextRow] = field(default_factory=list)
 
     def __len__(self) -> int:
@@ -72,7 +76,10 @@ class Segmenter:
 
     def __init__(self, style: Style) -> None:
         self.pieces: list[Piece] = []
-        self._style = style
+        self._number = number_reader(style)
+        self._odd_rows = 0
+        self._tables = 0
+        self._labels = 0
         self._block: Block | None = None
         self._characters = 0
 
@@ -85,11 +92,17 @@ class Segmenter:
 
     def row(self, line: int, cells: Sequence[Cell], raw: str = "") -> None:
         """A row that was not read at a glance: numbers, words or both."""
+        self._odd_rows += 1
+        if self._odd_rows > _MOST_ODD_ROWS:
+            raise Unreadable(
+                f"The file has over {_MOST_ODD_ROWS} rows that are not plain numbers: split it."
+            )
+        read = self._number
         values: list[float] = []
         words: dict[int, str] = {}
         numeric = 0
         for i, cell in enumerate(cells):
-            value = cell if isinstance(cell, float) else number(cell, self._style)
+            value = cell if isinstance(cell, float) else read(cell)
             if value is None:
                 values.append(math.nan)
                 words[i] = str(cell)
@@ -106,9 +119,27 @@ class Segmenter:
         """A row of nothing but numbers in a table under way, the usual case; False where it is
         anything else and wants a closer look."""
         block = self._block
-        if block is None or block.words or len(values) != block.width:
+        if block is None or block.present or len(values) != block.width:
             return False
         if len(block.lines) < _FEWEST_ROWS or not math.isfinite(sum(values)):
+            return False
+        block.numbers.extend(values)
+        block.lines.append(line)
+        return True
+
+    def as_before(self, line: int, cells: list[str]) -> bool:
+        """A row with the same words in the same columns as the one before, and plain numbers."""
+        block = self._block
+        if block is None or len(cells) != block.width or len(block.lines) < _FEWEST_ROWS:
+            return False
+        present = block.present
+        try:
+            values = [float(cell) if i not in present else math.nan for i, cell in enumerate(cells)]
+        except ValueError:
+            return False
+        known = [value for i, value in enumerate(values) if i not in present]
+        same = all(cells[i] == word for i, word in present.items())
+        if not same or len(known) < 2 or not math.isfinite(sum(known)):
             return False
         block.numbers.extend(values)
         block.lines.append(line)
@@ -139,10 +170,16 @@ class Segmenter:
             runs = block.words.setdefault(i, [])
             if not runs or runs[-1][1] != word:
                 runs.append((place, word))
+                self._labels += 1
         if block.words:
             for i, runs in block.words.items():
                 if i not in words and runs[-1][1] is not None:
                     runs.append((place, None))
+        block.present = words
+        if self._labels > _MOST_LABELS:
+            raise Unreadable(
+                f"The words in the table change over {_MOST_LABELS} times: split the file."
+            )
         block.numbers.extend(values)
         block.lines.append(line)
         if place < _FEWEST_ROWS:
@@ -151,6 +188,9 @@ class Segmenter:
     def _close(self) -> None:
         """A block of one or two rows may be numbers in a preamble: keep its rows as text, too."""
         if self._block is not None:
+            self._tables += 1
+            if self._tables > _MOST_TABLES:
+                raise Unreadable(f"The file holds over {_MOST_TABLES} tables: split it.")
             self.pieces.append(self._block)
             self._block = None
 
@@ -165,17 +205,25 @@ def segment_text(lines: Iterable[str], cut: Cut) -> list[Piece]:
     split = cut.splitter()
     between = None if cut.delimiter == BLANKS else cut.delimiter
     comma = cut.style.decimal_sign == ","
-    at_a_glance = not cut.style.thousands and not (comma and cut.delimiter == ",")
+    gap = cut.style.thousands
+    parted = line_pattern(cut.style, between or "").fullmatch
+    at_a_glance = not (comma and cut.delimiter == ",") and gap != cut.delimiter
     for line, raw in enumerate(lines, start=1):
-        # Python's numbers may hold underscores; a point among decimal commas needs a closer look.
-        if at_a_glance and "_" not in raw and not (comma and "." in raw):
-            plain = raw.replace(",", ".") if comma else raw
+        # Python's numbers may hold underscores; other signs need a closer look.
+        if at_a_glance and "_" not in raw:
+            plain = _unquoted(raw, between) if '"' in raw else raw
+            if gap and gap in raw:
+                plain = raw.replace(gap, "") if parted(raw) else ""
+            elif comma and "." in raw:
+                plain = ""
+            if comma:
+                plain = plain.replace(",", ".")
+            cells = plain.split(between)
             try:
-                values = list(map(float, plain.split(between)))
+                if segmenter.more(line, list(map(float, cells))):
+                    continue
             except ValueError:
-                pass
-            else:
-                if segmenter.more(line, values):
+                if plain and segmenter.as_before(line, [cell.strip() for cell in cells]):
                     continue
         found = _COMMENT.match(raw)
         if found:
@@ -186,6 +234,16 @@ def segment_text(lines: Iterable[str], cut: Cut) -> list[Piece]:
         if any(cells):
             segmenter.row(line, cells, raw)
     return segmenter.finish()
+
+
+def _unquoted(raw: str, between: str | None) -> str:
+    """A line whose cells all stand in quotation marks and hold nothing else of note, without them;
+    "" for any other."""
+    if between is None or not raw.startswith('"'):
+        return ""
+    inner = raw.count(between)
+    plain = raw.count('"') == 2 * inner + 2 and raw.count(f'"{between}"') == inner
+    return raw.replace('"', "") if plain else ""
 
 
 def segment_rows(rows: Iterable[tuple[int, Sequence[Cell]]], style: Style) -> list[Piece]:

@@ -21,7 +21,7 @@ from coatgui.intake.impedance import (
     impedance_of,
     refuse_contradiction,
 )
-from coatgui.intake.layout import Section
+from coatgui.intake.layout import Section, meaning_is_exposure
 from coatgui.intake.segments import TextRow
 from coatgui.records import ComplexArray, Dialect, FloatArray, Spectrum
 
@@ -85,7 +85,8 @@ def pieces(sections: Sequence[Section], after: Sequence[TextRow], origin: Origin
     doubts = (*passed_over, *_settle_signs(extracts))
     result: list[Piece] = []
     for made in extracts:
-        result += _cut(made, origin, [*remarks, *made.remarks, *doubts], doubts)
+        own = (*made.doubts, *doubts)
+        result += _cut(made, origin, [*remarks, *made.remarks, *own], own)
     return with_parts(result)
 
 
@@ -218,13 +219,6 @@ def _cut(
     told = tuple(dict.fromkeys(remarks))
     result = []
     for hours, panel, rows in _parts(made, frequency):
-        if rows.size < _FEWEST_POINTS:
-            where = f" of {hours:g} h" if hours is not None else ""
-            points = "1 point" if rows.size == 1 else f"{rows.size} points"
-            raise Unreadable(
-                f"The spectrum{where} in line {made.lines[rows[0]]} has only {points}: at least "
-                f"{_FEWEST_POINTS} are needed."
-            )
         own = frequency[rows]
         dialect = Dialect(
             origin.encoding,
@@ -275,6 +269,8 @@ def _parts(made: Extract, frequency: FloatArray) -> list[tuple[float | None, str
     several follow each other."""
     size = frequency.size
     hours = _exposures(made, size)
+    if hours is None and made.panels is None:
+        return [(None, "", sweep) for sweep in _sweeps(frequency, np.arange(size), made)]
     times: list[float | None] = [None]
     time_codes = np.zeros(size, dtype=np.int64)
     if hours is not None:
@@ -298,6 +294,8 @@ def _parts(made: Extract, frequency: FloatArray) -> list[tuple[float | None, str
     order = np.argsort(codes, kind="stable")
     cuts = np.flatnonzero(np.diff(codes[order])) + 1
     result = []
+    sizes = np.diff(np.concatenate([[0], cuts, [size]]))
+    _refuse_short(sizes, order[np.concatenate([[0], cuts])], made)
     for key, rows in zip(keys, np.split(order, cuts), strict=True):
         result += [(*key, sweep) for sweep in _sweeps(frequency, rows, made)]
     return result
@@ -310,6 +308,8 @@ def _exposures(made: Extract, size: int) -> FloatArray | None:
     if np.unique(hours).size > max(1, size // _FEWEST_POINTS):
         return None  # a clock that runs through the sweep, not an exposure time
     column = made.column("time")
+    if column.factor < 1.0 and not (made.told or meaning_is_exposure(column.heading)):
+        return None  # seconds or minutes are how long something took
     if not (column.unit or made.hours_in_words or made.told):
         raise Unclear(
             f"The column '{column.heading[:40]}' names no unit: say whether the exposure is in "
@@ -321,6 +321,7 @@ def _exposures(made: Extract, size: int) -> FloatArray | None:
 def _sweeps(frequency: FloatArray, rows: np.ndarray, made: Extract) -> list[np.ndarray]:
     """Rows parted where the frequency leaps back to the start. Raises Unclear where it turns
     round and comes back."""
+    _refuse_short(np.array([rows.size]), rows[:1], made)
     if rows.size < 2 * _FEWEST_POINTS:
         return [rows]
     with np.errstate(all="ignore"):
@@ -340,7 +341,21 @@ def _sweeps(frequency: FloatArray, rows: np.ndarray, made: Extract) -> list[np.n
                 "remove the other."
             )
         return [rows]
+    starts = np.concatenate([[0], back + 1])
+    _refuse_short(np.diff(np.append(starts, rows.size)), rows[starts], made)
     return np.split(rows, back + 1)
+
+
+def _refuse_short(sizes: np.ndarray, starts: np.ndarray, made: Extract) -> None:
+    """Raises Unreadable for the first part of too few points; `starts` are its first rows."""
+    short = np.flatnonzero(sizes < _FEWEST_POINTS)
+    if short.size:
+        points = int(sizes[short[0]])
+        raise Unreadable(
+            f"The spectrum in line {made.lines[starts[short[0]]]} has only "
+            f"{'1 point' if points == 1 else f'{points} points'}: at least {_FEWEST_POINTS} are "
+            "needed."
+        )
 
 
 def with_parts(found: list[Piece]) -> list[Piece]:

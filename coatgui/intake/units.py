@@ -6,7 +6,7 @@ import re
 import tomllib
 import unicodedata
 from dataclasses import dataclass
-from functools import cache
+from functools import cache, lru_cache
 from typing import Any
 
 from coatgui.shipped import resource
@@ -46,7 +46,7 @@ def kind_of(role: str) -> str:
     return role if role in ("frequency", "angular_frequency", "time") else ""
 
 
-@cache
+@lru_cache(maxsize=5000)
 def unit_of(text: str, kind: str) -> Unit | None:
     """The unit, where the text is one of this kind; else None."""
     written = unicodedata.normalize("NFKC", text).strip().strip("[](){}").strip()

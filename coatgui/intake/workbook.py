@@ -23,11 +23,11 @@ from coatgui.intake.errors import Unclear, Unreadable
 from coatgui.intake.numbers import Style, looks_numeric, style_of
 from coatgui.intake.segments import MOST_COLUMNS, Cell
 
-_MOST_CELLS = 500_000
+_MOST_CELLS = 300_000
 _MOST_ROWS = 200_000
 _MOST_SHEETS = 200
 _LAST_ROW = 1_048_576
-_MOST_UNPACKED = 64_000_000
+_MOST_UNPACKED = 40_000_000
 _MOST_TEXT = 20_000_000
 _CHUNK = 1 << 16
 _FEWEST_IN_COLUMN = 5
@@ -158,11 +158,20 @@ class _Book:
         characters: Callable[[str], None] | None = None,
     ) -> None:
         """Send a part of the archive through a parser, counting what it unpacks to."""
-        parser = expat.ParserCreate(namespace_separator=" ")
+        parser = expat.ParserCreate()
         parser.buffer_text = True
-        parser.StartElementHandler = lambda tag, attributes: start(_local(tag), attributes)
-        if end is not None:
-            parser.EndElementHandler = lambda tag: end(_local(tag))
+
+        def first(tag: str, attributes: dict[str, str]) -> None:
+            """Some programs write every tag with a prefix; most do not, and are read faster."""
+            if ":" in tag:
+                parser.StartElementHandler = lambda tag, found: start(_local(tag), found)
+                parser.EndElementHandler = None if end is None else lambda tag: end(_local(tag))
+            else:
+                parser.StartElementHandler = start
+                parser.EndElementHandler = end
+            start(_local(tag), attributes)
+
+        parser.StartElementHandler = first
         if characters is not None:
             parser.CharacterDataHandler = characters
         parser.StartDoctypeDeclHandler = _no_doctype
@@ -190,6 +199,7 @@ class _Book:
         links: dict[str, str] = {}
 
         def start(tag: str, attributes: dict[str, str]) -> None:
+            self.count_cell()
             if tag == "Relationship" and attributes.get("TargetMode") != "External":
                 target = attributes.get("Target", "")
                 path = target[1:] if target.startswith("/") else posixpath.join("xl", target)
@@ -210,6 +220,7 @@ class _Book:
                 listed.append((attributes.get("name", ""), link))
             elif tag == "workbookPr":
                 from_1904 = attributes.get("date1904") in ("1", "true")
+            self.count_cell()
 
         self.parse(name, start)
         return listed, from_1904
@@ -226,6 +237,8 @@ class _Book:
                 parts.clear()
             elif tag == "rPh":
                 phonetic = True
+            elif tag != "t":
+                self.count_cell()
             inside = tag == "t" and not phonetic
 
         def end(tag: str) -> None:
@@ -259,7 +272,8 @@ class _Book:
                 formats[int(attributes.get("numFmtId", "-1"))] = attributes.get("formatCode", "")
             elif tag == "cellXfs":
                 inside = True
-            elif tag == "xf" and inside:
+            self.count_cell()
+            if tag == "xf" and inside:
                 styles.append(int(attributes.get("numFmtId", "0")))
 
         def end(tag: str) -> None:
@@ -299,11 +313,14 @@ class _Rows:
         elif tag in ("v", "t"):
             self._inside = True
         elif tag == "row":
+            self._book.count_cell()
             given = int(attributes.get("r", self._row + 1))
             if given > _LAST_ROW:
                 raise Unreadable(_DAMAGED)
             self._row = given if given > self._row else self._row + 1
             self._column = -1
+        elif tag not in ("is", "f"):
+            self._book.count_cell()  # whatever it is, not without end
 
     def characters(self, text: str) -> None:
         if self._inside:
@@ -377,7 +394,7 @@ def _column(letters: str) -> int:
 
 
 def _local(tag: str) -> str:
-    return tag.rpartition(" ")[2]
+    return tag.rpartition(":")[2]
 
 
 def _no_doctype(*_: Any) -> None:

@@ -10,10 +10,11 @@ import numpy as np
 from coatgui.progress import Progress
 from coatgui.quality.consistency import Consistency
 from coatgui.quality.faults import Searched, search
-from coatgui.quality.kramers_kronig import measurement_model, parts
+from coatgui.quality.kramers_kronig import grid_key, measurement_model, parts
 from coatgui.quality.leads import Limit
 from coatgui.quality.passivity import (
     misread_phase,
+    mostly_positive,
     negative_real,
     positive_end,
     positive_imaginary,
@@ -34,6 +35,14 @@ from coatgui.records import (
 )
 
 _TOGETHER = 200  # spectra between two reports of progress
+_SUPPOSED = 0.01  # scatter where it cannot be told
+
+_NOT_TESTED = Finding(
+    "kramers_kronig_not_tested",
+    Severity.NOTE,
+    "The points are too far apart to test the Kramers–Kronig relations or to find wild points, "
+    "steps and drift. Measure five or more points a decade.",
+)
 
 
 def check_spectra(
@@ -59,7 +68,7 @@ def check_spectra(
     for i, spectrum in enumerate(spectra):
         whole = _too_little(spectrum, limits)
         if whole is None:
-            grids.setdefault(spectrum.frequency_hz.tobytes(), []).append(i)
+            grids.setdefault(grid_key(spectrum.frequency_hz), []).append(i)
         else:
             result[i] = whole
     done = sum(check is not None for check in result)
@@ -81,12 +90,13 @@ def check_spectra(
 def kramers_kronig_residuals(spectrum: Spectrum, settings: Settings) -> ComplexArray:
     """Relative departures (N,) of a spectrum from its measurement model, as the checks see them, to
     be shown against frequency: real part of |Z|, imaginary part of the phase (rad). NaN where
-    nothing was measured, and everywhere if the spectrum is too short to be checked."""
+    nothing was measured, and everywhere if there are too few points to test them."""
     limits = thresholds(settings)
     if _too_little(spectrum, limits) is not None:
         return np.full(len(spectrum), np.nan + 0j)
     batch = _Batch(spectrum.frequency_hz, spectrum.impedance_ohm[None], limits)
-    return np.where(batch.dead[0], np.nan, batch.searched[0].residuals)
+    hidden = batch.dead[0] if batch.testable else True
+    return np.where(hidden, np.nan, batch.searched[0].residuals)
 
 
 def _too_little(spectrum: Spectrum, limits: dict[str, float]) -> Check | None:
@@ -110,10 +120,18 @@ class _Batch:
         model = measurement_model(frequency_hz)
         filled = np.where(self.dead, np.abs(impedance).max(axis=1, keepdims=True), impedance)
         logarithm = parts(np.log(filled))
-        self.misread = misread_phase(model, logarithm)
+        self.testable = model.testable
         self.positive = positive_end(impedance)
         self.blocked: BoolArray = self.positive | self.dead
-        self.searched: list[Searched] = search(model, logarithm, self.blocked, Levels.of(limits))
+        self.misread: list[Finding | None]
+        self.searched: list[Searched]
+        if model.testable:
+            self.misread = misread_phase(model, logarithm)
+            self.searched = search(model, logarithm, self.blocked, Levels.of(limits))
+        else:
+            nothing = np.zeros(frequency_hz.size, dtype=np.complex128)
+            self.misread = [mostly_positive(z) for z in impedance]
+            self.searched = [Searched((), nothing, nothing, _SUPPOSED) for _ in impedance]
 
 
 def _check(
@@ -146,7 +164,11 @@ def _check(
         blocked,
         {p for f in named for p in f.points},
     )
-    findings += [*named, *consistency.findings(suggested)]
+    findings += named
+    if batch.testable:
+        findings += consistency.findings(suggested)
+    else:
+        findings.append(_NOT_TESTED)
     findings += limit.findings(spectrum, limits)
     used = ~blocked
     used[list(suggested)] = False

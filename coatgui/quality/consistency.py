@@ -144,9 +144,9 @@ class Consistency:
 
     def _single(self, suggested: dict[int, str]) -> Iterator[Finding]:
         for place, fault in sorted(self.wild.items()):
-            mains = self._is_mains(place)
-            if place in self.scattered and not mains:
+            if place in self.scattered:
                 continue
+            mains = self._is_mains(place)
             at, off = float(self.frequency[place]), _departure(fault.size)
             words = "mains pick-up" if mains else "wild point"
             suggested[place] = words
@@ -176,12 +176,13 @@ class Consistency:
             sizes += (np.abs(left[left != 0]) * self.searched.scatter / np.sqrt(2)).tolist()
             rms = 100 * float(np.sqrt(np.mean(np.square(sizes))))
             slow, fast = (float(self.frequency[p]) for p in (stop - 1, start))
+            mains = any(self._is_mains(p) for p in self.scattered if start <= p < stop)
             yield Finding(
                 "scatter",
                 Severity.DOUBT,
                 f"Between {hertz(slow)} and {hertz(fast)} the points scatter by {rms:.2g} %, far "
-                "more than elsewhere: look for a loose contact or a disturbance, and measure "
-                "again.",
+                f"more than elsewhere{' (mains lie among them)' * mains}: look for a loose contact "
+                "or a disturbance, and measure again.",
                 tuple(range(start, stop)),
                 (("percent", rms), ("low_hz", slow), ("high_hz", fast)),
             )
@@ -190,9 +191,10 @@ class Consistency:
         for fault in sorted(self.steps, key=lambda f: f.place):
             before, after = (float(self.frequency[fault.place - i]) for i in (1, 0))
             percent = 100 * float(np.expm1(fault.size.real))
+            large = 100 * abs(fault.size.real) >= self.limits["step_doubt_percent"]
             yield Finding(
                 "step",
-                Severity.DOUBT,
+                Severity.DOUBT if large else Severity.NOTE,
                 f"|Z| steps {'up' if percent > 0 else 'down'} by {abs(percent):.2g} % between "
                 f"{hertz(before)} and {hertz(after)}, which no circuit does: the instrument "
                 "changed its range there or the panel changed. Compare with a sweep on a fixed "

@@ -5,7 +5,7 @@ fixed, log-spaced time constants on the data: linear, so that a causal and stabl
 followed down to its scatter without knowing its circuit, and what cannot be followed breaks the
 Kramers–Kronig relations. A passive specimen has neither zeros nor poles in the right half-plane,
 so that the logarithm of its impedance obeys the same relations (Bode, Network Analysis and
-Feedback Amplifier Design, 1945, chapter 14: the phase follows from the modulus), and
+Feedback Amplifier Design, 1945, from memory: the phase follows from the modulus), and
 
     ln Z = c - Σ θ_k [ln(1 + jωτ_{k+1}) - ln(1 + jωτ_k)],   τ_k fixed, log-spaced,
 
@@ -35,6 +35,7 @@ _BEYOND = 1.0  # decades of time constants beyond the window, either side
 _CONSTANT = 30.0  # the modulus itself is free: ln|Z| goes up to about this
 _LEVELS = (3e-2, 1e-2, 2e-3, 1.5e-4)
 _USUAL = 1  # the level that shows the scatter
+_ALIKE = 1e-4  # of ln f
 _SAYING = (0.05, 5.0)  # singular values, in units of the scatter, where the levels may end
 
 
@@ -51,7 +52,8 @@ def complexes(values: FloatArray) -> ComplexArray:
 
 class MeasurementModel:
     """The model on one grid of N frequencies. `directions` (2N, K) are orthonormal, the most
-    important first; `levels` are numbers of them to choose from."""
+    important first; `levels` are numbers of them to choose from. Where `testable` is False the grid
+    is too sparse: the model has nearly as many terms as there are numbers, and tests nothing."""
 
     def __init__(self, frequency_hz: FloatArray) -> None:
         self.frequency_hz = frequency_hz
@@ -70,9 +72,9 @@ class MeasurementModel:
         )
         u, singular, _ = np.linalg.svd(parts(basis.T).T, full_matrices=False)
         # Few points cannot hold many terms: at least half of the numbers stay free.
-        self.levels = tuple(
-            min(int((singular > level).sum()), frequency_hz.size) for level in _LEVELS
-        )
+        needed = [int((singular > level).sum()) for level in _LEVELS]
+        self.levels = tuple(min(count, frequency_hz.size) for count in needed)
+        self.testable = needed[0] < frequency_hz.size
         self.directions: FloatArray = u[:, : self.levels[-1]]
 
     def level(self, logarithm: FloatArray) -> list[int]:
@@ -99,11 +101,19 @@ class MeasurementModel:
         return np.asarray(logarithm - (logarithm @ u) @ u.T, dtype=np.float64)
 
 
-@lru_cache(maxsize=32)
-def _model(grid: bytes) -> MeasurementModel:
-    return MeasurementModel(np.frombuffer(grid, dtype=np.float64))
+def grid_key(frequency_hz: FloatArray) -> bytes:
+    """What tells grids (N,) apart for the model: ratios of frequencies, for the time constants are
+    laid by the window, and to 1e-4, which moves ln Z by as much at most."""
+    ratios = np.log(frequency_hz / frequency_hz[0])
+    return bytes((np.round(ratios / _ALIKE) * _ALIKE + 0.0).tobytes())
+
+
+@lru_cache(maxsize=256)
+def _model(key: bytes) -> MeasurementModel:
+    return MeasurementModel(np.exp(np.frombuffer(key, dtype=np.float64)))
 
 
 def measurement_model(frequency_hz: FloatArray) -> MeasurementModel:
-    """The model on a grid (N,), kept for the next spectrum on the same grid."""
-    return _model(np.ascontiguousarray(frequency_hz, dtype=np.float64).tobytes())
+    """The model on a grid (N,), kept for the next spectrum on a grid of the same ratios; its own
+    frequencies are relative to the first."""
+    return _model(grid_key(frequency_hz))

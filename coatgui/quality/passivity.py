@@ -20,6 +20,11 @@ _MOST = 0.5  # share of the points
 _BETTER = 0.3  # of the departure is left if another reading of the phase is right
 _FOLLOWED = 0.01  # departure of a phase that was understood
 _SURE_SIGMA = 5.0
+_TOGETHER = 3  # points whose real parts are averaged
+_TOGETHER_SIGMA = 3.7
+_AT_END = 4  # points of the fast end whose real parts are averaged
+_END_SIGMA = 2.8
+_LEAST_NEGATIVE = 0.005  # share of |Z|
 _ROUNDS = 8
 _WOUND = 0.018
 
@@ -72,19 +77,28 @@ def misread_phase(model: MeasurementModel, logarithm: FloatArray) -> list[Findin
         "phase_in_radians": np.degrees(phase),
         "phase_in_degrees": _wound(model, logarithm[rows, :half], phase),
     }
-    best = np.full(rows.size, np.inf)
-    for code, other in others.items():
-        off = departure(with_phase(other))
-        right = (off < _BETTER * as_read[rows]) & (as_read[rows] > _FOLLOWED)
-        if code == "wrong_sign":
-            right |= mostly[rows] & (off < as_read[rows])
-        elif code == "phase_in_degrees":
-            # Turns can always be found that leave about 0.03: less is asked for.
-            right &= off < _WOUND
-        for at in np.nonzero(right & (off < best))[0].tolist():
-            result[rows[at]] = Finding(code, Severity.REJECT, _MISTAKES[code])
-        best = np.where(right, np.minimum(best, off), best)
+    left = {code: departure(with_phase(other)) for code, other in others.items()}
+    turned = left["wrong_sign"]
+    sure = {code: off < _BETTER * as_read[rows] for code, off in left.items()}
+    # Turns can always be found that leave about 0.03, so less is asked of them.
+    wound = left["phase_in_degrees"]
+    other_readings = np.minimum(turned, left["phase_in_radians"])
+    sure["phase_in_degrees"] &= (wound < _WOUND) & (wound < _BETTER * other_readings)
+    likely = {"wrong_sign": mostly[rows] & (turned < as_read[rows])}
+    for verdict in (likely, sure):
+        for code, right in verdict.items():
+            for row in rows[right].tolist():
+                result[row] = Finding(code, Severity.REJECT, _MISTAKES[code])
     return result
+
+
+def mostly_positive(impedance: ComplexArray) -> Finding | None:
+    """The same from the plain sight of one spectrum (N,), where no model can be laid on it: most
+    imaginary parts are positive although |Z| falls with frequency, as it does for capacitors."""
+    modulus = np.abs(impedance[impedance != 0])
+    if (impedance.imag > 0).mean() > _MOST and modulus[0] < modulus[-1]:
+        return Finding("wrong_sign", Severity.REJECT, _MISTAKES["wrong_sign"])
+    return None
 
 
 def _wound(model: MeasurementModel, modulus: FloatArray, phase: FloatArray) -> FloatArray:
@@ -147,8 +161,17 @@ def negative_real(
 ) -> Iterator[Finding]:
     """A negative real part over several points or at the fast end: a phase beyond -90°, from
     cables, their screens or the instrument's input."""
-    least = max(_SURE_SIGMA * scatter, 0.005)
-    mask = impedance.real < -least * np.abs(impedance)
+    share = impedance.real / np.maximum(np.abs(impedance), 1e-300)
+    neighbours = np.convolve(np.ones(share.size), np.ones(_TOGETHER), mode="same")
+    mean = np.convolve(share, np.ones(_TOGETHER), mode="same") / neighbours
+    together = mean < -np.maximum(_TOGETHER_SIGMA * scatter / np.sqrt(neighbours), _LEAST_NEGATIVE)
+    alone = share < -max(_SURE_SIGMA * scatter, _LEAST_NEGATIVE)
+    # Cables and inputs act at the fast end: few places to look at, so less is asked there.
+    count = np.arange(1, min(_AT_END, share.size) + 1)
+    first = np.cumsum(share)[: count.size] / count
+    beyond = first < -np.maximum(_END_SIGMA * scatter / np.sqrt(count), _LEAST_NEGATIVE)
+    at_end = np.arange(share.size) < (count[beyond].max() if beyond.any() else 0)
+    mask = (share < 0) & (together | alone | at_end)
     for start, stop in stretches(mask):
         if stop - start == 1 and start > 0:
             continue  # one point alone is a wild point, if it is one

@@ -2,18 +2,23 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from enum import StrEnum
 from functools import lru_cache
 
 import numpy as np
+from numpy.typing import NDArray
 
 from coatgui.records import BoolArray, FloatArray
 
-_DECAYS = (0.0, 0.2, 0.4, 0.7)  # per point after a step: some stay, some die away
+# Per point after a step: some stay, some die away, faster or slower. More of them would find hardly
+# more steps, and more where there are none.
+_DECAYS = (0.0, 0.35)
 _STEP_ENDS = 3  # a step needs so many points on either side
 _DRIFT_DECADES = (1.0, 2.0, 3.0)  # of the slow end
 _DRIFT_SEEN = 0.05  # of its final size, where a drift is said to begin
+_USUAL_POINTS = 71  # of the sweeps that the levels are meant for
 
 
 class Kind(StrEnum):
@@ -34,7 +39,8 @@ class Pattern:
 
 @dataclass(frozen=True, slots=True)
 class Levels:
-    """How far a pattern must stand out: in standard deviations, and as a share of |Z|."""
+    """How far a pattern must stand out: in standard deviations, and as a share of |Z|. Of a sweep
+    whose scatter is well known; see `on_sweep`."""
 
     wild: tuple[float, float]
     step: tuple[float, float]
@@ -48,8 +54,31 @@ class Levels:
         ]
         return cls(*pairs)
 
+    def on_sweep(self, points: int, free: int) -> Levels:
+        """The levels for a sweep of so many points whose model leaves `free` numbers. Few of them
+        tell the scatter less well: the quantile z of a normal distribution becomes that of
+        Student's t, about z·(1 + (z² + 1)/(4·free)) (the first term of Fisher and Cornish's
+        expansion, from memory). More points are more places for chance, so that a long sweep asks
+        for more."""
+        places = 2 * math.log(max(points / _USUAL_POINTS, 1.0))
+
+        def raised(level: tuple[float, float], more: float) -> tuple[float, float]:
+            z = math.sqrt(level[0] ** 2 + more)
+            return z * (1 + (z**2 + 1) / (4 * free)), level[1]
+
+        return Levels(*(raised(level, places) for level in (self.wild, self.step, self.drift)))
+
     def for_kind(self, kind: Kind) -> tuple[float, float]:
         return {Kind.WILD: self.wild, Kind.STEP: self.step, Kind.DRIFT: self.drift}[kind]
+
+
+@lru_cache(maxsize=32)
+def _steps(number: int) -> tuple[FloatArray, NDArray[np.intp]]:
+    """Steps (T, N) on so many points, and the first point after each (T,)."""
+    places = np.arange(_STEP_ENDS, number - _STEP_ENDS + 1)
+    since = np.arange(number) - places[:, None]
+    fading = np.exp(-np.array(_DECAYS)[:, None, None] * np.maximum(since, 0))
+    return (fading * (since >= 0)).reshape(-1, number), np.tile(places, len(_DECAYS))
 
 
 class Patterns:
@@ -59,10 +88,7 @@ class Patterns:
 
     def __init__(self, frequency_hz: FloatArray) -> None:
         number = frequency_hz.size
-        places = np.arange(_STEP_ENDS, number - _STEP_ENDS + 1)
-        since = np.arange(number) - places[:, None]
-        fading = np.exp(-np.array(_DECAYS)[:, None, None] * np.maximum(since, 0))
-        steps = (fading * (since >= 0)).reshape(-1, number)
+        steps, places = _steps(number)
         time = frequency_hz[-1] / frequency_hz
         above = -np.log10(time)
         slow = [np.clip(1 - above / decades, 0, 1) for decades in _DRIFT_DECADES]
@@ -70,15 +96,14 @@ class Patterns:
         real = np.vstack([steps, drifts])
         self.rows: FloatArray = np.hstack([real, np.zeros_like(real)])
         starts = np.argmax(drifts > _DRIFT_SEEN, axis=1)
-        kinds = [Kind.STEP] * len(steps) + [Kind.DRIFT] * len(drifts)
-        self.found = [
-            Pattern(kind, place, row)
-            for row, (kind, place) in enumerate(
-                zip(kinds, [*places.tolist() * len(_DECAYS), *starts.tolist()], strict=True)
-            )
-        ]
+        self.places = np.concatenate([places, starts])
         self.squares: FloatArray = (real**2).sum(axis=1)
         self.is_step: BoolArray = np.arange(len(real)) < len(steps)
+
+    def found(self, number: int) -> Pattern:
+        """What a row is."""
+        kind = Kind.STEP if self.is_step[number] else Kind.DRIFT
+        return Pattern(kind, int(self.places[number]), number)
 
     def vectors(self, pattern: Pattern) -> FloatArray:
         """The vectors (1 or 2, 2N) of one pattern."""
@@ -90,7 +115,7 @@ class Patterns:
         return result
 
 
-@lru_cache(maxsize=32)
+@lru_cache(maxsize=256)
 def _patterns(grid: bytes) -> Patterns:
     return Patterns(np.frombuffer(grid, dtype=np.float64))
 

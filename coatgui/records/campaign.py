@@ -84,6 +84,55 @@ class Settings:
 
 
 @dataclass(frozen=True, slots=True)
+class Identification:
+    """What a summary names besides the campaign: for whom, by whom, after which standards."""
+
+    laboratory: str = ""
+    customer: str = ""
+    order: str = ""
+    author: str = ""
+    reviewer: str = ""
+    standards: tuple[str, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class VisualRating:
+    """What a person saw on a panel, in the words of a named scale and edition. `scale` is a scale
+    of `resources/ratings.toml`, `value` as that scale writes it, such as "2(S3)" or "4B"."""
+
+    panel_id: str
+    exposure_h: float
+    scale: str
+    value: str
+    edition: str = ""
+    rater: str = ""
+    remark: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Rating:
+    """A visual rating as the campaign keeps it."""
+
+    rating_id: str
+    seen: VisualRating
+
+
+@dataclass(frozen=True, slots=True)
+class Photograph:
+    """A photograph of a panel. Its bytes lie in the campaign file under `sha256`; `media_type` is
+    what they are by their content, `file` the name they came under, without a folder. `exposure_h`
+    None: no inspection is named."""
+
+    photograph_id: str
+    panel_id: str
+    sha256: str
+    media_type: str
+    exposure_h: float | None = None
+    caption: str = ""
+    file: str = ""
+
+
+@dataclass(frozen=True, slots=True)
 class Campaign:
     """A campaign whole. Ids are random and stable; names may change."""
 
@@ -97,3 +146,6 @@ class Campaign:
     open_lead_source: Source | None = None
     refused: tuple[Refusal, ...] = ()
     remark: str = ""
+    ratings: tuple[Rating, ...] = ()
+    photographs: tuple[Photograph, ...] = ()
+    identification: Identification = Identification()

@@ -102,9 +102,11 @@ class Spectrum:
 class Column:
     """One column of a table as it was understood.
 
-    `role` is one of frequency, angular_frequency, real, imaginary, modulus, phase, time, panel,
-    other; `factor` multiplies the written number to give Hz, rad/s, Ω, rad or h. For the imaginary
-    part and the phase, a negative factor says that the file counts them the other way round.
+    `role` is one of frequency, angular_frequency, real, imaginary, modulus, phase,
+    admittance_real, …_imaginary, …_modulus, …_phase, capacitance_real, …_imaginary, time, panel,
+    date, other, or one of them with "log_" before it for decimal logarithms. `factor` multiplies
+    the written number to give Hz, rad/s, Ω, S, F, rad or h, per specimen. For imaginary parts and
+    phases, a negative factor says that the file counts them the other way round.
     """
 
     position: int

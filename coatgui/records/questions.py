@@ -9,7 +9,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 from enum import StrEnum
 
-from coatgui.records.campaign import Criterion
+from coatgui.records.campaign import Criterion, VisualRating
 
 
 class Side(StrEnum):
@@ -86,20 +86,6 @@ class ProjectionWanted:
     quantity: str
     until_h: float
     frequency_hz: float | None = None
-
-
-@dataclass(frozen=True, slots=True)
-class VisualRating:
-    """What a person saw on a panel, in the words of a named scale and edition. `scale` is a scale
-    of `resources/ratings.toml`, `value` as that scale writes it, such as "2(S3)" or "4B"."""
-
-    panel_id: str
-    exposure_h: float
-    scale: str
-    value: str
-    edition: str = ""
-    rater: str = ""
-    remark: str = ""
 
 
 @dataclass(frozen=True, slots=True)

@@ -139,15 +139,22 @@ class Modulus:
 @dataclass(frozen=True, slots=True)
 class WaterUptake:
     """Apparent water uptake by Brasher–Kingsbury; `reference_h` is the exposure time of the dry
-    reference (0 where it was extrapolated). `by_law` gives what other mixing laws make of the same
-    capacitances, in volume-percent (None where a law fails), `law_low` and `law_high` the ends over
-    those that count as mixtures: the bracket that the choice of law leaves, apart from scatter."""
+    reference (0 where it was extrapolated). `law_percent` gives what the laws of `law_names` make
+    of the same capacitances, in volume-percent (None where a law fails), `law_low` and `law_high`
+    the ends over those that count as mixtures: the bracket that the choice of law leaves, apart
+    from scatter."""
 
     quantity: Quantity
     reference_h: float
     law_low: float | None = None
     law_high: float | None = None
-    by_law: tuple[tuple[str, float | None], ...] = ()
+    law_names: tuple[str, ...] = ()
+    law_percent: tuple[float | None, ...] = ()
+
+    @property
+    def by_law(self) -> tuple[tuple[str, float | None], ...]:
+        """What every mixing law makes of the same capacitances, by name."""
+        return tuple(zip(self.law_names, self.law_percent, strict=True))
 
 
 @dataclass(frozen=True, slots=True)

@@ -7,8 +7,8 @@ from dataclasses import dataclass
 
 @dataclass(frozen=True)
 class Entry:
-    """`method` is the main window's; `needs` is what must be there: "", campaign, work
-    (something under way), undo or redo."""
+    """`method` is the main window's or of one of its helpers; `needs` is what must be there: "",
+    campaign, work (something under way), undo or redo."""
 
     menu: str
     name: str
@@ -28,10 +28,16 @@ ACTIONS = (
           "they are made", "save_as", "campaign"),
     Entry("Campaign", "Bring in files…", "Ctrl+I", "Add spectra to this campaign", "bring_in",
           "campaign"),
+    Entry("Campaign", "Watch a folder…", "", "New spectra in it are told, never taken unasked",
+          "watch_folder", "campaign"),
+    Entry("Campaign", "Stop watching the folder", "", "New files are no longer told",
+          "stop_watching", "campaign"),
     Entry("Campaign", "Write workbook…", "Ctrl+E", "Write the assessment as a workbook",
           "write_workbook", "campaign"),
     Entry("Campaign", "Write data (JSON)…", "", "Write the assessment as data for scripts",
           "write_data", "campaign"),
+    Entry("Campaign", "Save the plot…", "Ctrl+Shift+P", "As SVG or PNG, on white", "save_picture",
+          "campaign"),
     Entry("Campaign", "Judge the readings again", "F5", "Check and fit what has changed",
           "judge_again", "campaign"),
     Entry("Campaign", "Stop the work under way", "Esc", "Nothing is left half-written",
@@ -41,6 +47,12 @@ ACTIONS = (
     Entry("Campaign", "Quit", "Ctrl+Q", "Close the program", "close"),
     Entry("Edit", "Undo", "Ctrl+Z", "Take back the last edit", "undo", "undo"),
     Entry("Edit", "Redo", "Ctrl+Shift+Z", "Do it again", "redo", "redo"),
+    Entry("Edit", "Copy the plot as a picture", "Ctrl+Shift+C", "On white, in print quality",
+          "copy_picture", "campaign"),
+    Entry("Edit", "Copy the data as a table", "Ctrl+Shift+T", "What the plot shows, for a "
+          "spreadsheet", "copy_table", "campaign"),
+    Entry("Edit", "Paste a table of a spectrum", "Ctrl+V", "From the clipboard; it is shown before "
+          "it is taken", "paste_table"),
     Entry("Edit", "Rename", "F2", "Another name for the row picked in the tree", "rename",
           "campaign"),
     Entry("Edit", "Remove from the campaign", "", "Take out the row picked in the tree", "remove",
@@ -51,9 +63,19 @@ ACTIONS = (
     Entry("Go", "Reading", "Ctrl+2", "What does this spectrum say?", "go_reading", "campaign"),
     Entry("Go", "Course", "Ctrl+3", "How is it going?", "go_course", "campaign"),
     Entry("Go", "Doubts", "Ctrl+4", "What needs a person's eye?", "go_doubts", "campaign"),
+    Entry("Go", "Water", "Ctrl+5", "How much water does the film take up, and how fast?",
+          "go_water", "campaign"),
+    Entry("Go", "Comparison", "Ctrl+6", "Which is better, and are we sure?", "go_comparison",
+          "campaign"),
+    Entry("Go", "Settings", "Ctrl+7", "By what is this campaign judged?", "go_settings",
+          "campaign"),
     Entry("Go", "Next inspection", "Ctrl+Right", "This panel, one inspection later", "later",
           "campaign"),
     Entry("Go", "Previous inspection", "Ctrl+Left", "This panel, one inspection earlier", "earlier",
+          "campaign"),
+    Entry("View", "Where does this number come from?", "Ctrl+H", "From the file to the number",
+          "show_origin", "campaign"),
+    Entry("View", "History", "Ctrl+Shift+H", "What was done, by whom and when", "show_history",
           "campaign"),
     Entry("View", "Light or dark", "Ctrl+L", "Change between light and dark colours", "turn_tone"),
     Entry("Help", "Cautions", "F1", "What the results do not say", "show_cautions"),

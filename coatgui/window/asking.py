@@ -18,7 +18,8 @@ class Leave(Enum):
 
 
 def file_to_write(parent: QWidget, title: str, kinds: str, suggested: Path) -> Path | None:
-    """The name of a file to write, with the suggestion's ending; asks before overwriting one."""
+    """The name of a file to write, with the suggestion's ending where it has none that is among the
+    `kinds`; asks before overwriting one."""
     dialog = QFileDialog(parent, title, str(suggested.parent), kinds)
     dialog.setAcceptMode(QFileDialog.AcceptMode.AcceptSave)
     dialog.setDefaultSuffix(suggested.suffix.removeprefix("."))
@@ -29,7 +30,8 @@ def file_to_write(parent: QWidget, title: str, kinds: str, suggested: Path) -> P
         return None
     # A name such as walk.v2 is kept whole: the ending is added, never put in place of another.
     path = Path(chosen[0])
-    return path if path.suffix == suggested.suffix else path.with_name(path.name + suggested.suffix)
+    known = path.suffix and f"*{path.suffix.lower()}" in kinds
+    return path if known else path.with_name(path.name + suggested.suffix)
 
 
 def how_to_leave(parent: QWidget, title: str) -> Leave:

@@ -5,70 +5,35 @@ from __future__ import annotations
 
 import shutil
 import tempfile
-from collections.abc import Callable, Sequence
+from collections.abc import Callable
 from pathlib import Path
 from typing import Any
 
 from PySide6.QtCore import QObject, QTimer, Signal
 
-from coatgui.assessment import assess
-from coatgui.campaign import (
-    CampaignFile,
-    CampaignFileError,
-    Change,
-    Operation,
-    campaign_from_found,
-    operations,
-)
-from coatgui.intake import UnreadableFolder, read_files, read_folder
-from coatgui.jobs import Job, run_in_background, spread_over_processes
+from coatgui.campaign import CampaignFile, CampaignFileError, Change, Operation
+from coatgui.intake import DryRun, UnreadableFolder
+from coatgui.jobs import Job, run_in_background
 from coatgui.output import write_json, write_workbook
-from coatgui.progress import Cancelled, Progress
+from coatgui.progress import Cancelled
 from coatgui.records import Assessment, Campaign, Found, Reading, ReadingAssessment
+from coatgui.window import desk_work as work
 
 _POLL_MS = 60
-
-
-def _assess(campaign: Campaign, file: CampaignFile, progress: Progress) -> Assessment:
-    with spread_over_processes(progress=progress) as spread:
-        return assess(campaign, progress=progress, spread=spread, cache=file)
-
-
-def _open_folder(folder: Path, target: Path, progress: Progress) -> CampaignFile:
-    found = read_folder(folder, progress=progress)
-    return CampaignFile.create(target, campaign_from_found(found, folder.name), found.raw)
-
-
-def _open_file(path: Path, progress: Progress) -> CampaignFile:
-    progress.at("Opening the campaign", 0, 1)
-    return CampaignFile.open(path)
-
-
-def _read(paths: Sequence[Path], progress: Progress) -> list[Found]:
-    folders = [path for path in paths if path.is_dir()]
-    files = [path for path in paths if not path.is_dir()]
-    found = [read_folder(folder, progress=progress) for folder in folders]
-    return [*found, read_files(files, progress=progress)] if files else found
-
-
-def _export(
-    write: Callable[..., None], arguments: tuple[Any, ...], path: Path, progress: Progress
-) -> Path:
-    progress.at("Writing the file", 0, 1)
-    write(*arguments, path)
-    return path
 
 
 class Desk(QObject):
     """Signals: `campaign_changed` when the campaign is another or was edited, `assessed` when a
     new assessment is there, `selected` with a reading's id, `worked` with what a job is doing
-    ("" when idle), `told` with a sentence for the status line, `failed` with one that a person must
+    ("" when idle), `offered` with a folder to be opened and what is proposed, where something in it
+    is doubtful, `told` with a sentence for the status line, `failed` with one that a person must
     see: something that was asked for was not done."""
 
     campaign_changed = Signal()
     assessed = Signal()
     selected = Signal(str)
     worked = Signal(str, int, int)
+    offered = Signal(Path, object)
     told = Signal(str)
     failed = Signal(str)
 
@@ -78,10 +43,12 @@ class Desk(QObject):
         self.assessment: Assessment | None = None
         self.selection = ""
         self.unsaved_folder: Path | None = None
+        self.origin: Path | None = None  # the folder that the campaign was made of just now
         self.job: Job | None = None
         self._then: Callable[[Any], None] | None = None
         self._stale = False  # the assessment is not of the campaign as it is now
         self._halted = False  # a person stopped the judging
+        self._importing = False  # the campaign is being changed: not to be put aside
         self._waiting: list[Callable[[], None]] = []
         self._timer = QTimer(self)
         self._timer.setInterval(_POLL_MS)
@@ -116,6 +83,7 @@ class Desk(QObject):
 
     def _start(self, then: Callable[[Any], None], function: Callable[..., Any], *a: Any) -> None:
         self._put_aside()
+        self._importing = function in (work.bring_in, work.walk_to)
         self._then = then
         self.job = run_in_background(function, *a)
         self._timer.start()
@@ -131,7 +99,7 @@ class Desk(QObject):
         if not job.done:
             return
         self._timer.stop()
-        self.job = None
+        self.job, self._importing = None, False
         self.worked.emit("", 0, 0)
         error = job.error
         if job.cancelled or isinstance(error, Cancelled):
@@ -158,13 +126,19 @@ class Desk(QObject):
         if self.job is not None:
             self.job.cancel()
 
+    def _must_wait(self) -> bool:
+        """Whether the campaign is being changed in the background; says so."""
+        if self._importing:
+            self.failed.emit("The campaign is being changed: try again when that is done.")
+        return self._importing
+
     def _put_aside(self) -> bool:
         """End the work under way at once, without a word; True where there was any."""
         if self.job is None:
             return False
         self.job.cancel()
         self.job.wait(30.0)
-        self.job = None
+        self.job, self._importing = None, False
         self._timer.stop()
         self.worked.emit("", 0, 0)
         return True
@@ -176,16 +150,34 @@ class Desk(QObject):
         if path.is_dir():
             folder = Path(tempfile.mkdtemp(prefix="coatgui-"))
 
-            def opened(file: CampaignFile) -> None:
-                self._take(file, folder)
+            def opened(found: CampaignFile | DryRun) -> None:
+                if isinstance(found, CampaignFile):
+                    self._take(found, folder, path)
+                else:
+                    shutil.rmtree(folder, ignore_errors=True)
+                    self.offered.emit(path, found)
 
-            self._start(opened, _open_folder, path, folder / f"{path.name or 'campaign'}.coatgui")
+            self._start(
+                opened, work.open_folder, path, folder / f"{path.name or 'campaign'}.coatgui"
+            )
         else:
-            self._start(lambda file: self._take(file, None), _open_file, path)
+            self._start(lambda file: self._take(file, None), work.open_file, path)
 
-    def _take(self, file: CampaignFile, folder: Path | None) -> None:
+    def create(self, found: Found, title: str, origin: Path | None) -> None:
+        """Make a new campaign, not saved yet, of what was found (in the folder `origin`)."""
+        folder = Path(tempfile.mkdtemp(prefix="coatgui-"))
+        target = folder / f"{title.replace('/', '-')}.coatgui"
+        self._start(
+            lambda file: self._take(file, folder, origin),
+            work.create_campaign,
+            found,
+            title,
+            target,
+        )
+
+    def _take(self, file: CampaignFile, folder: Path | None, origin: Path | None = None) -> None:
         self.close()
-        self.file, self.unsaved_folder = file, folder
+        self.file, self.unsaved_folder, self.origin = file, folder, origin
         self._pick_first()
         self.campaign_changed.emit()
         refused = len(file.campaign.refused)
@@ -201,7 +193,7 @@ class Desk(QObject):
 
     def save_as(self, path: Path) -> None:
         """Keep the campaign under another name and go on with that file."""
-        if self.file is None:
+        if self.file is None or self._must_wait():
             return
         if self.is_saved and self.file.path == path.absolute():
             self.told.emit(f"{path.name} holds every edit already.")
@@ -232,12 +224,15 @@ class Desk(QObject):
         if self.unsaved_folder is not None:
             shutil.rmtree(self.unsaved_folder, ignore_errors=True)
         self.file, self.assessment, self.unsaved_folder, self.selection = None, None, None, ""
+        self.origin = None
 
     def judge(self) -> None:
         """Assess the campaign in the background."""
+        if self._importing:
+            return  # judging follows by itself
         if self.file is not None and self.file.campaign.readings:
             self._stale, self._halted = True, False
-            self._start(self._judged, _assess, self.file.campaign, self.file)
+            self._start(self._judged, work.judge_campaign, self.file.campaign, self.file)
         elif self.file is not None:
             self._put_aside()
             self.assessment, self._stale = None, False
@@ -264,7 +259,20 @@ class Desk(QObject):
         if self.file is not None:
             self._change(self.file.redo, "Done again: {}")
 
+    def go_to(self, step: int) -> None:
+        """Go back or forward to a step of the history (0: before the first edit)."""
+        if self.file is None or step == (self.file.step or 0) or self._must_wait():
+            return
+
+        def gone(change: Change | None) -> None:
+            if change is not None:
+                self._changed("The campaign is as it was at that step; redo goes forward again.")
+
+        self._start(gone, work.walk_to, self.file, step)
+
     def _change(self, make: Callable[[], Change | None], words: str) -> None:
+        if self._must_wait():
+            return
         try:
             change = make()
         except CampaignFileError as error:
@@ -283,20 +291,18 @@ class Desk(QObject):
         self.told.emit(words)
         self.judge()
 
-    def bring_in(self, paths: Sequence[Path]) -> None:
-        """Add files and folders to the campaign, or start one from them where there is none."""
-        if self.file is None and len(paths) == 1:
-            self.open(paths[0])
-            return
-        if self.file is None:
-            self.failed.emit("Open a folder or a campaign first, then drop files onto it.")
+    def import_found(self, found: Found) -> None:
+        """Add what was found to the campaign, in the background, as one operation."""
+        if self.file is None or self._must_wait():
             return
 
-        def read(found: list[Found]) -> None:
-            for each in found:
-                self.edit(operations.import_found, each)
+        def done(change: Change) -> None:
+            if change.kinds:
+                self._changed(change.name)
+            else:
+                self.told.emit(change.name)
 
-        self._start(read, _read, list(paths))
+        self._start(done, work.bring_in, self.file, found)
 
     # --- selection and output --------------------------------------------------------------
 
@@ -330,6 +336,8 @@ class Desk(QObject):
             self.told.emit(f"Written: {where.name}")
 
         if path.suffix == ".json":
-            self._start(written, _export, write_json, (self.assessment,), path)
+            self._start(written, work.export_to, write_json, (self.assessment,), path)
         else:
-            self._start(written, _export, write_workbook, (self.assessment, self.campaign), path)
+            self._start(
+                written, work.export_to, write_workbook, (self.assessment, self.campaign), path
+            )

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-from PySide6.QtCore import Qt
+from PySide6.QtCore import QEvent, QObject, Qt, Signal
 from PySide6.QtWidgets import QLabel, QScrollArea, QVBoxLayout, QWidget
 
 from coatgui.records import Assessment, Bound, Quantity, ReadingAssessment
@@ -14,10 +14,12 @@ from coatgui.window.places.place import plain_label
 
 @dataclass(frozen=True)
 class Fact:
-    """A line of the column: `kind` is title, name, value, note or caution."""
+    """A line of the column: `kind` is title, name, value, note or caution. `code` names the number
+    in it whose origin can be asked for."""
 
     kind: str
     text: str
+    code: str = ""
 
 
 def facts(reading: ReadingAssessment | None, assessment: Assessment | None) -> list[Fact]:
@@ -35,14 +37,15 @@ def facts(reading: ReadingAssessment | None, assessment: Assessment | None) -> l
         if modulus.quantity is None:
             lines += [Fact("name", name), Fact("value", "not reached by the sweep")]
         else:
-            lines += _said(name, modulus.quantity, modulus.status.value.replace("_", " "))
-    lines += _said("Film capacitance", reading.coating_capacitance)
+            status = modulus.status.value.replace("_", " ")
+            lines += _said(name, modulus.quantity, f"modulus_{modulus.frequency_hz:g}", status)
+    lines += _said("Film capacitance", reading.coating_capacitance, "coating_capacitance")
     water = reading.water_uptake.quantity if reading.water_uptake else None
-    lines += _said("Apparent water uptake", water)
+    lines += _said("Apparent water uptake", water, "water_uptake")
     pores = reading.pore_resistance
     if pores is not None:
         note = pores.method if pores.bound is Bound.AT_LEAST else ""
-        lines += _said("Pore resistance", pores, note)
+        lines += _said("Pore resistance", pores, "pore_resistance", note)
     panel = next((p for p in assessment.panels if p.panel_id == reading.panel_id), None)
     if panel is not None:
         told = [event.text for event in panel.events]
@@ -54,16 +57,19 @@ def facts(reading: ReadingAssessment | None, assessment: Assessment | None) -> l
     return lines
 
 
-def _said(name: str, quantity: Quantity | None, note: str | None = None) -> list[Fact]:
+def _said(name: str, quantity: Quantity | None, code: str, note: str | None = None) -> list[Fact]:
     if quantity is None:
         return []
     note = quantity.method if note is None else note
-    lines = [Fact("name", name), Fact("value", said(quantity))]
+    lines = [Fact("name", name), Fact("value", said(quantity), code)]
     return [*lines, Fact("note", note)] if note else lines
 
 
 class FactsView(QScrollArea):
-    """The column of facts, as labels that can be selected and copied."""
+    """The column of facts, as labels that can be selected and copied. `asked` carries the code of a
+    number that was clicked: where does it come from?"""
+
+    asked = Signal(str)
 
     def __init__(self) -> None:
         super().__init__()
@@ -84,6 +90,7 @@ class FactsView(QScrollArea):
         self._shown = lines
         while len(self._labels) < len(lines):
             label = plain_label()
+            label.installEventFilter(self)
             self._column.insertWidget(len(self._labels), label)
             self._labels.append(label)
         for number, label in enumerate(self._labels):
@@ -98,7 +105,16 @@ class FactsView(QScrollArea):
             top = {"title": 0, "name": 12, "value": 2, "note": 2, "caution": 16}[fact.kind]
             label.setContentsMargins(0, top, 0, 0)
             label.setText(fact.text)
+            label.setToolTip("Click: where does this number come from?" if fact.code else "")
         self.setAccessibleDescription(self.text())
+
+    def eventFilter(self, watched: QObject, event: QEvent) -> bool:
+        if event.type() == QEvent.Type.MouseButtonRelease and watched in self._labels:
+            label = self._labels[self._labels.index(watched)]
+            fact = self._shown[self._labels.index(label)]
+            if fact.code and not label.hasSelectedText():
+                self.asked.emit(fact.code)
+        return False
 
     def text(self) -> str:
         """All of it, a line each."""

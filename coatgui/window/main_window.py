@@ -11,7 +11,6 @@ from PySide6.QtGui import QAction, QCloseEvent, QDragEnterEvent, QDropEvent, QKe
 from PySide6.QtWidgets import (
     QApplication,
     QButtonGroup,
-    QFileDialog,
     QHBoxLayout,
     QLabel,
     QMainWindow,
@@ -25,24 +24,28 @@ from PySide6.QtWidgets import (
 )
 
 from coatgui.assessment.cautions import cautions
-from coatgui.shipped import sample_panels
+from coatgui.campaign import CampaignFile
 from coatgui.window import palette
 from coatgui.window.actions import ACTIONS, Entry
-from coatgui.window.asking import Leave, file_to_write, how_to_leave, say_plainly
+from coatgui.window.arrivals import PROPOSALS, WELCOME, WORK, Arrivals
+from coatgui.window.asking import say_plainly
 from coatgui.window.desk import Desk
 from coatgui.window.exposure_strip import ExposureStrip
-from coatgui.window.facts import FactsView, facts
+from coatgui.window.figure_actions import FigureActions
+from coatgui.window.file_actions import FileActions
+from coatgui.window.incoming import Incoming
+from coatgui.window.places.comparison_place import ComparisonPlace
 from coatgui.window.places.course_place import CoursePlace
 from coatgui.window.places.doubts_place import DoubtsPlace
 from coatgui.window.places.map_place import MapPlace
 from coatgui.window.places.place import Place
 from coatgui.window.places.reading_place import ReadingPlace
+from coatgui.window.places.settings_place import SettingsPlace
+from coatgui.window.places.water_place import WaterPlace
 from coatgui.window.project_tree import ProjectTree
+from coatgui.window.side_column import SideColumn
 from coatgui.window.welcome import Trouble, Welcome
 
-_FILES = "Spectra and lists (*.csv *.txt *.dat *.tsv *.xlsx)"
-_CAMPAIGNS = "Campaigns (*.coatgui)"
-_RECENT = 8
 _UNSAVED = "not saved yet"
 
 
@@ -57,26 +60,35 @@ class MainWindow(QMainWindow):
         self.resize(1280, 800)
         self._actions: list[tuple[Entry, QAction]] = []
         self._began = 0.0
-        self._build_menus()
-        self.pages = QStackedWidget()
+        self._shown: CampaignFile | None = None
         self.trouble = Trouble()
+        self.incoming = Incoming(self.desk, self)
+        self.files = FileActions(self, self.desk, self.incoming, settings, self.trouble)
+        self.figures = FigureActions(self.desk, self.files, self.trouble, self.open_place)
+        self.pages = QStackedWidget()
         middle = QWidget()
         column = QVBoxLayout(middle)
         column.setContentsMargins(0, 0, 0, 0)
         column.setSpacing(0)
-        column.addWidget(self.trouble)
-        column.addWidget(self.pages, 1)
         self.setCentralWidget(middle)
         self.welcome = Welcome(
             [
-                ("Open a folder of spectra…", self.open_folder),
-                ("Open a campaign…", self.open_campaign),
-                ("Try the sample campaign", self.open_sample),
+                ("Open a folder of spectra…", self.files.open_folder),
+                ("Open a campaign…", self.files.open_campaign),
+                ("Try the sample campaign", self.files.open_sample),
             ]
         )
         self.welcome.picked.connect(lambda name: self.open_path(Path(name)))
         self.pages.addWidget(self.welcome)
         self.pages.addWidget(self._work())
+        self.arrivals = Arrivals(
+            self.desk, self.incoming, self.files, settings, self.tone, self.pages
+        )
+        self.dry_run, self.watching = self.arrivals.page, self.arrivals.watching
+        for line in (self.trouble, self.arrivals.waiting, self.arrivals.arrived):
+            column.addWidget(line)
+        column.addWidget(self.pages, 1)
+        self._build_menus()
         self._build_status()
         self.desk.campaign_changed.connect(self._campaign_changed)
         self.desk.assessed.connect(self._campaign_changed)
@@ -90,6 +102,7 @@ class MainWindow(QMainWindow):
 
     def _build_menus(self) -> None:
         menus: dict[str, QMenu] = {}
+        holders = (self, self.files, self.figures, self.arrivals, self.side)
         for entry in ACTIONS:
             menu = menus.get(entry.menu)
             if menu is None:
@@ -99,12 +112,13 @@ class MainWindow(QMainWindow):
             action.setStatusTip(entry.tip)
             if entry.shortcut:
                 action.setShortcut(QKeySequence(entry.shortcut))
-            method: Callable[[], object] = getattr(self, entry.method)
+            holder = next(h for h in holders if hasattr(h, entry.method))
+            method: Callable[[], object] = getattr(holder, entry.method)
             action.triggered.connect(lambda _checked=False, call=method: call())
             menu.addAction(action)
             self._actions.append((entry, action))
         self.recent = QMenu("Recent campaigns", self)
-        self.recent.aboutToShow.connect(self._fill_recent)
+        self.recent.aboutToShow.connect(lambda: self.files.fill_recent(self.recent))
         menus["Campaign"].insertMenu(menus["Campaign"].actions()[3], self.recent)
 
     def _work(self) -> QWidget:
@@ -122,7 +136,15 @@ class MainWindow(QMainWindow):
         self.stack = QStackedWidget()
         self.places: list[Place] = [
             kind(self.desk, self.tone)
-            for kind in (MapPlace, ReadingPlace, CoursePlace, DoubtsPlace)
+            for kind in (
+                MapPlace,
+                ReadingPlace,
+                CoursePlace,
+                DoubtsPlace,
+                WaterPlace,
+                ComparisonPlace,
+                SettingsPlace,
+            )
         ]
         for place in self.places:
             if isinstance(place, MapPlace):
@@ -146,8 +168,9 @@ class MainWindow(QMainWindow):
         self.strip.picked.connect(self.desk.select)
         column.addWidget(self.strip)
         splitter.addWidget(middle)
-        self.facts = FactsView()
-        splitter.addWidget(self.facts)
+        self.side = SideColumn(self.desk, self.tone)
+        self.facts = self.side.facts
+        splitter.addWidget(self.side)
         splitter.setSizes([210, 820, 250])
         splitter.setStretchFactor(1, 1)
         self.go(0)
@@ -172,16 +195,20 @@ class MainWindow(QMainWindow):
 
     def _campaign_changed(self) -> None:
         file = self.desk.file
-        self.pages.setCurrentIndex(0 if file is None else 1)
+        if self.pages.currentIndex() != PROPOSALS:
+            self.pages.setCurrentIndex(WELCOME if file is None else WORK)
+        if file is not self._shown:
+            self._shown = file
+            self.arrivals.set_aside()
         title = "coatgui"
         if file is not None:
             title = f"{file.campaign.title} · coatgui"
             self.kept.setText(f"kept in {file.path.name}" if self.desk.is_saved else _UNSAVED)
             if self.desk.is_saved:
-                self._remember(file.path)
+                self.files.remember(file.path)
         else:
             self.kept.setText("")
-            self.welcome.show_recent(self._recent_names())
+            self.welcome.show_recent(self.files.recent_names())
         self.setWindowTitle(title)
         for entry, action in self._actions:
             name = None
@@ -214,7 +241,7 @@ class MainWindow(QMainWindow):
         self._show_facts()
 
     def _show_facts(self) -> None:
-        self.facts.show_facts(facts(self.desk.reading_assessment(), self.desk.assessment))
+        self.side.refresh()
         self.strip.refresh()
 
     def _worked(self, stage: str, done: int, total: int) -> None:
@@ -241,78 +268,17 @@ class MainWindow(QMainWindow):
 
     # --- actions ---------------------------------------------------------------------------
 
-    def _may_leave(self) -> bool:
-        """Whether the campaign may be put away: asks where edits would be lost."""
-        file = self.desk.file
-        if file is None or self.desk.is_saved or not file.undo_name:
-            return True
-        answer = how_to_leave(self, file.campaign.title)
-        if answer is Leave.SAVE:
-            self.save_as()
-            return self.desk.is_saved
-        return answer is Leave.LOSE
-
     def open_path(self, path: Path) -> None:
-        """Open a campaign file or a folder, asking first where edits would be lost."""
-        if self._may_leave():
-            self.trouble.hide()
-            self.settings.setValue("folder", str(path.parent))
-            self.desk.open(path)
-
-    def open_folder(self) -> None:
-        name = QFileDialog.getExistingDirectory(self, "A folder of spectra", self._folder())
-        if name:
-            self.open_path(Path(name))
-
-    def open_campaign(self) -> None:
-        name, _ = QFileDialog.getOpenFileName(self, "A campaign", self._folder(), _CAMPAIGNS)
-        if name:
-            self.open_path(Path(name))
-
-    def open_sample(self) -> None:
-        if self._may_leave():
-            self.trouble.hide()
-            self.desk.open(sample_panels())
-
-    def bring_in(self) -> None:
-        names, _ = QFileDialog.getOpenFileNames(self, "Spectra to bring in", self._folder(), _FILES)
-        if names:
-            self.desk.bring_in([Path(name) for name in names])
-
-    def _folder(self) -> str:
-        """Where the last file was opened or written."""
-        return str(self.settings.value("folder", ""))
-
-    def _to_write(self, title: str, kinds: str, ending: str) -> Path | None:
-        file = self.desk.file
-        name = "campaign" if file is None else file.campaign.title.replace("/", "-")
-        path = file_to_write(self, title, kinds, Path(self._folder()) / f"{name}{ending}")
-        if path is not None:
-            self.settings.setValue("folder", str(path.parent))
-        return path
-
-    def save_as(self) -> None:
-        if path := self._to_write("Keep the campaign as", _CAMPAIGNS, ".coatgui"):
-            self.desk.save_as(path)
-
-    def write_workbook(self) -> None:
-        if path := self._to_write("Workbook", "Workbooks (*.xlsx)", ".xlsx"):
-            self.desk.export(path)
-
-    def write_data(self) -> None:
-        if path := self._to_write("Data", "JSON (*.json)", ".json"):
-            self.desk.export(path)
-
-    def close_campaign(self) -> None:
-        if self._may_leave():
-            self.desk.close()
-            self._campaign_changed()
+        self.files.open_path(path)
 
     def judge_again(self) -> None:
         self.desk.judge()
 
     def halt_work(self) -> None:
         self.desk.stop()
+
+    def open_place(self) -> Place:
+        return self.places[self.stack.currentIndex()]
 
     def undo(self) -> None:
         self.desk.undo()
@@ -339,7 +305,9 @@ class MainWindow(QMainWindow):
         # The reading's own place shows the same values where they lie in the coating, and the
         # doubts show their evidence.
         self.facts.setVisible(isinstance(self.places[place], (MapPlace, CoursePlace)))
-        self.strip.setVisible(not isinstance(self.places[place], DoubtsPlace))
+        self.strip.setVisible(
+            not isinstance(self.places[place], (DoubtsPlace, ComparisonPlace, SettingsPlace))
+        )
 
     def go_map(self) -> None:
         self.go(0)
@@ -352,6 +320,18 @@ class MainWindow(QMainWindow):
 
     def go_doubts(self) -> None:
         self.go(3)
+
+    def go_water(self) -> None:
+        self.go_to(WaterPlace)
+
+    def go_comparison(self) -> None:
+        self.go_to(ComparisonPlace)
+
+    def go_settings(self) -> None:
+        self.go_to(SettingsPlace)
+
+    def go_to(self, kind: type[Place]) -> None:
+        self.go(next(i for i, place in enumerate(self.places) if isinstance(place, kind)))
 
     def later(self) -> None:
         self.desk.step(1)
@@ -368,30 +348,15 @@ class MainWindow(QMainWindow):
         for place in self.places:
             place.paint_in(self.tone)
         self.project.paint_in(self.tone)
+        self.dry_run.paint_in(self.tone)
+        self.side.paint_in(self.tone)
         self.strip.tone = self.tone
         self.strip.update()
 
     def show_cautions(self) -> None:
         say_plainly(self, "Cautions", "What the results do not say", "\n\n".join(cautions()))
 
-    # --- recent campaigns, drops, closing --------------------------------------------------
-
-    def _recent_names(self) -> list[str]:
-        names = self.settings.value("recent", [])
-        return [str(name) for name in names] if isinstance(names, list) else [str(names)]
-
-    def _remember(self, path: Path) -> None:
-        names = [str(path), *(n for n in self._recent_names() if n and n != str(path))]
-        self.settings.setValue("recent", names[:_RECENT])
-
-    def _fill_recent(self) -> None:
-        self.recent.clear()
-        for name in filter(None, self._recent_names()):
-            action = self.recent.addAction(Path(name).name.replace("&", "&&"))
-            action.setToolTip(name)
-            action.triggered.connect(lambda _c=False, path=name: self.open_path(Path(path)))
-        if self.recent.isEmpty():
-            self.recent.addAction("none yet").setEnabled(False)
+    # --- drops, closing --------------------------------------------------------------------
 
     def dragEnterEvent(self, event: QDragEnterEvent) -> None:
         if event.mimeData().hasUrls():
@@ -399,15 +364,18 @@ class MainWindow(QMainWindow):
 
     def dropEvent(self, event: QDropEvent) -> None:
         paths = [Path(url.toLocalFile()) for url in event.mimeData().urls() if url.isLocalFile()]
-        is_campaign = len(paths) == 1 and paths[0].suffix == ".coatgui"
-        if is_campaign or (len(paths) == 1 and self.desk.file is None):
-            self.open_path(paths[0])
+        alone = paths[0] if len(paths) == 1 else Path()
+        if alone.suffix == ".coatgui" or (
+            self.desk.file is None and len(paths) == 1 and alone.is_dir()
+        ):
+            self.open_path(alone)
         elif paths:
-            self.desk.bring_in(paths)
+            self.incoming.bring_in(paths)
 
     def closeEvent(self, event: QCloseEvent) -> None:
-        if not self._may_leave():
+        if not self.files.may_leave():
             event.ignore()
             return
+        self.arrivals.close()
         self.desk.close()
         event.accept()

@@ -7,7 +7,7 @@ import math
 from coatgui.records import Bound, Quantity
 
 _PREFIXES = {-15: "f", -12: "p", -9: "n", -6: "µ", -3: "m", 0: "", 3: "k", 6: "M", 9: "G", 12: "T"}
-_PLAIN_UNITS = ("", "vol-%", "%", "h")
+_PLAIN_UNITS = ("", "vol-%", "%", "h", "decades")
 WORDS = {
     Bound.TWO_SIDED: "two-sided",
     Bound.AT_LEAST: "→ at least",

@@ -55,10 +55,13 @@ def system_is_dark() -> bool:
 
 def ramp(share: float, dark: bool) -> tuple[QColor, QColor]:
     """Ground and ink of a cell for a share from 0 (poor barrier, pale) to 1 (good, deep). One hue;
-    lightness falls evenly."""
+    lightness falls evenly. On dark ground the palest is a middle tone, for a white cell would
+    glare."""
     share = min(max(share, 0.0), 1.0)
-    lightness = 0.93 - 0.65 * share
-    ground = QColor.fromHslF(0.56, 0.30, lightness)
+    if dark:
+        ground = QColor.fromHslF(0.56, 0.28, 0.60 - 0.39 * share)
+    else:
+        ground = QColor.fromHslF(0.56, 0.30, 0.93 - 0.65 * share)
     # Black and white stand at equal contrast where the relative luminance is 0.179.
     linear = [
         c / 12.92 if c <= 0.04045 else ((c + 0.055) / 1.055) ** 2.4
@@ -141,6 +144,7 @@ def apply(application: QApplication, tone: Colours) -> None:
             border-radius: 3px; padding: 6px 14px; }}
         QPushButton:focus, QLineEdit:focus, QComboBox:focus {{
             border: 1px solid {tone.verdigris}; }}
+        QPushButton:checked {{ border: 1px solid {tone.verdigris}; color: {tone.verdigris}; }}
         QPushButton#place {{ background: transparent; border: 0; border-radius: 0;
             border-bottom: 2px solid transparent; padding: 8px 16px; color: {tone.second};
             font-size: 14px; }}
@@ -151,6 +155,7 @@ def apply(application: QApplication, tone: Colours) -> None:
         QLabel#question {{ font-size: 16px; color: {tone.ink}; }}
         QLabel#small {{ font-size: 11px; color: {tone.second}; }}
         QLabel#fact_title {{ font-size: 16px; }}
+        QLabel#wrong {{ color: {tone.rust}; }}
         QLabel#fact_name {{ font-size: 11px; color: {tone.second}; }}
         QLabel#fact_note, QLabel#fact_caution {{ font-size: 11px; color: {tone.second}; }}
         QPushButton#first {{ background: {tone.verdigris}; color: {tone.ground};
@@ -161,6 +166,12 @@ def apply(application: QApplication, tone: Colours) -> None:
         QPushButton#link:focus, QPushButton#link:hover {{ border-color: {tone.verdigris}; }}
         QPushButton:hover {{ border-color: {tone.second}; }}
         QPushButton:disabled {{ color: {tone.faint}; }}
+        QCheckBox::indicator {{ width: 12px; height: 12px; border: 1px solid {tone.second};
+            border-radius: 2px; background: {tone.ground}; }}
+        QCheckBox::indicator:checked {{ border: 4px solid {tone.verdigris}; width: 6px;
+            height: 6px; background: {tone.ink}; }}
+        QCheckBox:focus {{ color: {tone.verdigris}; }}
+        QCheckBox:disabled {{ color: {tone.faint}; }}
         QScrollArea {{ border: 1px solid transparent; }}
         QScrollArea:focus {{ border: 1px solid {tone.verdigris}; }}
         QTreeView:focus, QListWidget:focus, QTableWidget:focus {{

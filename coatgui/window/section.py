@@ -9,13 +9,22 @@ uptake. Rust stands under a pore where the fitted circuit has a reaction there.
 from __future__ import annotations
 
 import math
+from collections.abc import Mapping
 from dataclasses import dataclass
 
-from PySide6.QtCore import QPointF, QRectF, QSize, Qt
-from PySide6.QtGui import QColor, QFont, QFontMetricsF, QPainter, QPaintEvent, QPen
+from PySide6.QtCore import QPointF, QRectF, QSize, Qt, Signal
+from PySide6.QtGui import (
+    QColor,
+    QFont,
+    QFontMetricsF,
+    QMouseEvent,
+    QPainter,
+    QPaintEvent,
+    QPen,
+)
 from PySide6.QtWidgets import QSizePolicy, QWidget
 
-from coatgui.circuits import catalogue
+from coatgui.circuits import CoatingModel, catalogue
 from coatgui.records import Bound, Panel, Quantity, ReadingAssessment
 from coatgui.window.numbers import said
 from coatgui.window.palette import Colours
@@ -25,14 +34,24 @@ _WIDEST_PORE, _NARROWEST_PORE = 4.0, 11.0
 # Own choice: at this uptake, in vol-%, the film has the solution's full tint.
 _FULL_TINT = 12.0
 
+_ROLES = {
+    "film": ("film", "Film"),
+    "film_1": ("film", "Outer film"),
+    "film_2": ("film", "Inner film"),
+    "porous_layer": ("film", "Porous layer"),
+    "interface": ("interface", "Interface"),
+}
+
 
 @dataclass(frozen=True)
 class Band:
-    """One layer of the section: `kind` is solution, film, interface or metal."""
+    """One layer of the section: `kind` is solution, film, interface or metal; `layer` is its place
+    in the model, as in `Parameter`; −1 for the metal."""
 
     kind: str
     title: str
     lines: tuple[str, ...] = ()
+    layer: int = 0
 
 
 @dataclass(frozen=True)
@@ -44,6 +63,7 @@ class Section:
     pore_is_bound: bool = False
     water: float = 0.0
     reacts: bool = False
+    picked: int = 0
 
     def in_words(self) -> str:
         return "; ".join(
@@ -52,19 +72,29 @@ class Section:
         )
 
 
-def section_of(known: ReadingAssessment | None, panel: Panel | None) -> Section | None:
-    """The section of a reading, or None where it was not fitted."""
+def section_of(
+    known: ReadingAssessment | None,
+    panel: Panel | None,
+    models: Mapping[str, CoatingModel] | None = None,
+) -> Section | None:
+    """The section of a reading, or None where it was not fitted. `models` are those of the campaign
+    by id, None for the catalogue's alone; one of them that was just removed is not drawn."""
     if known is None or known.fit is None:
         return None
     by_symbol = {p.symbol: p.quantity for p in known.parameters}
-    model = catalogue()[known.fit.model]
+    model = (catalogue() if models is None else models).get(known.fit.model)
+    if model is None:
+        return None
     bands = [Band("solution", "Solution", _lines(("R_s", by_symbol.get("R_s"))))]
-    films = [layer for layer in model.layers if layer.role != "interface"]
-    for number, layer in enumerate(films):
+    films = [(i, layer) for i, layer in enumerate(model.layers, 1) if layer.role != "interface"]
+    for place, layer in films:
         if len(films) > 1:
-            end = layer.role.removeprefix("film_")
-            own = [(s, q) for s, q in by_symbol.items() if s.endswith(end) and s[0] in "CR"]
-            bands.append(Band("film", "Outer film" if number == 0 else "Inner film", _lines(*own)))
+            own = [
+                (p.symbol, p.quantity)
+                for p in known.parameters
+                if p.layer == place and p.symbol[0] in "CQR"
+            ]
+            bands.append(Band("film", _ROLES[layer.role][1], _lines(*own)))
             continue
         thickness = f", {panel.thickness_um:g} µm" if panel and panel.thickness_um else ""
         water = known.water_uptake.quantity if known.water_uptake else None
@@ -81,7 +111,9 @@ def section_of(known: ReadingAssessment | None, panel: Panel | None) -> Section 
         )
     if any(layer.role == "interface" for layer in model.layers):
         wanted = [
-            (symbol, by_symbol[symbol]) for symbol in ("C_dl", "R_ct", "σ") if symbol in by_symbol
+            (symbol, by_symbol[symbol])
+            for symbol in ("C_dl", "R_ct", "σ", "R_D")
+            if symbol in by_symbol
         ]
         bands.append(Band("interface", "Interface", _lines(*wanted)))
     substrate = panel.substrate if panel and panel.substrate else "metal"
@@ -102,6 +134,25 @@ def section_of(known: ReadingAssessment | None, panel: Panel | None) -> Section 
     )
 
 
+def section_of_model(model: CoatingModel, picked: int) -> Section:
+    """The section of a model alone: what each layer is called and by which parameters it stands.
+    `picked` is the layer in hand."""
+    free = set(model.symbols)
+    names: dict[int, list[str]] = {}
+    for spec in model.all_parameters:
+        held = "" if spec.symbol in free else " held"
+        names.setdefault(spec.layer, []).append(f"{spec.symbol}{held}")
+    bands = [Band("solution", "Solution and leads", (", ".join(names.get(0, ())),))]
+    for place, layer in enumerate(model.layers, start=1):
+        kind, title = _ROLES[layer.role]
+        bands.append(Band(kind, title, (", ".join(names.get(place, ())),), place))
+    bands.append(Band("metal", "Metal", (), -1))
+    pore = any(layer.ionic == "resistor" and layer.role != "interface" for layer in model.layers)
+    reacts = any(layer.ionic == "resistor" and layer.role == "interface" for layer in model.layers)
+    # A model has no number for the pore's width: the middle of the drawing's range.
+    return Section(tuple(bands), 0.4 if pore else None, reacts=reacts, picked=picked)
+
+
 def _lines(*named: tuple[str, Quantity | None]) -> tuple[str, ...]:
     return tuple(f"{name} {said(quantity)}" for name, quantity in named if quantity is not None)
 
@@ -110,7 +161,10 @@ _WEIGHTS = {"solution": 1.0, "film": 2.0, "interface": 1.3, "metal": 0.9}
 
 
 class SectionView(QWidget):
-    """Draws a `Section`; the drawing left, the words beside the layers they belong to."""
+    """Draws a `Section`; the drawing left, the words beside the layers they belong to. `clicked`
+    carries the layer under the mouse, 0 for the solution."""
+
+    clicked = Signal(int)
 
     def __init__(self, tone: Colours) -> None:
         super().__init__()
@@ -159,7 +213,18 @@ class SectionView(QWidget):
                 self._paint_band(painter, band, drawing)
                 self._paint_words(painter, band, area.adjusted(drawing.width() + 12, 0, 0, 0))
             self._paint_pore(painter)
+            for band, area in self.areas():
+                if self.section.picked > 0 and band.layer == self.section.picked:
+                    painter.setPen(QPen(QColor(self.tone.verdigris), 2))
+                    painter.setBrush(Qt.BrushStyle.NoBrush)
+                    painter.drawRect(area.adjusted(1, 1, -2, -1))
         painter.end()
+
+    def mousePressEvent(self, event: QMouseEvent) -> None:
+        for band, area in self.areas():
+            if area.contains(event.position()) and band.layer >= 0:
+                self.clicked.emit(band.layer)
+                return
 
     def _mixed(self, share: float) -> QColor:
         """The film's paper, tinted with the solution by a share from 0 to 1."""

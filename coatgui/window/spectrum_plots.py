@@ -136,7 +136,7 @@ class SpectrumPlots(QWidget):
                 item.setData([], [])
             for curve in self._fits:
                 curve.setData([], [])
-            self._point_at(-1)
+            self.point_at(-1)
             return
         used, places = drawn.used, drawn.places()
         ring = pg.mkPen(tone.slate, width=1.2)
@@ -156,7 +156,7 @@ class SpectrumPlots(QWidget):
         for item in self._rings:
             item.setPen(pg.mkPen(tone.verdigris, width=2))
             item.setBrush(None)
-        self._point_at(self.place if same else -1)
+        self.point_at(self.place if same else -1)
         if not same:
             self.whole_view()
 
@@ -221,7 +221,8 @@ class SpectrumPlots(QWidget):
 
     # --- cursor, clicks, keys --------------------------------------------------------------
 
-    def _point_at(self, place: int) -> None:
+    def point_at(self, place: int) -> None:
+        """Put the cursor on a point; -1 takes it away."""
         self.place = place
         drawn = self.drawn
         there = drawn is not None and 0 <= place < len(drawn.spectrum)
@@ -283,11 +284,11 @@ class SpectrumPlots(QWidget):
         if kind == QEvent.Type.MouseMove and not event.buttons():  # type: ignore[attr-defined]
             where = event.position()  # type: ignore[attr-defined]
             if plot is self.plane:
-                self._point_at(self.nearest(plot, where)[0])
+                self.point_at(self.nearest(plot, where)[0])
             else:
                 x = float(plot.getPlotItem().vb.mapSceneToView(where).x())
                 logs = np.log10(self.drawn.spectrum.frequency_hz)
-                self._point_at(int(np.abs(logs - x).argmin()))
+                self.point_at(int(np.abs(logs - x).argmin()))
         elif kind == QEvent.Type.MouseButtonPress:
             self.setFocus(Qt.FocusReason.MouseFocusReason)
             self._pressed = event.position()  # type: ignore[attr-defined]
@@ -334,7 +335,7 @@ class SpectrumPlots(QWidget):
             super().keyPressEvent(event)
         elif step and not event.modifiers():
             here = self.place if self.place >= 0 else last + 1 if step < 0 else -1
-            self._point_at(min(max(here + step, 0), last))
+            self.point_at(min(max(here + step, 0), last))
         elif event.key() in (Qt.Key.Key_Space, Qt.Key.Key_Delete) and self.place >= 0:
             self.toggled.emit([self.place])
         elif event.key() == Qt.Key.Key_Home:

@@ -97,3 +97,33 @@ class Trouble(QFrame):
         self.words.setText(f"■  {sentence}")
         self.setAccessibleDescription(sentence)
         self.show()
+
+
+class Waiting(QFrame):
+    """Says quietly that something waits, with one button to look at it (`look`)."""
+
+    look = Signal()
+
+    def __init__(self) -> None:
+        super().__init__()
+        self.setObjectName("side")
+        self.setAccessibleName("What waits")
+        row = QHBoxLayout(self)
+        row.setContentsMargins(12, 4, 8, 4)
+        self.words = plain_label()
+        self.button = QPushButton("Look")
+        self.button.setAccessibleDescription("Show what waits")
+        self.button.clicked.connect(self.look)
+        self.dismiss = QPushButton("Not now")
+        self.dismiss.setAccessibleDescription("Take this line away")
+        self.dismiss.clicked.connect(self.hide)
+        row.addWidget(self.words, 1)
+        row.addWidget(self.button)
+        row.addWidget(self.dismiss)
+        self.hide()
+
+    def say(self, sentence: str, button: str) -> None:
+        self.words.setText(sentence)
+        self.button.setText(button)
+        self.setAccessibleDescription(sentence)
+        self.show()

@@ -11,21 +11,49 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from coatgui.assessment.amounts import log_deviation
-from coatgui.assessment.capacitance import (
-    at_frequency,
-    brug,
-    film_capacitance,
-    hsu_mansfeld,
-    hsu_mansfeld_capacitance,
-    interface_capacitance,
-    measured_capacitance,
-    small_exponent_finding,
-    turning_frequency,
-)
-from coatgui.records import Bound, Fit, Quantity, Spectrum
+from coatgui.assessment.capacitance import Capacitances, at_frequency, brug, hsu_mansfeld
+from coatgui.assessment.measured_capacitance import measured_capacitances
+from coatgui.assessment.modulus import grids
+from coatgui.records import Bound, Finding, Fit, Quantity, Spectrum
 
 Made = Callable[..., tuple[Spectrum, Fit]]
 PORES = {"R_s": 50.0, "Q_c": 2e-10, "n_c": 0.95, "R_po": 1e6, "Q_dl": 1e-7, "n_dl": 0.85}
+
+
+def film_capacitance(
+    fit: Fit,
+    spectrum: Spectrum,
+    frequency_hz: float,
+    area_cm2: float | None,
+    open_lead: Spectrum | None = None,
+) -> Quantity | None:
+    (found,) = Capacitances([fit], [spectrum], [area_cm2], open_lead).film(frequency_hz)
+    return found
+
+
+def hsu_mansfeld_capacitance(
+    fit: Fit, spectrum: Spectrum, area_cm2: float | None
+) -> Quantity | None:
+    (found,) = Capacitances([fit], [spectrum], [area_cm2]).hsu_mansfeld()
+    return found
+
+
+def interface_capacitance(fit: Fit, spectrum: Spectrum, area_cm2: float) -> Quantity | None:
+    (found,) = Capacitances([fit], [spectrum], [area_cm2]).interface()
+    return found
+
+
+def measured_capacitance(
+    spectrum: Spectrum,
+    used: np.ndarray,
+    fit: Fit,
+    frequency_hz: float,
+    area_cm2: float | None,
+    open_lead: Spectrum | None = None,
+) -> tuple[Quantity | None, Finding | None]:
+    on = grids([spectrum], [used], [fit])
+    (found,) = measured_capacitances(on, frequency_hz, [area_cm2], open_lead)
+    return found
 
 
 @given(q=st.floats(1e-12, 1e-4), r=st.floats(1e2, 1e12), f=st.floats(1e-2, 1e6))
@@ -58,7 +86,7 @@ def test_brug_gives_the_double_layer_of_a_distributed_electrode() -> None:
 def test_hsu_and_mansfeld_has_its_case(made: Made) -> None:
     """Only where the film's resistance is held and turns over inside the window."""
     spectrum, fit = made(PORES)
-    turning = turning_frequency(fit, spectrum)
+    (turning,) = Capacitances([fit], [spectrum], [None]).turning_hz()
     assert turning == pytest.approx((1e6 * 2e-10) ** (-1 / 0.95) / (2 * math.pi))
     assert hsu_mansfeld_capacitance(fit, spectrum, None) is not None
     for values, bounds in (
@@ -79,12 +107,14 @@ def _at_ten_kilohertz(fit: Fit, spectrum: Spectrum, area_cm2: float | None) -> Q
 
 
 def _value(law: Law, q: float, n: float, r: float) -> float:
-    return hsu_mansfeld(q, n, r) if law is hsu_mansfeld_capacitance else at_frequency(q, n, 1e4)
+    if law is hsu_mansfeld_capacitance:
+        return float(hsu_mansfeld(q, n, r))
+    return float(at_frequency(q, n, 1e4))
 
 
 @pytest.mark.parametrize(
     ("law", "name"),
-    [(_at_ten_kilohertz, "10000 Hz"), (hsu_mansfeld_capacitance, "Hsu–Mansfeld")],
+    [(_at_ten_kilohertz, "10 kHz"), (hsu_mansfeld_capacitance, "Hsu–Mansfeld")],
 )
 def test_film_capacitance_is_named_and_scales_with_area(made: Made, law: Law, name: str) -> None:
     spectrum, fit = made(PORES)
@@ -159,22 +189,23 @@ def test_fitted_film_is_freed_from_the_open_leads(made: Made) -> None:
 def test_small_exponent_is_not_converted(made: Made) -> None:
     spectrum, fit = made(PORES | {"n_c": 0.66})
     assert film_capacitance(fit, spectrum, 1e4, 10.0) is None
-    finding = small_exponent_finding(fit)
+    sound = made(PORES)[1]
+    finding, none = Capacitances([fit, sound], [spectrum] * 2, [None] * 2).small_exponents()
     assert finding is not None
     assert "0.66" in finding.text
-    assert small_exponent_finding(made(PORES)[1]) is None
+    assert none is None
 
 
 def test_interface_capacitance_is_brugs(made: Made) -> None:
-    _, fit = made(PORES | {"R_ct": 5e7})
-    quantity = interface_capacitance(fit, 10.0)
+    spectrum, fit = made(PORES | {"R_ct": 5e7})
+    quantity = interface_capacitance(fit, spectrum, 10.0)
     assert quantity is not None
     expected = brug(1e-7, 0.85, 1 / (50.0 + 1e6) + 1 / 5e7) / 10
     assert quantity.value == pytest.approx(expected)
     assert quantity.unit == "F/cm²"
     assert "Brug" in quantity.method
     _, open_pores = made(PORES, bounds={"R_po": Bound.AT_LEAST})
-    assert interface_capacitance(open_pores, 10.0) is None
+    assert interface_capacitance(open_pores, spectrum, 10.0) is None
 
 
 def test_capacitance_straight_from_the_data(made: Made) -> None:

@@ -221,6 +221,10 @@ def test_second_stage_is_found_where_it_is_and_not_where_it_is_not() -> None:
     assert late.second_stage_h[0] < 600
     assert late.second_stage_h[1] > 100
     assert "second stage" in late.text
+    falling = _dry(hours, _course(hours, noise=0.002, second_stage=-2e-5))
+    assert falling.second_stage_h is None
+    assert "loses water" in falling.text
+    assert falling.dry_capacitance.value == pytest.approx(1e-10, rel=0.01)
     falsely = sum(
         _dry(hours, _course(hours, noise=0.002, seed=seed)).second_stage_h is not None
         for seed in range(200)

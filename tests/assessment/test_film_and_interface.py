@@ -16,7 +16,13 @@ from coatgui.assessment.film import (
     thickness_deviation,
     widened,
 )
-from coatgui.assessment.interface import active_area, breakpoint_figures, pore_resistivity
+from coatgui.assessment.interface import (
+    active_area,
+    breakpoint_figures,
+    phase_crossings,
+    pore_resistivity,
+)
+from coatgui.assessment.modulus import Grid
 from coatgui.assessment.water import apparent_uptake, brasher_kingsbury, uptake_finding
 from coatgui.records import Bound, Breakpoint, Panel, Quantity, Spectrum
 
@@ -35,12 +41,15 @@ def _nested(ratio: float, solution: float = 0.0) -> Spectrum:
     return Spectrum(frequency, solution + 1 / (s * C_C + 1 / inner))
 
 
+def _crossing(spectrum: Spectrum) -> float | None:
+    (found,) = phase_crossings([Grid([0], [spectrum], np.ones(len(spectrum), bool), [None])], 1)
+    return found
+
+
 def _figures(ratio: float) -> tuple[Spectrum, Breakpoint]:
     spectrum = _nested(ratio)
-    used = np.ones(len(spectrum), dtype=np.bool_)
     found = breakpoint_figures(
-        spectrum,
-        used,
+        _crossing(spectrum),
         _two_sided(R_PO, "Ω"),
         _two_sided(C_C, "F"),
         _two_sided(C_C / ratio, "F"),
@@ -82,10 +91,9 @@ def test_no_breakpoint_beyond_the_limit() -> None:
 
 
 def test_closed_film_has_no_breakpoint() -> None:
-    spectrum = _nested(0.01)
-    used = np.ones(len(spectrum), dtype=np.bool_)
+    crossing = _crossing(_nested(0.01))
     bound = Quantity(1e9, 1e9, None, Bound.AT_LEAST, "Ω")
-    assert breakpoint_figures(spectrum, used, bound, _two_sided(C_C), None) is None
+    assert breakpoint_figures(crossing, bound, _two_sided(C_C), None) is None
 
 
 def test_routes_agree_where_their_assumptions_do() -> None:
@@ -102,7 +110,7 @@ def test_routes_agree_where_their_assumptions_do() -> None:
         _two_sided(v, u)
         for v, u in ((pores, "Ω cm²"), (capacitance, "F/cm²"), (interface, "F/cm²"))
     )
-    found = breakpoint_figures(spectrum, np.ones(2000, dtype=np.bool_), r, c, dl)
+    found = breakpoint_figures(_crossing(spectrum), r, c, dl)
     area = active_area(r, dl, found, 50.0, 5.0, "3.5 % NaCl")
     assert area is not None
     routes = dict(area.routes)

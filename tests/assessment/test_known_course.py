@@ -135,3 +135,18 @@ def test_pores_begin_to_conduct_between_72_and_168_hours(result: Assessment) -> 
     for panel in result.panels:
         event = next(e for e in panel.events if e.code == "pores_conducting")
         assert (event.after_h, event.by_h) == (72.0, 168.0)
+
+
+def test_saturation_and_diffusion_coefficient(result: Assessment) -> None:
+    """At 0.5 percent noise with readings from 1 h on: within 0.3 vol-%, and D within its limits."""
+    inside = 0
+    for panel in result.panels:
+        assert panel.saturation_uptake is not None
+        assert panel.saturation_uptake.quantity.value == pytest.approx(100 * FINAL, abs=0.3)
+        diffusion = panel.diffusion_coefficient
+        assert diffusion is not None
+        assert diffusion.low is not None
+        assert diffusion.high is not None
+        assert diffusion.high < 2 * diffusion.low
+        inside += diffusion.low <= 1e-9 <= diffusion.high
+    assert inside >= PANELS - 1

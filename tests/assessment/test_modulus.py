@@ -9,7 +9,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from coatgui.assessment.modulus import moduli, modulus_at, relative_scatter
+from coatgui.assessment.modulus import Grid, grids, moduli, relative_scatter
 from coatgui.records import Bound, Fit, Modulus, ModulusStatus, Spectrum
 
 Made = Callable[..., tuple[Spectrum, Fit]]
@@ -28,9 +28,8 @@ def _one(
     fit: Fit | None = None,
     open_lead: Spectrum | None = None,
 ) -> Modulus:
-    ((modulus,),) = moduli(
-        [spectrum], [_all(spectrum)], [fit], [area_cm2], [frequency_hz], open_lead
-    )
+    on = grids([spectrum], [_all(spectrum)], [fit])
+    ((modulus,),) = moduli(on, [area_cm2], [frequency_hz], open_lead)
     return modulus
 
 
@@ -51,10 +50,9 @@ def test_point_on_the_frequency_is_measured() -> None:
 def test_interpolation_is_exact_on_a_power_law(slope: float, frequency: float, gap: int) -> None:
     grid = np.geomspace(1e5, 1e-2, 7 * gap)
     spectrum = Spectrum(grid, 1e8 * grid**slope * np.exp(0.3j))
-    at = modulus_at(spectrum, _all(spectrum), frequency)
-    assert at.ohm is not None
-    near = 0.006 if at.status is ModulusStatus.MEASURED else 1e-9
-    assert at.ohm == pytest.approx(1e8 * frequency**slope, rel=near)
+    status, ohm = Grid([0], [spectrum], _all(spectrum), [None]).modulus(frequency)
+    near = 0.006 if status is ModulusStatus.MEASURED else 1e-9
+    assert ohm[0] == pytest.approx(1e8 * frequency**slope, rel=near)
 
 
 @pytest.mark.parametrize("frequency", [0.05, 2e5])
@@ -68,11 +66,13 @@ def test_outside_the_measured_range_nothing_is_said(frequency: float) -> None:
 def test_points_left_out_do_not_count_as_measured() -> None:
     spectrum = Spectrum(np.array([1.0, 0.1, 0.01]), np.array([1e6, 9e9, 1e8 + 0j]))
     used = np.array([True, False, True])
-    at = modulus_at(spectrum, used, 0.1)
-    assert at.status is ModulusStatus.INTERPOLATED
-    assert at.ohm == pytest.approx(1e7)
-    assert modulus_at(spectrum, np.array([True, True, False]), 0.01).ohm is None
-    assert modulus_at(spectrum, np.zeros(3, dtype=np.bool_), 0.1).ohm is None
+    status, ohm = Grid([0], [spectrum], used, [None]).modulus(0.1)
+    assert status is ModulusStatus.INTERPOLATED
+    assert ohm == pytest.approx([1e7])
+    for mask, wanted in ([True, True, False], 0.01), ([False] * 3, 0.1):
+        status, ohm = Grid([0], [spectrum], np.array(mask), [None]).modulus(wanted)
+        assert status is ModulusStatus.NOT_REACHED
+        assert not ohm.size
 
 
 def test_limits_are_the_scatter_of_the_fit(made: Made) -> None:

@@ -142,3 +142,46 @@ def test_dry_capacitance_and_diffusion(assessment: Assessment, truth: dict[str, 
             diffusion.append((panel.diffusion_coefficient, true))
     assert _outside(dry, 12) <= 2 / 12
     assert _outside(diffusion, 12) <= 2 / 12
+
+
+def test_water_at_saturation_and_dry_permittivity(assessment: Assessment) -> None:
+    content = (sample_panels() / "truth.json").read_text(encoding="utf-8")
+    formulations = json.loads(content)["formulations"]
+    for panel in assessment.panels:
+        known = formulations[panel.panel[0]]
+        assert panel.saturation_uptake is not None
+        quantity = panel.saturation_uptake.quantity
+        truth = 100 * known["final_water"]
+        assert quantity.value == pytest.approx(truth, rel=0.08)  # panels were made to differ
+        low, high = panel.saturation_uptake.law_low, panel.saturation_uptake.law_high
+        assert low is not None
+        assert high is not None
+        assert quantity.value is not None
+        assert low < quantity.value < high
+        assert panel.dry_permittivity is not None
+        assert panel.dry_permittivity.value == pytest.approx(known["permittivity"], rel=0.1)
+
+
+def test_onsets_hold_the_truth(assessment: Assessment, truth: dict[str, Any]) -> None:
+    """The metal and diffusion show from the first reading whose truth has them; what the first
+    reading already shows has no beginning."""
+    reacts = {"R_ct", "σ"}
+    for panel in assessment.panels:
+        own = sorted(
+            (k["exposure_h"], reacts & set(k)) for k in truth.values() if k["panel"] == panel.panel
+        )
+        events = {event.code: event for event in panel.events}
+        begun = next((hour for hour, symbols in own if "R_ct" in symbols), None)
+        if "interface_reacting" in events:
+            event = events["interface_reacting"]
+            assert begun is not None
+            assert event.by_h is not None
+            assert begun <= event.by_h
+        for event in panel.events:
+            if event.by_h == own[0][0]:
+                assert event.after_h is None
+    leaky = [p for p in assessment.panels if p.panel[0] in "MP"]
+    for panel in leaky:
+        pores = next(e for e in panel.events if e.code == "pores_conducting")
+        assert (pores.after_h, pores.by_h) == (None, 1.0)
+        assert "before the first reading" in pores.text

@@ -17,6 +17,7 @@ from coatgui.records import (
     Criterion,
     Event,
     Judge,
+    Limit,
     LimitCrossing,
     PanelAssessment,
     ProjectionWanted,
@@ -173,7 +174,7 @@ def test_early_advice_is_given_where_the_dry_film_is_not_known() -> None:
         "K2", "K2", "K", 10.0, 80.0, known, Quantity(4e-9, 3e-9, 5e-9, Bound.TWO_SIDED, "cm²/s")
     )
     (text,) = early_advice(_panel("K1", None), [sister])
-    assert "sister panels have D = 4e-09" in text
+    assert "sister panels have D = 4·10⁻⁹" in text
 
 
 def test_next_inspection(reading_of: MakeReading) -> None:
@@ -217,6 +218,7 @@ def test_questions_are_answered_beside_the_usual(reading_of: MakeReading) -> Non
         for name, level in (("K", 10.0), ("M", 8.0))
     }
     asked = Questions(
+        limits=(Limit.of_criterion(LIMIT),),
         comparisons=(Question(judge=Judge.AREA_UNDER_COURSE),),
         projections=(ProjectionWanted("modulus", 1400.0, 0.1),),
         ratings=(VisualRating("K0", 1176.0, "iso_2409", "1"),),
@@ -227,6 +229,9 @@ def test_questions_are_answered_beside_the_usual(reading_of: MakeReading) -> Non
     assert [p.formulation for p in found.projections] == ["K", "M"]
     assert all(p.quantity is not None for p in found.projections)
     assert [s.formulation for s in found.limit_studies] == ["K", "M"]
+    panels = [_panel("K0", None, limit_crossings=(LimitCrossing(LIMIT, 24.0, 168.0, "", 168.0),))]
+    (study,) = decide(readings, 0.1, [LIMIT], Questions(), panels).limit_studies
+    assert (study.standings[0].after_h, study.standings[0].by_h) == (24.0, 168.0)
     assert found.ratings[0].worst == "1"
     with pytest.raises(ValueError, match="is no rating by"):
         decide(

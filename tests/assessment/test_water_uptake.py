@@ -12,6 +12,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from coatgui.assessment.amounts import from_logarithm
+from coatgui.assessment.sorption import dry_capacitance
 from coatgui.assessment.water import (
     apparent_uptake,
     brasher_kingsbury,
@@ -93,6 +94,28 @@ def test_wet_reference_gives_a_lower_bound() -> None:
     assert uptake.high is None
     assert uptake.low is not None
     assert 0 < uptake.low < 100 * brasher_kingsbury(1.2, 1.1, 78.3033)
+
+
+@given(
+    start=st.floats(1e-11, 1e-8),
+    deviation=st.floats(1e-4, 0.05),
+    dried=st.floats(0.5, 1.0),
+)
+def test_no_bound_of_the_uptake_lies_below_nothing(
+    start: float, deviation: float, dried: float
+) -> None:
+    """Where the first reading has to serve as the dry reference, its own uptake is at least 0; a
+    later reading below it says no less."""
+    first = from_logarithm(start, deviation, "F/cm²", "fitted")
+    later = from_logarithm(dried * start, deviation, "F/cm²", "fitted")
+    sorption = dry_capacitance([1.0], [first], "fitted")
+    assert sorption is not None
+    assert sorption.dry_capacitance.bound is Bound.AT_MOST
+    for wet in (first, later):
+        uptake = apparent_uptake(wet, sorption.dry_capacitance, 25.0)
+        assert uptake is not None
+        assert (uptake.value, uptake.low, uptake.high) == (0.0, 0.0, None)
+        assert uptake.bound is Bound.AT_LEAST
 
 
 def test_negative_uptake_is_doubted_only_beyond_its_limits() -> None:

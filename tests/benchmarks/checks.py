@@ -103,7 +103,7 @@ def false_alarms(each: int) -> None:
     by_model: dict[str, list[Specimen]] = {name: [] for name in catalogue()}
     for specimen in specimens(rng, each):
         by_model[specimen.model].append(specimen)
-    for name, those in by_model.items():
+    for name, those in filter(lambda pair: pair[1], by_model.items()):
         answers = checked(
             [scattered(rng, s.impedance(), 10 ** rng.uniform(*np.log10(NOISE))) for s in those]
         )

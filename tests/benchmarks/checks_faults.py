@@ -43,8 +43,10 @@ class Specimen:
 
 
 def specimens(rng: np.random.Generator, each: int) -> Iterator[Specimen]:
-    """`each` specimens of every model of the catalogue."""
+    """`each` specimens of every circuit of the catalogue; some stand there under two names."""
     for name, model in catalogue().items():
+        if model.layers[0].role == "porous_layer":
+            continue
         ranges = {**_RANGES, **(_BARE if name.startswith("bare") else {})}
         for _ in range(each):
             values = [

@@ -1,6 +1,7 @@
 """A small campaign in which every field of every record says something."""
 
 import hashlib
+import zlib
 from collections.abc import Iterator
 from pathlib import Path
 
@@ -14,12 +15,16 @@ from coatgui.records import (
     Criterion,
     Dialect,
     Formulation,
+    Identification,
     Panel,
+    Photograph,
+    Rating,
     Reading,
     Refusal,
     Settings,
     Source,
     Spectrum,
+    VisualRating,
 )
 
 FREQUENCY_HZ = np.array([1e5, 1e3, 10.0, 10.0, 1 / 3, 0.1])
@@ -65,9 +70,22 @@ def spectrum(number: int) -> Spectrum:
     return Spectrum(FREQUENCY_HZ, np.array([complex(*z) for z in IMPEDANCE_OHM[number]]))
 
 
+def png(width: int = 1, height: int = 1) -> bytes:
+    """A grey picture."""
+    lines = (b"\x00" + b"\x80" * width) * height
+    header = width.to_bytes(4) + height.to_bytes(4) + bytes((8, 0, 0, 0, 0))
+    chunks = ((b"IHDR", header), (b"IDAT", zlib.compress(lines)), (b"IEND", b""))
+    told = b"".join(
+        len(content).to_bytes(4) + kind + content + zlib.crc32(kind + content).to_bytes(4)
+        for kind, content in chunks
+    )
+    return b"\x89PNG\r\n\x1a\n" + told
+
+
 @pytest.fixture
 def raw() -> dict[str, bytes]:
     files = [f"file {number}\r\n\x00\xff".encode("latin-1") for number in range(4)]
+    files.append(png())
     return {hashlib.sha256(content).hexdigest(): content for content in files}
 
 
@@ -140,6 +158,16 @@ def campaign(raw: dict[str, bytes]) -> Campaign:
         open_lead_source=Source("open_lead.txt", hashes[3], "", dialect),
         refused=(Refusal("broken.csv", "It holds no numbers."),),
         remark="Cabinet 3",
+        ratings=(
+            Rating("v1", VisualRating("p1", 168.0, "iso_4628_2", "2(S3)", "2016", "AB", "edge")),
+            Rating("v2", VisualRating("p2", 0.0, "astm_d610", "9-S")),
+        ),
+        photographs=(
+            Photograph("b1", "p1", hashes[4], "image/png", 168.0, "blisters, lower edge", "7.png"),
+        ),
+        identification=Identification(
+            "Own laboratory", "A customer", "2026-17", "AB", "CD", ("ISO 16773-2", "ISO 4628-2")
+        ),
     )
 
 

@@ -32,14 +32,20 @@ def test_a_sound_file(file: CampaignFile) -> None:
     [
         ("UPDATE raw_files SET bytes = x'00' WHERE rowid = 2", "not what its SHA-256"),
         ("DELETE FROM raw_files WHERE rowid = 1", "bytes of one/a1.csv"),
-        ("UPDATE spectra SET real_ohm = replace(real_ohm, '1', '2')", "numbers of spectrum"),
+        (
+            "UPDATE spectra SET real_ohm = replace(real_ohm, '1', '2')",
+            "cannot be read, or was altered",
+        ),
         ("UPDATE spectra SET imaginary_ohm = '[]'", "cannot be read"),
         ("UPDATE readings SET panel_id = 'gone' WHERE reading_id = 'r1'", "refers to a row"),
         ("UPDATE readings SET kept_in = '[6]' WHERE reading_id = 'r2'", "row r2 of readings"),
         ("UPDATE panels SET notes = '{' WHERE panel_id = 'p2'", "row p2 of panels"),
         ("UPDATE open_lead SET dialect = '7'", "open-lead run cannot be read"),
         ("DELETE FROM settings", "settings are missing"),
-        ("INSERT INTO campaign VALUES ('c2', 'second', '')", "more than one row"),
+        (
+            "INSERT INTO campaign VALUES ('c2', 'second', '', '', '', '', '', '', '[]')",
+            "more than one row",
+        ),
         ("UPDATE settings SET thresholds = '[[\"x\", NaN]]'", "settings or open-lead run cannot"),
         ("UPDATE history SET changes = '[{}]'", "Line 1 of the history"),
         (
@@ -47,9 +53,24 @@ def test_a_sound_file(file: CampaignFile) -> None:
             '\'[{"table": "panels", "key": "p1", "before": [], "after": null}]\'',
             "Line 1 of the history",
         ),
-        ("INSERT INTO history VALUES (2, 'redo', 1, 'n', 'w', 't', '[]')", "contradicts itself"),
+        (
+            "INSERT INTO history VALUES (2, 'redo', 1, 'n', 'w', 't', '[]', '', '', '')",
+            "contradicts",
+        ),
         ("CREATE TRIGGER t AFTER DELETE ON panels BEGIN SELECT 1; END", "trigger 't'"),
         ("CREATE TABLE notes (x)", "table 'notes' that coatgui does not make"),
+        ("UPDATE history SET who = 'nobody'", "Line 1 of the history, or one before"),
+        ("UPDATE history SET when_utc = '2020-01-01T00:00:00Z'", "Line 1 of the history"),
+        ("UPDATE history SET reason = 'another'", "Line 1 of the history"),
+        ("DELETE FROM history", "history is missing"),
+        ("UPDATE sqlite_sequence SET seq = 7", "end of the history are missing"),
+        ("UPDATE panels SET area_cm2 = 10.2 WHERE panel_id = 'p1'", "changed from outside"),
+        ("UPDATE ratings SET grade = '1(S3)'", "changed from outside"),
+        ("UPDATE photographs SET caption = ''", "changed from outside"),
+        ("UPDATE campaign SET reviewer = 'EF'", "changed from outside"),
+        ("UPDATE photographs SET sha256 = 'x'", "refers to a row"),
+        ("INSERT INTO raw_files VALUES ('x', x'00')", "changed from outside"),
+        ("INSERT INTO cached_results VALUES ('k', x'00', '')", "kept result k"),
         ("PRAGMA user_version = 999", "newer coatgui"),
         ("PRAGMA application_id = 1", "not a campaign file"),
     ],
@@ -69,7 +90,8 @@ def test_several_problems_are_all_named(file: CampaignFile) -> None:
         "UPDATE panels SET notes = 'x'",
         "UPDATE history SET changes = ''",
     )
-    assert len(check_file(file.path)) == 4 + 2 + 1
+    # Five files, two panels, one line that cannot be read and breaks the chain, and the state.
+    assert len(check_file(file.path)) == 5 + 2 + 2 + 1
 
 
 def test_damaged_pages_are_found(file: CampaignFile) -> None:

@@ -47,6 +47,11 @@ def with_formulation(campaign: Campaign, formulation_id: str, **fields: Any) -> 
     )
 
 
+def with_rating(campaign: Campaign, **fields: Any) -> Campaign:
+    first, *others = campaign.ratings
+    return replace(campaign, ratings=(replace(first, seen=replace(first.seen, **fields)), *others))
+
+
 LIMIT = Criterion("new", 0.01, 1e8, "ours")
 
 # The operation, what the campaign should be afterwards, what changes, how it is called.
@@ -143,9 +148,52 @@ CASES: dict[
     ),
     "remove_panel": (
         lambda c: operations.remove_panel(c, "p1"),
-        lambda c: replace(c, panels=c.panels[1:], readings=c.readings[2:]),
-        {"panels", "readings"},
+        lambda c: replace(
+            c,
+            panels=c.panels[1:],
+            readings=c.readings[2:],
+            ratings=c.ratings[1:],
+            photographs=(),
+        ),
+        {"panels", "readings", "ratings", "photographs"},
         "Remove panel A1 with 2 readings",
+    ),
+    "identify": (
+        lambda c: operations.identify(c, customer=" Another ", standards=["ISO 16773-2 "]),
+        lambda c: replace(
+            c,
+            identification=replace(
+                c.identification, customer="Another", standards=("ISO 16773-2",)
+            ),
+        ),
+        {"campaign"},
+        "Set customer, standards of the summary",
+    ),
+    "edit_rating": (
+        lambda c: operations.edit_rating(c, "v1", value=" 3(S2) ", exposure_h=200),
+        lambda c: with_rating(c, value="3(S2)", exposure_h=200.0),
+        {"ratings"},
+        "Change a rating of panel A1",
+    ),
+    "remove_ratings": (
+        lambda c: operations.remove_ratings(c, ["v1", "v2"]),
+        lambda c: replace(c, ratings=()),
+        {"ratings"},
+        "Remove 2 ratings",
+    ),
+    "edit_photograph": (
+        lambda c: operations.edit_photograph(c, "b1", caption="rust", exposure_h=None),
+        lambda c: replace(
+            c, photographs=(replace(c.photographs[0], caption="rust", exposure_h=None),)
+        ),
+        {"photographs"},
+        "Change a photograph of panel A1",
+    ),
+    "remove_photograph": (
+        lambda c: operations.remove_photograph(c, "b1"),
+        lambda c: replace(c, photographs=()),
+        {"photographs"},
+        "Remove a photograph of panel A1",
     ),
     "edit_reading": (
         lambda c: operations.edit_reading(c, "r1", exposure_h=24, panel_id="p2", remark=""),

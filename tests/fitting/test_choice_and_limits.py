@@ -205,3 +205,27 @@ def test_a_model_that_makes_no_sense_is_refused(more: dict[str, object], said: s
     data = {"id": "own", "name": "Own", "layer": [{"role": "film", "ionic": "resistor"}]}
     with pytest.raises(ModelError, match=said):
         model_from_data(data | more)
+
+
+@pytest.mark.parametrize(
+    ("area_cm2", "name"), [(10.0, "layer_reacting"), (None, "layer_reacting"), (1e4, None)]
+)
+def test_two_arcs_of_metal_are_not_called_a_film(area_cm2: float | None, name: str | None) -> None:
+    """An outer capacitance of 5e-6 F is a film's only on a panel of a square metre."""
+    model = catalogue()["pores_reacting_interface"]
+    values = {"R_s": 20, "Q_c": 5e-6, "n_c": 0.9, "R_po": 400, "Q_dl": 1e-4, "n_dl": 0.8}
+    theta = model.natural(np.array([[*values.values(), 9e3]], dtype=float))
+    clean = model.impedance(theta, FREQUENCY_HZ)[0]
+    random = np.random.default_rng(33)
+    noise = random.standard_normal(57) + 1j * random.standard_normal(57)
+    (fit,) = fit_spectra(
+        [Spectrum(FREQUENCY_HZ, clean * (1.0 + 0.003 * noise))],
+        [np.ones(57, dtype=bool)],
+        area_cm2=[area_cm2],
+        series=["p"],
+        exposure_h=[0.0],
+        pinned=[""],
+    )
+    assert fit is not None
+    assert fit.model == (name or "pores_reacting_interface")
+    assert (fit.parameter("R_L") is None) is (name is None)

@@ -72,6 +72,13 @@ def test_columns_without_headings() -> None:
         read_spectra(text("", MODULUS, Z.real, Z.imag).encode())
 
 
+def test_headings_that_are_not_understood_are_doubted() -> None:
+    piece = one(text("freq fit;real fit;imag fit", FREQUENCY, Z.real, Z.imag))
+    assert is_z(piece)
+    assert any("'freq fit, real fit, imag fit' were not understood" in d for d in piece.doubts)
+    assert not one(text("", FREQUENCY, Z.real, Z.imag)).doubts
+
+
 def test_a_phase_without_a_unit() -> None:
     assert is_z(one(text("f;|Z|;phase", FREQUENCY, MODULUS, DEGREES)))
     assert is_z(one(text("f;|Z|;phase", FREQUENCY, MODULUS, np.radians(DEGREES))))
@@ -104,6 +111,13 @@ def test_an_exposure_without_a_unit_is_asked_about() -> None:
     words = [f"{h:g} h" for h in hours]
     assert [p.exposure_h for p in read_spectra(text("exposure;f;Z';Z''", words, *told).encode())] \
         == [24.0, 168.0]  # fmt: skip
+
+
+def test_seconds_are_no_exposure() -> None:
+    zero = np.zeros(29)
+    assert one(text("Time (s);f;Z';Z''", zero, FREQUENCY, Z.real, Z.imag)).exposure_h is None
+    exposed = one(text("Exposure (min);f;Z';Z''", zero + 90, FREQUENCY, Z.real, Z.imag))
+    assert exposed.exposure_h == pytest.approx(1.5)
 
 
 def test_a_line_of_words_among_the_points_is_no_new_table() -> None:

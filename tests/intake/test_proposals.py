@@ -131,6 +131,13 @@ def test_parts_of_a_file_are_corrected_one_by_one(tmp_path: Path) -> None:
     assert [(r.panel, r.exposure_h) for r in readings] == [("B1", 1.0), ("B2", 2.0)]
 
 
+def test_one_name_for_several_spectra_is_asked_about(tmp_path: Path) -> None:
+    (tmp_path / "A1_24h.csv").write_text(told(1) + "\n" + told(2))
+    run = propose_folder(tmp_path)
+    assert [str(p.standing) for p in run.proposals] == ["asked", "asked"]
+    assert "several spectra" in run.found.refused[0].reason
+
+
 def test_stored_bytes_are_read_again(tmp_path: Path) -> None:
     (tmp_path / "A1_24h.csv").write_text(told())
     found = read_folder(tmp_path)

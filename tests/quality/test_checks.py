@@ -106,6 +106,26 @@ def test_a_step_is_named_between_its_two_points(decay: float) -> None:
     assert not found.suggested
 
 
+def test_a_small_step_is_a_note_where_ranges_are_known_to_differ() -> None:
+    tolerant = Settings(thresholds=(("step_doubt_percent", 2.5),))
+    z = noisy(pores(), share=0.001)
+    z[55:] *= 1.02
+    assert finding(check(z), "step").severity is Severity.DOUBT
+    assert finding(check(z, settings=tolerant), "step").severity is Severity.NOTE
+    z[55:] *= 1.02
+    assert finding(check(z, settings=tolerant), "step").severity is Severity.DOUBT
+
+
+def test_a_lag_that_passes_the_right_angle_at_the_fast_end_only_is_named() -> None:
+    """Where few points show it, their mean is asked for less than a point anywhere."""
+    film = 1 / (2j * np.pi * FREQUENCY * 1e-9) ** 0.98
+    lag = np.exp(-0.08j * FREQUENCY / FREQUENCY[0])
+    found = [{f.code for f in check(noisy(film * lag, seed, 0.015)).findings} for seed in range(40)]
+    assert sum("negative_real_part" in codes for codes in found) >= 30
+    quiet = [{f.code for f in check(noisy(film, seed, 0.015)).findings} for seed in range(200)]
+    assert sum("negative_real_part" in codes for codes in quiet) <= 2
+
+
 def test_drift_is_told_from_scatter() -> None:
     elapsed = np.cumsum(1 / FREQUENCY) / np.sum(1 / FREQUENCY)
     drifting = check(noisy(pores() * (1 - 0.2 * elapsed)))
@@ -216,6 +236,14 @@ def test_what_the_sweep_does_not_cover_is_said() -> None:
     slow = np.logspace(2.5, -2, 46)
     z = panel("bare_metal", 20.0, 2e-5, 0.9, 1e5, frequency_hz=slow)
     assert "no_plateau" in codes(check(noisy(z), frequency_hz=slow))
+
+
+def test_points_too_far_apart_are_not_judged_but_the_sign_is() -> None:
+    sparse = np.logspace(5, -2, 12)
+    z = noisy(pores(sparse))
+    z[5] *= 1.5
+    assert codes(check(z, frequency_hz=sparse)) == {"kramers_kronig_not_tested", "few_points"}
+    assert codes(check(noisy(pores(sparse)).conj(), frequency_hz=sparse)) == {"wrong_sign"}
 
 
 LEADS = 1 / 5e11 + 1j * OMEGA * 5e-12

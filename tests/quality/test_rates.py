@@ -8,7 +8,8 @@ from types import ModuleType
 import numpy as np
 import pytest
 
-from coatgui.records import Severity
+from coatgui.quality import check_spectra
+from coatgui.records import Settings, Severity, Spectrum
 
 
 def test_clean_spectra_raise_few_doubts_and_no_rejects(
@@ -22,8 +23,22 @@ def test_clean_spectra_raise_few_doubts_and_no_rejects(
     answers = benchmark_table.checked(z)
     doubts = sum(any(f.severity is Severity.DOUBT for f in c.findings) for c in answers)
     rejects = sum(c.rejected for c in answers)
-    assert doubts <= 0.015 * len(z)  # 2 % is allowed
+    assert doubts <= 0.02 * len(z)
     assert rejects == 0
+
+
+@pytest.mark.parametrize("points", [12, 20, 29, 91, 141])
+def test_clean_spectra_are_left_in_peace_on_any_grid(faults: ModuleType, points: int) -> None:
+    rng = np.random.default_rng(16)
+    grid = np.logspace(5, -2, points)
+    spectra = [
+        Spectrum(grid, faults.scattered(rng, s.impedance(grid), 10 ** rng.uniform(-2.7, -1.7)))
+        for s in faults.specimens(rng, 125)
+    ]
+    answers = check_spectra(spectra, settings=Settings(), area_cm2=[1.0] * len(spectra))
+    weighty = [any(f.severity is not Severity.NOTE for f in c.findings) for c in answers]
+    assert np.mean(weighty) <= 0.02
+    assert not any(c.rejected for c in answers)
 
 
 # Fault and strength (share of |Z| or as the table says), share that must be named, with a scatter
@@ -34,7 +49,8 @@ WANTED = [
     ("two wild neighbours", 0.1, 0.93),
     ("burst of scatter", 0.05, 0.93),
     ("mains pick-up", 0.05, 0.95),
-    ("step that stays", 0.05, 0.95),
+    ("step that stays", 0.02, 0.8),
+    ("step that stays", 0.05, 0.97),
     ("step that dies away", 0.1, 0.95),
     ("inductive tail", 0.1, 0.98),
     ("phase past -90°", 0.05, 0.95),
@@ -55,6 +71,15 @@ def test_a_fault_is_named(
     fault = next(f for f in faults.FAULTS if f.name == name)
     hits, _, _ = benchmark_table.rates(fault, strength, 20, 12, False)
     assert np.mean(hits) >= least
+
+
+def test_a_step_of_five_percent_is_doubted_whatever_the_scatter(
+    faults: ModuleType, benchmark_table: ModuleType
+) -> None:
+    """At 0.2 to 2 %: where it is 2 %, chance alone hides every third."""
+    fault = next(f for f in faults.FAULTS if f.name == "step that stays")
+    _, weighty, _ = benchmark_table.rates(fault, 0.05, 50, 18, False)
+    assert np.mean(weighty) >= 0.95
 
 
 def test_a_resistance_that_drifts_by_a_fifth_fails(
@@ -85,6 +110,17 @@ def test_a_step_is_not_called_a_wild_point(faults: ModuleType, benchmark_table: 
     assert sum("wild_point" in {f.code for f in c.findings} for c in answers) <= 0.05 * len(z)
 
 
+def test_neighbouring_wild_points_are_not_called_a_step(
+    faults: ModuleType, benchmark_table: ModuleType
+) -> None:
+    """What was taken for a step first is given back when the points explain it."""
+    rng = np.random.default_rng(17)
+    fault = next(f for f in faults.FAULTS if f.name == "two wild neighbours")
+    z = [fault.put(rng, s, 0.005, 0.3)[0] for s in faults.specimens(rng, 30)]
+    answers = benchmark_table.checked(z)
+    assert sum("step" in {f.code for f in c.findings} for c in answers) <= 0.06 * len(z)
+
+
 def test_a_phase_in_the_wrong_unit_is_recognised(
     faults: ModuleType, benchmark_table: ModuleType
 ) -> None:
@@ -98,5 +134,5 @@ def test_a_phase_in_the_wrong_unit_is_recognised(
         answers = benchmark_table.checked(z)
         recognised = [code in {f.code for f in c.findings} for c in answers]
         weighty = [any(f.severity is not Severity.NOTE for f in c.findings) for c in answers]
-        assert np.mean(recognised) >= 0.75, name
+        assert np.mean(recognised) >= 0.95, name
         assert np.mean(weighty) >= 0.98, name

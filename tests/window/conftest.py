@@ -17,6 +17,10 @@ pytest.importorskip("PySide6")
 from PySide6.QtCore import QEvent, QSettings
 from PySide6.QtWidgets import QApplication, QFrame, QMenu
 
+from coatgui.assessment import assess
+from coatgui.campaign import CampaignFile, campaign_from_found
+from coatgui.intake import read_folder
+from coatgui.jobs import spread_over_processes
 from coatgui.shipped import sample_panels
 from coatgui.window import palette
 from coatgui.window.main_window import MainWindow
@@ -83,3 +87,24 @@ def small(tmp_path: Path) -> Path:
     (folder / "panels.csv").write_text("\n".join(kept) + "\n", encoding="utf-8")
     (folder / "remark.txt").write_text("not a spectrum\n", encoding="utf-8")
     return folder
+
+
+@pytest.fixture(scope="session")
+def judged_sample(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """The sample as a campaign file that keeps its fits, so that they are computed only once."""
+    path = tmp_path_factory.mktemp("sample") / "sample_panels.coatgui"
+    found = read_folder(sample_panels())
+    campaign = campaign_from_found(found, "sample_panels")
+    with CampaignFile.create(path, campaign, found.raw) as file, spread_over_processes() as spread:
+        assess(campaign, spread=spread, cache=file)
+    return path
+
+
+@pytest.fixture
+def sample(window: MainWindow, wait: Wait, judged_sample: Path, tmp_path: Path) -> MainWindow:
+    """The window with the sample, judged."""
+    own = tmp_path / judged_sample.name
+    shutil.copy(judged_sample, own)
+    window.desk.open(own)
+    wait(lambda: window.desk.job is None and window.desk.assessment is not None)
+    return window

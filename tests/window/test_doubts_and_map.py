@@ -14,20 +14,12 @@ from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QApplication, QInputDialog
 
 from coatgui.records import Campaign, ReadingAssessment
-from coatgui.shipped import sample_panels
 from coatgui.window.main_window import MainWindow
 from coatgui.window.places.doubts_place import DoubtsPlace
 from coatgui.window.places.map_place import MapPlace, story
 
 Wait = Callable[[Callable[[], bool]], None]
 LEFT = Qt.MouseButton.LeftButton
-
-
-@pytest.fixture
-def sample(window: MainWindow, wait: Wait) -> MainWindow:
-    window.desk.open(sample_panels())
-    wait(lambda: window.desk.job is None and window.desk.assessment is not None)
-    return window
 
 
 def campaign(window: MainWindow) -> Campaign:

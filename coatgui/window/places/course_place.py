@@ -7,7 +7,7 @@ from typing import Any
 import numpy as np
 import pyqtgraph as pg
 from PySide6.QtCore import Qt, QTimer
-from PySide6.QtWidgets import QComboBox, QHBoxLayout
+from PySide6.QtWidgets import QComboBox, QHBoxLayout, QWidget
 
 from coatgui.records import Assessment, Bound, FormulationAssessment
 from coatgui.window.axis import DecadeAxis, Plot
@@ -215,6 +215,37 @@ class CoursePlace(Place):
                 x[here], y[here], symbol="o", size=15, brush=None,
                 pen=pg.mkPen(self.tone.verdigris, width=2),
             )  # fmt: skip
+
+    def figure(self) -> list[QWidget]:
+        return [self.legend, self.course, self.water] if self.desk.assessment else []
+
+    def caption(self) -> str:
+        title = self.desk.assessment.title if self.desk.assessment else ""
+        return f"{title}: {self.chooser.currentText()} and apparent water uptake"
+
+    def data_rows(self) -> list[list[object]]:
+        code = self._code()
+        head = [
+            "formulation",
+            "panel",
+            "exposure_h",
+            "quantity",
+            "value",
+            "low",
+            "high",
+            "bound",
+            "unit",
+        ]
+        rows: list[list[object]] = [list(head)]
+        for each in (code, "water_uptake"):
+            for r in self.desk.assessment.readings if self.desk.assessment else ():
+                q = amount(r, each)
+                if q is not None and r.counts:
+                    rows.append(
+                        [r.formulation, r.panel, r.exposure_h, each, q.value, q.low, q.high,
+                         q.bound.value, q.unit]
+                    )  # fmt: skip
+        return rows
 
     def _clicked(self, _item: Any, points: Any, _event: Any = None) -> None:
         if len(points):

@@ -147,6 +147,7 @@ class Cells(QWidget):
     def paintEvent(self, event: QPaintEvent) -> None:
         painter = QPainter(self)
         tone, tops = self.tone, self._tops()
+        painter.fillRect(self.rect(), QColor(tone.ground))
         small = QFont(self.font())
         small.setPixelSize(11)
         painter.setFont(small)
@@ -292,6 +293,29 @@ class MapPlace(Place):
         )
         self.cells.show(campaign, known, code)
         self.show_selection()
+
+    def figure(self) -> list[QWidget]:
+        return [self.cells] if self.desk.assessment else []
+
+    def caption(self) -> str:
+        title = self.desk.assessment.title if self.desk.assessment else ""
+        return f"{title}: {self.chooser.currentText()}. {self.legend.text()}"
+
+    def data_rows(self) -> list[list[object]]:
+        """Panels by exposure time, as on the map, in the quantity's own unit."""
+        cells, code = self.cells, self.cells.code
+        rows: list[list[object]] = [["panel", *(f"{hours:g} h" for hours in cells.times)]]
+        for number, (kind, name) in enumerate(cells.rows):
+            if kind != "panel":
+                continue
+            row: list[object] = [name]
+            for column in range(len(cells.times)):
+                cell = cells.cells.get((number, column))
+                counts = isinstance(cell, ReadingAssessment) and cell.counts
+                quantity = amount(cell, code) if counts else None  # type: ignore[arg-type]
+                row.append(None if quantity is None else quantity.value)
+            rows.append(row)
+        return rows
 
     def show_selection(self) -> None:
         self.cells.selection = self.desk.selection

@@ -50,6 +50,18 @@ class Place(QWidget):
     def show_selection(self) -> None:
         """Another reading was picked."""
 
+    def figure(self) -> list[QWidget]:
+        """The plots that make a picture of this place; none where there is nothing to show."""
+        return []
+
+    def caption(self) -> str:
+        """What stands over the picture."""
+        return ""
+
+    def data_rows(self) -> list[list[object]]:
+        """The data behind the picture, the headings first."""
+        return []
+
     def paint_in(self, tone: Colours) -> None:
         self.tone = tone
         self.show_campaign()

@@ -3,33 +3,42 @@ below."""
 
 from __future__ import annotations
 
+import math
+
 import numpy as np
 from PySide6.QtCore import Qt, QTimer
-from PySide6.QtGui import QResizeEvent
+from PySide6.QtGui import QFontMetricsF, QResizeEvent
 from PySide6.QtWidgets import (
-    QAbstractItemView,
     QComboBox,
     QFrame,
     QHBoxLayout,
-    QHeaderView,
+    QPushButton,
     QScrollArea,
-    QTableWidget,
+    QStackedWidget,
     QTableWidgetItem,
     QVBoxLayout,
+    QWidget,
 )
 
 from coatgui.campaign import operations
-from coatgui.circuits import catalogue
 from coatgui.records import Reading, ReadingAssessment
+from coatgui.window.composing import Composing
 from coatgui.window.desk import Desk
+from coatgui.window.model_picker import ModelPicker
+from coatgui.window.models import models
 from coatgui.window.numbers import WORDS, said
 from coatgui.window.palette import Colours
 from coatgui.window.places.place import Place, plain_label, plain_tip
 from coatgui.window.section import SectionView, section_of
+from coatgui.window.sheet import sheet
 from coatgui.window.spectrum_plots import Drawn, SpectrumPlots
+from coatgui.window.trials import TrialsTable
 
+_HEADINGS = (
+    "frequency_hz", "real_ohm", "imaginary_ohm", "modulus_ohm", "phase_degrees", "used",
+    "model_real_ohm", "model_imaginary_ohm",
+)  # fmt: skip
 _MOST_LINES = 5
-_AUTOMATIC = "Model chosen by the data"
 _MARKS = {"note": "◦", "doubt": "▲", "reject": "■"}
 _HINT = "Click a point to leave it out or take it back; drag with Shift for several."
 ALONE, OTHER_TIMES, REPLICATES = range(3)
@@ -60,13 +69,20 @@ class ReadingPlace(Place):
         self.overlay.currentIndexChanged.connect(self.show_selection)
         self.read_out = plain_label("small")
         self.read_out.setText(_HINT)
+        self.tried = QPushButton("What was tried")
+        self.tried.setCheckable(True)
+        self.tried.setAccessibleDescription(
+            "Every model laid on this spectrum, and why it was left"
+        )
+        self.tried.toggled.connect(self._show_trials)
         under.addWidget(self.overlay)
+        under.addWidget(self.tried)
         under.addWidget(self.read_out, 1)
         left.addLayout(under)
         row.addLayout(left, 1)
-        row.addLayout(self._side(tone))
+        row.addWidget(self._side(tone))
         self.findings = plain_label()
-        self.findings.setAccessibleName("Findings on this reading")
+        self.findings.setAlignment(Qt.AlignmentFlag.AlignTop)
         area = QScrollArea()
         area.setWidget(self.findings)
         area.setWidgetResizable(True)
@@ -76,44 +92,37 @@ class ReadingPlace(Place):
         area.setHorizontalScrollBarPolicy(Qt.ScrollBarPolicy.ScrollBarAlwaysOff)
         self.findings_area = area
         self.column.addWidget(area)
+        self.trials = TrialsTable()
+        self.trials.hide()
+        self.column.addWidget(self.trials)
         self.toggling: list[int] = []
 
-    def _side(self, tone: Colours) -> QVBoxLayout:
-        side = QVBoxLayout()
-        side.setSpacing(8)
-        self.model = QComboBox()
-        self.model.setAccessibleName("Coating model of this reading")
-        self.model.setAccessibleDescription("Let the data choose, or insist on a model")
-        self.model.addItem(_AUTOMATIC, "")
-        for name, model in catalogue().items():
-            self.model.addItem(model.name, name)
-            self.model.setItemData(
-                self.model.count() - 1, model.meaning, Qt.ItemDataRole.ToolTipRole
-            )
-        self.model.activated.connect(self._pin)
-        side.addWidget(self.model)
+    def _side(self, tone: Colours) -> QStackedWidget:
+        shown = QWidget()
+        side = QVBoxLayout(shown)
+        side.setContentsMargins(0, 0, 0, 0)
+        side.setSpacing(6)
+        self.picker = ModelPicker(self.desk)
+        self.picker.compose.clicked.connect(self._compose)
+        side.addWidget(self.picker)
         self.section = SectionView(tone)
         side.addWidget(self.section, 3)
-        self.table = QTableWidget(0, 2)
-        self.table.setAccessibleName("Fitted parameters with limits")
-        self.table.setHorizontalHeaderLabels(["parameter", "value (95 % limits)"])
-        self.table.setAccessibleDescription("A row for each parameter; tips say how it was found")
-        self.table.setTabKeyNavigation(False)  # Tab leads on to the next control
-        self.table.verticalHeader().hide()
-        self.table.verticalHeader().setMinimumSectionSize(18)
+        self.table = sheet(
+            ("parameter", "value (95 % limits)"),
+            "Fitted parameters with limits",
+            "A row for each parameter; tips say how it was found",
+        )
         self.table.verticalHeader().setDefaultSectionSize(21)
-        self.table.setEditTriggers(QAbstractItemView.EditTrigger.NoEditTriggers)
-        self.table.setSelectionBehavior(QAbstractItemView.SelectionBehavior.SelectRows)
-        self.table.setShowGrid(False)
-        self.table.setHorizontalScrollBarPolicy(Qt.ScrollBarPolicy.ScrollBarAlwaysOff)
-        header = self.table.horizontalHeader()
-        header.setDefaultAlignment(Qt.AlignmentFlag.AlignLeft)
-        header.setSectionResizeMode(QHeaderView.ResizeMode.ResizeToContents)
-        header.setStretchLastSection(True)
-        header.setHighlightSections(False)
-        self.table.setFixedWidth(330)
+        self.table.setMinimumHeight(90)
         side.addWidget(self.table, 2)
-        return side
+        self.composing = Composing(self.desk, tone)
+        self.composing.left.connect(self._composed)
+        pages = QStackedWidget()
+        pages.setFixedWidth(330)
+        pages.addWidget(shown)
+        pages.addWidget(self.composing)
+        self.pages = pages
+        return pages
 
     def show_campaign(self) -> None:
         self.show_selection()
@@ -125,17 +134,24 @@ class ReadingPlace(Place):
             panel = next(
                 (p for p in self.desk.campaign.panels if p.panel_id == reading.panel_id), None
             )
-        self.section.show_section(section_of(known, panel), self.tone)
+        self.section.show_section(section_of(known, panel, models(self.desk.campaign)), self.tone)
         self.section.setVisible(self.section.section is not None)
         self.table.setRowCount(0)
         self._say(reading, known)
+        self._show_trials()
         if reading is None:
             self.plots.show_spectrum(None, (), self.tone)
             return
         self.plots.show_spectrum(drawn(reading, known), self._overlaid(reading), self.tone)
-        self.model.setCurrentIndex(max(self.model.findData(reading.pinned_model), 0))
+        self.picker.offer(reading)
         if known is not None:
             self._tabulate(known)
+
+    def _show_trials(self) -> None:
+        known = self.desk.reading_assessment()
+        self.trials.show_trials(known.fit if known else None, models(self.desk.campaign), self.tone)
+        self.trials.setVisible(self.tried.isChecked())
+        self.findings_area.setVisible(bool(self.findings.text()) and not self.tried.isChecked())
 
     def _overlaid(self, reading: Reading) -> list[tuple[Drawn, float]]:
         """The other spectra to draw, each with its share of the exposure time."""
@@ -152,6 +168,7 @@ class ReadingPlace(Place):
                 if own.get(r.panel_id) == own.get(reading.panel_id)
                 and r.exposure_h == reading.exposure_h
             ]
+        found.sort(key=lambda r: r.exposure_h)  # the longest lies on top
         times = sorted({r.exposure_h for r in found})
         return [
             (
@@ -189,9 +206,12 @@ class ReadingPlace(Place):
 
     def _fit_findings(self) -> None:
         """As high as the findings need, up to some whole lines; the rest is scrolled to."""
-        line = self.findings.fontMetrics().lineSpacing()
+        self.findings.ensurePolished()
+        line = math.ceil(QFontMetricsF(self.findings.font()).lineSpacing())
         needed = self.findings.heightForWidth(max(self.width() - 40, 200))
-        self.findings_area.setFixedHeight(min(needed, _MOST_LINES * line) + 2)
+        self.findings_area.setFixedHeight(
+            min(needed, _MOST_LINES * line) + 2 * self.findings_area.frameWidth() + 2
+        )
 
     def resizeEvent(self, event: QResizeEvent) -> None:
         super().resizeEvent(event)
@@ -212,6 +232,42 @@ class ReadingPlace(Place):
                     plain_tip(f"{meaning} ({WORDS[quantity.bound]}). {quantity.method}")
                 )
                 self.table.setItem(i, j, item)
+
+    def figure(self) -> list[QWidget]:
+        return [] if self.desk.reading() is None else list(self.plots.plots)
+
+    def caption(self) -> str:
+        known = self.desk.reading_assessment()
+        if known is None:
+            return ""
+        model = f", {known.fit.model_name}" if known.fit else ""
+        return f"{known.panel} ({known.formulation}) after {known.exposure_h:g} h{model}"
+
+    def data_rows(self) -> list[list[object]]:
+        reading = self.desk.reading()
+        if reading is None:
+            return []
+        shown = drawn(reading, self.desk.reading_assessment())
+        z = reading.spectrum.impedance_ohm
+        model = shown.fit.modelled_ohm if shown.fit else [None] * z.size
+        rows: list[list[object]] = [list(_HEADINGS)]
+        for f, measured, fitted, used in zip(
+            reading.spectrum.frequency_hz, z, model, shown.used, strict=True
+        ):
+            rows.append(
+                [
+                    float(f), float(measured.real), float(measured.imag), float(abs(measured)),
+                    float(np.degrees(np.angle(measured))), "yes" if used else "no",
+                    None if fitted is None else float(fitted.real),
+                    None if fitted is None else float(fitted.imag),
+                ]
+            )  # fmt: skip
+        return rows
+
+    def paint_in(self, tone: Colours) -> None:
+        self.composing.composer.paint_in(tone)
+        self.plots.point_at(-1)  # the cursor belongs to the mouse, not into a picture
+        super().paint_in(tone)
 
     def _pointed(self, words: str) -> None:
         self.read_out.setText(words or _HINT)
@@ -237,11 +293,16 @@ class ReadingPlace(Place):
         else:
             self.desk.edit(operations.take_back_points, reading.reading_id, places)
 
-    def _pin(self, index: int) -> None:
-        reading = self.desk.reading()
-        name = self.model.itemData(index)
-        if reading is not None and name != reading.pinned_model:
-            self.desk.edit(operations.pin_model, [reading.reading_id], name)
+    def _compose(self) -> None:
+        known = self.desk.reading_assessment()
+        fitted = known.fit.model if known and known.fit else ""
+        self.composing.begin(self.picker.picked(), fitted, self.tone)
+        self.pages.setCurrentIndex(1)
+        self.composing.composer.name.setFocus()
+
+    def _composed(self) -> None:
+        self.pages.setCurrentIndex(0)
+        self.picker.compose.setFocus()
 
 
 def drawn(reading: Reading, known: ReadingAssessment | None) -> Drawn:
