@@ -68,6 +68,11 @@ def _assess_parser() -> argparse.ArgumentParser:
     )
     parser.add_argument("--workbook", type=Path, metavar="OUT.xlsx", help="write the workbook")
     parser.add_argument(
+        "--spectra",
+        action="store_true",
+        help="put every spectrum into the workbook, however many there are",
+    )
+    parser.add_argument(
         "--summary",
         type=Path,
         metavar="OUT.pdf",
@@ -345,7 +350,9 @@ def _finish(
     if options.json is not None:
         write_json(assessment, options.json)
     if options.workbook is not None:
-        write_workbook(assessment, campaign, options.workbook)
+        write_workbook(
+            assessment, campaign, options.workbook, spectra=True if options.spectra else None
+        )
     if options.summary is not None:
         identification = Identification(**{field: getattr(options, field) for field in _FIELDS})
         write_summary(assessment, campaign, options.summary, identification)

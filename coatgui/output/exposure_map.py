@@ -113,5 +113,5 @@ def _cell(
     )
     colour = between(_PALE, _DEEP, share)
     sign = {Bound.AT_LEAST: "≥", Bound.AT_MOST: "≤"}.get(quantity.bound, "")
-    ink = "#FFFFFF" if share > 0.5 else INK
+    ink = "#FFFFFF" if share > 0.68 else INK
     return f"{sign}{math.log10(quantity.value):.1f}{mark}", colour, ink

@@ -52,7 +52,7 @@ def panels_table(assessment: Assessment, campaign: Campaign) -> Table:
             "regime",
         ),
         tuple(rows),
-        (2, 1.2, 0.9, 0.9, 1.6, 1.8, 0.7, 1.6),
+        (2, 1.2, 0.9, 0.9, 1.6, 1.8, 0.8, 1.6),
         frozenset({2, 3, 6}),
     )
 
@@ -87,7 +87,7 @@ def readings_table(assessment: Assessment) -> Table:
             "state",
         ),
         rows,
-        (0.8, 0.6, 2.75, 1.9, 1, 1, 2.05, 1.05),
+        (0.9, 0.75, 2.6, 1.9, 1.05, 1.15, 1.9, 1.05),
         frozenset({1}),
     )
 
@@ -123,7 +123,7 @@ def water_table(assessment: Assessment) -> Table:
         "diffusion coefficient of water (cm²/s).",
         ("panel", "hours", "uptake", "other laws", "at saturation", "dry C", "diffusion"),
         tuple(rows),
-        (0.8, 0.6, 1.7, 1.2, 1.7, 1, 3),
+        (0.9, 0.75, 1.8, 1.3, 1.8, 1.1, 2.3),
         frozenset({1}),
     )
 
@@ -229,7 +229,7 @@ def findings_table(assessment: Assessment) -> Table:
         "Deviations, doubts and notes, the heaviest first.",
         ("weight", "panel", "hours", "what was found"),
         rows,
-        (1, 1, 0.7, 6),
+        (1, 1, 0.8, 6),
         frozenset({2}),
     )
 
@@ -249,7 +249,7 @@ def left_out_table(assessment: Assessment) -> Table:
         "Points left out of the evaluation, with the reasons. They stay in the campaign.",
         ("panel", "hours", "Hz", "reason"),
         rows,
-        (1, 0.7, 0.9, 5),
+        (1, 0.8, 0.9, 5),
         frozenset({1, 2}),
     )
 
@@ -275,7 +275,7 @@ def parameters_table(assessment: Assessment) -> Table:
         "all readings stand in the workbook and the data files.",
         ("panel", "hours", "circuit", "symbol", "value", "unit", "meaning"),
         rows,
-        (0.9, 0.7, 1.7, 0.8, 2.3, 1.1, 2.2),
+        (0.9, 0.8, 1.7, 0.8, 2.3, 1.1, 2.2),
         frozenset({1}),
     )
 
@@ -313,7 +313,7 @@ def provenance_table(assessment: Assessment, campaign: Campaign) -> Table:
             hours(r.exposure_h),
             r.file,
             r.sha256,
-            r.fit.model if r.fit else NOTHING,
+            r.fit.model_name if r.fit else NOTHING,
             f"{r.points_used} of {r.points_read}",
         )
         for r in assessment.readings
@@ -325,6 +325,6 @@ def provenance_table(assessment: Assessment, campaign: Campaign) -> Table:
         "Where each reading came from: file, its SHA-256, the circuit, points used.",
         ("panel", "hours", "file", "SHA-256", "circuit", "points"),
         tuple(rows),
-        (0.9, 0.7, 1.8, 3.4, 1.5, 1),
+        (0.9, 0.8, 1.8, 3.4, 1.5, 1),
         frozenset({1}),
     )

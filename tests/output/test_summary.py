@@ -17,6 +17,7 @@ from coatgui.output import Identification, inspection_summary, require_qt, write
 from coatgui.output.document import Document, Figure, Heading, Listing, Paragraph, Table
 from coatgui.output.html_form import html_document
 from coatgui.output.pages import PagesUnavailable, pdf_bytes
+from coatgui.output.shown import amount
 from coatgui.records import Assessment, Bound, Campaign, Quantity
 
 IDENTIFICATION = Identification(laboratory="Slip Laboratory", order="RC-7", standards="none")
@@ -144,6 +145,21 @@ def test_one_formulation_and_no_reading_have_their_sentences(
     words = words_of(inspection_summary(empty, Campaign("c", "t")))
     assert "There are no readings" in words
     assert cautions()[0] in words  # cautions are never missing
+
+
+@pytest.mark.parametrize(
+    ("value", "low", "high", "shown"),
+    [
+        (2.83e10, 2.8e10, 2.86e10, "2.83 (2.80 to 2.86)·10¹⁰"),
+        (2e-10, 1e-13, 3e-9, "2·10⁻¹⁰ (10⁻¹³ to 3·10⁻⁹)"),
+        (1.5, -0.25, 9999.7, "1.5 (−0.25 to 10000)"),
+        (0.0, None, 1e9, "0 (– to 10⁹)"),
+    ],
+)
+def test_numbers_with_their_limits(
+    value: float, low: float | None, high: float | None, shown: str
+) -> None:
+    assert amount(Quantity(value, low, high, Bound.TWO_SIDED, "")) == shown
 
 
 class Elements(HTMLParser):

@@ -228,3 +228,13 @@ def test_charts_stand_on_logarithmic_axes(book: Workbook, tmp_path: Path) -> Non
     bode = book["Bode plots"]._charts
     assert [chart.x_axis.scaling.logBase for chart in bode[:2]] == [10, 10]
     assert all(chart.x_axis.title and chart.y_axis.title for chart in [*charts, *bode])
+
+
+def test_spectra_are_optional(assessment: Assessment, campaign: Campaign, tmp_path: Path) -> None:
+    write_workbook(assessment, campaign, tmp_path / "x.xlsx", spectra=False)
+    assert "Spectra" not in openpyxl.load_workbook(tmp_path / "x.xlsx").sheetnames
+    write_workbook(assessment, campaign, tmp_path / "x.xlsx", spectra=True)
+    rows = table(openpyxl.load_workbook(tmp_path / "x.xlsx"), "Spectra")
+    assert len(rows) == 4
+    assert rows[0]["Z′ (Ω)"] == 1e3
+    assert rows[1]["left out because"] == "wild point"
