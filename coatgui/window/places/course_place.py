@@ -7,6 +7,7 @@ from typing import Any
 import numpy as np
 import pyqtgraph as pg
 from PySide6.QtCore import Qt, QTimer
+from PySide6.QtGui import QHideEvent, QShowEvent
 from PySide6.QtWidgets import QComboBox, QHBoxLayout, QWidget
 
 from coatgui.records import Assessment, Bound, FormulationAssessment
@@ -16,12 +17,20 @@ from coatgui.window.legend import Legend
 from coatgui.window.palette import Colours, formulation_look
 from coatgui.window.places.map_place import QUANTITIES, amount
 from coatgui.window.places.place import Place, plain_label
+from coatgui.window.places.reading_place import drawn
+from coatgui.window.time_constants import Outlines, TimeConstantsPlot, Wanted
 
 _TIMES = {
     "Exposure time, log": "log",
     "Exposure time, √t": "root",
     "Exposure time, linear": "plain",
 }
+WATER, TIME_CONSTANTS = range(2)
+_BELOW = ("Below: water uptake", "Below: time constants")
+_EXPLORATORY = (
+    "{panel}, exploratory: the wider, the more resistance at that time constant; circles mark "
+    "humps. Many outlines fit the same data, and nothing else here rests on them."
+)
 _AXIS_WIDTH = 108
 # Labels of the time axis stand at least this share of its width apart.
 _APART = 1 / 16
@@ -41,8 +50,14 @@ class CoursePlace(Place):
         self.times.setAccessibleName("Scale of exposure time")
         self.times.setAccessibleDescription("How the exposure time is spread in both plots")
         self.times.addItems(list(_TIMES))
+        self.below = QComboBox()
+        self.below.setAccessibleName("What the lower plot shows")
+        self.below.setAccessibleDescription(
+            "Water of all panels, or the time constants of the picked panel"
+        )
+        self.below.addItems(list(_BELOW))
         self.explained = plain_label("small")
-        for choice in (self.chooser, self.times):
+        for choice in (self.chooser, self.times, self.below):
             choice.currentIndexChanged.connect(self.show_campaign)
             bar.addWidget(choice)
         bar.addWidget(self.explained, 1)
@@ -52,10 +67,17 @@ class CoursePlace(Place):
         self.course = Plot("Course of the quantity", ("", None), ("", "Ω cm²"))
         self.water = Plot("Course of the water uptake", ("", None), ("water / vol-%", None))
         self.water.setXLink(self.course)
-        for plot in (self.course, self.water):
+        self.constants = TimeConstantsPlot()
+        self.constants.setXLink(self.course)
+        self.exploratory = plain_label("small")
+        for plot in (self.course, self.water, self.constants):
             plot.getPlotItem().getAxis("left").setWidth(_AXIS_WIDTH)
         self.column.addWidget(self.course, 3)
         self.column.addWidget(self.water, 2)
+        self.column.addWidget(self.exploratory)
+        self.column.addWidget(self.constants, 3)
+        self.outlines = Outlines(self)
+        self.outlines.came.connect(self._draw_constants)
         self._own = {plot: pg.PlotCurveItem() for plot in (self.course, self.water)}
         self._here = {plot: pg.ScatterPlotItem() for plot in (self.course, self.water)}
 
@@ -67,6 +89,60 @@ class CoursePlace(Place):
         if scale == "log":
             return np.asarray(np.log10(np.maximum(hours, 0.1)))
         return np.asarray(np.sqrt(hours) if scale == "root" else hours)
+
+    def _wanted(self) -> list[Wanted]:
+        """The readings of the picked panel that count, as the outlines want them."""
+        reading, campaign, assessment = (
+            self.desk.reading(), self.desk.campaign, self.desk.assessment,
+        )  # fmt: skip
+        if reading is None or campaign is None or assessment is None:
+            return []
+        known = {r.reading_id: r for r in assessment.readings if r.counts}
+        return [
+            Wanted(r.reading_id, r.exposure_h, r.spectrum, drawn(r, known[r.reading_id]).used)
+            for r in campaign.readings
+            if r.panel_id == reading.panel_id and r.reading_id in known
+        ]
+
+    def _draw_constants(self) -> None:
+        """Draw the outlines that are there, and have the others computed."""
+        shown = self.below.currentIndex() == TIME_CONSTANTS
+        self.water.setVisible(not shown)
+        self.constants.setVisible(shown)
+        self.exploratory.setVisible(shown)
+        if not shown or not self.isVisible():
+            self.outlines.stop()
+            return
+        wanted = self._wanted()
+        if not self.outlines.trouble:
+            self.outlines.want(wanted)
+        there = [(w, o) for w in wanted if (o := self.outlines.of(w)) is not None]
+        self.constants.show_outlines(
+            [(float(self._across(np.array([w.exposure_h]))[0]), o) for w, o in there],
+            next(
+                (float(self._across(np.array([w.exposure_h]))[0]) for w, _ in there
+                 if w.reading_id == self.desk.selection),
+                None,
+            ),
+            self.tone,
+        )  # fmt: skip
+        panel = self.desk.reading_assessment()
+        words = _EXPLORATORY.format(panel=panel.panel if panel else "")
+        done = sum(self.outlines.has(w) for w in wanted)
+        if self.outlines.busy:
+            words += f" {done} of {len(wanted)} readings are computed …"
+        elif done > len(there):
+            words += f" {done - len(there)} have too few points."
+        self.exploratory.setText(self.outlines.trouble or words)
+        self.constants.enableAutoRange(axis="y")
+
+    def hideEvent(self, event: QHideEvent) -> None:
+        self.outlines.stop()
+        super().hideEvent(event)
+
+    def showEvent(self, event: QShowEvent) -> None:
+        super().showEvent(event)
+        self._draw_constants()
 
     def show_campaign(self) -> None:
         assessment, code = self.desk.assessment, self._code()
@@ -110,7 +186,7 @@ class CoursePlace(Place):
         for at in (len(hours) - 1, 0, *range(len(hours) - 2, 0, -1)):
             if all(abs(places[at] - other) > width * _APART for other in kept):
                 kept[places[at]] = f"{hours[at]:g} h"
-        for plot in (self.course, self.water):
+        for plot in (self.course, self.water, self.constants):
             plot.getPlotItem().getAxis("bottom").setTicks([sorted(kept.items())])
 
     def _limits(self, assessment: Assessment, code: str) -> None:
@@ -215,12 +291,19 @@ class CoursePlace(Place):
                 x[here], y[here], symbol="o", size=15, brush=None,
                 pen=pg.mkPen(self.tone.verdigris, width=2),
             )  # fmt: skip
+        self._draw_constants()
 
     def figure(self) -> list[QWidget]:
-        return [self.legend, self.course, self.water] if self.desk.assessment else []
+        constants = self.below.currentIndex() == TIME_CONSTANTS
+        below = self.constants if constants else self.water
+        return [self.legend, self.course, below] if self.desk.assessment else []
 
     def caption(self) -> str:
         title = self.desk.assessment.title if self.desk.assessment else ""
+        if self.below.currentIndex() == TIME_CONSTANTS:
+            panel = self.desk.reading_assessment()
+            name = panel.panel if panel else ""
+            return f"{title}: {self.chooser.currentText()}; time constants of {name}, exploratory"
         return f"{title}: {self.chooser.currentText()} and apparent water uptake"
 
     def data_rows(self) -> list[list[object]]:
@@ -245,6 +328,16 @@ class CoursePlace(Place):
                         [r.formulation, r.panel, r.exposure_h, each, q.value, q.low, q.high,
                          q.bound.value, q.unit]
                     )  # fmt: skip
+        if self.below.currentIndex() == TIME_CONSTANTS:
+            here = self.desk.reading_assessment()  # of the same panel
+            names = [here.formulation, here.panel] if here else ["", ""]
+            for wanted in self._wanted():
+                outline = self.outlines.of(wanted)
+                rows += [
+                    [*names, wanted.exposure_h, "time_constant_exploratory",
+                     peak.time_constant_s, None, None, "", "s"]
+                    for peak in (outline.peaks if outline else ())
+                ]  # fmt: skip
         return rows
 
     def _clicked(self, _item: Any, points: Any, _event: Any = None) -> None:

@@ -7,7 +7,7 @@ from typing import Any
 import numpy as np
 import pyqtgraph as pg
 from PySide6.QtCore import Qt, QTimer
-from PySide6.QtGui import QColor
+from PySide6.QtGui import QColor, QShowEvent
 from PySide6.QtWidgets import QHBoxLayout, QTableWidgetItem, QVBoxLayout, QWidget
 
 from coatgui.assessment.fick import fickian_uptake
@@ -93,6 +93,7 @@ class WaterPlace(Place):
 
     def __init__(self, desk: Desk, tone: Colours) -> None:
         super().__init__(desk, tone)
+        self._drawn = False
         self.about = plain_label()
         self.column.addWidget(self.about)
         row = QHBoxLayout()
@@ -143,6 +144,17 @@ class WaterPlace(Place):
         self.show_selection()
 
     def show_selection(self) -> None:
+        """Drawn when it is seen: stepping through readings elsewhere must not wait for it."""
+        self._drawn = self.isVisible()
+        if self._drawn:
+            self._refresh()
+
+    def showEvent(self, event: QShowEvent) -> None:
+        super().showEvent(event)
+        if not self._drawn:
+            self.show_selection()
+
+    def _refresh(self) -> None:
         for plot in (self.capacitance, self.uptake):
             plot.clear()
             plot.paint_in(self.tone.ground, self.tone.second, self.tone.line)
