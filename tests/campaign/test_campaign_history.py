@@ -32,6 +32,7 @@ def test_the_trail_tells_who_did_what_when(
     file: CampaignFile, monkeypatch: pytest.MonkeyPatch
 ) -> None:
     monkeypatch.setattr(database.getpass, "getuser", lambda: "operator")
+    database.who.cache_clear()
     file.apply(operations.edit_panel(file.campaign, "p1", area_cm2=11.0))
     file.undo()
     file.redo()
@@ -66,6 +67,7 @@ def test_a_person_without_an_account_name(
         raise OSError("no account")
 
     monkeypatch.setattr(database.getpass, "getuser", nobody)
+    database.who.cache_clear()
     file.apply(operations.rename_campaign(file.campaign, "Later"))
     assert file.history()[-1].who == "unknown"
 
