@@ -5,7 +5,7 @@ from __future__ import annotations
 import hashlib
 import sqlite3
 from collections.abc import Iterator
-from contextlib import closing
+from contextlib import closing, suppress
 from pathlib import Path
 
 from coatgui.campaign import changes as changes_of
@@ -106,13 +106,16 @@ def _seal_problems(connection: sqlite3.Connection) -> Iterator[str]:
 
 def _content_problems(connection: sqlite3.Connection) -> Iterator[str]:
     spectra: dict[str, Spectrum] = {}
+    # All at once is quicker; where that fails, one by one tells which.
+    with suppress(CampaignFileError):
+        spectra = read_spectra(connection)
     for (spectrum_id,) in connection.execute("SELECT spectrum_id FROM spectra").fetchall():
+        if spectrum_id in spectra:
+            continue
         try:
-            found = read_spectra(connection, spectrum_id)
+            spectra.update(read_spectra(connection, spectrum_id))
         except CampaignFileError as problem:
             yield str(problem)
-            continue
-        spectra.update(found)
     unreadable = False
     for table in schema.ORDERED:
         for row in connection.execute(f"SELECT * FROM {table}"):
@@ -129,6 +132,6 @@ def _content_problems(connection: sqlite3.Connection) -> Iterator[str]:
     try:
         Trail(connection)
         if not unreadable:
-            Snapshot(connection)
+            Snapshot(connection, spectra)
     except CampaignFileError as problem:
         yield str(problem)

@@ -17,6 +17,7 @@ from collections import Counter
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager, suppress
 from datetime import UTC, datetime
+from functools import cache
 from pathlib import Path
 
 from coatgui.campaign import schema
@@ -327,8 +328,10 @@ def _flush_folder(folder: Path) -> None:
             os.close(handle)
 
 
+@cache
 def who() -> str:
-    """The name of the person at the computer, for the audit trail."""
+    """The name of the person at the computer, for the audit trail. Asked for once: some systems ask
+    a server."""
     try:
         return getpass.getuser()
     except (OSError, KeyError, ImportError):  # no account name, as in some containers

@@ -14,7 +14,7 @@ from collections.abc import Callable, Iterable, Iterator, Mapping
 from dataclasses import fields, is_dataclass
 from typing import Any
 
-from coatgui.campaign import photographs, rows, rows_seen
+from coatgui.campaign import photographs, rows, rows_seen, schema
 from coatgui.campaign.changes import Operation, Row, RowChange
 from coatgui.campaign.errors import OperationRefused
 from coatgui.records import (
@@ -45,8 +45,10 @@ def operation(
     changes: list[RowChange] = []
     spectra: dict[str, Spectrum] = {}
     tables_before, tables_after = _tables(before), _tables(after)
-    for table, records in tables_after.items():
-        were = tables_before[table]
+    for table, taken in tables_after.items():
+        if _is_untouched(table, before, after):
+            continue
+        records, were = taken(), tables_before[table]()
         changes += [
             RowChange(table, key, _ROW[table](key, record), None)
             for key, record in were.items()
@@ -61,7 +63,11 @@ def operation(
             for spectrum in _spectra_in(record):
                 if spectrum not in _spectra_in(was):
                     spectra[spectrum.content_key()] = spectrum
-    _refuse_clashes(after, {change.table for change in changes})
+    touched = {change.table for change in changes}
+    if not any(change.table == "panels" and change.after is None for change in changes):
+        # Only a panel that goes away could leave something behind without a panel.
+        touched.add(_PANELS_STAY)
+    _refuse_clashes(after, touched)
     return Operation(name, tuple(changes), tuple(spectra.values()), dict(raw or {}))
 
 
@@ -83,8 +89,8 @@ def all_rows(campaign: Campaign) -> Iterator[tuple[str, Row]]:
     sound."""
     tables = _tables(campaign)
     _refuse_clashes(campaign, set(tables))
-    for table, records in tables.items():
-        for key, record in records.items():
+    for table, taken in tables.items():
+        for key, record in taken().items():
             refuse_unsound(table, record)
             yield table, _ROW[table](key, record)
 
@@ -101,19 +107,29 @@ def all_spectra(campaign: Campaign) -> Iterator[Spectrum]:
 # A campaign as tables of records, each under the key it has in the file
 
 
-def _tables(campaign: Campaign) -> dict[str, dict[str, Any]]:
+# Said beside the touched tables where no panel goes away.
+_PANELS_STAY = "panels stay"
+
+
+def _is_untouched(table: str, before: Campaign, after: Campaign) -> bool:
+    """Whether both hold the very same tuple of a table's records: a small edit of a large campaign
+    then need not look at them."""
+    return table in schema.ORDERED and getattr(before, table) is getattr(after, table)
+
+
+def _tables(campaign: Campaign) -> dict[str, Callable[[], dict[str, Any]]]:
     key = campaign.campaign_id
     open_lead = (campaign.open_lead, campaign.open_lead_source)
     return {
-        "campaign": {key: (campaign.title, campaign.remark, campaign.identification)},
-        "settings": {key: campaign.settings},
-        "formulations": {f.formulation_id: f for f in campaign.formulations},
-        "panels": {p.panel_id: p for p in campaign.panels},
-        "readings": {r.reading_id: r for r in campaign.readings},
-        "open_lead": {} if campaign.open_lead is None else {key: open_lead},
-        "refused": {rows.refusal_key(r): r for r in campaign.refused},
-        "ratings": {r.rating_id: r for r in campaign.ratings},
-        "photographs": {p.photograph_id: p for p in campaign.photographs},
+        "campaign": lambda: {key: (campaign.title, campaign.remark, campaign.identification)},
+        "settings": lambda: {key: campaign.settings},
+        "formulations": lambda: {f.formulation_id: f for f in campaign.formulations},
+        "panels": lambda: {p.panel_id: p for p in campaign.panels},
+        "readings": lambda: {r.reading_id: r for r in campaign.readings},
+        "open_lead": lambda: {} if campaign.open_lead is None else {key: open_lead},
+        "refused": lambda: {rows.refusal_key(r): r for r in campaign.refused},
+        "ratings": lambda: {r.rating_id: r for r in campaign.ratings},
+        "photographs": lambda: {p.photograph_id: p for p in campaign.photographs},
     }
 
 
@@ -300,17 +316,18 @@ def _refuse_clashes(campaign: Campaign, touched: set[str]) -> None:
         for panel in campaign.panels:
             if panel.formulation_id not in formulations:
                 raise OperationRefused(f"Panel {panel.name} needs a formulation that exists.")
-    if touched & {"readings", "panels"}:
+    leaving = set() if _PANELS_STAY in touched else {"panels"}
+    if touched & {"readings", *leaving}:
         for reading in campaign.readings:
             if reading.panel_id not in panels:
                 raise OperationRefused(
                     f"The reading from {reading.source.file} needs a panel that exists."
                 )
-    if touched & {"ratings", "panels"}:
+    if touched & {"ratings", *leaving}:
         for rating in campaign.ratings:
             if rating.seen.panel_id not in panels:
                 raise OperationRefused("A rating needs a panel that exists.")
-    if touched & {"photographs", "panels"}:
+    if touched & {"photographs", *leaving}:
         for photograph in campaign.photographs:
             if photograph.panel_id not in panels:
                 raise OperationRefused("A photograph needs a panel that exists.")

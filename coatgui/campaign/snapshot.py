@@ -38,9 +38,12 @@ class Snapshot:
     cannot be read.
     """
 
-    def __init__(self, connection: sqlite3.Connection) -> None:
+    def __init__(
+        self, connection: sqlite3.Connection, spectra: Mapping[str, Spectrum] | None = None
+    ) -> None:
+        """`spectra` are those of the file, where they were read already."""
         self._connection = connection
-        spectra = read_spectra(connection)
+        spectra = read_spectra(connection) if spectra is None else spectra
         self._held: dict[str, dict[str, tuple[int, Any]]] = {table: {} for table in ORDERED}
         self.total = seal.rows_total(connection, KEYS.keys() - set(ORDERED))
         for table, held in self._held.items():

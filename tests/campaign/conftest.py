@@ -1,12 +1,12 @@
 """A small campaign in which every field of every record says something."""
 
 import hashlib
-import zlib
 from collections.abc import Iterator
 from pathlib import Path
 
 import numpy as np
 import pytest
+from pictures import png
 
 from coatgui.campaign import CampaignFile
 from coatgui.records import (
@@ -68,18 +68,6 @@ IMPEDANCE_OHM = {
 
 def spectrum(number: int) -> Spectrum:
     return Spectrum(FREQUENCY_HZ, np.array([complex(*z) for z in IMPEDANCE_OHM[number]]))
-
-
-def png(width: int = 1, height: int = 1) -> bytes:
-    """A grey picture."""
-    lines = (b"\x00" + b"\x80" * width) * height
-    header = width.to_bytes(4) + height.to_bytes(4) + bytes((8, 0, 0, 0, 0))
-    chunks = ((b"IHDR", header), (b"IDAT", zlib.compress(lines)), (b"IEND", b""))
-    told = b"".join(
-        len(content).to_bytes(4) + kind + content + zlib.crc32(kind + content).to_bytes(4)
-        for kind, content in chunks
-    )
-    return b"\x89PNG\r\n\x1a\n" + told
 
 
 @pytest.fixture

@@ -10,6 +10,7 @@ import pytest
 from hypothesis import settings
 from hypothesis import strategies as st
 from hypothesis.stateful import RuleBasedStateMachine, initialize, invariant, precondition, rule
+from pictures import png
 
 from coatgui.campaign import CampaignFile, OperationRefused, check_file, operations
 from coatgui.campaign import connection as database
@@ -23,6 +24,7 @@ from coatgui.records import (
     Refusal,
     Source,
     Spectrum,
+    VisualRating,
 )
 
 
@@ -30,6 +32,7 @@ def test_the_trail_tells_who_did_what_when(
     file: CampaignFile, monkeypatch: pytest.MonkeyPatch
 ) -> None:
     monkeypatch.setattr(database.getpass, "getuser", lambda: "operator")
+    database.who.cache_clear()
     file.apply(operations.edit_panel(file.campaign, "p1", area_cm2=11.0))
     file.undo()
     file.redo()
@@ -64,6 +67,7 @@ def test_a_person_without_an_account_name(
         raise OSError("no account")
 
     monkeypatch.setattr(database.getpass, "getuser", nobody)
+    database.who.cache_clear()
     file.apply(operations.rename_campaign(file.campaign, "Later"))
     assert file.history()[-1].who == "unknown"
 
@@ -266,6 +270,25 @@ class Editing(RuleBasedStateMachine):
             self.apply(operations.set_open_lead, None, None)
         else:
             self.apply(operations.dismiss_refusals, self.present.refused[:1])
+
+    @precondition(lambda self: self.present.panels)
+    @rule(data=st.data(), words=WORDS, hours=NUMBERS, picture=st.integers(1, 3))
+    def seen(self, data: st.DataObject, words: str, hours: float, picture: int) -> None:
+        panel = data.draw(st.sampled_from(self.present.panels)).panel_id
+        act = data.draw(st.sampled_from(["rate", "edit", "forget", "photograph", "take", "name"]))
+        ratings, photographs = self.present.ratings, self.present.photographs
+        if act == "rate":
+            self.apply(operations.add_ratings, [VisualRating(panel, hours, "astm_d610", words)])
+        elif act == "edit" and ratings:
+            self.apply(operations.edit_rating, ratings[0].rating_id, value=words, panel_id=panel)
+        elif act == "forget" and ratings:
+            self.apply(operations.remove_ratings, [ratings[-1].rating_id])
+        elif act == "photograph":
+            self.apply(operations.add_photograph, panel, png(picture), file=words, caption=words)
+        elif act == "take" and photographs:
+            self.apply(operations.remove_photograph, photographs[0].photograph_id)
+        else:
+            self.apply(operations.identify, customer=words, standards=[words])
 
     @rule()
     def undo(self) -> None:

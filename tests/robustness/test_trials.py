@@ -1,0 +1,45 @@
+"""A small share of each trial, for every run of the suite; the rest is run by hand."""
+
+import os
+import shutil
+import subprocess
+import sys
+from pathlib import Path
+
+import pytest
+
+HERE = Path(__file__).parent
+
+
+def run(script: str, *arguments: str) -> None:
+    """In a process of its own: the trials fork, set alarms, and kill."""
+    ended = subprocess.run(
+        [sys.executable, HERE / script, *arguments],
+        env={**os.environ, "PYTHONPATH": os.pathsep.join(sys.path)},
+        capture_output=True,
+        text=True,
+        check=False,
+    )
+    assert ended.returncode == 0, ended.stdout + ended.stderr
+
+
+@pytest.mark.skipif(not hasattr(os, "fork"), reason="needs fork")
+def test_killed_at_random_instants() -> None:
+    run("kill_trials.py", "4", "5")
+
+
+@pytest.mark.skipif(
+    sys.platform != "linux" or shutil.which("cc") is None, reason="needs Linux and a C compiler"
+)
+def test_a_failing_disk() -> None:
+    run("fault_trials.py", "160")
+
+
+@pytest.mark.skipif(sys.platform == "win32", reason="needs alarms")
+def test_damaged_campaign_files() -> None:
+    run("campaign_trials.py", "200", "5")
+
+
+@pytest.mark.skipif(sys.platform == "win32", reason="needs alarms")
+def test_damaged_input_files() -> None:
+    run("input_trials.py", "400", "5")
