@@ -6,7 +6,8 @@ out of the 95 % limits of the fit without the fault. "Misleading" are those of t
 without the fault lies outside the limits stated with it as well: there the report itself would be
 wrong, for limits widen with the scatter and the correlation of the residuals.
 
-The last column is the share of the moving faults that no test can tell: where what the measurement
+The last column is the share of the moving faults that no test of the Kramers–Kronig relations can
+tell (a phase past -90° shows in the sign of the real part all the same): where what the measurement
 model leaves of the fault, in standard deviations of the scatter, is below 3.7. To find such a fault
 in 95 of 100 spectra and to doubt 2 of 100 clean ones, a test that knew its form and place would
 need 3.7 (the 98th and the 95th percentile of a normal distribution), and it is not known.
@@ -87,8 +88,8 @@ def strength_words(fault: Fault, strength: float) -> str:
 @dataclass(frozen=True)
 class Outcome:
     """For every specimen: whether the fault is named, whether anything of weight is said, whether
-    the fault moves a fitted parameter, whether the report would mislead, whether no test can tell
-    the fault from scatter."""
+    the fault moves a fitted parameter, whether the report would mislead, whether no test of the
+    Kramers–Kronig relations can tell the fault from scatter."""
 
     named: list[bool]
     doubted: list[bool]
