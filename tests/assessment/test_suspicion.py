@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import replace
 
+import numpy as np
 import pytest
 
 from coatgui.assessment import assess
@@ -259,3 +260,43 @@ def test_most_exchanges_and_units_are_found(campaign: Campaign) -> None:
             total += 1
             hits += bool(list(course_findings(swapped, counting, limits)))
     assert hits >= 0.95 * total
+
+
+def test_the_first_and_the_last_reading_are_held_against_their_neighbour(
+    campaign: Campaign, suspected: Callable[[Campaign], Suspected]
+) -> None:
+    times = sorted(r.exposure_h for r in campaign.readings if r.panel_id == panel_id(campaign))
+    for exposure_h, words in ((times[0], "reading after it"), (times[-1], "reading before it")):
+        one = reading(campaign, "K1", exposure_h)
+        small = Spectrum(one.spectrum.frequency_hz, 1e-3 * one.spectrum.impedance_ohm)
+        found = suspected(changed(campaign, replace(one, spectrum=small)))
+        assert set(found) == {("K1", exposure_h)}
+        (finding,) = found[("K1", exposure_h)]
+        assert finding.code == "unit_suspected"
+        assert words in finding.text
+        other = reading(campaign, "P1", exposure_h)
+        swapped = suspected(
+            changed(
+                campaign,
+                replace(one, spectrum=other.spectrum),
+                replace(other, spectrum=one.spectrum),
+            )
+        )
+        assert set(swapped) == {("K1", exposure_h), ("P1", exposure_h)}
+        assert {f.code for those in swapped.values() for f in those} == {"panel_suspected"}
+
+
+def test_a_panel_that_fails_at_its_last_reading_is_not_suspected(
+    campaign: Campaign, suspected: Callable[[Campaign], Suspected]
+) -> None:
+    """It looks like a panel that failed long ago, but that one's reading is where it belongs."""
+    last = max(r.exposure_h for r in campaign.readings if r.panel_id == panel_id(campaign))
+    good, failed = reading(campaign, "K1", last), reading(campaign, "P1", last)
+    noise = 1 + 0.01 * np.random.default_rng(1).standard_normal(len(failed.spectrum))
+    alike = Spectrum(failed.spectrum.frequency_hz, noise * failed.spectrum.impedance_ohm)
+    found = suspected(changed(campaign, replace(good, spectrum=alike)))
+    assert ("K1", last) not in found
+
+
+def panel_id(campaign: Campaign, name: str = "K1") -> str:
+    return next(p.panel_id for p in campaign.panels if p.name == name)

@@ -1,8 +1,8 @@
 """How often a reading in the wrong panel or unit is found, in the sample campaign.
 
-Run `python tests/benchmarks/checks_series.py`. Every reading between two others of its panel is
-exchanged with that of every panel of another formulation at the same time, and rewritten in kΩ and
-per area, one fault at a time.
+Run `python tests/benchmarks/checks_series.py`. Every reading is exchanged with that of every panel
+of another formulation at the same time, and rewritten in kΩ and per area, one fault at a time:
+those between two others of their panel, and the first and the last of each.
 """
 
 from __future__ import annotations
@@ -48,22 +48,22 @@ def found(campaign: Campaign, counting: list[str]) -> dict[str, Finding]:
     return dict(course_findings(campaign, counting, thresholds(campaign.settings)))
 
 
-def inner(campaign: Campaign, counting: list[str]) -> list[Reading]:
-    """Readings with one before and one after them."""
+def chosen(campaign: Campaign, counting: list[str], ends: bool) -> list[Reading]:
+    """Readings with one before and one after them, or the first and last of each panel."""
     result = []
     for panel in campaign.panels:
         own = [
             r for r in campaign.readings
             if r.panel_id == panel.panel_id and r.reading_id in counting
         ]  # fmt: skip
-        result += sorted(own, key=lambda r: r.exposure_h)[1:-1]
+        own.sort(key=lambda r: r.exposure_h)
+        result += [own[0], own[-1]] if ends else own[1:-1]
     return result
 
 
-def exchanges(campaign: Campaign, counting: list[str]) -> Iterator[tuple[Reading, Reading]]:
+def exchanges(campaign: Campaign, those: list[Reading]) -> Iterator[tuple[Reading, Reading]]:
     """Pairs of readings of different formulations at one time."""
     formulation = {p.panel_id: p.formulation_id for p in campaign.panels}
-    those = inner(campaign, counting)
     for place, first in enumerate(those):
         for second in those[place + 1 :]:
             apart = formulation[first.panel_id] != formulation[second.panel_id]
@@ -73,11 +73,17 @@ def exchanges(campaign: Campaign, counting: list[str]) -> Iterator[tuple[Reading
 
 def main() -> None:
     campaign, counting = sample()
-    areas = {p.panel_id: p.area_cm2 or 1.0 for p in campaign.panels}
     quiet = found(campaign, counting)
     print(f"{'as it is':34} {len(quiet)} of {len(counting)} readings suspected")
+    for ends in (False, True):
+        print("first and last readings" if ends else "readings between two others")
+        table(campaign, counting, chosen(campaign, counting, ends))
+
+
+def table(campaign: Campaign, counting: list[str], those: list[Reading]) -> None:
+    areas = {p.panel_id: p.area_cm2 or 1.0 for p in campaign.panels}
     hits = total = 0
-    for first, second in exchanges(campaign, counting):
+    for first, second in exchanges(campaign, those):
         swapped = {first.reading_id: second.spectrum, second.reading_id: first.spectrum}
         codes = found(with_spectra(campaign, swapped), counting)
         total += 1
@@ -88,7 +94,7 @@ def main() -> None:
     print(f"{'panels exchanged':34} {100 * hits / total:5.1f} % of {total}")
     for name in ("kΩ read as Ω", "area applied already", "area divided out"):
         hits = total = 0
-        for reading in inner(campaign, counting):
+        for reading in those:
             area = areas[reading.panel_id]
             factor = {"kΩ read as Ω": 1e-3, "area applied already": area}.get(name, 1 / area)
             changed = {reading.reading_id: times(reading, factor)}

@@ -69,8 +69,8 @@ def test_a_fault_is_named(
 ) -> None:
     monkeypatch.setattr(benchmark_table, "NOISE", (0.005, 0.005))
     fault = next(f for f in faults.FAULTS if f.name == name)
-    hits, _, _ = benchmark_table.rates(fault, strength, 20, 12, False)
-    assert np.mean(hits) >= least
+    outcome = benchmark_table.rates(fault, strength, 20, 12, False)
+    assert np.mean(outcome.named) >= least
 
 
 def test_a_step_of_five_percent_is_doubted_whatever_the_scatter(
@@ -78,8 +78,8 @@ def test_a_step_of_five_percent_is_doubted_whatever_the_scatter(
 ) -> None:
     """At 0.2 to 2 %: where it is 2 %, chance alone hides every third."""
     fault = next(f for f in faults.FAULTS if f.name == "step that stays")
-    _, weighty, _ = benchmark_table.rates(fault, 0.05, 50, 18, False)
-    assert np.mean(weighty) >= 0.95
+    outcome = benchmark_table.rates(fault, 0.05, 50, 18, False)
+    assert np.mean(outcome.doubted) >= 0.95
 
 
 def test_a_resistance_that_drifts_by_a_fifth_fails(
