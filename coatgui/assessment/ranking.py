@@ -108,6 +108,10 @@ def _in_words(outcome: Outcome, found: Samples, method: Method, reference: str) 
             f"{'a lower bound' if total == 1 else 'lower bounds'}, so the true distance of "
             f"{listed([n for n in outcome.names if bounded[n]])} may be larger."
         )
+    doubted = [(name, found.doubtful.get(name, 0)) for name in outcome.names]
+    if any(count for _, count in doubted):
+        rest = listed([f"{count} of {name}" for name, count in doubted if count])
+        text += f" Readings under doubt are among them: {rest}."
     if method is Method.RANKS:
         text += _rank_warning(outcome, counts)
     if method is Method.DUNN:
