@@ -28,6 +28,7 @@ from coatgui.assessment.significance import (
     Entry,
     all_pairs_range,
     difference_limits,
+    dunn,
     dunnett,
     gehan,
     holm,
@@ -37,6 +38,7 @@ from coatgui.assessment.significance import (
 from coatgui.records import Bound, FloatArray, Method, PairTest, Quantity, Rank
 
 FEWEST_PANELS = 2
+BY_RANKS = (Method.RANKS, Method.DUNN)
 _DRAWS, _SEED = 4000, 1
 
 
@@ -73,7 +75,7 @@ def compare(
     differences as they are shown. Raises ValueError for Dunnett without a known reference."""
     if method is Method.DUNNETT and reference not in samples:
         raise ValueError("Dunnett's comparison needs one of the formulations as its reference.")
-    by_ranks = method is Method.RANKS
+    by_ranks = method in BY_RANKS
     middles = (
         mean_scores(list(samples.values()))
         if by_ranks
@@ -118,6 +120,9 @@ def probabilities(
     places = list(combinations(range(len(names)), 2))
     if method is Method.RANKS:
         raw = {pair: gehan(ordered[pair[0]], ordered[pair[1]]) for pair in places}
+        return raw, dict(zip(raw, holm(list(raw.values())), strict=True))
+    if method is Method.DUNN:
+        raw = dunn(ordered)
         return raw, dict(zip(raw, holm(list(raw.values())), strict=True))
     if method is Method.DUNNETT:
         at = names.index(reference)

@@ -4,8 +4,9 @@ The panel is the unit: several readings of one panel at one inspection are first
 capacitance and resistance spread over decades, so their logarithms are averaged (geometric mean)
 and the 95 % limits of the mean are Student's t on log₁₀ with one degree of freedom less than there
 are panels; water uptake is averaged as it is. One panel alone has no spread between panels: it is
-shown with its own limits. A panel that gives only a bound enters at that bound and is counted as
-censored; then the mean is a bound of the same kind.
+shown with its own limits. A reading under doubt stays in the mean, and the mean says how many there
+are and what it would be without them (`doubts.py`). A panel that gives only a bound enters at that
+bound and is counted as censored; then the mean is a bound of the same kind.
 """
 
 from __future__ import annotations
@@ -15,6 +16,7 @@ from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from functools import cache
 
+from coatgui.assessment.doubts import doubtful
 from coatgui.assessment.rules import rule
 from coatgui.assessment.words import hertz
 from coatgui.records import (
@@ -185,11 +187,25 @@ def courses(
     for kind in _kinds(modulus_frequencies_hz):
         points = []
         for group, there in zip(groups, at_group, strict=True):
-            values = list(panel_values(there, kind.take, kind.logarithmic).values())
-            if values:
-                quantity, censored = replicate_mean(values, kind.logarithmic)
-                time = sum(group) / len(group)
-                points.append(CoursePoint(time, quantity, len(values), censored))
+            values = panel_values(there, kind.take, kind.logarithmic)
+            if not values:
+                continue
+            quantity, censored = replicate_mean(list(values.values()), kind.logarithmic)
+            time = sum(group) / len(group)
+            doubted = {r.panel_id for r in there if r.counts and doubtful(r, kind.code)}
+            rest = [q for panel_id, q in values.items() if panel_id not in doubted]
+            points.append(
+                CoursePoint(
+                    time,
+                    quantity,
+                    len(values),
+                    censored,
+                    len(values) - len(rest),
+                    replicate_mean(rest, kind.logarithmic)[0]
+                    if 0 < len(rest) < len(values)
+                    else None,
+                )
+            )
         if points:
             found.append(Course(kind.code, kind.name, tuple(points)))
     return tuple(found)

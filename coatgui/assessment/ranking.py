@@ -13,14 +13,14 @@ from itertools import pairwise
 
 import numpy as np
 
-from coatgui.assessment.comparison import FEWEST_PANELS, Outcome, compare
+from coatgui.assessment.comparison import BY_RANKS, FEWEST_PANELS, Outcome, compare
 from coatgui.assessment.courses import inspections, panel_values
 from coatgui.assessment.effort import detectable, panels_needed
 from coatgui.assessment.quantities import Kind, kind
 from coatgui.assessment.rules import rule
 from coatgui.assessment.samples import Readings, Samples, samples
-from coatgui.assessment.significance import Entry, fewest_provable
-from coatgui.assessment.words import counted, hours, listed
+from coatgui.assessment.significance import Entry, fewest_provable, kruskal_wallis
+from coatgui.assessment.words import counted, hours, listed, power_of_ten
 from coatgui.records import (
     Comparison,
     Judge,
@@ -36,6 +36,7 @@ _NAMES = {
     Method.GAMES_HOWELL: "Games and Howell",
     Method.DUNNETT: "Dunnett",
     Method.RANKS: "Gehan's ranks, Holm",
+    Method.DUNN: "Dunn's ranks, Holm",
 }
 _ORDINAL = (Judge.TIME_TO_LIMIT, Judge.RATING)
 _MOST_ADVICE = 3
@@ -69,7 +70,9 @@ def answer(
             f"with {found.what}: without replicates the formulations cannot be compared.",
             found.what,
         )
-    method = Method.RANKS if question.judge in _ORDINAL else question.method
+    method = question.method
+    if question.judge in _ORDINAL and method not in BY_RANKS:
+        method = Method.RANKS
     outcome = compare(found.by_name, method, found.unit, question.reference, found.better)
     return Comparison(
         question,
@@ -99,14 +102,24 @@ def _in_words(outcome: Outcome, found: Samples, method: Method, reference: str) 
     text = f"{'; '.join(parts)}. Judged by {judged}."
     bounded = found.bounded
     total = sum(bounded.values())
-    if total and method is not Method.RANKS:
+    if total and method not in BY_RANKS:
         text += (
             f" {counted(total, 'value')} at the measuring limit entered as "
             f"{'a lower bound' if total == 1 else 'lower bounds'}, so the true distance of "
             f"{listed([n for n in outcome.names if bounded[n]])} may be larger."
         )
+    doubted = [(name, found.doubtful.get(name, 0)) for name in outcome.names]
+    if any(count for _, count in doubted):
+        rest = listed([f"{count} of {name}" for name, count in doubted if count])
+        text += f" Readings under doubt are among them: {rest}."
     if method is Method.RANKS:
         text += _rank_warning(outcome, counts)
+    if method is Method.DUNN:
+        whole = kruskal_wallis(list(found.by_name.values()))
+        text += (
+            f" Over all formulations together p = {power_of_ten(whole)} (Kruskal and Wallis). Both "
+            "are laws for many panels; with few they see less than there is."
+        )
     return text
 
 
@@ -187,7 +200,7 @@ def _effort(
     outcome: Outcome, found: Samples, method: Method, question: Question, readings: Readings
 ) -> tuple[str, ...]:
     """For neighbours in the order that are not told apart: panels needed, or a longer exposure."""
-    if method is Method.RANKS:
+    if method in BY_RANKS:
         return ()
     proved = outcome.proved
     alpha = rule("ranking.significance") / max(len(outcome.pairs), 1)

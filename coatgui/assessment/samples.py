@@ -4,12 +4,13 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 
 from coatgui.assessment.comparison import FEWEST_PANELS, entry
 from coatgui.assessment.courses import by_inspection, inspections, one_of_panel, panel_values
+from coatgui.assessment.doubts import doubtful
 from coatgui.assessment.limit_studies import interval, panel_standings
 from coatgui.assessment.limits import named
 from coatgui.assessment.quantities import Kind, kind
@@ -32,8 +33,9 @@ Readings = Mapping[str, Sequence[ReadingAssessment]]
 @dataclass(frozen=True, slots=True)
 class Samples:
     """`by_name`: entries of every formulation's panels, empty where nothing can be compared, for
-    the reason in `text`. `bounded` counts the panels of each that only gave a bound. `unit` is that
-    of differences on the footing; `what` and `when` name the comparison in a sentence."""
+    the reason in `text`. `bounded` counts the panels of each that only gave a bound, `doubtful`
+    those with a reading under doubt. `unit` is that of differences on the footing; `what` and
+    `when` name the comparison in a sentence."""
 
     by_name: dict[str, list[Entry]]
     what: str
@@ -42,6 +44,7 @@ class Samples:
     unit: str = ""
     better: int = 1
     text: str = ""
+    doubtful: Mapping[str, int] = field(default_factory=dict)
 
     @property
     def bounded(self) -> dict[str, int]:
@@ -92,7 +95,22 @@ def _at_time(question: Question, of: Kind, readings: Readings) -> Samples:
         for name, panels in values.items()
     }
     anyone = [q for panels in values.values() for q in panels]
-    return Samples(by_name, _name(of), f"at {hours(time)}", time, _unit(of, anyone), of.better)
+    counting = {name: [r for r in own if r.counts] for name, own in readings.items()}
+    times = [r.exposure_h for own in counting.values() for r in own]
+    group = next(g for g in inspections([time, *times]) if time in g)
+    doubted = {
+        name: len({r.panel_id for r in own if r.exposure_h in group and doubtful(r, of.code)})
+        for name, own in counting.items()
+    }
+    return Samples(
+        by_name,
+        _name(of),
+        f"at {hours(time)}",
+        time,
+        _unit(of, anyone),
+        of.better,
+        doubtful=doubted,
+    )
 
 
 def _shared(

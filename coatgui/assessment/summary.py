@@ -95,6 +95,10 @@ def formulation_assessment(
         text += f"; {found[0].name} at {hours(last.exposure_h)}: {_shown(last.quantity)}"
         if last.censored:
             text += f", {last.censored} of {last.panels} only bounds"
+        if last.doubtful:
+            text += f", {last.doubtful} of {last.panels} from readings under doubt"
+            if last.sound is not None:
+                text += f" (without them {_shown(last.sound)})"
     return FormulationAssessment(formulation_id, name, len(panel_ids), found, text + ".")
 
 

@@ -61,6 +61,7 @@ class Method(StrEnum):
     GAMES_HOWELL = "games_howell"
     DUNNETT = "dunnett"
     RANKS = "ranks"
+    DUNN = "dunn"
 
 
 @dataclass(frozen=True, slots=True)

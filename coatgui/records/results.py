@@ -272,12 +272,16 @@ class CoursePoint:
     """Replicate panels of a formulation at one exposure time: mean, t-limits, how many panels.
 
     For quantities on a logarithmic footing the mean is geometric. `censored` counts the panels
-    that only gave a bound, which the mean takes at that bound."""
+    that only gave a bound, which the mean takes at that bound, `doubtful` those with a reading
+    under a doubt that concerns the quantity; `sound` is the mean without these, None where there
+    are none or no others."""
 
     exposure_h: float
     quantity: Quantity
     panels: int
     censored: int = 0
+    doubtful: int = 0
+    sound: Quantity | None = None
 
 
 @dataclass(frozen=True, slots=True)

@@ -15,10 +15,12 @@ from coatgui.assessment.significance import (
     Entry,
     all_pairs_range,
     difference_limits,
+    dunn,
     dunnett,
     fewest_provable,
     gehan,
     holm,
+    kruskal_wallis,
     mean_scores,
     welch,
 )
@@ -184,3 +186,33 @@ def test_panels_needed_and_detectable_answer_each_other() -> None:
     assert detectable(0.3, 0.3, needed, 0.05, 0.8) <= 0.7
     assert panels_needed(0.01, 0.3, 0.3, 0.05, 0.8) is None
     assert power(0.0, 0.3, 0.3, 4, 0.05) == pytest.approx(0.05, abs=0.015)
+
+
+@pytest.mark.parametrize("seed", range(6))
+@pytest.mark.parametrize("ties", [False, True])
+def test_kruskal_and_wallis_is_scipys(seed: int, ties: bool) -> None:
+    samples = [np.round(s, 1) if ties else s for s in _samples(seed)]
+    found = kruskal_wallis([_exact(s) for s in samples])
+    assert found == pytest.approx(stats.kruskal(*samples).pvalue, rel=1e-9)
+
+
+@pytest.mark.parametrize("seed", range(6))
+@pytest.mark.parametrize("ties", [False, True])
+def test_dunn_is_its_formula_on_ranks(seed: int, ties: bool) -> None:
+    """z = (R̄_i − R̄_j)/√((N(N+1)/12 − ΣT/(12(N−1)))(1/n_i + 1/n_j)), T = t³ − t for every tie."""
+    samples = [np.round(s, 1) if ties else s for s in _samples(seed)]
+    pool = np.concatenate(samples)
+    count = pool.size
+    ranks = np.split(stats.rankdata(pool), np.cumsum([s.size for s in samples])[:-1])
+    times = np.unique(pool, return_counts=True)[1].astype(float)
+    spread = count * (count + 1) / 12 - (times**3 - times).sum() / (12 * (count - 1))
+    for (i, j), found in dunn([_exact(s) for s in samples]).items():
+        error = np.sqrt(spread * (1 / samples[i].size + 1 / samples[j].size))
+        z = (ranks[i].mean() - ranks[j].mean()) / error
+        assert found == pytest.approx(2 * stats.norm.sf(abs(z)), rel=1e-9)
+
+
+def test_rank_tests_say_nothing_where_no_order_is_known() -> None:
+    held = [Entry(5.0, 5.0, np.inf)] * 3
+    assert kruskal_wallis([held, held]) == 1.0
+    assert dunn([held, held]) == {(0, 1): 1.0}

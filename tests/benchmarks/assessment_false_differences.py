@@ -63,7 +63,7 @@ def main(campaigns: int = 2000) -> None:
         for method, own in found.items():
             for c in range(_HELD_AGAINST):
                 assert _said(x[c], method) == own[c], (method, size, groups, c)
-        for method in (Method.WELCH, Method.DUNNETT, Method.RANKS):
+        for method in (Method.WELCH, Method.DUNNETT, Method.RANKS, Method.DUNN):
             found[method] = np.array([_said(campaign, method) for campaign in x])
         shares = ", ".join(f"{m.value} {100 * own.mean():.1f}" for m, own in found.items())
         print(f"{groups} formulations of {size} panels: {shares}", flush=True)
