@@ -118,6 +118,7 @@ class Plot(pg.PlotWidget):  # type: ignore[misc, unused-ignore]
         view = BoxView()
         super().__init__(axisItems=axes, viewBox=view)
         self.boxed = view.boxed
+        self._worn: tuple[str, str, str] | None = None
         self._titles = {"bottom": bottom[0], "left": left[0]}
         self.setAccessibleName(name)
         self.setMenuEnabled(False)
@@ -125,7 +126,10 @@ class Plot(pg.PlotWidget):  # type: ignore[misc, unused-ignore]
         self.getPlotItem().getAxis("left").setWidth(88)
 
     def paint_in(self, ground: str, ink: str, line: str) -> None:
-        """Take on the window's colours."""
+        """Take on the window's colours; drawing anew in the same ones would cost every axis."""
+        if (ground, ink, line) == self._worn:
+            return
+        self._worn = (ground, ink, line)
         self.setBackground(ground)
         for side, title in self._titles.items():
             axis = self.getPlotItem().getAxis(side)

@@ -41,6 +41,10 @@ class Desk(QObject):
         super().__init__(parent)
         self.file: CampaignFile | None = None
         self.assessment: Assessment | None = None
+        self._readings_of: Campaign | None = None  # whose readings these are, by their ids
+        self._readings: dict[str, Reading] = {}
+        self._judged_of: Assessment | None = None
+        self._known: dict[str, ReadingAssessment] = {}
         self.selection = ""
         self.unsaved_folder: Path | None = None
         self.origin: Path | None = None  # the folder that the campaign was made of just now
@@ -63,13 +67,27 @@ class Desk(QObject):
         return self.file is None or self.unsaved_folder is None
 
     def reading(self) -> Reading | None:
+        """The picked reading."""
         campaign = self.campaign
         if campaign is None:
             return None
-        return next((r for r in campaign.readings if r.reading_id == self.selection), None)
+        if self._readings_of is not campaign:
+            self._readings_of = campaign
+            self._readings = {r.reading_id: r for r in campaign.readings}
+        return self._readings.get(self.selection)
 
     def reading_assessment(self) -> ReadingAssessment | None:
-        return None if self.assessment is None else self.assessment.reading(self.selection)
+        """What is known of the picked reading."""
+        return self.judged(self.selection)
+
+    def judged(self, reading_id: str) -> ReadingAssessment | None:
+        """What is known of a reading, without going through all of them."""
+        if self.assessment is None:
+            return None
+        if self._judged_of is not self.assessment:
+            self._judged_of = self.assessment
+            self._known = {r.reading_id: r for r in self.assessment.readings}
+        return self._known.get(reading_id)
 
     def unjudged_words(self) -> str:
         """What stands where an assessment is missing."""

@@ -7,7 +7,6 @@ from collections.abc import Callable
 from pathlib import Path
 from typing import Any
 
-from coatgui.assessment import assess
 from coatgui.campaign import CampaignFile, Change, campaign_from_found, operations
 from coatgui.intake import DryRun, Standing, propose_folder
 from coatgui.jobs import spread_over_processes
@@ -16,6 +15,9 @@ from coatgui.records import Assessment, Campaign, Found
 
 
 def judge_campaign(campaign: Campaign, file: CampaignFile, progress: Progress) -> Assessment:
+    # Imported when first needed: the window is there sooner.
+    from coatgui.assessment import assess
+
     with spread_over_processes(progress=progress) as spread:
         return assess(campaign, progress=progress, spread=spread, cache=file)
 

@@ -38,15 +38,14 @@ class ExposureStrip(QWidget):
         if campaign is not None and reading is not None:
             own = [r for r in campaign.readings if r.panel_id == reading.panel_id]
             own.sort(key=lambda r: r.exposure_h)
-            known = self.desk.assessment
             for each in own:
-                found = known.reading(each.reading_id) if known else None
+                found = self.desk.judged(each.reading_id)
                 self.stops.append((each.reading_id, each.exposure_h, state_of(found)[0]))
             self.panel = next(
                 (p.name for p in campaign.panels if p.panel_id == reading.panel_id), ""
             )
             place = own.index(reading) + 1
-            word = state_of(known.reading(reading.reading_id) if known else None)[1]
+            word = state_of(self.desk.judged(reading.reading_id))[1]
             self.setAccessibleDescription(
                 f"{self.panel}, {reading.exposure_h:g} h {word}, {place} of {len(own)}"
             )

@@ -23,7 +23,6 @@ from PySide6.QtWidgets import (
     QWidget,
 )
 
-from coatgui.assessment.cautions import cautions
 from coatgui.campaign import CampaignFile
 from coatgui.window import palette
 from coatgui.window.actions import ACTIONS, Entry
@@ -61,6 +60,8 @@ class MainWindow(QMainWindow):
         self._actions: list[tuple[Entry, QAction]] = []
         self._began = 0.0
         self._shown: CampaignFile | None = None
+        # Places that do not show what the desk holds: all of it (True), or only the selection.
+        self._behind: dict[Place, bool] = {}
         self.trouble = Trouble()
         self.incoming = Incoming(self.desk, self)
         self.files = FileActions(self, self.desk, self.incoming, settings, self.trouble)
@@ -222,10 +223,21 @@ class MainWindow(QMainWindow):
             }.get(entry.needs, name is not None)
             action.setEnabled(there)
         self.project.refresh()
+        self._behind = dict.fromkeys(self.places, True)
         for place in self.places:
-            place.show_campaign()
+            # Doubts are counted beside their place's noun; other places follow when they are seen.
+            if place is self.open_place() or isinstance(place, DoubtsPlace):
+                self._catch_up(place)
         self._count_doubts()
         self._show_facts()
+
+    def _catch_up(self, place: Place) -> None:
+        """Show in a place what it has missed: a campaign, or another selection only."""
+        whole = self._behind.pop(place, None)
+        if whole:
+            place.show_campaign()
+        elif whole is not None:
+            place.show_selection()
 
     def _count_doubts(self) -> None:
         """How many wait for an eye stands beside the place's noun."""
@@ -237,7 +249,8 @@ class MainWindow(QMainWindow):
     def _selected(self) -> None:
         self.project.mark(self.desk.selection)
         for place in self.places:
-            place.show_selection()
+            self._behind.setdefault(place, False)
+        self._catch_up(self.open_place())
         self._show_facts()
 
     def _show_facts(self) -> None:
@@ -297,6 +310,7 @@ class MainWindow(QMainWindow):
 
     def go(self, place: int) -> None:
         self.stack.setCurrentIndex(place)
+        self._catch_up(self.open_place())
         self.buttons.button(place).setChecked(True)
         policy = Qt.FocusPolicy
         for button in self.buttons.buttons():
@@ -354,6 +368,8 @@ class MainWindow(QMainWindow):
         self.strip.update()
 
     def show_cautions(self) -> None:
+        from coatgui.assessment.cautions import cautions  # late: it brings all of assessment
+
         say_plainly(self, "Cautions", "What the results do not say", "\n\n".join(cautions()))
 
     # --- drops, closing --------------------------------------------------------------------

@@ -8,6 +8,7 @@ import tomllib
 from dataclasses import dataclass
 from functools import cache
 
+from coatgui.circuits import catalogue
 from coatgui.intake.reading import WORKBOOK
 from coatgui.records import (
     Dialect,
@@ -118,7 +119,9 @@ def trace(
 def _file(reading: Reading) -> Step:
     source = reading.source
     part = f", part {source.part}" if source.part else ""
-    return Step("File", f"{source.file}{part}\nSHA-256 {source.sha256}")
+    # In pieces, so that it can be broken into lines.
+    digest = " ".join(source.sha256[i : i + 16] for i in range(0, len(source.sha256), 16))
+    return Step("File", f"{source.file}{part}\nSHA-256 {digest}")
 
 
 def _table(reading: Reading) -> Step:
@@ -192,7 +195,9 @@ def _model(known: ReadingAssessment) -> Step:
             else f", residual {trial.residual_rms_percent:.2f} %"
         )
         weight = "" if trial.aicc is None else f", AICc {trial.aicc:.1f}"
-        lines.append(f"tried: {trial.model}{rest}{weight}. {trial.remark}".strip())
+        model = catalogue().get(trial.model)
+        name = trial.model if model is None else model.name
+        lines.append(f"tried: {name}{rest}{weight}. {trial.remark}".strip())
     return Step("Model", "\n".join(lines))
 
 

@@ -3,19 +3,31 @@
 from __future__ import annotations
 
 import math
+from bisect import bisect_right
 
 from PySide6.QtCore import QPoint, QRect, QSize, Qt, Signal
-from PySide6.QtGui import QColor, QFont, QKeyEvent, QMouseEvent, QPainter, QPaintEvent, QPen
+from PySide6.QtGui import (
+    QColor,
+    QFont,
+    QKeyEvent,
+    QMouseEvent,
+    QPainter,
+    QPaintEvent,
+    QPen,
+    QWheelEvent,
+)
 from PySide6.QtWidgets import QComboBox, QHBoxLayout, QScrollArea, QWidget
 
-from coatgui.records import Bound, Campaign, Quantity, ReadingAssessment, Severity
+from coatgui.records import Bound, Campaign, Quantity, Reading, ReadingAssessment, Severity
 from coatgui.window.desk import Desk
 from coatgui.window.numbers import said
 from coatgui.window.palette import Colours, ramp
 from coatgui.window.places.place import Place, plain_label, plain_tip
 from coatgui.window.tree_model import state_of
 
-_LABEL_WIDTH, _ROW, _HEAD, _BAND = 84, 30, 26, 24
+_LABEL_WIDTH, _ROW, _HEAD, _BAND, _CELL = 84, 30, 26, 24, 52
+_SMALLEST, _LARGEST = 0.3, 2.0
+_LEGIBLE = 0.6  # smaller cells show their shade and mark only; the number is in the tip
 QUANTITIES = {
     "|Z|·A at 0.1 Hz": "modulus_0.1",
     "|Z|·A at 0.01 Hz": "modulus_0.01",
@@ -67,17 +79,21 @@ def story(cell: ReadingAssessment | str, code: str) -> str:
 
 
 class Cells(QWidget):
-    """The painted map. `picked` carries a reading's id; `opened` asks for the reading's place."""
+    """The painted map. `picked` carries a reading's id; `opened` asks for the reading's place,
+    `zoomed` for larger or smaller cells, by a factor and about a point."""
 
     picked = Signal(str)
     opened = Signal()
+    zoomed = Signal(float, QPoint)
 
     def __init__(self, tone: Colours) -> None:
         super().__init__()
         self.tone = tone
         self.setFocusPolicy(Qt.FocusPolicy.StrongFocus)
         self.setAccessibleName("Exposure map: panels by exposure time")
-        self.setAccessibleDescription("Arrow keys go from cell to cell, return opens the reading")
+        self.setAccessibleDescription(
+            "Arrow keys go from cell to cell, return opens the reading, + and - change the size"
+        )
         self.setMouseTracking(True)
         self.rows: list[tuple[str, str]] = []  # (kind, text): formulation bands and panels
         self.times: list[float] = []
@@ -85,6 +101,9 @@ class Cells(QWidget):
         self.code = "modulus_0.1"
         self.selection = ""
         self.shades: dict[tuple[int, int], float] = {}
+        self.places: dict[str, tuple[int, int]] = {}  # row and column by the reading's id
+        self.scale = 1.0
+        self._row, self._band = _ROW, _BAND
 
     def show(self, campaign: Campaign, known: dict[str, ReadingAssessment], code: str) -> None:  # type: ignore[override]
         """Lay out a campaign; readings not assessed yet stand as empty cells."""
@@ -92,6 +111,10 @@ class Cells(QWidget):
         self.times = sorted({r.exposure_h for r in campaign.readings})
         column = {hours: i for i, hours in enumerate(self.times)}
         self.rows, self.cells, self.shades = [], {}, {}
+        self.places = {}
+        readings: dict[str, list[Reading]] = {}
+        for reading in campaign.readings:
+            readings.setdefault(reading.panel_id, []).append(reading)
         for formulation in campaign.formulations:
             panels = [p for p in campaign.panels if p.formulation_id == formulation.formulation_id]
             if not panels:
@@ -99,13 +122,20 @@ class Cells(QWidget):
             self.rows.append(("formulation", formulation.name))
             for panel in panels:
                 self.rows.append(("panel", panel.name))
-                for reading in campaign.readings:
-                    if reading.panel_id == panel.panel_id:
-                        place = (len(self.rows) - 1, column[reading.exposure_h])
-                        self.cells[place] = known.get(reading.reading_id, reading.reading_id)
+                for reading in readings.get(panel.panel_id, ()):
+                    place = (len(self.rows) - 1, column[reading.exposure_h])
+                    self.cells[place] = known.get(reading.reading_id, reading.reading_id)
+                    self.places[reading.reading_id] = place
         self._shade()
-        height = _HEAD + sum(_BAND if kind == "formulation" else _ROW for kind, _ in self.rows)
-        self.setMinimumSize(QSize(_LABEL_WIDTH + 52 * max(len(self.times), 1), height + 8))
+        self.resize_to(self.scale)
+
+    def resize_to(self, scale: float) -> None:
+        """Make the cells larger or smaller than they are at first (1)."""
+        self.scale = min(max(scale, _SMALLEST), _LARGEST)
+        self._row, self._band = round(_ROW * self.scale), max(round(_BAND * self.scale), 14)
+        tops = self._tops()
+        across = round(_CELL * self.scale) * max(len(self.times), 1)
+        self.setMinimumSize(QSize(_LABEL_WIDTH + across, tops[-1] + 8))
         self.update()
 
     def _shade(self) -> None:
@@ -126,11 +156,12 @@ class Cells(QWidget):
             self.shades[place] = 1.0 - share if self.code in _RISING_IS_WORSE else share
 
     def _tops(self) -> list[int]:
+        """The top of every row, and the bottom of the last."""
         tops, top = [], _HEAD
         for kind, _ in self.rows:
             tops.append(top)
-            top += _BAND if kind == "formulation" else _ROW
-        return tops
+            top += self._band if kind == "formulation" else self._row
+        return [*tops, top]
 
     def _width(self) -> float:
         return (self.width() - _LABEL_WIDTH - 4) / max(len(self.times), 1)
@@ -139,7 +170,7 @@ class Cells(QWidget):
         width = self._width()
         left = _LABEL_WIDTH + round(column * width)
         right = _LABEL_WIDTH + round((column + 1) * width)
-        return QRect(left + 1, tops[row] + 1, right - left - 2, _ROW - 2)
+        return QRect(left + 1, tops[row] + 1, right - left - 2, self._row - 2)
 
     def _id(self, cell: ReadingAssessment | str) -> str:
         return cell.reading_id if isinstance(cell, ReadingAssessment) else cell
@@ -153,14 +184,23 @@ class Cells(QWidget):
         painter.setFont(small)
         painter.setPen(QColor(tone.second))
         width = self._width()
-        for i, hours in enumerate(self.times):
+        seen = event.rect()
+        first = bisect_right(tops, seen.top()) - 1
+        rows = range(max(first, 0), min(bisect_right(tops, seen.bottom()), len(self.rows)))
+        before = max(int((seen.left() - _LABEL_WIDTH) / width), 0)
+        columns = range(
+            before, min(int((seen.right() - _LABEL_WIDTH) / width) + 1, len(self.times))
+        )
+        for i in columns:
+            hours = self.times[i]
             place = QRect(_LABEL_WIDTH + round(i * width), 0, round(width), _HEAD)
             painter.drawText(place, Qt.AlignmentFlag.AlignCenter, f"{hours:g} h")
-        for (kind, text), top in zip(self.rows, tops, strict=True):
+        for row in rows:
+            (kind, text), top = self.rows[row], tops[row]
             if kind == "formulation":
                 painter.setPen(QColor(tone.ink))
                 painter.drawText(
-                    QRect(0, top + 4, self.width(), _BAND - 4), Qt.AlignmentFlag.AlignVCenter, text
+                    QRect(0, top, self.width(), self._band), Qt.AlignmentFlag.AlignVCenter, text
                 )
             else:
                 painter.setPen(QColor(tone.second))
@@ -168,13 +208,19 @@ class Cells(QWidget):
                     text, Qt.TextElideMode.ElideRight, _LABEL_WIDTH - 18
                 )
                 painter.drawText(
-                    QRect(12, top, _LABEL_WIDTH - 16, _ROW), Qt.AlignmentFlag.AlignVCenter, name
+                    QRect(12, top, _LABEL_WIDTH - 16, self._row),
+                    Qt.AlignmentFlag.AlignVCenter,
+                    name,
                 )
         cell_font = QFont(self.font())
-        cell_font.setPixelSize(12)
+        cell_font.setPixelSize(max(min(round(12 * self.scale), 16), 7))
         painter.setFont(cell_font)
-        for where, cell in self.cells.items():
-            self._paint_cell(painter, where, cell, self._rect(*where, tops))
+        for row in rows:
+            for column in columns:
+                cell = self.cells.get((row, column))
+                if cell is not None:
+                    rect = self._rect(row, column, tops)
+                    self._paint_cell(painter, (row, column), cell, rect)
         painter.end()
 
     def _paint_cell(
@@ -190,7 +236,8 @@ class Cells(QWidget):
                 ground, ink = ramp(self.shades[place], tone.dark)
         painter.fillRect(rect, ground)
         painter.setPen(ink)
-        painter.drawText(rect, Qt.AlignmentFlag.AlignCenter, text)
+        if self.scale >= _LEGIBLE:
+            painter.drawText(rect, Qt.AlignmentFlag.AlignCenter, text)
         if mark in ("▲", "■"):
             painter.setPen(QColor(tone.rust) if mark == "■" else ink)
             corner = rect.adjusted(0, 0, -9, 0)
@@ -209,8 +256,17 @@ class Cells(QWidget):
                 painter.drawRect(rect.adjusted(-1, -1, 0, 0))
 
     def _at(self, point: QPoint) -> tuple[int, int] | None:
-        tops = self._tops()
-        return next((p for p in self.cells if self._rect(*p, tops).contains(point)), None)
+        row = bisect_right(self._tops(), point.y()) - 1
+        column = int((point.x() - _LABEL_WIDTH) // self._width())
+        return (row, column) if (row, column) in self.cells else None
+
+    def wheelEvent(self, event: QWheelEvent) -> None:
+        if event.modifiers() & Qt.KeyboardModifier.ControlModifier:
+            by = 1.15 if event.angleDelta().y() > 0 else 1 / 1.15
+            self.zoomed.emit(by, event.position().toPoint())
+            event.accept()
+        else:
+            super().wheelEvent(event)
 
     def mousePressEvent(self, event: QMouseEvent) -> None:
         place = self._at(event.position().toPoint())
@@ -230,13 +286,16 @@ class Cells(QWidget):
         if event.key() in (Qt.Key.Key_Return, Qt.Key.Key_Enter):
             self.opened.emit()
             return
+        if event.text() in ("+", "-"):
+            self.zoomed.emit(1.15 if event.text() == "+" else 1 / 1.15, QPoint(_LABEL_WIDTH, _HEAD))
+            return
         step = {
             Qt.Key.Key_Left: (0, -1),
             Qt.Key.Key_Right: (0, 1),
             Qt.Key.Key_Up: (-1, 0),
             Qt.Key.Key_Down: (1, 0),
         }.get(Qt.Key(event.key()))
-        now = next((p for p, c in self.cells.items() if self._id(c) == self.selection), None)
+        now = self.places.get(self.selection)
         if step is None or now is None:
             super().keyPressEvent(event)
             return
@@ -269,11 +328,23 @@ class MapPlace(Place):
         self.column.addLayout(bar)
         self.cells = Cells(tone)
         self.cells.picked.connect(desk.select)
-        area = QScrollArea()
-        area.setWidgetResizable(True)
-        area.setFrameShape(QScrollArea.Shape.NoFrame)
-        area.setWidget(self.cells)
-        self.column.addWidget(area, 1)
+        self.area = QScrollArea()
+        self.area.setWidgetResizable(True)
+        self.area.setFrameShape(QScrollArea.Shape.NoFrame)
+        self.area.setWidget(self.cells)
+        self.column.addWidget(self.area, 1)
+        self.cells.zoomed.connect(self.zoom)
+
+    def zoom(self, by: float, about: QPoint) -> None:
+        """Make the map larger or smaller about a place in it, which stays where it is seen."""
+        bars = self.area.horizontalScrollBar(), self.area.verticalScrollBar()
+        seen = about.x() - bars[0].value(), about.y() - bars[1].value()
+        before = self.cells.scale
+        self.cells.resize_to(before * by)
+        grown = self.cells.scale / before
+        self.cells.resize(self.cells.minimumSize().expandedTo(self.area.viewport().size()))
+        bars[0].setValue(round((about.x() - _LABEL_WIDTH) * grown + _LABEL_WIDTH - seen[0]))
+        bars[1].setValue(round((about.y() - _HEAD) * grown + _HEAD - seen[1]))
 
     def show_campaign(self) -> None:
         campaign, assessment = self.desk.campaign, self.desk.assessment
