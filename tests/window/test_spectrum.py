@@ -79,9 +79,12 @@ def box(place: ReadingPlace) -> tuple[QPoint, QPoint]:
     """Corners of a box about points 10 to 13 of the phase, as the plot stands now."""
     for _ in range(3):
         QApplication.processEvents()
-    chosen = place.plots._on_screen(place.plots.phase)[10:14]
-    start = QPoint(round(chosen[:, 0].min()) - 3, round(chosen[:, 1].min()) - 9)
-    return start, QPoint(round(chosen[:, 0].max()) + 3, round(chosen[:, 1].max()) + 9)
+    on_screen = place.plots._on_screen(place.plots.phase)
+    chosen, before, after = on_screen[10:14], on_screen[9], on_screen[14]
+    # Half-way to the neighbours, whichever way the frequencies run and however wide the plot is.
+    ends = sorted((round((before[0] + chosen[0, 0]) / 2), round((after[0] + chosen[-1, 0]) / 2)))
+    start = QPoint(ends[0], round(chosen[:, 1].min()) - 9)
+    return start, QPoint(ends[1], round(chosen[:, 1].max()) + 9)
 
 
 def test_a_box_leaves_points_out_and_takes_them_back(sample: MainWindow, wait: Wait) -> None:
@@ -132,7 +135,17 @@ def test_the_section_carries_the_fitted_values(sample: MainWindow) -> None:
     assert section is not None
     assert [band.kind for band in section.bands] == ["solution", "film", "interface", "metal"]
     words = section.in_words()
-    for wanted in ("Film, 60 µm", "R_po 9.08 MΩ cm² (", "water 5.48 vol-% (", "R_ct", "Blasted"):
+    pores, water = reading.pore_resistance, reading.water_uptake
+    assert pores is not None
+    assert pores.value is not None
+    assert water is not None
+    for wanted in (
+        "Film, 60 µm",
+        f"R_po {pores.value / 1e6:.3g} MΩ cm² (",
+        f"water {water.quantity.value:.3g} vol-% (",
+        "R_ct",
+        "Blasted",
+    ):
         assert wanted in words
     assert section.reacts
     # A tight film: the pore is only known to be narrow, and is drawn as such.
