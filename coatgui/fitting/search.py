@@ -24,9 +24,10 @@ _STARTS = 5
 _ENOUGH_POINTS = 12
 _FAR_WORSE = 30.0  # in sum of squares
 _SAME_PLACE = 0.2  # in natural coordinates
+_SAME_COST = 1.005
 _APPROACH = Tolerance(cosine=1e-2, reduction=1e-3, step=2.0, iterations=25)
 # Near enough to compare models: the cost is then known to a few parts in 100,000.
-_COMPARE = Tolerance(cosine=1e-4, reduction=1e-6, iterations=60)
+_COMPARE = Tolerance(cosine=1e-4, reduction=1e-6, iterations=60, damping=1e-2)
 _SETTLE = Tolerance(damping=1e-3)
 
 
@@ -116,40 +117,64 @@ def _worth_going_on(near: Solution, rows: IndexArray) -> BoolArray:
         if not going[i]:
             continue
         kept = followed.setdefault(int(rows[i]), [])
-        if kept and (np.abs(near.theta[kept] - near.theta[i]).max(axis=1) < _SAME_PLACE).any():
+        place = np.abs(near.theta[kept] - near.theta[i]).max(axis=1) < _SAME_PLACE
+        # Starts of a model that is too rich end all along one flat valley, at one cost.
+        cost = near.cost[i] <= _SAME_COST * near.cost[kept]
+        if (place | cost).any():
             going[i] = False
         else:
             kept.append(int(i))
     return going
 
 
-def search(model: CoatingModel, batch: Batch, check: Callable[[], None] | None = None) -> Solution:
-    """The best fit of `model` to each spectrum of the batch, from the spectrum's own starts."""
-    size = batch.impedance.shape[0]
-    low, high = model.bounds
+def approach(
+    model: CoatingModel,
+    batch: Batch,
+    starts: FloatArray,
+    rows: IndexArray,
+    check: Callable[[], None] | None = None,
+) -> Solution:
+    """From afar to near, on every third point and by the logarithmic residual: `starts` (K, P) for
+    spectra `rows` (K,). A start that led nowhere comes back as it was, with an infinite cost."""
     rough = batch.thinned()
-    approach = rough.objective(model, logarithmic=True)
-    offered = candidates(model, batch.frequency_hz, batch.impedance, batch.used)
-    starts, rows = best_starts(rough.objective(model), offered, _STARTS)
-    ends = approach_bounds(model, batch.impedance, batch.used)
+    low, high = approach_bounds(model, batch.impedance, batch.used)
     near = minimise(
-        approach, starts, ends[0][rows], ends[1][rows], tolerance=_APPROACH, rows=rows, check=check
+        rough.objective(model, logarithmic=True),
+        starts,
+        low[rows],
+        high[rows],
+        tolerance=_APPROACH,
+        rows=rows,
+        check=check,
     )
-    # The logarithm may have led a start nowhere that can be evaluated; its start is as good then.
     lost = ~np.isfinite(near.cost)
     near.theta[lost] = starts[lost]
     near.cost[lost] = np.inf
-    going = _worth_going_on(near, rows)
-    found = minimise(
-        batch.objective(model),
-        near.theta[going],
-        low,
-        high,
-        tolerance=_COMPARE,
-        rows=rows[going],
-        check=check,
+    return near
+
+
+def finish(
+    model: CoatingModel,
+    batch: Batch,
+    near: FloatArray,
+    rows: IndexArray,
+    check: Callable[[], None] | None = None,
+) -> Solution:
+    """From `near` (K, P) to the optimum, well enough to compare models."""
+    low, high = model.bounds
+    return minimise(
+        batch.objective(model), near, low, high, tolerance=_COMPARE, rows=rows, check=check
     )
-    return _best_of(found, rows[going], size)
+
+
+def search(model: CoatingModel, batch: Batch, check: Callable[[], None] | None = None) -> Solution:
+    """The best fit of `model` to each spectrum of the batch, from the spectrum's own starts."""
+    offered = candidates(model, batch.frequency_hz, batch.impedance, batch.used)
+    starts, rows = best_starts(batch.thinned().objective(model), offered, _STARTS)
+    near = approach(model, batch, starts, rows, check)
+    going = _worth_going_on(near, rows)
+    found = finish(model, batch, near.theta[going], rows[going], check)
+    return _best_of(found, rows[going], batch.impedance.shape[0])
 
 
 def settle(
