@@ -184,7 +184,11 @@ def checks() -> list[tuple[str, list[str], dict[str, str]]]:
     ]
     if any((ROOT / "tests" / "window").glob("test_*.py")):
         result.append(
-            ("tests of the window", ["-m", "pytest", "-n", "2", "tests/window"], off_screen)
+            (
+                "tests of the window and of printed pages",
+                ["-m", "pytest", "-n", "2", "tests/window", "tests/output/test_summary.py"],
+                off_screen,
+            )
         )
     return result
 

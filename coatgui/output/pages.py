@@ -51,15 +51,16 @@ def require_qt() -> None:
     if sys.platform.startswith("linux"):
         os.environ.setdefault("QT_QPA_PLATFORM", "offscreen")
     try:
-        from PySide6 import QtGui, QtSvg  # noqa: F401
+        from PySide6 import QtSvg, QtWidgets  # noqa: F401
     except ImportError as error:
         raise PagesUnavailable(
             f"a PDF or PNG needs Qt's libraries, which cannot be loaded ({error}); install them, "
             "or ask for HTML and SVG, which need none."
         ) from None
-    if QtGui.QGuiApplication.instance() is None:
-        # Kept alive by Qt itself as long as the program runs.
-        _kept.append(QtGui.QGuiApplication(["coatgui"]))
+    if QtWidgets.QApplication.instance() is None:
+        # Of the kind that a window needs: there can be only one in a process, for as long as it
+        # runs, and a window may come later.
+        _kept.append(QtWidgets.QApplication(["coatgui"]))
 
 
 _kept: list[Any] = []
