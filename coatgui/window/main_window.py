@@ -318,7 +318,7 @@ class MainWindow(QMainWindow):
             button.setFocusPolicy(policy.StrongFocus if button.isChecked() else policy.ClickFocus)
         # The reading's own place shows the same values where they lie in the coating, and the
         # doubts show their evidence.
-        self.facts.setVisible(isinstance(self.places[place], (MapPlace, CoursePlace)))
+        self.side.make_room(not isinstance(self.places[place], (MapPlace, CoursePlace)))
         self.strip.setVisible(
             not isinstance(self.places[place], (DoubtsPlace, ComparisonPlace, SettingsPlace))
         )

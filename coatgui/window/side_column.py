@@ -70,7 +70,13 @@ class SideColumn(QWidget):
             button.setFont(font)
             policy = Qt.FocusPolicy
             button.setFocusPolicy(policy.StrongFocus if each == number else policy.ClickFocus)
+        if number != FACTS:
+            self.show()
         self.refresh()
+
+    def make_room(self, wanted: bool) -> None:
+        """Stand aside where a place shows the facts itself; origin and history stay if open."""
+        self.setVisible(not wanted or self.stack.currentIndex() != FACTS)
 
     def ask(self, code: str) -> None:
         """Show where a number comes from."""

@@ -8,6 +8,7 @@ from pathlib import Path
 from PySide6.QtCore import QObject, QSettings, QTimer, Signal
 
 from coatgui.intake import FolderWatch
+from coatgui.intake.folder import SPECTRUM_ENDINGS
 from coatgui.intake.watch import QUIET_S
 from coatgui.jobs import Job, run_in_background
 from coatgui.progress import Progress
@@ -93,7 +94,13 @@ class Watching(QObject):
         files = job.result
         if self._is_first:
             self._is_first = False
-            files = [path for path in files if self._name(path) not in self._known()]
+            # Beside the spectra a folder holds notes and the like, which were there all along.
+            known = self._known()
+            files = [
+                path
+                for path in files
+                if path.suffix.casefold() in SPECTRUM_ENDINGS and self._name(path) not in known
+            ]
         self.new.update(dict.fromkeys(files))
         if files:
             self.arrived.emit(list(self.new))
