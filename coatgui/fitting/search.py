@@ -20,7 +20,7 @@ from coatgui.fitting.solver import (
 )
 from coatgui.fitting.starts import approach_bounds, best_starts, candidates
 
-_STARTS = 5
+_STARTS = 4
 _ENOUGH_POINTS = 12
 _FAR_WORSE = 30.0  # in sum of squares
 _SAME_PLACE = 0.2  # in natural coordinates
