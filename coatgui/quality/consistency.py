@@ -188,10 +188,14 @@ class Consistency:
             )
 
     def _steps(self) -> Iterator[Finding]:
-        for fault in sorted(self.steps, key=lambda f: f.place):
-            before, after = (float(self.frequency[fault.place - i]) for i in (1, 0))
-            percent = 100 * float(np.expm1(fault.size.real))
-            large = 100 * abs(fault.size.real) >= self.limits["step_doubt_percent"]
+        # A step that stays and one that dies away in the same gap are one step, seen in two parts.
+        sizes: dict[int, float] = {}
+        for fault in self.steps:
+            sizes[fault.place] = sizes.get(fault.place, 0.0) + fault.size.real
+        for place, size in sorted(sizes.items()):
+            before, after = (float(self.frequency[place - i]) for i in (1, 0))
+            percent = 100 * float(np.expm1(size))
+            large = 100 * abs(size) >= self.limits["step_doubt_percent"]
             yield Finding(
                 "step",
                 Severity.DOUBT if large else Severity.NOTE,
@@ -199,7 +203,7 @@ class Consistency:
                 f"{hertz(before)} and {hertz(after)}, which no circuit does: the instrument "
                 "changed its range there or the panel changed. Compare with a sweep on a fixed "
                 "range.",
-                (fault.place - 1, fault.place),
+                (place - 1, place),
                 (("percent", percent), ("frequency_hz", after)),
             )
 
