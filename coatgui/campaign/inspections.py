@@ -11,8 +11,9 @@ from coatgui.campaign import photographs
 from coatgui.campaign.build import new_id
 from coatgui.campaign.changes import Operation
 from coatgui.campaign.errors import OperationRefused
+from coatgui.campaign.lookup import panel_of, photograph_of, rating_of, reading_of
 from coatgui.campaign.rules import operation
-from coatgui.records import Campaign, Photograph, Rating, Reading, VisualRating
+from coatgui.records import Campaign, Photograph, Rating, VisualRating
 
 _IDENTIFICATION = ("laboratory", "customer", "order", "author", "reviewer", "standards")
 
@@ -43,25 +44,25 @@ def add_ratings(campaign: Campaign, seen: Iterable[VisualRating]) -> Operation:
     made = tuple(Rating(new_id(), _tidy(one)) for one in seen)
     if not made:
         raise OperationRefused("Give at least one rating.")
-    where = _panel_name(campaign, made[0].seen.panel_id) if len(made) == 1 else ""
+    where = panel_of(campaign, made[0].seen.panel_id).name if len(made) == 1 else ""
     name = f"Rate panel {where} {made[0].seen.value}" if where else f"Add {len(made)} ratings"
     return operation(name, campaign, replace(campaign, ratings=(*campaign.ratings, *made)))
 
 
 def rate_reading(campaign: Campaign, reading_id: str, scale: str, grade: str) -> Operation:
     """A rating of the panel of a reading at its exposure time."""
-    reading = _reading(campaign, reading_id)
+    reading = reading_of(campaign, reading_id)
     return add_ratings(campaign, [VisualRating(reading.panel_id, reading.exposure_h, scale, grade)])
 
 
 def edit_rating(campaign: Campaign, rating_id: str, **fields: Any) -> Operation:
     """Change fields of a `VisualRating`, by name."""
-    rating = _rating(campaign, rating_id)
+    rating = rating_of(campaign, rating_id)
     try:
         changed = replace(rating, seen=_tidy(replace(rating.seen, **fields)))
     except TypeError:
         raise OperationRefused("A rating does not have such a field.") from None
-    where = _panel_name(campaign, rating.seen.panel_id)
+    where = panel_of(campaign, rating.seen.panel_id).name
     return operation(
         f"Change a rating of panel {where}",
         campaign,
@@ -71,7 +72,7 @@ def edit_rating(campaign: Campaign, rating_id: str, **fields: Any) -> Operation:
 
 def remove_ratings(campaign: Campaign, rating_ids: Collection[str]) -> Operation:
     for rating_id in rating_ids:
-        _rating(campaign, rating_id)
+        rating_of(campaign, rating_id)
     left = tuple(r for r in campaign.ratings if r.rating_id not in rating_ids)
     number = len(campaign.ratings) - len(left)
     name = "Remove a rating" if number == 1 else f"Remove {number} ratings"
@@ -92,7 +93,7 @@ def add_photograph(
     exposure_h: float | None = None,
 ) -> Operation:
     """Keep a photograph of a panel. Its type is found from `content`; `file` is only its name."""
-    where = _panel_name(campaign, panel_id)
+    where = panel_of(campaign, panel_id).name
     kept, media_type = photographs.judged(content)
     sha256 = hashlib.sha256(kept).hexdigest()
     made = Photograph(
@@ -110,12 +111,12 @@ def add_photograph(
 
 def edit_photograph(campaign: Campaign, photograph_id: str, **fields: Any) -> Operation:
     """Change caption, panel or exposure time."""
-    photograph = _photograph(campaign, photograph_id)
+    photograph = photograph_of(campaign, photograph_id)
     if not fields.keys() <= {"caption", "panel_id", "exposure_h"}:
         raise OperationRefused("Only caption, panel and exposure time of a photograph can change.")
     at = fields.get("exposure_h", photograph.exposure_h)
     changed = replace(photograph, **{**fields, "exposure_h": None if at is None else float(at)})
-    where = _panel_name(campaign, photograph.panel_id)
+    where = panel_of(campaign, photograph.panel_id).name
     return operation(
         f"Change a photograph of panel {where}",
         campaign,
@@ -125,8 +126,8 @@ def edit_photograph(campaign: Campaign, photograph_id: str, **fields: Any) -> Op
 
 def remove_photograph(campaign: Campaign, photograph_id: str) -> Operation:
     """It leaves the campaign; its bytes stay in the file, for undo."""
-    photograph = _photograph(campaign, photograph_id)
-    where = _panel_name(campaign, photograph.panel_id)
+    photograph = photograph_of(campaign, photograph_id)
+    where = panel_of(campaign, photograph.panel_id).name
     left = tuple(p for p in campaign.photographs if p is not photograph)
     return operation(
         f"Remove a photograph of panel {where}", campaign, replace(campaign, photographs=left)
@@ -159,34 +160,6 @@ def _tidy(seen: VisualRating) -> VisualRating:
 
 def _hours(value: Any) -> Any:
     return float(value) if isinstance(value, int) and not isinstance(value, bool) else value
-
-
-def _panel_name(campaign: Campaign, panel_id: str) -> str:
-    for panel in campaign.panels:
-        if panel.panel_id == panel_id:
-            return panel.name
-    raise OperationRefused("This panel is not in the campaign (any more).")
-
-
-def _reading(campaign: Campaign, reading_id: str) -> Reading:
-    for reading in campaign.readings:
-        if reading.reading_id == reading_id:
-            return reading
-    raise OperationRefused("This reading is not in the campaign (any more).")
-
-
-def _rating(campaign: Campaign, rating_id: str) -> Rating:
-    for rating in campaign.ratings:
-        if rating.rating_id == rating_id:
-            return rating
-    raise OperationRefused("This rating is not in the campaign (any more).")
-
-
-def _photograph(campaign: Campaign, photograph_id: str) -> Photograph:
-    for photograph in campaign.photographs:
-        if photograph.photograph_id == photograph_id:
-            return photograph
-    raise OperationRefused("This photograph is not in the campaign (any more).")
 
 
 def _swap(records: tuple[Any, ...], old: Any, new: Any) -> tuple[Any, ...]:

@@ -26,6 +26,7 @@ from coatgui.campaign.inspections import rate_reading as rate_reading
 from coatgui.campaign.inspections import remove_photograph as remove_photograph
 from coatgui.campaign.inspections import remove_ratings as remove_ratings
 from coatgui.campaign.inspections import without_panel
+from coatgui.campaign.lookup import formulation_of, panel_of, reading_of
 from coatgui.campaign.rules import operation
 from coatgui.records import (
     Campaign,
@@ -147,7 +148,7 @@ def add_formulation(campaign: Campaign, name: str, remark: str = "") -> Operatio
 
 
 def rename_formulation(campaign: Campaign, formulation_id: str, name: str) -> Operation:
-    formulation = _formulation(campaign, formulation_id)
+    formulation = formulation_of(campaign, formulation_id)
     changed = replace(formulation, name=name.strip())
     return operation(
         f"Rename formulation {formulation.name} to {changed.name}",
@@ -157,7 +158,7 @@ def rename_formulation(campaign: Campaign, formulation_id: str, name: str) -> Op
 
 
 def edit_formulation_remark(campaign: Campaign, formulation_id: str, remark: str) -> Operation:
-    formulation = _formulation(campaign, formulation_id)
+    formulation = formulation_of(campaign, formulation_id)
     changed = replace(formulation, remark=remark)
     return operation(
         f"Change the remark of formulation {formulation.name}",
@@ -168,7 +169,7 @@ def edit_formulation_remark(campaign: Campaign, formulation_id: str, remark: str
 
 def remove_formulation(campaign: Campaign, formulation_id: str) -> Operation:
     """Only one without panels can go."""
-    formulation = _formulation(campaign, formulation_id)
+    formulation = formulation_of(campaign, formulation_id)
     if any(panel.formulation_id == formulation_id for panel in campaign.panels):
         raise OperationRefused(
             f"Formulation {formulation.name} still has panels: move or remove them first."
@@ -193,7 +194,7 @@ def add_panel(campaign: Campaign, name: str, formulation_id: str, **fields: Any)
 
 def edit_panel(campaign: Campaign, panel_id: str, **fields: Any) -> Operation:
     """Change fields of `Panel`, by name; None or an empty text says that a fact is not known."""
-    panel = _panel(campaign, panel_id)
+    panel = panel_of(campaign, panel_id)
     changed, words = _with(panel, fields, ("panel_id",))
     return operation(
         f"Change {words} of panel {panel.name}",
@@ -203,7 +204,7 @@ def edit_panel(campaign: Campaign, panel_id: str, **fields: Any) -> Operation:
 
 
 def move_panel(campaign: Campaign, panel_id: str, formulation_id: str) -> Operation:
-    panel, formulation = _panel(campaign, panel_id), _formulation(campaign, formulation_id)
+    panel, formulation = panel_of(campaign, panel_id), formulation_of(campaign, formulation_id)
     changed = replace(panel, formulation_id=formulation_id)
     return operation(
         f"Move panel {panel.name} to {formulation.name}",
@@ -214,7 +215,7 @@ def move_panel(campaign: Campaign, panel_id: str, formulation_id: str) -> Operat
 
 def remove_panel(campaign: Campaign, panel_id: str) -> Operation:
     """The panel goes with its readings, ratings and photographs."""
-    panel = _panel(campaign, panel_id)
+    panel = panel_of(campaign, panel_id)
     panels = tuple(p for p in campaign.panels if p is not panel)
     readings = tuple(r for r in campaign.readings if r.panel_id != panel_id)
     number = len(campaign.readings) - len(readings)
@@ -231,7 +232,7 @@ def remove_panel(campaign: Campaign, panel_id: str) -> Operation:
 
 def edit_reading(campaign: Campaign, reading_id: str, **fields: Any) -> Operation:
     """Change a reading's panel, exposure time, temperature, amplitude, potential or remark."""
-    reading = _reading(campaign, reading_id)
+    reading = reading_of(campaign, reading_id)
     others = ("reading_id", "spectrum", "source", *_DECISIONS)
     changed, words = _with(reading, fields, others)
     return _on_readings(campaign, [(reading, changed)], f"Change {words} of")
@@ -247,7 +248,7 @@ def read_again(campaign: Campaign, corrected: Mapping[str, FoundReading]) -> Ope
     was decided about points stays where the frequencies are the same."""
     after = campaign
     for reading_id, found in corrected.items():
-        reading = _reading(campaign, reading_id)
+        reading = reading_of(campaign, reading_id)
         if found.source.sha256 != reading.source.sha256:
             raise OperationRefused(
                 f"The reading {_where(campaign, reading)} can only be read again from its own "
@@ -269,7 +270,7 @@ def read_again(campaign: Campaign, corrected: Mapping[str, FoundReading]) -> Ope
         raise OperationRefused("Choose at least one reading to read again.")
     one = next(iter(corrected))
     what = (
-        f"the reading {_where(campaign, _reading(campaign, one))}"
+        f"the reading {_where(campaign, reading_of(campaign, one))}"
         if len(corrected) == 1
         else f"{len(corrected)} readings"
     )
@@ -277,7 +278,7 @@ def read_again(campaign: Campaign, corrected: Mapping[str, FoundReading]) -> Ope
 
 
 def remove_reading(campaign: Campaign, reading_id: str) -> Operation:
-    reading = _reading(campaign, reading_id)
+    reading = reading_of(campaign, reading_id)
     left = tuple(r for r in campaign.readings if r is not reading)
     return operation(
         f"Remove the reading {_where(campaign, reading)}",
@@ -291,7 +292,7 @@ def leave_out_points(
 ) -> Operation:
     """Leave points out of everything that is computed, for a reason that is kept with them. A
     point that is left out already gets the new reason."""
-    reading = _reading(campaign, reading_id)
+    reading = reading_of(campaign, reading_id)
     chosen = _chosen(points)
     left_out = {**dict(reading.left_out), **dict.fromkeys(chosen, reason.strip())}
     changed = replace(
@@ -308,7 +309,7 @@ def leave_out_points(
 def take_back_points(campaign: Campaign, reading_id: str, points: Iterable[int]) -> Operation:
     """Use points again, whoever left them out: what a person left out is taken back, and the
     points are kept in although the checks may suggest otherwise."""
-    reading = _reading(campaign, reading_id)
+    reading = reading_of(campaign, reading_id)
     chosen = _chosen(points)
     changed = replace(
         reading,
@@ -322,7 +323,7 @@ def take_back_points(campaign: Campaign, reading_id: str, points: Iterable[int])
 
 def pin_model(campaign: Campaign, reading_ids: Iterable[str], model_id: str) -> Operation:
     """Insist on a coating model for these readings; "" leaves the choice to the program again."""
-    readings = [_reading(campaign, reading_id) for reading_id in dict.fromkeys(reading_ids)]
+    readings = [reading_of(campaign, reading_id) for reading_id in dict.fromkeys(reading_ids)]
     if not readings:
         raise OperationRefused("Choose at least one reading to set the model of.")
     changed = [(reading, replace(reading, pinned_model=model_id)) for reading in readings]
@@ -333,7 +334,7 @@ def pin_model(campaign: Campaign, reading_ids: Iterable[str], model_id: str) -> 
 
 def overrule(campaign: Campaign, reading_id: str, reason: str) -> Operation:
     """Use a rejected reading all the same, for a reason; "" lets the rejection stand again."""
-    reading = _reading(campaign, reading_id)
+    reading = reading_of(campaign, reading_id)
     changed = replace(reading, overruled_because=reason.strip())
     words = "Overrule the rejection of" if changed.overruled_because else "Accept the rejection of"
     made = _on_readings(campaign, [(reading, changed)], words)
@@ -351,28 +352,7 @@ def _on_readings(
 
 
 # ---------------------------------------------------------------------------------------------
-# Finding and replacing records
-
-
-def _formulation(campaign: Campaign, formulation_id: str) -> Formulation:
-    for formulation in campaign.formulations:
-        if formulation.formulation_id == formulation_id:
-            return formulation
-    raise OperationRefused("This formulation is not in the campaign (any more).")
-
-
-def _panel(campaign: Campaign, panel_id: str) -> Panel:
-    for panel in campaign.panels:
-        if panel.panel_id == panel_id:
-            return panel
-    raise OperationRefused("This panel is not in the campaign (any more).")
-
-
-def _reading(campaign: Campaign, reading_id: str) -> Reading:
-    for reading in campaign.readings:
-        if reading.reading_id == reading_id:
-            return reading
-    raise OperationRefused("This reading is not in the campaign (any more).")
+# Replacing records
 
 
 def _swap(records: tuple[Any, ...], changed: Iterable[tuple[Any, Any]]) -> tuple[Any, ...]:
@@ -411,7 +391,7 @@ def _chosen(points: Iterable[int]) -> dict[int, None]:
 
 
 def _where(campaign: Campaign, reading: Reading) -> str:
-    return f"of {_panel(campaign, reading.panel_id).name} at {reading.exposure_h:g} h"
+    return f"of {panel_of(campaign, reading.panel_id).name} at {reading.exposure_h:g} h"
 
 
 def _count(number: int, what: str) -> str:
