@@ -1,4 +1,7 @@
-"""Set up for every test: with COATGUI_WITHOUT_QT set, Qt behaves as if it were not installed."""
+"""Set up for every test: with COATGUI_WITHOUT_QT set, Qt behaves as if it were not installed.
+
+Generated examples are the same in every run, so that a failure belongs to the change that made
+it. COATGUI_NEW_EXAMPLES=1 draws new ones, which is how new faults are looked for."""
 
 from __future__ import annotations
 
@@ -6,6 +9,12 @@ import os
 import sys
 from importlib.abc import MetaPathFinder
 from importlib.machinery import ModuleSpec
+
+from hypothesis import settings
+
+settings.register_profile("same examples", derandomize=True, database=None, deadline=None)
+if not os.environ.get("COATGUI_NEW_EXAMPLES"):
+    settings.load_profile("same examples")
 
 _QT = ("PySide6", "shiboken6", "pyqtgraph")
 

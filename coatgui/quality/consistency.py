@@ -15,6 +15,7 @@ _WINDOW = 5  # points looked at together for scatter
 _GAP = 3  # wild points no further apart than this belong together
 _FAR = 4.0  # times the others: a point that stands out even among scattered ones
 _LAST_HARMONIC = 7
+_LARGEST = 100.0
 
 
 def stretches(mask: BoolArray) -> list[tuple[int, int]]:
@@ -37,9 +38,15 @@ def _groups(places: list[int]) -> list[list[int]]:
     return groups
 
 
+def _change(size: complex) -> complex:
+    """Relative change of Z that a change of ln Z is. Numbers that are no measurement can stand
+    hundreds of decades apart: from there on the size is left at e^100, which can be printed."""
+    return complex(np.expm1(complex(min(size.real, _LARGEST), size.imag)))
+
+
 def _departure(size: complex) -> float:
     """Relative departure of Z, in percent, that a departure of ln Z is."""
-    return 100 * float(abs(np.exp(size) - 1.0))
+    return 100 * abs(_change(size))
 
 
 def _rms_percent(off: ComplexArray) -> float:
@@ -194,7 +201,7 @@ class Consistency:
             sizes[fault.place] = sizes.get(fault.place, 0.0) + fault.size.real
         for place, size in sorted(sizes.items()):
             before, after = (float(self.frequency[place - i]) for i in (1, 0))
-            percent = 100 * float(np.expm1(size))
+            percent = 100 * _change(size).real
             large = 100 * abs(size) >= self.limits["step_doubt_percent"]
             yield Finding(
                 "step",
@@ -216,7 +223,7 @@ class Consistency:
         number = self.frequency.size
         if drifts:
             start = max(drifts, key=lambda f: abs(f.size)).place
-            percent = 100 * float(np.expm1(sum(f.size.real for f in drifts)))
+            percent = 100 * _change(sum(f.size.real for f in drifts)).real
             points = tuple(range(start, number))
             text = (
                 f"Towards the slow end |Z| runs away, to {abs(percent):.2g} % "

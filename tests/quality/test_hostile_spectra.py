@@ -42,6 +42,20 @@ def test_any_numbers_are_answered(those: list[Spectrum]) -> None:
         assert kramers_kronig_residuals(spectrum, Settings()).shape == (len(spectrum),)
 
 
+def test_a_step_of_hundreds_of_decades_is_answered() -> None:
+    """Found by generated numbers: the step in ln |Z| was past what a double can hold."""
+    rows = """1.00000000e+08 3.2|7.59119566e+07 0|7.50570733e+07 0|6.53741171e+07 0
+        6.28234879e+07 -4.94365656e+14|5.88086186e+07 0|5.19177602e+07 1.9|4.97802757e+07 0
+        4.34578101e+07 0|3.76083980e+07 -0.85|2.85462470e+07 2.64246387e+14
+        2.77980356e+07 8.17556954e+14|2.63706299e+07 9.69490229e+14|5.02401568e+06 0
+        1.00000000e+03 0|2.00001000e+00 0|6.74500000e-01 -7.56860550e+14|3.50000000e-01 1e-5"""
+    table = np.array([row.split() for row in rows.replace("\n", "|").split("|")], dtype=float)
+    frequency = np.append(table[:, 0], [1e-5, 1e-5])
+    z = np.append(table[:, 1] * (1 + 1j), [1e-12 + 2.13982787e14j, 1e-12])
+    (check,) = check_spectra([Spectrum(frequency, z)], settings=Settings(), area_cm2=[None])
+    sound(check, Spectrum(frequency, z))
+
+
 def test_many_points_at_few_frequencies_are_answered() -> None:
     """The model then follows everything, and nothing is left to judge by."""
     rng = np.random.default_rng(266)
