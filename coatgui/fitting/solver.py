@@ -121,8 +121,8 @@ def _steps(
     pivots[~free | (diagonal <= 0)] = _IMMOVABLE
     if size < _FEW:
         try:
-            found: FloatArray = np.linalg.solve(system.transpose(2, 0, 1), step.T[:, :, None])
-            return found[:, :, 0].T
+            found = np.linalg.solve(system.transpose(2, 0, 1), step.T[:, :, None])
+            return np.asarray(found[:, :, 0].T, dtype=np.float64)
         except np.linalg.LinAlgError:
             pass  # one of them is singular to the last digit
     smallest = _SMALLEST_PIVOT * diagonal
