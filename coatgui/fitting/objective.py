@@ -61,6 +61,13 @@ class ImpedanceObjective:
         evaluation = self.model.evaluate(theta, self.grid)
         return self._residual(evaluation.impedance, rows)
 
+    def cost(self, theta: FloatArray, rows: IndexArray) -> FloatArray:
+        """S (B,); not finite where the model cannot be evaluated."""
+        with np.errstate(over="ignore", invalid="ignore", divide="ignore"):
+            flat = np.ascontiguousarray(self.residuals(theta, rows)).view(np.float64)
+            total: FloatArray = np.vecdot(flat, flat)
+        return total
+
     def _residual(self, modelled: ComplexArray, rows: IndexArray) -> ComplexArray:
         if not self.logarithmic:
             difference: ComplexArray = (modelled - self.measured[rows]) * self.weight[rows]
