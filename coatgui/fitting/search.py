@@ -117,8 +117,8 @@ def _best_few(cost: FloatArray, rows: IndexArray, count: int) -> IndexArray:
 
 
 def _worth_going_on(theta: FloatArray, cost: FloatArray, rows: IndexArray) -> BoolArray:
-    """Of the places (S, P) near an optimum for each of `rows`, which to follow to the end: those not far worse than the
-    best, and of several that arrived at one place only the best."""
+    """Of the places (S, P) near an optimum of each of `rows`, which to follow to the end: those not
+    far worse than the best, and of several that arrived at one place only the best."""
     order = np.lexsort((cost, rows))
     best = np.full(int(rows.max()) + 1, np.inf)
     np.minimum.at(best, rows, cost)
@@ -184,8 +184,8 @@ def search(
     *,
     offers: Sequence[FloatArray] | None = None,
 ) -> Solution:
-    """The best fit of `model` to each spectrum of the batch, from the spectrum's own starts and, for
-    each spectrum, from `offers` (K, P) that may lie near an optimum already."""
+    """The best fit of `model` to each spectrum of the batch, from the spectrum's own starts and from
+    its `offers` (K, P) that may lie near an optimum already."""
     offered = candidates(model, batch.frequency_hz, batch.impedance, batch.used)
     helped = offers is not None and any(map(len, offers))
     starts, rows = best_starts(
