@@ -184,8 +184,8 @@ def search(
     *,
     offers: Sequence[FloatArray] | None = None,
 ) -> Solution:
-    """The best fit of `model` to each spectrum of the batch, from the spectrum's own starts and from
-    its `offers` (K, P) that may lie near an optimum already."""
+    """The best fit of `model` to each spectrum of the batch, from the spectrum's own starts
+    and from its `offers` (K, P) that may lie near an optimum already."""
     offered = candidates(model, batch.frequency_hz, batch.impedance, batch.used)
     helped = offers is not None and any(map(len, offers))
     starts, rows = best_starts(
