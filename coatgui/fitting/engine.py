@@ -21,7 +21,7 @@ from coatgui.records import Fit, Spectrum
 ENGINE_VERSION = "3"
 # Shares of the work: few enough to be fast (the last rows to settle take as many steps in a small
 # share as in a large one), enough of them for every processor and for progress.
-_SMALLEST_SHARE, _LARGEST_SHARE, _SHARES = 60, 1250, 4
+_SMALLEST_SHARE, LARGEST_SHARE, _SHARES = 60, 1250, 4
 
 
 def fit_spectra(
@@ -57,7 +57,7 @@ def fit_spectra(
         key=lambda i: (series[i], exposure_h[i]),
     )
     # A multiple of a few shares, so that no processor is left without work at the end.
-    share_count = _SHARES * -(-len(order) // (_SHARES * _LARGEST_SHARE))
+    share_count = _SHARES * -(-len(order) // (_SHARES * LARGEST_SHARE))
     share_size = max(_SMALLEST_SHARE, -(-len(order) // max(share_count, 1)))
     shares: list[list[int]] = []
     last = None

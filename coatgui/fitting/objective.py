@@ -17,7 +17,7 @@ from coatgui.circuits.elements import ComplexArray
 from coatgui.fitting.solver import BoolArray, FloatArray, IndexArray
 
 # Rows evaluated at once: what they need fits the processor's own cache.
-_CHUNK = 256
+CHUNK = 128
 
 
 class ImpedanceObjective:
@@ -108,8 +108,8 @@ class ImpedanceObjective:
         total = np.empty(size)
         product = np.empty((count + 1, count, size))
         with np.errstate(over="ignore", invalid="ignore", divide="ignore"):
-            for begun in range(0, size, _CHUNK):
-                some = slice(begun, begun + _CHUNK)
+            for begun in range(0, size, CHUNK):
+                some = slice(begun, begun + CHUNK)
                 flat = self._stacked(theta.T[some], rows[some]).view(np.float64)
                 own = flat @ flat[:, :count].transpose(0, 2, 1)
                 product[:, :, some] = own.transpose(1, 2, 0)

@@ -28,7 +28,7 @@ _FAR_OFF = 100.0  # likewise, of a start that comes from another fit
 _OFFERS = 2
 _SAME_PLACE = 0.2  # in natural coordinates
 _SAME_COST = 1.005
-_APPROACH = Tolerance(cosine=1e-2, reduction=1e-3, step=2.0, iterations=16)
+APPROACH = Tolerance(cosine=1e-2, reduction=1e-3, step=2.0, iterations=16)
 # Near enough to compare models: the cost is then known to a few parts in 100,000.
 _COMPARE = Tolerance(cosine=1e-4, reduction=1e-5, iterations=40, damping=1e-2)
 _SETTLE = Tolerance(damping=1e-3)
@@ -153,7 +153,7 @@ def approach(
         starts,
         low[rows],
         high[rows],
-        tolerance=_APPROACH,
+        tolerance=APPROACH,
         rows=rows,
         check=check,
     )
