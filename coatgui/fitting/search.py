@@ -21,7 +21,6 @@ from coatgui.fitting.solver import (
 from coatgui.fitting.starts import approach_bounds, best_starts, candidates
 
 _STARTS = 4
-_STARTS_WITH_HELP = 3
 _ENOUGH_POINTS = 12
 _FAR_WORSE = 30.0  # in sum of squares
 _FAR_OFF = 100.0  # likewise, of a start that comes from another fit
@@ -188,13 +187,10 @@ def search(
     """The best fit of `model` to each spectrum of the batch, from the spectrum's own starts
     and from its `offers` (K, P) that may lie near an optimum already."""
     offered = candidates(model, batch.frequency_hz, batch.impedance, batch.used)
-    helped = offers is not None and any(map(len, offers))
-    starts, rows = best_starts(
-        batch.thinned().objective(model), offered, _STARTS_WITH_HELP if helped else _STARTS
-    )
+    starts, rows = best_starts(batch.thinned().objective(model), offered, _STARTS)
     near = approach(model, batch, starts, rows, check)
     theta, cost = near.theta, near.cost
-    if offers is not None and helped:
+    if offers is not None and any(map(len, offers)):
         further = np.clip(np.concatenate(offers), *model.bounds)
         place = np.repeat(np.arange(len(offers)), [len(offer) for offer in offers])
         rough = batch.thinned().objective(model, logarithmic=True)
