@@ -166,6 +166,7 @@ def multiple(
                 seconds(evaluate),
                 seconds(lambda: minimise(objective, starts, *ends)),
                 seconds(normal),
+                seconds(evaluate_own),
             ]
             for _ in range(15)
         ]
