@@ -135,7 +135,8 @@ class SummaryPlace(Place):
             self._shown = None
             return
         wanted = (campaign, assessment, self.pages.pixels())
-        if self._shown and all(a is b for a, b in zip(self._shown, wanted, strict=True)):
+        before = self._shown
+        if before and before[0] is campaign and before[1] is assessment and before[2] == wanted[2]:
             return
         self._shown = wanted
         self.printing.begin(lambda: inspection_summary(assessment, campaign), wanted[2])
