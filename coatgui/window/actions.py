@@ -41,6 +41,10 @@ ACTIONS = (
           "write_data", "campaign"),
     Entry("Campaign", "Save the plot…", "Ctrl+Shift+P", "As SVG or PNG, on white", "save_picture",
           "campaign"),
+    Entry("Campaign", "Keep copies in a folder…", "", "Copies are made as the work goes on, and "
+          "kept by their age", "choose_copies_folder"),
+    Entry("Campaign", "Keep copies beside the campaign", "", "In a folder named after it",
+          "copies_beside"),
     Entry("Campaign", "Judge the readings again", "F5", "Check and fit what has changed",
           "judge_again", "campaign"),
     Entry("Campaign", "Stop the work under way", "Esc", "Nothing is left half-written",

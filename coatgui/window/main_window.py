@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from pathlib import Path
 
-from PySide6.QtCore import QSettings, Qt
+from PySide6.QtCore import QByteArray, QEvent, QSettings, Qt
 from PySide6.QtGui import QAction, QCloseEvent, QDragEnterEvent, QDropEvent, QKeySequence
 from PySide6.QtWidgets import (
     QApplication,
@@ -30,6 +30,7 @@ from coatgui.window.exposure_strip import ExposureStrip
 from coatgui.window.figure_actions import FigureActions
 from coatgui.window.file_actions import FileActions
 from coatgui.window.incoming import Incoming
+from coatgui.window.keeping import Keeping
 from coatgui.window.places.comparison_place import ComparisonPlace
 from coatgui.window.places.course_place import CoursePlace
 from coatgui.window.places.doubts_place import DoubtsPlace
@@ -56,6 +57,9 @@ class MainWindow(QMainWindow):
         self.setWindowTitle("coatgui")
         self.setAcceptDrops(True)
         self.resize(1280, 800)
+        geometry = settings.value("geometry")
+        if isinstance(geometry, QByteArray):
+            self.restoreGeometry(geometry)
         self._actions: list[tuple[Entry, QAction]] = []
         self._shown: CampaignFile | None = None
         # Places that do not show what the desk holds: all of it (True), or only the selection.
@@ -84,7 +88,16 @@ class MainWindow(QMainWindow):
             self.desk, self.incoming, self.files, settings, self.tone, self.pages
         )
         self.dry_run, self.watching = self.arrivals.page, self.arrivals.watching
-        for line in (self.trouble, self.arrivals.waiting, self.arrivals.arrived):
+        self.keeping = Keeping(
+            self.desk, self.files, settings, lambda: self.open_place().noun, self.go_to
+        )
+        for line in (
+            self.trouble,
+            self.keeping.standing,
+            self.keeping.offer,
+            self.arrivals.waiting,
+            self.arrivals.arrived,
+        ):
             column.addWidget(line)
         column.addWidget(self.pages, 1)
         self._build_menus()
@@ -95,13 +108,15 @@ class MainWindow(QMainWindow):
         self.desk.worked.connect(self._worked)
         self.desk.told.connect(self._told)
         self.desk.failed.connect(self.trouble.say)
+        self.desk.unkept.connect(self.trouble.say_unkept)
+        self.trouble.elsewhere.clicked.connect(lambda _checked=False: self.files.save_as())
         self._campaign_changed()
 
     # --- building --------------------------------------------------------------------------
 
     def _build_menus(self) -> None:
         menus: dict[str, QMenu] = {}
-        holders = (self, self.files, self.figures, self.arrivals, self.side)
+        holders = (self, self.files, self.figures, self.arrivals, self.side, self.keeping)
         for entry in ACTIONS:
             menu = menus.get(entry.menu)
             if menu is None:
@@ -191,9 +206,7 @@ class MainWindow(QMainWindow):
         title = "coatgui"
         if file is not None:
             title = f"{file.campaign.title} · coatgui"
-            self.status.kept.setText(
-                f"kept in {file.path.name}" if self.desk.is_saved else _UNSAVED
-            )
+            self.status.kept.setText(self._how_kept(file))
             if self.desk.is_saved:
                 self.files.remember(file.path)
         else:
@@ -219,6 +232,11 @@ class MainWindow(QMainWindow):
                 self._catch_up(place)
         self._count_doubts()
         self._show_facts()
+
+    def _how_kept(self, file: CampaignFile) -> str:
+        if file.read_only_because:
+            return f"{file.path.name}: read only"
+        return f"kept in {file.path.name}" if self.desk.is_saved else _UNSAVED
 
     def _catch_up(self, place: Place) -> None:
         """Show in a place what it has missed: a campaign, or another selection only."""
@@ -345,6 +363,15 @@ class MainWindow(QMainWindow):
         if not self.files.may_leave():
             event.ignore()
             return
+        self.hide()
+        self.settings.setValue("geometry", self.saveGeometry())
         self.arrivals.close()
         self.desk.close()
+        self.keeping.close()
         event.accept()
+
+    def changeEvent(self, event: QEvent) -> None:
+        super().changeEvent(event)
+        there = hasattr(self, "keeping")  # events come before the window is built
+        if event.type() == QEvent.Type.ActivationChange and there and self.isActiveWindow():
+            self.keeping.look()

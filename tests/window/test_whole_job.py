@@ -240,6 +240,7 @@ def test_from_the_empty_window_to_the_campaign_opened_again(
     troubles = meanwhile(name_it(tmp_path / "walk.v2"))
     choose(window, "Campaign", "Save as")
     assert not troubles
+    wait(settled(window))
     assert not check_file(kept)
     assert window.status.kept.text() == "kept in walk.v2.coatgui"
 
