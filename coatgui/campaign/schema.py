@@ -15,7 +15,7 @@ from contextlib import closing
 from functools import cache
 
 from coatgui.campaign import seal
-from coatgui.campaign.errors import CampaignFileError, CampaignTooNew
+from coatgui.campaign.errors import CampaignDamaged, CampaignTooNew
 
 APPLICATION_ID = 0x434F4154  # "COAT"
 
@@ -218,7 +218,7 @@ def version(connection: sqlite3.Connection) -> int:
             f"knows up to {len(MIGRATIONS)}): install the newer program to open it."
         )
     if found < 0:
-        raise CampaignFileError(f"This campaign file is damaged: its version is {found}.")
+        raise CampaignDamaged(f"This campaign file is damaged: its version is {found}.")
     return found
 
 

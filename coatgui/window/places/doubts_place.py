@@ -50,6 +50,7 @@ class DoubtsPlace(Place):
 
     noun, question = "Doubts", "What needs a person's eye?"
     note = "kramers_kronig"
+    has_strip = False
     opened = Signal()
 
     def __init__(self, desk: Desk, tone: Colours) -> None:
