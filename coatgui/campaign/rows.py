@@ -178,8 +178,13 @@ def _dialect_text(dialect: Dialect) -> str:
     )
 
 
+# Made once: `json.dumps` makes one for every call.
+_written = json.JSONEncoder(ensure_ascii=False, allow_nan=False).encode
+
+
 def to_json(value: Any) -> str:
-    return json.dumps(value, ensure_ascii=False, allow_nan=False)
+    """Raises ValueError where a number is not finite."""
+    return "[]" if value == () else _written(value)
 
 
 def _float(value: float | None) -> float | None:

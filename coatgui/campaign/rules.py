@@ -12,6 +12,7 @@ import math
 from collections import Counter
 from collections.abc import Callable, Iterable, Iterator, Mapping
 from dataclasses import fields, is_dataclass
+from functools import cache
 from typing import Any
 
 from coatgui.campaign import photographs, rows, rows_seen, schema
@@ -189,15 +190,21 @@ def refuse_unsound(table: str, record: Any) -> None:
 
 def _refuse_wrong_types(record: Any) -> None:
     """Texts must be texts and numbers finite numbers: SQLite would convert some others."""
-    for field in fields(record):
-        value = getattr(record, field.name)
-        words = field.name.replace("_", " ")
-        _refuse_long_texts((value,))
-        kind = getattr(field.type, "__name__", field.type)  # "str", "float", "float | None", …
+    for name, kind in _typed_fields(record.__class__):
+        value = getattr(record, name)
+        words = name.replace("_", " ")
+        if isinstance(value, str):
+            _refuse_long_texts((value,))
         if kind == "str" and not isinstance(value, str):
             raise OperationRefused(f"The {words} must be a text, not {value!r}.")
         if kind == "float" or (kind == "float | None" and value is not None):
             _finite(value, f"The {words}")
+
+
+@cache
+def _typed_fields(kind: type) -> tuple[tuple[str, str], ...]:
+    """The fields of a record, each with "str", "float", "float | None", …"""
+    return tuple((f.name, getattr(f.type, "__name__", str(f.type))) for f in fields(kind))
 
 
 def _refuse_long_texts(values: Iterable[Any]) -> None:

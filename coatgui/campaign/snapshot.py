@@ -47,7 +47,9 @@ class Snapshot:
         self._connection = connection
         spectra = read_spectra(connection) if spectra is None else spectra
         self._held: dict[str, dict[str, tuple[int, Any]]] = {table: {} for table in ORDERED}
-        self._places: dict[str, list[int]] = {}  # of the records of each table, in their order
+        # The records of each table in their order, and their places.
+        self._records: dict[str, list[Any]] = {}
+        self._places: dict[str, list[int]] = {}
         self.total = seal.rows_total(connection, KEYS.keys() - set(ORDERED))
         for table, held in self._held.items():
             for row in connection.execute(f"SELECT * FROM {table} ORDER BY place, rowid"):
@@ -105,8 +107,7 @@ class Snapshot:
     ) -> tuple[Any, ...] | None:
         """Adopt touched rows. Returns the records of the table where rows were only altered, which
         then need not be put in order; None where some went, came or moved."""
-        held, places = self._held[table], self._places[table]
-        records = list(getattr(self.campaign, table))
+        held, records, places = self._held[table], self._records[table], self._places[table]
         only_altered = True
         for key, new in touched.items():
             was = held.get(key)
@@ -122,7 +123,8 @@ class Snapshot:
     def _in_order(self, table: str) -> tuple[Any, ...]:
         held = sorted(self._held[table].values(), key=itemgetter(0))
         self._places[table] = [place for place, _ in held]
-        return tuple(record for _, record in held)
+        self._records[table] = [record for _, record in held]
+        return tuple(self._records[table])
 
     def _spectrum(self, spectrum_id: str, reading_id: str) -> Mapping[str, Spectrum]:
         """A spectrum by its id; that of the reading as it was, where it is the same."""
