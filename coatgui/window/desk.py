@@ -14,7 +14,7 @@ from PySide6.QtCore import QObject, QTimer, Signal
 from coatgui.campaign import CampaignFile, CampaignFileError, Change, Operation
 from coatgui.intake import DryRun, UnreadableFolder
 from coatgui.jobs import Job, run_in_background
-from coatgui.output import write_json, write_workbook
+from coatgui.output import write_json, write_summary, write_workbook
 from coatgui.progress import Cancelled
 from coatgui.records import Assessment, Campaign, Found, Reading, ReadingAssessment
 from coatgui.window import desk_work as work
@@ -341,7 +341,8 @@ class Desk(QObject):
             self.select(own[place].reading_id)
 
     def export(self, path: Path) -> None:
-        """Write the workbook or the JSON, by the ending of the name."""
+        """Write the workbook, the inspection summary (PDF, HTML) or the JSON, by the ending of the
+        name."""
         if self.job is not None:
             self._waiting.append(lambda: self.export(path))
             self.told.emit(f"{path.name} will be written when the work under way is done.")
@@ -353,9 +354,11 @@ class Desk(QObject):
         def written(where: Path) -> None:
             self.told.emit(f"Written: {where.name}")
 
-        if path.suffix == ".json":
-            self._start(written, work.export_to, write_json, (self.assessment,), path)
-        else:
-            self._start(
-                written, work.export_to, write_workbook, (self.assessment, self.campaign), path
-            )
+        assessment, campaign = self.assessment, self.campaign
+        ways: dict[str, tuple[Callable[..., None], tuple[Any, ...]]] = {
+            ".json": (write_json, (assessment,)),
+            ".pdf": (write_summary, (assessment, campaign)),
+            ".html": (write_summary, (assessment, campaign)),
+        }
+        write, arguments = ways.get(path.suffix.lower(), (write_workbook, (assessment, campaign)))
+        self._start(written, work.export_to, write, arguments, path)

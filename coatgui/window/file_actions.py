@@ -102,6 +102,13 @@ class FileActions:
         if path := self.to_write("Workbook", "Workbooks (*.xlsx)", ".xlsx"):
             self.desk.export(path)
 
+    def write_summary(self, ending: str = ".pdf") -> None:
+        kinds = ["Pages (*.pdf)", "Web pages (*.html)"]
+        if ending != ".pdf":
+            kinds.reverse()
+        if path := self.to_write("Inspection summary", ";;".join(kinds), ending):
+            self.desk.export(path)
+
     def write_data(self) -> None:
         if path := self.to_write("Data", "JSON (*.json)", ".json"):
             self.desk.export(path)

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import time
 from collections.abc import Callable
 from pathlib import Path
 
@@ -12,10 +11,8 @@ from PySide6.QtWidgets import (
     QApplication,
     QButtonGroup,
     QHBoxLayout,
-    QLabel,
     QMainWindow,
     QMenu,
-    QProgressBar,
     QPushButton,
     QSplitter,
     QStackedWidget,
@@ -40,10 +37,12 @@ from coatgui.window.places.map_place import MapPlace
 from coatgui.window.places.place import Place
 from coatgui.window.places.reading_place import ReadingPlace
 from coatgui.window.places.settings_place import SettingsPlace
+from coatgui.window.places.summary_place import SummaryPlace
 from coatgui.window.places.water_place import WaterPlace
 from coatgui.window.project_tree import ProjectTree
 from coatgui.window.side_column import SideColumn
 from coatgui.window.welcome import Trouble, Welcome
+from coatgui.window.work_status import WorkStatus
 
 _UNSAVED = "not saved yet"
 
@@ -58,7 +57,6 @@ class MainWindow(QMainWindow):
         self.setAcceptDrops(True)
         self.resize(1280, 800)
         self._actions: list[tuple[Entry, QAction]] = []
-        self._began = 0.0
         self._shown: CampaignFile | None = None
         # Places that do not show what the desk holds: all of it (True), or only the selection.
         self._behind: dict[Place, bool] = {}
@@ -90,7 +88,7 @@ class MainWindow(QMainWindow):
             column.addWidget(line)
         column.addWidget(self.pages, 1)
         self._build_menus()
-        self._build_status()
+        self.status = WorkStatus(self.statusBar(), self.desk.stop)
         self.desk.campaign_changed.connect(self._campaign_changed)
         self.desk.assessed.connect(self._campaign_changed)
         self.desk.selected.connect(self._selected)
@@ -114,8 +112,9 @@ class MainWindow(QMainWindow):
             if entry.shortcut:
                 action.setShortcut(QKeySequence(entry.shortcut))
             holder = next(h for h in holders if hasattr(h, entry.method))
-            method: Callable[[], object] = getattr(holder, entry.method)
-            action.triggered.connect(lambda _checked=False, call=method: call())
+            method: Callable[..., object] = getattr(holder, entry.method)
+            about = (entry.about,) if entry.about else ()
+            action.triggered.connect(lambda _checked=False, call=method, a=about: call(*a))
             menu.addAction(action)
             self._actions.append((entry, action))
         self.recent = QMenu("Recent campaigns", self)
@@ -141,17 +140,20 @@ class MainWindow(QMainWindow):
                 MapPlace,
                 ReadingPlace,
                 CoursePlace,
-                DoubtsPlace,
                 WaterPlace,
                 ComparisonPlace,
+                DoubtsPlace,
+                SummaryPlace,
                 SettingsPlace,
             )
         ]
         for place in self.places:
             if isinstance(place, MapPlace):
-                place.cells.opened.connect(self.go_reading)
+                place.cells.opened.connect(lambda: self.go_to("Reading"))
             elif isinstance(place, DoubtsPlace):
-                place.opened.connect(self.go_reading)
+                place.opened.connect(lambda: self.go_to("Reading"))
+            elif isinstance(place, SummaryPlace):
+                place.wanted.connect(self.files.write_summary)
         self.buttons = QButtonGroup(self)
         for i, place in enumerate(self.places):
             button = QPushButton(place.noun)
@@ -177,21 +179,6 @@ class MainWindow(QMainWindow):
         self.go(0)
         return splitter
 
-    def _build_status(self) -> None:
-        self.doing = QLabel()
-        self.bar = QProgressBar()
-        self.bar.setFixedWidth(180)
-        self.bar.setTextVisible(False)
-        self.bar.setAccessibleName("Progress of the work under way")
-        self.halt = QPushButton("Stop")
-        self.halt.setAccessibleDescription("Give up the work under way (Esc)")
-        self.halt.clicked.connect(self.desk.stop)
-        self.kept = QLabel()
-        for widget in (self.doing, self.bar, self.halt):
-            self.statusBar().addPermanentWidget(widget)
-            widget.hide()
-        self.statusBar().addPermanentWidget(self.kept)
-
     # --- following the desk ----------------------------------------------------------------
 
     def _campaign_changed(self) -> None:
@@ -204,11 +191,13 @@ class MainWindow(QMainWindow):
         title = "coatgui"
         if file is not None:
             title = f"{file.campaign.title} · coatgui"
-            self.kept.setText(f"kept in {file.path.name}" if self.desk.is_saved else _UNSAVED)
+            self.status.kept.setText(
+                f"kept in {file.path.name}" if self.desk.is_saved else _UNSAVED
+            )
             if self.desk.is_saved:
                 self.files.remember(file.path)
         else:
-            self.kept.setText("")
+            self.status.kept.setText("")
             self.welcome.show_recent(self.files.recent_names())
         self.setWindowTitle(title)
         for entry, action in self._actions:
@@ -258,23 +247,10 @@ class MainWindow(QMainWindow):
         self.strip.refresh()
 
     def _worked(self, stage: str, done: int, total: int) -> None:
-        for widget in (self.doing, self.bar, self.halt):
-            widget.setVisible(bool(stage))
         for entry, action in self._actions:
             if entry.needs == "work":
                 action.setEnabled(bool(stage))
-        if not stage:
-            self._began = 0.0
-            return
-        now = time.monotonic()
-        self._began = self._began or now
-        left = ""
-        if total and 0 < done < total and now - self._began > 2.0:
-            # An estimate from what is done so far, never to the second.
-            left = f", about {(now - self._began) / done * (total - done):.0f} s left"
-        self.doing.setText(f"{stage} {done} of {total}{left}" if total > 1 else stage)
-        self.bar.setMaximum(max(total, 0) if total > 1 else 0)
-        self.bar.setValue(done)
+        self.status.worked(stage, done, total)
 
     def _told(self, sentence: str) -> None:
         self.statusBar().showMessage(sentence, 20_000)
@@ -316,36 +292,13 @@ class MainWindow(QMainWindow):
         for button in self.buttons.buttons():
             # Tab comes to the open place's button; left and right go on to the others.
             button.setFocusPolicy(policy.StrongFocus if button.isChecked() else policy.ClickFocus)
-        # The reading's own place shows the same values where they lie in the coating, and the
-        # doubts show their evidence.
-        self.side.make_room(not isinstance(self.places[place], (MapPlace, CoursePlace)))
-        self.strip.setVisible(
-            not isinstance(self.places[place], (DoubtsPlace, ComparisonPlace, SettingsPlace))
-        )
+        # The reading's own place shows the facts where they lie in the coating, and the doubts show
+        # their evidence.
+        self.side.make_room(not self.places[place].leaves_facts)
+        self.strip.setVisible(self.places[place].has_strip)
 
-    def go_map(self) -> None:
-        self.go(0)
-
-    def go_reading(self) -> None:
-        self.go(1)
-
-    def go_course(self) -> None:
-        self.go(2)
-
-    def go_doubts(self) -> None:
-        self.go(3)
-
-    def go_water(self) -> None:
-        self.go_to(WaterPlace)
-
-    def go_comparison(self) -> None:
-        self.go_to(ComparisonPlace)
-
-    def go_settings(self) -> None:
-        self.go_to(SettingsPlace)
-
-    def go_to(self, kind: type[Place]) -> None:
-        self.go(next(i for i, place in enumerate(self.places) if isinstance(place, kind)))
+    def go_to(self, noun: str) -> None:
+        self.go(next(i for i, place in enumerate(self.places) if place.noun == noun))
 
     def later(self) -> None:
         self.desk.step(1)

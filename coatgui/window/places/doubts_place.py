@@ -49,6 +49,7 @@ class DoubtsPlace(Place):
     """`opened` asks for the reading's own place."""
 
     noun, question = "Doubts", "What needs a person's eye?"
+    has_strip = False
     opened = Signal()
 
     def __init__(self, desk: Desk, tone: Colours) -> None:

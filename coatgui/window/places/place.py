@@ -28,10 +28,13 @@ def plain_tip(text: str) -> str:
 
 class Place(QWidget):
     """A place shows what the desk holds. `show_campaign` follows edits and new assessments,
-    `show_selection` another reading, `paint_in` another palette."""
+    `show_selection` another reading, `paint_in` another palette. `leaves_facts` says that the
+    facts of the selection stand beside it, `has_strip` that the exposure times stand under it."""
 
     noun = ""
     question = ""
+    leaves_facts = False
+    has_strip = True
 
     def __init__(self, desk: Desk, tone: Colours) -> None:
         super().__init__()
