@@ -14,7 +14,6 @@ from PySide6.QtCore import QObject, QTimer, Signal
 from coatgui.campaign import CampaignFile, CampaignFileError, Change, Operation
 from coatgui.intake import DryRun, UnreadableFolder
 from coatgui.jobs import Job, run_in_background
-from coatgui.output import write_json, write_summary, write_workbook
 from coatgui.progress import Cancelled
 from coatgui.records import Assessment, Campaign, Found, Reading, ReadingAssessment
 from coatgui.window import desk_work as work
@@ -355,6 +354,9 @@ class Desk(QObject):
             self.told.emit(f"Written: {where.name}")
 
         assessment, campaign = self.assessment, self.campaign
+        # Late: the window is there sooner.
+        from coatgui.output import write_json, write_summary, write_workbook
+
         ways: dict[str, tuple[Callable[..., None], tuple[Any, ...]]] = {
             ".json": (write_json, (assessment,)),
             ".pdf": (write_summary, (assessment, campaign)),
