@@ -92,7 +92,10 @@ def _assess_parser() -> argparse.ArgumentParser:
     )
     for field, what in _FIELDS.items():
         parser.add_argument(
-            f"--{field}", default="", metavar="TEXT", help=f"{what}, for the summary"
+            f"--{field}",
+            default="",
+            metavar="TEXT",
+            help=what if field == "date" else f"{what}, for the summary, if not as in the campaign",
         )
     parser.add_argument("--workers", type=int, metavar="N", help="processes to share the work")
     parser.add_argument("--quiet", action="store_true", help="print no table and no progress")
@@ -354,7 +357,8 @@ def _finish(
             assessment, campaign, options.workbook, spectra=True if options.spectra else None
         )
     if options.summary is not None:
-        identification = Identification(**{field: getattr(options, field) for field in _FIELDS})
+        told = {field: getattr(options, field) for field in _FIELDS}
+        identification = Identification.of(campaign, **told)
         write_summary(assessment, campaign, options.summary, identification)
     if options.figures is not None:
         write_figures(assessment, campaign, options.figures, options.figure_format)

@@ -11,6 +11,7 @@ from PySide6.QtWidgets import QApplication
 
 from coatgui.window import palette
 from coatgui.window.main_window import MainWindow
+from coatgui.window.unforeseen import watch, watch_for_fatal_errors
 
 
 def run(target: Path | None = None) -> int:
@@ -28,7 +29,13 @@ def run(target: Path | None = None) -> int:
     dark = palette.system_is_dark() if chosen is None else str(chosen).lower() == "true"
     palette.apply(application, palette.colours(dark))
     window = MainWindow(settings, dark)
+    stop_watching = watch(window.trouble.say)
+    watch_for_fatal_errors()
     window.show()
+    window.keeping.offer_unfinished()
     if target is not None:
         window.desk.open(target)
-    return int(application.exec())
+    try:
+        return int(application.exec())
+    finally:
+        stop_watching()

@@ -21,7 +21,7 @@ Wait = Callable[[Callable[[], bool]], None]
 
 
 def place_of(window: MainWindow) -> ComparisonPlace:
-    window.go_comparison()
+    window.go_to("Comparison")
     QApplication.processEvents()
     place = window.places[window.stack.currentIndex()]
     assert isinstance(place, ComparisonPlace)

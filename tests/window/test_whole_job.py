@@ -149,7 +149,7 @@ def test_from_the_empty_window_to_the_campaign_opened_again(
     assert not troubles
     wait(settled(window))
     assert window.windowTitle().startswith("two panels")
-    assert window.kept.text() == "not saved yet"
+    assert window.status.kept.text() == "not saved yet"
     headline = window.places[0].headline.text()  # type: ignore[attr-defined]
     assert headline.startswith("2 panels, 7 inspections")
 
@@ -222,7 +222,7 @@ def test_from_the_empty_window_to_the_campaign_opened_again(
 
     # Doubts: the file that could not be used is named, with its reason.
     go(window, "Doubts")
-    doubts = window.places[3].list  # type: ignore[attr-defined]
+    doubts = window.places[5].list  # type: ignore[attr-defined]
     texts = [doubts.item(i).text() for i in range(doubts.count())]
     assert any("remark.txt" in text and "no table of numbers" in text for text in texts)
 
@@ -240,8 +240,9 @@ def test_from_the_empty_window_to_the_campaign_opened_again(
     troubles = meanwhile(name_it(tmp_path / "walk.v2"))
     choose(window, "Campaign", "Save as")
     assert not troubles
+    wait(settled(window))
     assert not check_file(kept)
-    assert window.kept.text() == "kept in walk.v2.coatgui"
+    assert window.status.kept.text() == "kept in walk.v2.coatgui"
 
     # Close it, and open it again from the list of campaigns worked on lately.
     choose(window, "Campaign", "Close campaign")
