@@ -11,7 +11,7 @@ from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, replace
 from typing import Any
 
-from coatgui.campaign import rows, rows_seen, seal
+from coatgui.campaign import cells, rows, rows_seen, seal
 from coatgui.campaign.errors import CampaignDamaged
 from coatgui.campaign.schema import KEYS, ORDERED
 from coatgui.records import Campaign, Spectrum
@@ -129,7 +129,7 @@ class Snapshot:
                 "open_lead": open_lead,
                 "open_lead_source": source,
             }
-        except rows.UNREADABLE as problem:
+        except cells.UNREADABLE as problem:
             raise CampaignDamaged(
                 "This campaign file is damaged: its settings or open-lead run cannot be read."
             ) from problem
@@ -159,7 +159,7 @@ def record_of(table: str, row: Any, spectra: Mapping[str, Spectrum]) -> Any:
         if table == "photographs":
             return rows_seen.photograph_of(row)
         return rows.refusal_of(row)
-    except rows.UNREADABLE as problem:
+    except cells.UNREADABLE as problem:
         raise CampaignDamaged(
             f"This campaign file is damaged: row {row[KEYS[table]]} of {table} cannot be read."
         ) from problem
@@ -180,7 +180,7 @@ def read_spectra(
         if not all(spectrum.content_key() == key for key, spectrum in spectra.items()):
             raise ValueError("The numbers are not those that were kept.")
         return spectra
-    except rows.UNREADABLE as problem:
+    except cells.UNREADABLE as problem:
         which = "one of its spectra" if spectrum_id is None else f"spectrum {spectrum_id}"
         raise CampaignDamaged(
             f"This campaign file is damaged: {which} cannot be read, or was altered."
