@@ -87,5 +87,7 @@ ACTIONS = (
     Entry("View", "History", "Ctrl+Shift+H", "What was done, by whom and when", "show_history",
           "campaign"),
     Entry("View", "Light or dark", "Ctrl+L", "Change between light and dark colours", "turn_tone"),
-    Entry("Help", "Cautions", "F1", "What the results do not say", "show_cautions"),
+    Entry("Help", "Method notes", "F1", "What each number, circuit, check and test means, and the "
+          "terms of the trade", "show_notes"),
+    Entry("Help", "Cautions", "Shift+F1", "What the results do not say", "show_cautions"),
 )  # fmt: skip

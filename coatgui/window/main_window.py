@@ -24,11 +24,11 @@ from coatgui.campaign import CampaignFile
 from coatgui.window import palette
 from coatgui.window.actions import ACTIONS, Entry
 from coatgui.window.arrivals import PROPOSALS, WELCOME, WORK, Arrivals
-from coatgui.window.asking import say_plainly
 from coatgui.window.desk import Desk
 from coatgui.window.exposure_strip import ExposureStrip
 from coatgui.window.figure_actions import FigureActions
 from coatgui.window.file_actions import FileActions
+from coatgui.window.help import Help
 from coatgui.window.incoming import Incoming
 from coatgui.window.keeping import Keeping
 from coatgui.window.places.comparison_place import ComparisonPlace
@@ -68,6 +68,7 @@ class MainWindow(QMainWindow):
         self.incoming = Incoming(self.desk, self)
         self.files = FileActions(self, self.desk, self.incoming, settings, self.trouble)
         self.figures = FigureActions(self.desk, self.files, self.trouble, self.open_place)
+        self.help = Help(self, lambda: self.open_place().topic())
         self.pages = QStackedWidget()
         middle = QWidget()
         column = QVBoxLayout(middle)
@@ -116,7 +117,15 @@ class MainWindow(QMainWindow):
 
     def _build_menus(self) -> None:
         menus: dict[str, QMenu] = {}
-        holders = (self, self.files, self.figures, self.arrivals, self.side, self.keeping)
+        holders = (
+            self,
+            self.files,
+            self.figures,
+            self.arrivals,
+            self.side,
+            self.help,
+            self.keeping,
+        )
         for entry in ACTIONS:
             menu = menus.get(entry.menu)
             if menu is None:
@@ -337,11 +346,6 @@ class MainWindow(QMainWindow):
         self.side.paint_in(self.tone)
         self.strip.tone = self.tone
         self.strip.update()
-
-    def show_cautions(self) -> None:
-        from coatgui.assessment.cautions import cautions  # late: it brings all of assessment
-
-        say_plainly(self, "Cautions", "What the results do not say", "\n\n".join(cautions()))
 
     # --- drops, closing --------------------------------------------------------------------
 

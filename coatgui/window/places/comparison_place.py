@@ -56,6 +56,7 @@ def by_formulation(assessment: Assessment) -> dict[str, list[ReadingAssessment]]
 
 class ComparisonPlace(Place):
     noun, question = "Comparison", "Which is better, and are we sure?"
+    note = "welch"
     has_strip = False
 
     def __init__(self, desk: Desk, tone: Colours) -> None:

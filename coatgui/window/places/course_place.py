@@ -38,6 +38,7 @@ _APART = 1 / 16
 
 class CoursePlace(Place):
     noun, question = "Course", "How is it going?"
+    note = "trend"
     leaves_facts = True
 
     def __init__(self, desk: Desk, tone: Colours) -> None:

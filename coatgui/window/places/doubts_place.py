@@ -49,6 +49,7 @@ class DoubtsPlace(Place):
     """`opened` asks for the reading's own place."""
 
     noun, question = "Doubts", "What needs a person's eye?"
+    note = "kramers_kronig"
     has_strip = False
     opened = Signal()
 
@@ -145,6 +146,10 @@ class DoubtsPlace(Place):
     def _doubt(self) -> Doubt | None:
         row = self.list.currentRow()
         return self.doubts[row] if 0 <= row < len(self.doubts) else None
+
+    def topic(self) -> str:
+        doubt = self._doubt()
+        return doubt.finding.code if doubt is not None and doubt.finding is not None else self.note
 
     def _show_evidence(self, _row: int = -1) -> None:
         doubt = self._doubt()

@@ -309,6 +309,7 @@ class Cells(QWidget):
 
 class MapPlace(Place):
     noun, question = "Map", "Where does the campaign stand?"
+    note = "modulus"
     leaves_facts = True
 
     def __init__(self, desk: Desk, tone: Colours) -> None:

@@ -29,10 +29,12 @@ def plain_tip(text: str) -> str:
 class Place(QWidget):
     """A place shows what the desk holds. `show_campaign` follows edits and new assessments,
     `show_selection` another reading, `paint_in` another palette. `leaves_facts` says that the
-    facts of the selection stand beside it, `has_strip` that the exposure times stand under it."""
+    facts of the selection stand beside it, `has_strip` that the exposure times stand under it, and
+    `note` is the code of the method note that belongs to it."""
 
     noun = ""
     question = ""
+    note = ""
     leaves_facts = False
     has_strip = True
 
@@ -52,6 +54,10 @@ class Place(QWidget):
 
     def show_selection(self) -> None:
         """Another reading was picked."""
+
+    def topic(self) -> str:
+        """The code of the method note about what is looked at."""
+        return self.note
 
     def figure(self) -> list[QWidget]:
         """The plots that make a picture of this place; none where there is nothing to show."""

@@ -50,6 +50,7 @@ _OVERLAYS = ("This reading alone", "With the panel's other times", "With its rep
 
 class ReadingPlace(Place):
     noun, question = "Reading", "What does this spectrum say?"
+    note = "pores_reacting_interface"
 
     def __init__(self, desk: Desk, tone: Colours) -> None:
         super().__init__(desk, tone)
@@ -264,6 +265,10 @@ class ReadingPlace(Place):
                     plain_tip(f"{meaning} ({WORDS[quantity.bound]}). {quantity.method}")
                 )
                 self.table.setItem(i, j, item)
+
+    def topic(self) -> str:
+        known = self.desk.reading_assessment()
+        return known.fit.model if known is not None and known.fit is not None else self.note
 
     def figure(self) -> list[QWidget]:
         return [] if self.desk.reading() is None else [*self.plots.plots, self.plots.key]

@@ -90,6 +90,7 @@ def _tens(value: float) -> str:
 
 class WaterPlace(Place):
     noun, question = "Water", "How much water does the film take up, and how fast?"
+    note = "water_uptake"
 
     def __init__(self, desk: Desk, tone: Colours) -> None:
         super().__init__(desk, tone)
