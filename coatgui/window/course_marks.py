@@ -7,6 +7,7 @@ from collections.abc import Callable, Sequence
 import numpy as np
 import pyqtgraph as pg
 from PySide6.QtCore import Qt
+from PySide6.QtGui import QFont
 
 from coatgui.records import Event, RatingCourse
 from coatgui.window.axis import Plot
@@ -26,20 +27,22 @@ def event_lines(
     dated = [event for event in events if event.by_h is not None]
     for event in sorted(dated, key=lambda e: e.by_h or 0.0):
         style = Qt.PenStyle.DashLine if event.confirmed else Qt.PenStyle.DotLine
-        lines.append(
-            pg.InfiniteLine(
-                float(across(np.array([event.by_h]))[0]),
-                angle=90,
-                pen=pg.mkPen(tone.amber, width=1, style=style),
-                label=event.code.replace("_", " "),
-                labelOpts={
-                    "position": 0.02,
-                    "color": tone.amber,
-                    "rotateAxis": (1, 0),
-                    "anchors": [(0, 0), (0, 1)],
-                },
-            )
+        line = pg.InfiniteLine(
+            float(across(np.array([event.by_h]))[0]),
+            angle=90,
+            pen=pg.mkPen(tone.amber, width=1, style=style),
+            label=event.code.replace("_", " "),
+            labelOpts={
+                "position": 0.02,
+                "color": tone.amber,
+                "rotateAxis": (1, 0),
+                "anchors": [(0, 0), (0, 1)],
+            },
         )
+        font = QFont()
+        font.setPixelSize(11)
+        line.label.setFont(font)
+        lines.append(line)
     return lines
 
 
@@ -57,10 +60,12 @@ class RatingsStrip(Plot):
         self,
         ratings: Sequence[RatingCourse],
         names: Sequence[str],
+        longest_h: float,
         across: Callable[[np.ndarray], np.ndarray],
         tone: Colours,
     ) -> None:
-        """`names` are the formulations in the campaign's order."""
+        """`names` are the formulations in the campaign's order, `longest_h` is where the time axis
+        ends."""
         from coatgui.assessment.ratings import scales  # late: it brings all of assessment
 
         self.clear()
@@ -79,6 +84,7 @@ class RatingsStrip(Plot):
             colour, shape = formulation_look(order[formulation], tone.dark)
             own = [r for r in ratings if (r.scale, r.formulation) == (scale, formulation)]
             x = across(np.array([r.exposure_h for r in own]))
+            ends = x.min(), across(np.array([longest_h]))[0]
             marks = pg.ScatterPlotItem(
                 x, np.full(len(own), -float(place)), symbol=shape, size=8,
                 pen=pg.mkPen(colour), brush=None,
@@ -86,7 +92,9 @@ class RatingsStrip(Plot):
             self.addItem(marks)
             for at, rating in zip(x, own, strict=True):
                 words = grades(rating)
-                text = pg.TextItem(words, color=tone.ink, anchor=(-0.12, 0.5))
+                # At the right end there is room at the left only.
+                at_end = at > ends[0] + 0.9 * (ends[1] - ends[0]) or at == ends[1]
+                text = pg.TextItem(words, color=tone.ink, anchor=(1.2 if at_end else -0.2, 0.5))
                 text.setPos(float(at), -float(place))
                 self.addItem(text, ignoreBounds=True)
         self.getPlotItem().getAxis("left").setTicks([ticks])

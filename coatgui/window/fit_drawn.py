@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from itertools import pairwise
 from typing import Any
 
 import numpy as np
 import pyqtgraph as pg
-from PySide6.QtCore import QPointF, QRectF, Qt
+from PySide6.QtCore import QPointF, Qt
 from PySide6.QtGui import QPainterPath, QPen, QPolygonF
 from PySide6.QtWidgets import QGraphicsPathItem
 
@@ -88,6 +89,7 @@ class FitDrawn:
         while len(self._curves) < len(parts):
             curves = tuple(pg.PlotCurveItem() for _ in self.plots)
             for plot, curve in zip(self.plots, curves, strict=True):
+                curve.setZValue(-5)  # under the fit itself and the points
                 plot.addItem(curve, ignoreBounds=True)
             self._curves.append(curves)
         x = np.log10(frequency_hz)
@@ -116,13 +118,15 @@ class FitDrawn:
         x = np.log10(band.frequency_hz)
         self.shades[0].setPath(_ribbon(x, *_logs(band), band.holds))
         self.shades[1].setPath(_ribbon(x, band.phase_low_deg, band.phase_high_deg, band.holds))
-        # In the complex plane the limits of both parts make a box at each frequency.
+        # In the complex plane the limits of both parts make a box at each frequency; neighbours are
+        # joined.
         path = QPainterPath()
         path.setFillRule(Qt.FillRule.WindingFill)
-        for place in np.flatnonzero(band.holds):
-            left, right = band.real_low_ohm[place], band.real_high_ohm[place]
-            low, high = -band.imaginary_high_ohm[place], -band.imaginary_low_ohm[place]
-            path.addRect(QRectF(left, low, right - left, high - low))
+        boxes = [_corners(band, place) if band.holds[place] else None for place in range(x.size)]
+        for box, after in pairwise([*boxes, None]):
+            if box is not None:
+                path.addPolygon(QPolygonF(_hull(box if after is None else [*box, *after])))
+                path.closeSubpath()
         self.shades[2].setPath(path)
 
     def entries(self, tone: Colours) -> list[Entry]:
@@ -149,13 +153,37 @@ class FitDrawn:
 
 def part_pen(number: int, tone: Colours) -> QPen:
     """Colour and dashes of a part: each has its own of both."""
-    pen = QPen(pg.mkPen(formulation_look(number, tone.dark)[0], width=1.6))
+    pen = QPen(pg.mkPen(formulation_look(number, tone.dark)[0], width=1.3))
     pen.setStyle(_DASHES[number % len(_DASHES)])
     return pen
 
 
 def _logs(band: FitBand) -> tuple[FloatArray, FloatArray]:
     return _log(band.modulus_low_ohm), _log(band.modulus_high_ohm)
+
+
+def _corners(band: FitBand, place: int) -> list[QPointF]:
+    across = (float(band.real_low_ohm[place]), float(band.real_high_ohm[place]))
+    up = (-float(band.imaginary_low_ohm[place]), -float(band.imaginary_high_ohm[place]))
+    return [QPointF(x, y) for x in across for y in up]
+
+
+def _hull(points: Sequence[QPointF]) -> list[QPointF]:
+    """The corners of the convex hull, round about (Andrew's monotone chain)."""
+    ordered = sorted(points, key=lambda p: (p.x(), p.y()))
+    whole: list[QPointF] = []
+    for way in (ordered, ordered[::-1]):
+        chain: list[QPointF] = []
+        for p in way:
+            while len(chain) >= 2 and _turn(chain[-2], chain[-1], p) <= 0:
+                chain.pop()
+            chain.append(p)
+        whole += chain[:-1]
+    return [*whole, whole[0]] if whole else list(points)
+
+
+def _turn(a: QPointF, b: QPointF, c: QPointF) -> float:
+    return (b.x() - a.x()) * (c.y() - a.y()) - (b.y() - a.y()) * (c.x() - a.x())
 
 
 def _ribbon(x: FloatArray, low: FloatArray, high: FloatArray, holds: Any) -> QPainterPath:

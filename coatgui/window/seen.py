@@ -6,7 +6,7 @@ from pathlib import Path
 from typing import Any
 
 from PySide6.QtCore import QSize, Qt, Signal
-from PySide6.QtGui import QHideEvent, QIcon, QKeyEvent, QPixmap, QShowEvent
+from PySide6.QtGui import QHideEvent, QIcon, QKeyEvent, QPainter, QPaintEvent, QPixmap, QShowEvent
 from PySide6.QtWidgets import (
     QComboBox,
     QFileDialog,
@@ -67,7 +67,11 @@ class SeenView(QScrollArea):
         self.about = plain_label("fact_title")
         column.addWidget(self.about)
         self._heading(column, "Ratings of this panel")
-        self.ratings = _list("Ratings of this panel", "Delete takes out the rating that is picked")
+        self.ratings = _list(
+            "Ratings of this panel",
+            "Delete takes out the rating that is picked",
+            "None yet: choose a scale below and type the rating.",
+        )
         column.addWidget(self.ratings, 2)
         self.remove_rating = QPushButton("Remove the rating")
         self.remove_rating.setAccessibleDescription("Take the picked rating out; it can be undone")
@@ -76,7 +80,9 @@ class SeenView(QScrollArea):
         self._form(column)
         self._heading(column, "Photographs of this panel")
         self.pictures = _list(
-            "Photographs of this panel", "Return shows the picked one large, Delete takes it out"
+            "Photographs of this panel",
+            "Return shows the picked one large, Delete takes it out",
+            "None yet: add a JPEG or PNG.",
         )
         self.pictures.setIconSize(SMALL)
         self.pictures.itemActivated.connect(lambda _item: self.show_large())
@@ -88,7 +94,7 @@ class SeenView(QScrollArea):
         self.caption.editingFinished.connect(self._caption_typed)
         column.addWidget(self.caption)
         row = QHBoxLayout()
-        self.add = QPushButton("Add…")
+        self.add = QPushButton("Add a photograph…")
         self.add.setAccessibleDescription("Attach a photograph to the picked reading")
         self.add.clicked.connect(lambda _checked=False: self.ask_photographs())
         self.large = QPushButton("Show large")
@@ -97,7 +103,8 @@ class SeenView(QScrollArea):
         self.remove = QPushButton("Remove")
         self.remove.setAccessibleDescription("Take the picked photograph out; it can be undone")
         self.remove.clicked.connect(lambda _checked=False: self._remove_picture())
-        for button in (self.add, self.large, self.remove):
+        column.addWidget(self.add)
+        for button in (self.large, self.remove):
             row.addWidget(button)
         column.addLayout(row)
         self.ratings.deleted.connect(self._remove_rating)
@@ -348,6 +355,16 @@ class _List(QListWidget):
     """A list in which Delete removes, as it does in the lists of every desktop."""
 
     deleted = Signal()
+    while_empty = ""
+
+    def paintEvent(self, event: QPaintEvent) -> None:
+        super().paintEvent(event)
+        if not self.count():
+            painter = QPainter(self.viewport())
+            painter.setPen(self.palette().placeholderText().color())
+            where = self.viewport().rect().adjusted(4, 4, -4, -4)
+            painter.drawText(where, Qt.TextFlag.TextWordWrap, self.while_empty)
+            painter.end()
 
     def keyPressEvent(self, event: QKeyEvent) -> None:
         if event.key() == Qt.Key.Key_Delete:
@@ -356,11 +373,13 @@ class _List(QListWidget):
             super().keyPressEvent(event)
 
 
-def _list(name: str, description: str) -> _List:
+def _list(name: str, description: str, while_empty: str) -> _List:
     made = _List()
+    made.while_empty = while_empty
     made.setAccessibleName(name)
     made.setAccessibleDescription(description)
     made.setWordWrap(True)
-    made.setMinimumHeight(90)
+    made.setMinimumHeight(110)
+    made.setMinimumWidth(60)
     made.setHorizontalScrollBarPolicy(Qt.ScrollBarPolicy.ScrollBarAlwaysOff)
     return made

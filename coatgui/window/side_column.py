@@ -13,7 +13,7 @@ from PySide6.QtWidgets import (
 )
 
 from coatgui.window.desk import Desk
-from coatgui.window.facts import FactsView, facts, seen_facts
+from coatgui.window.facts import Fact, FactsView, facts, seen_facts
 from coatgui.window.history import HistoryView
 from coatgui.window.origin_view import OriginView
 from coatgui.window.palette import Colours
@@ -101,6 +101,8 @@ class SideColumn(QWidget):
         shown = facts(self.desk.reading_assessment(), self.desk.assessment)
         if campaign is not None and reading is not None:
             shown += seen_facts(campaign, reading)
+        if not shown:
+            shown = [Fact("note", "What is known of a reading stands here once one is picked.")]
         self.facts.show_facts(shown)
         if self.stack.currentIndex() == ORIGIN:
             self.origin.refresh()

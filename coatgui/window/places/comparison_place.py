@@ -76,6 +76,8 @@ def in_words(question: Question) -> str:
 
 class ComparisonPlace(Place):
     noun, question = "Comparison", "Which is better, and are we sure?"
+    needs = "assessment"
+    promise = "Here the formulations will stand side by side, in words first."
     note = "welch"
     has_strip = False
 

@@ -40,6 +40,8 @@ _APART = 1 / 16
 
 class CoursePlace(Place):
     noun, question = "Course", "How is it going?"
+    needs = "assessment"
+    promise = "Here each quantity will run over exposure time, replicates together, water beneath."
     note = "trend"
     leaves_facts = True
 
@@ -165,7 +167,7 @@ class CoursePlace(Place):
         if assessment is None:
             self.explained.setText(self.desk.unjudged_words())
             self.legend.show_names([], self.tone)
-            self.ratings.show_ratings([], [], self._across, self.tone)
+            self.ratings.show_ratings([], [], 0.0, self._across, self.tone)
             return
         self.explained.setText(
             "Thick: mean of the panels with its 95 % band. Thin: each panel. ↑ at least, ↓ at most."
@@ -182,7 +184,10 @@ class CoursePlace(Place):
         self._limits(assessment, code)
         names = [f.formulation for f in assessment.formulations]
         rated = [r for r in assessment.ratings if r.formulation in names]
-        self.ratings.show_ratings(rated, names, self._across, self.tone)
+        longest = max(
+            [r.exposure_h for r in assessment.readings] + [r.exposure_h for r in rated], default=0.0
+        )
+        self.ratings.show_ratings(rated, names, longest, self._across, self.tone)
         self._events = []
         self._ticks(assessment)
         self.show_selection()

@@ -50,6 +50,8 @@ _OVERLAYS = ("This reading alone", "With the panel's other times", "With its rep
 
 class ReadingPlace(Place):
     noun, question = "Reading", "What does this spectrum say?"
+    needs = "readings"
+    promise = "Here one spectrum will be shown with its fit, and as a section through the coating."
     note = "pores_reacting_interface"
 
     def __init__(self, desk: Desk, tone: Colours) -> None:
@@ -70,6 +72,10 @@ class ReadingPlace(Place):
         self.overlay.setAccessibleName("Spectra drawn with this one")
         self.overlay.setAccessibleDescription("Other spectra, fainter the shorter the exposure")
         self.overlay.addItems(list(_OVERLAYS))
+        self.overlay.setMinimumContentsLength(14)
+        self.overlay.setSizeAdjustPolicy(
+            QComboBox.SizeAdjustPolicy.AdjustToMinimumContentsLengthWithIcon
+        )
         self.overlay.currentIndexChanged.connect(self.show_selection)
         self.read_out = plain_label("small")
         self.read_out.setText(_HINT)
@@ -87,8 +93,9 @@ class ReadingPlace(Place):
         under.addWidget(self.band)
         under.addWidget(self.parts)
         under.addWidget(self.tried)
-        under.addWidget(self.read_out, 1)
+        under.addStretch(1)
         left.addLayout(under)
+        left.addWidget(self.read_out)
         left.addWidget(self.beside)
         row.addLayout(left, 1)
         row.addWidget(self._side(tone))
