@@ -36,12 +36,14 @@ from coatgui.assessment.summary import (
     panel_assessment,
 )
 from coatgui.assessment.suspicion import with_suspicions
+from coatgui.circuits import CoatingModel
 from coatgui.fitting import fit_spectra
 from coatgui.progress import Progress, Spread, one_after_another
-from coatgui.quality import check_spectra
+from coatgui.quality import check_spectra, circuit_residuals
 from coatgui.records import Assessment, Campaign, Fit
 
 _USUAL_FREQUENCY_HZ = 0.1
+_CHANGED_MEANWHILE = frozenset({"step", "drift", "departure", "repeat_differs"})
 
 
 def assess(
@@ -116,12 +118,13 @@ def conclude(campaign: Campaign, drawn: Sequence[Drawn], progress: Progress) -> 
     for done, panel in enumerate(campaign.panels):
         progress.at("Drawing conclusions", done, len(campaign.panels))
         draw_readings(by_panel[panel.panel_id], campaign, leads, criteria)
+    own, unusable = own_models(campaign)
+    _look_at_residuals(drawn, campaign, own)
     noise = _noise(campaign, by_panel, watched_hz)
     panel_results = []
     for panel in campaign.panels:
-        own = by_panel[panel.panel_id]
         series = draw_series(
-            own,
+            by_panel[panel.panel_id],
             panel,
             film_facts(panel),
             settings,
@@ -129,7 +132,7 @@ def conclude(campaign: Campaign, drawn: Sequence[Drawn], progress: Progress) -> 
             criteria,
             noise.get(panel.formulation_id),
         )
-        panel_results.append(panel_assessment(panel, names, series, own))
+        panel_results.append(panel_assessment(panel, names, series, by_panel[panel.panel_id]))
     for d in drawn:
         if d.fit is not None:
             d.fit = put_back(d.fit, d.reading.spectrum.frequency_hz, leads)
@@ -146,7 +149,7 @@ def conclude(campaign: Campaign, drawn: Sequence[Drawn], progress: Progress) -> 
     counting = by_formulation([f.formulation for f in formulations], in_order)
     decided = decide(campaign, counting, watched_hz, criteria, panel_results)
     progress.at("Drawing conclusions", len(panels), len(panels))
-    findings = (*campaign_findings(campaign), *own_models(campaign)[1], *decided.findings)
+    findings = (*campaign_findings(campaign), *unusable, *decided.findings)
     return Assessment(
         title=campaign.title,
         readings=in_order,
@@ -167,6 +170,23 @@ def conclude(campaign: Campaign, drawn: Sequence[Drawn], progress: Progress) -> 
         rating_correlations=decided.rating_correlations,
         next_inspection=next_inspection(panel_results, in_order, criteria),
     )
+
+
+def _look_at_residuals(
+    drawn: Sequence[Drawn], campaign: Campaign, own: Sequence[CoatingModel]
+) -> None:
+    """A doubt for readings whose circuit leaves a step or a drift over, where the checks named
+    neither."""
+    fitted = [(d, d.fit) for d in drawn if d.fit is not None]
+    doubts = circuit_residuals(
+        [d.reading.spectrum for d, _ in fitted],
+        [fit for _, fit in fitted],
+        settings=campaign.settings,
+        own_models=own,
+    )
+    for (d, _), doubt in zip(fitted, doubts, strict=True):
+        if doubt is not None and not any(f.code in _CHANGED_MEANWHILE for f in d.findings):
+            d.findings.append(doubt)
 
 
 def _noise(

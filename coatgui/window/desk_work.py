@@ -15,7 +15,6 @@ from coatgui.campaign import (
 )
 from coatgui.intake import DryRun, Standing, propose_folder
 from coatgui.jobs import spread_over_processes
-from coatgui.output import write_json, write_summary, write_workbook
 from coatgui.progress import Progress
 from coatgui.records import Assessment, Campaign, Found
 
@@ -84,6 +83,9 @@ def walk_to(file: CampaignFile, step: int, progress: Progress) -> Change | None:
 
 def export_to(assessment: Assessment, campaign: Campaign, path: Path, progress: Progress) -> Path:
     """Write the workbook, the inspection summary (PDF, HTML) or the JSON, by the ending."""
+    # Late, as above.
+    from coatgui.output import write_json, write_summary, write_workbook
+
     progress.at("Writing the file", 0, 1)
     match path.suffix.lower():
         case ".json":

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 from PySide6.QtCore import QByteArray, QEvent, QSettings, Qt
 from PySide6.QtGui import QAction, QCloseEvent, QDragEnterEvent, QDropEvent, QKeySequence
@@ -31,19 +32,15 @@ from coatgui.window.file_actions import FileActions
 from coatgui.window.help import Help
 from coatgui.window.incoming import Incoming
 from coatgui.window.keeping import Keeping
-from coatgui.window.places.comparison_place import ComparisonPlace
-from coatgui.window.places.course_place import CoursePlace
-from coatgui.window.places.doubts_place import DoubtsPlace
-from coatgui.window.places.map_place import MapPlace
+from coatgui.window.places.in_order import NOUNS, ORDER, Places
 from coatgui.window.places.place import Place
-from coatgui.window.places.reading_place import ReadingPlace
-from coatgui.window.places.settings_place import SettingsPlace
-from coatgui.window.places.summary_place import SummaryPlace
-from coatgui.window.places.water_place import WaterPlace
 from coatgui.window.project_tree import ProjectTree
 from coatgui.window.side_column import SideColumn
 from coatgui.window.welcome import Trouble, Welcome
 from coatgui.window.work_status import WorkStatus
+
+if TYPE_CHECKING:
+    from coatgui.window.dry_run_page import DryRunPage
 
 _UNSAVED = "not saved yet"
 
@@ -63,7 +60,7 @@ class MainWindow(QMainWindow):
         self._actions: list[tuple[Entry, QAction]] = []
         self._shown: CampaignFile | None = None
         # Places that do not show what the desk holds: all of it (True), or only the selection.
-        self._behind: dict[Place, bool] = {}
+        self._behind: dict[int, bool] = {}
         self.trouble = Trouble()
         self.incoming = Incoming(self.desk, self)
         self.files = FileActions(self, self.desk, self.incoming, settings, self.trouble)
@@ -88,7 +85,7 @@ class MainWindow(QMainWindow):
         self.arrivals = Arrivals(
             self.desk, self.incoming, self.files, settings, self.tone, self.pages
         )
-        self.dry_run, self.watching = self.arrivals.page, self.arrivals.watching
+        self.watching = self.arrivals.watching
         self.keeping = Keeping(
             self.desk, self.files, settings, lambda: self.open_place().noun, self.go_to
         )
@@ -159,36 +156,17 @@ class MainWindow(QMainWindow):
         bar.setSpacing(0)
         bar.setAlignment(Qt.AlignmentFlag.AlignLeft)
         self.stack = QStackedWidget()
-        self.places: list[Place] = [
-            kind(self.desk, self.tone)
-            for kind in (
-                MapPlace,
-                ReadingPlace,
-                CoursePlace,
-                WaterPlace,
-                ComparisonPlace,
-                DoubtsPlace,
-                SummaryPlace,
-                SettingsPlace,
-            )
-        ]
-        for place in self.places:
-            if isinstance(place, MapPlace):
-                place.cells.opened.connect(lambda: self.go_to("Reading"))
-            elif isinstance(place, DoubtsPlace):
-                place.opened.connect(lambda: self.go_to("Reading"))
-            elif isinstance(place, SummaryPlace):
-                place.wanted.connect(self.files.write_summary)
+        self.places = Places(self._make_place)
         self.buttons = QButtonGroup(self)
-        for i, place in enumerate(self.places):
-            button = QPushButton(place.noun)
+        for i, (noun, question, _) in enumerate(ORDER):
+            button = QPushButton(noun)
             button.setObjectName("place")
             button.setCheckable(True)
-            button.setAccessibleDescription(place.question)
-            button.setToolTip(place.question)
+            button.setAccessibleDescription(question)
+            button.setToolTip(question)
             self.buttons.addButton(button, i)
             bar.addWidget(button)
-            self.stack.addWidget(place)
+            self.stack.addWidget(self.places.holders[i])
         self.buttons.idClicked.connect(self.go)
         column.addLayout(bar)
         column.addWidget(self.stack, 1)
@@ -203,6 +181,17 @@ class MainWindow(QMainWindow):
         splitter.setStretchFactor(1, 1)
         self.go(0)
         return splitter
+
+    def _make_place(self, kind: type[Place]) -> Place:
+        place = kind(self.desk, self.tone)
+        match place.noun:
+            case "Map":
+                place.cells.opened.connect(lambda: self.go_to("Reading"))  # type: ignore[attr-defined]
+            case "Doubts":
+                place.opened.connect(lambda: self.go_to("Reading"))  # type: ignore[attr-defined]
+            case "Summary":
+                place.wanted.connect(self.files.write_summary)  # type: ignore[attr-defined]
+        return place
 
     # --- following the desk ----------------------------------------------------------------
 
@@ -235,12 +224,14 @@ class MainWindow(QMainWindow):
             }.get(entry.needs, name is not None)
             action.setEnabled(there)
         self.project.refresh()
-        self._behind = dict.fromkeys(self.places, True)
-        for place in self.places:
+        self._behind = dict.fromkeys(range(len(ORDER)), True)
+        doubts = NOUNS.index("Doubts")
+        self._catch_up(self.stack.currentIndex())
+        if file is not None or self.places.is_built(doubts):
             # Doubts are counted beside their place's noun; other places follow when they are seen.
-            if place is self.open_place() or isinstance(place, DoubtsPlace):
-                self._catch_up(place)
-        self._count_doubts()
+            self._catch_up(doubts)
+            found = self.places[doubts].doubts  # type: ignore[attr-defined]
+            self.buttons.button(doubts).setText(f"Doubts  {len(found)}" if found else "Doubts")
         self._show_facts()
 
     def _how_kept(self, file: CampaignFile) -> str:
@@ -248,26 +239,19 @@ class MainWindow(QMainWindow):
             return f"{file.path.name}: read only"
         return f"kept in {file.path.name}" if self.desk.is_saved else _UNSAVED
 
-    def _catch_up(self, place: Place) -> None:
+    def _catch_up(self, number: int) -> None:
         """Show in a place what it has missed: a campaign, or another selection only."""
-        whole = self._behind.pop(place, None)
+        whole = self._behind.pop(number, None)
         if whole:
-            place.show_campaign()
+            self.places[number].show_campaign()
         elif whole is not None:
-            place.show_selection()
-
-    def _count_doubts(self) -> None:
-        """How many wait for an eye stands beside the place's noun."""
-        for number, place in enumerate(self.places):
-            if isinstance(place, DoubtsPlace):
-                count = f"  {len(place.doubts)}" if place.doubts else ""
-                self.buttons.button(number).setText(f"{place.noun}{count}")
+            self.places[number].show_selection()
 
     def _selected(self) -> None:
         self.project.mark(self.desk.selection)
-        for place in self.places:
-            self._behind.setdefault(place, False)
-        self._catch_up(self.open_place())
+        for number in range(len(ORDER)):
+            self._behind.setdefault(number, False)
+        self._catch_up(self.stack.currentIndex())
         self._show_facts()
 
     def _show_facts(self) -> None:
@@ -294,6 +278,10 @@ class MainWindow(QMainWindow):
     def halt_work(self) -> None:
         self.desk.stop()
 
+    @property
+    def dry_run(self) -> DryRunPage:
+        return self.arrivals.page
+
     def open_place(self) -> Place:
         return self.places[self.stack.currentIndex()]
 
@@ -313,8 +301,9 @@ class MainWindow(QMainWindow):
         self.project.add_formulation()
 
     def go(self, place: int) -> None:
+        shown = self.places[place]  # built before it is seen
         self.stack.setCurrentIndex(place)
-        self._catch_up(self.open_place())
+        self._catch_up(place)
         self.buttons.button(place).setChecked(True)
         policy = Qt.FocusPolicy
         for button in self.buttons.buttons():
@@ -322,11 +311,11 @@ class MainWindow(QMainWindow):
             button.setFocusPolicy(policy.StrongFocus if button.isChecked() else policy.ClickFocus)
         # The reading's own place shows the facts where they lie in the coating, and the doubts show
         # their evidence.
-        self.side.make_room(not self.places[place].leaves_facts)
-        self.strip.setVisible(self.places[place].has_strip)
+        self.side.make_room(not shown.leaves_facts)
+        self.strip.setVisible(shown.has_strip)
 
     def go_to(self, noun: str) -> None:
-        self.go(next(i for i, place in enumerate(self.places) if place.noun == noun))
+        self.go(NOUNS.index(noun))
 
     def later(self) -> None:
         self.desk.step(1)
@@ -340,10 +329,10 @@ class MainWindow(QMainWindow):
         application = QApplication.instance()
         if isinstance(application, QApplication):
             palette.apply(application, self.tone)
-        for place in self.places:
+        for place in self.places.built:
             place.paint_in(self.tone)
         self.project.paint_in(self.tone)
-        self.dry_run.paint_in(self.tone)
+        self.arrivals.paint_in(self.tone)
         self.side.paint_in(self.tone)
         self.strip.tone = self.tone
         self.strip.update()

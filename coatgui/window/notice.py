@@ -35,6 +35,7 @@ class Notice(QFrame):
         column.addLayout(row)
         self.particulars = QListWidget()
         self.particulars.setAccessibleName(f"{name}: particulars")
+        self.particulars.setAccessibleDescription("What the sentence above is about, one by one")
         self.particulars.setWordWrap(True)
         column.addWidget(self.particulars)
         self.ways: list[QPushButton] = []

@@ -41,24 +41,24 @@ def test_one_key_opens_the_notes() -> None:
 def test_notes_open_at_what_is_looked_at(sample: MainWindow) -> None:
     assessment = sample.desk.assessment
     assert assessment is not None
-    for go, title in (
-        (sample.go_map, "Modulus at low frequency"),
-        (sample.go_water, "Apparent water uptake"),
-        (sample.go_comparison, "Comparison of formulations"),
-        (sample.go_course, "Trend and projection"),
+    for place, title in (
+        ("Map", "Modulus at low frequency"),
+        ("Water", "Apparent water uptake"),
+        ("Comparison", "Comparison of formulations"),
+        ("Course", "Trend and projection"),
     ):
-        go()
+        sample.go_to(place)
         sample.help.show_notes()
         assert picked(sample).startswith(title)
     closed = next(r for r in assessment.readings if r.fit and r.fit.model == "pores_to_metal")
     sample.desk.select(closed.reading_id)
-    sample.go_reading()
+    sample.go_to("Reading")
     sample.help.show_notes()
     assert picked(sample) == "Pores reaching the metal"
 
 
 def test_a_doubt_has_its_note(sample: MainWindow) -> None:
-    sample.go_doubts()
+    sample.go_to("Doubts")
     place = sample.open_place()
     row = next(
         i for i, d in enumerate(place.doubts) if d.finding and d.finding.code == "wild_point"

@@ -319,13 +319,13 @@ def test_an_unforeseen_error_writes_a_report_and_the_window_goes_on(
 def test_so_does_one_in_the_background(
     watched: Path, sample: MainWindow, wait: Wait, monkeypatch: pytest.MonkeyPatch, tmp_path: Path
 ) -> None:
-    from coatgui.window import desk_work
+    from coatgui import output
 
     def fail(*_: object) -> None:
         raise ZeroDivisionError("4711 ohm")
 
     wait(settled(sample))
-    monkeypatch.setattr(desk_work, "write_workbook", fail)
+    monkeypatch.setattr(output, "write_workbook", fail)
     sample.desk.export(tmp_path / "w.xlsx")
     wait(lambda: sample.desk.job is None)
     assert "ZeroDivisionError" in sample.trouble.words.text()
