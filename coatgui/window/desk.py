@@ -38,7 +38,8 @@ class Desk(QObject):
     is doubtful, `told` with a sentence for the status line, `failed` with one that a person must
     see: something that was asked for was not done. `edited` says what was done and what it changed,
     `closing` that the file is about to be put away, `unkept` that a disk failed, `broken` that a
-    campaign file is damaged, `recovered` what was saved from the file of that name."""
+    campaign file is damaged, `recovered` what was saved from the file of that name,
+    `files_wanted` that a person wants to bring in files."""
 
     campaign_changed = Signal()
     assessed = Signal()
@@ -52,6 +53,7 @@ class Desk(QObject):
     unkept = Signal(str)
     broken = Signal(Path, str)
     recovered = Signal(object, str)
+    files_wanted = Signal()
 
     def __init__(self, parent: QObject | None = None) -> None:
         super().__init__(parent)
@@ -82,6 +84,11 @@ class Desk(QObject):
     @property
     def is_saved(self) -> bool:
         return self.file is None or self.unsaved_folder is None
+
+    @property
+    def is_halted(self) -> bool:
+        """Whether a person stopped the judging."""
+        return self._halted
 
     def reading(self) -> Reading | None:
         """The picked reading."""

@@ -146,6 +146,7 @@ class MainWindow(QMainWindow):
         splitter = QSplitter()
         splitter.setHandleWidth(1)
         self.project = ProjectTree(self.desk, self.tone)
+        self.project.setMinimumWidth(190)
         splitter.addWidget(self.project)
         middle = QWidget()
         column = QVBoxLayout(middle)
