@@ -13,8 +13,9 @@ from coatgui.intake.decode import encoding_of, lines_of
 from coatgui.intake.errors import NoSpectrum, Unreadable
 from coatgui.intake.labels import label_in
 from coatgui.intake.layout import Section, sections_of
-from coatgui.intake.segments import segment_rows, segment_text
+from coatgui.intake.segments import segment_rows
 from coatgui.intake.spectra import Origin, Piece, pieces, pieces_as_told, with_parts
+from coatgui.intake.text_rows import segment_text
 from coatgui.intake.workbook import Sheet, is_workbook, read_workbook
 from coatgui.records import Column, Dialect, FoundReading, Source
 
@@ -35,7 +36,7 @@ def read_spectra(data: bytes, name: str = "") -> list[Piece]:
         return _of_workbook(data)
     encoding = encoding_of(data)
     cut = find_cut(_sample(lines_of(data, encoding)))
-    sections, after = sections_of(segment_text(lines_of(data, encoding), cut))
+    sections, after = sections_of(segment_text(lines_of(data, encoding), cut), cut.pairs)
     if not sections:
         raise NoSpectrum(NOTHING)
     origin = Origin(encoding, cut.delimiter, cut.style.decimal_sign)
@@ -101,7 +102,7 @@ def _of_sheet(sheet: Sheet) -> list[Piece]:
     origin = Origin(WORKBOOK, sheet.title, sheet.style.decimal_sign)
     nothing = NoSpectrum(NOTHING)
     for rows in sheet.tables():
-        sections, after = sections_of(segment_rows(rows, sheet.style))
+        sections, after = sections_of(segment_rows(rows, sheet.style), sheet.pairs)
         try:
             found += pieces(sections, after, origin)
         except NoSpectrum as problem:
@@ -148,14 +149,14 @@ def _sections_as_told(data: bytes, dialect: Dialect) -> Iterator[list[Section]]:
         if sheet is None:
             raise Unreadable(f"The workbook has no sheet '{dialect.delimiter[:40]}'.")
         for rows in sheet.tables():
-            yield sections_of(segment_rows(rows, sheet.style))[0]
+            yield sections_of(segment_rows(rows, sheet.style), sheet.pairs)[0]
         return
     try:
         codecs.lookup(dialect.encoding)
         cut = find_cut(
             _sample(lines_of(data, dialect.encoding)), dialect.delimiter, dialect.decimal_sign
         )
-        yield sections_of(segment_text(lines_of(data, dialect.encoding), cut))[0]
+        yield sections_of(segment_text(lines_of(data, dialect.encoding), cut), cut.pairs)[0]
     except (LookupError, UnicodeError):
         raise Unreadable(
             f"The file cannot be read as '{dialect.encoding[:20]}': choose another encoding."
@@ -172,12 +173,12 @@ def first_guess(data: bytes) -> Dialect:
         if sheet is None:
             raise NoSpectrum(NOTHING)
         encoding, delimiter, sign = WORKBOOK, sheet.title, sheet.style.decimal_sign
-        sections = sections_of(segment_rows(tables[0], sheet.style))[0]
+        sections = sections_of(segment_rows(tables[0], sheet.style), sheet.pairs)[0]
     else:
         encoding = encoding_of(data)
         cut = find_cut(_sample(lines_of(data, encoding)))
         delimiter, sign = cut.delimiter, cut.style.decimal_sign
-        sections = sections_of(segment_text(lines_of(data, encoding), cut))[0]
+        sections = sections_of(segment_text(lines_of(data, encoding), cut), cut.pairs)[0]
     if not sections:
         raise NoSpectrum(NOTHING)
     section = sections[0]

@@ -138,7 +138,8 @@ def _refuse_broken_end(after: Sequence[TextRow], extracts: Sequence[Extract]) ->
         float(str(first.cells[0]).replace(",", ".")) if first.cells else None
     except ValueError:
         return
-    if extracts and first.cells and first.line == int(extracts[-1].lines[-1]) + 1:
+    lines = extracts[-1].lines
+    if first.cells and lines.size and first.line == int(lines[-1]) + 1:
         raise Unreadable(
             f"Line {first.line} has {len(first.cells)} cells where the table has more: the file "
             "may be cut short; export it again."

@@ -36,6 +36,10 @@ ROLES = {
     "admittance_phase": "phase of Y",
     "capacitance_real": "C′",
     "capacitance_imaginary": "C″",
+    "parallel_resistance": "R parallel",
+    "parallel_capacitance": "C parallel",
+    "series_resistance": "R in series",
+    "series_capacitance": "C in series",
 }
 _UNITS = {
     "frequency": "Hz",
