@@ -30,7 +30,8 @@ class ListedReading:
     remark: str
 
 
-def _rows(data: bytes, name: str, wanted: str) -> list[dict[str, str]]:
+def rows_of(data: bytes, name: str, wanted: str) -> list[dict[str, str]]:
+    """Rows by heading, of which one must be `wanted`. Raises Unreadable."""
     text, _ = decode(data)
     lines = [line for line in text.splitlines() if line.strip()]
     if not lines:
@@ -52,7 +53,8 @@ def _rows(data: bytes, name: str, wanted: str) -> list[dict[str, str]]:
     return result
 
 
-def _number(row: dict[str, str], name: str, line: int, *, positive: bool = False) -> float | None:
+def number_in(row: dict[str, str], name: str, line: int, *, positive: bool = False) -> float | None:
+    """The number under a heading, None where the cell is empty. Raises Unreadable."""
     text = row.get(name, "")
     if not text:
         return None
@@ -67,12 +69,12 @@ def _number(row: dict[str, str], name: str, line: int, *, positive: bool = False
 
 def read_panels(data: bytes, name: str) -> tuple[FoundPanel, ...]:
     """The rows of a panel list. Raises Unreadable with the line."""
-    return panels_of(_rows(data, name, "panel"))
+    return panels_of(rows_of(data, name, "panel"))
 
 
 def read_readings(data: bytes, name: str) -> dict[tuple[str, str], ListedReading]:
     """The rows of a readings list by file and part. Raises Unreadable with the line."""
-    return readings_of(_rows(data, name, "file"))
+    return readings_of(rows_of(data, name, "file"))
 
 
 def panels_of(rows: Iterable[dict[str, str]]) -> tuple[FoundPanel, ...]:
@@ -87,11 +89,11 @@ def panels_of(rows: Iterable[dict[str, str]]) -> tuple[FoundPanel, ...]:
         panels[row["panel"]] = FoundPanel(
             panel=row["panel"],
             formulation=row.get("formulation", ""),
-            area_cm2=_number(row, "area_cm2", line, positive=True),
-            thickness_um=_number(row, "thickness_um", line, positive=True),
+            area_cm2=number_in(row, "area_cm2", line, positive=True),
+            thickness_um=number_in(row, "thickness_um", line, positive=True),
             substrate=row.get("substrate", ""),
             electrolyte=row.get("electrolyte", ""),
-            temperature_c=_number(row, "temperature_c", line),
+            temperature_c=number_in(row, "temperature_c", line),
             regime=row.get("regime", ""),
             remark=row.get("remark", ""),
             notes=tuple((k, v) for k, v in row.items() if k not in known and v),
@@ -106,7 +108,7 @@ def readings_of(rows: Iterable[dict[str, str]]) -> dict[tuple[str, str], ListedR
         file = row["file"].replace("\\", "/")
         if not file:
             raise Unreadable(f"Line {line} names no file.")
-        numbers = {field: _number(row, field, line) for field in _READING_NUMBERS}
+        numbers = {field: number_in(row, field, line) for field in _READING_NUMBERS}
         if (numbers["exposure_h"] or 0.0) < 0:
             raise Unreadable(f"Line {line}: exposure_h is below zero.")
         part = row.get("part", "")

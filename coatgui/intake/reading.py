@@ -163,7 +163,7 @@ def _sections_as_told(data: bytes, dialect: Dialect) -> Iterator[list[Section]]:
         ) from None
 
 
-def first_guess(data: bytes) -> Dialect:
+def first_guess(data: bytes, decimal_sign: str = "") -> Dialect:
     """How the first table of a file would be cut, for a person to say what its columns are where
     that is not understood: line 0 for every table, "other" for a column of unknown meaning. Raises
     Unreadable where there is no table of numbers."""
@@ -176,7 +176,7 @@ def first_guess(data: bytes) -> Dialect:
         sections = sections_of(segment_rows(tables[0], sheet.style), sheet.pairs)[0]
     else:
         encoding = encoding_of(data)
-        cut = find_cut(_sample(lines_of(data, encoding)))
+        cut = find_cut(_sample(lines_of(data, encoding)), "", decimal_sign)
         delimiter, sign = cut.delimiter, cut.style.decimal_sign
         sections = sections_of(segment_text(lines_of(data, encoding), cut), cut.pairs)[0]
     if not sections:
@@ -186,14 +186,11 @@ def first_guess(data: bytes) -> Dialect:
     for place in range(section.block.width):
         heading = section.headings[place] if place < len(section.headings) else ""
         said = section.meanings[place] if place < len(section.meanings) else None
-        unit = said.unit if said is not None else None
-        columns.append(
-            Column(
-                place,
-                heading,
-                said.role if said is not None else "other",
-                unit.written if unit is not None else "",
-                unit.factor if unit is not None else 1.0,
-            )
-        )
+        if said is None:
+            columns.append(Column(place, heading, "other", ""))
+            continue
+        role = f"log_{said.role}" if said.logarithm else said.role
+        factor = said.unit.factor if said.unit is not None else 1.0
+        written = said.unit.written if said.unit is not None else ""
+        columns.append(Column(place, heading, role, written, -factor if said.negative else factor))
     return Dialect(encoding, delimiter, sign, 0, tuple(columns))
