@@ -43,6 +43,8 @@ def kind_of(role: str) -> str:
         return "angle"
     if role.startswith(("admittance", "capacitance")):
         return role.split("_")[0]
+    if role.startswith(("parallel", "series")):
+        return "capacitance" if role.endswith("capacitance") else "impedance"
     return role if role in ("frequency", "angular_frequency", "time") else ""
 
 

@@ -103,8 +103,9 @@ class Column:
     """One column of a table as it was understood.
 
     `role` is one of frequency, angular_frequency, real, imaginary, modulus, phase,
-    admittance_real, …_imaginary, …_modulus, …_phase, capacitance_real, …_imaginary, time, panel,
-    date, other, or one of them with "log_" before it for decimal logarithms. `factor` multiplies
+    admittance_real, …_imaginary, …_modulus, …_phase, capacitance_real, …_imaginary,
+    parallel_resistance, …_capacitance, series_resistance, …_capacitance, time, panel, date, other,
+    or one of them with "log_" before it for decimal logarithms. `factor` multiplies
     the written number to give Hz, rad/s, Ω, S, F, rad or h, per specimen. For imaginary parts and
     phases, a negative factor says that the file counts them the other way round.
     """
