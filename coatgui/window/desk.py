@@ -369,13 +369,10 @@ class Desk(QObject):
             self.told.emit(f"Written: {where.name}")
 
         assessment, campaign = self.assessment, self.campaign
-        # Late: the window is there sooner.
-        from coatgui.output import write_json, write_summary, write_workbook
-
-        ways: dict[str, tuple[Callable[..., None], tuple[Any, ...]]] = {
-            ".json": (write_json, (assessment,)),
-            ".pdf": (write_summary, (assessment, campaign)),
-            ".html": (write_summary, (assessment, campaign)),
+        ways: dict[str, tuple[str, tuple[Any, ...]]] = {
+            ".json": ("write_json", (assessment,)),
+            ".pdf": ("write_summary", (assessment, campaign)),
+            ".html": ("write_summary", (assessment, campaign)),
         }
-        write, arguments = ways.get(path.suffix.lower(), (write_workbook, (assessment, campaign)))
+        write, arguments = ways.get(path.suffix.lower(), ("write_workbook", (assessment, campaign)))
         self._start(written, work.export_to, write, arguments, path)

@@ -3,7 +3,7 @@ and where it is stopped."""
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from importlib import import_module
 from pathlib import Path
 from typing import Any
 
@@ -61,9 +61,9 @@ def walk_to(file: CampaignFile, step: int, progress: Progress) -> Change | None:
     return Change(frozenset(kinds), name) if kinds else None
 
 
-def export_to(
-    write: Callable[..., None], arguments: tuple[Any, ...], path: Path, progress: Progress
-) -> Path:
+def export_to(write: str, arguments: tuple[Any, ...], path: Path, progress: Progress) -> Path:
+    """`write` is the name of a function of `coatgui.output`, which is loaded here: that takes
+    longer than the window may wait."""
     progress.at("Writing the file", 0, 1)
-    write(*arguments, path)
+    getattr(import_module("coatgui.output"), write)(*arguments, path)
     return path
