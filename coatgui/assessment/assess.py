@@ -18,7 +18,7 @@ import numpy as np
 from coatgui.assessment.cache import ResultCache, fits_from_bytes, fits_to_bytes, series_key
 from coatgui.assessment.cautions import cautions
 from coatgui.assessment.courses import inspections
-from coatgui.assessment.decide import decide
+from coatgui.assessment.decide import by_formulation, decide
 from coatgui.assessment.drawn import Drawn
 from coatgui.assessment.events import replicate_noise
 from coatgui.assessment.film import film_facts
@@ -36,12 +36,14 @@ from coatgui.assessment.summary import (
     panel_assessment,
 )
 from coatgui.assessment.suspicion import with_suspicions
+from coatgui.circuits import CoatingModel
 from coatgui.fitting import fit_spectra
 from coatgui.progress import Progress, Spread, one_after_another
-from coatgui.quality import check_spectra
-from coatgui.records import Assessment, Campaign, Fit, Questions
+from coatgui.quality import check_spectra, circuit_residuals
+from coatgui.records import Assessment, Campaign, Fit
 
 _USUAL_FREQUENCY_HZ = 0.1
+_CHANGED_MEANWHILE = frozenset({"step", "drift", "departure", "repeat_differs"})
 
 
 def assess(
@@ -50,13 +52,11 @@ def assess(
     progress: Progress | None = None,
     spread: Spread = one_after_another,
     cache: ResultCache | None = None,
-    questions: Questions | None = None,
 ) -> Assessment:
-    """All that is concluded from a campaign, and the answers to further questions.
+    """All that is concluded from a campaign, and the answers to what its settings ask.
 
     Raises Cancelled at a step of `progress` where the result is no longer wanted; nothing is kept
-    then. With a `cache`, fits of panels in which nothing changed are taken from it. Raises
-    ValueError, in a sentence that can be shown, for a question that cannot be understood.
+    then. With a `cache`, fits of panels in which nothing changed are taken from it.
     """
     progress = progress or Progress()
     settings = campaign.settings
@@ -85,7 +85,7 @@ def assess(
     take_away(drawn, leads_of(campaign))
     for d, fit in zip(drawn, _fits(drawn, campaign, progress, spread, cache), strict=True):
         d.fit = fit
-    return conclude(campaign, drawn, progress, questions or Questions())
+    return conclude(campaign, drawn, progress)
 
 
 @contextmanager
@@ -103,9 +103,7 @@ def _without_collection() -> Iterator[None]:
 
 
 @_without_collection()
-def conclude(
-    campaign: Campaign, drawn: Sequence[Drawn], progress: Progress, questions: Questions
-) -> Assessment:
+def conclude(campaign: Campaign, drawn: Sequence[Drawn], progress: Progress) -> Assessment:
     """The conclusions from readings that are checked and fitted, sorted by panel in the campaign's
     order and exposure time."""
     settings = campaign.settings
@@ -120,20 +118,21 @@ def conclude(
     for done, panel in enumerate(campaign.panels):
         progress.at("Drawing conclusions", done, len(campaign.panels))
         draw_readings(by_panel[panel.panel_id], campaign, leads, criteria)
+    own, unusable = own_models(campaign)
+    _look_at_residuals(drawn, campaign, own)
     noise = _noise(campaign, by_panel, watched_hz)
     panel_results = []
     for panel in campaign.panels:
-        own = by_panel[panel.panel_id]
         series = draw_series(
-            own,
+            by_panel[panel.panel_id],
             panel,
             film_facts(panel),
-            settings.capacitance_frequency_hz,
+            settings,
             watched_hz,
             criteria,
             noise.get(panel.formulation_id),
         )
-        panel_results.append(panel_assessment(panel, names, series, own))
+        panel_results.append(panel_assessment(panel, names, series, by_panel[panel.panel_id]))
     for d in drawn:
         if d.fit is not None:
             d.fit = put_back(d.fit, d.reading.spectrum.frequency_hz, leads)
@@ -147,15 +146,10 @@ def conclude(
         for f in campaign.formulations
         if any(panel.formulation_id == f.formulation_id for panel in campaign.panels)
     )
-    by_formulation = {
-        f.formulation: [r for r in in_order if r.formulation == f.formulation] for f in formulations
-    }
-    counting = {
-        name: those for name, those in by_formulation.items() if any(r.counts for r in those)
-    }
-    decided = decide(counting, watched_hz, criteria, questions, panel_results)
+    counting = by_formulation([f.formulation for f in formulations], in_order)
+    decided = decide(campaign, counting, watched_hz, criteria, panel_results)
     progress.at("Drawing conclusions", len(panels), len(panels))
-    findings = (*campaign_findings(campaign), *own_models(campaign)[1])
+    findings = (*campaign_findings(campaign), *unusable, *decided.findings)
     return Assessment(
         title=campaign.title,
         readings=in_order,
@@ -176,6 +170,23 @@ def conclude(
         rating_correlations=decided.rating_correlations,
         next_inspection=next_inspection(panel_results, in_order, criteria),
     )
+
+
+def _look_at_residuals(
+    drawn: Sequence[Drawn], campaign: Campaign, own: Sequence[CoatingModel]
+) -> None:
+    """A doubt for readings whose circuit leaves a step or a drift over, where the checks named
+    neither."""
+    fitted = [(d, d.fit) for d in drawn if d.fit is not None]
+    doubts = circuit_residuals(
+        [d.reading.spectrum for d, _ in fitted],
+        [fit for _, fit in fitted],
+        settings=campaign.settings,
+        own_models=own,
+    )
+    for (d, _), doubt in zip(fitted, doubts, strict=True):
+        if doubt is not None and not any(f.code in _CHANGED_MEANWHILE for f in d.findings):
+            d.findings.append(doubt)
 
 
 def _noise(

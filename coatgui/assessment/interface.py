@@ -25,7 +25,6 @@ STP, 1993) and can differ by decades, so their ends are given as a bracket.
 from __future__ import annotations
 
 import math
-import re
 from collections.abc import Sequence
 from functools import cache
 
@@ -33,9 +32,10 @@ import numpy as np
 
 from coatgui.assessment.mixing import VACUUM_F_PER_CM
 from coatgui.assessment.modulus import Grid
+from coatgui.assessment.presets import recognised
 from coatgui.assessment.rules import table
 from coatgui.assessment.words import counted, hertz, power_of_ten
-from coatgui.records import ActiveArea, Bound, Breakpoint, Quantity
+from coatgui.records import ActiveArea, Bound, Breakpoint, Electrolyte, Quantity
 
 _CM_PER_UM = 1e-4
 
@@ -107,14 +107,15 @@ def _bare_metal() -> tuple[float, float]:
 
 
 @cache
-def pore_resistivity(electrolyte: str) -> tuple[float | None, str]:
+def pore_resistivity(
+    electrolyte: str, own: tuple[Electrolyte, ...] = ()
+) -> tuple[float | None, str]:
     """Resistivity of the panel's electrolyte in Ω cm and its name; None where it is known that
-    there is none to use. An electrolyte that is not recognised gets the usual one."""
-    words = set(re.findall(r"[0-9.]+|[^\W\d_]+", electrolyte.lower().replace(",", ".")))
-    for entry in table("electrolytes")["electrolyte"]:
-        if any(words.issuperset(needed) for needed in entry["any_of"]):
-            value = entry.get("resistivity_ohm_cm")
-            return (None if value is None else float(value)), str(entry["name"])
+    there is none to use. An electrolyte that neither the campaign nor the program recognises gets
+    the usual one."""
+    known = recognised(electrolyte, own)
+    if known is not None:
+        return known.resistivity_ohm_cm, known.name
     usual = float(table("interface")["default_resistivity"]["value"])
     return usual, f"{usual:g} Ω cm assumed"
 
@@ -126,11 +127,12 @@ def active_area(
     thickness_um: float | None,
     permittivity: float | None,
     electrolyte: str,
+    own: tuple[Electrolyte, ...] = (),
 ) -> ActiveArea | None:
     """Active share of the area. Quantities per cm²; routes that lack what they need are left out,
     and None where none is left. Shares are between 0 and 1; a route that gives more than the whole
-    area has failed and is said so."""
-    resistivity, named = pore_resistivity(electrolyte)
+    area has failed and is said so. `own` are the campaign's electrolytes."""
+    resistivity, named = pore_resistivity(electrolyte, own)
     routes: list[tuple[str, Quantity]] = []
     measured = None if found is None or found.valid is False else found.measured_hz
     if measured is not None and permittivity and resistivity:

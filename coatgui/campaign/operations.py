@@ -69,6 +69,11 @@ _WORDS = {
     "input_capacitance_f": "capacitance of the instrument's input",
     "take_leads_away": "correction for the leads",
     "own_models": "coating models",
+    "limits": "limits",
+    "comparisons": "comparisons",
+    "projections": "projections",
+    "electrolytes": "electrolytes",
+    "regimes": "exposure regimes",
 }
 
 # ---------------------------------------------------------------------------------------------
@@ -149,10 +154,18 @@ def add_formulation(campaign: Campaign, name: str, remark: str = "") -> Operatio
 
 
 def rename_formulation(campaign: Campaign, formulation_id: str, name: str) -> Operation:
+    """A comparison that takes it as its reference goes with the new name."""
     formulation = formulation_of(campaign, formulation_id)
     changed = replace(formulation, name=name.strip())
-    name = f"Rename formulation {formulation.name} to {changed.name}"
-    return replacing(name, campaign, [(formulation, changed)])
+    after = replace(campaign, formulations=swap(campaign.formulations, [(formulation, changed)]))
+    asked = campaign.settings.comparisons
+    if any(question.reference == formulation.name for question in asked):
+        renamed = tuple(
+            replace(q, reference=changed.name) if q.reference == formulation.name else q
+            for q in asked
+        )
+        after = replace(after, settings=replace(campaign.settings, comparisons=renamed))
+    return operation(f"Rename formulation {formulation.name} to {changed.name}", campaign, after)
 
 
 def edit_formulation_remark(campaign: Campaign, formulation_id: str, remark: str) -> Operation:
@@ -192,6 +205,16 @@ def edit_panel(campaign: Campaign, panel_id: str, **fields: Any) -> Operation:
     panel = panel_of(campaign, panel_id)
     changed, words = _with(panel, fields, ("panel_id",))
     return replacing(f"Change {words} of panel {panel.name}", campaign, [(panel, changed)])
+
+
+def edit_panels(campaign: Campaign, panel_ids: Iterable[str], **fields: Any) -> Operation:
+    """Change the same fields of several panels, such as those an exposure regime fills in."""
+    chosen = [panel_of(campaign, panel_id) for panel_id in dict.fromkeys(panel_ids)]
+    if not chosen:
+        raise OperationRefused("Choose at least one panel to change.")
+    changed = [(panel, _with(panel, fields, ("panel_id", "name"))[0]) for panel in chosen]
+    words = _listed([_WORDS.get(name, name) for name in fields])
+    return replacing(f"Change {words} of {_count(len(chosen), 'panel')}", campaign, changed)
 
 
 def move_panel(campaign: Campaign, panel_id: str, formulation_id: str) -> Operation:

@@ -13,8 +13,8 @@ from dataclasses import dataclass, replace
 from operator import itemgetter
 from typing import Any
 
-from coatgui.campaign import rows, rows_seen, seal
-from coatgui.campaign.errors import CampaignFileError
+from coatgui.campaign import cells, rows, rows_seen, seal
+from coatgui.campaign.errors import CampaignDamaged
 from coatgui.campaign.schema import KEYS, ORDERED
 from coatgui.records import Campaign, Spectrum
 
@@ -36,7 +36,7 @@ class Snapshot:
     """`campaign` is the file's content as of the last `adopt`; `total` the sum of the parts of its
     rows as they were first read, see `seal`.
 
-    The connection must give rows as `sqlite3.Row`. Raises CampaignFileError where something
+    The connection must give rows as `sqlite3.Row`. Raises CampaignDamaged where something
     cannot be read.
     """
 
@@ -137,7 +137,7 @@ class Snapshot:
         """The fields of `Campaign` that come from the tables of one row each."""
         campaign, settings, lead = map(self._only, ("campaign", "settings", "open_lead"))
         if campaign is None or settings is None:
-            raise CampaignFileError(
+            raise CampaignDamaged(
                 "This campaign file is damaged: the campaign's title or settings are missing."
             )
         open_lead = source = None
@@ -156,22 +156,22 @@ class Snapshot:
                 "open_lead": open_lead,
                 "open_lead_source": source,
             }
-        except rows.UNREADABLE as problem:
-            raise CampaignFileError(
+        except cells.UNREADABLE as problem:
+            raise CampaignDamaged(
                 "This campaign file is damaged: its settings or open-lead run cannot be read."
             ) from problem
 
     def _only(self, table: str) -> Any:
         found = self._connection.execute(f"SELECT * FROM {table} LIMIT 2").fetchall()
         if len(found) > 1:
-            raise CampaignFileError(
+            raise CampaignDamaged(
                 f"This campaign file is damaged: the table '{table}' holds more than one row."
             )
         return found[0] if found else None
 
 
 def record_of(table: str, row: Any, spectra: Mapping[str, Spectrum]) -> Any:
-    """The record of a row of one of the ordered tables. Raises CampaignFileError."""
+    """The record of a row of one of the ordered tables. Raises CampaignDamaged."""
     try:
         if not isinstance(row["place"], int):
             raise TypeError("A place must be a whole number.")
@@ -186,8 +186,8 @@ def record_of(table: str, row: Any, spectra: Mapping[str, Spectrum]) -> Any:
         if table == "photographs":
             return rows_seen.photograph_of(row)
         return rows.refusal_of(row)
-    except rows.UNREADABLE as problem:
-        raise CampaignFileError(
+    except cells.UNREADABLE as problem:
+        raise CampaignDamaged(
             f"This campaign file is damaged: row {row[KEYS[table]]} of {table} cannot be read."
         ) from problem
 
@@ -196,7 +196,7 @@ def read_spectra(
     connection: sqlite3.Connection, spectrum_id: str | None = None
 ) -> dict[str, Spectrum]:
     """The named spectrum, or all that readings and the open-lead run refer to, by id. Raises
-    CampaignFileError where one cannot be read or is not what its id says."""
+    CampaignDamaged where one cannot be read or is not what its id says."""
     columns = "SELECT spectrum_id, frequency_hz, real_ohm, imaginary_ohm FROM spectra"
     if spectrum_id is not None:
         found = connection.execute(f"{columns} WHERE spectrum_id = ?", (spectrum_id,))
@@ -207,8 +207,8 @@ def read_spectra(
         if not all(spectrum.content_key() == key for key, spectrum in spectra.items()):
             raise ValueError("The numbers are not those that were kept.")
         return spectra
-    except rows.UNREADABLE as problem:
+    except cells.UNREADABLE as problem:
         which = "one of its spectra" if spectrum_id is None else f"spectrum {spectrum_id}"
-        raise CampaignFileError(
+        raise CampaignDamaged(
             f"This campaign file is damaged: {which} cannot be read, or was altered."
         ) from problem

@@ -51,13 +51,14 @@ from coatgui.records.measured import (
     Source,
     Spectrum,
 )
+from coatgui.records.presets import Electrolyte, Regime
 from coatgui.records.questions import (
+    QUANTITIES,
     Judge,
     Limit,
     Method,
     ProjectionWanted,
     Question,
-    Questions,
     Side,
 )
 from coatgui.records.results import (
@@ -84,6 +85,7 @@ from coatgui.records.results import (
 )
 
 __all__ = [
+    "QUANTITIES",
     "ActiveArea",
     "Assessment",
     "BoolArray",
@@ -99,6 +101,7 @@ __all__ = [
     "Criterion",
     "CurveStep",
     "Dialect",
+    "Electrolyte",
     "Event",
     "Finding",
     "Fit",
@@ -127,7 +130,6 @@ __all__ = [
     "ProjectionWanted",
     "Quantity",
     "Question",
-    "Questions",
     "Rank",
     "Rating",
     "RatingCorrelation",
@@ -135,6 +137,7 @@ __all__ = [
     "Reading",
     "ReadingAssessment",
     "Refusal",
+    "Regime",
     "Settings",
     "Severity",
     "Side",

@@ -6,6 +6,8 @@ from collections.abc import Iterable
 from dataclasses import dataclass
 
 from coatgui.records.measured import Refusal, Source, Spectrum
+from coatgui.records.presets import Electrolyte, Regime
+from coatgui.records.questions import Limit, ProjectionWanted, Question
 
 
 @dataclass(frozen=True, slots=True)
@@ -70,7 +72,9 @@ class Settings:
     `resources/checks.toml`, by name. `input_resistance_ohm` and `input_capacitance_f` are what the
     instrument's maker states for its input; `take_leads_away` corrects every spectrum for the open
     leads or that input. `own_models` are coating models as JSON texts, in the form of
-    `resources/models.toml`."""
+    `resources/models.toml`. `limits` on any quantity stand beside `criteria`; `comparisons` and
+    `projections` are what is asked beyond the usual. `electrolytes` and `regimes` stand beside the
+    program's own or, under the same id, in place of them."""
 
     temperature_c: float = 25.0
     modulus_frequencies_hz: tuple[float, ...] = (0.1, 0.01)
@@ -82,6 +86,11 @@ class Settings:
     input_capacitance_f: float | None = None
     take_leads_away: bool = False
     own_models: tuple[str, ...] = ()
+    limits: tuple[Limit, ...] = ()
+    comparisons: tuple[Question, ...] = ()
+    projections: tuple[ProjectionWanted, ...] = ()
+    electrolytes: tuple[Electrolyte, ...] = ()
+    regimes: tuple[Regime, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)

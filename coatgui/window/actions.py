@@ -41,6 +41,10 @@ ACTIONS = (
           "write_data", "campaign"),
     Entry("Campaign", "Save the plot…", "Ctrl+Shift+P", "As SVG or PNG, on white", "save_picture",
           "campaign"),
+    Entry("Campaign", "Keep copies in a folder…", "", "Copies are made as the work goes on, and "
+          "kept by their age", "choose_copies_folder"),
+    Entry("Campaign", "Keep copies beside the campaign", "", "In a folder named after it",
+          "copies_beside"),
     Entry("Campaign", "Judge the readings again", "F5", "Check and fit what has changed",
           "judge_again", "campaign"),
     Entry("Campaign", "Stop the work under way", "Esc", "Nothing is left half-written",
@@ -80,8 +84,12 @@ ACTIONS = (
           "campaign"),
     Entry("View", "Where does this number come from?", "Ctrl+H", "From the file to the number",
           "show_origin", "campaign"),
+    Entry("View", "Ratings and photographs", "Ctrl+R", "What was seen on this panel", "show_seen",
+          "campaign"),
     Entry("View", "History", "Ctrl+Shift+H", "What was done, by whom and when", "show_history",
           "campaign"),
     Entry("View", "Light or dark", "Ctrl+L", "Change between light and dark colours", "turn_tone"),
-    Entry("Help", "Cautions", "F1", "What the results do not say", "show_cautions"),
+    Entry("Help", "Method notes", "F1", "What each number, circuit, check and test means, and the "
+          "terms of the trade", "show_notes"),
+    Entry("Help", "Cautions", "Shift+F1", "What the results do not say", "show_cautions"),
 )  # fmt: skip

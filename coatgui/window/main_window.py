@@ -6,7 +6,7 @@ from collections.abc import Callable
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-from PySide6.QtCore import QSettings, Qt, QTimer
+from PySide6.QtCore import QByteArray, QEvent, QSettings, Qt, QTimer
 from PySide6.QtGui import QAction, QCloseEvent, QDragEnterEvent, QDropEvent, QKeySequence
 from PySide6.QtWidgets import (
     QApplication,
@@ -25,12 +25,13 @@ from coatgui.campaign import CampaignFile
 from coatgui.window import palette
 from coatgui.window.actions import ACTIONS, Entry
 from coatgui.window.arrivals import PROPOSALS, WELCOME, WORK, Arrivals
-from coatgui.window.asking import say_plainly
 from coatgui.window.desk import Desk
 from coatgui.window.exposure_strip import ExposureStrip
 from coatgui.window.figure_actions import FigureActions
 from coatgui.window.file_actions import FileActions
+from coatgui.window.help import Help
 from coatgui.window.incoming import Incoming
+from coatgui.window.keeping import Keeping
 from coatgui.window.places.in_order import NOUNS, ORDER, Places
 from coatgui.window.places.place import Place
 from coatgui.window.project_tree import ProjectTree
@@ -54,6 +55,9 @@ class MainWindow(QMainWindow):
         self.setWindowTitle("coatgui")
         self.setAcceptDrops(True)
         self.resize(1280, 800)
+        geometry = settings.value("geometry")
+        if isinstance(geometry, QByteArray):
+            self.restoreGeometry(geometry)
         self._actions: list[tuple[Entry, QAction]] = []
         self._shown: CampaignFile | None = None
         # Places that do not show what the desk holds: all of it (True), or only the selection.
@@ -63,6 +67,7 @@ class MainWindow(QMainWindow):
         self.incoming = Incoming(self.desk, self)
         self.files = FileActions(self, self.desk, self.incoming, settings, self.trouble)
         self.figures = FigureActions(self.desk, self.files, self.trouble, self.open_place)
+        self.help = Help(self, lambda: self.open_place().topic())
         self.pages = QStackedWidget()
         middle = QWidget()
         column = QVBoxLayout(middle)
@@ -83,7 +88,16 @@ class MainWindow(QMainWindow):
             self.desk, self.incoming, self.files, settings, self.tone, self.pages
         )
         self.watching = self.arrivals.watching
-        for line in (self.trouble, self.arrivals.waiting, self.arrivals.arrived):
+        self.keeping = Keeping(
+            self.desk, self.files, settings, lambda: self.open_place().noun, self.go_to
+        )
+        for line in (
+            self.trouble,
+            self.keeping.standing,
+            self.keeping.offer,
+            self.arrivals.waiting,
+            self.arrivals.arrived,
+        ):
             column.addWidget(line)
         column.addWidget(self.pages, 1)
         self._build_menus()
@@ -94,13 +108,23 @@ class MainWindow(QMainWindow):
         self.desk.worked.connect(self._worked)
         self.desk.told.connect(self._told)
         self.desk.failed.connect(self.trouble.say)
+        self.desk.unkept.connect(self.trouble.say_unkept)
+        self.trouble.elsewhere.clicked.connect(lambda _checked=False: self.files.save_as())
         self._campaign_changed()
 
     # --- building --------------------------------------------------------------------------
 
     def _build_menus(self) -> None:
         menus: dict[str, QMenu] = {}
-        holders = (self, self.files, self.figures, self.arrivals, self.side)
+        holders = (
+            self,
+            self.files,
+            self.figures,
+            self.arrivals,
+            self.side,
+            self.help,
+            self.keeping,
+        )
         for entry in ACTIONS:
             menu = menus.get(entry.menu)
             if menu is None:
@@ -124,6 +148,7 @@ class MainWindow(QMainWindow):
         splitter = QSplitter()
         splitter.setHandleWidth(1)
         self.project = ProjectTree(self.desk, self.tone)
+        self.project.setMinimumWidth(190)
         splitter.addWidget(self.project)
         middle = QWidget()
         column = QVBoxLayout(middle)
@@ -182,9 +207,7 @@ class MainWindow(QMainWindow):
         title = "coatgui"
         if file is not None:
             title = f"{file.campaign.title} · coatgui"
-            self.status.kept.setText(
-                f"kept in {file.path.name}" if self.desk.is_saved else _UNSAVED
-            )
+            self.status.kept.setText(self._how_kept(file))
             if self.desk.is_saved:
                 self.files.remember(file.path)
         else:
@@ -204,6 +227,7 @@ class MainWindow(QMainWindow):
             action.setEnabled(there)
         self._behind = dict.fromkeys(range(len(ORDER)), True)
         parts = (self.project.refresh, self._refresh_places, self._show_facts)
+        self._parts = []
         if file is None or len(file.campaign.readings) < _MANY:
             for part in parts:
                 part()
@@ -225,6 +249,11 @@ class MainWindow(QMainWindow):
             self._catch_up(doubts)
             found = self.places[doubts].doubts  # type: ignore[attr-defined]
             self.buttons.button(doubts).setText(f"Doubts  {len(found)}" if found else "Doubts")
+
+    def _how_kept(self, file: CampaignFile) -> str:
+        if file.read_only_because:
+            return f"{file.path.name}: read only"
+        return f"kept in {file.path.name}" if self.desk.is_saved else _UNSAVED
 
     def _catch_up(self, number: int) -> None:
         """Show in a place what it has missed: a campaign, or another selection only."""
@@ -324,11 +353,6 @@ class MainWindow(QMainWindow):
         self.strip.tone = self.tone
         self.strip.update()
 
-    def show_cautions(self) -> None:
-        from coatgui.assessment.cautions import cautions  # late: it brings all of assessment
-
-        say_plainly(self, "Cautions", "What the results do not say", "\n\n".join(cautions()))
-
     # --- drops, closing --------------------------------------------------------------------
 
     def dragEnterEvent(self, event: QDragEnterEvent) -> None:
@@ -349,6 +373,15 @@ class MainWindow(QMainWindow):
         if not self.files.may_leave():
             event.ignore()
             return
+        self.hide()
+        self.settings.setValue("geometry", self.saveGeometry())
         self.arrivals.close()
         self.desk.close()
+        self.keeping.close()
         event.accept()
+
+    def changeEvent(self, event: QEvent) -> None:
+        super().changeEvent(event)
+        there = hasattr(self, "keeping")  # events come before the window is built
+        if event.type() == QEvent.Type.ActivationChange and there and self.isActiveWindow():
+            self.keeping.look()

@@ -11,6 +11,7 @@ from scipy import stats
 from coatgui.assessment.presets import electrolytes, regimes
 from coatgui.assessment.quantities import kind
 from coatgui.assessment.ratings import (
+    Rated,
     correlations,
     creepage_by_area_mm,
     delamination_at_scribe_mm,
@@ -21,7 +22,7 @@ from coatgui.assessment.ratings import (
     scales,
     spearman,
 )
-from coatgui.records import ReadingAssessment, VisualRating
+from coatgui.records import ReadingAssessment, Settings, VisualRating
 
 MakeReading = Callable[..., ReadingAssessment]
 # Upper limits as they are published or remembered, written out a second time on purpose.
@@ -149,6 +150,9 @@ def test_spearman_agrees_with_scipy(size: int) -> None:
     assert spearman([1.0, 1.0, 1.0], [1.0, 2.0, 3.0])[1] == 1.0
 
 
+PANELS = {name: (name[0], name) for name in ("K0", "K1", "M0", "M1", "M2")}
+
+
 def test_ratings_beside_the_spectra(reading_of: MakeReading) -> None:
     grades = {"K0": "Ri 0", "K1": "Ri 1", "M0": "Ri 3", "M1": "Ri 4", "M2": "Ri 5"}
     moduli = {"K0": 1e10, "K1": 1e9, "M0": 1e7, "M1": 1e6, "M2": 1e5}
@@ -157,7 +161,7 @@ def test_ratings_beside_the_spectra(reading_of: MakeReading) -> None:
         readings[panel[0]].append(reading_of(panel[0], panel, 672.0, modulus))
     ratings = [VisualRating(p, 670.0, "iso_4628_3", g) for p, g in grades.items()]
     ratings.append(VisualRating("K0", 670.0, "iso_4628_3", "Ri 1"))  # a second look, worse
-    courses = {c.formulation: c for c in rating_courses(readings, ratings)}
+    courses = {c.formulation: c for c in rating_courses(Rated(PANELS, tuple(ratings)))}
     assert (courses["M"].best, courses["M"].worst) == ("Ri 3", "Ri 5")
     assert dict(courses["K"].ratings)["K0"] == "Ri 1"
     (found,) = correlations(readings, ratings, [kind("modulus", 0.1)])
@@ -168,11 +172,13 @@ def test_ratings_beside_the_spectra(reading_of: MakeReading) -> None:
 
 
 def test_presets_are_whole() -> None:
-    known = {r.regime_id: r for r in regimes()}
+    known = {r.regime_id: r for r in regimes(Settings())}
     assert known["astm_b117"].temperature_c == 35.0
-    assert known["astm_b117"].electrolyte is not None
-    assert known["astm_b117"].electrolyte.resistivity_ohm_cm == 14.0
+    assert known["astm_b117"].electrolyte_id == "nacl_5"
     assert known["iso_12944_9"].duration_h == (4200.0, 4200.0)
     assert all(r.source and r.conditions for r in known.values())
-    assert all(e.source for e in electrolytes())
+    salts = {e.electrolyte_id: e for e in electrolytes(Settings())}
+    assert salts["nacl_5"].resistivity_ohm_cm == 14.0
+    assert all(e.source for e in salts.values())
+    assert {r.electrolyte_id for r in known.values()} <= {*salts, ""}
     assert len(known) == 13

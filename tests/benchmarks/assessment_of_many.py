@@ -25,7 +25,6 @@ from coatgui.records import (
     Panel,
     Parameter,
     Quantity,
-    Questions,
     Reading,
     Source,
     Spectrum,
@@ -111,7 +110,7 @@ def large_campaign(
 def main() -> None:
     campaign, drawn = large_campaign()
     start = time.process_time()
-    conclude(campaign, drawn, Progress(), Questions())
+    conclude(campaign, drawn, Progress())
     taken = time.process_time() - start
     start = time.process_time()
     for _ in range(20):

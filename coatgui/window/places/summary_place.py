@@ -43,6 +43,8 @@ class SummaryPlace(Place):
     """`wanted` asks for the summary as a file, with the ending of its name."""
 
     noun, question = "Summary", "What do we hand over?"
+    needs = "assessment"
+    promise = "Here the inspection summary will stand as it prints, with fields to fill in."
     has_strip = False
     wanted = Signal(str)
 
