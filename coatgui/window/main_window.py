@@ -227,7 +227,7 @@ class MainWindow(QMainWindow):
         self._behind = dict.fromkeys(range(len(ORDER)), True)
         doubts = NOUNS.index("Doubts")
         self._catch_up(self.stack.currentIndex())
-        if file is not None or self.places.is_built(doubts):
+        if self.desk.has_doubts() or self.places.is_built(doubts):
             # Doubts are counted beside their place's noun; other places follow when they are seen.
             self._catch_up(doubts)
             found = self.places[doubts].doubts  # type: ignore[attr-defined]
