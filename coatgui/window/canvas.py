@@ -1,7 +1,7 @@
 """A plot that paints itself in one go, for places where every pick draws new data.
 
-It knows curves, marks, lines and shades, axes of decades or of amounts, and the hand's ways of
-moving about: drag, wheel, and a box drawn with Shift. What is on it is kept and given other data.
+It knows curves, marks and lines, axes of decades or of amounts, and the hand's ways of moving
+about: drag, wheel, and a box drawn with Shift. What is on it is kept and given other data.
 """
 
 from __future__ import annotations
@@ -39,19 +39,10 @@ Numbers = Sequence[float] | np.ndarray
 
 
 @dataclass(eq=False)
-class Shade:
-    """An area, its outline in the plot's own coordinates. What has a lower `level` lies below."""
-
-    level: int = -20
-    colour: QColor = field(default_factory=QColor)
-    path: QPainterPath = field(default_factory=QPainterPath)
-
-
-@dataclass(eq=False)
 class Curve:
-    """Points joined by a line."""
+    """Points joined by a line; `behind` what else is drawn."""
 
-    level: int = 0
+    behind: bool = False
     pen: QPen = field(default_factory=QPen)
     across: np.ndarray = field(default_factory=lambda: np.empty(0))
     up: np.ndarray = field(default_factory=lambda: np.empty(0))
@@ -71,11 +62,18 @@ class Marks(Curve):
 
 
 @dataclass(eq=False)
+class Shade:
+    """An area in the plot's own coordinates, behind all else."""
+
+    path: QPainterPath = field(default_factory=QPainterPath)
+    colour: QColor = field(default_factory=QColor)
+
+
+@dataclass(eq=False)
 class Line:
     """A line across the plot at one value, upright or level."""
 
     upright: bool
-    level: int = 0
     value: float = 0.0
     pen: QPen = field(default_factory=QPen)
     is_shown: bool = True
@@ -116,13 +114,18 @@ class Canvas(QWidget):
         self._decades, self._even = decades, even
         self._across, self._up = _Range(seen_by=[self]), _Range(seen_by=[self])
         self._ground, self._ink, self._line = (QColor("#FFFFFF"), QColor("#000000"), QColor("#888"))
-        self._items: list[Shade | Curve | Line] = []
+        self._items: list[Curve | Line] = []
+        self._shades: list[Shade] = []
         self._stamps: dict[tuple[object, ...], QPixmap] = {}
         self._held: QPointF | None = None
         self._box: QRectF | None = None
 
-    def add(self, *items: Shade | Curve | Line) -> None:
-        self._items += items
+    def add(self, *items: Curve | Line | Shade) -> None:
+        for item in items:
+            if isinstance(item, Shade):
+                self._shades.append(item)
+            else:
+                self._items.append(item)
 
     def share_across(self, other: Canvas) -> None:
         """See the same stretch of the bottom axis as another plot, whichever is moved."""
@@ -185,10 +188,10 @@ class Canvas(QWidget):
         y = area.bottom() - (np.asarray(up) - low) / (high - low) * area.height()
         return np.clip(np.stack([x, y], axis=-1), -_FARTHEST, _FARTHEST)
 
-    def _to_screen(self, area: QRectF) -> QTransform:
-        (left, right), (low, high) = self.seen()
+    def _to_screen(self) -> QTransform:
+        area, ((left, right), (low, high)) = self.area(), self.seen()
         x, y = area.width() / (right - left), area.height() / (high - low)
-        return QTransform(x, 0, 0, -y, area.left() - left * x, area.bottom() + low * y)
+        return QTransform(x, 0.0, 0.0, -y, area.left() - left * x, area.bottom() + low * y)
 
     def at(self, where: QPointF) -> QPointF:
         """The place under a pixel, in the plot's own coordinates."""
@@ -217,10 +220,10 @@ class Canvas(QWidget):
         painter.setClipRect(area)
         painter.setRenderHint(QPainter.RenderHint.Antialiasing)
         painter.setBrush(Qt.BrushStyle.NoBrush)
-        for item in sorted(self._items, key=lambda item: item.level):
-            if isinstance(item, Shade):
-                painter.fillPath(self._to_screen(area).map(item.path), item.colour)
-            elif isinstance(item, Line):
+        for surface in self._shades:
+            painter.fillPath(self._to_screen().map(surface.path), surface.colour)
+        for item in sorted(self._items, key=lambda item: not getattr(item, "behind", False)):
+            if isinstance(item, Line):
                 self._paint_line(painter, item, area)
             elif not item.across.size:
                 continue

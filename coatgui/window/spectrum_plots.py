@@ -199,7 +199,7 @@ class SpectrumPlots(QWidget):
     def _draw_others(self, others: Sequence[tuple[Drawn, float]], tone: Colours) -> None:
         for plot, curves in zip(self.plots[:3], self._others, strict=False):
             while len(curves) < len(others):
-                curves.append(Curve(level=-10))
+                curves.append(Curve(behind=True))
                 plot.add(curves[-1])
             for curve in curves[len(others) :]:
                 curve.show([], [])
