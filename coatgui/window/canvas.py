@@ -32,7 +32,7 @@ from coatgui.window.numbers import prefixed
 
 _LEFT, _BOTTOM, _TOP, _RIGHT = 88.0, 46.0, 10.0, 14.0
 _ROOM = {"bottom": 64.0, "left": 26.0}  # for the words of a tick, in pixels
-_GRID = 0.12
+_GRID = 0.25  # of the way from the ground to a line
 _FARTHEST = 1e7  # pixels; what lies beyond is as good as there
 
 Numbers = Sequence[float] | np.ndarray
@@ -62,6 +62,14 @@ class Marks(Curve):
 
 
 @dataclass(eq=False)
+class Shade:
+    """An area in the plot's own coordinates, behind all else."""
+
+    path: QPainterPath = field(default_factory=QPainterPath)
+    colour: QColor = field(default_factory=QColor)
+
+
+@dataclass(eq=False)
 class Line:
     """A line across the plot at one value, upright or level."""
 
@@ -69,14 +77,6 @@ class Line:
     value: float = 0.0
     pen: QPen = field(default_factory=QPen)
     is_shown: bool = True
-
-
-@dataclass(eq=False)
-class Shade:
-    """An area filled behind everything else, in the plot's own coordinates."""
-
-    colour: QColor = field(default_factory=QColor)
-    path: QPainterPath = field(default_factory=QPainterPath)
 
 
 @dataclass(eq=False)
@@ -120,11 +120,12 @@ class Canvas(QWidget):
         self._held: QPointF | None = None
         self._box: QRectF | None = None
 
-    def add(self, *items: Curve | Line) -> None:
-        self._items += items
-
-    def add_behind(self, shade: Shade) -> None:
-        self._shades.append(shade)
+    def add(self, *items: Curve | Line | Shade) -> None:
+        for item in items:
+            if isinstance(item, Shade):
+                self._shades.append(item)
+            else:
+                self._items.append(item)
 
     def share_across(self, other: Canvas) -> None:
         """See the same stretch of the bottom axis as another plot, whichever is moved."""
@@ -187,6 +188,11 @@ class Canvas(QWidget):
         y = area.bottom() - (np.asarray(up) - low) / (high - low) * area.height()
         return np.clip(np.stack([x, y], axis=-1), -_FARTHEST, _FARTHEST)
 
+    def _to_screen(self) -> QTransform:
+        area, ((left, right), (low, high)) = self.area(), self.seen()
+        x, y = area.width() / (right - left), area.height() / (high - low)
+        return QTransform(x, 0.0, 0.0, -y, area.left() - left * x, area.bottom() + low * y)
+
     def at(self, where: QPointF) -> QPointF:
         """The place under a pixel, in the plot's own coordinates."""
         area, ((left, right), (low, high)) = self.area(), self.seen()
@@ -213,8 +219,9 @@ class Canvas(QWidget):
         painter.save()
         painter.setClipRect(area)
         painter.setRenderHint(QPainter.RenderHint.Antialiasing)
-        self._paint_shades(painter)
         painter.setBrush(Qt.BrushStyle.NoBrush)
+        for surface in self._shades:
+            painter.fillPath(self._to_screen().map(surface.path), surface.colour)
         for item in sorted(self._items, key=lambda item: not getattr(item, "behind", False)):
             if isinstance(item, Line):
                 self._paint_line(painter, item, area)
@@ -255,55 +262,40 @@ class Canvas(QWidget):
     ) -> None:
         is_bottom = side == "bottom"
         ticks = self._ticks(side, *seen, area.width() if is_bottom else area.height())
-        grid = QColor(self._line)
-        grid.setAlphaF(2 * _GRID)
+        grid = _between(self._ground, self._line, _GRID)
         title = self._axes[side][0]
         flag = Qt.AlignmentFlag
         line = QFontMetricsF(painter.font()).height()
+        painter.setPen(self._ink)
         for value, words in ticks:
             share = (value - seen[0]) / (seen[1] - seen[0])
             if is_bottom:
                 x = round(area.left() + share * area.width())
-                painter.setPen(grid)
-                painter.drawLine(QPointF(x, area.top()), QPointF(x, area.bottom()))
-                painter.setPen(self._ink)
+                # Filled, not drawn: it takes a tenth of the time.
+                painter.fillRect(QRectF(x, area.top(), 1, area.height()), grid)
                 painter.drawText(
                     QRectF(x - 50, area.bottom() + 4, 100, line), flag.AlignHCenter, words
                 )
             else:
                 y = round(area.bottom() - share * area.height())
-                painter.setPen(grid)
-                painter.drawLine(QPointF(area.left(), y), QPointF(area.right(), y))
-                painter.setPen(self._ink)
+                painter.fillRect(QRectF(area.left(), y, area.width(), 1), grid)
                 painter.drawText(
                     QRectF(line, y - line / 2, _LEFT - line - 6, line),
                     flag.AlignRight | flag.AlignVCenter,
                     words,
                 )
-        painter.setPen(self._line)
         if is_bottom:
-            painter.drawLine(area.bottomLeft(), area.bottomRight())
-            painter.setPen(self._ink)
+            painter.fillRect(QRectF(area.left(), area.bottom(), area.width(), 1), self._line)
             below = QRectF(area.left(), self.height() - line - 2, area.width(), line)
             painter.drawText(below, flag.AlignHCenter, title)
         else:
-            painter.drawLine(area.topLeft(), area.bottomLeft())
-            painter.setPen(self._ink)
+            painter.fillRect(QRectF(area.left(), area.top(), 1, area.height()), self._line)
             painter.save()
             painter.translate(2, area.center().y())
             painter.rotate(-90)
             half = area.height() / 2
             painter.drawText(QRectF(-half, 0, 2 * half, line), flag.AlignHCenter, title)
             painter.restore()
-
-    def _paint_shades(self, painter: QPainter) -> None:
-        origin, one = self.on_screen([0.0, 1.0], [0.0, 1.0]).tolist()
-        across, up = one[0] - origin[0], one[1] - origin[1]
-        onto = QTransform(across, 0, 0, up, *origin)
-        painter.setPen(Qt.PenStyle.NoPen)
-        for shade in self._shades:
-            if not shade.path.isEmpty():
-                painter.fillPath(onto.map(shade.path), shade.colour)
 
     def _paint_line(self, painter: QPainter, item: Line, area: QRectF) -> None:
         if not item.is_shown:
@@ -402,6 +394,15 @@ def _draw_mark(painter: QPainter, symbol: str, size: float, middle: QPointF) -> 
         for way in (1, -1):
             arm = QPointF(half, way * half)
             painter.drawLine(middle - arm, middle + arm)
+
+
+def _between(one: QColor, other: QColor, share: float) -> QColor:
+    """A colour that is a share of the way from one to another."""
+    return QColor.fromRgbF(
+        one.redF() + share * (other.redF() - one.redF()),
+        one.greenF() + share * (other.greenF() - one.greenF()),
+        one.blueF() + share * (other.blueF() - one.blueF()),
+    )
 
 
 def _power(value: float, unit: str, digits: int) -> str:

@@ -68,8 +68,8 @@ class FitDrawn:
         self.plots = (modulus, phase, plane)
         self.shades = [Shade() for _ in self.plots]
         for plot, shade in zip(self.plots, self.shades, strict=True):
-            plot.add_behind(shade)
-        self._curves: list[tuple[Curve, ...]] = []
+            plot.add(shade)
+        self.curves: list[tuple[Curve, ...]] = []
         self.band: FitBand | None = None
         self.parts: tuple[Part, ...] = ()
 
@@ -83,14 +83,14 @@ class FitDrawn:
         """Draw a band and parts, at `frequency_hz`; nothing takes them away."""
         self.band, self.parts = band, tuple(parts)
         self._draw_band(band, tone)
-        while len(self._curves) < len(parts):
+        while len(self.curves) < len(parts):
             # Under the fit itself and the points.
             curves = tuple(Curve(behind=True) for _ in self.plots)
             for plot, curve in zip(self.plots, curves, strict=True):
                 plot.add(curve)
-            self._curves.append(curves)
+            self.curves.append(curves)
         x = np.log10(frequency_hz)
-        for number, curves in enumerate(self._curves):
+        for number, curves in enumerate(self.curves):
             z = parts[number].impedance_ohm if number < len(parts) else None
             if z is None:
                 for curve in curves:

@@ -97,7 +97,7 @@ def test_the_parts_are_drawn_when_asked_for(place: ReadingPlace) -> None:
         assert any(text.startswith(part.name) for text in texts(place))
     dashes = [e.style for e in place.plots.key.entries if e.text.startswith(drawn[0].name)]
     assert dashes[0] is not Qt.PenStyle.SolidLine
-    curves = place.plots.beside_fit._curves
+    curves = place.plots.beside_fit.curves
     across, up = curves[0][0].across, curves[0][0].up
     first = fit_parts(known.fit, model, 10.0 ** np.asarray(across))[0]
     assert first.impedance_ohm is not None
@@ -110,7 +110,7 @@ def test_the_parts_are_drawn_when_asked_for(place: ReadingPlace) -> None:
     place.desk.select(unfitted.reading_id)
     QApplication.processEvents()
     assert not place.plots.beside_fit.parts
-    assert not any(len(curve.across) for curve in curves[0])
+    assert not any(curve.across.size for curve in curves[0])
 
 
 def test_bounds_are_said(place: ReadingPlace) -> None:

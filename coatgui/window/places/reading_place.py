@@ -80,7 +80,7 @@ class ReadingPlace(Place):
         )
         self.overlay.currentIndexChanged.connect(self.show_selection)
         self.read_out = plain_label("small")
-        self._read_out = Still(self.read_out, 2)
+        self._read_out = Still(self.read_out, 1)
         self._read_out.say(_HINT)
         self.tried = _switch(
             "What was tried", "Every model laid on this spectrum, and why it was left"
