@@ -60,6 +60,8 @@ _WORDS = {
     "exposure_h": "exposure time",
     "amplitude_mv": "amplitude",
     "potential_mv": "potential",
+    "temperature_span_c": "temperature within the sweep",
+    "potential_span_mv": "potential within the sweep",
     "modulus_frequencies_hz": "frequencies for the modulus",
     "capacitance_frequency_hz": "frequency for the capacitance",
     "mains_hz": "mains frequency",

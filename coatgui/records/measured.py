@@ -166,7 +166,8 @@ class FoundPanel:
 
 @dataclass(frozen=True, slots=True)
 class FoundReading:
-    """A spectrum as intake hands it over: whose it is, when it was taken, where it came from."""
+    """A spectrum as intake hands it over: whose it is, when it was taken, where it came from. The
+    spans are the lowest and the highest within the sweep, where the file gives every point's."""
 
     spectrum: Spectrum
     source: Source
@@ -176,6 +177,8 @@ class FoundReading:
     amplitude_mv: float | None = None
     potential_mv: float | None = None
     remark: str = ""
+    temperature_span_c: tuple[float, float] | None = None
+    potential_span_mv: tuple[float, float] | None = None
 
 
 @dataclass(frozen=True, slots=True)
