@@ -277,6 +277,8 @@ def read_again(campaign: Campaign, corrected: Mapping[str, FoundReading]) -> Ope
             source=found.source,
             left_out=reading.left_out if same_points else (),
             kept_in=reading.kept_in if same_points else (),
+            temperature_span_c=found.temperature_span_c,
+            potential_span_mv=found.potential_span_mv,
         )
         after = replace(after, readings=swap(after.readings, [(reading, changed)]))
     if not corrected:

@@ -104,8 +104,9 @@ class Column:
 
     `role` is one of frequency, angular_frequency, real, imaginary, modulus, phase,
     admittance_real, …_imaginary, …_modulus, …_phase, capacitance_real, …_imaginary, time, panel,
-    date, other, or one of them with "log_" before it for decimal logarithms. `factor` multiplies
-    the written number to give Hz, rad/s, Ω, S, F, rad or h, per specimen. For imaginary parts and
+    date, temperature, potential, other, or one of them with "log_" before it for decimal
+    logarithms. `factor` multiplies the written number to give Hz, rad/s, Ω, S, F, rad, h, °C (K
+    where the unit is) or mV, per specimen. For imaginary parts and
     phases, a negative factor says that the file counts them the other way round.
     """
 

@@ -36,6 +36,8 @@ ROLES = {
     "admittance_phase": "phase of Y",
     "capacitance_real": "C′",
     "capacitance_imaginary": "C″",
+    "temperature": "temperature",
+    "potential": "potential",
 }
 _UNITS = {
     "frequency": "Hz",
@@ -44,6 +46,8 @@ _UNITS = {
     "admittance": "S",
     "capacitance": "F",
     "angle": "deg",
+    "temperature": "°C",
+    "potential": "mV",
 }
 
 
