@@ -11,6 +11,7 @@ from datetime import datetime
 import numpy as np
 
 from coatgui.intake.behaviour import phase_factor
+from coatgui.intake.conditions import CONDITIONS
 from coatgui.intake.cut import NOTHING
 from coatgui.intake.errors import NoSpectrum, Unclear, Unreadable
 from coatgui.intake.extract import Extract, extract, extracts_of
@@ -45,6 +46,8 @@ class Piece:
     moment_unsure: bool = False
     per_area: bool = False
     doubts: tuple[str, ...] = ()
+    temperature_span_c: tuple[float, float] | None = None
+    potential_span_mv: tuple[float, float] | None = None
 
 
 @dataclass(frozen=True)
@@ -243,6 +246,7 @@ def _cut(
                 said.moment_unsure,
                 made.per_area,
                 doubts,
+                *(made.span(role, rows) for role in CONDITIONS),
             )
         )
     return result

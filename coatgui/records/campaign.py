@@ -39,6 +39,8 @@ class Reading:
     `left_out` and `kept_in` are places of points: those a person takes out, and those a person
     keeps although the checks suggest leaving them out. `pinned_model` names a coating model that a
     person insists on. `overruled_because` is a person's reason for using a rejected reading.
+    `temperature_span_c` and `potential_span_mv` are the lowest and the highest within the sweep,
+    where the file gives them point by point.
     """
 
     reading_id: str
@@ -54,6 +56,8 @@ class Reading:
     kept_in: tuple[int, ...] = ()
     pinned_model: str = ""
     overruled_because: str = ""
+    temperature_span_c: tuple[float, float] | None = None
+    potential_span_mv: tuple[float, float] | None = None
 
 
 @dataclass(frozen=True, slots=True)

@@ -29,8 +29,8 @@ CREATE TABLE history (
     when_utc TEXT NOT NULL,
     changes TEXT NOT NULL -- JSON: [{"table", "key", "before", "after"}]
 , reason TEXT NOT NULL DEFAULT '', state TEXT NOT NULL DEFAULT '', chain TEXT NOT NULL DEFAULT '') STRICT;
-INSERT INTO "history" VALUES(1,'create',NULL,'Create the campaign','operator','2026-12-01T16:49:21Z','[]','','307bf55211148fc144fbf51cf2aad0fb0531de0e01aaa6a1658c38d24f44f814','4102b013751c44b9487ba66ba98e4f978df8856fae07a1aa5c116b611d14a6d4');
-INSERT INTO "history" VALUES(2,'edit',NULL,'Change area of panel A1','operator','2026-12-01T16:49:21Z','[{"table": "panels", "key": "p1", "before": {"area_cm2": 10.1}, "after": {"area_cm2": 12.0}}]','','1b07cdf372b1fbf5875968d2c39ab2f53db04c254f58578902783803ae8e9e8e','aed330420cb809418c722d9c8f09266a8516234ee7292a7c603dc40c3bc1eae8');
+INSERT INTO "history" VALUES(1,'create',NULL,'Create the campaign','operator','2026-12-01T17:36:09Z','[]','','cb6fee66cd041b2df897aa3c8d4d7fd729020f0e567231b33602a52f652a3bdc','5b50fa5f696e95f1f647cf81b933d676631f55d24d6168adbc35f1db0bf4a224');
+INSERT INTO "history" VALUES(2,'edit',NULL,'Change area of panel A1','operator','2026-12-01T17:36:09Z','[{"table": "panels", "key": "p1", "before": {"area_cm2": 10.1}, "after": {"area_cm2": 12.0}}]','','b5fbc7082ea187623af51df25e3d61d161807d25a41fe29ad2eea460c473e256','52a0f81dff10ad9732c4bf67a21c2bb55063e62d7526b8429ee65b3b1dd0a9cf');
 CREATE TABLE open_lead (
     campaign_id TEXT NOT NULL PRIMARY KEY
         REFERENCES campaign DEFERRABLE INITIALLY DEFERRED,
@@ -115,12 +115,12 @@ CREATE TABLE readings (
     kept_in TEXT NOT NULL DEFAULT '[]', -- JSON: [point]
     pinned_model TEXT NOT NULL DEFAULT '',
     overruled_because TEXT NOT NULL DEFAULT ''
-) STRICT;
+, temperature_low_c REAL, temperature_high_c REAL, potential_low_mv REAL, potential_high_mv REAL) STRICT;
 INSERT INTO "readings" VALUES('r1',0,'p1',3.00000000000000044408e-01,'c78e984090c96c59de651ce68a38dce01c1034b917bd3eefd6448a52982db276','one/a1.csv','874926c042d860cfe6819219de62393bbe3d8f56052ee83c5952daffc6223db9','sheet 2','{"encoding": "utf-16", "delimiter": ";", "decimal_sign": ",", "first_data_line": 3, "ascending": true, "columns": [{"position": 0, "heading": "Frequenz/kHz", "role": "frequency", "unit": "kHz", "factor": 1000.0}, {"position": 2, "heading": "−Z″", "role": "imaginary", "unit": "MΩ", "factor": -1000000.0}], "remarks": ["Lines 1–2 were skipped."]}',22.5,20.0,-431.7,'a drop under the cell
-wiped','[[0, "spike"], [4, "drift"]]','[2]','film_with_pores','repeated, same answer');
-INSERT INTO "readings" VALUES('r2',1,'p1',168.0,'6d890be02099271188f84ea89d5b1244d1d6bcad1643498778f45f57f334b98a','a1 168.csv','031638b511ad7ca839c807580ae4af4fffb3b99509a305c91e4573c1f5e44fb1','',NULL,NULL,NULL,NULL,'','[]','[]','','');
-INSERT INTO "readings" VALUES('r3',2,'p2',168.0,'49135cbe551647b00c9c416c875c4a85a7b015082f70ed936a72ce8ff243037c','b2.csv','c76d646e41be2b31704d88abf8ba08eac6305db1a671741f70fa4e25d6531981','t=168','{"encoding": "utf-16", "delimiter": ";", "decimal_sign": ",", "first_data_line": 3, "ascending": true, "columns": [{"position": 0, "heading": "Frequenz/kHz", "role": "frequency", "unit": "kHz", "factor": 1000.0}, {"position": 2, "heading": "−Z″", "role": "imaginary", "unit": "MΩ", "factor": -1000000.0}], "remarks": ["Lines 1–2 were skipped."]}',NULL,NULL,NULL,'','[]','[]','','');
-INSERT INTO "readings" VALUES('r4',3,'p2',336.0,'49135cbe551647b00c9c416c875c4a85a7b015082f70ed936a72ce8ff243037c','b2.csv','c76d646e41be2b31704d88abf8ba08eac6305db1a671741f70fa4e25d6531981','t=336','{"encoding": "utf-16", "delimiter": ";", "decimal_sign": ",", "first_data_line": 3, "ascending": true, "columns": [{"position": 0, "heading": "Frequenz/kHz", "role": "frequency", "unit": "kHz", "factor": 1000.0}, {"position": 2, "heading": "−Z″", "role": "imaginary", "unit": "MΩ", "factor": -1000000.0}], "remarks": ["Lines 1–2 were skipped."]}',NULL,NULL,NULL,'','[]','[]','','');
+wiped','[[0, "spike"], [4, "drift"]]','[2]','film_with_pores','repeated, same answer',22.1,22.9,-440.25,-428.0);
+INSERT INTO "readings" VALUES('r2',1,'p1',168.0,'6d890be02099271188f84ea89d5b1244d1d6bcad1643498778f45f57f334b98a','a1 168.csv','031638b511ad7ca839c807580ae4af4fffb3b99509a305c91e4573c1f5e44fb1','',NULL,NULL,NULL,NULL,'','[]','[]','','',NULL,NULL,NULL,NULL);
+INSERT INTO "readings" VALUES('r3',2,'p2',168.0,'49135cbe551647b00c9c416c875c4a85a7b015082f70ed936a72ce8ff243037c','b2.csv','c76d646e41be2b31704d88abf8ba08eac6305db1a671741f70fa4e25d6531981','t=168','{"encoding": "utf-16", "delimiter": ";", "decimal_sign": ",", "first_data_line": 3, "ascending": true, "columns": [{"position": 0, "heading": "Frequenz/kHz", "role": "frequency", "unit": "kHz", "factor": 1000.0}, {"position": 2, "heading": "−Z″", "role": "imaginary", "unit": "MΩ", "factor": -1000000.0}], "remarks": ["Lines 1–2 were skipped."]}',NULL,NULL,NULL,'','[]','[]','','',NULL,NULL,NULL,NULL);
+INSERT INTO "readings" VALUES('r4',3,'p2',336.0,'49135cbe551647b00c9c416c875c4a85a7b015082f70ed936a72ce8ff243037c','b2.csv','c76d646e41be2b31704d88abf8ba08eac6305db1a671741f70fa4e25d6531981','t=336','{"encoding": "utf-16", "delimiter": ";", "decimal_sign": ",", "first_data_line": 3, "ascending": true, "columns": [{"position": 0, "heading": "Frequenz/kHz", "role": "frequency", "unit": "kHz", "factor": 1000.0}, {"position": 2, "heading": "−Z″", "role": "imaginary", "unit": "MΩ", "factor": -1000000.0}], "remarks": ["Lines 1–2 were skipped."]}',NULL,NULL,NULL,'','[]','[]','','',NULL,NULL,NULL,NULL);
 CREATE TABLE refused (
     refusal_id TEXT NOT NULL PRIMARY KEY,
     place INTEGER NOT NULL UNIQUE,
