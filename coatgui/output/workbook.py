@@ -130,6 +130,10 @@ def _summary(book: Book, assessment: Assessment) -> None:
             place += f" to {rank.rank_high}"
         rows.append((rank.formulation, f"{place}, group {rank.group}"))
     rows += [(f.formulation, f.text) for f in assessment.formulations if f.text]
+    rows += [("comparison", c.text) for c in assessment.further_comparisons]
+    rows += [("limit", study.text) for study in assessment.limit_studies]
+    rows += [("projection", p.text) for p in assessment.projections]
+    rows += [("ratings", c.text) for c in assessment.rating_correlations]
     for panel in assessment.panels:
         said = [event.text for event in panel.events]
         said += [crossing.text for crossing in panel.limit_crossings]
@@ -329,6 +333,7 @@ def _ratings(book: Book, assessment: Assessment) -> None:
         Column("exposure (h)", lambda row: row[0].exposure_h, HOURS),
         Column("scale", lambda row: row[0].scale),
         Column("rating", itemgetter(2)),
+        Column("edition", lambda row: row[0].edition),
     ]
     book.add_sheet("Ratings", columns, rows, standing=3)
 
