@@ -77,6 +77,7 @@ _WORDS = {
     "projections": "projections",
     "electrolytes": "electrolytes",
     "regimes": "exposure regimes",
+    "uptake_from_high_frequency": "capacitance for the water uptake",
 }
 
 # ---------------------------------------------------------------------------------------------
