@@ -10,11 +10,12 @@ from pathlib import Path
 import pytest
 
 PACKAGE = Path(__file__).resolve().parent.parent / "coatgui"
-ANYONE = {"records", "progress", "shipped", ""}
+ANYONE = {"records", "progress", "shipped", "notes", ""}
 UPSTREAM = {
     "records": set(),
     "progress": set(),
     "shipped": set(),
+    "notes": {"shipped"},
     "first_steps": set(),
     "circuits": set(),
     "intake": set(),

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import shutil
 import sys
 from html import escape
 from pathlib import Path
@@ -12,6 +13,7 @@ import pytest
 
 from coatgui import __version__
 from coatgui.assessment.cautions import cautions
+from coatgui.campaign import CampaignFile, operations
 from coatgui.cli import main
 from coatgui.shipped import sample_panels
 
@@ -96,6 +98,20 @@ def test_the_summary_figures_and_tables_are_written(outputs: Path) -> None:
     assert {t["file"] for t in described["tables"]} | {"tables.json"} == {
         path.name for path in (outputs / "tables").iterdir()
     }
+
+
+def test_the_summary_names_what_the_campaign_keeps(outputs: Path, tmp_path: Path) -> None:
+    kept = tmp_path / "kept.coatgui"
+    shutil.copy(outputs / "o.coatgui", kept)
+    with CampaignFile.open(kept) as file:
+        file.apply(operations.identify(file.campaign, laboratory="Kept", customer="Also kept"))
+    written = tmp_path / "s.html"
+    told = ["--customer", "Told"]
+    assert main(["assess", str(kept), "--summary", str(written), "--workers", "1", *told]) == 1
+    text = written.read_text(encoding="utf-8")
+    assert ">Kept<" in text
+    assert ">Told<" in text
+    assert "Also kept" not in text
 
 
 def test_a_pdf_without_qt_is_refused_before_the_work(

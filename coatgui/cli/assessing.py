@@ -153,7 +153,8 @@ def _finish(
             assessment, campaign, options.workbook, spectra=True if options.spectra else None
         )
     if options.summary is not None:
-        identification = Identification(**{field: getattr(options, field) for field in FIELDS})
+        told = {field: getattr(options, field) for field in FIELDS}
+        identification = Identification.of(campaign, **told)
         write_summary(assessment, campaign, options.summary, identification)
     if options.figures is not None:
         write_figures(assessment, campaign, options.figures, options.figure_format)

@@ -80,7 +80,10 @@ def assess_parser() -> argparse.ArgumentParser:
     )
     for field, what in FIELDS.items():
         parser.add_argument(
-            f"--{field}", default="", metavar="TEXT", help=f"{what}, for the summary"
+            f"--{field}",
+            default="",
+            metavar="TEXT",
+            help=what if field == "date" else f"{what}, for the summary, if not as in the campaign",
         )
     parser.add_argument("--workers", type=int, metavar="N", help="processes to share the work")
     parser.add_argument("--quiet", action="store_true", help="print no table and no progress")

@@ -21,13 +21,16 @@ from coatgui.fitting.solver import (
 from coatgui.fitting.starts import approach_bounds, best_starts, candidates
 
 _STARTS = 4
+_STARTS_WITH_HELP = 3
 _ENOUGH_POINTS = 12
 _FAR_WORSE = 30.0  # in sum of squares
+_FAR_OFF = 100.0  # likewise, of a start that comes from another fit
+_OFFERS = 2
 _SAME_PLACE = 0.2  # in natural coordinates
 _SAME_COST = 1.005
-_APPROACH = Tolerance(cosine=1e-2, reduction=1e-3, step=2.0, iterations=25)
+APPROACH = Tolerance(cosine=1e-2, reduction=1e-3, step=2.0, iterations=16)
 # Near enough to compare models: the cost is then known to a few parts in 100,000.
-_COMPARE = Tolerance(cosine=1e-4, reduction=1e-6, iterations=60, damping=1e-2)
+_COMPARE = Tolerance(cosine=1e-4, reduction=1e-5, iterations=40, damping=1e-2)
 _SETTLE = Tolerance(damping=1e-3)
 
 
@@ -105,22 +108,29 @@ def better_of(first: Solution, second: Solution) -> Solution:
     )
 
 
-def _worth_going_on(near: Solution, rows: IndexArray) -> BoolArray:
-    """Of the approaches of each row (S,), which to follow to the end: those not far worse than the
-    best, and of several that arrived at one place only the best."""
-    order = np.lexsort((near.cost, rows))
+def _best_few(cost: FloatArray, rows: IndexArray, count: int) -> IndexArray:
+    """Places (K,) of the `count` least costs of each of `rows` (S,)."""
+    order = np.lexsort((cost, rows))
+    begins = np.searchsorted(rows[order], rows[order])
+    few: IndexArray = order[np.arange(order.size) - begins < count]
+    return few
+
+
+def _worth_going_on(theta: FloatArray, cost: FloatArray, rows: IndexArray) -> BoolArray:
+    """Of the places (S, P) near an optimum of each of `rows`, which to follow to the end: those not
+    far worse than the best, and of several that arrived at one place only the best."""
+    order = np.lexsort((cost, rows))
     best = np.full(int(rows.max()) + 1, np.inf)
-    np.minimum.at(best, rows, near.cost)
-    going = near.cost <= _FAR_WORSE * best[rows]
+    np.minimum.at(best, rows, cost)
+    going = cost <= _FAR_WORSE * best[rows]
     followed: dict[int, list[int]] = {}
     for i in order:
         if not going[i]:
             continue
         kept = followed.setdefault(int(rows[i]), [])
-        place = np.abs(near.theta[kept] - near.theta[i]).max(axis=1) < _SAME_PLACE
+        place = np.abs(theta[kept] - theta[i]).max(axis=1) < _SAME_PLACE
         # Starts of a model that is too rich end all along one flat valley, at one cost.
-        cost = near.cost[i] <= _SAME_COST * near.cost[kept]
-        if (place | cost).any():
+        if (place | (cost[i] <= _SAME_COST * cost[kept])).any():
             going[i] = False
         else:
             kept.append(int(i))
@@ -143,7 +153,7 @@ def approach(
         starts,
         low[rows],
         high[rows],
-        tolerance=_APPROACH,
+        tolerance=APPROACH,
         rows=rows,
         check=check,
     )
@@ -167,13 +177,31 @@ def finish(
     )
 
 
-def search(model: CoatingModel, batch: Batch, check: Callable[[], None] | None = None) -> Solution:
-    """The best fit of `model` to each spectrum of the batch, from the spectrum's own starts."""
+def search(
+    model: CoatingModel,
+    batch: Batch,
+    check: Callable[[], None] | None = None,
+    *,
+    offers: Sequence[FloatArray] | None = None,
+) -> Solution:
+    """The best fit of `model` to each spectrum of the batch, from the spectrum's own starts
+    and from its `offers` (K, P) that may lie near an optimum already."""
     offered = candidates(model, batch.frequency_hz, batch.impedance, batch.used)
-    starts, rows = best_starts(batch.thinned().objective(model), offered, _STARTS)
+    helped = offers is not None and any(map(len, offers))
+    starts, rows = best_starts(
+        batch.thinned().objective(model), offered, _STARTS_WITH_HELP if helped else _STARTS
+    )
     near = approach(model, batch, starts, rows, check)
-    going = _worth_going_on(near, rows)
-    found = finish(model, batch, near.theta[going], rows[going], check)
+    theta, cost = near.theta, near.cost
+    if offers is not None and helped:
+        further = np.clip(np.concatenate(offers), *model.bounds)
+        place = np.repeat(np.arange(len(offers)), [len(offer) for offer in offers])
+        rough = batch.thinned().objective(model, logarithmic=True)
+        theta = np.concatenate([theta, further])
+        cost = np.concatenate([cost, rough.cost(further, place)])
+        rows = np.concatenate([rows, place])
+    going = _worth_going_on(theta, cost, rows)
+    found = finish(model, batch, theta[going], rows[going], check)
     return _best_of(found, rows[going], batch.impedance.shape[0])
 
 
@@ -196,18 +224,27 @@ def ask_neighbours(
     check: Callable[[], None] | None = None,
 ) -> Solution:
     """Start once more from other solutions of the same model, (K, P) for each row or None, and keep
-    what is better."""
-    rows = [i for i, offer in enumerate(neighbours) if offer is not None and len(offer)]
-    if not rows:
+    what is better. Of those that start out not far worse than what was found, the best two of each
+    row are followed."""
+    size = found.cost.size
+    counts = [0 if offer is None else len(offer) for offer in neighbours]
+    if not any(counts):
         return found
     low, high = model.bounds
     objective = batch.objective(model)
-    offers = [offer for offer in neighbours if offer is not None and len(offer)]
-    place = np.repeat(np.array(rows, dtype=np.intp), [len(offer) for offer in offers])
+    offers = np.concatenate([offer for offer in neighbours if offer is not None and len(offer)])
+    place = np.repeat(np.arange(size), counts)
+    begins = objective.cost(np.clip(offers, low, high), place)
+    chosen = _best_few(begins, place, _OFFERS)
+    chosen = chosen[begins[chosen] < _FAR_OFF * found.cost[place[chosen]]]
+    if not chosen.size:
+        return found
+    place = place[chosen]
     again = minimise(
-        objective, np.concatenate(offers), low, high, tolerance=_COMPARE, rows=place, check=check
+        objective, offers[chosen], low, high, tolerance=_COMPARE, rows=place, check=check
     )
-    best = _best_of(again, np.searchsorted(np.array(rows), place), len(rows))
+    rows = np.unique(place)
+    best = _best_of(again, np.searchsorted(rows, place), rows.size)
     full = Solution(
         found.theta.copy(),
         np.full_like(found.cost, np.inf),

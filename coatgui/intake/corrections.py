@@ -10,7 +10,7 @@ from collections.abc import Callable
 from dataclasses import replace
 
 from coatgui.intake.errors import Unreadable
-from coatgui.intake.lists import number_in, rows_of
+from coatgui.intake.lists import row_number, list_rows
 from coatgui.intake.names import panel_and_hours
 from coatgui.intake.proposals import Correction, DryRun, Proposal
 from coatgui.intake.reading import first_guess
@@ -92,7 +92,7 @@ def read_corrections(
     is left out. Raises Unreadable with the line."""
     proposals = {(p.file, p.part): p for p in run.proposals}
     result: dict[tuple[str, str], Correction] = {}
-    for line, row in enumerate(rows_of(content, "the corrections", "file"), start=2):
+    for line, row in enumerate(list_rows(content, "the corrections", "file"), start=2):
         cells = {name: _plain(cell) for name, cell in row.items()}
         key = (cells["file"], cells.get("part", ""))
         proposal = proposals.get(key)
@@ -101,7 +101,7 @@ def read_corrections(
         answer = cells.get("leave_out", "").casefold()
         if answer not in (*_YES, *_NO):
             raise Unreadable(f"Line {line}: leave_out is '{answer[:20]}'; write yes or no.")
-        panel, hours = cells.get("panel", ""), number_in(cells, "exposure_h", line)
+        panel, hours = cells.get("panel", ""), row_number(cells, "exposure_h", line)
         if hours is not None and hours < 0:
             raise Unreadable(f"Line {line}: exposure_h is below zero.")
         try:

@@ -15,15 +15,18 @@ from coatgui.intake.decode import LARGEST_FILE
 from coatgui.intake.errors import Unclear, Unreadable
 from coatgui.intake.lists import ListedReading, read_panels, read_readings
 from coatgui.intake.proposals import Correction, DryRun, Proposal, Standing, Told
+from coatgui.intake.ratings_list import read_ratings
 from coatgui.intake.reading import read_as_told, read_spectra
 from coatgui.intake.spectra import Piece
 from coatgui.intake.template import read_lists
 from coatgui.intake.workbook import is_workbook
 from coatgui.progress import Progress
-from coatgui.records import Found, FoundPanel, FoundReading, Refusal, Source, Spectrum
+from coatgui.records import Found, FoundPanel, FoundRating, FoundReading, Refusal, Source, Spectrum
 
 SPECTRUM_ENDINGS = (".csv", ".txt", ".dat", ".tsv", ".xlsx")
-_PANEL_LIST, _READINGS_LIST, _OPEN_LEAD = "panels.csv", "readings.csv", "open_lead"
+_PANEL_LIST, _READINGS_LIST, _RATINGS_LIST = "panels.csv", "readings.csv", "ratings.csv"
+_OPEN_LEAD = "open_lead"
+_LISTS = (_PANEL_LIST, _READINGS_LIST, _RATINGS_LIST)
 _DEEPEST = 12
 _MOST_FILES = 50_000
 _MOST_BYTES = 2_000_000_000
@@ -106,6 +109,7 @@ class _Run:
         self._told = told
         self._panels: tuple[FoundPanel, ...] = ()
         self._listed: dict[tuple[str, str], ListedReading] = {}
+        self._ratings: tuple[FoundRating, ...] = ()
         self._open_lead: tuple[Spectrum, Source] | None = None
         self._readings: list[FoundReading] = []
         self._refused: dict[Refusal, None] = {}
@@ -118,7 +122,7 @@ class _Run:
         # What lists say is needed for all others; a workbook may hold lists.
         lists_first = sorted(
             files,
-            key=lambda p: p.name not in (_PANEL_LIST, _READINGS_LIST) and p.suffix != ".xlsx",
+            key=lambda p: p.name not in _LISTS and p.suffix != ".xlsx",
         )
         for number, path in enumerate(lists_first):
             progress.at("Reading files", number, len(files))
@@ -135,6 +139,7 @@ class _Run:
             self._open_lead,
             tuple(self._refused),
             self._raw,
+            self._ratings,
         )
         proposals = sorted(self._proposals, key=lambda p: order.get(p.file, len(order)))
         return DryRun(tuple(proposals), found)
@@ -170,9 +175,14 @@ class _Run:
         if path.name == _READINGS_LIST:
             self._take_listed(read_readings(data, name), name)
             return
-        if is_workbook(data) and (lists := read_lists(data)) is not None:
+        if path.name == _RATINGS_LIST:
+            self._take_ratings(read_ratings(data, name), name)
+            return
+        if is_workbook(data) and (lists := read_lists(data, name)) is not None:
             self._take_panels(lists.panels, name)
             self._take_listed(lists.readings, name)
+            if lists.ratings:
+                self._take_ratings(lists.ratings, name)
             return
         digest = hashlib.sha256(data).hexdigest()
         if digest in self._first_of:
@@ -207,6 +217,10 @@ class _Run:
     def _take_listed(self, listed: dict[tuple[str, str], ListedReading], name: str) -> None:
         self._listed.update(listed)
         self._propose(name, Standing.LIST, f"a list of {_count(len(listed), 'reading')}")
+
+    def _take_ratings(self, ratings: tuple[FoundRating, ...], name: str) -> None:
+        self._ratings += ratings
+        self._propose(name, Standing.LIST, f"a list of {_count(len(ratings), 'rating')}")
 
     def _take_open_lead(self, piece: Piece, name: str, digest: str) -> None:
         if piece.per_area:

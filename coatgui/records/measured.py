@@ -180,6 +180,20 @@ class FoundReading:
 
 
 @dataclass(frozen=True, slots=True)
+class FoundRating:
+    """A row of a ratings list: a visual rating before its panel belongs to a campaign."""
+
+    file: str
+    panel: str
+    exposure_h: float
+    scale: str
+    value: str
+    edition: str = ""
+    rater: str = ""
+    remark: str = ""
+
+
+@dataclass(frozen=True, slots=True)
 class Found:
     """All that intake made of a folder or of some files.
 
@@ -191,3 +205,4 @@ class Found:
     open_lead: tuple[Spectrum, Source] | None = None
     refused: tuple[Refusal, ...] = ()
     raw: dict[str, bytes] = field(default_factory=dict)
+    ratings: tuple[FoundRating, ...] = ()

@@ -5,7 +5,7 @@ from __future__ import annotations
 
 import shutil
 import tempfile
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, replace
 from datetime import datetime
 from pathlib import Path
@@ -101,6 +101,7 @@ class Incoming(QObject):
         self.runs: list[DryRun] = []
         self.title = ""  # of the campaign to be made; "" where files are added to one
         self._pasted: Path | None = None
+        self._folders: list[Path] = []  # made for what waits, and removed with it
         self._job: Job | None = None
         self._wanted: list[Batch] = []
         self._new_title = ""
@@ -164,10 +165,20 @@ class Incoming(QObject):
             return
         if self._pasted is None:
             self._pasted = Path(tempfile.mkdtemp(prefix="coatgui-pasted-"))
+            self._folders.append(self._pasted)
         number = len(list(self._pasted.iterdir())) + 1
         path = self._pasted / f"pasted {datetime.now():%Y-%m-%d %H.%M.%S} no {number}.txt"
         path.write_text(text, encoding="utf-8", newline="")
         self.bring_in([path])
+
+    def bring_in_bytes(self, files: Mapping[str, bytes]) -> None:
+        """Look at files that are no longer where they came from, by their names."""
+        folder = Path(tempfile.mkdtemp(prefix="coatgui-again-"))
+        self._folders.append(folder)
+        for name, content in files.items():
+            path = folder / (Path(name.replace("\\", "/")).name or "file")
+            path.write_bytes(content)
+        self.bring_in(sorted(folder.iterdir()))
 
     def _campaign_changed(self) -> None:
         """What was to go into one campaign does not go into another."""
@@ -271,8 +282,8 @@ class Incoming(QObject):
         """Forget the proposals; nothing was taken."""
         self._stop()
         self.batches, self.runs, self.title, self._wanted = [], [], "", []
-        if self._pasted is not None:
-            shutil.rmtree(self._pasted, ignore_errors=True)
-            self._pasted = None
+        for folder in self._folders:
+            shutil.rmtree(folder, ignore_errors=True)
+        self._folders, self._pasted = [], None
         self.looking.emit(False)
         self.changed.emit()

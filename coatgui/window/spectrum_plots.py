@@ -17,8 +17,11 @@ from PySide6.QtCore import QEvent, QObject, QPointF, QRectF, Qt, Signal
 from PySide6.QtGui import QColor, QFocusEvent, QKeyEvent, QPainter, QPaintEvent
 from PySide6.QtWidgets import QGridLayout, QWidget
 
+from coatgui.fitting.views import FitBand, Part
 from coatgui.records import Fit, Spectrum
 from coatgui.window.axis import Plot
+from coatgui.window.fit_drawn import FitDrawn
+from coatgui.window.key import Entry, Key
 from coatgui.window.numbers import prefixed
 from coatgui.window.palette import Colours, time_colour
 
@@ -97,6 +100,9 @@ class SpectrumPlots(QWidget):
         self._rings = [pg.ScatterPlotItem() for _ in self.plots]
         self._lines = [pg.InfiniteLine(angle=90) for _ in (0, 1, 3)]
         self._place_items()
+        self.beside_fit = FitDrawn(self.modulus, self.phase, self.plane)
+        self.key = Key("Marks and lines of the spectrum")
+        grid.addWidget(self.key, 2, 0, 1, 2)
         for plot in self.plots:
             plot.setFocusPolicy(Qt.FocusPolicy.NoFocus)
             plot.viewport().installEventFilter(self)
@@ -137,6 +143,7 @@ class SpectrumPlots(QWidget):
             for curve in self._fits:
                 curve.setData([], [])
             self.point_at(-1)
+            self.key.show_entries([], tone.ink)
             return
         used, places = drawn.used, drawn.places()
         ring = pg.mkPen(tone.slate, width=1.2)
@@ -157,8 +164,34 @@ class SpectrumPlots(QWidget):
             item.setPen(pg.mkPen(tone.verdigris, width=2))
             item.setBrush(None)
         self.point_at(self.place if same else -1)
+        self._show_key(tone)
         if not same:
             self.whole_view()
+
+    def show_beside_fit(
+        self, band: FitBand | None, parts: Sequence[Part], frequency_hz: np.ndarray, tone: Colours
+    ) -> None:
+        """Draw the band and the parts of the fit that is shown."""
+        self.beside_fit.show(band, parts, frequency_hz, tone)
+        self._show_key(tone)
+
+    def _show_key(self, tone: Colours) -> None:
+        drawn = self.drawn
+        if drawn is None:
+            return
+        entries = [Entry("circle", tone.slate, "measured")]
+        if not drawn.used.all():
+            entries.append(Entry("cross", tone.second, "left out"))
+        if drawn.fit is not None:
+            entries += [
+                Entry("line", tone.verdigris, "fit"),
+                *self.beside_fit.entries(tone),
+                Entry("circle", tone.slate, "residual of Z′"),
+                Entry("triangle", tone.amber, "residual of Z″"),
+            ]
+        if self._beside:
+            entries.append(Entry("line", time_colour(0.5, tone.dark).name(), "other spectra"))
+        self.key.show_entries(entries, tone.ink)
 
     def _draw_fit(self, drawn: Drawn, tone: Colours) -> None:
         x, off = np.log10(drawn.spectrum.frequency_hz), drawn.residual()

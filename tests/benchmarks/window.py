@@ -30,7 +30,7 @@ from PySide6.QtWidgets import QApplication, QGridLayout, QWidget
 from coatgui.assessment.assess import conclude
 from coatgui.campaign import CampaignFile
 from coatgui.progress import Progress
-from coatgui.records import Assessment, Found, FoundReading, Questions, Source
+from coatgui.records import Assessment, Found, FoundReading, Source
 from coatgui.shipped import sample_panels
 from coatgui.window import palette
 from coatgui.window.main_window import MainWindow
@@ -229,7 +229,7 @@ def main() -> None:
     say(f"start to a usable window, over {bare:.2f} s of bare imports", more, "s", 0.6)
 
     campaign, drawn = large_campaign()
-    assessment: Assessment = conclude(campaign, drawn, Progress(), Questions())
+    assessment: Assessment = conclude(campaign, drawn, Progress())
     path = folder / "large.coatgui"
     CampaignFile.create(path, campaign, {}).close()
     ids = [r.reading_id for r in campaign.readings]

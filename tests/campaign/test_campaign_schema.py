@@ -89,13 +89,18 @@ def test_a_dump_makes_the_same_campaign_again(file: CampaignFile, tmp_path: Path
 
 
 # What a version did not know yet, with what it becomes when an older file is opened.
+_NOTHING_ASKED: dict[str, Any] = dict.fromkeys(
+    ("limits", "comparisons", "projections", "electrolytes", "regimes"), ()
+)
 ADDED_TO_SETTINGS: dict[str, dict[str, Any]] = {
     "version_1": {
         "input_resistance_ohm": None,
         "input_capacitance_f": None,
         "take_leads_away": False,
         "own_models": (),
-    }
+        **_NOTHING_ASKED,
+    },
+    "version_2": _NOTHING_ASKED,
 }
 
 

@@ -128,7 +128,7 @@ def test_other_places_are_copied_as_tables(full: MainWindow, place: int, number:
 
 
 def test_where_there_is_no_plot_it_is_said(full: MainWindow) -> None:
-    full.go(3)
+    full.go(5)
     press(full, Qt.Key.Key_C)
     assert "no plot" in full.trouble.words.text()
 

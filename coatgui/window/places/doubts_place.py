@@ -49,9 +49,13 @@ class DoubtsPlace(Place):
     """`opened` asks for the reading's own place."""
 
     noun, question = "Doubts", "What needs a person's eye?"
+    promise = "Findings to settle, and files that were refused, stand here."
+    note = "kramers_kronig"
+    has_strip = False
     opened = Signal()
 
     def __init__(self, desk: Desk, tone: Colours) -> None:
+        self.doubts: list[Doubt] = []
         super().__init__(desk, tone)
         self.counted = plain_label()
         self.column.addWidget(self.counted)
@@ -69,7 +73,6 @@ class DoubtsPlace(Place):
         splitter.addWidget(self._evidence())
         splitter.setSizes([440, 380])
         self.column.addWidget(splitter, 1)
-        self.doubts: list[Doubt] = []
 
     def _evidence(self) -> QWidget:
         page = QWidget()
@@ -126,8 +129,21 @@ class DoubtsPlace(Place):
             self.list.addItem(item)
         self.list.blockSignals(False)
         self._count()
+        self.settle()
         self.list.setCurrentRow(min(max(row, 0), len(self.doubts) - 1))
         self._show_evidence()
+
+    def settle(self) -> None:
+        """An empty list says what would be on it."""
+        campaign = self.desk.campaign
+        if campaign is None or campaign.refused or (self.desk.assessment and self.doubts):
+            self.show_content()
+        elif not campaign.readings:
+            self.lack_files()
+        elif self.desk.assessment is None:
+            self.lack_judging()
+        else:
+            self.show_empty(f"Nothing needs a person's eye. {self.promise}", "", None)
 
     def _count(self) -> None:
         refused = sum(1 for doubt in self.doubts if doubt.refusal)
@@ -144,6 +160,10 @@ class DoubtsPlace(Place):
     def _doubt(self) -> Doubt | None:
         row = self.list.currentRow()
         return self.doubts[row] if 0 <= row < len(self.doubts) else None
+
+    def topic(self) -> str:
+        doubt = self._doubt()
+        return doubt.finding.code if doubt is not None and doubt.finding is not None else self.note
 
     def _show_evidence(self, _row: int = -1) -> None:
         doubt = self._doubt()

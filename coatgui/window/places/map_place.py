@@ -309,6 +309,10 @@ class Cells(QWidget):
 
 class MapPlace(Place):
     noun, question = "Map", "Where does the campaign stand?"
+    needs = "readings"
+    promise = "Here a map will show every panel at every exposure time, a cell for each reading."
+    note = "modulus"
+    leaves_facts = True
 
     def __init__(self, desk: Desk, tone: Colours) -> None:
         super().__init__(desk, tone)
