@@ -10,7 +10,7 @@ from collections.abc import Callable
 from dataclasses import replace
 
 from coatgui.intake.errors import Unreadable
-from coatgui.intake.lists import row_number, list_rows
+from coatgui.intake.lists import list_rows, row_number
 from coatgui.intake.names import panel_and_hours
 from coatgui.intake.proposals import Correction, DryRun, Proposal
 from coatgui.intake.reading import first_guess
