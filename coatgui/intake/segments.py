@@ -84,7 +84,7 @@ class Segmenter:
     def text(self, row: TextRow) -> None:
         self._close()
         self._characters += len(row.raw) or sum(len(str(cell)) for cell in row.cells)
-        if self._characters > _MOST_WORDS:
+        if self._characters > _MOST_WORDS or len(self.pieces) > MOST_ODD_ROWS:
             raise Unreadable("The file is mostly words: it holds no table worth reading.")
         self.pieces.append(row)
 
