@@ -155,7 +155,8 @@ def _finish(
     if options.summary is not None:
         told = {field: getattr(options, field) for field in FIELDS}
         identification = Identification.of(campaign, **told)
-        write_summary(assessment, campaign, options.summary, identification)
+        kept = {} if cache is None else cache.photographs()
+        write_summary(assessment, campaign, options.summary, identification, kept)
     if options.figures is not None:
         write_figures(assessment, campaign, options.figures, options.figure_format)
     if options.tables is not None:

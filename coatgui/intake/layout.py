@@ -19,6 +19,14 @@ _KINDS = ("frequency", "angular_frequency", "impedance", "admittance", "capacita
 _ROWS_LOOKED_AT = 8
 _ROWS_WITH_UNITS = 60
 _MOST_WORDS_IN_HEADINGS = 60
+_LONGEST_WITH_UNITS = 1_000
+_PARTINGS = (
+    ("\t", r"\t+"),
+    (" ", r"\s{2,}|\t"),
+    (";", r"\s*;\s*"),
+    (",", r"\s*,\s*"),
+    ("|", r"\s*\|\s*"),
+)
 _OF_COMPLEX = {
     "modulus": ("real", "imaginary"),
     "admittance_modulus": ("admittance_real", "admittance_imaginary"),
@@ -144,7 +152,10 @@ def _alignments(row: TextRow, width: int, pairs: Sequence[int]) -> list[list[str
     narrow = width - len(pairs)
     ways = []
     if len(cells) != narrow and row.raw:
-        for pattern in (r"\t+", r"\s{2,}|\t", r"\s*;\s*", r"\s*,\s*", r"\s*\|\s*"):
+        for sign, pattern in _PARTINGS:
+            marks = row.raw.count(sign)
+            if marks < narrow - 1 or (marks > narrow - 1 and not sign.isspace()):
+                continue
             parted = [cell.strip() for cell in re.split(pattern, row.raw.strip())]
             if len(parted) == narrow:
                 ways.append(parted)
@@ -206,6 +217,8 @@ def _units_in(row: TextRow) -> dict[str, Unit]:
     """Units that a preamble names: "Impedance in kOhm", "Units: Hz, Ohm, deg"."""
     text = row.raw or " ; ".join(str(cell) for cell in row.cells)
     found: dict[str, Unit] = {}
+    if len(text) > _LONGEST_WITH_UNITS:
+        return found
     opening, colon, rest = text.partition(":")
     is_list = bool(colon) and re.search(r"unit|einheit|unid", opening.casefold()) is not None
     for part in re.split(r"[;,\t|]", rest if is_list else text):

@@ -22,8 +22,9 @@ MOST_COLUMNS = 256
 _MOST_TABLES = 4_000
 MOST_ODD_ROWS = 100_000
 _MOST_LABELS = 50_000
-_MOST_WORDS = 20_000_000  # characters outside tables
+_MOST_WORDS = 4_000_000  # characters outside tables
 _FEWEST_ROWS = 3
+_BEGIN_A_NUMBER = frozenset("0123456789+-−.,")
 
 
 @dataclass(frozen=True, slots=True)
@@ -83,7 +84,7 @@ class Segmenter:
     def text(self, row: TextRow) -> None:
         self._close()
         self._characters += len(row.raw) or sum(len(str(cell)) for cell in row.cells)
-        if self._characters > _MOST_WORDS:
+        if self._characters > _MOST_WORDS or len(self.pieces) > MOST_ODD_ROWS:
             raise Unreadable("The file is mostly words: it holds no table worth reading.")
         self.pieces.append(row)
 
@@ -99,7 +100,13 @@ class Segmenter:
         words: dict[int, str] = {}
         numeric = 0
         for i, cell in enumerate(cells):
-            value = cell if isinstance(cell, float) else read(cell)
+            value = (
+                cell
+                if isinstance(cell, float)
+                else read(cell)
+                if cell[:1] in _BEGIN_A_NUMBER
+                else None
+            )
             if value is None:
                 values.append(math.nan)
                 words[i] = str(cell)

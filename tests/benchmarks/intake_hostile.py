@@ -112,6 +112,9 @@ LARGE: dict[str, Callable[[], bytes]] = {
         "f;Z\n" + "\n".join(rows(SIZE // 30, "{:.6g};{:.6g}{:+.6g}j"))).encode(),
     "what looks complex": lambda: text("1;(1 (1 (1-1- 1,1,1 1j;(((((1,1)i;1-1-1-1-j\n",
         "f;Z\n" + "\n".join(rows(300, "{:.6g};{:.6g}{:+.6g}j"))),
+    "a table and then nothing but comments": lambda: text("#\n", HEAD + "\n".join(rows(60)) + "\n"),
+    "rows of many words": lambda: text("panel," * 300 + "f\n1,2,-3\n2,3,-4\n3,4,-5\n",
+        "f,Z',Z''\n" + "\n".join(rows(300, "{:.6g},{:.6g},{:.6g}"))),
     "a quotation mark at every line's end": lambda: text('1;2;"3\n', HEAD),
     "a workbook of empty rows": lambda: book(
         b"<worksheet><sheetData>" + b"<row/>" * 8_000_000 + b"</sheetData></worksheet>"),
