@@ -10,6 +10,7 @@ from __future__ import annotations
 
 import gc
 import math
+import threading
 from collections.abc import Iterator, Mapping, Sequence
 from contextlib import contextmanager
 
@@ -18,7 +19,7 @@ import numpy as np
 from coatgui.assessment.cache import ResultCache, fits_from_bytes, fits_to_bytes, series_key
 from coatgui.assessment.cautions import cautions
 from coatgui.assessment.courses import inspections
-from coatgui.assessment.decide import decide
+from coatgui.assessment.decide import by_formulation, decide
 from coatgui.assessment.drawn import Drawn
 from coatgui.assessment.events import replicate_noise
 from coatgui.assessment.film import film_facts
@@ -38,10 +39,12 @@ from coatgui.assessment.summary import (
 from coatgui.assessment.suspicion import with_suspicions
 from coatgui.fitting import fit_spectra
 from coatgui.progress import Progress, Spread, one_after_another
-from coatgui.quality import check_spectra
-from coatgui.records import Assessment, Campaign, Fit, Questions
+from coatgui.quality import check_spectra, circuit_residuals
+from coatgui.records import Assessment, Campaign, Fit
 
 _USUAL_FREQUENCY_HZ = 0.1
+_CHANGED_MEANWHILE = frozenset({"step", "drift", "departure", "repeat_differs"})
+_AT_ONCE = 1000  # readings drawn as one array, between two reports of progress
 
 
 def assess(
@@ -50,13 +53,11 @@ def assess(
     progress: Progress | None = None,
     spread: Spread = one_after_another,
     cache: ResultCache | None = None,
-    questions: Questions | None = None,
 ) -> Assessment:
-    """All that is concluded from a campaign, and the answers to further questions.
+    """All that is concluded from a campaign, and the answers to what its settings ask.
 
     Raises Cancelled at a step of `progress` where the result is no longer wanted; nothing is kept
-    then. With a `cache`, fits of panels in which nothing changed are taken from it. Raises
-    ValueError, in a sentence that can be shown, for a question that cannot be understood.
+    then. With a `cache`, fits of panels in which nothing changed are taken from it.
     """
     progress = progress or Progress()
     settings = campaign.settings
@@ -85,27 +86,44 @@ def assess(
     take_away(drawn, leads_of(campaign))
     for d, fit in zip(drawn, _fits(drawn, campaign, progress, spread, cache), strict=True):
         d.fit = fit
-    return conclude(campaign, drawn, progress, questions or Questions())
+    _look_at_residuals(drawn, campaign)
+    return conclude(campaign, drawn, progress)
 
 
-@contextmanager
-def _without_collection() -> Iterator[None]:
-    """No search for unreachable cycles meanwhile. The conclusions are some hundred thousand small
-    records that all stay and form no cycles; to go through them again and again took a third of
-    the time."""
-    collecting = gc.isenabled()
-    gc.disable()
-    try:
-        yield
-    finally:
-        if collecting:
-            gc.enable()
+class _Collection:
+    """Whether the interpreter searches for unreachable cycles; `off` may be entered by several
+    threads at once."""
+
+    def __init__(self) -> None:
+        self._lock = threading.Lock()
+        self._inside = 0
+        self._was_on = False
+
+    @contextmanager
+    def off(self) -> Iterator[None]:
+        with self._lock:
+            if self._inside == 0:
+                self._was_on = gc.isenabled()
+                gc.disable()
+            self._inside += 1
+        try:
+            yield
+        finally:
+            with self._lock:
+                self._inside -= 1
+                if self._inside == 0 and self._was_on:
+                    gc.enable()
 
 
-@_without_collection()
-def conclude(
-    campaign: Campaign, drawn: Sequence[Drawn], progress: Progress, questions: Questions
-) -> Assessment:
+# The conclusions are some hundred thousand small records that all stay and form no cycles, and
+# each search goes through all of them and the spectra again: that took a third of the time. Cycles
+# that other threads make meanwhile wait for a second or two; what is in no cycle goes at once, as
+# always.
+_collection = _Collection()
+
+
+@_collection.off()
+def conclude(campaign: Campaign, drawn: Sequence[Drawn], progress: Progress) -> Assessment:
     """The conclusions from readings that are checked and fitted, sorted by panel in the campaign's
     order and exposure time."""
     settings = campaign.settings
@@ -117,23 +135,22 @@ def conclude(
     by_panel: dict[str, list[Drawn]] = {panel_id: [] for panel_id in panels}
     for d in drawn:
         by_panel[d.reading.panel_id].append(d)
-    for done, panel in enumerate(campaign.panels):
-        progress.at("Drawing conclusions", done, len(campaign.panels))
-        draw_readings(by_panel[panel.panel_id], campaign, leads, criteria)
+    for start in range(0, len(drawn), _AT_ONCE):
+        progress.at("Drawing conclusions", start, len(drawn))
+        draw_readings(drawn[start : start + _AT_ONCE], campaign, leads, criteria)
     noise = _noise(campaign, by_panel, watched_hz)
     panel_results = []
     for panel in campaign.panels:
-        own = by_panel[panel.panel_id]
         series = draw_series(
-            own,
+            by_panel[panel.panel_id],
             panel,
             film_facts(panel),
-            settings.capacitance_frequency_hz,
+            settings,
             watched_hz,
             criteria,
             noise.get(panel.formulation_id),
         )
-        panel_results.append(panel_assessment(panel, names, series, own))
+        panel_results.append(panel_assessment(panel, names, series, by_panel[panel.panel_id]))
     for d in drawn:
         if d.fit is not None:
             d.fit = put_back(d.fit, d.reading.spectrum.frequency_hz, leads)
@@ -147,15 +164,10 @@ def conclude(
         for f in campaign.formulations
         if any(panel.formulation_id == f.formulation_id for panel in campaign.panels)
     )
-    by_formulation = {
-        f.formulation: [r for r in in_order if r.formulation == f.formulation] for f in formulations
-    }
-    counting = {
-        name: those for name, those in by_formulation.items() if any(r.counts for r in those)
-    }
-    decided = decide(counting, watched_hz, criteria, questions, panel_results)
-    progress.at("Drawing conclusions", len(panels), len(panels))
-    findings = (*campaign_findings(campaign), *own_models(campaign)[1])
+    counting = by_formulation([f.formulation for f in formulations], in_order)
+    decided = decide(campaign, counting, watched_hz, criteria, panel_results)
+    progress.at("Drawing conclusions", len(drawn), len(drawn))
+    findings = (*campaign_findings(campaign), *own_models(campaign)[1], *decided.findings)
     return Assessment(
         title=campaign.title,
         readings=in_order,
@@ -176,6 +188,21 @@ def conclude(
         rating_correlations=decided.rating_correlations,
         next_inspection=next_inspection(panel_results, in_order, criteria),
     )
+
+
+def _look_at_residuals(drawn: Sequence[Drawn], campaign: Campaign) -> None:
+    """A doubt for readings whose circuit leaves a step or a drift over, where the checks named
+    neither."""
+    fitted = [(d, d.fit) for d in drawn if d.fit is not None]
+    doubts = circuit_residuals(
+        [d.reading.spectrum for d, _ in fitted],
+        [fit for _, fit in fitted],
+        settings=campaign.settings,
+        own_models=own_models(campaign)[0],
+    )
+    for (d, _), doubt in zip(fitted, doubts, strict=True):
+        if doubt is not None and not any(f.code in _CHANGED_MEANWHILE for f in d.findings):
+            d.findings.append(doubt)
 
 
 def _noise(

@@ -25,17 +25,17 @@ STP, 1993) and can differ by decades, so their ends are given as a bracket.
 from __future__ import annotations
 
 import math
-import re
 from collections.abc import Sequence
-from functools import cache
+from functools import cache, lru_cache
 
 import numpy as np
 
 from coatgui.assessment.mixing import VACUUM_F_PER_CM
 from coatgui.assessment.modulus import Grid
+from coatgui.assessment.presets import recognised
 from coatgui.assessment.rules import table
 from coatgui.assessment.words import counted, hertz, power_of_ten
-from coatgui.records import ActiveArea, Bound, Breakpoint, Quantity
+from coatgui.records import ActiveArea, Bound, Breakpoint, Electrolyte, Quantity
 
 _CM_PER_UM = 1e-4
 
@@ -107,14 +107,15 @@ def _bare_metal() -> tuple[float, float]:
 
 
 @cache
-def pore_resistivity(electrolyte: str) -> tuple[float | None, str]:
+def pore_resistivity(
+    electrolyte: str, own: tuple[Electrolyte, ...] = ()
+) -> tuple[float | None, str]:
     """Resistivity of the panel's electrolyte in Ω cm and its name; None where it is known that
-    there is none to use. An electrolyte that is not recognised gets the usual one."""
-    words = set(re.findall(r"[0-9.]+|[^\W\d_]+", electrolyte.lower().replace(",", ".")))
-    for entry in table("electrolytes")["electrolyte"]:
-        if any(words.issuperset(needed) for needed in entry["any_of"]):
-            value = entry.get("resistivity_ohm_cm")
-            return (None if value is None else float(value)), str(entry["name"])
+    there is none to use. An electrolyte that neither the campaign nor the program recognises gets
+    the usual one."""
+    known = recognised(electrolyte, own)
+    if known is not None:
+        return known.resistivity_ohm_cm, known.name
     usual = float(table("interface")["default_resistivity"]["value"])
     return usual, f"{usual:g} Ω cm assumed"
 
@@ -126,22 +127,20 @@ def active_area(
     thickness_um: float | None,
     permittivity: float | None,
     electrolyte: str,
+    own: tuple[Electrolyte, ...] = (),
 ) -> ActiveArea | None:
     """Active share of the area. Quantities per cm²; routes that lack what they need are left out,
     and None where none is left. Shares are between 0 and 1; a route that gives more than the whole
-    area has failed and is said so."""
-    resistivity, named = pore_resistivity(electrolyte)
+    area has failed and is said so. `own` are the campaign's electrolytes."""
+    resistivity, named = pore_resistivity(electrolyte, own)
     routes: list[tuple[str, Quantity]] = []
     measured = None if found is None or found.valid is False else found.measured_hz
     if measured is not None and permittivity and resistivity:
-        whole_hz = 1 / (2 * math.pi * permittivity * VACUUM_F_PER_CM * resistivity)
+        whole_hz, how = _breakpoint_of_all(permittivity, resistivity, named)
         share = measured / whole_hz
-        whole = hertz(float(f"{whole_hz:.2g}"))
-        how = f"f_b/f_b⁰, f_b⁰ = {whole} with ε_r = {permittivity:.1f}, {named}"
         routes.append(("breakpoint", Quantity(share, share, share, Bound.TWO_SIDED, "", how)))
-    if interface_capacitance is not None and _held(interface_capacitance):
+    if interface_capacitance is not None and (value := _held(interface_capacitance)):
         low, high = _bare_metal()
-        value = interface_capacitance.value or 0.0
         routes.append(
             (
                 "double layer",
@@ -155,9 +154,13 @@ def active_area(
                 ),
             )
         )
-    if thickness_um and resistivity and pore_resistance is not None and _held(pore_resistance):
+    if (
+        thickness_um
+        and resistivity
+        and pore_resistance is not None
+        and (value := _held(pore_resistance))
+    ):
         path = resistivity * thickness_um * _CM_PER_UM
-        value = pore_resistance.value or 0.0
         routes.append(
             (
                 "pores",
@@ -174,6 +177,14 @@ def active_area(
     return _bracketed(routes) if routes else None
 
 
+@lru_cache(maxsize=256)
+def _breakpoint_of_all(permittivity: float, resistivity: float, named: str) -> tuple[float, str]:
+    """f_b⁰ in Hz, and how a share follows from it: the same for all readings of a panel."""
+    whole_hz = 1 / (2 * math.pi * permittivity * VACUUM_F_PER_CM * resistivity)
+    whole = hertz(float(f"{whole_hz:.2g}"))
+    return whole_hz, f"f_b/f_b⁰, f_b⁰ = {whole} with ε_r = {permittivity:.1f}, {named}"
+
+
 def _bracketed(routes: list[tuple[str, Quantity]]) -> ActiveArea:
     failed, kept = [], []
     low, high = 1.0, 0.0
@@ -182,7 +193,9 @@ def _bracketed(routes: list[tuple[str, Quantity]]) -> ActiveArea:
         if value > 1:
             failed.append(name)
         low, high = min(low, least), max(high, most)
-        kept.append((name, Quantity(min(value, 1.0), least, most, q.bound, q.unit, q.method)))
+        if most != q.high or value > 1:
+            q = Quantity(min(value, 1.0), least, most, q.bound, q.unit, q.method)
+        kept.append((name, q))
     count = len(kept)
     between = f"Between {power_of_ten(low)} and {power_of_ten(high)}"
     said = f"{between} of the area, by {counted(count, 'route')}."

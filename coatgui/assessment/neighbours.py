@@ -15,194 +15,236 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator, Mapping, Sequence
+from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 from coatgui.assessment.rules import rule
 from coatgui.assessment.words import hours
-from coatgui.records import Campaign, ComplexArray, Finding, Panel, Reading, Severity
+from coatgui.records import Campaign, ComplexArray, Finding, FloatArray, Panel, Reading, Severity
 
 _FREQUENCIES = 12
 _DECADES = 2.0  # that all readings must share
 _FEWEST_PANELS = 3  # whose changes have a median
 _UNITS = {1e3: "kΩ", 1e6: "MΩ"}
+_NONE = -1  # in place of a reading
+Places = NDArray[np.intp]
+
+
+def shared_logarithms(
+    readings: Sequence[Reading], areas: Mapping[str, float | None]
+) -> tuple[list[Reading], ComplexArray]:
+    """The readings with two usable points or more, and their ln Z, per area where the panel has
+    one, (N, F) on F frequencies that all readings share; none where they share too few decades."""
+    if not readings:
+        return [], np.empty((0, _FREQUENCIES), dtype=np.complex128)
+    fast = min(float(r.spectrum.frequency_hz[0]) for r in readings)
+    slow = max(float(r.spectrum.frequency_hz[-1]) for r in readings)
+    if fast < slow * 10**_DECADES:
+        return [], np.empty((0, _FREQUENCIES), dtype=np.complex128)
+    wanted = np.linspace(math.log(slow), math.log(fast), _FREQUENCIES)
+    # Readings with the same usable points on one grid of frequencies are interpolated together.
+    alike: dict[tuple[bytes, bytes], list[int]] = {}
+    for place, reading in enumerate(readings):
+        use = reading.spectrum.impedance_ohm != 0
+        use[[p for p, _ in reading.left_out if 0 <= p < use.size]] = False
+        key = reading.spectrum.frequency_hz.tobytes(), use.tobytes()
+        alike.setdefault(key, []).append(place)
+    found = np.full((len(readings), _FREQUENCIES), np.nan, dtype=np.complex128)
+    for (frequency, points), places in alike.items():
+        use = np.frombuffer(points, dtype=np.bool_)
+        if use.sum() >= 2:
+            x = np.log(np.frombuffer(frequency)[use])[::-1]
+            impedance = np.array([readings[place].spectrum.impedance_ohm for place in places])
+            found[places] = _interpolated(wanted, x, impedance[:, use][:, ::-1])
+    size = np.log([areas[r.panel_id] or 1.0 for r in readings])
+    kept = np.flatnonzero(~np.isnan(found[:, 0]))
+    return [readings[place] for place in kept.tolist()], found[kept] + size[kept, np.newaxis]
+
+
+def _interpolated(wanted: FloatArray, x: FloatArray, impedance: ComplexArray) -> ComplexArray:
+    """ln Z (B, F) at the wanted ln f from impedances (B, N) at ascending x; modulus and phase are
+    interpolated, and held at the ends."""
+    low = np.clip(np.searchsorted(x, wanted, side="right") - 1, 0, x.size - 2)
+    step = x[low + 1] - x[low]
+    share = np.where(step > 0, np.clip((wanted - x[low]) / np.maximum(step, 1e-300), 0.0, 1.0), 1.0)
+    below, above = impedance[:, low], impedance[:, low + 1]
+    modulus = (1 - share) * np.log(np.abs(below)) + share * np.log(np.abs(above))
+    phase = (1 - share) * np.angle(below) + share * np.angle(above)
+    return np.asarray(modulus + 1j * phase, dtype=np.complex128)
 
 
 class Courses:
-    """ln Z (per area where there is one) of the readings of each panel, in order of time."""
+    """ln Z of the readings of each panel, in order of time.
+
+    The readings lie panel by panel in `readings`, `hour` (N,) and `logarithm` (N, F). Panels are
+    rows: `hours` (P, T) holds their exposure times, infinite behind the last; `begin` and `count`
+    (P,) say where a panel's readings begin and how many there are.
+    """
 
     def __init__(self, campaign: Campaign, counting: set[str], limits: Mapping[str, float]) -> None:
         self.limits = limits
         self.panels = {panel.panel_id: panel for panel in campaign.panels}
-        self.readings = [r for r in campaign.readings if r.reading_id in counting]
-        self.series: dict[str, list[Reading]] = {}
-        for reading in sorted(self.readings, key=lambda r: r.exposure_h):
-            self.series.setdefault(reading.panel_id, []).append(reading)
+        self.row = {panel_id: row for row, panel_id in enumerate(self.panels)}
+        there = [r for r in campaign.readings if r.reading_id in counting]
+        # The first of two readings at one time stays the first.
+        self.order = {r.reading_id: place for place, r in enumerate(there)}
+        there.sort(key=lambda r: (self.row[r.panel_id], r.exposure_h))
+        areas = {panel_id: panel.area_cm2 for panel_id, panel in self.panels.items()}
+        self.readings, self.logarithm = shared_logarithms(there, areas)
         self.same = 1 + rule("inspection.same_within")
-        self.logarithms = self._logarithms()
-        self._changes: dict[tuple[str, float, float], ComplexArray | float] = {}
+        self.hour = np.array([r.exposure_h for r in self.readings], dtype=np.float64)
+        self.panel = np.array([self.row[r.panel_id] for r in self.readings], dtype=np.intp)
+        self.count = np.bincount(self.panel, minlength=len(self.panels))
+        self.begin = np.cumsum(self.count) - self.count
+        self.hours = np.full((len(self.panels), int(self.count.max(initial=0))), np.inf)
+        self.hours[self.panel, np.arange(self.panel.size) - self.begin[self.panel]] = self.hour
+        self.before, self.after = self._beside_each()
+        self._changes: dict[tuple[float, float], tuple[Places, FloatArray]] = {}
 
-    def _logarithms(self) -> dict[str, ComplexArray]:
-        if not self.readings:
-            return {}
-        fast = min(float(r.spectrum.frequency_hz[0]) for r in self.readings)
-        slow = max(float(r.spectrum.frequency_hz[-1]) for r in self.readings)
-        if fast < slow * 10**_DECADES:
-            return {}
-        wanted = np.linspace(math.log(slow), math.log(fast), _FREQUENCIES)
-        result = {}
-        for reading in self.readings:
-            left_out = [p for p, _ in reading.left_out]
-            use = reading.spectrum.impedance_ohm != 0
-            use[[p for p in left_out if 0 <= p < use.size]] = False
-            if use.sum() < 2:
-                continue
-            x = np.log(reading.spectrum.frequency_hz[use])[::-1]
-            z = reading.spectrum.impedance_ohm[use][::-1]
-            modulus = np.interp(wanted, x, np.log(np.abs(z)))
-            phase = np.interp(wanted, x, np.angle(z))
-            area = self.panels[reading.panel_id].area_cm2 or 1.0
-            result[reading.reading_id] = modulus + math.log(area) + 1j * phase
-        return result
+    # --- what is expected ------------------------------------------------------------------
 
-    def expected(
-        self, panel_id: str, exposure_h: float, without: str = ""
-    ) -> tuple[ComplexArray, float] | None:
-        """What a panel's other readings leave to expect at a time between two of them, and how far
-        these two are apart. None at the ends of a series. Readings of the same inspection are left
-        aside."""
-        earlier, later = self._sides(panel_id, exposure_h, without)
-        if not earlier or not later:
-            return None
-        before, after = earlier[-1], later[0]
-        first, last = (self.logarithms[r.reading_id] for r in (before, after))
-        start, now, end = (
-            math.log(max(t, 1e-3)) for t in (before.exposure_h, exposure_h, after.exposure_h)
+    def beside(self, exposure_h: float) -> tuple[Places, Places]:
+        """Each panel's last reading before an inspection and its first after it, (P,) places."""
+        earlier = (self.hours * self.same < exposure_h).sum(axis=1)
+        later = (self.hours <= exposure_h * self.same).sum(axis=1)
+        return (
+            np.where(earlier > 0, self.begin + earlier - 1, _NONE),
+            np.where(later < self.count, self.begin + later, _NONE),
         )
-        share = (now - start) / (end - start)
+
+    def _beside_each(self) -> tuple[Places, Places]:
+        """The same for every reading in its own panel, (N,)."""
+        before, after = np.full((2, self.hour.size), _NONE)
+        for begin, count in zip(self.begin.tolist(), self.count.tolist(), strict=True):
+            own = self.hour[begin : begin + count]
+            earlier = np.searchsorted(own * self.same, own, side="left")
+            later = np.searchsorted(own, own * self.same, side="right")
+            stretch = slice(begin, begin + count)
+            before[stretch] = np.where(earlier > 0, begin + earlier - 1, _NONE)
+            after[stretch] = np.where(later < count, begin + later, _NONE)
+        return before, after
+
+    def between(
+        self, before: Places, after: Places, exposure_h: FloatArray | float
+    ) -> tuple[ComplexArray, FloatArray]:
+        """What readings before and after leave to expect (B, F), and how far these are apart."""
+        first, last = self.logarithm[before], self.logarithm[after]
+        start, now, end = (
+            np.log(np.maximum(t, 1e-3)) for t in (self.hour[before], exposure_h, self.hour[after])
+        )
+        share = ((now - start) / (end - start))[:, np.newaxis]
         return (1 - share) * first + share * last, _apart(first, last)
 
-    def _sides(
-        self, panel_id: str, exposure_h: float, without: str = ""
-    ) -> tuple[list[Reading], list[Reading]]:
-        """A panel's readings before and after an inspection."""
-        own = [
-            r
-            for r in self.series.get(panel_id, ())
-            if r.reading_id != without and r.reading_id in self.logarithms
-        ]
-        earlier = [r for r in own if r.exposure_h * self.same < exposure_h]
-        return earlier, [r for r in own if r.exposure_h > exposure_h * self.same]
-
-    def expected_at_end(
-        self, panel_id: str, exposure_h: float, without: str = ""
+    def at_end(
+        self, row: int, before: int, after: int, exposure_h: float
     ) -> tuple[ComplexArray, float] | None:
-        """What a panel's other readings leave to expect at a time before or after all of them, and
-        how much is in motion there: between the two nearest, or in the other panels."""
-        earlier, later = self._sides(panel_id, exposure_h, without)
-        if earlier and later:
+        """What a panel's readings leave to expect at a time before or after all of them, and how
+        much is in motion there: between the two nearest, or in the other panels."""
+        begin, end = self.begin[row], self.begin[row] + self.count[row]
+        nearest, next_to = (before, before - 1) if after == _NONE else (after, after + 1)
+        if nearest == _NONE or not begin <= next_to < end:
             return None
-        nearest = [*reversed(earlier), *later][:2]
-        if len(nearest) < 2:
-            return None
-        first, second = (self.logarithms[r.reading_id] for r in nearest)
-        common = self._common_change(panel_id, nearest[0].exposure_h, exposure_h)
-        return first + common, max(_apart(first, second), _apart(common, 0.0))
+        common = self._common_change(row, float(self.hour[nearest]), exposure_h)
+        first, second = self.logarithm[nearest], self.logarithm[next_to]
+        return first + common, max(float(_apart(first, second)), float(_apart(common, 0.0)))
 
-    def _common_change(self, but: str, start_h: float, end_h: float) -> ComplexArray | float:
+    def _common_change(self, but: int, start_h: float, end_h: float) -> ComplexArray:
         """Median of the changes of the other panels from one inspection to another; 0 where too few
         were read at both."""
-        if (but, start_h, end_h) in self._changes:
-            return self._changes[but, start_h, end_h]
-        changes = []
-        for panel_id, series in self.series.items():
-            those = [r for r in series if r.reading_id in self.logarithms]
-            start = [r for r in those if self._one_inspection(r.exposure_h, start_h)]
-            end = [r for r in those if self._one_inspection(r.exposure_h, end_h)]
-            if panel_id != but and start and end:
-                last, first = (self.logarithms[r[0].reading_id] for r in (end, start))
-                changes.append(last - first)
-        result: ComplexArray | float = 0.0
-        if len(changes) >= _FEWEST_PANELS:
-            result = np.median(np.real(changes), axis=0) + 1j * np.median(np.imag(changes), axis=0)
-        self._changes[but, start_h, end_h] = result
-        return result
+        if (start_h, end_h) not in self._changes:
+            start, end = self._first_at(start_h), self._first_at(end_h)
+            both = np.flatnonzero((start != _NONE) & (end != _NONE))
+            change = self.logarithm[end[both]] - self.logarithm[start[both]]
+            self._changes[start_h, end_h] = both, change.view(np.float64)
+        rows, change_of = self._changes[start_h, end_h]
+        others = change_of[rows != but]
+        if len(others) < _FEWEST_PANELS:
+            return np.zeros(_FREQUENCIES, dtype=np.complex128)
+        return np.asarray(np.median(others, axis=0)).view(np.complex128)
 
-    def _one_inspection(self, first_h: float, second_h: float) -> bool:
-        return first_h <= second_h * self.same and second_h <= first_h * self.same
+    def _first_at(self, exposure_h: float) -> Places:
+        """Each panel's first reading of an inspection, (P,)."""
+        place = (self.hours * self.same < exposure_h).sum(axis=1)
+        there = (self.hours <= exposure_h * self.same).sum(axis=1) > place
+        return np.where(there, self.begin + place, _NONE)
+
+    # --- what is odd -----------------------------------------------------------------------
 
     def findings(self) -> Iterator[tuple[str, Finding]]:
-        """Reading ids with what is odd about them."""
-        for reading in self.readings:
-            finding = self._between(reading) or self._at_end(reading)
+        """Reading ids with what is odd about them, in the campaign's order."""
+        found = [*self._odd_between(), *self._odd_at_ends()]
+        found.sort(key=lambda pair: self.order[pair[0]])
+        yield from found
+
+    def _odd_between(self) -> Iterator[tuple[str, Finding]]:
+        places = np.flatnonzero((self.before != _NONE) & (self.after != _NONE))
+        expected, gaps = self.between(self.before[places], self.after[places], self.hour[places])
+        off = self.logarithm[places] - expected
+        for i in np.flatnonzero(self._is_odd(_apart(off, 0.0), gaps)):
+            reading, odd = self.readings[places[i]], float(_apart(off[i], 0.0))
+            allowed = self.limits["fits_better_share"] * odd
+            known = self._known(allowed, float(gaps[i]))
+            finding = self._unit(reading, off[i], known, "readings before and after")
+            finding = finding or self._panel(reading, self.logarithm[places[i]], odd, allowed)
             if finding is not None:
                 yield reading.reading_id, finding
 
-    def _between(self, reading: Reading) -> Finding | None:
-        here = self.logarithms.get(reading.reading_id)
-        own = self.expected(reading.panel_id, reading.exposure_h, reading.reading_id)
-        if here is None or own is None:
-            return None
-        expectation, gap = own
-        odd = _apart(here, expectation)
-        if not self._is_odd(odd, gap):
-            return None
-        allowed = self.limits["fits_better_share"] * odd
-        return self._unit(
-            reading, here - expectation, self._known(allowed, gap), "readings before and after"
-        ) or self._panel(reading, here, odd, allowed)
+    def _odd_at_ends(self) -> Iterator[tuple[str, Finding]]:
+        for place in np.flatnonzero((self.before == _NONE) != (self.after == _NONE)).tolist():
+            own = self._expected(place)
+            if own is None:
+                continue
+            expectation, gap = own
+            off = self.logarithm[place] - expectation
+            odd = float(_apart(off, 0.0))
+            if not self._is_odd(odd, gap):
+                continue
+            allowed = self.limits["fits_better_share"] * odd
+            beside = "reading before" if self.after[place] == _NONE else "reading after"
+            reading, known = self.readings[place], self._known(allowed, gap)
+            finding = self._unit(reading, off, known, beside, at_end=True)
+            finding = finding or self._exchanged(place, expectation, odd, allowed)
+            if finding is not None:
+                yield reading.reading_id, finding
 
-    def _at_end(self, reading: Reading) -> Finding | None:
-        here = self.logarithms.get(reading.reading_id)
-        own = self.expected_at_end(reading.panel_id, reading.exposure_h, reading.reading_id)
-        if here is None or own is None:
-            return None
-        expectation, gap = own
-        odd = _apart(here, expectation)
-        if not self._is_odd(odd, gap):
-            return None
-        allowed = self.limits["fits_better_share"] * odd
-        off = here - expectation
-        earlier, _ = self._sides(reading.panel_id, reading.exposure_h, reading.reading_id)
-        beside = "reading before" if earlier else "reading after"
-        return self._unit(reading, off, self._known(allowed, gap), beside, at_end=True) or (
-            self._exchanged(reading, here, odd, allowed)
+    def _expected(self, place: int) -> tuple[ComplexArray, float] | None:
+        """What the others of its panel leave to expect of a reading, and what moves there."""
+        before, after = self.before[[place]], self.after[[place]]
+        if before[0] != _NONE and after[0] != _NONE:
+            expected, gap = self.between(before, after, self.hour[place])
+            return expected[0], float(gap[0])
+        return self.at_end(
+            int(self.panel[place]), int(before[0]), int(after[0]), float(self.hour[place])
         )
 
-    def _is_odd(self, odd: float, gap: float) -> bool:
-        return odd >= max(self.limits["odd_share"], 2 * gap)
+    def _is_odd(self, odd: Any, gap: Any) -> Any:
+        return odd >= np.maximum(self.limits["odd_share"], 2 * gap)
 
     def _known(self, allowed: float, gap: float) -> float:
         """A course is known no better than what moves there."""
         return min(allowed, max(self.limits["odd_share"], gap))
 
     def _exchanged(
-        self, reading: Reading, here: ComplexArray, odd: float, allowed: float
+        self, place: int, expectation: ComplexArray, odd: float, allowed: float
     ) -> Finding | None:
         """At the end of a series: a panel whose reading of the same inspection stands off its own
         course and fits this one's, as this reading fits that one's."""
         best: tuple[float, Panel] | None = None
-        for panel_id, series in self.series.items():
-            if panel_id == reading.panel_id:
+        now = self.hour[place]
+        alike = (self.hour <= now * self.same) & (now <= self.hour * self.same)
+        for other in np.flatnonzero(alike & (self.panel != self.panel[place])).tolist():
+            theirs = self._expected(other)
+            if theirs is None:
                 continue
-            for other in series:
-                there = self.logarithms.get(other.reading_id)
-                if there is None or not self._one_inspection(other.exposure_h, reading.exposure_h):
-                    continue
-                theirs = self._any_expected(panel_id, other)
-                ours = self._any_expected(reading.panel_id, reading)
-                if theirs is None or ours is None:
-                    continue
-                apart, back = _apart(here, theirs[0]), _apart(there, ours[0])
-                their_odd = _apart(there, theirs[0])
-                mutual = back < self.limits["fits_better_share"] * their_odd
-                if apart < allowed and mutual and (best is None or apart < best[0]):
-                    best = apart, self.panels[panel_id]
-        return None if best is None else _panel_finding(reading, odd, *best)
-
-    def _any_expected(self, panel_id: str, reading: Reading) -> tuple[ComplexArray, float] | None:
-        wanted = (panel_id, reading.exposure_h, reading.reading_id)
-        return self.expected(*wanted) or self.expected_at_end(*wanted)
+            there = self.logarithm[other]
+            apart = float(_apart(self.logarithm[place], theirs[0]))
+            back, their_odd = _apart(there, expectation), _apart(there, theirs[0])
+            mutual = back < self.limits["fits_better_share"] * their_odd
+            if apart < allowed and mutual and (best is None or apart < best[0]):
+                best = apart, self.panels[self.readings[other].panel_id]
+        return None if best is None else _panel_finding(self.readings[place], odd, *best)
 
     def _unit(
         self,
@@ -237,17 +279,19 @@ class Courses:
     def _panel(
         self, reading: Reading, here: ComplexArray, odd: float, allowed: float
     ) -> Finding | None:
-        best: tuple[float, Panel] | None = None
-        for panel_id, panel in self.panels.items():
-            if panel_id == reading.panel_id:
-                continue
-            expected = self.expected(panel_id, reading.exposure_h)
-            if expected is None:
-                continue
-            apart = _apart(here, expected[0])
-            if apart < allowed and (best is None or apart < best[0]):
-                best = apart, panel
-        return None if best is None else _panel_finding(reading, odd, *best)
+        before, after = self.beside(reading.exposure_h)
+        others = (before != _NONE) & (after != _NONE)
+        others[self.row[reading.panel_id]] = False
+        rows = np.flatnonzero(others)
+        if not rows.size:
+            return None
+        expected, _ = self.between(before[rows], after[rows], reading.exposure_h)
+        apart = _apart(here, expected)
+        best = int(np.argmin(apart))
+        if apart[best] >= allowed:
+            return None
+        panel = self.panels[list(self.panels)[rows[best]]]
+        return _panel_finding(reading, odd, float(apart[best]), panel)
 
 
 def _panel_finding(reading: Reading, odd: float, apart: float, panel: Panel) -> Finding:
@@ -269,9 +313,9 @@ def _other_way(words: str) -> str:
     return "multiplied by the area already"
 
 
-def _apart(first: ComplexArray | float, second: ComplexArray | float) -> float:
-    """Root mean square of the difference of two courses of ln Z."""
-    return float(np.sqrt((np.abs(first - second) ** 2).mean()))
+def _apart(first: ComplexArray, second: ComplexArray | float) -> FloatArray:
+    """Root mean square of the difference of two courses of ln Z (…, F)."""
+    return np.asarray(np.sqrt((np.abs(first - second) ** 2).mean(axis=-1)))
 
 
 def course_findings(

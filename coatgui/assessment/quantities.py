@@ -5,8 +5,8 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass
 
-from coatgui.assessment.words import hertz
-from coatgui.records import Quantity, ReadingAssessment
+from coatgui.assessment.words import hertz, listed
+from coatgui.records import QUANTITIES, Quantity, ReadingAssessment
 
 Take = Callable[[ReadingAssessment], Quantity | None]
 
@@ -53,7 +53,11 @@ def kind(quantity: str, frequency_hz: float | None = None) -> Kind:
         return Kind(quantity, "Pore resistance", True, 1, lambda r: r.pore_resistance)
     if quantity == "water_uptake":
         return Kind(quantity, "Apparent water uptake", False, -1, _uptake)
+    if quantity == "relative_permittivity":
+        return Kind(quantity, "Effective permittivity", True, -1, lambda r: r.relative_permittivity)
+    if quantity == "film_resistivity":
+        return Kind(quantity, "Effective film resistivity", True, 1, lambda r: r.film_resistivity)
     raise ValueError(
-        f"There is no quantity “{quantity}”. Use modulus with a frequency, coating_capacitance, "
-        "pore_resistance or water_uptake."
+        f"There is no quantity “{quantity}”. Known are {listed(list(QUANTITIES))}; the modulus "
+        "needs a frequency."
     )

@@ -17,6 +17,7 @@ from coatgui.assessment.comparison import BY_RANKS, FEWEST_PANELS, Outcome, comp
 from coatgui.assessment.courses import inspections, panel_values
 from coatgui.assessment.effort import detectable, panels_needed
 from coatgui.assessment.quantities import Kind, kind
+from coatgui.assessment.ratings import NOTHING_RATED, Rated
 from coatgui.assessment.rules import rule
 from coatgui.assessment.samples import Readings, Samples, samples
 from coatgui.assessment.significance import Entry, fewest_provable, kruskal_wallis
@@ -27,7 +28,6 @@ from coatgui.records import (
     Method,
     Question,
     ReadingAssessment,
-    VisualRating,
 )
 
 _NAMES = {
@@ -48,15 +48,13 @@ def ranking(readings: Mapping[str, Sequence[ReadingAssessment]], frequency_hz: f
     return answer(Question(frequency_hz=frequency_hz), readings)
 
 
-def answer(
-    question: Question, readings: Readings, ratings: Sequence[VisualRating] = ()
-) -> Comparison:
+def answer(question: Question, readings: Readings, seen: Rated = NOTHING_RATED) -> Comparison:
     """Answer a question. What is ordinal or censored in itself (ratings, times to a limit) is
     compared by ranks whatever the method. Raises ValueError for a question that cannot be
     understood."""
     if len(readings) < 2:
         return _nothing(question, "There is only one formulation, so there is nothing to compare.")
-    found = samples(question, readings, ratings)
+    found = samples(question, readings, seen)
     if found.text or not found.by_name:
         return _nothing(question, found.text, found.what)
     few = [name for name, panels in found.by_name.items() if len(panels) < FEWEST_PANELS]

@@ -10,7 +10,7 @@ from __future__ import annotations
 
 import math
 import re
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from itertools import permutations
 from typing import Any
@@ -19,13 +19,17 @@ import numpy as np
 
 from coatgui.assessment.courses import inspections, panel_values
 from coatgui.assessment.quantities import Kind
-from coatgui.assessment.rules import table
+from coatgui.assessment.readings import NO_FORMULATION
+from coatgui.assessment.rules import rule, table
 from coatgui.assessment.significance import Entry
-from coatgui.assessment.words import listed
+from coatgui.assessment.words import hours, listed
 from coatgui.records import (
+    Campaign,
+    Finding,
     RatingCorrelation,
     RatingCourse,
     ReadingAssessment,
+    Severity,
     VisualRating,
 )
 
@@ -116,6 +120,36 @@ def creepage_by_area_mm(
 
 
 @dataclass(frozen=True, slots=True)
+class Rated:
+    """What was seen: `panels` gives formulation and name of each panel id, with readings or not."""
+
+    panels: Mapping[str, tuple[str, str]]
+    ratings: tuple[VisualRating, ...]
+
+
+NOTHING_RATED = Rated({}, ())
+
+
+def rated(campaign: Campaign) -> tuple[Rated, list[Finding]]:
+    """The campaign's ratings, and a doubt for each that its scale does not know."""
+    names = {f.formulation_id: f.name for f in campaign.formulations}
+    panels = {
+        p.panel_id: (names.get(p.formulation_id, NO_FORMULATION), p.name) for p in campaign.panels
+    }
+    sound, findings = [], []
+    for rating in campaign.ratings:
+        try:
+            order(rating.seen.scale, rating.seen.value)
+        except ValueError as problem:
+            where = f"panel {panels[rating.seen.panel_id][1]} at {hours(rating.seen.exposure_h)}"
+            text = f"A rating of {where} is left aside: {problem}"
+            findings.append(Finding("rating_unknown", Severity.DOUBT, text))
+        else:
+            sound.append(rating.seen)
+    return Rated(panels, tuple(sound)), findings
+
+
+@dataclass(frozen=True, slots=True)
 class RatedEntries:
     by_name: dict[str, list[Entry]]
     what: str
@@ -143,38 +177,34 @@ def _by_panel(
 def rated_entries(
     scale_id: str,
     exposure_h: float | None,
-    readings: Mapping[str, Sequence[ReadingAssessment]],
-    ratings: Sequence[VisualRating],
+    formulations: Iterable[str],
+    seen: Rated,
 ) -> RatedEntries:
     """Ratings of one scale at the wanted inspection, or at the last that all formulations share."""
     what = f"the rating by {_scale(scale_id)['name']}"
-    belongs = {r.panel_id: name for name, own in readings.items() for r in own}
-    for group, there in reversed(_by_panel(scale_id, ratings).items()):
+    for group, there in reversed(_by_panel(scale_id, seen.ratings).items()):
         if exposure_h is not None and not group[0] <= exposure_h <= group[-1]:
             continue
-        by_name: dict[str, list[Entry]] = {name: [] for name in readings}
+        by_name: dict[str, list[Entry]] = {name: [] for name in formulations}
         for panel_id, rating in there.items():
-            if panel_id in belongs:
-                place = order(scale_id, rating.value)
-                by_name[belongs[panel_id]].append(Entry(place, place, place))
+            place = order(scale_id, rating.value)
+            name = seen.panels[panel_id][0]
+            by_name.setdefault(name, []).append(Entry(place, place, place))
         if all(by_name.values()):
             return RatedEntries(by_name, what, float(np.mean(group)))
     return RatedEntries({}, what, None, f"The formulations share no inspection with {what}.")
 
 
-def rating_courses(
-    readings: Mapping[str, Sequence[ReadingAssessment]], ratings: Sequence[VisualRating]
-) -> tuple[RatingCourse, ...]:
+def rating_courses(seen: Rated) -> tuple[RatingCourse, ...]:
     """Every formulation's ratings, scale by scale and inspection by inspection."""
-    named = {r.panel_id: (name, r.panel) for name, own in readings.items() for r in own}
+    formulations = dict.fromkeys(formulation for formulation, _ in seen.panels.values())
     found = []
-    for scale_id in dict.fromkeys(r.scale for r in ratings):
-        for group, there in _by_panel(scale_id, ratings).items():
-            for name in readings:
+    for scale_id in dict.fromkeys(r.scale for r in seen.ratings):
+        for group, there in _by_panel(scale_id, seen.ratings).items():
+            for name in formulations:
+                those = {p: r for p, r in there.items() if seen.panels[p][0] == name}
                 own = [
-                    (named[panel_id][1], rating.value)
-                    for panel_id, rating in there.items()
-                    if panel_id in named and named[panel_id][0] == name
+                    (seen.panels[panel_id][1], rating.value) for panel_id, rating in those.items()
                 ]
                 if own:
                     ordered = sorted(own, key=lambda pair: order(scale_id, pair[1]))
@@ -186,6 +216,7 @@ def rating_courses(
                             tuple(own),
                             ordered[-1][1],
                             ordered[0][1],
+                            "; ".join(dict.fromkeys(edition(r) for r in those.values())),
                         )
                     )
     return tuple(found)
@@ -229,12 +260,13 @@ def correlations(
     only that of formulations with each other: the sentence says so.
     """
     every = [r for own in readings.values() for r in own]
+    same = 1 + rule("inspection.same_within")
     found = []
     for scale_id in dict.fromkeys(r.scale for r in ratings):
         by_group = _by_panel(scale_id, ratings)
         for of in kinds:
             for group, there in reversed(by_group.items()):
-                low, high = group[0] / 1.025, group[-1] * 1.025
+                low, high = group[0] / same, group[-1] * same
                 at = [r for r in every if low <= r.exposure_h <= high]
                 values = panel_values(at, of.take, of.logarithmic)
                 both = [panel for panel in there if panel in values]

@@ -14,7 +14,7 @@ from coatgui.assessment.doubts import doubtful
 from coatgui.assessment.limit_studies import interval, panel_standings
 from coatgui.assessment.limits import named
 from coatgui.assessment.quantities import Kind, kind
-from coatgui.assessment.ratings import rated_entries
+from coatgui.assessment.ratings import NOTHING_RATED, Rated, rated_entries
 from coatgui.assessment.significance import Entry
 from coatgui.assessment.words import hours
 from coatgui.records import (
@@ -24,7 +24,6 @@ from coatgui.records import (
     Question,
     ReadingAssessment,
     Side,
-    VisualRating,
 )
 
 Readings = Mapping[str, Sequence[ReadingAssessment]]
@@ -51,12 +50,10 @@ class Samples:
         return {name: sum(e.censored for e in own) for name, own in self.by_name.items()}
 
 
-def samples(
-    question: Question, readings: Readings, ratings: Sequence[VisualRating] = ()
-) -> Samples:
+def samples(question: Question, readings: Readings, seen: Rated = NOTHING_RATED) -> Samples:
     """The samples for a question. Raises ValueError for one that cannot be understood."""
     if question.judge is Judge.RATING:
-        found = rated_entries(question.scale, question.exposure_h, readings, ratings)
+        found = rated_entries(question.scale, question.exposure_h, readings, seen)
         when = "" if found.exposure_h is None else f"at {hours(found.exposure_h)}"
         return Samples(found.by_name, found.what, when, found.exposure_h, text=found.text)
     of = kind(question.quantity, question.frequency_hz)

@@ -40,11 +40,13 @@ from coatgui.assessment.panel_water import (
 from coatgui.assessment.sorption import Sorption, diffusion_coefficient
 from coatgui.records import (
     Criterion,
+    Electrolyte,
     Event,
     Finding,
     LimitCrossing,
     Panel,
     Quantity,
+    Settings,
     WaterUptake,
 )
 
@@ -67,7 +69,7 @@ def draw_series(
     series: Sequence[Drawn],
     panel: Panel,
     facts: FilmFacts,
-    capacitance_frequency_hz: float,
+    settings: Settings,
     modulus_frequency_hz: float,
     criteria: Sequence[Criterion],
     noise: float | None = None,
@@ -79,7 +81,9 @@ def draw_series(
     if not counting:
         return SeriesResult()
     exposure_h = [d.reading.exposure_h for d in counting]
-    basis, basis_name = uptake_basis(counting, capacitance_frequency_hz)
+    basis, basis_name = uptake_basis(
+        counting, settings.capacitance_frequency_hz, settings.uptake_from_high_frequency
+    )
     dry_out = drying(exposure_h, basis)
     sorption = panel_sorption(exposure_h, basis, basis_name, dry_out, measured_dry(facts))
     dry = None if sorption is None else sorption.dry_capacitance
@@ -88,7 +92,7 @@ def draw_series(
     if dry_epsilon is not None:
         dry_epsilon = widened(dry_epsilon, uncertain)
     draw_water(counting, basis, sorption, dry_out, dry_epsilon)
-    _film_and_pores(counting, panel, uncertain, dry_epsilon)
+    _film_and_pores(counting, panel, uncertain, dry_epsilon, settings.electrolytes)
     diffusion = None if sorption is None else diffusion_coefficient(sorption, panel.thickness_um)
     if diffusion is not None:
         diffusion = widened(diffusion, 2 * uncertain)
@@ -143,6 +147,7 @@ def _film_and_pores(
     panel: Panel,
     uncertain: float,
     dry_permittivity: Quantity | None,
+    electrolytes: tuple[Electrolyte, ...],
 ) -> None:
     """Effective permittivity and resistivity of each reading, breakpoint and active area."""
     value = None if dry_permittivity is None else dry_permittivity.value
@@ -170,4 +175,5 @@ def _film_and_pores(
                 panel.thickness_um,
                 value,
                 panel.electrolyte,
+                electrolytes,
             )

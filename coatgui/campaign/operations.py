@@ -22,11 +22,13 @@ from coatgui.campaign.inspections import add_ratings as add_ratings
 from coatgui.campaign.inspections import edit_photograph as edit_photograph
 from coatgui.campaign.inspections import edit_rating as edit_rating
 from coatgui.campaign.inspections import identify as identify
+from coatgui.campaign.inspections import photograph_reading as photograph_reading
 from coatgui.campaign.inspections import rate_reading as rate_reading
 from coatgui.campaign.inspections import remove_photograph as remove_photograph
 from coatgui.campaign.inspections import remove_ratings as remove_ratings
 from coatgui.campaign.inspections import without_panel
 from coatgui.campaign.lookup import formulation_of, panel_of, reading_of
+from coatgui.campaign.replacing import replacing, swap
 from coatgui.campaign.rules import operation
 from coatgui.records import (
     Campaign,
@@ -59,6 +61,8 @@ _WORDS = {
     "exposure_h": "exposure time",
     "amplitude_mv": "amplitude",
     "potential_mv": "potential",
+    "temperature_span_c": "temperature within the sweep",
+    "potential_span_mv": "potential within the sweep",
     "modulus_frequencies_hz": "frequencies for the modulus",
     "capacitance_frequency_hz": "frequency for the capacitance",
     "mains_hz": "mains frequency",
@@ -68,6 +72,12 @@ _WORDS = {
     "input_capacitance_f": "capacitance of the instrument's input",
     "take_leads_away": "correction for the leads",
     "own_models": "coating models",
+    "limits": "limits",
+    "comparisons": "comparisons",
+    "projections": "projections",
+    "electrolytes": "electrolytes",
+    "regimes": "exposure regimes",
+    "uptake_from_high_frequency": "capacitance for the water uptake",
 }
 
 # ---------------------------------------------------------------------------------------------
@@ -85,6 +95,7 @@ def import_found(campaign: Campaign, found: Found) -> Operation:
         (gathered.count("new"), "reading"),
         (gathered.count("replaces"), "corrected reading"),
         (len(after.panels) - len(campaign.panels), "panel"),
+        (len(after.ratings) - len(campaign.ratings), "rating"),
         (int(after.open_lead is not campaign.open_lead), "open-lead run"),
         (len(after.refused) + settled - len(campaign.refused), "refusal"),
     )
@@ -148,23 +159,25 @@ def add_formulation(campaign: Campaign, name: str, remark: str = "") -> Operatio
 
 
 def rename_formulation(campaign: Campaign, formulation_id: str, name: str) -> Operation:
+    """A comparison that takes it as its reference goes with the new name."""
     formulation = formulation_of(campaign, formulation_id)
     changed = replace(formulation, name=name.strip())
-    return operation(
-        f"Rename formulation {formulation.name} to {changed.name}",
-        campaign,
-        replace(campaign, formulations=_swap(campaign.formulations, [(formulation, changed)])),
-    )
+    after = replace(campaign, formulations=swap(campaign.formulations, [(formulation, changed)]))
+    asked = campaign.settings.comparisons
+    if any(question.reference == formulation.name for question in asked):
+        renamed = tuple(
+            replace(q, reference=changed.name) if q.reference == formulation.name else q
+            for q in asked
+        )
+        after = replace(after, settings=replace(campaign.settings, comparisons=renamed))
+    return operation(f"Rename formulation {formulation.name} to {changed.name}", campaign, after)
 
 
 def edit_formulation_remark(campaign: Campaign, formulation_id: str, remark: str) -> Operation:
     formulation = formulation_of(campaign, formulation_id)
     changed = replace(formulation, remark=remark)
-    return operation(
-        f"Change the remark of formulation {formulation.name}",
-        campaign,
-        replace(campaign, formulations=_swap(campaign.formulations, [(formulation, changed)])),
-    )
+    name = f"Change the remark of formulation {formulation.name}"
+    return replacing(name, campaign, [(formulation, changed)])
 
 
 def remove_formulation(campaign: Campaign, formulation_id: str) -> Operation:
@@ -196,21 +209,24 @@ def edit_panel(campaign: Campaign, panel_id: str, **fields: Any) -> Operation:
     """Change fields of `Panel`, by name; None or an empty text says that a fact is not known."""
     panel = panel_of(campaign, panel_id)
     changed, words = _with(panel, fields, ("panel_id",))
-    return operation(
-        f"Change {words} of panel {panel.name}",
-        campaign,
-        replace(campaign, panels=_swap(campaign.panels, [(panel, changed)])),
-    )
+    return replacing(f"Change {words} of panel {panel.name}", campaign, [(panel, changed)])
+
+
+def edit_panels(campaign: Campaign, panel_ids: Iterable[str], **fields: Any) -> Operation:
+    """Change the same fields of several panels, such as those an exposure regime fills in."""
+    chosen = [panel_of(campaign, panel_id) for panel_id in dict.fromkeys(panel_ids)]
+    if not chosen:
+        raise OperationRefused("Choose at least one panel to change.")
+    changed = [(panel, _with(panel, fields, ("panel_id", "name"))[0]) for panel in chosen]
+    words = _listed([_WORDS.get(name, name) for name in fields])
+    return replacing(f"Change {words} of {_count(len(chosen), 'panel')}", campaign, changed)
 
 
 def move_panel(campaign: Campaign, panel_id: str, formulation_id: str) -> Operation:
     panel, formulation = panel_of(campaign, panel_id), formulation_of(campaign, formulation_id)
     changed = replace(panel, formulation_id=formulation_id)
-    return operation(
-        f"Move panel {panel.name} to {formulation.name}",
-        campaign,
-        replace(campaign, panels=_swap(campaign.panels, [(panel, changed)])),
-    )
+    name = f"Move panel {panel.name} to {formulation.name}"
+    return replacing(name, campaign, [(panel, changed)])
 
 
 def remove_panel(campaign: Campaign, panel_id: str) -> Operation:
@@ -264,8 +280,10 @@ def read_again(campaign: Campaign, corrected: Mapping[str, FoundReading]) -> Ope
             source=found.source,
             left_out=reading.left_out if same_points else (),
             kept_in=reading.kept_in if same_points else (),
+            temperature_span_c=found.temperature_span_c,
+            potential_span_mv=found.potential_span_mv,
         )
-        after = replace(after, readings=_swap(after.readings, [(reading, changed)]))
+        after = replace(after, readings=swap(after.readings, [(reading, changed)]))
     if not corrected:
         raise OperationRefused("Choose at least one reading to read again.")
     one = next(iter(corrected))
@@ -348,17 +366,11 @@ def _on_readings(
         name = f"{words} the reading {_where(campaign, changed[0][0])}"
     else:
         name = f"{words} {len(changed)} readings"
-    return operation(name, campaign, replace(campaign, readings=_swap(campaign.readings, changed)))
+    return replacing(name, campaign, changed)
 
 
 # ---------------------------------------------------------------------------------------------
-# Replacing records
-
-
-def _swap(records: tuple[Any, ...], changed: Iterable[tuple[Any, Any]]) -> tuple[Any, ...]:
-    """The records, each that is the first of a pair replaced by the second."""
-    new = {id(old): record for old, record in changed}
-    return tuple(new.get(id(record), record) for record in records)
+# Changing records
 
 
 def _with(record: Record, fields: dict[str, Any], fixed: tuple[str, ...]) -> tuple[Record, str]:

@@ -11,8 +11,8 @@ from dataclasses import dataclass, field, replace
 from pathlib import Path
 from typing import Any
 
+from coatgui.campaign import cells, photographs, rows, rows_seen, rules, schema, writing
 from coatgui.campaign import connection as database
-from coatgui.campaign import photographs, rows, rows_seen, rules, schema, writing
 from coatgui.campaign.build import UNASSIGNED, new_id
 from coatgui.campaign.errors import CampaignFileError
 from coatgui.campaign.pages import Pages, Value
@@ -146,7 +146,7 @@ class _Salvage:
     def _spectra(self) -> dict[str, Spectrum]:
         found: dict[str, Spectrum] = {}
         for key, row in self._rows["spectra"].items():
-            with suppress(*rows.UNREADABLE):
+            with suppress(*cells.UNREADABLE):
                 made = rows.spectra_of([tuple(row.values())])
                 if made[key].content_key() == key:
                     found.update(made)
@@ -160,7 +160,7 @@ class _Salvage:
     ) -> list[Reading]:
         found, gone = [], []
         for row in _in_place(self._rows["readings"]):
-            with suppress(*rows.UNREADABLE):
+            with suppress(*cells.UNREADABLE):
                 found.append(rows.reading_of(row, spectra))
                 continue
             panel = panels.get(row["panel_id"])
@@ -201,7 +201,7 @@ class _Salvage:
             self.lost.append("The open-lead run is lost.")
             return None, None
         source = None
-        with suppress(*rows.UNREADABLE):
+        with suppress(*cells.UNREADABLE):
             source = rows.source_of(row)
         return spectra[row["spectrum_id"]], source
 
@@ -211,13 +211,13 @@ class _Salvage:
         for row in _in_place(self._rows[table]):
             try:
                 found.append(make(row))
-            except rows.UNREADABLE:
+            except cells.UNREADABLE:
                 self.lost.append(f"A row of the {table} cannot be read.")
         return found
 
     def _one(self, table: str, make: Callable[[Any], Any]) -> Any:
         for row in self._rows[table].values():
-            with suppress(*rows.UNREADABLE):
+            with suppress(*cells.UNREADABLE):
                 return make(row)
         self.lost.append(f"The {table} could not be read and is as in a new campaign.")
         return None
@@ -294,7 +294,7 @@ _SHAPES: dict[str, Callable[[tuple[Value, ...]], bool]] = {
     "raw_files": lambda v: len(v) == 2 and _is_hash(v[0]) and isinstance(v[1], bytes),
     "spectra": lambda v: len(v) == 4 and _is_hash(v[0]) and _is_list(*v[1:]),
     "readings": lambda v: (
-        len(v) == 17
+        17 <= len(v) <= 21
         and _is_text(v[0], v[2], v[4], v[5], v[6])
         and _is_number(v[1], v[3])
         and _is_hash(v[4])
@@ -310,7 +310,7 @@ _SHAPES: dict[str, Callable[[tuple[Value, ...]], bool]] = {
     ),
     "formulations": lambda v: len(v) == 4 and _is_text(v[0], v[2], v[3]) and _is_number(v[1]),
     "settings": lambda v: (
-        7 <= len(v) <= 11 and _is_text(v[0]) and _is_number(v[1], v[3], v[4]) and _is_list(v[2])
+        7 <= len(v) <= 17 and _is_text(v[0]) and _is_number(v[1], v[3], v[4]) and _is_list(v[2])
     ),
     "campaign": lambda v: (
         len(v) in (3, 9) and _is_text(*v) and (len(v) == 3 or _is_list(v[8])) and v[1] != ""
@@ -329,8 +329,14 @@ _DEFAULTS: dict[str, dict[str, Any]] = {
         "input_resistance_ohm": None,
         "input_capacitance_f": None,
         "take_leads_away": 0,
-        "own_models": "[]",
+        "uptake_from_high_frequency": 0,
+        **dict.fromkeys(
+            ("own_models", "limits", "comparisons", "projections", "electrolytes", "regimes"), "[]"
+        ),
     },
+    "readings": dict.fromkeys(
+        ("temperature_low_c", "temperature_high_c", "potential_low_mv", "potential_high_mv")
+    ),
     "campaign": {
         **dict.fromkeys(("laboratory", "customer", "order_number", "author", "reviewer"), ""),
         "standards": "[]",

@@ -8,13 +8,23 @@ from __future__ import annotations
 
 import hashlib
 import json
-import math
 from collections.abc import Iterable, Mapping
 from functools import lru_cache
 from typing import Any
 
 import numpy as np
 
+from coatgui.campaign import rows_asked
+from coatgui.campaign.cells import (
+    as_float,
+    list_of,
+    number,
+    number_or_none,
+    object_of,
+    string,
+    to_json,
+    whole,
+)
 from coatgui.campaign.changes import Cell, Row
 from coatgui.campaign.rows_seen import identification_cells
 from coatgui.records import (
@@ -63,10 +73,11 @@ def settings_row(campaign_id: str, settings: Settings) -> Row:
             ]
         ),
         "thresholds": to_json([[name, float(value)] for name, value in settings.thresholds]),
-        "input_resistance_ohm": _float(settings.input_resistance_ohm),
-        "input_capacitance_f": _float(settings.input_capacitance_f),
+        "input_resistance_ohm": as_float(settings.input_resistance_ohm),
+        "input_capacitance_f": as_float(settings.input_capacitance_f),
         "take_leads_away": int(settings.take_leads_away),
         "own_models": to_json([json.loads(text) for text in settings.own_models]),
+        **rows_asked.cells_of(settings),
     }
 
 
@@ -83,11 +94,11 @@ def panel_row(panel: Panel) -> Row:
         "panel_id": panel.panel_id,
         "name": panel.name,
         "formulation_id": panel.formulation_id,
-        "area_cm2": _float(panel.area_cm2),
-        "thickness_um": _float(panel.thickness_um),
+        "area_cm2": as_float(panel.area_cm2),
+        "thickness_um": as_float(panel.thickness_um),
         "substrate": panel.substrate,
         "electrolyte": panel.electrolyte,
-        "temperature_c": _float(panel.temperature_c),
+        "temperature_c": as_float(panel.temperature_c),
         "regime": panel.regime,
         "remark": panel.remark,
         "notes": to_json(panel.notes),
@@ -101,15 +112,22 @@ def reading_row(reading: Reading) -> Row:
         "exposure_h": float(reading.exposure_h),
         "spectrum_id": reading.spectrum.content_key(),
         **_source_cells(reading.source),
-        "temperature_c": _float(reading.temperature_c),
-        "amplitude_mv": _float(reading.amplitude_mv),
-        "potential_mv": _float(reading.potential_mv),
+        "temperature_c": as_float(reading.temperature_c),
+        "amplitude_mv": as_float(reading.amplitude_mv),
+        "potential_mv": as_float(reading.potential_mv),
         "remark": reading.remark,
         "left_out": to_json(reading.left_out),
         "kept_in": to_json(reading.kept_in),
         "pinned_model": reading.pinned_model,
         "overruled_because": reading.overruled_because,
+        **_span_cells("temperature", "c", reading.temperature_span_c),
+        **_span_cells("potential", "mv", reading.potential_span_mv),
     }
+
+
+def _span_cells(what: str, unit: str, span: tuple[float, float] | None) -> Row:
+    low, high = (None, None) if span is None else span
+    return {f"{what}_low_{unit}": as_float(low), f"{what}_high_{unit}": as_float(high)}
 
 
 def open_lead_row(campaign_id: str, spectrum: Spectrum, source: Source | None) -> Row:
@@ -178,62 +196,53 @@ def _dialect_text(dialect: Dialect) -> str:
     )
 
 
-def to_json(value: Any) -> str:
-    return json.dumps(value, ensure_ascii=False, allow_nan=False)
-
-
-def _float(value: float | None) -> float | None:
-    return None if value is None else float(value)
-
-
 # ---------------------------------------------------------------------------------------------
-# Rows to records. They raise one of these where a row is not as we write it.
-
-UNREADABLE = (ValueError, TypeError, KeyError, OverflowError, RecursionError)
+# Rows to records. They raise one of `cells.UNREADABLE` where a row is not as we write it.
 
 
 def settings_of(row: Row) -> Settings:
     return Settings(
-        temperature_c=_number(row["temperature_c"]),
-        modulus_frequencies_hz=tuple(map(_number, _list(row["modulus_frequencies_hz"]))),
-        capacitance_frequency_hz=_number(row["capacitance_frequency_hz"]),
-        mains_hz=_number(row["mains_hz"]),
+        temperature_c=number(row["temperature_c"]),
+        modulus_frequencies_hz=tuple(map(number, list_of(row["modulus_frequencies_hz"]))),
+        capacitance_frequency_hz=number(row["capacitance_frequency_hz"]),
+        mains_hz=number(row["mains_hz"]),
         criteria=tuple(
             Criterion(
-                _string(c["name"]),
-                _number(c["frequency_hz"]),
-                _number(c["ohm_cm2"]),
-                _string(c["source"]),
+                string(c["name"]),
+                number(c["frequency_hz"]),
+                number(c["ohm_cm2"]),
+                string(c["source"]),
             )
-            for c in _list(row["criteria"])
+            for c in list_of(row["criteria"])
         ),
         thresholds=tuple(
-            (_string(name), _number(value)) for name, value in _list(row["thresholds"])
+            (string(name), number(value)) for name, value in list_of(row["thresholds"])
         ),
-        input_resistance_ohm=_number_or_none(row["input_resistance_ohm"]),
-        input_capacitance_f=_number_or_none(row["input_capacitance_f"]),
-        take_leads_away=bool(_whole(row["take_leads_away"])),
-        own_models=tuple(to_json(_object(model)) for model in _list(row["own_models"])),
+        input_resistance_ohm=number_or_none(row["input_resistance_ohm"]),
+        input_capacitance_f=number_or_none(row["input_capacitance_f"]),
+        take_leads_away=bool(whole(row["take_leads_away"])),
+        own_models=tuple(to_json(object_of(model)) for model in list_of(row["own_models"])),
+        **rows_asked.read(row),
     )
 
 
 def formulation_of(row: Row) -> Formulation:
-    return Formulation(_string(row["formulation_id"]), _string(row["name"]), _string(row["remark"]))
+    return Formulation(string(row["formulation_id"]), string(row["name"]), string(row["remark"]))
 
 
 def panel_of(row: Row) -> Panel:
     return Panel(
-        panel_id=_string(row["panel_id"]),
-        name=_string(row["name"]),
-        formulation_id=_string(row["formulation_id"]),
-        area_cm2=_number_or_none(row["area_cm2"]),
-        thickness_um=_number_or_none(row["thickness_um"]),
-        substrate=_string(row["substrate"]),
-        electrolyte=_string(row["electrolyte"]),
-        temperature_c=_number_or_none(row["temperature_c"]),
-        regime=_string(row["regime"]),
-        remark=_string(row["remark"]),
-        notes=tuple((_string(heading), _string(text)) for heading, text in _list(row["notes"])),
+        panel_id=string(row["panel_id"]),
+        name=string(row["name"]),
+        formulation_id=string(row["formulation_id"]),
+        area_cm2=number_or_none(row["area_cm2"]),
+        thickness_um=number_or_none(row["thickness_um"]),
+        substrate=string(row["substrate"]),
+        electrolyte=string(row["electrolyte"]),
+        temperature_c=number_or_none(row["temperature_c"]),
+        regime=string(row["regime"]),
+        remark=string(row["remark"]),
+        notes=tuple((string(heading), string(text)) for heading, text in list_of(row["notes"])),
     )
 
 
@@ -242,30 +251,41 @@ def reading_of(row: Row, spectra: Mapping[str, Spectrum]) -> Reading:
     source = source_of(row)
     if source is None:
         raise ValueError("A reading must name the file it came from.")
-    spectrum = spectra[_string(row["spectrum_id"])]
-    left_out = tuple((_whole(point), _string(reason)) for point, reason in _list(row["left_out"]))
-    kept_in = tuple(map(_whole, _list(row["kept_in"])))
+    spectrum = spectra[string(row["spectrum_id"])]
+    left_out = tuple((whole(point), string(reason)) for point, reason in list_of(row["left_out"]))
+    kept_in = tuple(map(whole, list_of(row["kept_in"])))
     if not all(0 <= point < len(spectrum) for point in (*(p for p, _ in left_out), *kept_in)):
         raise ValueError("A point is named that the spectrum does not have.")
     return Reading(
-        reading_id=_string(row["reading_id"]),
-        panel_id=_string(row["panel_id"]),
-        exposure_h=_number(row["exposure_h"]),
+        reading_id=string(row["reading_id"]),
+        panel_id=string(row["panel_id"]),
+        exposure_h=number(row["exposure_h"]),
         spectrum=spectrum,
         source=source,
-        temperature_c=_number_or_none(row["temperature_c"]),
-        amplitude_mv=_number_or_none(row["amplitude_mv"]),
-        potential_mv=_number_or_none(row["potential_mv"]),
-        remark=_string(row["remark"]),
+        temperature_c=number_or_none(row["temperature_c"]),
+        amplitude_mv=number_or_none(row["amplitude_mv"]),
+        potential_mv=number_or_none(row["potential_mv"]),
+        remark=string(row["remark"]),
         left_out=left_out,
         kept_in=kept_in,
-        pinned_model=_string(row["pinned_model"]),
-        overruled_because=_string(row["overruled_because"]),
+        pinned_model=string(row["pinned_model"]),
+        overruled_because=string(row["overruled_because"]),
+        temperature_span_c=_span_of(row, "temperature", "c"),
+        potential_span_mv=_span_of(row, "potential", "mv"),
     )
 
 
+def _span_of(row: Row, what: str, unit: str) -> tuple[float, float] | None:
+    low, high = (number_or_none(row[f"{what}_{end}_{unit}"]) for end in ("low", "high"))
+    if low is None or high is None:
+        if low is not high:
+            raise ValueError(f"Of a {what} within the sweep only one end is there.")
+        return None
+    return low, high
+
+
 def refusal_of(row: Row) -> Refusal:
-    return Refusal(_string(row["file"]), _string(row["reason"]))
+    return Refusal(string(row["file"]), string(row["reason"]))
 
 
 def source_of(row: Row) -> Source | None:
@@ -273,10 +293,10 @@ def source_of(row: Row) -> Source | None:
         return None
     dialect = row["dialect"]
     return Source(
-        file=_string(row["file"]),
-        sha256=_string(row["sha256"]),
-        part=_string(row["part"]),
-        dialect=None if dialect is None else _dialect_of(_string(dialect)),
+        file=string(row["file"]),
+        sha256=string(row["sha256"]),
+        part=string(row["part"]),
+        dialect=None if dialect is None else _dialect_of(string(dialect)),
     )
 
 
@@ -284,22 +304,22 @@ def source_of(row: Row) -> Source | None:
 def _dialect_of(text: str) -> Dialect:
     told = json.loads(text)
     return Dialect(
-        encoding=_string(told["encoding"]),
-        delimiter=_string(told["delimiter"]),
-        decimal_sign=_string(told["decimal_sign"]),
-        first_data_line=_whole(told["first_data_line"]),
+        encoding=string(told["encoding"]),
+        delimiter=string(told["delimiter"]),
+        decimal_sign=string(told["decimal_sign"]),
+        first_data_line=whole(told["first_data_line"]),
         columns=tuple(
             Column(
-                _whole(c["position"]),
-                _string(c["heading"]),
-                _string(c["role"]),
-                _string(c["unit"]),
-                _number(c["factor"]),
+                whole(c["position"]),
+                string(c["heading"]),
+                string(c["role"]),
+                string(c["unit"]),
+                number(c["factor"]),
             )
             for c in told["columns"]
         ),
         ascending=bool(told["ascending"]),
-        remarks=tuple(map(_string, told["remarks"])),
+        remarks=tuple(map(string, told["remarks"])),
     )
 
 
@@ -325,42 +345,3 @@ def _floats(text: str, wanted: int | None = None) -> Any:
     if numbers.ndim != 1 or (wanted is not None and numbers.size != wanted):
         raise ValueError("The lists of a spectrum differ in length.")
     return numbers
-
-
-def _list(cell: Any) -> list[Any]:
-    if cell == "[]":
-        return []
-    value = json.loads(_string(cell))
-    if not isinstance(value, list):
-        raise TypeError("A list was expected.")
-    return value
-
-
-def _object(value: Any) -> dict[str, Any]:
-    if not isinstance(value, dict):
-        raise TypeError("A JSON object was expected.")
-    return value
-
-
-def _string(value: Any) -> str:
-    if not isinstance(value, str):
-        raise TypeError("A text was expected.")
-    return value
-
-
-def _number(value: Any) -> float:
-    if not isinstance(value, int | float) or isinstance(value, bool):
-        raise TypeError("A number was expected.")
-    if not math.isfinite(value):
-        raise ValueError("A finite number was expected.")
-    return float(value)
-
-
-def _number_or_none(value: Any) -> float | None:
-    return None if value is None else _number(value)
-
-
-def _whole(value: Any) -> int:
-    if not isinstance(value, int) or isinstance(value, bool):
-        raise TypeError("A whole number was expected.")
-    return value

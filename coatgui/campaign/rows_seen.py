@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-import json
 from typing import Any
 
+from coatgui.campaign.cells import list_of, string, to_json
 from coatgui.campaign.changes import Row
 from coatgui.records import Identification, Photograph, Rating, VisualRating
 
@@ -16,21 +16,18 @@ def identification_cells(named: Identification) -> Row:
         "order_number": named.order,
         "author": named.author,
         "reviewer": named.reviewer,
-        "standards": json.dumps(named.standards, ensure_ascii=False),
+        "standards": to_json(named.standards),
     }
 
 
 def identification_of(row: Any) -> Identification:
-    standards = json.loads(_string(row["standards"]))
-    if not isinstance(standards, list):
-        raise TypeError("A list was expected.")
     return Identification(
-        laboratory=_string(row["laboratory"]),
-        customer=_string(row["customer"]),
-        order=_string(row["order_number"]),
-        author=_string(row["author"]),
-        reviewer=_string(row["reviewer"]),
-        standards=tuple(map(_string, standards)),
+        laboratory=string(row["laboratory"]),
+        customer=string(row["customer"]),
+        order=string(row["order_number"]),
+        author=string(row["author"]),
+        reviewer=string(row["reviewer"]),
+        standards=tuple(map(string, list_of(row["standards"]))),
     )
 
 
@@ -50,15 +47,15 @@ def rating_row(rating: Rating) -> Row:
 
 def rating_of(row: Any) -> Rating:
     return Rating(
-        _string(row["rating_id"]),
+        string(row["rating_id"]),
         VisualRating(
-            panel_id=_string(row["panel_id"]),
+            panel_id=string(row["panel_id"]),
             exposure_h=float(row["exposure_h"]),
-            scale=_string(row["scale"]),
-            value=_string(row["grade"]),
-            edition=_string(row["edition"]),
-            rater=_string(row["rater"]),
-            remark=_string(row["remark"]),
+            scale=string(row["scale"]),
+            value=string(row["grade"]),
+            edition=string(row["edition"]),
+            rater=string(row["rater"]),
+            remark=string(row["remark"]),
         ),
     )
 
@@ -79,17 +76,11 @@ def photograph_row(photograph: Photograph) -> Row:
 def photograph_of(row: Any) -> Photograph:
     at = row["exposure_h"]
     return Photograph(
-        photograph_id=_string(row["photograph_id"]),
-        panel_id=_string(row["panel_id"]),
-        sha256=_string(row["sha256"]),
-        media_type=_string(row["media_type"]),
+        photograph_id=string(row["photograph_id"]),
+        panel_id=string(row["panel_id"]),
+        sha256=string(row["sha256"]),
+        media_type=string(row["media_type"]),
         exposure_h=None if at is None else float(at),
-        caption=_string(row["caption"]),
-        file=_string(row["file"]),
+        caption=string(row["caption"]),
+        file=string(row["file"]),
     )
-
-
-def _string(value: Any) -> str:
-    if not isinstance(value, str):
-        raise TypeError("A text was expected.")
-    return value

@@ -8,15 +8,23 @@ stays cheap.
 from __future__ import annotations
 
 import json
-import math
 from collections import Counter
 from collections.abc import Callable, Iterable, Iterator, Mapping
-from dataclasses import fields, is_dataclass
+from dataclasses import is_dataclass
 from typing import Any
 
 from coatgui.campaign import photographs, rows, rows_seen, schema
 from coatgui.campaign.changes import Operation, Row, RowChange
+from coatgui.campaign.demands import (
+    finite,
+    named,
+    no_long_texts,
+    not_negative,
+    positive,
+    right_types,
+)
 from coatgui.campaign.errors import OperationRefused
+from coatgui.campaign.rules_asked import refuse_unsound_presets, refuse_unsound_questions
 from coatgui.records import (
     Campaign,
     Formulation,
@@ -28,10 +36,6 @@ from coatgui.records import (
     Settings,
     Spectrum,
 )
-
-LONGEST_TEXT = 20_000
-"""Characters of a remark or another text. Own choice: four printed pages, and no campaign file
-grows by a text pasted by mistake."""
 
 
 def operation(
@@ -59,10 +63,9 @@ def operation(
             if record is was:
                 continue
             refuse_unsound(table, record)
-            changes += _change(table, key, was, record)
-            for spectrum in _spectra_in(record):
-                if spectrum not in _spectra_in(was):
-                    spectra[spectrum.content_key()] = spectrum
+            changes += change_of(table, key, was, record)
+            for spectrum in new_spectra(was, record):
+                spectra[spectrum.content_key()] = spectrum
     touched = {change.table for change in changes}
     if not any(change.table == "panels" and change.after is None for change in changes):
         # Only a panel that goes away could leave something behind without a panel.
@@ -71,7 +74,9 @@ def operation(
     return Operation(name, tuple(changes), tuple(spectra.values()), dict(raw or {}))
 
 
-def _change(table: str, key: str, was: Any, record: Any) -> list[RowChange]:
+def change_of(table: str, key: str, was: Any, record: Any) -> list[RowChange]:
+    """The change of a row, new where `was` is None, in the columns that differ; none where nothing
+    does."""
     after = _ROW[table](key, record)
     if was is None:
         return [RowChange(table, key, None, after)]
@@ -146,6 +151,12 @@ _ROW: dict[str, Callable[[str, Any], Row]] = {
 }
 
 
+def new_spectra(was: Any, record: Any) -> tuple[Spectrum, ...]:
+    """The spectra of a record that it did not have before."""
+    there = _spectra_in(was)
+    return tuple(spectrum for spectrum in _spectra_in(record) if spectrum not in there)
+
+
 def _spectra_in(record: Any) -> tuple[Spectrum, ...]:
     if isinstance(record, Reading):
         return (record.spectrum,)
@@ -161,15 +172,15 @@ def _spectra_in(record: Any) -> tuple[Spectrum, ...]:
 def refuse_unsound(table: str, record: Any) -> None:
     """Raises OperationRefused where a record breaks a rule of its own."""
     if is_dataclass(record):
-        _refuse_wrong_types(record)
+        right_types(record)
     if table == "campaign":
-        _named(record[0], "A campaign", "title")
-        _refuse_long_texts(record)
+        named(record[0], "A campaign", "title")
+        no_long_texts(record)
         _refuse_wrong_identification(record[2])
     elif isinstance(record, Settings):
         _refuse_unsound_settings(record)
     elif isinstance(record, Formulation):
-        _named(record.name, "A formulation")
+        named(record.name, "A formulation")
     elif isinstance(record, Panel):
         _refuse_unsound_panel(record)
     elif isinstance(record, Reading):
@@ -180,61 +191,34 @@ def refuse_unsound(table: str, record: Any) -> None:
         _refuse_unsound_photograph(record)
 
 
-def _refuse_wrong_types(record: Any) -> None:
-    """Texts must be texts and numbers finite numbers: SQLite would convert some others."""
-    for field in fields(record):
-        value = getattr(record, field.name)
-        words = field.name.replace("_", " ")
-        _refuse_long_texts((value,))
-        kind = getattr(field.type, "__name__", field.type)  # "str", "float", "float | None", …
-        if kind == "str" and not isinstance(value, str):
-            raise OperationRefused(f"The {words} must be a text, not {value!r}.")
-        if kind == "float" or (kind == "float | None" and value is not None):
-            _finite(value, f"The {words}")
-
-
-def _refuse_long_texts(values: Iterable[Any]) -> None:
-    for value in values:
-        if isinstance(value, str) and len(value) > LONGEST_TEXT:
-            raise OperationRefused(
-                f"A text of {len(value)} characters is too long: {LONGEST_TEXT} are kept at most. "
-                f"It begins “{value[:40]}”."
-            )
-
-
-def _refuse_wrong_identification(named: Identification) -> None:
-    _refuse_wrong_types(named)
-    _refuse_long_texts(named.standards)
-    if not all(isinstance(name, str) and name.strip() for name in named.standards):
+def _refuse_wrong_identification(identification: Identification) -> None:
+    right_types(identification)
+    no_long_texts(identification.standards)
+    if not all(isinstance(name, str) and name.strip() for name in identification.standards):
         raise OperationRefused("A standard needs a name that is not empty.")
 
 
 def _refuse_unsound_rating(rating: Rating) -> None:
     seen = rating.seen
-    _refuse_wrong_types(seen)
-    _named(seen.scale, "A rating", "scale")
-    _named(seen.value, "A rating", "grade")
-    _not_negative(seen.exposure_h, "The exposure time of a rating in h")
+    right_types(seen)
+    named(seen.scale, "A rating", "scale")
+    named(seen.value, "A rating", "grade")
+    not_negative(seen.exposure_h, "The exposure time of a rating in h")
 
 
 def _refuse_unsound_photograph(photograph: Photograph) -> None:
     if photograph.exposure_h is not None:
-        _not_negative(photograph.exposure_h, "The exposure time of a photograph in h")
+        not_negative(photograph.exposure_h, "The exposure time of a photograph in h")
     if photograph.media_type not in photographs.MEDIA_TYPES:
         raise OperationRefused(f"A photograph cannot be of the type {photograph.media_type!r}.")
     if photograph.file != photographs.plain_name(photograph.file):
         raise OperationRefused("The file name of a photograph cannot name a folder.")
 
 
-def _not_negative(value: float, what: str) -> None:
-    if _finite(value, what) < 0:
-        raise OperationRefused(f"{what} must be 0 or more, not {value:g}.")
-
-
 def _refuse_unsound_panel(panel: Panel) -> None:
-    _named(panel.name, "A panel")
-    _positive(panel.area_cm2, f"The area of panel {panel.name} in cm²")
-    _positive(panel.thickness_um, f"The film thickness of panel {panel.name} in µm")
+    named(panel.name, "A panel")
+    positive(panel.area_cm2, f"The area of panel {panel.name} in cm²")
+    positive(panel.thickness_um, f"The film thickness of panel {panel.name} in µm")
 
 
 def _refuse_unsound_reading(reading: Reading) -> None:
@@ -251,19 +235,21 @@ def _refuse_unsound_reading(reading: Reading) -> None:
 
 
 def _refuse_unsound_settings(settings: Settings) -> None:
-    _positive(settings.capacitance_frequency_hz, "The frequency for the capacitance in Hz")
-    _positive(settings.mains_hz, "The mains frequency in Hz")
+    positive(settings.capacitance_frequency_hz, "The frequency for the capacitance in Hz")
+    positive(settings.mains_hz, "The mains frequency in Hz")
     for frequency in settings.modulus_frequencies_hz:
-        _positive(frequency, "A frequency for the modulus in Hz")
+        positive(frequency, "A frequency for the modulus in Hz")
     for criterion in settings.criteria:
-        _refuse_wrong_types(criterion)
-        _named(criterion.name, "A criterion")
-        _positive(criterion.frequency_hz, f"The frequency of criterion {criterion.name} in Hz")
-        _positive(criterion.ohm_cm2, f"The limit of criterion {criterion.name} in Ω cm²")
+        right_types(criterion)
+        named(criterion.name, "A criterion")
+        positive(criterion.frequency_hz, f"The frequency of criterion {criterion.name} in Hz")
+        positive(criterion.ohm_cm2, f"The limit of criterion {criterion.name} in Ω cm²")
     for name, value in settings.thresholds:
-        _finite(value, f"The threshold {name}")
-    _positive(settings.input_resistance_ohm, "The resistance of the instrument's input in Ω")
-    _positive(settings.input_capacitance_f, "The capacitance of the instrument's input in F")
+        finite(value, f"The threshold {name}")
+    positive(settings.input_resistance_ohm, "The resistance of the instrument's input in Ω")
+    positive(settings.input_capacitance_f, "The capacitance of the instrument's input in F")
+    refuse_unsound_questions(settings)
+    refuse_unsound_presets(settings)
     names = [_model_id(text) for text in settings.own_models]
     _once(names, "coating model", "the id")
 
@@ -280,22 +266,6 @@ def _model_id(text: str) -> str:
     if not isinstance(model, dict) or not isinstance(name, str) or not name.strip():
         raise OperationRefused("A coating model needs an id that is not empty.")
     return name
-
-
-def _named(name: str, what: str, fact: str = "name") -> None:
-    if not name.strip():
-        raise OperationRefused(f"{what} needs a {fact} that is not empty.")
-
-
-def _finite(value: Any, what: str) -> float:
-    if isinstance(value, bool) or not isinstance(value, int | float) or not math.isfinite(value):
-        raise OperationRefused(f"{what} must be a number, not {value!r}.")
-    return value
-
-
-def _positive(value: float | None, what: str) -> None:
-    if value is not None and _finite(value, what) <= 0:
-        raise OperationRefused(f"{what} must be greater than 0, not {value:g}.")
 
 
 # ---------------------------------------------------------------------------------------------

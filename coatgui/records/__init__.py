@@ -44,6 +44,7 @@ from coatgui.records.measured import (
     FloatArray,
     Found,
     FoundPanel,
+    FoundRating,
     FoundReading,
     ModulusStatus,
     Refusal,
@@ -51,13 +52,14 @@ from coatgui.records.measured import (
     Source,
     Spectrum,
 )
+from coatgui.records.presets import Electrolyte, Regime
 from coatgui.records.questions import (
+    QUANTITIES,
     Judge,
     Limit,
     Method,
     ProjectionWanted,
     Question,
-    Questions,
     Side,
 )
 from coatgui.records.results import (
@@ -84,6 +86,7 @@ from coatgui.records.results import (
 )
 
 __all__ = [
+    "QUANTITIES",
     "ActiveArea",
     "Assessment",
     "BoolArray",
@@ -99,6 +102,7 @@ __all__ = [
     "Criterion",
     "CurveStep",
     "Dialect",
+    "Electrolyte",
     "Event",
     "Finding",
     "Fit",
@@ -107,6 +111,7 @@ __all__ = [
     "FormulationAssessment",
     "Found",
     "FoundPanel",
+    "FoundRating",
     "FoundReading",
     "Identification",
     "Judge",
@@ -127,7 +132,6 @@ __all__ = [
     "ProjectionWanted",
     "Quantity",
     "Question",
-    "Questions",
     "Rank",
     "Rating",
     "RatingCorrelation",
@@ -135,6 +139,7 @@ __all__ = [
     "Reading",
     "ReadingAssessment",
     "Refusal",
+    "Regime",
     "Settings",
     "Severity",
     "Side",

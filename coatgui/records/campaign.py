@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from dataclasses import dataclass
 
 from coatgui.records.measured import Refusal, Source, Spectrum
+from coatgui.records.presets import Electrolyte, Regime
+from coatgui.records.questions import Limit, ProjectionWanted, Question
 
 
 @dataclass(frozen=True, slots=True)
@@ -36,6 +39,8 @@ class Reading:
     `left_out` and `kept_in` are places of points: those a person takes out, and those a person
     keeps although the checks suggest leaving them out. `pinned_model` names a coating model that a
     person insists on. `overruled_because` is a person's reason for using a rejected reading.
+    `temperature_span_c` and `potential_span_mv` are the lowest and the highest within the sweep,
+    where the file gives them point by point.
     """
 
     reading_id: str
@@ -51,6 +56,8 @@ class Reading:
     kept_in: tuple[int, ...] = ()
     pinned_model: str = ""
     overruled_because: str = ""
+    temperature_span_c: tuple[float, float] | None = None
+    potential_span_mv: tuple[float, float] | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -69,7 +76,10 @@ class Settings:
     `resources/checks.toml`, by name. `input_resistance_ohm` and `input_capacitance_f` are what the
     instrument's maker states for its input; `take_leads_away` corrects every spectrum for the open
     leads or that input. `own_models` are coating models as JSON texts, in the form of
-    `resources/models.toml`."""
+    `resources/models.toml`. `limits` on any quantity stand beside `criteria`; `comparisons` and
+    `projections` are what is asked beyond the usual. `electrolytes` and `regimes` stand beside the
+    program's own or, under the same id, in place of them. `uptake_from_high_frequency`: the water
+    uptake rests on the capacitance measured at the high frequency, whatever the circuits say."""
 
     temperature_c: float = 25.0
     modulus_frequencies_hz: tuple[float, ...] = (0.1, 0.01)
@@ -81,6 +91,12 @@ class Settings:
     input_capacitance_f: float | None = None
     take_leads_away: bool = False
     own_models: tuple[str, ...] = ()
+    limits: tuple[Limit, ...] = ()
+    comparisons: tuple[Question, ...] = ()
+    projections: tuple[ProjectionWanted, ...] = ()
+    electrolytes: tuple[Electrolyte, ...] = ()
+    regimes: tuple[Regime, ...] = ()
+    uptake_from_high_frequency: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -132,8 +148,15 @@ class Photograph:
     file: str = ""
 
 
+class _ById:
+    """Holds an index of readings, which is no part of what a campaign says."""
+
+    __slots__ = ("_index",)
+    _index: dict[str, Reading]
+
+
 @dataclass(frozen=True, slots=True)
-class Campaign:
+class Campaign(_ById):
     """A campaign whole. Ids are random and stable; names may change."""
 
     campaign_id: str
@@ -149,3 +172,23 @@ class Campaign:
     ratings: tuple[Rating, ...] = ()
     photographs: tuple[Photograph, ...] = ()
     identification: Identification = Identification()
+
+    def reading(self, reading_id: str) -> Reading | None:
+        """The reading of an id, None where there is none. The first question makes an index."""
+        try:
+            index = self._index
+        except AttributeError:
+            index = {reading.reading_id: reading for reading in self.readings}
+            object.__setattr__(self, "_index", index)
+        return index.get(reading_id)
+
+    def take_index(self, before: Campaign, replaced: Iterable[Reading]) -> None:
+        """Carry on the index of a campaign that differs in nothing but these readings, which took
+        the places of others with their ids: an edit of a large campaign then needs no new one."""
+        try:
+            index = before._index
+            object.__delattr__(before, "_index")
+        except AttributeError:
+            return
+        index.update((reading.reading_id, reading) for reading in replaced)
+        object.__setattr__(self, "_index", index)

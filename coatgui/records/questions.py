@@ -1,15 +1,26 @@
-"""What a person asks of an assessment, beyond what is always answered. All of it can be stored.
-
-A quantity is named by its code: modulus (with a frequency), coating_capacitance, pore_resistance,
-water_uptake.
+"""What a person asks of an assessment, beyond what is always answered. A campaign's `Settings` keep
+it. A quantity is named by one of the codes of `QUANTITIES`.
 """
 
 from __future__ import annotations
 
 from dataclasses import dataclass
 from enum import StrEnum
+from typing import TYPE_CHECKING
 
-from coatgui.records.campaign import Criterion, VisualRating
+if TYPE_CHECKING:
+    from coatgui.records.campaign import Criterion
+
+QUANTITIES = {
+    "modulus": "Ω cm²",
+    "coating_capacitance": "F/cm²",
+    "pore_resistance": "Ω cm²",
+    "water_uptake": "vol-%",
+    "relative_permittivity": "",
+    "film_resistivity": "Ω cm",
+}
+"""Codes of quantities, each with its unit where panels have an area. The modulus goes with a
+frequency, the others without."""
 
 
 class Side(StrEnum):
@@ -87,13 +98,3 @@ class ProjectionWanted:
     quantity: str
     until_h: float
     frequency_hz: float | None = None
-
-
-@dataclass(frozen=True, slots=True)
-class Questions:
-    """`limits` stand beside the campaign's own criteria."""
-
-    limits: tuple[Limit, ...] = ()
-    comparisons: tuple[Question, ...] = ()
-    projections: tuple[ProjectionWanted, ...] = ()
-    ratings: tuple[VisualRating, ...] = ()

@@ -20,7 +20,6 @@ from coatgui.records import (
     Formulation,
     Panel,
     PanelAssessment,
-    Questions,
     Reading,
     Source,
     Spectrum,
@@ -46,7 +45,7 @@ def _assessed(made: Made, notes: tuple[tuple[str, str], ...], first: int = 0) ->
     campaign = Campaign(
         "c", "C", formulations=(Formulation("f", "F"),), panels=(panel,), readings=tuple(readings)
     )
-    return conclude(campaign, drawn, Progress(), Questions()).panels[0]
+    return conclude(campaign, drawn, Progress()).panels[0]
 
 
 def test_mass_follows_from_the_density(made: Made) -> None:

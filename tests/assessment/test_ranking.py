@@ -12,6 +12,7 @@ from hypothesis import strategies as st
 
 from coatgui.assessment.comparison import compare, probabilities
 from coatgui.assessment.ranking import answer, ranking
+from coatgui.assessment.ratings import Rated
 from coatgui.assessment.rules import rule
 from coatgui.assessment.significance import Entry, welch
 from coatgui.records import (
@@ -251,9 +252,10 @@ def test_ratings_are_compared_by_ranks_and_never_averaged(reading_of: Made) -> N
         for name, grade in (("K", 0), ("M", 3))
         for i in range(3)
     ]
+    seen = Rated({r.panel_id: (r.panel_id[0], r.panel_id) for r in ratings}, tuple(ratings))
     question = Question(judge=Judge.RATING, scale="iso_4628_3")
-    found = answer(question, readings, ratings)
+    found = answer(question, readings, seen)
     assert [r.formulation for r in found.ranks] == ["K", "M"]
     assert "a test by ranks cannot prove any difference" in found.text
     assert found.pairs[0].difference is None
-    assert answer(question, readings, []).ranks == ()
+    assert answer(question, readings).ranks == ()

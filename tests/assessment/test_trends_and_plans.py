@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -14,17 +15,22 @@ from coatgui.assessment.quantities import kind
 from coatgui.assessment.trends import course_table, project, shapes, trend
 from coatgui.records import (
     Bound,
+    Campaign,
     Criterion,
     Event,
+    Formulation,
     Judge,
     Limit,
     LimitCrossing,
+    Method,
+    Panel,
     PanelAssessment,
     ProjectionWanted,
     Quantity,
     Question,
-    Questions,
+    Rating,
     ReadingAssessment,
+    Settings,
     VisualRating,
 )
 
@@ -217,23 +223,54 @@ def test_questions_are_answered_beside_the_usual(reading_of: MakeReading) -> Non
         ]
         for name, level in (("K", 10.0), ("M", 8.0))
     }
-    asked = Questions(
+    asked = Settings(
         limits=(Limit.of_criterion(LIMIT),),
-        comparisons=(Question(judge=Judge.AREA_UNDER_COURSE),),
+        comparisons=(
+            Question(judge=Judge.AREA_UNDER_COURSE),
+            Question(method=Method.DUNNETT, reference="Q"),
+        ),
         projections=(ProjectionWanted("modulus", 1400.0, 0.1),),
-        ratings=(VisualRating("K0", 1176.0, "iso_2409", "1"),),
     )
-    found = decide(readings, 0.1, [LIMIT], asked, [])
+    campaign = Campaign(
+        "c",
+        "C",
+        asked,
+        tuple(Formulation(name, name) for name in readings),
+        tuple(Panel(f"{name}{p}", f"{name}{p}", name) for name in readings for p in range(3)),
+        ratings=(
+            Rating("a", VisualRating("K0", 1176.0, "iso_2409", "1")),
+            Rating("b", VisualRating("M0", 1176.0, "iso_2409", "9")),
+        ),
+    )
+    found = decide(campaign, readings, 0.1, [LIMIT], [])
     assert found.comparison.text.startswith("K is ahead of M")
     assert found.further_comparisons[0].text.startswith("K is ahead of M")
     assert [p.formulation for p in found.projections] == ["K", "M"]
     assert all(p.quantity is not None for p in found.projections)
     assert [s.formulation for s in found.limit_studies] == ["K", "M"]
     panels = [_panel("K0", None, limit_crossings=(LimitCrossing(LIMIT, 24.0, 168.0, "", 168.0),))]
-    (study,) = decide(readings, 0.1, [LIMIT], Questions(), panels).limit_studies
+    (study,) = decide(
+        replace(campaign, settings=Settings()), readings, 0.1, [LIMIT], panels
+    ).limit_studies
     assert (study.standings[0].after_h, study.standings[0].by_h) == (24.0, 168.0)
-    assert found.ratings[0].worst == "1"
-    with pytest.raises(ValueError, match="is no rating by"):
-        decide(
-            readings, 0.1, [], Questions(ratings=(VisualRating("K0", 1.0, "iso_2409", "9"),)), []
-        )
+    assert [(r.formulation, r.worst) for r in found.ratings] == [("K", "1")]
+    # What cannot be answered is said, and the rest is answered all the same.
+    assert "one of the formulations as its reference" in found.further_comparisons[1].text
+    (unknown,) = found.findings
+    assert unknown.text.startswith("A rating of panel M0 at 1176 h is left aside: “9” is no rating")
+
+
+def test_a_limit_that_no_panel_tells_of_is_said(reading_of: MakeReading) -> None:
+    readings = {"K": [reading_of("K", "K0", 24.0, 1e9)]}
+    asked = Settings(
+        limits=(Limit("Film", "film_resistivity", 1e12, "Ω cm", "ours"),),
+        projections=(ProjectionWanted("shine", 2000.0),),
+    )
+    found = decide(Campaign("c", "C", asked), readings, 0.1, [], [])
+    assert found.limit_studies == ()
+    limit, projection = (f.text for f in found.findings)
+    assert limit == (
+        "No panel can be held against the limit Film: none tells its Effective film resistivity "
+        "in Ω cm."
+    )
+    assert projection.startswith("There is no quantity “shine”.")

@@ -11,7 +11,6 @@ import pytest
 from coatgui.assessment.assess import conclude
 from coatgui.assessment.words import hertz, power_of_ten
 from coatgui.progress import Progress
-from coatgui.records import Questions
 from tests.benchmarks.assessment_of_many import large_campaign
 
 
@@ -48,6 +47,6 @@ def _sentences(value: object) -> Iterator[str]:
 
 def test_no_sentence_writes_numbers_as_a_machine_does() -> None:
     campaign, drawn = large_campaign(panels=6, formulations=2, times=8)
-    said = set(_sentences(conclude(campaign, drawn, Progress(), Questions())))
+    said = set(_sentences(conclude(campaign, drawn, Progress())))
     assert any("10 kHz" in text for text in said)
     assert [t for t in said if re.search(r"\de[+-]?\d|\d000 Hz", t)] == []

@@ -18,9 +18,12 @@ from coatgui.campaign.snapshot import Snapshot
 from coatgui.records import (
     Campaign,
     Criterion,
+    Electrolyte,
     Found,
     FoundPanel,
     FoundReading,
+    Limit,
+    Question,
     Refusal,
     Source,
     Spectrum,
@@ -265,6 +268,9 @@ class Editing(RuleBasedStateMachine):
                 criteria=(Criterion(words, positive, positive, words),),
                 thresholds=((words, number),),
                 modulus_frequencies_hz=(positive,),
+                limits=(Limit(words, "pore_resistance", positive, "Ω cm²", words),),
+                comparisons=(Question(exposure_h=positive, reference=words),),
+                electrolytes=(Electrolyte(words, words, positive),),
             )
         elif act == "lead":
             self.apply(operations.set_open_lead, None, None)

@@ -8,7 +8,22 @@ from typing import Any
 import pytest
 
 from coatgui.campaign import CampaignFile, Operation, OperationRefused, operations
-from coatgui.records import Campaign, Criterion, Found, Panel, Reading, Source
+from coatgui.records import (
+    Campaign,
+    Criterion,
+    Electrolyte,
+    Found,
+    Judge,
+    Limit,
+    Method,
+    Panel,
+    ProjectionWanted,
+    Question,
+    Reading,
+    Regime,
+    Side,
+    Source,
+)
 
 
 def reading(campaign: Campaign, reading_id: str) -> Reading:
@@ -53,6 +68,8 @@ def with_rating(campaign: Campaign, **fields: Any) -> Campaign:
 
 
 LIMIT = Criterion("new", 0.01, 1e8, "ours")
+WET = Limit("wet", "water_uptake", 4, "vol-%", "ours", Side.ABOVE)
+BRINE = Electrolyte("brine", "Brine", 8, "measured", (("brine",),))
 
 # The operation, what the campaign should be afterwards, what changes, how it is called.
 CASES: dict[
@@ -88,6 +105,29 @@ CASES: dict[
         {"settings"},
         "Set mains frequency, criteria, frequencies for the modulus and thresholds",
     ),
+    "edit_settings of what is asked": (
+        lambda c: operations.edit_settings(
+            c,
+            limits=[WET],
+            comparisons=[*c.settings.comparisons, Question(method=Method.TUKEY)],
+            projections=[],
+            electrolytes=[BRINE],
+            regimes=[Regime("shelf", "Shelf")],
+        ),
+        lambda c: replace(
+            c,
+            settings=replace(
+                c.settings,
+                limits=(WET,),
+                comparisons=(*c.settings.comparisons, Question(method=Method.TUKEY)),
+                projections=(),
+                electrolytes=(BRINE,),
+                regimes=(Regime("shelf", "Shelf"),),
+            ),
+        ),
+        {"settings"},
+        "Set limits, comparisons, projections, electrolytes and exposure regimes",
+    ),
     "set_open_lead to none": (
         lambda c: operations.set_open_lead(c, None, None),
         lambda c: replace(c, open_lead=None, open_lead_source=None),
@@ -111,6 +151,21 @@ CASES: dict[
         lambda c: with_formulation(c, "f2", name="Blue"),
         {"formulations"},
         "Rename formulation Blau 'Ü'; DROP to Blue",
+    ),
+    "rename_formulation that is a reference": (
+        lambda c: operations.rename_formulation(c, "f1", "Gray"),
+        lambda c: replace(
+            with_formulation(c, "f1", name="Gray"),
+            settings=replace(
+                c.settings,
+                comparisons=(
+                    replace(c.settings.comparisons[0], reference="Gray"),
+                    *c.settings.comparisons[1:],
+                ),
+            ),
+        ),
+        {"formulations", "settings"},
+        "Rename formulation Grey to Gray",
     ),
     "edit_formulation_remark": (
         lambda c: operations.edit_formulation_remark(c, "f1", ""),
@@ -139,6 +194,17 @@ CASES: dict[
         ),
         {"panels"},
         "Change name, area, film thickness and notes of panel A1",
+    ),
+    "edit_panels": (
+        lambda c: operations.edit_panels(c, ["p1", "p2"], regime=" Salt ", temperature_c=35),
+        lambda c: with_panel(
+            with_panel(c, "p1", regime="Salt", temperature_c=35.0),
+            "p2",
+            regime="Salt",
+            temperature_c=35.0,
+        ),
+        {"panels"},
+        "Change exposure regime and temperature of 2 panels",
     ),
     "move_panel": (
         lambda c: operations.move_panel(c, "p2", "f1"),
@@ -386,6 +452,68 @@ REFUSED: dict[str, tuple[Callable[[Campaign], Operation], str]] = {
     ),
     "input": (lambda c: operations.edit_settings(c, input_resistance_ohm=-1.0), "greater than 0"),
     "model": (lambda c: operations.edit_settings(c, own_models=("[]",)), "JSON object"),
+    "panels without one": (lambda c: operations.edit_panels(c, [], regime="x"), "at least one"),
+    "panels of one name": (
+        lambda c: operations.edit_panels(c, ["p1", "p2"], name="x"),
+        "cannot be changed",
+    ),
+    **{
+        f"limit: {says}": (
+            lambda c, limit=limit: operations.edit_settings(c, limits=[limit]),
+            says,
+        )
+        for limit, says in (
+            (replace(WET, name=" "), "needs a name"),
+            (replace(WET, quantity="shine"), "no quantity “shine”"),
+            (replace(WET, unit="%"), "given in vol-%, not in %"),
+            (replace(WET, frequency_hz=0.1), "to it only"),
+            (replace(WET, quantity="modulus", unit="Ω cm²"), "belongs to the modulus"),
+            (replace(WET, quantity="pore_resistance", unit="Ω cm²", value=0.0), "greater than 0"),
+            (replace(WET, value=float("nan")), "must be a number"),
+            (replace(WET, side="over"), "cannot be 'over'"),
+        )
+    },
+    "limit twice": (lambda c: operations.edit_settings(c, limits=[WET, WET]), "already a limit"),
+    **{
+        f"comparison: {says}": (
+            lambda c, asked=question: operations.edit_settings(c, comparisons=[asked]),
+            says,
+        )
+        for question, says in (
+            (Question(judge=Judge.RATING), "needs a scale"),
+            (Question(judge=Judge.TIME_TO_LIMIT), "needs a limit"),
+            (Question(method=Method.DUNNETT), "needs a reference formulation"),
+            (Question(quantity="shine"), "no quantity"),
+            (Question(exposure_h=-1.0), "0 or more"),
+            ("which is best?", "cannot be 'which is best"),
+        )
+    },
+    "comparison twice": (
+        lambda c: operations.edit_settings(c, comparisons=[Question(), Question()]),
+        "already a comparison with this question",
+    ),
+    "projection": (
+        lambda c: operations.edit_settings(c, projections=[ProjectionWanted("modulus", 0.0, 0.1)]),
+        "greater than 0",
+    ),
+    "electrolyte": (
+        lambda c: operations.edit_settings(c, electrolytes=[replace(BRINE, known_by=((),))]),
+        "words that are not empty",
+    ),
+    "electrolyte without resistance": (
+        lambda c: operations.edit_settings(c, electrolytes=[replace(BRINE, resistivity_ohm_cm=0)]),
+        "resistivity of Brine",
+    ),
+    "electrolyte twice": (
+        lambda c: operations.edit_settings(c, electrolytes=[BRINE, BRINE]),
+        "already an electrolyte",
+    ),
+    "regime": (
+        lambda c: operations.edit_settings(
+            c, regimes=[Regime("a", "A", duration_h=(200.0, 100.0))]
+        ),
+        "ends before it begins",
+    ),
     "model twice": (
         lambda c: operations.edit_settings(c, own_models=('{"id": "a"}', '{"id": "a"}')),
         "already a coating model",

@@ -19,7 +19,7 @@ from coatgui.records import (
     Campaign,
     ProjectionWanted,
     Quantity,
-    Questions,
+    Rating,
     VisualRating,
 )
 from coatgui.shipped import resource, sample_panels
@@ -93,14 +93,17 @@ def words(schema: Any) -> set[str]:
 @pytest.fixture(scope="module")
 def sample() -> tuple[Campaign, Assessment]:
     campaign = campaign_from_found(read_folder(sample_panels()), "Sample")
-    questions = Questions(
-        projections=(ProjectionWanted("modulus", 1000.0, 0.1),),
+    campaign = replace(
+        campaign,
+        settings=replace(
+            campaign.settings, projections=(ProjectionWanted("modulus", 1000.0, 0.1),)
+        ),
         ratings=tuple(
-            VisualRating(panel.panel_id, 672.0, "astm_d610", value)
+            Rating(panel.name, VisualRating(panel.panel_id, 672.0, "astm_d610", value))
             for panel, value in zip(campaign.panels, ["10", "9", "8", "7"] * 3, strict=True)
         ),
     )
-    return campaign, assess(campaign, questions=questions)
+    return campaign, assess(campaign)
 
 
 def test_the_validator_knows_every_word_of_the_schema() -> None:
