@@ -106,6 +106,42 @@ def test_a_box_leaves_points_out_and_takes_them_back(sample: MainWindow, wait: W
     assert not record.left_out
 
 
+def test_a_click_leaves_a_point_out_greys_it_in_every_plot_and_can_be_undone(
+    sample: MainWindow, wait: Wait
+) -> None:
+    place = place_of(sample)
+    sample.desk.select(known(sample, "M2", 168).reading_id)
+    for _ in range(3):
+        QApplication.processEvents()
+    plots = place.plots
+
+    def click() -> None:
+        x, y = plots._on_screen(plots.phase)[20]
+        where = QPoint(round(x), round(y))
+        left, none = Qt.MouseButton.LeftButton, Qt.KeyboardModifier.NoModifier
+        QTest.mouseClick(plots.phase.viewport(), left, none, where)
+        wait(lambda: sample.desk.job is None)
+        for _ in range(3):
+            QApplication.processEvents()
+
+    def left_out() -> list[int]:
+        record = sample.desk.reading()
+        assert record is not None
+        return [point for point, _ in record.left_out]
+
+    click()
+    assert left_out() == [20]
+    for crosses, (across, _) in zip(plots._crosses, plots.drawn.places(), strict=False):
+        assert crosses.getData()[0].tolist() == [across[20]]
+    click()
+    assert left_out() == []
+    assert sample.desk.file is not None
+    sample.desk.undo()
+    assert left_out() == [20]
+    sample.desk.undo()
+    assert left_out() == []
+
+
 def test_the_cursor_reads_all_plots(sample: MainWindow) -> None:
     place = place_of(sample)
     sample.desk.select(known(sample, "P2", 336).reading_id)
