@@ -39,10 +39,11 @@ from coatgui.assessment.summary import (
 from coatgui.assessment.suspicion import with_suspicions
 from coatgui.fitting import fit_spectra
 from coatgui.progress import Progress, Spread, one_after_another
-from coatgui.quality import check_spectra
+from coatgui.quality import check_spectra, circuit_residuals
 from coatgui.records import Assessment, Campaign, Fit
 
 _USUAL_FREQUENCY_HZ = 0.1
+_CHANGED_MEANWHILE = frozenset({"step", "drift", "departure", "repeat_differs"})
 _AT_ONCE = 1000  # readings drawn as one array, between two reports of progress
 
 
@@ -85,6 +86,7 @@ def assess(
     take_away(drawn, leads_of(campaign))
     for d, fit in zip(drawn, _fits(drawn, campaign, progress, spread, cache), strict=True):
         d.fit = fit
+    _look_at_residuals(drawn, campaign)
     return conclude(campaign, drawn, progress)
 
 
@@ -139,9 +141,8 @@ def conclude(campaign: Campaign, drawn: Sequence[Drawn], progress: Progress) -> 
     noise = _noise(campaign, by_panel, watched_hz)
     panel_results = []
     for panel in campaign.panels:
-        own = by_panel[panel.panel_id]
         series = draw_series(
-            own,
+            by_panel[panel.panel_id],
             panel,
             film_facts(panel),
             settings,
@@ -149,7 +150,7 @@ def conclude(campaign: Campaign, drawn: Sequence[Drawn], progress: Progress) -> 
             criteria,
             noise.get(panel.formulation_id),
         )
-        panel_results.append(panel_assessment(panel, names, series, own))
+        panel_results.append(panel_assessment(panel, names, series, by_panel[panel.panel_id]))
     for d in drawn:
         if d.fit is not None:
             d.fit = put_back(d.fit, d.reading.spectrum.frequency_hz, leads)
@@ -187,6 +188,21 @@ def conclude(campaign: Campaign, drawn: Sequence[Drawn], progress: Progress) -> 
         rating_correlations=decided.rating_correlations,
         next_inspection=next_inspection(panel_results, in_order, criteria),
     )
+
+
+def _look_at_residuals(drawn: Sequence[Drawn], campaign: Campaign) -> None:
+    """A doubt for readings whose circuit leaves a step or a drift over, where the checks named
+    neither."""
+    fitted = [(d, d.fit) for d in drawn if d.fit is not None]
+    doubts = circuit_residuals(
+        [d.reading.spectrum for d, _ in fitted],
+        [fit for _, fit in fitted],
+        settings=campaign.settings,
+        own_models=own_models(campaign)[0],
+    )
+    for (d, _), doubt in zip(fitted, doubts, strict=True):
+        if doubt is not None and not any(f.code in _CHANGED_MEANWHILE for f in d.findings):
+            d.findings.append(doubt)
 
 
 def _noise(

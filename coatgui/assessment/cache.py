@@ -28,7 +28,7 @@ from coatgui.records import (
     Trial,
 )
 
-_LAYOUT = 1
+_LAYOUT = 2
 
 
 class ResultCache(Protocol):
@@ -93,12 +93,13 @@ def _fit_to_json(fit: Fit) -> dict[str, Any]:
         "message": fit.message,
         "trials": [asdict(trial) for trial in fit.trials],
         "log_covariance": None if fit.log_covariance is None else fit.log_covariance.tolist(),
+        "optimum": None if fit.optimum is None else fit.optimum.tolist(),
     }
 
 
 def _fit_from_json(row: dict[str, Any]) -> Fit:
     real, imaginary = (np.asarray(part, dtype=np.float64) for part in row["modelled_ohm"])
-    covariance = row["log_covariance"]
+    covariance, optimum = row["log_covariance"], row["optimum"]
     return Fit(
         model=row["model"],
         model_name=row["model_name"],
@@ -118,4 +119,5 @@ def _fit_from_json(row: dict[str, Any]) -> Fit:
         message=row["message"],
         trials=tuple(Trial(**trial) for trial in row["trials"]),
         log_covariance=None if covariance is None else np.asarray(covariance, dtype=np.float64),
+        optimum=None if optimum is None else np.asarray(optimum, dtype=np.float64),
     )

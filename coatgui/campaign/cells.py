@@ -10,8 +10,13 @@ UNREADABLE = (ValueError, TypeError, KeyError, OverflowError, RecursionError)
 """What reading raises where a cell or row is not as we write it."""
 
 
+# Made once: `json.dumps` makes one for every call.
+_written = json.JSONEncoder(ensure_ascii=False, allow_nan=False).encode
+
+
 def to_json(value: Any) -> str:
-    return json.dumps(value, ensure_ascii=False, allow_nan=False)
+    """Raises ValueError where a number is not finite."""
+    return "[]" if value == () else _written(value)
 
 
 def as_float(value: float | None) -> float | None:

@@ -80,12 +80,14 @@ def inverse(changes: Iterable[RowChange]) -> tuple[RowChange, ...]:
     return tuple(change.inverse() for change in reversed(tuple(changes)))
 
 
+# Made once: `json.dumps` makes one for every call.
+_written = json.JSONEncoder(ensure_ascii=False, allow_nan=False).encode
+
+
 def to_text(changes: Iterable[RowChange]) -> str:
     """The changes as the JSON text of the column history.changes."""
-    return json.dumps(
-        [{"table": c.table, "key": c.key, "before": c.before, "after": c.after} for c in changes],
-        ensure_ascii=False,
-        allow_nan=False,
+    return _written(
+        [{"table": c.table, "key": c.key, "before": c.before, "after": c.after} for c in changes]
     )
 
 

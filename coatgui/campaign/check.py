@@ -50,11 +50,11 @@ def _problems(connection: sqlite3.Connection) -> Iterator[str]:
         yield f"Row {row} of {table} refers to a row of {target} that is missing."
     yield from _raw_problems(connection)
     found = schema.version(connection)
-    if found >= schema.SEALED_FROM:
-        yield from _seal_problems(connection)
     if found == len(schema.MIGRATIONS):
         yield from _content_problems(connection)
         return
+    if found >= schema.SEALED_FROM:
+        yield from _seal_problems(connection, None)
     # The records of an older version are read after bringing a copy up to date.
     with closing(sqlite3.connect(":memory:", isolation_level=None)) as copy:
         copy.row_factory = sqlite3.Row
@@ -75,22 +75,18 @@ def _raw_problems(connection: sqlite3.Connection) -> Iterator[str]:
             yield f"The bytes of {file}, which {table.replace('_', '-')} came from, are missing."
 
 
-def _seal_problems(connection: sqlite3.Connection) -> Iterator[str]:
-    """Whether the trail is whole and what the file holds is what the trail says."""
+def _seal_problems(connection: sqlite3.Connection, snapshot: Snapshot | None) -> Iterator[str]:
+    """Whether the trail is whole and what the file holds is what the trail says. `snapshot` is of
+    all its rows, where they could be read."""
     line = seal.broken_link(connection)
     if line is not None:
         yield f"Line {line} of the history, or one before it, was altered, taken out or put in."
     row = connection.execute(
         "SELECT entry_id, state FROM history ORDER BY entry_id DESC LIMIT 1"
     ).fetchone()
-    tables = [
-        table
-        for table in schema.KEYS
-        if connection.execute("SELECT 1 FROM sqlite_schema WHERE name = ?", (table,)).fetchone()
-    ]
     if row is None:
         yield "The history is missing."
-    elif seal.state_of(connection, tables) != row["state"]:
+    elif _state(connection, snapshot) != row["state"]:
         yield (
             f"What the file holds is not what line {row['entry_id']} of its history says of it: "
             "something was changed from outside."
@@ -104,9 +100,32 @@ def _seal_problems(connection: sqlite3.Connection) -> Iterator[str]:
             yield f"The kept result {str(key)[:12]}… was altered; it will be computed again."
 
 
+def _state(connection: sqlite3.Connection, snapshot: Snapshot | None) -> str:
+    if snapshot is not None:
+        return seal.state_text(snapshot.total + seal.content_total(connection))
+    # A database of an older version does not have all tables.
+    present = {row[0] for row in connection.execute("SELECT name FROM sqlite_schema")}
+    return seal.state_of(connection, [table for table in schema.KEYS if table in present])
+
+
 def _content_problems(connection: sqlite3.Connection) -> Iterator[str]:
-    spectra: dict[str, Spectrum] = {}
+    spectra, unreadable = _spectra(connection)
+    snapshot = None
     # All at once is quicker; where that fails, one by one tells which.
+    with suppress(CampaignFileError):
+        snapshot = Snapshot(connection, spectra)
+    yield from _seal_problems(connection, snapshot)
+    yield from unreadable
+    if snapshot is None:
+        yield from _row_problems(connection, spectra)
+    yield from _trail_problems(connection)
+
+
+def _spectra(connection: sqlite3.Connection) -> tuple[dict[str, Spectrum], list[str]]:
+    """The spectra that can be read, also those that no reading has any more, by their ids, and
+    sentences on the others."""
+    spectra: dict[str, Spectrum] = {}
+    problems = []
     with suppress(CampaignFileError):
         spectra = read_spectra(connection)
     for (spectrum_id,) in connection.execute("SELECT spectrum_id FROM spectra").fetchall():
@@ -115,15 +134,27 @@ def _content_problems(connection: sqlite3.Connection) -> Iterator[str]:
         try:
             spectra.update(read_spectra(connection, spectrum_id))
         except CampaignFileError as problem:
-            yield str(problem)
-    unreadable = False
+            problems.append(str(problem))
+    return spectra, problems
+
+
+def _row_problems(connection: sqlite3.Connection, spectra: dict[str, Spectrum]) -> Iterator[str]:
+    readable = True
     for table in schema.ORDERED:
         for row in connection.execute(f"SELECT * FROM {table}"):
             try:
                 record_of(table, row, spectra)
             except CampaignFileError as problem:
-                unreadable = True
+                readable = False
                 yield str(problem)
+    if readable:
+        try:
+            Snapshot(connection, spectra)
+        except CampaignFileError as problem:
+            yield str(problem)
+
+
+def _trail_problems(connection: sqlite3.Connection) -> Iterator[str]:
     for entry_id, changes in connection.execute("SELECT entry_id, changes FROM history"):
         try:
             changes_of.from_text(changes)
@@ -131,7 +162,5 @@ def _content_problems(connection: sqlite3.Connection) -> Iterator[str]:
             yield f"Line {entry_id} of the history cannot be read."
     try:
         Trail(connection)
-        if not unreadable:
-            Snapshot(connection, spectra)
     except CampaignFileError as problem:
         yield str(problem)

@@ -6,6 +6,7 @@ from __future__ import annotations
 import math
 from collections.abc import Iterable
 from dataclasses import fields
+from functools import cache
 from typing import Any
 
 from coatgui.campaign.errors import OperationRefused
@@ -17,15 +18,21 @@ grows by a text pasted by mistake."""
 
 def right_types(record: Any) -> None:
     """Texts must be texts and numbers finite numbers: SQLite would convert some others."""
-    for field in fields(record):
-        value = getattr(record, field.name)
-        words = field.name.replace("_", " ")
-        no_long_texts((value,))
-        kind = getattr(field.type, "__name__", field.type)  # "str", "float", "float | None", …
+    for name, kind in _typed_fields(record.__class__):
+        value = getattr(record, name)
+        words = name.replace("_", " ")
+        if isinstance(value, str):
+            no_long_texts((value,))
         if kind == "str" and not isinstance(value, str):
             raise OperationRefused(f"The {words} must be a text, not {value!r}.")
         if kind == "float" or (kind == "float | None" and value is not None):
             finite(value, f"The {words}")
+
+
+@cache
+def _typed_fields(kind: type) -> tuple[tuple[str, str], ...]:
+    """The fields of a record, each with "str", "float", "float | None", …"""
+    return tuple((f.name, getattr(f.type, "__name__", str(f.type))) for f in fields(kind))
 
 
 def no_long_texts(values: Iterable[Any]) -> None:

@@ -12,6 +12,7 @@ from coatgui.campaign.build import new_id
 from coatgui.campaign.changes import Operation
 from coatgui.campaign.errors import OperationRefused
 from coatgui.campaign.lookup import panel_of, photograph_of, rating_of, reading_of
+from coatgui.campaign.replacing import replacing
 from coatgui.campaign.rules import operation
 from coatgui.records import Campaign, Photograph, Rating, VisualRating
 
@@ -63,11 +64,7 @@ def edit_rating(campaign: Campaign, rating_id: str, **fields: Any) -> Operation:
     except TypeError:
         raise OperationRefused("A rating does not have such a field.") from None
     where = panel_of(campaign, rating.seen.panel_id).name
-    return operation(
-        f"Change a rating of panel {where}",
-        campaign,
-        replace(campaign, ratings=_swap(campaign.ratings, rating, changed)),
-    )
+    return replacing(f"Change a rating of panel {where}", campaign, [(rating, changed)])
 
 
 def remove_ratings(campaign: Campaign, rating_ids: Collection[str]) -> Operation:
@@ -132,11 +129,7 @@ def edit_photograph(campaign: Campaign, photograph_id: str, **fields: Any) -> Op
     at = fields.get("exposure_h", photograph.exposure_h)
     changed = replace(photograph, **{**fields, "exposure_h": None if at is None else float(at)})
     where = panel_of(campaign, photograph.panel_id).name
-    return operation(
-        f"Change a photograph of panel {where}",
-        campaign,
-        replace(campaign, photographs=_swap(campaign.photographs, photograph, changed)),
-    )
+    return replacing(f"Change a photograph of panel {where}", campaign, [(photograph, changed)])
 
 
 def remove_photograph(campaign: Campaign, photograph_id: str) -> Operation:
@@ -150,7 +143,7 @@ def remove_photograph(campaign: Campaign, photograph_id: str) -> Operation:
 
 
 # ---------------------------------------------------------------------------------------------
-# Finding and replacing
+# Finding
 
 
 def without_panel(campaign: Campaign, panel_id: str) -> Campaign:
@@ -175,7 +168,3 @@ def _tidy(seen: VisualRating) -> VisualRating:
 
 def _hours(value: Any) -> Any:
     return float(value) if isinstance(value, int) and not isinstance(value, bool) else value
-
-
-def _swap(records: tuple[Any, ...], old: Any, new: Any) -> tuple[Any, ...]:
-    return tuple(new if record is old else record for record in records)

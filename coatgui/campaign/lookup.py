@@ -21,10 +21,10 @@ def panel_of(campaign: Campaign, panel_id: str) -> Panel:
 
 
 def reading_of(campaign: Campaign, reading_id: str) -> Reading:
-    for reading in campaign.readings:
-        if reading.reading_id == reading_id:
-            return reading
-    raise _missing("reading")
+    reading = campaign.reading(reading_id)
+    if reading is None:
+        raise _missing("reading")
+    return reading
 
 
 def rating_of(campaign: Campaign, rating_id: str) -> Rating:

@@ -28,6 +28,7 @@ from coatgui.campaign.inspections import remove_photograph as remove_photograph
 from coatgui.campaign.inspections import remove_ratings as remove_ratings
 from coatgui.campaign.inspections import without_panel
 from coatgui.campaign.lookup import formulation_of, panel_of, reading_of
+from coatgui.campaign.replacing import replacing, swap
 from coatgui.campaign.rules import operation
 from coatgui.records import (
     Campaign,
@@ -60,6 +61,8 @@ _WORDS = {
     "exposure_h": "exposure time",
     "amplitude_mv": "amplitude",
     "potential_mv": "potential",
+    "temperature_span_c": "temperature within the sweep",
+    "potential_span_mv": "potential within the sweep",
     "modulus_frequencies_hz": "frequencies for the modulus",
     "capacitance_frequency_hz": "frequency for the capacitance",
     "mains_hz": "mains frequency",
@@ -159,7 +162,7 @@ def rename_formulation(campaign: Campaign, formulation_id: str, name: str) -> Op
     """A comparison that takes it as its reference goes with the new name."""
     formulation = formulation_of(campaign, formulation_id)
     changed = replace(formulation, name=name.strip())
-    after = replace(campaign, formulations=_swap(campaign.formulations, [(formulation, changed)]))
+    after = replace(campaign, formulations=swap(campaign.formulations, [(formulation, changed)]))
     asked = campaign.settings.comparisons
     if any(question.reference == formulation.name for question in asked):
         renamed = tuple(
@@ -173,11 +176,8 @@ def rename_formulation(campaign: Campaign, formulation_id: str, name: str) -> Op
 def edit_formulation_remark(campaign: Campaign, formulation_id: str, remark: str) -> Operation:
     formulation = formulation_of(campaign, formulation_id)
     changed = replace(formulation, remark=remark)
-    return operation(
-        f"Change the remark of formulation {formulation.name}",
-        campaign,
-        replace(campaign, formulations=_swap(campaign.formulations, [(formulation, changed)])),
-    )
+    name = f"Change the remark of formulation {formulation.name}"
+    return replacing(name, campaign, [(formulation, changed)])
 
 
 def remove_formulation(campaign: Campaign, formulation_id: str) -> Operation:
@@ -209,11 +209,7 @@ def edit_panel(campaign: Campaign, panel_id: str, **fields: Any) -> Operation:
     """Change fields of `Panel`, by name; None or an empty text says that a fact is not known."""
     panel = panel_of(campaign, panel_id)
     changed, words = _with(panel, fields, ("panel_id",))
-    return operation(
-        f"Change {words} of panel {panel.name}",
-        campaign,
-        replace(campaign, panels=_swap(campaign.panels, [(panel, changed)])),
-    )
+    return replacing(f"Change {words} of panel {panel.name}", campaign, [(panel, changed)])
 
 
 def edit_panels(campaign: Campaign, panel_ids: Iterable[str], **fields: Any) -> Operation:
@@ -223,21 +219,14 @@ def edit_panels(campaign: Campaign, panel_ids: Iterable[str], **fields: Any) -> 
         raise OperationRefused("Choose at least one panel to change.")
     changed = [(panel, _with(panel, fields, ("panel_id", "name"))[0]) for panel in chosen]
     words = _listed([_WORDS.get(name, name) for name in fields])
-    return operation(
-        f"Change {words} of {_count(len(chosen), 'panel')}",
-        campaign,
-        replace(campaign, panels=_swap(campaign.panels, changed)),
-    )
+    return replacing(f"Change {words} of {_count(len(chosen), 'panel')}", campaign, changed)
 
 
 def move_panel(campaign: Campaign, panel_id: str, formulation_id: str) -> Operation:
     panel, formulation = panel_of(campaign, panel_id), formulation_of(campaign, formulation_id)
     changed = replace(panel, formulation_id=formulation_id)
-    return operation(
-        f"Move panel {panel.name} to {formulation.name}",
-        campaign,
-        replace(campaign, panels=_swap(campaign.panels, [(panel, changed)])),
-    )
+    name = f"Move panel {panel.name} to {formulation.name}"
+    return replacing(name, campaign, [(panel, changed)])
 
 
 def remove_panel(campaign: Campaign, panel_id: str) -> Operation:
@@ -291,8 +280,10 @@ def read_again(campaign: Campaign, corrected: Mapping[str, FoundReading]) -> Ope
             source=found.source,
             left_out=reading.left_out if same_points else (),
             kept_in=reading.kept_in if same_points else (),
+            temperature_span_c=found.temperature_span_c,
+            potential_span_mv=found.potential_span_mv,
         )
-        after = replace(after, readings=_swap(after.readings, [(reading, changed)]))
+        after = replace(after, readings=swap(after.readings, [(reading, changed)]))
     if not corrected:
         raise OperationRefused("Choose at least one reading to read again.")
     one = next(iter(corrected))
@@ -375,17 +366,11 @@ def _on_readings(
         name = f"{words} the reading {_where(campaign, changed[0][0])}"
     else:
         name = f"{words} {len(changed)} readings"
-    return operation(name, campaign, replace(campaign, readings=_swap(campaign.readings, changed)))
+    return replacing(name, campaign, changed)
 
 
 # ---------------------------------------------------------------------------------------------
-# Replacing records
-
-
-def _swap(records: tuple[Any, ...], changed: Iterable[tuple[Any, Any]]) -> tuple[Any, ...]:
-    """The records, each that is the first of a pair replaced by the second."""
-    new = {id(old): record for old, record in changed}
-    return tuple(new.get(id(record), record) for record in records)
+# Changing records
 
 
 def _with(record: Record, fields: dict[str, Any], fixed: tuple[str, ...]) -> tuple[Record, str]:

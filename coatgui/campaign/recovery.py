@@ -294,7 +294,7 @@ _SHAPES: dict[str, Callable[[tuple[Value, ...]], bool]] = {
     "raw_files": lambda v: len(v) == 2 and _is_hash(v[0]) and isinstance(v[1], bytes),
     "spectra": lambda v: len(v) == 4 and _is_hash(v[0]) and _is_list(*v[1:]),
     "readings": lambda v: (
-        len(v) == 17
+        17 <= len(v) <= 21
         and _is_text(v[0], v[2], v[4], v[5], v[6])
         and _is_number(v[1], v[3])
         and _is_hash(v[4])
@@ -334,6 +334,9 @@ _DEFAULTS: dict[str, dict[str, Any]] = {
             ("own_models", "limits", "comparisons", "projections", "electrolytes", "regimes"), "[]"
         ),
     },
+    "readings": dict.fromkeys(
+        ("temperature_low_c", "temperature_high_c", "potential_low_mv", "potential_high_mv")
+    ),
     "campaign": {
         **dict.fromkeys(("laboratory", "customer", "order_number", "author", "reviewer"), ""),
         "standards": "[]",

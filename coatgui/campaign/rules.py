@@ -63,10 +63,9 @@ def operation(
             if record is was:
                 continue
             refuse_unsound(table, record)
-            changes += _change(table, key, was, record)
-            for spectrum in _spectra_in(record):
-                if spectrum not in _spectra_in(was):
-                    spectra[spectrum.content_key()] = spectrum
+            changes += change_of(table, key, was, record)
+            for spectrum in new_spectra(was, record):
+                spectra[spectrum.content_key()] = spectrum
     touched = {change.table for change in changes}
     if not any(change.table == "panels" and change.after is None for change in changes):
         # Only a panel that goes away could leave something behind without a panel.
@@ -75,7 +74,9 @@ def operation(
     return Operation(name, tuple(changes), tuple(spectra.values()), dict(raw or {}))
 
 
-def _change(table: str, key: str, was: Any, record: Any) -> list[RowChange]:
+def change_of(table: str, key: str, was: Any, record: Any) -> list[RowChange]:
+    """The change of a row, new where `was` is None, in the columns that differ; none where nothing
+    does."""
     after = _ROW[table](key, record)
     if was is None:
         return [RowChange(table, key, None, after)]
@@ -148,6 +149,12 @@ _ROW: dict[str, Callable[[str, Any], Row]] = {
     "ratings": lambda _, rating: rows_seen.rating_row(rating),
     "photographs": lambda _, photograph: rows_seen.photograph_row(photograph),
 }
+
+
+def new_spectra(was: Any, record: Any) -> tuple[Spectrum, ...]:
+    """The spectra of a record that it did not have before."""
+    there = _spectra_in(was)
+    return tuple(spectrum for spectrum in _spectra_in(record) if spectrum not in there)
 
 
 def _spectra_in(record: Any) -> tuple[Spectrum, ...]:

@@ -15,7 +15,7 @@ from contextlib import closing
 from functools import cache
 
 from coatgui.campaign import seal
-from coatgui.campaign.errors import CampaignFileError, CampaignTooNew
+from coatgui.campaign.errors import CampaignDamaged, CampaignTooNew
 
 APPLICATION_ID = 0x434F4154  # "COAT"
 
@@ -156,8 +156,8 @@ def add_the_input_and_own_models(connection: sqlite3.Connection) -> None:
 
 def seal_the_trail_and_take_what_is_seen(connection: sqlite3.Connection) -> None:
     """The trail is chained by hashes; results carry theirs; ratings, photographs, the names on a
-    summary and what is asked have a place. `migrate` fills in the hashes of the lines that are
-    there."""
+    summary, what is asked, and what changed within a sweep have a place. `migrate` fills in the
+    hashes of the lines that are there."""
     for column in ("reason", "state", "chain"):
         connection.execute(f"ALTER TABLE history ADD COLUMN {column} TEXT NOT NULL DEFAULT ''")
     # Kept results may go at any time; those from before have no hash.
@@ -172,6 +172,13 @@ def seal_the_trail_and_take_what_is_seen(connection: sqlite3.Connection) -> None
         "ALTER TABLE settings ADD COLUMN uptake_from_high_frequency INTEGER NOT NULL DEFAULT 0 "
         "CHECK (uptake_from_high_frequency IN (0, 1))"
     )
+    for column in (
+        "temperature_low_c",
+        "temperature_high_c",
+        "potential_low_mv",
+        "potential_high_mv",
+    ):
+        connection.execute(f"ALTER TABLE readings ADD COLUMN {column} REAL")
     for statement in _TABLES_OF_WHAT_IS_SEEN:
         connection.execute(statement)
 
@@ -222,7 +229,7 @@ def version(connection: sqlite3.Connection) -> int:
             f"knows up to {len(MIGRATIONS)}): install the newer program to open it."
         )
     if found < 0:
-        raise CampaignFileError(f"This campaign file is damaged: its version is {found}.")
+        raise CampaignDamaged(f"This campaign file is damaged: its version is {found}.")
     return found
 
 

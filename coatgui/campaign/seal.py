@@ -26,15 +26,23 @@ BEFORE_THE_FIRST = ""
 _LINE = "entry_id, action, of_entry, name, who, when_utc, reason, changes, state"
 
 
+# Made once: `json.dumps` makes one for every row.
+_told = json.JSONEncoder(ensure_ascii=False, default=repr).encode
+
+
 def row_digest(table: str, row: Mapping[str, Any]) -> int:
     """The part that one row has in the state; `row` holds all its columns."""
-    told = json.dumps([table, *sorted(row.items())], ensure_ascii=False, default=repr)
-    return int.from_bytes(hashlib.sha256(told.encode("utf-8", "surrogatepass")).digest())
+    return _number(_told([table, *sorted(row.items())]))
 
 
 def content_digest(table: str, key: str) -> int:
-    """The part that a row of one of the tables `BY_CONTENT` has in the state."""
-    return row_digest(table, {BY_CONTENT[table]: key})
+    """The part that a row of one of the tables `BY_CONTENT` has in the state: the same as of a row
+    with this one column."""
+    return _number(f'["{table}", ["{BY_CONTENT[table]}", {_told(key)}]]')
+
+
+def _number(told: str) -> int:
+    return int.from_bytes(hashlib.sha256(told.encode("utf-8", "surrogatepass")).digest())
 
 
 def content_total(connection: sqlite3.Connection) -> int:

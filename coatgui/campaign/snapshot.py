@@ -7,12 +7,14 @@ object as before.
 from __future__ import annotations
 
 import sqlite3
+from bisect import bisect_left
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, replace
+from operator import itemgetter
 from typing import Any
 
 from coatgui.campaign import cells, rows, rows_seen, seal
-from coatgui.campaign.errors import CampaignFileError
+from coatgui.campaign.errors import CampaignDamaged
 from coatgui.campaign.schema import KEYS, ORDERED
 from coatgui.records import Campaign, Spectrum
 
@@ -34,7 +36,7 @@ class Snapshot:
     """`campaign` is the file's content as of the last `adopt`; `total` the sum of the parts of its
     rows as they were first read, see `seal`.
 
-    The connection must give rows as `sqlite3.Row`. Raises CampaignFileError where something
+    The connection must give rows as `sqlite3.Row`. Raises CampaignDamaged where something
     cannot be read.
     """
 
@@ -45,6 +47,9 @@ class Snapshot:
         self._connection = connection
         spectra = read_spectra(connection) if spectra is None else spectra
         self._held: dict[str, dict[str, tuple[int, Any]]] = {table: {} for table in ORDERED}
+        # The records of each table in their order, and their places.
+        self._records: dict[str, list[Any]] = {}
+        self._places: dict[str, list[int]] = {}
         self.total = seal.rows_total(connection, KEYS.keys() - set(ORDERED))
         for table, held in self._held.items():
             for row in connection.execute(f"SELECT * FROM {table} ORDER BY place, rowid"):
@@ -85,19 +90,41 @@ class Snapshot:
 
     def adopt(self, touched: Touched) -> None:
         """Make the rows read again part of the snapshot."""
-        tables = {table for table, _ in touched.held}
+        before = self.campaign
+        touched_in: dict[str, dict[str, tuple[int, Any] | None]] = {}
         for (table, key), held in touched.held.items():
-            if held is None:
-                self._held[table].pop(key, None)
-            else:
-                self._held[table][key] = held
+            touched_in.setdefault(table, {})[key] = held
         content = dict(touched.facts)
-        content.update((table, self._in_order(table)) for table in tables)
-        self.campaign = replace(self.campaign, **content)
+        stay = {table: self._take_their_places(table, new) for table, new in touched_in.items()}
+        content.update((table, found or self._in_order(table)) for table, found in stay.items())
+        self.campaign = replace(before, **content)
+        if "readings" not in stay or stay["readings"]:
+            new = touched_in.get("readings", {}).values()
+            self.campaign.take_index(before, [held[1] for held in new if held is not None])
+
+    def _take_their_places(
+        self, table: str, touched: Mapping[str, tuple[int, Any] | None]
+    ) -> tuple[Any, ...] | None:
+        """Adopt touched rows. Returns the records of the table where rows were only altered, which
+        then need not be put in order; None where some went, came or moved."""
+        held, records, places = self._held[table], self._records[table], self._places[table]
+        only_altered = True
+        for key, new in touched.items():
+            was = held.get(key)
+            if new is None:
+                held.pop(key, None)
+            else:
+                held[key] = new
+            only_altered &= was is not None and new is not None and was[0] == new[0]
+            if only_altered and new is not None:
+                records[bisect_left(places, new[0])] = new[1]
+        return tuple(records) if only_altered else None
 
     def _in_order(self, table: str) -> tuple[Any, ...]:
-        places = sorted(self._held[table].values(), key=lambda held: held[0])
-        return tuple(record for _, record in places)
+        held = sorted(self._held[table].values(), key=itemgetter(0))
+        self._places[table] = [place for place, _ in held]
+        self._records[table] = [record for _, record in held]
+        return tuple(self._records[table])
 
     def _spectrum(self, spectrum_id: str, reading_id: str) -> Mapping[str, Spectrum]:
         """A spectrum by its id; that of the reading as it was, where it is the same."""
@@ -110,7 +137,7 @@ class Snapshot:
         """The fields of `Campaign` that come from the tables of one row each."""
         campaign, settings, lead = map(self._only, ("campaign", "settings", "open_lead"))
         if campaign is None or settings is None:
-            raise CampaignFileError(
+            raise CampaignDamaged(
                 "This campaign file is damaged: the campaign's title or settings are missing."
             )
         open_lead = source = None
@@ -130,21 +157,21 @@ class Snapshot:
                 "open_lead_source": source,
             }
         except cells.UNREADABLE as problem:
-            raise CampaignFileError(
+            raise CampaignDamaged(
                 "This campaign file is damaged: its settings or open-lead run cannot be read."
             ) from problem
 
     def _only(self, table: str) -> Any:
         found = self._connection.execute(f"SELECT * FROM {table} LIMIT 2").fetchall()
         if len(found) > 1:
-            raise CampaignFileError(
+            raise CampaignDamaged(
                 f"This campaign file is damaged: the table '{table}' holds more than one row."
             )
         return found[0] if found else None
 
 
 def record_of(table: str, row: Any, spectra: Mapping[str, Spectrum]) -> Any:
-    """The record of a row of one of the ordered tables. Raises CampaignFileError."""
+    """The record of a row of one of the ordered tables. Raises CampaignDamaged."""
     try:
         if not isinstance(row["place"], int):
             raise TypeError("A place must be a whole number.")
@@ -160,7 +187,7 @@ def record_of(table: str, row: Any, spectra: Mapping[str, Spectrum]) -> Any:
             return rows_seen.photograph_of(row)
         return rows.refusal_of(row)
     except cells.UNREADABLE as problem:
-        raise CampaignFileError(
+        raise CampaignDamaged(
             f"This campaign file is damaged: row {row[KEYS[table]]} of {table} cannot be read."
         ) from problem
 
@@ -169,7 +196,7 @@ def read_spectra(
     connection: sqlite3.Connection, spectrum_id: str | None = None
 ) -> dict[str, Spectrum]:
     """The named spectrum, or all that readings and the open-lead run refer to, by id. Raises
-    CampaignFileError where one cannot be read or is not what its id says."""
+    CampaignDamaged where one cannot be read or is not what its id says."""
     columns = "SELECT spectrum_id, frequency_hz, real_ohm, imaginary_ohm FROM spectra"
     if spectrum_id is not None:
         found = connection.execute(f"{columns} WHERE spectrum_id = ?", (spectrum_id,))
@@ -182,6 +209,6 @@ def read_spectra(
         return spectra
     except cells.UNREADABLE as problem:
         which = "one of its spectra" if spectrum_id is None else f"spectrum {spectrum_id}"
-        raise CampaignFileError(
+        raise CampaignDamaged(
             f"This campaign file is damaged: {which} cannot be read, or was altered."
         ) from problem

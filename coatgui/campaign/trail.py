@@ -15,7 +15,7 @@ from coatgui.campaign import changes as changes_of
 from coatgui.campaign import connection as database
 from coatgui.campaign import seal
 from coatgui.campaign.changes import HistoryEntry, RowChange
-from coatgui.campaign.errors import CampaignFileError
+from coatgui.campaign.errors import CampaignDamaged, CampaignFileError
 
 
 class Trail:
@@ -41,7 +41,7 @@ class Trail:
         if tail is not None:
             self._last, self.chain, self.state = tail
         elif not is_new:
-            raise CampaignFileError("This campaign file is damaged: its history is missing.")
+            raise CampaignDamaged("This campaign file is damaged: its history is missing.")
 
     @property
     def to_undo(self) -> int | None:
@@ -72,9 +72,7 @@ class Trail:
 
     def _move(self, entry_id: int | None, pile: list[int], other: list[int]) -> None:
         if not pile or pile[-1] != entry_id:
-            raise CampaignFileError(
-                "This campaign file is damaged: its history contradicts itself."
-            )
+            raise CampaignDamaged("This campaign file is damaged: its history contradicts itself.")
         other.append(pile.pop())
 
     def _tail(self) -> tuple[int, str, str] | None:
@@ -165,6 +163,6 @@ def _changes(text: str, entry_id: int) -> tuple[RowChange, ...]:
     try:
         return changes_of.from_text(text)
     except ValueError as problem:
-        raise CampaignFileError(
+        raise CampaignDamaged(
             f"This campaign file is damaged: line {entry_id} of its history cannot be read."
         ) from problem

@@ -48,8 +48,9 @@ class Peak:
 @dataclass(frozen=True, eq=False)
 class RelaxationOutline:
     """`density_ohm` (M,) is resistance per unit of ln τ at `time_constant_s` (M,), with a 95 %
-    band `low_ohm`, `high_ohm` (M,). `blocking_capacitance_f` is None where the film conducts.
-    `strength` is the regularisation that cross-validation chose; `peaks` run from fast to slow."""
+    band `low_ohm`, `high_ohm` (M,) around it. `blocking_capacitance_f` is None where the film
+    conducts. `strength` is the regularisation that cross-validation chose; `peaks` run from fast
+    to slow."""
 
     time_constant_s: FloatArray
     density_ohm: FloatArray
@@ -77,6 +78,8 @@ def relaxation_outline(
     bands = problem.deal_again(strength, modelled)
     density = amounts[problem.own] / problem.step
     low, high = (band[problem.own] / problem.step for band in bands)
+    # Data dealt again are smoothed once more, which may push a whole band a little off its middle.
+    low, high = np.minimum(low, density), np.maximum(high, density)
     inverse = float(amounts[2])
     reactance = inverse / (2.0 * np.pi * frequency_hz.min())
     # A capacitance in series that the slowest point can hardly tell from a short circuit is none.

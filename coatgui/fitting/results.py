@@ -115,4 +115,10 @@ def build_fit(
         message=message,
         trials=trials,
         log_covariance=covariance,
+        optimum=np.array(
+            [
+                _physical(spec, float(value))
+                for spec, value in zip(model.all_parameters, whole, strict=True)
+            ]
+        ),
     )

@@ -68,10 +68,15 @@ def read_files(
 
 
 def propose_files(
-    files: Sequence[Path], *, told: Told | None = None, progress: Progress | None = None
+    files: Sequence[Path],
+    *,
+    below: Path | None = None,
+    told: Told | None = None,
+    progress: Progress | None = None,
 ) -> DryRun:
-    """What `read_files` would make of every file."""
-    return _Run(None, told or Told()).over(list(files), progress or Progress())
+    """What `read_files` would make of every file. Files in a folder `below` which they are chosen
+    have the names that they would have if all of it were read."""
+    return _Run(below, told or Told(), chosen=True).over(list(files), progress or Progress())
 
 
 def files_in(folder: Path) -> Iterator[Path]:
@@ -99,8 +104,8 @@ def files_in(folder: Path) -> Iterator[Path]:
 class _Run:
     """Going through files once, collecting proposals and the find at the same time."""
 
-    def __init__(self, folder: Path | None, told: Told) -> None:
-        self._folder = folder
+    def __init__(self, folder: Path | None, told: Told, *, chosen: bool = False) -> None:
+        self._folder, self._chosen = folder, chosen
         self._told = told
         self._panels: tuple[FoundPanel, ...] = ()
         self._listed: dict[tuple[str, str], ListedReading] = {}
@@ -140,14 +145,16 @@ class _Run:
         return DryRun(tuple(proposals), found)
 
     def _name(self, path: Path) -> str:
-        return path.name if self._folder is None else path.relative_to(self._folder).as_posix()
+        if self._folder is None or not path.is_relative_to(self._folder):
+            return path.name
+        return path.relative_to(self._folder).as_posix()
 
     def _take(self, path: Path) -> None:
         name = self._name(path)
         if self._told.about(name, "").leave_out:
             self._propose(name, Standing.LEFT_OUT, "nothing")
             return
-        expected = path.suffix.casefold() in SPECTRUM_ENDINGS or self._folder is None
+        expected = path.suffix.casefold() in SPECTRUM_ENDINGS or self._chosen
         try:
             self._read(path, name)
         except Unclear as question:

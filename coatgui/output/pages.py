@@ -30,7 +30,7 @@ from coatgui.output.text import printable
 from coatgui.output.whole import write_whole
 
 if TYPE_CHECKING:
-    from PySide6.QtGui import QFont, QPainter, QPdfWriter, QTextLayout
+    from PySide6.QtGui import QFont, QImage, QPainter, QPdfWriter, QTextLayout
 
 _DOTS = 1200  # to the inch: fine enough that whole pixels do not show
 UNIT = _DOTS / 72  # one point
@@ -88,7 +88,15 @@ def pdf_bytes(document: Document) -> bytes:
     # Once to count the pages, and once to paint them: pages kept would fill the memory.
     total = _Book(document).set_out()
     book = _Book(document, total)
-    raw = _written(document.title, document.author, layout, book.paint)
+
+    def paint(painter: QPainter, writer: QPdfWriter) -> None:
+        def turn() -> QPainter:
+            writer.newPage()
+            return painter
+
+        book.paint(painter, turn)
+
+    raw = _written(document.title, document.author, layout, paint)
     return marked(
         raw,
         title=document.title,
@@ -148,6 +156,51 @@ def figure_png(figure: Figure) -> bytes:
     if not image.save(buffer, "PNG"):  # type: ignore[call-overload]
         raise OSError("the picture could not be made into a PNG")
     return bytes(buffer.data().data())
+
+
+def paint_pages(
+    document: Document, pixels_across: int, take: Callable[[int, int, QImage], object]
+) -> tuple[Bookmark, ...]:
+    """Paint the pages as they print, so many pixels wide, and give each to `take` with its place,
+    from 0, and how many there are. In any thread; what `take` raises ends it. Returns where the
+    headings stand. Raises PagesUnavailable."""
+    require_qt()
+    from PySide6.QtCore import Qt
+    from PySide6.QtGui import QImage, QPainter
+
+    total = _Book(document).set_out()
+    scale = pixels_across / (_WIDE * UNIT)
+    size = (pixels_across, round(pixels_across * _HIGH / _WIDE))
+    book = _Book(document, total)
+
+    def begin() -> tuple[QImage, QPainter]:
+        image = QImage(*size, QImage.Format.Format_RGB32)
+        image.fill(Qt.GlobalColor.white)
+        painter = QPainter(image)
+        painter.setRenderHint(QPainter.RenderHint.Antialiasing)
+        painter.scale(scale, scale)
+        return image, painter
+
+    image, painter = begin()
+
+    def turn() -> QPainter:
+        nonlocal image, painter
+        painter.end()
+        take(book.page - 1, total, image)
+        image, painter = begin()
+        return painter
+
+    try:
+        book.paint(painter, turn)
+    finally:
+        painter.end()
+    take(book.page, total, image)
+    return tuple(book.bookmarks)
+
+
+def page_height(width: float) -> float:
+    """How high a page is that is so wide."""
+    return width * _HIGH / _WIDE
 
 
 def _picture(figure: Figure) -> Any:
@@ -226,10 +279,11 @@ class _Book:
         self.described: list[Described] = []
         self._fonts: dict[tuple[float, bool], QFont] = {}
         self._painter: QPainter | None = None
-        self._writer: QPdfWriter | None = None
+        self._next: Callable[[], QPainter] | None = None
 
-    def paint(self, painter: QPainter, writer: QPdfWriter) -> None:
-        self._painter, self._writer = painter, writer
+    def paint(self, painter: QPainter, turn: Callable[[], QPainter]) -> None:
+        """Paint the first page with `painter`, each further one with what `turn` gives."""
+        self._painter, self._next = painter, turn
         self.set_out()
 
     def set_out(self) -> int:
@@ -246,8 +300,8 @@ class _Book:
         """Begin a new page."""
         self.page += 1
         self.y = _TOP
-        if self._writer is not None:
-            self._writer.newPage()
+        if self._next is not None:
+            self._painter = self._next()
         self._frame()
 
     # Setting text

@@ -56,6 +56,20 @@ class Identification:
     date: str = ""
     standards: str = ""
 
+    @classmethod
+    def of(cls, campaign: Campaign, **fields: str) -> Identification:
+        """What the campaign keeps; `fields` that are not empty take its place."""
+        kept = campaign.identification
+        known = {
+            "laboratory": kept.laboratory,
+            "customer": kept.customer,
+            "order": kept.order,
+            "author": kept.author,
+            "reviewer": kept.reviewer,
+            "standards": "; ".join(kept.standards),
+        }
+        return cls(**{**known, **{name: text for name, text in fields.items() if text}})
+
     def rows(self) -> tuple[tuple[str, str], ...]:
         filled = ((field.name.capitalize(), getattr(self, field.name)) for field in fields(self))
         return tuple((name, text) for name, text in filled if text.strip())
@@ -71,8 +85,9 @@ def inspection_summary(
     campaign: Campaign,
     identification: Identification | None = None,
 ) -> Document:
-    """The summary of an assessment. The same assessment gives the same document."""
-    identification = identification or Identification()
+    """The summary of an assessment, by default under the names that the campaign keeps. The same
+    assessment gives the same document."""
+    identification = identification or Identification.of(campaign)
     figures = {figure.name: figure for figure in all_figures(assessment, campaign)}
     sections: list[tuple[str, Iterator[Block]]] = [
         ("Identification", _identification(identification)),

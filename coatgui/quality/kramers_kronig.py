@@ -36,6 +36,9 @@ _CONSTANT = 30.0  # the modulus itself is free: ln|Z| goes up to about this
 _LEVELS = (3e-2, 1e-2, 2e-3, 1.5e-4)
 _USUAL = 1  # the level that shows the scatter
 _ALIKE = 1e-4  # of ln f
+# Terms count for more than one each, lest those that follow scatter or a fault be taken: about 1.4
+# (Kim & Gu, J. R. Statist. Soc. B 66 (2004) 337, from memory).
+_COUNTED = 1.4
 _SAYING = (0.05, 5.0)  # singular values, in units of the scatter, where the levels may end
 
 
@@ -88,7 +91,8 @@ class MeasurementModel:
         scores = [
             np.where(
                 (level > _SAYING[0] * scatter) & (level < _SAYING[1] * scatter),
-                np.maximum(whole - squares[:, k - 1], 0.0) / (1.0 - k / logarithm.shape[1]) ** 2,
+                np.maximum(whole - squares[:, k - 1], 0.0)
+                / (1.0 - _COUNTED * k / logarithm.shape[1]) ** 2,
                 np.inf,
             )
             for k, level in zip(self.levels, _LEVELS, strict=True)

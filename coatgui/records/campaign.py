@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from dataclasses import dataclass
 
 from coatgui.records.measured import Refusal, Source, Spectrum
@@ -38,6 +39,8 @@ class Reading:
     `left_out` and `kept_in` are places of points: those a person takes out, and those a person
     keeps although the checks suggest leaving them out. `pinned_model` names a coating model that a
     person insists on. `overruled_because` is a person's reason for using a rejected reading.
+    `temperature_span_c` and `potential_span_mv` are the lowest and the highest within the sweep,
+    where the file gives them point by point.
     """
 
     reading_id: str
@@ -53,6 +56,8 @@ class Reading:
     kept_in: tuple[int, ...] = ()
     pinned_model: str = ""
     overruled_because: str = ""
+    temperature_span_c: tuple[float, float] | None = None
+    potential_span_mv: tuple[float, float] | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -143,8 +148,15 @@ class Photograph:
     file: str = ""
 
 
+class _ById:
+    """Holds an index of readings, which is no part of what a campaign says."""
+
+    __slots__ = ("_index",)
+    _index: dict[str, Reading]
+
+
 @dataclass(frozen=True, slots=True)
-class Campaign:
+class Campaign(_ById):
     """A campaign whole. Ids are random and stable; names may change."""
 
     campaign_id: str
@@ -160,3 +172,23 @@ class Campaign:
     ratings: tuple[Rating, ...] = ()
     photographs: tuple[Photograph, ...] = ()
     identification: Identification = Identification()
+
+    def reading(self, reading_id: str) -> Reading | None:
+        """The reading of an id, None where there is none. The first question makes an index."""
+        try:
+            index = self._index
+        except AttributeError:
+            index = {reading.reading_id: reading for reading in self.readings}
+            object.__setattr__(self, "_index", index)
+        return index.get(reading_id)
+
+    def take_index(self, before: Campaign, replaced: Iterable[Reading]) -> None:
+        """Carry on the index of a campaign that differs in nothing but these readings, which took
+        the places of others with their ids: an edit of a large campaign then needs no new one."""
+        try:
+            index = before._index
+            object.__delattr__(before, "_index")
+        except AttributeError:
+            return
+        index.update((reading.reading_id, reading) for reading in replaced)
+        object.__setattr__(self, "_index", index)

@@ -107,6 +107,8 @@ class Fit:
     root mean square of its parts over the used points, in percent. `log_covariance` (p, p) is the
     covariance of the parameters' natural logarithms, in the order of `parameters` (zero for fixed
     ones), or None where it is not known; what is derived from several parameters needs it.
+    `optimum` (p,) holds their values at the optimum, also where the data hold no more than a bound
+    of one; it is for drawing the curve and its band, never a number to be shown.
     """
 
     model: str
@@ -119,6 +121,7 @@ class Fit:
     message: str
     trials: tuple[Trial, ...] = ()
     log_covariance: FloatArray | None = None
+    optimum: FloatArray | None = None
 
     def parameter(self, symbol: str) -> Quantity | None:
         """The quantity of the parameter with this symbol, or None if the model has none."""

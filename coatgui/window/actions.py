@@ -7,8 +7,8 @@ from dataclasses import dataclass
 
 @dataclass(frozen=True)
 class Entry:
-    """`method` is the main window's or of one of its helpers; `needs` is what must be there: "",
-    campaign, work (something under way), undo or redo."""
+    """`method` is the main window's or of one of its helpers, called with `about` where there is
+    any; `needs` is what must be there: "", campaign, work (something under way), undo or redo."""
 
     menu: str
     name: str
@@ -16,6 +16,7 @@ class Entry:
     tip: str
     method: str
     needs: str = ""
+    about: str = ""
 
 
 ACTIONS = (
@@ -34,10 +35,16 @@ ACTIONS = (
           "stop_watching", "campaign"),
     Entry("Campaign", "Write workbook…", "Ctrl+E", "Write the assessment as a workbook",
           "write_workbook", "campaign"),
+    Entry("Campaign", "Write inspection summary…", "Ctrl+Shift+E", "Write the summary as PDF or "
+          "HTML", "write_summary", "campaign"),
     Entry("Campaign", "Write data (JSON)…", "", "Write the assessment as data for scripts",
           "write_data", "campaign"),
     Entry("Campaign", "Save the plot…", "Ctrl+Shift+P", "As SVG or PNG, on white", "save_picture",
           "campaign"),
+    Entry("Campaign", "Keep copies in a folder…", "", "Copies are made as the work goes on, and "
+          "kept by their age", "choose_copies_folder"),
+    Entry("Campaign", "Keep copies beside the campaign", "", "In a folder named after it",
+          "copies_beside"),
     Entry("Campaign", "Judge the readings again", "F5", "Check and fit what has changed",
           "judge_again", "campaign"),
     Entry("Campaign", "Stop the work under way", "Esc", "Nothing is left half-written",
@@ -59,24 +66,30 @@ ACTIONS = (
           "campaign"),
     Entry("Edit", "New formulation", "", "To move panels to, by dragging them in the tree",
           "add_formulation", "campaign"),
-    Entry("Go", "Map", "Ctrl+1", "Where does the campaign stand?", "go_map", "campaign"),
-    Entry("Go", "Reading", "Ctrl+2", "What does this spectrum say?", "go_reading", "campaign"),
-    Entry("Go", "Course", "Ctrl+3", "How is it going?", "go_course", "campaign"),
-    Entry("Go", "Doubts", "Ctrl+4", "What needs a person's eye?", "go_doubts", "campaign"),
-    Entry("Go", "Water", "Ctrl+5", "How much water does the film take up, and how fast?",
-          "go_water", "campaign"),
-    Entry("Go", "Comparison", "Ctrl+6", "Which is better, and are we sure?", "go_comparison",
-          "campaign"),
-    Entry("Go", "Settings", "Ctrl+7", "By what is this campaign judged?", "go_settings",
-          "campaign"),
+    Entry("Go", "Map", "Ctrl+1", "Where does the campaign stand?", "go_to", "campaign", "Map"),
+    Entry("Go", "Reading", "Ctrl+2", "What does this spectrum say?", "go_to", "campaign",
+          "Reading"),
+    Entry("Go", "Course", "Ctrl+3", "How is it going?", "go_to", "campaign", "Course"),
+    Entry("Go", "Water", "Ctrl+4", "How much water does the film take up, and how fast?",
+          "go_to", "campaign", "Water"),
+    Entry("Go", "Comparison", "Ctrl+5", "Which is better, and are we sure?", "go_to", "campaign",
+          "Comparison"),
+    Entry("Go", "Doubts", "Ctrl+6", "What needs a person's eye?", "go_to", "campaign", "Doubts"),
+    Entry("Go", "Summary", "Ctrl+7", "What do we hand over?", "go_to", "campaign", "Summary"),
+    Entry("Go", "Settings", "Ctrl+8", "By what is this campaign judged?", "go_to", "campaign",
+          "Settings"),
     Entry("Go", "Next inspection", "Ctrl+Right", "This panel, one inspection later", "later",
           "campaign"),
     Entry("Go", "Previous inspection", "Ctrl+Left", "This panel, one inspection earlier", "earlier",
           "campaign"),
     Entry("View", "Where does this number come from?", "Ctrl+H", "From the file to the number",
           "show_origin", "campaign"),
+    Entry("View", "Ratings and photographs", "Ctrl+R", "What was seen on this panel", "show_seen",
+          "campaign"),
     Entry("View", "History", "Ctrl+Shift+H", "What was done, by whom and when", "show_history",
           "campaign"),
     Entry("View", "Light or dark", "Ctrl+L", "Change between light and dark colours", "turn_tone"),
-    Entry("Help", "Cautions", "F1", "What the results do not say", "show_cautions"),
+    Entry("Help", "Method notes", "F1", "What each number, circuit, check and test means, and the "
+          "terms of the trade", "show_notes"),
+    Entry("Help", "Cautions", "Shift+F1", "What the results do not say", "show_cautions"),
 )  # fmt: skip

@@ -4,17 +4,20 @@ above whatever else is open."""
 from __future__ import annotations
 
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 from PySide6.QtCore import QObject, QSettings
 from PySide6.QtWidgets import QStackedWidget
 
 from coatgui.window.desk import Desk
-from coatgui.window.dry_run_page import DryRunPage
 from coatgui.window.file_actions import FileActions
 from coatgui.window.incoming import Incoming
 from coatgui.window.palette import Colours
 from coatgui.window.watching import Watching
 from coatgui.window.welcome import Waiting
+
+if TYPE_CHECKING:
+    from coatgui.window.dry_run_page import DryRunPage
 
 WELCOME, WORK, PROPOSALS = range(3)
 
@@ -36,21 +39,37 @@ class Arrivals(QObject):
         self.desk, self.incoming, self.pages = desk, incoming, pages
         self._files = files
         self.waiting, self.arrived = Waiting(), Waiting()
-        self.page = DryRunPage(incoming, tone)
-        pages.addWidget(self.page)
-        self.page.taken.connect(self.take)
-        self.page.left.connect(self.set_aside)
+        self._tone = tone
+        self._page: DryRunPage | None = None
         self.waiting.look.connect(self.show_proposals)
         incoming.changed.connect(self.show_proposals)
         self.watching = Watching(desk, settings, self)
         self.watching.arrived.connect(self._tell_arrived)
         self.arrived.look.connect(self._look_at_arrived)
 
+    @property
+    def page(self) -> DryRunPage:
+        """The page with the proposals, built when it is first wanted."""
+        if self._page is None:
+            from coatgui.window.dry_run_page import DryRunPage
+
+            self._page = DryRunPage(self.incoming, self._tone)
+            self.pages.addWidget(self._page)
+            self._page.taken.connect(self.take)
+            self._page.left.connect(self.set_aside)
+            self._page.refresh()
+        return self._page
+
+    def paint_in(self, tone: Colours) -> None:
+        self._tone = tone
+        if self._page is not None:
+            self._page.paint_in(tone)
+
     def show_proposals(self) -> None:
         """Show what the files on their way would become, or what is open where there are none."""
         if self.incoming.is_there:
             self.waiting.hide()
-            self.pages.setCurrentIndex(PROPOSALS)
+            self.pages.setCurrentWidget(self.page)
         else:
             self.set_aside()
 
@@ -74,7 +93,7 @@ class Arrivals(QObject):
     def _look_at_arrived(self) -> None:
         self.arrived.hide()
         if files := self.watching.seen():
-            self.incoming.bring_in(files)
+            self.incoming.bring_in(files, self.watching.folder)
 
     def watch_folder(self) -> None:
         """Ask for a folder, and watch it."""

@@ -3,11 +3,16 @@ and where it is stopped."""
 
 from __future__ import annotations
 
-from collections.abc import Callable
 from pathlib import Path
-from typing import Any
 
-from coatgui.campaign import CampaignFile, Change, campaign_from_found, operations
+from coatgui.campaign import (
+    CampaignFile,
+    Change,
+    Recovered,
+    campaign_from_found,
+    operations,
+    recover,
+)
 from coatgui.intake import DryRun, Standing, propose_folder
 from coatgui.jobs import spread_over_processes
 from coatgui.progress import Progress
@@ -45,6 +50,21 @@ def open_file(path: Path, progress: Progress) -> CampaignFile:
     return CampaignFile.open(path)
 
 
+def save_to(
+    file: CampaignFile, path: Path, progress: Progress
+) -> tuple[CampaignFile, tuple[str, ...]]:
+    """The copy, opened, and what is missing in it."""
+    progress.at("Saving the campaign", 0, 1)
+    missing = file.save_copy(path, replace=True)
+    return CampaignFile.open(path), missing
+
+
+def recover_to(path: Path, target: Path, progress: Progress) -> tuple[CampaignFile, Recovered]:
+    progress.at("Recovering the campaign", 0, 1)
+    found = recover(path, target, replace_target=True)
+    return CampaignFile.open(target), found
+
+
 def walk_to(file: CampaignFile, step: int, progress: Progress) -> Change | None:
     """Undo or redo until an edit is the newest that stands (0: none stands)."""
     progress.at("Going through the history", 0, 1)
@@ -61,9 +81,17 @@ def walk_to(file: CampaignFile, step: int, progress: Progress) -> Change | None:
     return Change(frozenset(kinds), name) if kinds else None
 
 
-def export_to(
-    write: Callable[..., None], arguments: tuple[Any, ...], path: Path, progress: Progress
-) -> Path:
+def export_to(assessment: Assessment, campaign: Campaign, path: Path, progress: Progress) -> Path:
+    """Write the workbook, the inspection summary (PDF, HTML) or the JSON, by the ending."""
+    # Late, as above.
+    from coatgui.output import write_json, write_summary, write_workbook
+
     progress.at("Writing the file", 0, 1)
-    write(*arguments, path)
+    match path.suffix.lower():
+        case ".json":
+            write_json(assessment, path)
+        case ".pdf" | ".html":
+            write_summary(assessment, campaign, path)
+        case _:
+            write_workbook(assessment, campaign, path)
     return path

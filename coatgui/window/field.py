@@ -14,9 +14,18 @@ NAME_WIDTH, LINE_WIDTH = 190, 150
 
 class Field(QWidget):
     """`take` gets what was typed and carries it out, or raises ValueError with a sentence, which
-    then stands under the line until it is put right."""
+    then stands under the line until it is put right. With `line_width` None the line takes the
+    room there is, and the help stands in it while it is empty."""
 
-    def __init__(self, name: str, help_text: str, take: Callable[[str], None]) -> None:
+    def __init__(
+        self,
+        name: str,
+        help_text: str,
+        take: Callable[[str], None],
+        *,
+        label_width: int = NAME_WIDTH,
+        line_width: int | None = LINE_WIDTH,
+    ) -> None:
         super().__init__()
         self._take = take
         self._shown = ""
@@ -26,22 +35,28 @@ class Field(QWidget):
         grid.setVerticalSpacing(2)
         label = plain_label()
         label.setText(name)
-        label.setFixedWidth(NAME_WIDTH)
+        label.setFixedWidth(label_width)
         self.line = QLineEdit()
         self.line.setAccessibleName(name)
         self.line.setAccessibleDescription(help_text)
         self.line.setToolTip(help_text)
-        self.line.setFixedWidth(LINE_WIDTH)
         self.line.editingFinished.connect(self._finished)
         self.note = plain_label("small")
+        self.note.setParent(self)
         self.note.setText(help_text)
         self.wrong = plain_label("wrong")
         self.wrong.hide()
         grid.addWidget(label, 0, 0)
         grid.addWidget(self.line, 0, 1)
-        grid.addWidget(self.note, 0, 2, Qt.AlignmentFlag.AlignVCenter)
         grid.addWidget(self.wrong, 1, 1, 1, 2)
-        grid.setColumnStretch(2, 1)
+        if line_width is None:
+            self.line.setPlaceholderText(help_text)
+            self.note.hide()
+            grid.setColumnStretch(1, 1)
+        else:
+            self.line.setFixedWidth(line_width)
+            grid.addWidget(self.note, 0, 2, Qt.AlignmentFlag.AlignVCenter)
+            grid.setColumnStretch(2, 1)
 
     def show_text(self, text: str) -> None:
         """Show what is set. What was typed wrongly stays until it, or what is set, is changed."""

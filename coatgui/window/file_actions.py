@@ -32,6 +32,7 @@ class FileActions:
     ) -> None:
         self._window, self.desk, self.incoming = window, desk, incoming
         self.settings, self.trouble = settings, trouble
+        desk.files_wanted.connect(self.bring_in)
 
     def may_leave(self) -> bool:
         """Whether the campaign may be put away: asks where edits would be lost."""
@@ -41,6 +42,7 @@ class FileActions:
         answer = how_to_leave(self._window, file.campaign.title)
         if answer is Leave.SAVE:
             self.save_as()
+            self.desk.wait()
             return self.desk.is_saved
         return answer is Leave.LOSE
 
@@ -94,12 +96,22 @@ class FileActions:
             self.settings.setValue("folder", str(path.parent))
         return path
 
+    def campaign_to_write(self, title: str, suggested: Path) -> Path | None:
+        return file_to_write(self._window, title, _CAMPAIGNS, suggested)
+
     def save_as(self) -> None:
         if path := self.to_write("Keep the campaign as", _CAMPAIGNS, ".coatgui"):
             self.desk.save_as(path)
 
     def write_workbook(self) -> None:
         if path := self.to_write("Workbook", "Workbooks (*.xlsx)", ".xlsx"):
+            self.desk.export(path)
+
+    def write_summary(self, ending: str = ".pdf") -> None:
+        kinds = ["Pages (*.pdf)", "Web pages (*.html)"]
+        if ending != ".pdf":
+            kinds.reverse()
+        if path := self.to_write("Inspection summary", ";;".join(kinds), ending):
             self.desk.export(path)
 
     def write_data(self) -> None:

@@ -5,7 +5,7 @@ from __future__ import annotations
 
 import shutil
 import tempfile
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, replace
 from datetime import datetime
 from pathlib import Path
@@ -34,8 +34,8 @@ QUESTIONABLE = (Standing.ASKED, Standing.DOUBTFUL)
 
 @dataclass(frozen=True)
 class Batch:
-    """A folder, or loose files, that were handed over together, and what was said about them.
-    Names are those of the batch: two folders may hold files of one name."""
+    """A folder, or files, of a folder perhaps, that were handed over together, and what was said
+    about them. Names are those of the batch: two folders may hold files of one name."""
 
     folder: Path | None
     files: tuple[Path, ...]
@@ -47,9 +47,9 @@ class Batch:
         return next((path for path in self.files if path.name == file), Path(file))
 
     def looked_at(self, progress: Progress) -> DryRun:
-        if self.folder is not None:
+        if self.folder is not None and not self.files:
             return propose_folder(self.folder, told=self.told, progress=progress)
-        return propose_files(self.files, told=self.told, progress=progress)
+        return propose_files(self.files, below=self.folder, told=self.told, progress=progress)
 
 
 @dataclass(frozen=True)
@@ -101,6 +101,7 @@ class Incoming(QObject):
         self.runs: list[DryRun] = []
         self.title = ""  # of the campaign to be made; "" where files are added to one
         self._pasted: Path | None = None
+        self._folders: list[Path] = []  # made for what waits, and removed with it
         self._job: Job | None = None
         self._wanted: list[Batch] = []
         self._new_title = ""
@@ -143,13 +144,14 @@ class Incoming(QObject):
 
     # --- beginning -------------------------------------------------------------------------
 
-    def bring_in(self, paths: Sequence[Path]) -> None:
-        """Look at files and folders: for the campaign that is open, or for a new one."""
+    def bring_in(self, paths: Sequence[Path], below: Path | None = None) -> None:
+        """Look at files and folders: for the campaign that is open, or for a new one. Files in a
+        folder `below` which they are chosen keep the folders between in their names."""
         areas = Told(areas_cm2=areas_of(self.desk.campaign))
         batches = [Batch(path, (), areas) for path in paths if path.is_dir()]
         files = tuple(path for path in paths if not path.is_dir())
         if files:
-            batches.append(Batch(None, files, areas))
+            batches.append(Batch(below, files, areas))
         # What waits already is not lost when more comes.
         title = ""
         if self.desk.file is None:
@@ -163,10 +165,20 @@ class Incoming(QObject):
             return
         if self._pasted is None:
             self._pasted = Path(tempfile.mkdtemp(prefix="coatgui-pasted-"))
+            self._folders.append(self._pasted)
         number = len(list(self._pasted.iterdir())) + 1
         path = self._pasted / f"pasted {datetime.now():%Y-%m-%d %H.%M.%S} no {number}.txt"
         path.write_text(text, encoding="utf-8", newline="")
         self.bring_in([path])
+
+    def bring_in_bytes(self, files: Mapping[str, bytes]) -> None:
+        """Look at files that are no longer where they came from, by their names."""
+        folder = Path(tempfile.mkdtemp(prefix="coatgui-again-"))
+        self._folders.append(folder)
+        for name, content in files.items():
+            path = folder / (Path(name.replace("\\", "/")).name or "file")
+            path.write_bytes(content)
+        self.bring_in(sorted(folder.iterdir()))
 
     def _campaign_changed(self) -> None:
         """What was to go into one campaign does not go into another."""
@@ -270,8 +282,8 @@ class Incoming(QObject):
         """Forget the proposals; nothing was taken."""
         self._stop()
         self.batches, self.runs, self.title, self._wanted = [], [], "", []
-        if self._pasted is not None:
-            shutil.rmtree(self._pasted, ignore_errors=True)
-            self._pasted = None
+        for folder in self._folders:
+            shutil.rmtree(folder, ignore_errors=True)
+        self._folders, self._pasted = [], None
         self.looking.emit(False)
         self.changed.emit()

@@ -2,20 +2,18 @@
 
 from __future__ import annotations
 
-import time
 from collections.abc import Callable
 from pathlib import Path
+from typing import TYPE_CHECKING
 
-from PySide6.QtCore import QSettings, Qt
+from PySide6.QtCore import QByteArray, QEvent, QSettings, Qt, QTimer
 from PySide6.QtGui import QAction, QCloseEvent, QDragEnterEvent, QDropEvent, QKeySequence
 from PySide6.QtWidgets import (
     QApplication,
     QButtonGroup,
     QHBoxLayout,
-    QLabel,
     QMainWindow,
     QMenu,
-    QProgressBar,
     QPushButton,
     QSplitter,
     QStackedWidget,
@@ -27,25 +25,25 @@ from coatgui.campaign import CampaignFile
 from coatgui.window import palette
 from coatgui.window.actions import ACTIONS, Entry
 from coatgui.window.arrivals import PROPOSALS, WELCOME, WORK, Arrivals
-from coatgui.window.asking import say_plainly
 from coatgui.window.desk import Desk
 from coatgui.window.exposure_strip import ExposureStrip
 from coatgui.window.figure_actions import FigureActions
 from coatgui.window.file_actions import FileActions
+from coatgui.window.help import Help
 from coatgui.window.incoming import Incoming
-from coatgui.window.places.comparison_place import ComparisonPlace
-from coatgui.window.places.course_place import CoursePlace
-from coatgui.window.places.doubts_place import DoubtsPlace
-from coatgui.window.places.map_place import MapPlace
+from coatgui.window.keeping import Keeping
+from coatgui.window.places.in_order import NOUNS, ORDER, Places
 from coatgui.window.places.place import Place
-from coatgui.window.places.reading_place import ReadingPlace
-from coatgui.window.places.settings_place import SettingsPlace
-from coatgui.window.places.water_place import WaterPlace
 from coatgui.window.project_tree import ProjectTree
 from coatgui.window.side_column import SideColumn
 from coatgui.window.welcome import Trouble, Welcome
+from coatgui.window.work_status import WorkStatus
+
+if TYPE_CHECKING:
+    from coatgui.window.dry_run_page import DryRunPage
 
 _UNSAVED = "not saved yet"
+_MANY = 2000  # readings, beyond which following an edit is cut into parts
 
 
 class MainWindow(QMainWindow):
@@ -57,15 +55,19 @@ class MainWindow(QMainWindow):
         self.setWindowTitle("coatgui")
         self.setAcceptDrops(True)
         self.resize(1280, 800)
+        geometry = settings.value("geometry")
+        if isinstance(geometry, QByteArray):
+            self.restoreGeometry(geometry)
         self._actions: list[tuple[Entry, QAction]] = []
-        self._began = 0.0
         self._shown: CampaignFile | None = None
         # Places that do not show what the desk holds: all of it (True), or only the selection.
-        self._behind: dict[Place, bool] = {}
+        self._behind: dict[int, bool] = {}
+        self._parts: list[Callable[[], None]] = []  # of following the desk, still to be done
         self.trouble = Trouble()
         self.incoming = Incoming(self.desk, self)
         self.files = FileActions(self, self.desk, self.incoming, settings, self.trouble)
         self.figures = FigureActions(self.desk, self.files, self.trouble, self.open_place)
+        self.help = Help(self, lambda: self.open_place().topic())
         self.pages = QStackedWidget()
         middle = QWidget()
         column = QVBoxLayout(middle)
@@ -85,25 +87,44 @@ class MainWindow(QMainWindow):
         self.arrivals = Arrivals(
             self.desk, self.incoming, self.files, settings, self.tone, self.pages
         )
-        self.dry_run, self.watching = self.arrivals.page, self.arrivals.watching
-        for line in (self.trouble, self.arrivals.waiting, self.arrivals.arrived):
+        self.watching = self.arrivals.watching
+        self.keeping = Keeping(
+            self.desk, self.files, settings, lambda: self.open_place().noun, self.go_to
+        )
+        for line in (
+            self.trouble,
+            self.keeping.standing,
+            self.keeping.offer,
+            self.arrivals.waiting,
+            self.arrivals.arrived,
+        ):
             column.addWidget(line)
         column.addWidget(self.pages, 1)
         self._build_menus()
-        self._build_status()
+        self.status = WorkStatus(self.statusBar(), self.desk.stop)
         self.desk.campaign_changed.connect(self._campaign_changed)
         self.desk.assessed.connect(self._campaign_changed)
         self.desk.selected.connect(self._selected)
         self.desk.worked.connect(self._worked)
         self.desk.told.connect(self._told)
         self.desk.failed.connect(self.trouble.say)
+        self.desk.unkept.connect(self.trouble.say_unkept)
+        self.trouble.elsewhere.clicked.connect(lambda _checked=False: self.files.save_as())
         self._campaign_changed()
 
     # --- building --------------------------------------------------------------------------
 
     def _build_menus(self) -> None:
         menus: dict[str, QMenu] = {}
-        holders = (self, self.files, self.figures, self.arrivals, self.side)
+        holders = (
+            self,
+            self.files,
+            self.figures,
+            self.arrivals,
+            self.side,
+            self.help,
+            self.keeping,
+        )
         for entry in ACTIONS:
             menu = menus.get(entry.menu)
             if menu is None:
@@ -114,8 +135,9 @@ class MainWindow(QMainWindow):
             if entry.shortcut:
                 action.setShortcut(QKeySequence(entry.shortcut))
             holder = next(h for h in holders if hasattr(h, entry.method))
-            method: Callable[[], object] = getattr(holder, entry.method)
-            action.triggered.connect(lambda _checked=False, call=method: call())
+            method: Callable[..., object] = getattr(holder, entry.method)
+            about = (entry.about,) if entry.about else ()
+            action.triggered.connect(lambda _checked=False, call=method, a=about: call(*a))
             menu.addAction(action)
             self._actions.append((entry, action))
         self.recent = QMenu("Recent campaigns", self)
@@ -126,6 +148,7 @@ class MainWindow(QMainWindow):
         splitter = QSplitter()
         splitter.setHandleWidth(1)
         self.project = ProjectTree(self.desk, self.tone)
+        self.project.setMinimumWidth(190)
         splitter.addWidget(self.project)
         middle = QWidget()
         column = QVBoxLayout(middle)
@@ -135,33 +158,17 @@ class MainWindow(QMainWindow):
         bar.setSpacing(0)
         bar.setAlignment(Qt.AlignmentFlag.AlignLeft)
         self.stack = QStackedWidget()
-        self.places: list[Place] = [
-            kind(self.desk, self.tone)
-            for kind in (
-                MapPlace,
-                ReadingPlace,
-                CoursePlace,
-                DoubtsPlace,
-                WaterPlace,
-                ComparisonPlace,
-                SettingsPlace,
-            )
-        ]
-        for place in self.places:
-            if isinstance(place, MapPlace):
-                place.cells.opened.connect(self.go_reading)
-            elif isinstance(place, DoubtsPlace):
-                place.opened.connect(self.go_reading)
+        self.places = Places(self._make_place)
         self.buttons = QButtonGroup(self)
-        for i, place in enumerate(self.places):
-            button = QPushButton(place.noun)
+        for i, (noun, question, _) in enumerate(ORDER):
+            button = QPushButton(noun)
             button.setObjectName("place")
             button.setCheckable(True)
-            button.setAccessibleDescription(place.question)
-            button.setToolTip(place.question)
+            button.setAccessibleDescription(question)
+            button.setToolTip(question)
             self.buttons.addButton(button, i)
             bar.addWidget(button)
-            self.stack.addWidget(place)
+            self.stack.addWidget(self.places.holders[i])
         self.buttons.idClicked.connect(self.go)
         column.addLayout(bar)
         column.addWidget(self.stack, 1)
@@ -177,20 +184,16 @@ class MainWindow(QMainWindow):
         self.go(0)
         return splitter
 
-    def _build_status(self) -> None:
-        self.doing = QLabel()
-        self.bar = QProgressBar()
-        self.bar.setFixedWidth(180)
-        self.bar.setTextVisible(False)
-        self.bar.setAccessibleName("Progress of the work under way")
-        self.halt = QPushButton("Stop")
-        self.halt.setAccessibleDescription("Give up the work under way (Esc)")
-        self.halt.clicked.connect(self.desk.stop)
-        self.kept = QLabel()
-        for widget in (self.doing, self.bar, self.halt):
-            self.statusBar().addPermanentWidget(widget)
-            widget.hide()
-        self.statusBar().addPermanentWidget(self.kept)
+    def _make_place(self, kind: type[Place]) -> Place:
+        place = kind(self.desk, self.tone)
+        match place.noun:
+            case "Map":
+                place.cells.opened.connect(lambda: self.go_to("Reading"))  # type: ignore[attr-defined]
+            case "Doubts":
+                place.opened.connect(lambda: self.go_to("Reading"))  # type: ignore[attr-defined]
+            case "Summary":
+                place.wanted.connect(self.files.write_summary)  # type: ignore[attr-defined]
+        return place
 
     # --- following the desk ----------------------------------------------------------------
 
@@ -204,11 +207,11 @@ class MainWindow(QMainWindow):
         title = "coatgui"
         if file is not None:
             title = f"{file.campaign.title} · coatgui"
-            self.kept.setText(f"kept in {file.path.name}" if self.desk.is_saved else _UNSAVED)
+            self.status.kept.setText(self._how_kept(file))
             if self.desk.is_saved:
                 self.files.remember(file.path)
         else:
-            self.kept.setText("")
+            self.status.kept.setText("")
             self.welcome.show_recent(self.files.recent_names())
         self.setWindowTitle(title)
         for entry, action in self._actions:
@@ -222,35 +225,49 @@ class MainWindow(QMainWindow):
                 "work": self.desk.job is not None,
             }.get(entry.needs, name is not None)
             action.setEnabled(there)
-        self.project.refresh()
-        self._behind = dict.fromkeys(self.places, True)
-        for place in self.places:
-            # Doubts are counted beside their place's noun; other places follow when they are seen.
-            if place is self.open_place() or isinstance(place, DoubtsPlace):
-                self._catch_up(place)
-        self._count_doubts()
-        self._show_facts()
+        self._behind = dict.fromkeys(range(len(ORDER)), True)
+        parts = (self.project.refresh, self._refresh_places, self._show_facts)
+        self._parts = []
+        if file is None or len(file.campaign.readings) < _MANY:
+            for part in parts:
+                part()
+        else:
+            # One after another, with a look at keys and mouse between them.
+            self._parts = list(parts)
+            QTimer.singleShot(0, self, self._next_part)
 
-    def _catch_up(self, place: Place) -> None:
+    def _next_part(self) -> None:
+        if self._parts:
+            self._parts.pop(0)()
+            QTimer.singleShot(0, self, self._next_part)
+
+    def _refresh_places(self) -> None:
+        """Doubts are counted beside their place's noun; other places follow when they are seen."""
+        self._catch_up(self.stack.currentIndex())
+        doubts = NOUNS.index("Doubts")
+        if self.desk.has_doubts() or self.places.is_built(doubts):
+            self._catch_up(doubts)
+            found = self.places[doubts].doubts  # type: ignore[attr-defined]
+            self.buttons.button(doubts).setText(f"Doubts  {len(found)}" if found else "Doubts")
+
+    def _how_kept(self, file: CampaignFile) -> str:
+        if file.read_only_because:
+            return f"{file.path.name}: read only"
+        return f"kept in {file.path.name}" if self.desk.is_saved else _UNSAVED
+
+    def _catch_up(self, number: int) -> None:
         """Show in a place what it has missed: a campaign, or another selection only."""
-        whole = self._behind.pop(place, None)
+        whole = self._behind.pop(number, None)
         if whole:
-            place.show_campaign()
+            self.places[number].show_campaign()
         elif whole is not None:
-            place.show_selection()
-
-    def _count_doubts(self) -> None:
-        """How many wait for an eye stands beside the place's noun."""
-        for number, place in enumerate(self.places):
-            if isinstance(place, DoubtsPlace):
-                count = f"  {len(place.doubts)}" if place.doubts else ""
-                self.buttons.button(number).setText(f"{place.noun}{count}")
+            self.places[number].show_selection()
 
     def _selected(self) -> None:
         self.project.mark(self.desk.selection)
-        for place in self.places:
-            self._behind.setdefault(place, False)
-        self._catch_up(self.open_place())
+        for number in range(len(ORDER)):
+            self._behind.setdefault(number, False)
+        self._catch_up(self.stack.currentIndex())
         self._show_facts()
 
     def _show_facts(self) -> None:
@@ -258,23 +275,10 @@ class MainWindow(QMainWindow):
         self.strip.refresh()
 
     def _worked(self, stage: str, done: int, total: int) -> None:
-        for widget in (self.doing, self.bar, self.halt):
-            widget.setVisible(bool(stage))
         for entry, action in self._actions:
             if entry.needs == "work":
                 action.setEnabled(bool(stage))
-        if not stage:
-            self._began = 0.0
-            return
-        now = time.monotonic()
-        self._began = self._began or now
-        left = ""
-        if total and 0 < done < total and now - self._began > 2.0:
-            # An estimate from what is done so far, never to the second.
-            left = f", about {(now - self._began) / done * (total - done):.0f} s left"
-        self.doing.setText(f"{stage} {done} of {total}{left}" if total > 1 else stage)
-        self.bar.setMaximum(max(total, 0) if total > 1 else 0)
-        self.bar.setValue(done)
+        self.status.worked(stage, done, total)
 
     def _told(self, sentence: str) -> None:
         self.statusBar().showMessage(sentence, 20_000)
@@ -289,6 +293,10 @@ class MainWindow(QMainWindow):
 
     def halt_work(self) -> None:
         self.desk.stop()
+
+    @property
+    def dry_run(self) -> DryRunPage:
+        return self.arrivals.page
 
     def open_place(self) -> Place:
         return self.places[self.stack.currentIndex()]
@@ -309,43 +317,21 @@ class MainWindow(QMainWindow):
         self.project.add_formulation()
 
     def go(self, place: int) -> None:
+        shown = self.places[place]  # built before it is seen
         self.stack.setCurrentIndex(place)
-        self._catch_up(self.open_place())
+        self._catch_up(place)
         self.buttons.button(place).setChecked(True)
         policy = Qt.FocusPolicy
         for button in self.buttons.buttons():
             # Tab comes to the open place's button; left and right go on to the others.
             button.setFocusPolicy(policy.StrongFocus if button.isChecked() else policy.ClickFocus)
-        # The reading's own place shows the same values where they lie in the coating, and the
-        # doubts show their evidence.
-        self.side.make_room(not isinstance(self.places[place], (MapPlace, CoursePlace)))
-        self.strip.setVisible(
-            not isinstance(self.places[place], (DoubtsPlace, ComparisonPlace, SettingsPlace))
-        )
+        # The reading's own place shows the facts where they lie in the coating, and the doubts show
+        # their evidence.
+        self.side.make_room(not shown.leaves_facts)
+        self.strip.setVisible(shown.has_strip)
 
-    def go_map(self) -> None:
-        self.go(0)
-
-    def go_reading(self) -> None:
-        self.go(1)
-
-    def go_course(self) -> None:
-        self.go(2)
-
-    def go_doubts(self) -> None:
-        self.go(3)
-
-    def go_water(self) -> None:
-        self.go_to(WaterPlace)
-
-    def go_comparison(self) -> None:
-        self.go_to(ComparisonPlace)
-
-    def go_settings(self) -> None:
-        self.go_to(SettingsPlace)
-
-    def go_to(self, kind: type[Place]) -> None:
-        self.go(next(i for i, place in enumerate(self.places) if isinstance(place, kind)))
+    def go_to(self, noun: str) -> None:
+        self.go(NOUNS.index(noun))
 
     def later(self) -> None:
         self.desk.step(1)
@@ -359,18 +345,13 @@ class MainWindow(QMainWindow):
         application = QApplication.instance()
         if isinstance(application, QApplication):
             palette.apply(application, self.tone)
-        for place in self.places:
+        for place in self.places.built:
             place.paint_in(self.tone)
         self.project.paint_in(self.tone)
-        self.dry_run.paint_in(self.tone)
+        self.arrivals.paint_in(self.tone)
         self.side.paint_in(self.tone)
         self.strip.tone = self.tone
         self.strip.update()
-
-    def show_cautions(self) -> None:
-        from coatgui.assessment.cautions import cautions  # late: it brings all of assessment
-
-        say_plainly(self, "Cautions", "What the results do not say", "\n\n".join(cautions()))
 
     # --- drops, closing --------------------------------------------------------------------
 
@@ -392,6 +373,15 @@ class MainWindow(QMainWindow):
         if not self.files.may_leave():
             event.ignore()
             return
+        self.hide()
+        self.settings.setValue("geometry", self.saveGeometry())
         self.arrivals.close()
         self.desk.close()
+        self.keeping.close()
         event.accept()
+
+    def changeEvent(self, event: QEvent) -> None:
+        super().changeEvent(event)
+        there = hasattr(self, "keeping")  # events come before the window is built
+        if event.type() == QEvent.Type.ActivationChange and there and self.isActiveWindow():
+            self.keeping.look()

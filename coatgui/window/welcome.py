@@ -86,14 +86,23 @@ class Trouble(QFrame):
         row = QHBoxLayout(self)
         row.setContentsMargins(12, 6, 8, 6)
         self.words = plain_label()
+        self.elsewhere = QPushButton("Save elsewhere…")
+        self.elsewhere.setAccessibleDescription("Keep the campaign under another name or disk")
         self.dismiss = QPushButton("Dismiss")
         self.dismiss.setAccessibleDescription("Take this message away")
         self.dismiss.clicked.connect(self.hide)
         row.addWidget(self.words, 1)
+        row.addWidget(self.elsewhere)
         row.addWidget(self.dismiss)
         self.hide()
 
+    def say_unkept(self, sentence: str) -> None:
+        """The same, of a campaign that can no longer be kept where it is."""
+        self.say(sentence)
+        self.elsewhere.show()
+
     def say(self, sentence: str) -> None:
+        self.elsewhere.hide()
         self.words.setText(f"■  {sentence}")
         self.setAccessibleDescription(sentence)
         self.show()

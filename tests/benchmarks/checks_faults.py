@@ -98,14 +98,25 @@ def _mains(
     return z, {place}
 
 
+_STEP_PLACES = range(6, FREQUENCY_HZ.size - 5)
+
+
+def step_forms(decay: float) -> np.ndarray:
+    """Steps of one in ln Z (M, N), at all places where they are put."""
+    since = np.arange(FREQUENCY_HZ.size) - np.array(_STEP_PLACES)[:, None]
+    return np.where(since >= 0, np.exp(-decay * np.maximum(since, 0)), 0.0)
+
+
 def _step(decay: float) -> Put:
+    forms = step_forms(decay)
+
     def put(
         rng: np.random.Generator, specimen: Specimen, noise: float, strength: float
     ) -> tuple[np.ndarray, set[int]]:
         z = scattered(rng, specimen.impedance(), noise)
-        place = int(rng.integers(6, z.size - 5))
-        since = np.arange(z.size - place)
-        z[place:] *= np.exp(rng.choice([-1, 1]) * strength * np.exp(-decay * since))
+        number = int(rng.integers(len(forms)))
+        place = _STEP_PLACES[number]
+        z *= np.exp(rng.choice([-1, 1]) * strength * forms[number])
         return z, {place - 1, place}
 
     return put
@@ -173,9 +184,11 @@ FAULTS = (
     ),
     _fault("burst of scatter", _burst, "scatter", *SHARES),
     _fault("mains pick-up", _mains, "mains_pick_up", *SHARES, all_points=True),
-    _fault("step that stays", _step(0.0), "step", *SHARES),
-    _fault("step that dies away", _step(0.3), "step", *SHARES),
-    _fault("drift of the resistances", _drift, "drift", 0.05, 0.1, 0.2, 0.4),
+    _fault("step that stays", _step(0.0), "step fit_leaves_pattern", *SHARES),
+    _fault("step that dies away", _step(0.3), "step fit_leaves_pattern", *SHARES),
+    _fault(
+        "drift of the resistances", _drift, "drift fit_leaves_pattern", 0.05, 0.1, 0.2, 0.4
+    ),
     _fault(
         "inductive tail", _inductive, "positive_imaginary_part",
         0.5, 0.2, 0.1, 0.05, unit="of the top frequency",

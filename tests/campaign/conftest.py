@@ -126,6 +126,8 @@ def campaign(raw: dict[str, bytes]) -> Campaign:
             kept_in=(2,),
             pinned_model="film_with_pores",
             overruled_because="repeated, same answer",
+            temperature_span_c=(22.1, 22.9),
+            potential_span_mv=(-440.25, -428.0),
         ),
         Reading("r2", "p1", 168.0, spectrum(2), Source("a1 168.csv", hashes[1])),
         Reading("r3", "p2", 168.0, spectrum(3), Source("b2.csv", hashes[2], "t=168", dialect)),

@@ -67,7 +67,8 @@ def test_the_band_holds_the_outline_and_points_left_out_have_no_say() -> None:
     found = outline("film_with_pores", R_s=50, Q_c=1e-9, n_c=0.95, R_po=1e6)
     top = int(np.argmax(found.density_ohm))
     assert found.low_ohm[top] < found.density_ohm[top] < found.high_ohm[top]
-    assert (found.low_ohm <= found.high_ohm).all()
+    assert (found.low_ohm <= found.density_ohm).all()
+    assert (found.density_ohm <= found.high_ohm).all()
 
     model = catalogue()["film_with_pores"]
     z = model.impedance(model.natural(np.array([[50, 1e-9, 0.95, 1e6]])), FREQUENCY_HZ)[0].copy()

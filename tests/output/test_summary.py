@@ -9,6 +9,7 @@ import sys
 from dataclasses import replace
 from html.parser import HTMLParser
 from pathlib import Path
+from typing import Any
 
 import pytest
 
@@ -19,6 +20,7 @@ from coatgui.output.html_form import html_document
 from coatgui.output.pages import PagesUnavailable, pdf_bytes
 from coatgui.output.shown import amount
 from coatgui.records import Assessment, Bound, Campaign, Quantity
+from coatgui.records import Identification as KeptIdentification
 
 IDENTIFICATION = Identification(laboratory="Slip Laboratory", order="RC-7", standards="none")
 HOSTILE = [
@@ -114,6 +116,44 @@ def test_it_says_what_was_found_and_how(assessment: Assessment, campaign: Campai
         "The program does not claim",
     ):
         assert said in words, said
+
+
+def test_it_names_what_the_campaign_keeps(assessment: Assessment, campaign: Campaign) -> None:
+    kept = KeptIdentification("Kept Laboratory", order="K-1", standards=("one", "another"))
+    identified = replace(campaign, identification=kept)
+    document = inspection_summary(assessment, identified)
+    words = words_of(document)
+    for said in ("Kept Laboratory", "K-1", "one; another"):
+        assert said in words
+    assert document.running == f"{assessment.title} · K-1 · Kept Laboratory"
+    told = Identification.of(identified, laboratory="Told Laboratory", order="", date="today")
+    assert (told.laboratory, told.order, told.date) == ("Told Laboratory", "K-1", "today")
+
+
+def test_pages_are_painted_one_by_one_as_they_print(
+    assessment: Assessment, campaign: Campaign
+) -> None:
+    pytest.importorskip("PySide6")
+    from coatgui.output.pages import page_height, paint_pages, pdf_bytes
+
+    document = inspection_summary(assessment, campaign, IDENTIFICATION)
+    taken: list[tuple[int, int, int, bool]] = []
+
+    def take(place: int, total: int, image: Any) -> None:
+        assert (image.width(), image.height()) == (300, round(page_height(300)))
+        inked = any(image.pixelColor(x, y).value() < 128 for x in range(300) for y in range(424))
+        taken.append((place, total, image.height(), inked))
+
+    headings = paint_pages(document, 300, take)
+    assert [place for place, *_ in taken] == list(range(len(taken)))
+    assert {total for _, total, *_ in taken} == {len(taken)}
+    assert all(inked for *_, inked in taken)
+    # By their numbers, for a page that was revised stands in the file twice.
+    printed = re.findall(rb"(\d+) 0 obj\s*<<\s*/Type /Page\s", pdf_bytes(document))
+    assert len(set(printed)) == len(taken)
+    assert [h.text.split(" ", 1)[1] for h in headings] == [
+        b.text for b in document.blocks if isinstance(b, Heading)
+    ]
 
 
 def test_an_empty_field_and_an_unknown_section_are_left_out(

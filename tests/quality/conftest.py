@@ -27,5 +27,10 @@ def faults() -> ModuleType:
 
 
 @pytest.fixture(scope="session")
-def benchmark_table(faults: ModuleType) -> ModuleType:
+def moved_table(faults: ModuleType) -> ModuleType:
+    return _benchmark_module("checks_moved")
+
+
+@pytest.fixture(scope="session")
+def benchmark_table(moved_table: ModuleType) -> ModuleType:
     return _benchmark_module("checks")

@@ -49,7 +49,7 @@ WANTED = [
     ("two wild neighbours", 0.1, 0.93),
     ("burst of scatter", 0.05, 0.93),
     ("mains pick-up", 0.05, 0.95),
-    ("step that stays", 0.02, 0.8),
+    ("step that stays", 0.02, 0.75),
     ("step that stays", 0.05, 0.97),
     ("step that dies away", 0.1, 0.95),
     ("inductive tail", 0.1, 0.98),
@@ -73,13 +73,33 @@ def test_a_fault_is_named(
     assert np.mean(outcome.named) >= least
 
 
-def test_a_step_of_five_percent_is_doubted_whatever_the_scatter(
-    faults: ModuleType, benchmark_table: ModuleType
+@pytest.mark.parametrize(
+    ("name", "strength"),
+    [("step that stays", 0.05), ("step that dies away", 0.1), ("one wild point", 0.1)],
+)
+def test_what_moves_a_reported_quantity_is_found_whatever_the_scatter(
+    faults: ModuleType, benchmark_table: ModuleType, name: str, strength: float
 ) -> None:
-    """At 0.2 to 2 %: where it is 2 %, chance alone hides every third."""
-    fault = next(f for f in faults.FAULTS if f.name == "step that stays")
-    outcome = benchmark_table.rates(fault, 0.05, 50, 18, False)
-    assert np.mean(outcome.doubted) >= 0.95
+    """At 0.2 to 2 %, with what the circuit leaves over."""
+    fault = next(f for f in faults.FAULTS if f.name == name)
+    outcome = benchmark_table.rates(fault, strength, 20, 18, True)
+    moving = benchmark_table.only(outcome.doubted, outcome.moving)
+    assert len(moving) > 50
+    assert np.mean(moving) >= 0.95
+
+
+@pytest.mark.parametrize("strength", [0.1, 0.2])
+def test_a_drift_is_found_about_as_often_as_any_such_test_can(
+    faults: ModuleType, benchmark_table: ModuleType, moved_table: ModuleType, strength: float
+) -> None:
+    """In part of the cases it lies within what a panel may do; the measurement model alone then
+    shows less than the circuit does."""
+    fault = next(f for f in faults.FAULTS if f.name == "drift of the resistances")
+    outcome = benchmark_table.rates(fault, strength, 20, 18, True)
+    found = np.mean(benchmark_table.only(outcome.doubted, outcome.moving))
+    lengths = benchmark_table.only(outcome.left_by_model, outcome.moving)
+    most = np.mean(moved_table.most_found(lengths, fault.name))
+    assert found >= most - 0.04
 
 
 def test_a_resistance_that_drifts_by_a_fifth_fails(

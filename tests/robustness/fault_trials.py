@@ -108,10 +108,10 @@ def case(disk: Disk, act: str, kind: str, after: int, error: int, lasting: bool)
             if not lasting or kind != "read":
                 file.save_copy(elsewhere / "copy.coatgui")
             hits = disk.mend()
-            wrong = _copy_wrong(elsewhere / "copy.coatgui", in_memory)
+            wrong = copy_wrong(elsewhere / "copy.coatgui", in_memory)
             if wrong:
                 return outcome, wrong
-        return (outcome if hits else "not reached"), _file_wrong(path, in_memory)
+        return (outcome if hits else "not reached"), file_wrong(path, in_memory)
     except Exception:
         return "crash", traceback.format_exc()
     finally:
@@ -119,7 +119,7 @@ def case(disk: Disk, act: str, kind: str, after: int, error: int, lasting: bool)
         shutil.rmtree(base)
 
 
-def _copy_wrong(copy: Path, in_memory: Campaign) -> str:
+def copy_wrong(copy: Path, in_memory: Campaign) -> str:
     if not copy.exists():
         return ""
     if check_file(copy):
@@ -128,7 +128,7 @@ def _copy_wrong(copy: Path, in_memory: Campaign) -> str:
         return "" if other.campaign == in_memory else "the copy elsewhere is another campaign"
 
 
-def _file_wrong(path: Path, in_memory: Campaign) -> str:
+def file_wrong(path: Path, in_memory: Campaign) -> str:
     """After the disk works again: the file, and what may lie beside it."""
     for one in [path, *path.parent.rglob("*.coatgui")]:
         if check_file(one):

@@ -7,6 +7,7 @@ import sys
 from pathlib import Path
 
 import pytest
+from full_disk_trials import can_mount
 
 HERE = Path(__file__).parent
 
@@ -33,6 +34,11 @@ def test_killed_at_random_instants() -> None:
 )
 def test_a_failing_disk() -> None:
     run("fault_trials.py", "160")
+
+
+@pytest.mark.skipif(not can_mount(), reason="needs the right to mount a disk in memory")
+def test_a_full_disk() -> None:
+    run("full_disk_trials.py", "8")
 
 
 @pytest.mark.skipif(sys.platform == "win32", reason="needs alarms")

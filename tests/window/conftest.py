@@ -50,6 +50,14 @@ def wait(application: QApplication) -> Wait:
     return until
 
 
+@pytest.fixture(autouse=True)
+def data_folder(tmp_path_factory: pytest.TempPathFactory, monkeypatch: pytest.MonkeyPatch) -> Path:
+    """Reports, the log and notes on sessions of a test go to a folder of its own."""
+    folder = tmp_path_factory.mktemp("data")
+    monkeypatch.setenv("COATGUI_DATA", str(folder))
+    return folder
+
+
 @pytest.fixture
 def window(application: QApplication, tmp_path: Path) -> Iterator[MainWindow]:
     before = threading.active_count()
@@ -58,6 +66,7 @@ def window(application: QApplication, tmp_path: Path) -> Iterator[MainWindow]:
     made.show()
     yield made
     made.desk.close()
+    made.keeping.close()
     made.hide()
     made.deleteLater()
     # Nothing may be left behind: no thread, no running timer, no widget.

@@ -129,7 +129,7 @@ def test_marks_have_contrast(dark: bool) -> None:
     assert len(looks) == 6  # and a shape of its own for each
 
 
-@pytest.mark.parametrize("place", range(7))
+@pytest.mark.parametrize("place", range(8))
 def test_what_has_the_keyboard_is_seen_to(full: MainWindow, place: int) -> None:
     full.go(place)
     full.activateWindow()
@@ -150,7 +150,7 @@ def test_what_has_the_keyboard_is_seen_to(full: MainWindow, place: int) -> None:
     assert not unseen
 
 
-@pytest.mark.parametrize("place", range(7))
+@pytest.mark.parametrize("place", range(8))
 def test_tab_comes_to_every_control(full: MainWindow, place: int) -> None:
     full.activateWindow()
     assert QTest.qWaitForWindowActive(full)
@@ -178,7 +178,7 @@ def test_tab_comes_to_every_control(full: MainWindow, place: int) -> None:
 def test_every_place_and_menu_has_its_key(full: MainWindow) -> None:
     full.activateWindow()
     assert QTest.qWaitForWindowActive(full)
-    for number, key in enumerate(range(Qt.Key.Key_1, Qt.Key.Key_8)):
+    for number, key in enumerate(range(Qt.Key.Key_1, Qt.Key.Key_9)):
         QTest.keyClick(full, Qt.Key(key), Qt.KeyboardModifier.ControlModifier)
         assert full.stack.currentIndex() == number
     shortcuts = [entry.shortcut for entry in ACTIONS if entry.shortcut]

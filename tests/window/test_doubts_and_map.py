@@ -40,10 +40,10 @@ def pick(place: DoubtsPlace, words: str) -> None:
 
 
 def test_doubts_are_settled_where_they_stand(sample: MainWindow, wait: Wait) -> None:
-    place = sample.places[3]
+    place = sample.places[5]
     assert isinstance(place, DoubtsPlace)
-    sample.go(3)
-    counted = sample.buttons.button(3).text()
+    sample.go(5)
+    counted = sample.buttons.button(5).text()
     assert counted.split() == ["Doubts", str(len(place.doubts))]
 
     # A refused file: its reason, and off the list with an edit that can be undone.

@@ -61,7 +61,7 @@ def test_what_is_written_can_be_typed_again(value: float, unit: str) -> None:
 
 
 def place_of(window: MainWindow) -> SettingsPlace:
-    window.go_settings()
+    window.go_to("Settings")
     QApplication.processEvents()
     place = window.places[window.stack.currentIndex()]
     assert isinstance(place, SettingsPlace)

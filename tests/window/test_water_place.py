@@ -16,7 +16,7 @@ from coatgui.window.places.water_place import WaterPlace, sorption_curve, water_
 
 
 def place_of(window: MainWindow, panel: str, hours: float) -> WaterPlace:
-    window.go_water()
+    window.go_to("Water")
     assert window.desk.assessment is not None
     window.desk.select(
         next(

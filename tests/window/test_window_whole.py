@@ -67,6 +67,7 @@ def test_the_whole_job(window: MainWindow, wait: Wait, tmp_path: Path) -> None:
 
     kept = tmp_path / "kept.coatgui"
     desk.save_as(kept)
+    wait(lambda: desk.job is None)
     assert desk.is_saved
     desk.open(kept)
     wait(settled(window))

@@ -19,6 +19,8 @@ from coatgui.window.typed import typed, typed_list, written
 
 class SettingsPlace(Place):
     noun, question = "Settings", "By what is this campaign judged?"
+    note = "kramers_kronig"
+    has_strip = False
 
     def __init__(self, desk: Desk, tone: Colours) -> None:
         super().__init__(desk, tone)

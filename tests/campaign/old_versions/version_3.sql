@@ -29,8 +29,8 @@ CREATE TABLE history (
     when_utc TEXT NOT NULL,
     changes TEXT NOT NULL -- JSON: [{"table", "key", "before", "after"}]
 , reason TEXT NOT NULL DEFAULT '', state TEXT NOT NULL DEFAULT '', chain TEXT NOT NULL DEFAULT '') STRICT;
-INSERT INTO "history" VALUES(1,'create',NULL,'Create the campaign','operator','2026-12-01T17:53:42Z','[]','','04b77586335ca09640070ef651785e2b1508d6b89cbdf40d53045127768a919e','b701393f0b2859db59ad827c815d036c905c5eaa979556213dae7be03a47a2f0');
-INSERT INTO "history" VALUES(2,'edit',NULL,'Change area of panel A1','operator','2026-12-01T17:53:43Z','[{"table": "panels", "key": "p1", "before": {"area_cm2": 10.1}, "after": {"area_cm2": 12.0}}]','','ef434e2794fa0cca826482ac226840254d8744cfea6ba4f4eff05058d5d43818','6b54b1ea95b72f81f94e509d4959e0d2683f438f667a17df203a6ba112f3819a');
+INSERT INTO "history" VALUES(1,'create',NULL,'Create the campaign','operator','2026-12-01T17:57:20Z','[]','','9fab6e9aef4c2c02f3a2c415ec1b0d0738d907b8f1857f1f237abd848c6fd566','ce913812869c1f4ad027380967958268f85dfccb8f5a939d0dd442d38f1f5576');
+INSERT INTO "history" VALUES(2,'edit',NULL,'Change area of panel A1','operator','2026-12-01T17:57:20Z','[{"table": "panels", "key": "p1", "before": {"area_cm2": 10.1}, "after": {"area_cm2": 12.0}}]','','8a37473c50e99837360037cbbd0aef01715775d03f333006c066bcb5ebb97be0','5bf2f3144f76fa558068f5d850783c4f770a389a749cc0d60dfc9d6da59bccb4');
 CREATE TABLE open_lead (
     campaign_id TEXT NOT NULL PRIMARY KEY
         REFERENCES campaign DEFERRABLE INITIALLY DEFERRED,
@@ -115,12 +115,12 @@ CREATE TABLE readings (
     kept_in TEXT NOT NULL DEFAULT '[]', -- JSON: [point]
     pinned_model TEXT NOT NULL DEFAULT '',
     overruled_because TEXT NOT NULL DEFAULT ''
-) STRICT;
+, temperature_low_c REAL, temperature_high_c REAL, potential_low_mv REAL, potential_high_mv REAL) STRICT;
 INSERT INTO "readings" VALUES('r1',0,'p1',3.00000000000000044408e-01,'c78e984090c96c59de651ce68a38dce01c1034b917bd3eefd6448a52982db276','one/a1.csv','874926c042d860cfe6819219de62393bbe3d8f56052ee83c5952daffc6223db9','sheet 2','{"encoding": "utf-16", "delimiter": ";", "decimal_sign": ",", "first_data_line": 3, "ascending": true, "columns": [{"position": 0, "heading": "Frequenz/kHz", "role": "frequency", "unit": "kHz", "factor": 1000.0}, {"position": 2, "heading": "−Z″", "role": "imaginary", "unit": "MΩ", "factor": -1000000.0}], "remarks": ["Lines 1–2 were skipped."]}',22.5,20.0,-431.7,'a drop under the cell
-wiped','[[0, "spike"], [4, "drift"]]','[2]','film_with_pores','repeated, same answer');
-INSERT INTO "readings" VALUES('r2',1,'p1',168.0,'6d890be02099271188f84ea89d5b1244d1d6bcad1643498778f45f57f334b98a','a1 168.csv','031638b511ad7ca839c807580ae4af4fffb3b99509a305c91e4573c1f5e44fb1','',NULL,NULL,NULL,NULL,'','[]','[]','','');
-INSERT INTO "readings" VALUES('r3',2,'p2',168.0,'49135cbe551647b00c9c416c875c4a85a7b015082f70ed936a72ce8ff243037c','b2.csv','c76d646e41be2b31704d88abf8ba08eac6305db1a671741f70fa4e25d6531981','t=168','{"encoding": "utf-16", "delimiter": ";", "decimal_sign": ",", "first_data_line": 3, "ascending": true, "columns": [{"position": 0, "heading": "Frequenz/kHz", "role": "frequency", "unit": "kHz", "factor": 1000.0}, {"position": 2, "heading": "−Z″", "role": "imaginary", "unit": "MΩ", "factor": -1000000.0}], "remarks": ["Lines 1–2 were skipped."]}',NULL,NULL,NULL,'','[]','[]','','');
-INSERT INTO "readings" VALUES('r4',3,'p2',336.0,'49135cbe551647b00c9c416c875c4a85a7b015082f70ed936a72ce8ff243037c','b2.csv','c76d646e41be2b31704d88abf8ba08eac6305db1a671741f70fa4e25d6531981','t=336','{"encoding": "utf-16", "delimiter": ";", "decimal_sign": ",", "first_data_line": 3, "ascending": true, "columns": [{"position": 0, "heading": "Frequenz/kHz", "role": "frequency", "unit": "kHz", "factor": 1000.0}, {"position": 2, "heading": "−Z″", "role": "imaginary", "unit": "MΩ", "factor": -1000000.0}], "remarks": ["Lines 1–2 were skipped."]}',NULL,NULL,NULL,'','[]','[]','','');
+wiped','[[0, "spike"], [4, "drift"]]','[2]','film_with_pores','repeated, same answer',22.1,22.9,-440.25,-428.0);
+INSERT INTO "readings" VALUES('r2',1,'p1',168.0,'6d890be02099271188f84ea89d5b1244d1d6bcad1643498778f45f57f334b98a','a1 168.csv','031638b511ad7ca839c807580ae4af4fffb3b99509a305c91e4573c1f5e44fb1','',NULL,NULL,NULL,NULL,'','[]','[]','','',NULL,NULL,NULL,NULL);
+INSERT INTO "readings" VALUES('r3',2,'p2',168.0,'49135cbe551647b00c9c416c875c4a85a7b015082f70ed936a72ce8ff243037c','b2.csv','c76d646e41be2b31704d88abf8ba08eac6305db1a671741f70fa4e25d6531981','t=168','{"encoding": "utf-16", "delimiter": ";", "decimal_sign": ",", "first_data_line": 3, "ascending": true, "columns": [{"position": 0, "heading": "Frequenz/kHz", "role": "frequency", "unit": "kHz", "factor": 1000.0}, {"position": 2, "heading": "−Z″", "role": "imaginary", "unit": "MΩ", "factor": -1000000.0}], "remarks": ["Lines 1–2 were skipped."]}',NULL,NULL,NULL,'','[]','[]','','',NULL,NULL,NULL,NULL);
+INSERT INTO "readings" VALUES('r4',3,'p2',336.0,'49135cbe551647b00c9c416c875c4a85a7b015082f70ed936a72ce8ff243037c','b2.csv','c76d646e41be2b31704d88abf8ba08eac6305db1a671741f70fa4e25d6531981','t=336','{"encoding": "utf-16", "delimiter": ";", "decimal_sign": ",", "first_data_line": 3, "ascending": true, "columns": [{"position": 0, "heading": "Frequenz/kHz", "role": "frequency", "unit": "kHz", "factor": 1000.0}, {"position": 2, "heading": "−Z″", "role": "imaginary", "unit": "MΩ", "factor": -1000000.0}], "remarks": ["Lines 1–2 were skipped."]}',NULL,NULL,NULL,'','[]','[]','','',NULL,NULL,NULL,NULL);
 CREATE TABLE refused (
     refusal_id TEXT NOT NULL PRIMARY KEY,
     place INTEGER NOT NULL UNIQUE,
