@@ -75,11 +75,13 @@ def with_suspicions(
 
 def _same_numbers(campaign: Campaign) -> _ByReading:
     names = {panel.panel_id: panel.name for panel in campaign.panels}
-    first: dict[str, Reading] = {}
+    first: dict[tuple[bytes, bytes], Reading] = {}
     for reading in campaign.readings:
         if reading.panel_id not in names:
             continue
-        before = first.setdefault(reading.spectrum.content_key(), reading)
+        spectrum = reading.spectrum
+        key = spectrum.frequency_hz.tobytes(), spectrum.impedance_ohm.tobytes()
+        before = first.setdefault(key, reading)
         if before is not reading:
             yield (
                 reading.reading_id,

@@ -26,6 +26,8 @@ from coatgui.shipped import sample_panels
 
 WET = Limit("wet", "water_uptake", 1.5, "vol-%", "ours", Side.ABOVE)
 
+TIGHT = Limit("tight", "film_resistivity", 1e10, "Ω cm", "ours")
+
 
 @pytest.fixture(scope="module")
 def handed_over(tmp_path_factory: pytest.TempPathFactory) -> Path:
@@ -38,10 +40,12 @@ def handed_over(tmp_path_factory: pytest.TempPathFactory) -> Path:
         file.apply(
             operations.edit_settings(
                 file.campaign,
-                limits=[WET],
+                limits=[WET, TIGHT],
                 comparisons=[
                     Question("water_uptake", None, method=Method.TUKEY),
                     Question(judge=Judge.TIME_TO_LIMIT, method=Method.RANKS, limit=WET),
+                    Question("relative_permittivity", None),
+                    Question("film_resistivity", None, Judge.AREA_UNDER_COURSE),
                     Question(judge=Judge.RATING, method=Method.RANKS, scale="iso_4628_3"),
                 ],
                 projections=[ProjectionWanted("modulus", 1000.0, 0.1)],
@@ -62,11 +66,14 @@ def handed_over(tmp_path_factory: pytest.TempPathFactory) -> Path:
 def test_json_workbook_and_summary_say_the_same(handed_over: Path) -> None:
     told = json.loads((handed_over / "o.json").read_text(encoding="utf-8"))
     asked = [c["question"]["judge"] for c in told["further_comparisons"]]
-    assert asked == ["at_time", "time_to_limit", "rating"]
+    assert asked == [
+        "at_time", "time_to_limit", "at_time", "area_under_course", "rating",
+    ]  # fmt: skip
     assert told["further_comparisons"][0]["question"]["method"] == "tukey"
-    studies = [s for s in told["limit_studies"] if s["limit"]["name"] == "wet"]
-    assert [s["formulation"] for s in studies] == [f["formulation"] for f in told["formulations"]]
-    assert len(told["projections"]) == len(told["formulations"])
+    formulations = [f["formulation"] for f in told["formulations"]]
+    studies = [s for s in told["limit_studies"] if s["limit"]["name"] in ("wet", "tight")]
+    assert [s["formulation"] for s in studies] == 2 * formulations
+    assert len(told["projections"]) == len(formulations)
     assert {r["edition"] for r in told["ratings"]} == {"2016"}
     texts = [c["text"] for c in told["further_comparisons"]]
     texts += [s["text"] for s in studies]
