@@ -32,7 +32,7 @@ from coatgui.window.numbers import prefixed
 
 _LEFT, _BOTTOM, _TOP, _RIGHT = 88.0, 46.0, 10.0, 14.0
 _ROOM = {"bottom": 64.0, "left": 26.0}  # for the words of a tick, in pixels
-_GRID = 0.12
+_GRID = 0.25  # of the way from the ground to a line
 _FARTHEST = 1e7  # pixels; what lies beyond is as good as there
 
 Numbers = Sequence[float] | np.ndarray
@@ -262,40 +262,34 @@ class Canvas(QWidget):
     ) -> None:
         is_bottom = side == "bottom"
         ticks = self._ticks(side, *seen, area.width() if is_bottom else area.height())
-        grid = QColor(self._line)
-        grid.setAlphaF(2 * _GRID)
+        grid = _between(self._ground, self._line, _GRID)
         title = self._axes[side][0]
         flag = Qt.AlignmentFlag
         line = QFontMetricsF(painter.font()).height()
+        painter.setPen(self._ink)
         for value, words in ticks:
             share = (value - seen[0]) / (seen[1] - seen[0])
             if is_bottom:
                 x = round(area.left() + share * area.width())
-                painter.setPen(grid)
-                painter.drawLine(QPointF(x, area.top()), QPointF(x, area.bottom()))
-                painter.setPen(self._ink)
+                # Filled, not drawn: it takes a tenth of the time.
+                painter.fillRect(QRectF(x, area.top(), 1, area.height()), grid)
                 painter.drawText(
                     QRectF(x - 50, area.bottom() + 4, 100, line), flag.AlignHCenter, words
                 )
             else:
                 y = round(area.bottom() - share * area.height())
-                painter.setPen(grid)
-                painter.drawLine(QPointF(area.left(), y), QPointF(area.right(), y))
-                painter.setPen(self._ink)
+                painter.fillRect(QRectF(area.left(), y, area.width(), 1), grid)
                 painter.drawText(
                     QRectF(line, y - line / 2, _LEFT - line - 6, line),
                     flag.AlignRight | flag.AlignVCenter,
                     words,
                 )
-        painter.setPen(self._line)
         if is_bottom:
-            painter.drawLine(area.bottomLeft(), area.bottomRight())
-            painter.setPen(self._ink)
+            painter.fillRect(QRectF(area.left(), area.bottom(), area.width(), 1), self._line)
             below = QRectF(area.left(), self.height() - line - 2, area.width(), line)
             painter.drawText(below, flag.AlignHCenter, title)
         else:
-            painter.drawLine(area.topLeft(), area.bottomLeft())
-            painter.setPen(self._ink)
+            painter.fillRect(QRectF(area.left(), area.top(), 1, area.height()), self._line)
             painter.save()
             painter.translate(2, area.center().y())
             painter.rotate(-90)
@@ -400,6 +394,15 @@ def _draw_mark(painter: QPainter, symbol: str, size: float, middle: QPointF) -> 
         for way in (1, -1):
             arm = QPointF(half, way * half)
             painter.drawLine(middle - arm, middle + arm)
+
+
+def _between(one: QColor, other: QColor, share: float) -> QColor:
+    """A colour that is a share of the way from one to another."""
+    return QColor.fromRgbF(
+        one.redF() + share * (other.redF() - one.redF()),
+        one.greenF() + share * (other.greenF() - one.greenF()),
+        one.blueF() + share * (other.blueF() - one.blueF()),
+    )
 
 
 def _power(value: float, unit: str, digits: int) -> str:

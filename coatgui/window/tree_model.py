@@ -26,6 +26,17 @@ NODE = "application/x-coatgui-node"
 Index = QModelIndex | QPersistentModelIndex
 
 
+_ROW = Qt.ItemFlag.ItemIsEnabled | Qt.ItemFlag.ItemIsSelectable | Qt.ItemFlag.ItemIsEditable
+# Put together once: a view asks for them hundreds of times in every painting.
+_FLAGS = {
+    "root": Qt.ItemFlag.NoItemFlags,
+    "campaign": _ROW,
+    "formulation": _ROW | Qt.ItemFlag.ItemIsDropEnabled,
+    "panel": _ROW | Qt.ItemFlag.ItemIsDropEnabled | Qt.ItemFlag.ItemIsDragEnabled,
+    "reading": _ROW | Qt.ItemFlag.ItemIsDragEnabled,
+}
+
+
 @dataclass(eq=False)
 class Node:
     kind: str
@@ -167,8 +178,7 @@ class TreeModel(QAbstractItemModel):
         return QModelIndex() if node is None else self.createIndex(node.row, 0, node)
 
     def node(self, index: Index) -> Node:
-        found = index.internalPointer() if index.isValid() else None
-        return found if isinstance(found, Node) else self._root
+        return (index.internalPointer() if index.isValid() else None) or self._root
 
     def index(self, row: int, column: int, parent: Index = QModelIndex()) -> QModelIndex:  # noqa: B008
         children = self.rows_of(self.node(parent))
@@ -218,16 +228,7 @@ class TreeModel(QAbstractItemModel):
     # --- what a person asks for ------------------------------------------------------------
 
     def flags(self, index: Index) -> Qt.ItemFlag:
-        flag = Qt.ItemFlag
-        if not index.isValid():
-            return flag.NoItemFlags
-        kind = self.node(index).kind
-        flags = flag.ItemIsEnabled | flag.ItemIsSelectable | flag.ItemIsEditable
-        if kind in ("panel", "reading"):
-            flags |= flag.ItemIsDragEnabled
-        if kind in ("formulation", "panel"):
-            flags |= flag.ItemIsDropEnabled
-        return flags
+        return _FLAGS[self.node(index).kind]
 
     def setData(self, index: Index, value: Any, role: int = Qt.ItemDataRole.EditRole) -> bool:
         node, name = self.node(index), str(value).strip()

@@ -18,7 +18,7 @@ from types import FrameType
 from PySide6.QtCore import QTimer
 from PySide6.QtWidgets import QApplication
 
-_LOOK_S = 0.01
+_LOOK_S = 0.003
 
 
 class Watchdog:
@@ -88,12 +88,12 @@ class Watchdog:
 
 def _said(frame: FrameType) -> str:
     """The calls of the program in a stack, outermost first."""
-    calls = [
-        f"{call.filename.rpartition('coatgui/')[2]}:{call.lineno} {call.name}"
-        for call in traceback.extract_stack(frame)
-        if "/coatgui/" in call.filename
-    ]
-    return " > ".join(calls[-6:]) or "outside the program"
+    stack = traceback.extract_stack(frame)
+    own = [call for call in stack if "/coatgui/" in call.filename] or stack[-3:]
+    return " > ".join(
+        f"{call.filename.rpartition('coatgui/')[2] or call.filename}:{call.lineno} {call.name}"
+        for call in own[-6:]
+    )
 
 
 def reference_s() -> float:

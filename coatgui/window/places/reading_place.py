@@ -193,6 +193,8 @@ class ReadingPlace(Place):
 
     def _beside_fit(self, frequency_hz: np.ndarray) -> tuple[FitBand | None, tuple[Part, ...]]:
         """The band and the parts that are asked for, of the fit that is shown."""
+        if not self.band.isChecked() and not self.parts.isChecked():
+            return None, ()
         known, campaign = self.desk.reading_assessment(), self.desk.campaign
         fit = known.fit if known else None
         model = models(campaign).get(fit.model) if fit else None
