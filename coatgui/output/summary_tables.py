@@ -5,6 +5,7 @@ from __future__ import annotations
 import tomllib
 
 from coatgui.assessment.rules import default_criteria
+from coatgui.output.bands import band_of
 from coatgui.output.document import Table
 from coatgui.output.figure_parts import modulus_taken, uptake_taken, watched_frequency
 from coatgui.output.shown import MARKS, NOTHING, amount, hours, number, state
@@ -64,7 +65,7 @@ def readings_table(assessment: Assessment) -> Table:
         (
             r.panel,
             hours(r.exposure_h),
-            amount(take(r)) if take else NOTHING,
+            _with_band(r, amount(take(r)) if take else NOTHING, frequency_hz),
             r.fit.model_name if r.fit else "not fitted",
             amount(r.coating_capacitance, limits=False),
             amount(r.pore_resistance, limits=False),
@@ -75,7 +76,8 @@ def readings_table(assessment: Assessment) -> Table:
     )
     return Table(
         "Readings. |Z|·A and pore resistance in Ω cm², film capacitance in F/cm² (Ω and F where "
-        "a panel has no area); apparent water uptake in vol-%; 95 % limits in brackets.",
+        "a panel has no area); apparent water uptake in vol-%; 95 % limits in brackets. Good, "
+        "fair and poor are the bands usually quoted; no standard fixes them.",
         (
             "panel",
             "hours",
@@ -90,6 +92,12 @@ def readings_table(assessment: Assessment) -> Table:
         (0.9, 0.75, 2.6, 1.9, 1.05, 1.15, 1.9, 1.05),
         frozenset({1}),
     )
+
+
+def _with_band(reading: ReadingAssessment, text: str, frequency_hz: float | None) -> str:
+    bands = (band_of(m) for m in reading.modulus if m.frequency_hz == frequency_hz)
+    found = next(bands, None)
+    return f"{text}; {found}" if found in ("good", "fair", "poor") else text
 
 
 def water_table(assessment: Assessment) -> Table:
