@@ -227,6 +227,8 @@ class Book:
         size, before, room = (14.0, 20.0, 110.0) if heading.level == 1 else (11.0, 8.0, 70.0)
         if isinstance(follows, Figure):
             room = follows.drawing.height + 40
+        elif isinstance(follows, Picture):
+            room = _PHOTOGRAPH_HIGH + 40
         text = self._set(f"{number}  {heading.text}", size, _ACROSS, bold=True)
         if self.y > _TOP:
             self.y += before

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import tomllib
 
+from coatgui.assessment.ratings import scales
 from coatgui.assessment.rules import default_criteria
 from coatgui.output.bands import band_of
 from coatgui.output.document import Table
@@ -65,7 +66,8 @@ def readings_table(assessment: Assessment) -> Table:
         (
             r.panel,
             hours(r.exposure_h),
-            _with_band(r, amount(take(r)) if take else NOTHING, frequency_hz),
+            amount(take(r)) if take else NOTHING,
+            _band(r, frequency_hz),
             r.fit.model_name if r.fit else "not fitted",
             amount(r.coating_capacitance, limits=False),
             amount(r.pore_resistance, limits=False),
@@ -82,6 +84,7 @@ def readings_table(assessment: Assessment) -> Table:
             "panel",
             "hours",
             f"|Z|·A at {frequency_hz:g} Hz" if frequency_hz is not None else "|Z|·A",
+            "band",
             "circuit",
             "film C",
             "pore R",
@@ -89,15 +92,15 @@ def readings_table(assessment: Assessment) -> Table:
             "state",
         ),
         rows,
-        (0.9, 0.75, 2.6, 1.9, 1.05, 1.15, 1.9, 1.05),
+        (0.8, 0.7, 2.5, 0.65, 1.8, 1.05, 1.2, 2.0, 1.05),
         frozenset({1}),
     )
 
 
-def _with_band(reading: ReadingAssessment, text: str, frequency_hz: float | None) -> str:
-    bands = (band_of(m) for m in reading.modulus if m.frequency_hz == frequency_hz)
-    found = next(bands, None)
-    return f"{text}; {found}" if found in ("good", "fair", "poor") else text
+def _band(reading: ReadingAssessment, frequency_hz: float | None) -> str:
+    return next(
+        (band_of(m) or NOTHING for m in reading.modulus if m.frequency_hz == frequency_hz), NOTHING
+    )
 
 
 def water_table(assessment: Assessment) -> Table:
@@ -205,7 +208,7 @@ def ratings_table(assessment: Assessment) -> Table:
     rows = tuple(
         (
             course.formulation,
-            course.scale,
+            str(scales().get(course.scale, {}).get("name", course.scale)),
             hours(course.exposure_h),
             course.best,
             course.worst,
@@ -217,7 +220,7 @@ def ratings_table(assessment: Assessment) -> Table:
         "Visual ratings, panel by panel.",
         ("formulation", "scale", "hours", "best", "worst", "panels"),
         rows,
-        (2, 1.5, 0.8, 0.8, 0.8, 4),
+        (1.8, 2.2, 0.7, 0.8, 0.8, 3.6),
         frozenset({2}),
     )
 
