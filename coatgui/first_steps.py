@@ -149,19 +149,30 @@ def sample() -> int:
         say("there is a display, but Qt's system libraries are missing; assessing without a window")
     else:
         say("there is no display; assessing the sample campaign without a window")
+    return assess_sample(python)
+
+
+def assess_sample(python: Path) -> int:
+    """Write the workbook, the data and the inspection summary of the sample campaign."""
     OUTPUT.mkdir(exist_ok=True)
-    workbook, data = OUTPUT / "sample_panels.xlsx", OUTPUT / "sample_panels.json"
-    status = run(
-        [
-            *(python, "-m", "coatgui", "assess", ROOT / "sample_panels"),
-            *("--workbook", workbook, "--json", data),
-        ]
-    )
+    off_screen = {"QT_QPA_PLATFORM": "offscreen"} if sys.platform.startswith("linux") else {}
+    pages = quiet([python, "-c", _TRY_QT], off_screen)
+    written = {
+        "workbook": OUTPUT / "sample_panels.xlsx",
+        "json": OUTPUT / "sample_panels.json",
+        "summary": OUTPUT / f"sample_panels.{'pdf' if pages else 'html'}",
+    }
+    command: list[str | Path] = [python, "-m", "coatgui", "assess", ROOT / "sample_panels"]
+    for what, path in written.items():
+        command += [f"--{what}", path]
+    status = run(command)
     if status not in (0, 1):
         return status
     if status == 1:
         say("some files of the sample are refused, as named above: they were made to be.")
-    say(f"workbook: {workbook.relative_to(ROOT)}   data: {data.relative_to(ROOT)}")
+    say("   ".join(f"{what}: {path.relative_to(ROOT)}" for what, path in written.items()))
+    if not pages:
+        say("the summary is HTML: for a PDF, Qt's system libraries are missing")
     if sys.platform.startswith("linux"):
         say(f"the window needs a display and, on Debian, {' '.join((*OFF_SCREEN, *WINDOW))}")
     return 0

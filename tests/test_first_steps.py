@@ -63,4 +63,10 @@ def test_without_a_display_the_sample_is_assessed(
     assert any("assess" in call and "--workbook" in call for call in calls)
     shown = capsys.readouterr().out
     assert "no display" in shown
-    assert "workbook" in shown
+    assert "workbook: assessment/sample_panels.xlsx" in shown
+    assert "summary: assessment/sample_panels.pdf" in shown
+    # Where Qt cannot paint, the summary is HTML and that is said.
+    monkeypatch.setattr(first_steps, "quiet", lambda command, extra=None: not extra)
+    assert first_steps.main(["sample"]) == 0
+    assert calls[-1][-2:] == ["--summary", str(ROOT / "assessment" / "sample_panels.html")]
+    assert "the summary is HTML" in capsys.readouterr().out

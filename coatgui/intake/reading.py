@@ -14,9 +14,10 @@ from coatgui.intake.errors import NoSpectrum, Unreadable
 from coatgui.intake.labels import label_in
 from coatgui.intake.layout import Section, sections_of
 from coatgui.intake.segments import segment_rows
+from coatgui.intake.sheet import Sheet
 from coatgui.intake.spectra import Origin, Piece, pieces, pieces_as_told, with_parts
 from coatgui.intake.text_rows import segment_text
-from coatgui.intake.workbook import Sheet, is_workbook, read_workbook
+from coatgui.intake.workbook import is_workbook, read_workbook
 from coatgui.records import Column, Dialect, FoundReading, Source
 
 _SAMPLE_LINES = 400

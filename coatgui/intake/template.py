@@ -12,7 +12,8 @@ from coatgui.intake.errors import Unreadable
 from coatgui.intake.lists import ListedReading, panels_of, readings_of
 from coatgui.intake.ratings_list import ratings_of, scale_ids
 from coatgui.intake.segments import Cell
-from coatgui.intake.workbook import Sheet, read_workbook
+from coatgui.intake.sheet import Sheet
+from coatgui.intake.workbook import read_workbook
 from coatgui.records import FoundPanel, FoundRating
 
 PANELS, READINGS, RATINGS = "Panels", "Readings", "Ratings"

@@ -32,6 +32,7 @@ WIDE, HIGH = 595.276, 841.89  # A4 in points
 _LEFT, _TOP, _BOTTOM = 57.6, 64.0, 60.0
 _ACROSS = WIDE - 2 * _LEFT
 _LEADING = 1.36
+_MOST_TEXTS_KEPT = 20_000
 _GAP = 6.0  # between the columns of a table
 _PHOTOGRAPH_WIDE, _PHOTOGRAPH_HIGH = 0.7 * _ACROSS, 250.0
 _PHOTOGRAPH_DOTS = 200  # to the inch
@@ -43,11 +44,8 @@ class _Text:
     """Lines of a text, set to a width; `leading` in points."""
 
     layout: QTextLayout
+    lines: int
     leading: float
-
-    @property
-    def lines(self) -> int:
-        return self.layout.lineCount()
 
     @property
     def height(self) -> float:
@@ -82,6 +80,8 @@ class Book:
         self.bookmarks: list[Bookmark] = []
         self.described: list[Described] = []
         self._fonts: dict[tuple[float, bool], QFont] = {}
+        # Tables say the same again and again, and everything is set twice: kept up to a number.
+        self._texts: dict[tuple[str, float, float, bool, bool], _Text] = {}
         self._painter: QPainter | None = None
         self._next: Callable[[], QPainter] | None = None
 
@@ -89,6 +89,15 @@ class Book:
         """Paint the first page with `painter`, each further one with what `turn` gives."""
         self._painter, self._next = painter, turn
         self.set_out()
+
+    @classmethod
+    def counted(cls, document: Document) -> Book:
+        """A book that knows how many pages it takes. Pages are set once to count and once to paint:
+        pages kept would fill the memory."""
+        first = cls(document)
+        book = cls(document, first.set_out())
+        book._fonts, book._texts = first._fonts, first._texts
+        return book
 
     def set_out(self) -> int:
         """Lay out the whole document; returns how many pages it takes."""
@@ -116,8 +125,13 @@ class Book:
         from PySide6.QtCore import QPointF, Qt
         from PySide6.QtGui import QTextLayout, QTextOption
 
-        font = self._fonts.setdefault((size, bold), _font(size, bold))
-        layout = QTextLayout(printable(text), font)
+        kind = (text, size, width, bold, right)
+        known = self._texts.get(kind)
+        if known is not None:
+            return known
+        if (size, bold) not in self._fonts:
+            self._fonts[size, bold] = _font(size, bold)
+        layout = QTextLayout(printable(text), self._fonts[size, bold])
         option = QTextOption(Qt.AlignmentFlag.AlignRight if right else Qt.AlignmentFlag.AlignLeft)
         option.setWrapMode(QTextOption.WrapMode.WrapAtWordBoundaryOrAnywhere)
         layout.setTextOption(option)
@@ -126,7 +140,11 @@ class Book:
             line.setLineWidth(width * UNIT)
             line.setPosition(QPointF(0, 0))
         layout.endLayout()
-        return _Text(layout, size * _LEADING)
+        made = _Text(layout, layout.lineCount(), size * _LEADING)
+        if len(self._texts) >= _MOST_TEXTS_KEPT:
+            self._texts.clear()
+        self._texts[kind] = made
+        return made
 
     @property
     def _room(self) -> float:
@@ -209,6 +227,8 @@ class Book:
         size, before, room = (14.0, 20.0, 110.0) if heading.level == 1 else (11.0, 8.0, 70.0)
         if isinstance(follows, Figure):
             room = follows.drawing.height + 40
+        elif isinstance(follows, Picture):
+            room = _PHOTOGRAPH_HIGH + 40
         text = self._set(f"{number}  {heading.text}", size, _ACROSS, bold=True)
         if self.y > _TOP:
             self.y += before

@@ -10,6 +10,7 @@ from enum import Enum
 from pathlib import Path
 from typing import IO, Any
 
+from coatgui.output.bands import band_of
 from coatgui.output.text import whole_text
 from coatgui.output.whole import write_whole
 from coatgui.records import (
@@ -85,6 +86,7 @@ def _reading(reading: ReadingAssessment) -> dict[str, Any]:
             "high": None if quantity is None else quantity.high,
             "bound": None if quantity is None else quantity.bound.value,
             "unit": None if quantity is None else quantity.unit,
+            "band": band_of(entry),
         }
     uptake = _amount(
         reading.water_uptake.quantity if reading.water_uptake else None, "volume_percent"

@@ -15,6 +15,7 @@ from typing import Any
 
 from coatgui.assessment.mixing import VACUUM_F_PER_CM
 from coatgui.assessment.rules import default_criteria, table
+from coatgui.output.bands import CANNOT_TELL, band
 from coatgui.output.cells import Book, Column, Formula, Value, letter
 from coatgui.output.shown import KINDS
 from coatgui.records import (
@@ -35,7 +36,7 @@ COLOURS = {
     "below": "F3D5CB",
     "poor": "F3D5CB",
 }
-BELOW, NOT_BELOW, CANNOT_TELL = "below", "not below", "cannot tell"
+BELOW, NOT_BELOW = "below", "not below"
 
 
 @dataclass(slots=True)
@@ -247,18 +248,6 @@ def _last_held(criterion: Criterion, state: int) -> Callable[[_PerArea], Value]:
     return value
 
 
-def band(quantity: Quantity, good: float, poor: float) -> str:
-    """Good, fair or poor where the whole 95 % interval lies in one band."""
-    low, high = quantity.low, quantity.high
-    if low is not None and low >= good:
-        return "good"
-    if high is not None and high < poor:
-        return "poor"
-    if low is not None and high is not None and low >= poor and high < good:
-        return "fair"
-    return CANNOT_TELL
-
-
 def _band(row: _PerArea) -> Value:
     bands = table("criteria")["bands"]
     if row.area_cm2 is None or row.frequency_hz != float(bands["frequency_hz"]):
@@ -267,7 +256,7 @@ def _band(row: _PerArea) -> Value:
         'IF(AND(ISNUMBER(I{r}),I{r}>=band_good),"good",IF(AND(ISNUMBER(J{r}),J{r}<band_poor),'
         '"poor",IF(AND(ISNUMBER(I{r}),ISNUMBER(J{r}),I{r}>=band_poor,J{r}<band_good),"fair",'
         f'"{CANNOT_TELL}")))',
-        band(row.quantity, float(bands["good_from_ohm_cm2"]), float(bands["poor_below_ohm_cm2"])),
+        band(row.quantity),
     )
 
 

@@ -66,10 +66,7 @@ def pdf_bytes(document: Document) -> bytes:
         QPageLayout.Orientation.Portrait,
         QMarginsF(0, 0, 0, 0),
     )
-    book = Book(document)
-    # Once to count the pages, and once to paint them: pages kept would fill the memory.
-    total = Book(document).set_out()
-    book = Book(document, total)
+    book = Book.counted(document)
 
     def paint(painter: QPainter, writer: QPdfWriter) -> None:
         def turn() -> QPainter:
@@ -150,10 +147,10 @@ def paint_pages(
     from PySide6.QtCore import Qt
     from PySide6.QtGui import QImage, QPainter
 
-    total = Book(document).set_out()
+    book = Book.counted(document)
+    total = book.total
     scale = pixels_across / (WIDE * UNIT)
     size = (pixels_across, round(pixels_across * HIGH / WIDE))
-    book = Book(document, total)
 
     def begin() -> tuple[QImage, QPainter]:
         image = QImage(*size, QImage.Format.Format_RGB32)

@@ -76,6 +76,9 @@ class Identification:
         return tuple((name, text) for name, text in filled if text.strip())
 
 
+_TO_FILL = "_" * 30
+
+
 def sentence(name: str) -> str:
     """A fixed sentence of `resources/report.toml`."""
     return str(table("report")["sentences"][name])
@@ -130,6 +133,16 @@ def _identification(identification: Identification) -> Iterator[Block]:
     rows = identification.rows()
     if rows:
         yield Table("What this summary belongs to.", ("field", "entry"), rows, (1, 3))
+        signed = (
+            ("written by", identification.author, identification.date),
+            ("reviewed by", identification.reviewer, ""),
+        )
+        yield Table(
+            "To be signed.",
+            ("", "name", "date", "signature"),
+            tuple((role, name, date or _TO_FILL[:12], _TO_FILL) for role, name, date in signed),
+            (1, 2, 1.2, 2.4),
+        )
     if identification.standards:
         yield Paragraph(sentence("no_standard"), Style.SMALL)
 

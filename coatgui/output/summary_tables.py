@@ -4,7 +4,9 @@ from __future__ import annotations
 
 import tomllib
 
+from coatgui.assessment.ratings import scales
 from coatgui.assessment.rules import default_criteria
+from coatgui.output.bands import band_of
 from coatgui.output.document import Table
 from coatgui.output.figure_parts import modulus_taken, uptake_taken, watched_frequency
 from coatgui.output.shown import MARKS, NOTHING, amount, hours, number, state
@@ -65,6 +67,7 @@ def readings_table(assessment: Assessment) -> Table:
             r.panel,
             hours(r.exposure_h),
             amount(take(r)) if take else NOTHING,
+            _band(r, frequency_hz),
             r.fit.model_name if r.fit else "not fitted",
             amount(r.coating_capacitance, limits=False),
             amount(r.pore_resistance, limits=False),
@@ -75,11 +78,13 @@ def readings_table(assessment: Assessment) -> Table:
     )
     return Table(
         "Readings. |Z|·A and pore resistance in Ω cm², film capacitance in F/cm² (Ω and F where "
-        "a panel has no area); apparent water uptake in vol-%; 95 % limits in brackets.",
+        "a panel has no area); apparent water uptake in vol-%; 95 % limits in brackets. Good, "
+        "fair and poor are the bands usually quoted; no standard fixes them.",
         (
             "panel",
             "hours",
             f"|Z|·A at {frequency_hz:g} Hz" if frequency_hz is not None else "|Z|·A",
+            "band",
             "circuit",
             "film C",
             "pore R",
@@ -87,8 +92,14 @@ def readings_table(assessment: Assessment) -> Table:
             "state",
         ),
         rows,
-        (0.9, 0.75, 2.6, 1.9, 1.05, 1.15, 1.9, 1.05),
+        (0.8, 0.7, 2.5, 0.65, 1.8, 1.05, 1.2, 2.0, 1.05),
         frozenset({1}),
+    )
+
+
+def _band(reading: ReadingAssessment, frequency_hz: float | None) -> str:
+    return next(
+        (band_of(m) or NOTHING for m in reading.modulus if m.frequency_hz == frequency_hz), NOTHING
     )
 
 
@@ -197,7 +208,7 @@ def ratings_table(assessment: Assessment) -> Table:
     rows = tuple(
         (
             course.formulation,
-            course.scale,
+            str(scales().get(course.scale, {}).get("name", course.scale)),
             hours(course.exposure_h),
             course.best,
             course.worst,
@@ -210,7 +221,7 @@ def ratings_table(assessment: Assessment) -> Table:
         "Visual ratings, panel by panel.",
         ("formulation", "scale", "hours", "best", "worst", "panels", "edition"),
         rows,
-        (2, 1.5, 0.8, 0.8, 0.8, 3, 2),
+        (1.6, 2, 0.7, 0.8, 0.8, 3, 1.6),
         frozenset({2}),
     )
 
