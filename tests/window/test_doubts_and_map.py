@@ -9,9 +9,9 @@ import pytest
 pytest.importorskip("PySide6")
 
 from PySide6.QtCore import QEvent, QPoint, QPointF, Qt, QTimer
-from PySide6.QtGui import QMouseEvent
+from PySide6.QtGui import QMouseEvent, QWheelEvent
 from PySide6.QtTest import QTest
-from PySide6.QtWidgets import QApplication, QInputDialog
+from PySide6.QtWidgets import QApplication, QInputDialog, QLabel
 
 from coatgui.records import Campaign, ReadingAssessment
 from coatgui.window.main_window import MainWindow
@@ -108,7 +108,19 @@ def test_a_cell_tells_its_story_in_three_lines(sample: MainWindow) -> None:
         Qt.MouseButton.NoButton, Qt.KeyboardModifier.NoModifier,
     )  # fmt: skip
     QApplication.sendEvent(cells, hover)
-    assert cells.toolTip().count("<br>") == 2
+    words, _, picture = cells.toolTip().partition("<img")
+    assert words.count("<br>") == 3  # three lines, and the spectrum under them
+    # The picture is in the tip itself, and Qt draws it: circles in slate, the fit in verdigris.
+    assert picture.startswith(' src="data:image/png;base64,')
+    shown = QLabel(cells.toolTip())
+    shown.adjustSize()
+    image = shown.grab().toImage()
+    drawn = {
+        image.pixelColor(x, y).name() for x in range(image.width()) for y in range(image.height())
+    }
+    assert sample.tone.panel.lower() in drawn
+    assert len(drawn) > 50
+    assert shown.height() > 110
 
 
 def test_a_rejected_reading_is_not_shaded(sample: MainWindow) -> None:
@@ -139,3 +151,35 @@ def test_every_quantity_shades_the_map(sample: MainWindow) -> None:
         place.chooser.setCurrentIndex(number)
         assert place.cells.shades
         assert not place.cells.grab().isNull()
+
+
+def test_the_map_is_zoomed_by_keys_and_wheel_about_what_is_looked_at(sample: MainWindow) -> None:
+    place = sample.places[0]
+    assert isinstance(place, MapPlace)
+    cells, area = place.cells, place.area
+    before = cells._rect(*cells.places[sample.desk.selection], cells._tops())
+    QTest.keyClicks(cells, "+" * 3)
+    assert cells.scale == pytest.approx(1.15**3)
+    larger = cells._rect(*cells.places[sample.desk.selection], cells._tops())
+    assert larger.width() > before.width()  # before, the cells filled the room there was
+    assert larger.height() > 1.4 * before.height()
+    assert area.verticalScrollBar().maximum() > 0
+    # With the wheel what lies under the mouse stays there.
+    row = cells.rows.index(("panel", "M2"))
+    centre = cells._rect(row, 4, cells._tops()).center()
+    seen = cells.mapTo(area.viewport(), centre)
+    for _ in range(2):
+        where = QPointF(cells._rect(row, 4, cells._tops()).center())
+        wheel = QWheelEvent(
+            where, QPointF(cells.mapToGlobal(where.toPoint())), QPoint(), QPoint(0, 120),
+            Qt.MouseButton.NoButton, Qt.KeyboardModifier.ControlModifier,
+            Qt.ScrollPhase.NoScrollPhase, False,
+        )  # fmt: skip
+        QApplication.sendEvent(cells, wheel)
+    assert cells.scale == pytest.approx(1.15**5)
+    now = cells.mapTo(area.viewport(), cells._rect(row, 4, cells._tops()).center())
+    assert abs(now.x() - seen.x()) <= 12
+    assert abs(now.y() - seen.y()) <= 12
+    QTest.keyClicks(cells, "-" * 5)
+    assert cells.scale == pytest.approx(1.0)
+    assert area.horizontalScrollBar().maximum() == 0

@@ -74,9 +74,9 @@ def test_they_are_made_beside_the_window(
     for module, name in ((summary_place, "inspection_summary"), (printed_pages, "paint_pages")):
         original = getattr(module, name)
 
-        def watched(*a: object, of: Callable[..., object] = original) -> object:
+        def watched(*a: object, of: Callable[..., object] = original, **k: object) -> object:
             threads.append(threading.current_thread())
-            return of(*a)
+            return of(*a, **k)
 
         monkeypatch.setattr(module, name, watched)
     place_of(sample)

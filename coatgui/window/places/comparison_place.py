@@ -28,6 +28,7 @@ from coatgui.records import (
     Question,
     Settings,
 )
+from coatgui.window.comparison_words import METHODS, in_words, more
 from coatgui.window.desk import Desk
 from coatgui.window.difference_plot import DifferencePlot
 from coatgui.window.numbers import said
@@ -46,32 +47,6 @@ _LAST = "The last that all share"
 _PAIR_ROWS = 6
 _RATING = "rating by "
 _USUAL = "The usual comparison"
-_METHODS = {
-    "Welch, Holm": Method.WELCH,
-    "Games–Howell": Method.GAMES_HOWELL,
-    "Tukey–Kramer": Method.TUKEY,
-    "Dunnett, against the first": Method.DUNNETT,
-    "Ranks, exact": Method.RANKS,
-    "Dunn, on ranks": Method.DUNN,
-}
-
-
-def in_words(question: Question) -> str:
-    """A question as a short line."""
-    what = question.quantity.replace("_", " ")
-    if question.frequency_hz is not None:
-        what = f"|Z|·A at {question.frequency_hz:g} Hz"
-    when = "at the last shared inspection"
-    if question.exposure_h is not None:
-        when = f"at {question.exposure_h:g} h"
-    if question.judge is Judge.AREA_UNDER_COURSE:
-        when = "over the whole course"
-    elif question.judge is Judge.TIME_TO_LIMIT:
-        what, when = "time", f"to {question.limit.name}" if question.limit else ""
-    elif question.judge is Judge.RATING:
-        what = str(scales().get(question.scale, {}).get("name", question.scale))
-    by = next((words for words, m in _METHODS.items() if m is question.method), "")
-    return f"{what} {when}, {by}"
 
 
 class ComparisonPlace(Place):
@@ -179,7 +154,7 @@ class ComparisonPlace(Place):
                     *((f"Rating: {rated[r]}", f"{_RATING}{r}") for r in rated),
                 ],
             ),
-            (self.method, list(_METHODS.items())),
+            (self.method, list(METHODS.items())),
             (self.time, [(_LAST, None), *((f"{t:g} h", t) for t in times)]),
         ):
             before = chooser.currentText()
@@ -294,7 +269,7 @@ class ComparisonPlace(Place):
         first, parting, rest = self.comparison.text.partition(". Judged by ")
         self.words.setText(first + ("." if parting else ""))
         self.judged.setText(f"Judged by {rest}" if parting else "")
-        self._show(_more(assessment, self.comparison))
+        self._show(more(assessment, self.comparison))
 
     # --- what is shown ---------------------------------------------------------------------
 
@@ -356,16 +331,6 @@ def _same(data: object, wanted: object) -> bool:
     if isinstance(data, (list, tuple)) and isinstance(wanted, tuple):
         return tuple(data) == wanted
     return data == wanted
-
-
-def _more(assessment: Assessment, comparison: Comparison) -> list[str]:
-    """What it would take, what to do next, the limits, the courses: a line each."""
-    lines = [*comparison.effort]
-    if assessment.next_inspection is not None:
-        lines.append(assessment.next_inspection.text)
-    lines += [study.text for study in assessment.limit_studies]
-    lines += [trend.text for trend in assessment.trends]
-    return [f"◦  {line}" for line in lines if line]
 
 
 def _span(low: int | None, high: int | None) -> str:

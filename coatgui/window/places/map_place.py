@@ -26,6 +26,7 @@ from coatgui.window.desk import Desk
 from coatgui.window.numbers import said
 from coatgui.window.palette import Colours, ramp
 from coatgui.window.places.place import Place, plain_label, plain_tip
+from coatgui.window.small_spectrum import as_markup, small_spectrum
 from coatgui.window.tree_model import same_outline, state_of
 
 _LABEL_WIDTH, _ROW, _HEAD, _BAND, _CELL = 84, 30, 26, 24, 52
@@ -117,11 +118,14 @@ class Cells(QWidget):
         self.shades: dict[tuple[int, int], float] = {}
         self.places: dict[str, tuple[int, int]] = {}  # row and column by the reading's id
         self._laid_out: Campaign | None = None
+        self.reading_of: Callable[[str], Reading | None] = lambda _id: None
+        self._hovered: tuple[int, int] | None = None
         self.scale = 1.0
         self._row, self._band = _ROW, _BAND
 
     def show(self, campaign: Campaign, known: dict[str, ReadingAssessment], code: str) -> None:  # type: ignore[override]
         """Lay out a campaign; readings not assessed yet stand as empty cells."""
+        self._hovered = None
         self.code = code
         if not same_outline(self._laid_out, campaign):
             self._lay_out(campaign)
@@ -300,8 +304,21 @@ class Cells(QWidget):
 
     def mouseMoveEvent(self, event: QMouseEvent) -> None:
         place = self._at(event.position().toPoint())
+        if place == self._hovered:
+            return
+        self._hovered = place
         cell = self.cells.get(place) if place is not None else None
-        self.setToolTip(plain_tip(story(cell, self.code)) if cell is not None else "")
+        self.setToolTip(self._tip(cell) if cell is not None else "")
+
+    def _tip(self, cell: ReadingAssessment | str) -> str:
+        """The reading's story, and under it its spectrum."""
+        reading = self.reading_of(self._id(cell))
+        words = plain_tip(story(cell, self.code))
+        if reading is None:
+            return words
+        fit = None if isinstance(cell, str) else cell.fit
+        picture = as_markup(small_spectrum(reading.spectrum, fit, self.tone))
+        return words.removesuffix("</qt>") + f"<br>{picture}</qt>"
 
     def mouseDoubleClickEvent(self, event: QMouseEvent) -> None:
         if self._at(event.position().toPoint()) is not None:
@@ -363,6 +380,7 @@ class MapPlace(Place):
         self.area.setWidget(self.cells)
         self.column.addWidget(self.area, 1)
         self.cells.zoomed.connect(self.zoom)
+        self.cells.reading_of = lambda key: desk.campaign.reading(key) if desk.campaign else None
 
     def zoom(self, by: float, about: QPoint) -> None:
         """Make the map larger or smaller about a place in it, which stays where it is seen."""

@@ -49,6 +49,7 @@ class EmptyPage(QWidget):
         self.button = QPushButton()
         self.button.setObjectName("first")
         self.button.setAccessibleName("What can be done about it")
+        self.button.setAccessibleDescription("Fills this place")
         self.button.clicked.connect(lambda _checked=False: self._call and self._call())
         row.addWidget(self.button)
         row.addStretch(1)

@@ -4,7 +4,6 @@ below."""
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
 
 import numpy as np
 from PySide6.QtCore import Qt, QTimer
@@ -35,13 +34,10 @@ from coatgui.window.places.place import Place, plain_label, plain_tip
 from coatgui.window.section import SectionView, section_of
 from coatgui.window.sheet import sheet
 from coatgui.window.spectrum_plots import Drawn, SpectrumPlots
+from coatgui.window.spectrum_rows import spectrum_rows
 from coatgui.window.still import Still
 from coatgui.window.trials import TrialsTable
 
-_HEADINGS = (
-    "frequency_hz", "real_ohm", "imaginary_ohm", "modulus_ohm", "phase_degrees", "used",
-    "model_real_ohm", "model_imaginary_ohm",
-)  # fmt: skip
 _MOST_LINES = 5
 _MARKS = {"note": "◦", "doubt": "▲", "reject": "■"}
 _HINT = "Click a point to leave it out or take it back; drag with Shift for several."
@@ -321,24 +317,7 @@ class ReadingPlace(Place):
         if reading is None:
             return []
         shown = drawn(reading, self.desk.reading_assessment())
-        z = reading.spectrum.impedance_ohm
-        model = shown.fit.modelled_ohm if shown.fit else [None] * z.size
-        band, parts = self._beside_fit(reading.spectrum.frequency_hz)
-        beside = _columns(band, parts)
-        rows: list[list[object]] = [[*_HEADINGS, *beside]]
-        for place, (f, measured, fitted, used) in enumerate(
-            zip(reading.spectrum.frequency_hz, z, model, shown.used, strict=True)
-        ):
-            rows.append(
-                [
-                    float(f), float(measured.real), float(measured.imag), float(abs(measured)),
-                    float(np.degrees(np.angle(measured))), "yes" if used else "no",
-                    None if fitted is None else float(fitted.real),
-                    None if fitted is None else float(fitted.imag),
-                    *(float(column[place]) for column in beside.values()),
-                ]
-            )  # fmt: skip
-        return rows
+        return spectrum_rows(shown, *self._beside_fit(reading.spectrum.frequency_hz))
 
     def paint_in(self, tone: Colours) -> None:
         self.composing.composer.paint_in(tone)
@@ -387,21 +366,6 @@ def _switch(text: str, description: str) -> QPushButton:
     switch.setToolTip(description)
     switch.setAccessibleDescription(description)
     return switch
-
-
-def _columns(band: FitBand | None, parts: Sequence[Part]) -> dict[str, np.ndarray]:
-    """Band and parts as columns of the table, by their headings."""
-    found: dict[str, np.ndarray] = {}
-    if band is not None:
-        found["model_modulus_low_ohm"] = band.modulus_low_ohm
-        found["model_modulus_high_ohm"] = band.modulus_high_ohm
-        found["model_phase_low_degrees"] = band.phase_low_deg
-        found["model_phase_high_degrees"] = band.phase_high_deg
-    for part in parts:
-        if part.impedance_ohm is not None:
-            found[f"{part.name}: real_ohm"] = part.impedance_ohm.real
-            found[f"{part.name}: imaginary_ohm"] = part.impedance_ohm.imag
-    return found
 
 
 def drawn(reading: Reading, known: ReadingAssessment | None) -> Drawn:
