@@ -119,10 +119,10 @@ class _Collection:
 # each search goes through all of them and the spectra again: that took a third of the time. Cycles
 # that other threads make meanwhile wait for a second or two; what is in no cycle goes at once, as
 # always.
-_collection = _Collection()
+collection = _Collection()
 
 
-@_collection.off()
+@collection.off()
 def conclude(campaign: Campaign, drawn: Sequence[Drawn], progress: Progress) -> Assessment:
     """The conclusions from readings that are checked and fitted, sorted by panel in the campaign's
     order and exposure time."""

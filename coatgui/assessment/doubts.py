@@ -11,6 +11,8 @@ from functools import cache
 from coatgui.assessment.rules import table
 from coatgui.records import ReadingAssessment, Severity
 
+_FROM = {"relative_permittivity": "coating_capacitance", "film_resistivity": "pore_resistance"}
+
 
 @cache
 def _codes(quantity: str) -> frozenset[str]:
@@ -29,6 +31,8 @@ def has_doubt(reading: ReadingAssessment) -> bool:
 
 def doubtful(reading: ReadingAssessment, quantity: str) -> bool:
     """Whether a doubt about the reading is one about this quantity of it: modulus (or
-    modulus_<Hz>), coating_capacitance, pore_resistance or water_uptake."""
-    codes = _codes("modulus" if quantity.startswith("modulus") else quantity)
+    modulus_<Hz>), coating_capacitance, pore_resistance or water_uptake. What follows from one of
+    these by the thickness shares its doubts."""
+    of = "modulus" if quantity.startswith("modulus") else _FROM.get(quantity, quantity)
+    codes = _codes(of)
     return any(f.severity is Severity.DOUBT and f.code in codes for f in reading.findings)

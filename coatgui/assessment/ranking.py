@@ -38,6 +38,8 @@ _NAMES = {
     Method.RANKS: "Gehan's ranks, Holm",
     Method.DUNN: "Dunn's ranks, Holm",
 }
+_POOLED = (Method.TUKEY, Method.DUNNETT)
+_ALIKE = 2.0  # times; own choice: with spreads further apart, 6 in 100 of equals are told apart
 _ORDINAL = (Judge.TIME_TO_LIMIT, Judge.RATING)
 _MOST_ADVICE = 3
 
@@ -110,6 +112,8 @@ def _in_words(outcome: Outcome, found: Samples, method: Method, reference: str) 
     if any(count for _, count in doubted):
         rest = listed([f"{count} of {name}" for name, count in doubted if count])
         text += f" Readings under doubt are among them: {rest}."
+    if method in _POOLED:
+        text += _spread_warning(found)
     if method is Method.RANKS:
         text += _rank_warning(outcome, counts)
     if method is Method.DUNN:
@@ -164,6 +168,18 @@ def _against(outcome: Outcome, reference: str, counts: Mapping[str, int]) -> lis
 
 def _is(names: Sequence[str]) -> str:
     return "is" if len(names) == 1 else "are"
+
+
+def _spread_warning(found: Samples) -> str:
+    """Said where a test that takes the spread between panels to be alike is used and it is not."""
+    spreads = [_sd(sample) for sample in found.by_name.values()]
+    least, most = min(spreads), max(spreads)
+    if most <= _ALIKE * least:
+        return ""
+    return (
+        f" The spread between panels is {least:.2g} to {most:.2g} {found.unit}, while this test "
+        "takes it to be alike in all formulations: Welch's and Games and Howell's do not."
+    )
 
 
 def _rank_warning(outcome: Outcome, counts: Mapping[str, int]) -> str:

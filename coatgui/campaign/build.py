@@ -238,6 +238,8 @@ class _Gathering:
             amplitude_mv=_finite(found.amplitude_mv),
             potential_mv=_finite(found.potential_mv),
             remark=_storable(found.remark),
+            temperature_span_c=_finite_span(found.temperature_span_c),
+            potential_span_mv=_finite_span(found.potential_span_mv),
         )
         self._settle(source.file)
         earlier = self._earlier(reading)
@@ -375,6 +377,10 @@ def _replaced(before: Reading, after: Reading) -> Reading:
 
 def _first(value: float | None, otherwise: float | None) -> float | None:
     return otherwise if value is None else value
+
+
+def _finite_span(span: tuple[float, float] | None) -> tuple[float, float] | None:
+    return span if span is not None and all(map(math.isfinite, span)) else None
 
 
 def _finite(value: float | None) -> float | None:

@@ -61,6 +61,8 @@ _WORDS = {
     "exposure_h": "exposure time",
     "amplitude_mv": "amplitude",
     "potential_mv": "potential",
+    "temperature_span_c": "temperature within the sweep",
+    "potential_span_mv": "potential within the sweep",
     "modulus_frequencies_hz": "frequencies for the modulus",
     "capacitance_frequency_hz": "frequency for the capacitance",
     "mains_hz": "mains frequency",
@@ -75,6 +77,7 @@ _WORDS = {
     "projections": "projections",
     "electrolytes": "electrolytes",
     "regimes": "exposure regimes",
+    "uptake_from_high_frequency": "capacitance for the water uptake",
 }
 
 # ---------------------------------------------------------------------------------------------
@@ -277,6 +280,8 @@ def read_again(campaign: Campaign, corrected: Mapping[str, FoundReading]) -> Ope
             source=found.source,
             left_out=reading.left_out if same_points else (),
             kept_in=reading.kept_in if same_points else (),
+            temperature_span_c=found.temperature_span_c,
+            potential_span_mv=found.potential_span_mv,
         )
         after = replace(after, readings=swap(after.readings, [(reading, changed)]))
     if not corrected:

@@ -18,7 +18,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass
 from enum import IntEnum
-from typing import Protocol
+from typing import Any, Protocol
 
 import numpy as np
 from numpy.typing import NDArray
@@ -52,7 +52,8 @@ class Objective(Protocol):
         self, theta: FloatArray, rows: IndexArray
     ) -> tuple[FloatArray, FloatArray, FloatArray]:
         """S (W,), g = Jᵀr (P, W) and A = JᵀJ (P, P, W) at `theta` (P, W) for problem `rows` (W,).
-        A row that cannot be evaluated there has an S or a g that is not finite."""
+        A row that cannot be evaluated there has an S or a g that is not finite. A becomes the
+        caller's own, to be written to."""
         ...
 
 
@@ -87,7 +88,7 @@ class Tolerance:
 _TINY = 1e-300
 # Rows at work at once: enough to make the price of a call small for each of them, few enough for
 # their matrices to stay in the processor's cache.
-_WORKING_SET = 1024
+_WORKING_SET = 1536
 _FASTEST_EASING = 0.2
 # A pivot below this, of a matrix with a unit diagonal, is rounding.
 _SMALLEST_PIVOT = 1e-15
@@ -143,6 +144,11 @@ def _steps(
     return step
 
 
+def _of_rows(values: NDArray[Any], rows: slice) -> NDArray[Any]:
+    """The rows' own values, or the one row of values that all share."""
+    return values if values.shape[0] == 1 else values[rows]
+
+
 class _Working:
     """The rows at work. Everything is kept with the row as its last axis, so that one operation
     works on a run of numbers of all rows. Rows that end give their places to waiting ones."""
@@ -158,6 +164,7 @@ class _Working:
     ) -> None:
         count, size = start.shape
         self.rows = rows
+        # Of these all may share one column.
         self.low, self.high, self.fixed = low.copy(), high.copy(), fixed.copy()
         self.theta = start.copy()
         self.trial = start.copy()
@@ -171,14 +178,19 @@ class _Working:
         self.spent = np.zeros(size, dtype=np.int64)
 
     def replace(self, places: IndexArray, other: _Working) -> None:
-        for name, value in vars(self).items():
+        for name, value in self._of_rows():
             value[..., places] = getattr(other, name)
 
     def remove(self, places: IndexArray) -> None:
         kept = np.ones(self.rows.size, dtype=np.bool_)
         kept[places] = False
-        for name, value in vars(self).items():
-            setattr(self, name, value[..., kept])
+        for name, value in self._of_rows():
+            setattr(self, name, value.compress(kept, axis=-1))
+
+    def _of_rows(self) -> list[tuple[str, NDArray[Any]]]:
+        """Name and array of everything that each row has its own of."""
+        size = self.rows.size
+        return [(name, value) for name, value in vars(self).items() if value.shape[-1] == size]
 
 
 def minimise(
@@ -203,8 +215,8 @@ def minimise(
     tolerance = tolerance or Tolerance()
     size, count = start.shape
     rows = np.arange(size) if rows is None else rows
-    low, high = np.broadcast_to(low, start.shape), np.broadcast_to(high, start.shape)
-    held = np.broadcast_to(np.bool_(False) if fixed is None else fixed, start.shape)
+    low, high = np.atleast_2d(low), np.atleast_2d(high)
+    held = np.zeros((1, count), dtype=np.bool_) if fixed is None else fixed
     theta = np.clip(start, low, high)
     result = Solution(
         theta,
@@ -217,9 +229,13 @@ def minimise(
     )
 
     def begin(some: slice) -> _Working:
-        own = np.arange(size)[some]
         return _Working(
-            own, theta[some].T, low[some].T, high[some].T, held[some].T, tolerance.damping
+            np.arange(size)[some],
+            theta[some].T,
+            _of_rows(low, some).T,
+            _of_rows(high, some).T,
+            _of_rows(held, some).T,
+            tolerance.damping,
         )
 
     begun = min(size, working_set)
@@ -267,7 +283,10 @@ def _iterate(
     np.copyto(work.theta, work.trial, where=better)
     np.copyto(work.cost, cost, where=better)
     np.copyto(work.gradient, gradient, where=better)
-    np.copyto(work.normal, normal, where=better)
+    # Few are refused: it is quicker to give those their old matrix than the others their new one.
+    refused = np.flatnonzero(~better)
+    normal[..., refused] = work.normal[..., refused]
+    work.normal = normal
     small = better & (fall <= tolerance.reduction * work.cost)
     outward = (work.theta <= work.low) & (work.gradient > 0)
     outward |= (work.theta >= work.high) & (work.gradient < 0)
@@ -291,7 +310,7 @@ def _iterate(
     step += work.theta
     np.minimum(np.maximum(step, work.low), work.high, out=work.trial)
     step = work.trial - work.theta
-    curved = (work.normal * step).sum(axis=1)
+    curved = np.einsum("ijw,jw->iw", work.normal, step)
     curved += 2.0 * work.gradient
     curved *= step
     work.predicted = -curved.sum(axis=0)

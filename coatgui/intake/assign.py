@@ -53,12 +53,23 @@ def assigned(
         source=Source(file, digest, piece.part, piece.dialect),
         panel=panel,
         exposure_h=hours,
-        temperature_c=listed.temperature_c if listed else None,
+        temperature_c=_listed_or(
+            listed.temperature_c if listed else None, piece.temperature_span_c
+        ),
         amplitude_mv=listed.amplitude_mv if listed else None,
-        potential_mv=listed.potential_mv if listed else None,
+        potential_mv=_listed_or(listed.potential_mv if listed else None, piece.potential_span_mv),
         remark=listed.remark if listed else "",
+        temperature_span_c=piece.temperature_span_c,
+        potential_span_mv=piece.potential_span_mv,
     )
     return reading, tuple(doubts)
+
+
+def _listed_or(listed: float | None, within: tuple[float, float] | None) -> float | None:
+    """What the list says, else the middle of what the file says point by point."""
+    if listed is not None or within is None:
+        return listed
+    return (within[0] + within[1]) / 2
 
 
 def _name_says(file: str, told: Told) -> NameSays:

@@ -30,6 +30,8 @@ USUAL_UNITS = {
     "capacitance": "F",
     "angle": "deg",
     "time": "h",
+    "temperature": "°C",
+    "potential": "mV",
 }
 
 

@@ -119,7 +119,14 @@ def read_again(
     """One spectrum of stored bytes, as `read_as_told` reads it, for the reading it belongs to.
     Raises Unreadable."""
     piece = read_as_told(data, dialect)[0]
-    return FoundReading(piece.spectrum, replace(source, dialect=piece.dialect), panel, exposure_h)
+    return FoundReading(
+        piece.spectrum,
+        replace(source, dialect=piece.dialect),
+        panel,
+        exposure_h,
+        temperature_span_c=piece.temperature_span_c,
+        potential_span_mv=piece.potential_span_mv,
+    )
 
 
 def read_as_told(data: bytes, dialect: Dialect, part: str = "") -> list[Piece]:

@@ -11,6 +11,7 @@ from datetime import datetime
 import numpy as np
 
 from coatgui.intake.behaviour import phase_factor
+from coatgui.intake.conditions import CONDITIONS
 from coatgui.intake.cut import NOTHING
 from coatgui.intake.errors import NoSpectrum, Unclear, Unreadable
 from coatgui.intake.extract import Extract, extract, extracts_of
@@ -26,6 +27,7 @@ from coatgui.intake.segments import TextRow
 from coatgui.records import ComplexArray, Dialect, FloatArray, Spectrum
 
 _FEWEST_POINTS = 5
+_SAME = 1e-3  # relative difference of frequencies that are one
 _WORDS = {"imaginary": "imaginary part", "phase": "phase"}
 
 
@@ -45,6 +47,8 @@ class Piece:
     moment_unsure: bool = False
     per_area: bool = False
     doubts: tuple[str, ...] = ()
+    temperature_span_c: tuple[float, float] | None = None
+    potential_span_mv: tuple[float, float] | None = None
 
 
 @dataclass(frozen=True)
@@ -243,6 +247,7 @@ def _cut(
                 said.moment_unsure,
                 made.per_area,
                 doubts,
+                *(made.span(role, rows) for role in CONDITIONS),
             )
         )
     return result
@@ -342,9 +347,27 @@ def _sweeps(frequency: FloatArray, rows: np.ndarray, made: Extract) -> list[np.n
                 "remove the other."
             )
         return [rows]
-    starts = np.concatenate([[0], back + 1])
-    _refuse_short(np.diff(np.append(starts, rows.size)), rows[starts], made)
-    return np.split(rows, back + 1)
+    sweeps = _with_repeats(frequency, np.split(rows, back + 1))
+    sizes, starts = zip(*((sweep.size, sweep[0]) for sweep in sweeps), strict=True)
+    _refuse_short(np.array(sizes), np.array(starts), made)
+    return sweeps
+
+
+def _with_repeats(frequency: FloatArray, sweeps: list[np.ndarray]) -> list[np.ndarray]:
+    """Before or after a sweep, one or a few of its points may be measured once more, to see whether
+    the panel changed meanwhile: they belong to it."""
+
+    def repeats(few: np.ndarray, many: np.ndarray) -> bool:
+        ratio = frequency[few][:, None] / frequency[many]
+        return few.size < _FEWEST_POINTS and bool((np.abs(ratio - 1) < _SAME).any(axis=1).all())
+
+    result: list[np.ndarray] = []
+    for sweep in sweeps:
+        if result and (repeats(sweep, result[-1]) or repeats(result[-1], sweep)):
+            result[-1] = np.concatenate([result[-1], sweep])
+        else:
+            result.append(sweep)
+    return result
 
 
 def _refuse_short(sizes: np.ndarray, starts: np.ndarray, made: Extract) -> None:

@@ -172,7 +172,8 @@ def paint_pages(
     try:
         book.paint(painter, turn)
     finally:
-        painter.end()
+        if painter.isActive():  # not where `take` ended it between two pages
+            painter.end()
     take(book.page, total, image)
     return tuple(book.bookmarks)
 

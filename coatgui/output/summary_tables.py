@@ -213,14 +213,15 @@ def ratings_table(assessment: Assessment) -> Table:
             course.best,
             course.worst,
             "; ".join(f"{panel} {value}" for panel, value in course.ratings),
+            course.edition,
         )
         for course in assessment.ratings
     )
     return Table(
         "Visual ratings, panel by panel.",
-        ("formulation", "scale", "hours", "best", "worst", "panels"),
+        ("formulation", "scale", "hours", "best", "worst", "panels", "edition"),
         rows,
-        (1.8, 2.2, 0.7, 0.8, 0.8, 3.6),
+        (1.6, 2, 0.7, 0.8, 0.8, 3, 1.6),
         frozenset({2}),
     )
 

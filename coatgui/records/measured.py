@@ -104,10 +104,11 @@ class Column:
 
     `role` is one of frequency, angular_frequency, real, imaginary, modulus, phase,
     admittance_real, …_imaginary, …_modulus, …_phase, capacitance_real, …_imaginary,
-    parallel_resistance, …_capacitance, series_resistance, …_capacitance, time, panel, date, other,
-    or one of them with "log_" before it for decimal logarithms. `factor` multiplies
-    the written number to give Hz, rad/s, Ω, S, F, rad or h, per specimen. For imaginary parts and
-    phases, a negative factor says that the file counts them the other way round.
+    parallel_resistance, …_capacitance, series_resistance, …_capacitance, time, panel, date,
+    temperature, potential, other, or one of them with "log_" before it for decimal logarithms.
+    `factor` multiplies the written number to give Hz, rad/s, Ω, S, F, rad, h, °C (K where the unit
+    is) or mV, per specimen. For imaginary parts and phases, a negative factor says that the file
+    counts them the other way round.
     """
 
     position: int
@@ -167,7 +168,8 @@ class FoundPanel:
 
 @dataclass(frozen=True, slots=True)
 class FoundReading:
-    """A spectrum as intake hands it over: whose it is, when it was taken, where it came from."""
+    """A spectrum as intake hands it over: whose it is, when it was taken, where it came from. The
+    spans are the lowest and the highest within the sweep, where the file gives every point's."""
 
     spectrum: Spectrum
     source: Source
@@ -177,6 +179,8 @@ class FoundReading:
     amplitude_mv: float | None = None
     potential_mv: float | None = None
     remark: str = ""
+    temperature_span_c: tuple[float, float] | None = None
+    potential_span_mv: tuple[float, float] | None = None
 
 
 @dataclass(frozen=True, slots=True)

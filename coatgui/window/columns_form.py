@@ -41,6 +41,8 @@ ROLES = {
     "parallel_capacitance": "C parallel",
     "series_resistance": "R in series",
     "series_capacitance": "C in series",
+    "temperature": "temperature",
+    "potential": "potential",
 }
 
 

@@ -7,16 +7,15 @@ from itertools import pairwise
 from typing import Any
 
 import numpy as np
-import pyqtgraph as pg
 from PySide6.QtCore import QPointF, Qt
-from PySide6.QtGui import QPainterPath, QPen, QPolygonF
-from PySide6.QtWidgets import QGraphicsPathItem
+from PySide6.QtGui import QColor, QPainterPath, QPen, QPolygonF
 
 from coatgui.assessment.leads import leads_of
 from coatgui.circuits import CoatingModel
 from coatgui.fitting.views import FitBand, Part, fit_band, fit_parts
 from coatgui.quality import leads_admittance
 from coatgui.records import Campaign, Fit, FloatArray
+from coatgui.window.canvas import Canvas, Curve, Shade
 from coatgui.window.key import Entry
 from coatgui.window.palette import Colours, formulation_look
 
@@ -65,14 +64,12 @@ def _log(values: Any) -> Any:
 class FitDrawn:
     """Items in the plots of modulus, phase and complex plane that keep and take other data."""
 
-    def __init__(self, modulus: Any, phase: Any, plane: Any) -> None:
+    def __init__(self, modulus: Canvas, phase: Canvas, plane: Canvas) -> None:
         self.plots = (modulus, phase, plane)
-        self.shades = [QGraphicsPathItem() for _ in self.plots]
+        self.shades = [Shade() for _ in self.plots]
         for plot, shade in zip(self.plots, self.shades, strict=True):
-            shade.setZValue(-20)
-            shade.setPen(QPen(Qt.PenStyle.NoPen))
-            plot.addItem(shade, ignoreBounds=True)
-        self._curves: list[tuple[pg.PlotCurveItem, ...]] = []
+            plot.add(shade)
+        self.curves: list[tuple[Curve, ...]] = []
         self.band: FitBand | None = None
         self.parts: tuple[Part, ...] = ()
 
@@ -86,18 +83,18 @@ class FitDrawn:
         """Draw a band and parts, at `frequency_hz`; nothing takes them away."""
         self.band, self.parts = band, tuple(parts)
         self._draw_band(band, tone)
-        while len(self._curves) < len(parts):
-            curves = tuple(pg.PlotCurveItem() for _ in self.plots)
+        while len(self.curves) < len(parts):
+            # Under the fit itself and the points.
+            curves = tuple(Curve(behind=True) for _ in self.plots)
             for plot, curve in zip(self.plots, curves, strict=True):
-                curve.setZValue(-5)  # under the fit itself and the points
-                plot.addItem(curve, ignoreBounds=True)
-            self._curves.append(curves)
+                plot.add(curve)
+            self.curves.append(curves)
         x = np.log10(frequency_hz)
-        for number, curves in enumerate(self._curves):
+        for number, curves in enumerate(self.curves):
             z = parts[number].impedance_ohm if number < len(parts) else None
             if z is None:
                 for curve in curves:
-                    curve.setData([], [])
+                    curve.show([], [])
                 continue
             pen = part_pen(number, tone)
             for curve, (across, up) in zip(
@@ -105,19 +102,20 @@ class FitDrawn:
                 ((x, _log(z)), (x, np.degrees(np.angle(z))), (z.real, -z.imag)),
                 strict=True,
             ):
-                curve.setData(across, up, pen=pen)
+                curve.show(across, up, pen)
+        for plot in self.plots:
+            plot.update()
 
     def _draw_band(self, band: FitBand | None, tone: Colours) -> None:
-        colour = pg.mkColor(tone.verdigris)
+        colour = QColor(tone.verdigris)
         colour.setAlpha(60)
         for shade in self.shades:
-            shade.setBrush(colour)
-            shade.setPath(QPainterPath())
+            shade.colour, shade.path = colour, QPainterPath()
         if band is None:
             return
         x = np.log10(band.frequency_hz)
-        self.shades[0].setPath(_ribbon(x, *_logs(band), band.holds))
-        self.shades[1].setPath(_ribbon(x, band.phase_low_deg, band.phase_high_deg, band.holds))
+        self.shades[0].path = _ribbon(x, *_logs(band), band.holds)
+        self.shades[1].path = _ribbon(x, band.phase_low_deg, band.phase_high_deg, band.holds)
         # In the complex plane the limits of both parts make a box at each frequency; neighbours are
         # joined.
         path = QPainterPath()
@@ -127,7 +125,7 @@ class FitDrawn:
             if box is not None:
                 path.addPolygon(QPolygonF(_hull(box if after is None else [*box, *after])))
                 path.closeSubpath()
-        self.shades[2].setPath(path)
+        self.shades[2].path = path
 
     def entries(self, tone: Colours) -> list[Entry]:
         """What stands in the key."""
@@ -153,7 +151,7 @@ class FitDrawn:
 
 def part_pen(number: int, tone: Colours) -> QPen:
     """Colour and dashes of a part: each has its own of both."""
-    pen = QPen(pg.mkPen(formulation_look(number, tone.dark)[0], width=1.3))
+    pen = QPen(QColor(formulation_look(number, tone.dark)[0]), 1.3)
     pen.setStyle(_DASHES[number % len(_DASHES)])
     return pen
 

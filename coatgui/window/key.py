@@ -33,6 +33,8 @@ class Key(QWidget):
         self.setSizePolicy(QSizePolicy.Policy.Expanding, QSizePolicy.Policy.Fixed)
 
     def show_entries(self, entries: Sequence[Entry], ink: str) -> None:
+        if (list(entries), ink) == (self.entries, self._ink):
+            return  # or every pick of a reading would lay out the plots anew
         self.entries, self._ink = list(entries), ink
         self.setAccessibleDescription("; ".join(f"{e.kind}: {e.text}" for e in entries))
         self.updateGeometry()

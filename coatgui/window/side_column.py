@@ -80,6 +80,7 @@ class SideColumn(QWidget):
     def make_room(self, wanted: bool) -> None:
         """Stand aside where a place shows the facts itself; origin and history stay if open."""
         self.setVisible(not wanted or self.stack.currentIndex() != FACTS)
+        self.refresh()
 
     def ask(self, code: str) -> None:
         """Show where a number comes from."""
@@ -96,7 +97,9 @@ class SideColumn(QWidget):
         self.open(HISTORY)
 
     def refresh(self) -> None:
-        """Follow the desk."""
+        """Follow the desk, where it is seen."""
+        if self.isHidden():
+            return
         campaign, reading = self.desk.campaign, self.desk.reading()
         shown = facts(self.desk.reading_assessment(), self.desk.assessment)
         if campaign is not None and reading is not None:

@@ -5,6 +5,7 @@ The real checks and the real fitting are joined up in `test_sample_truth.py`.
 
 from __future__ import annotations
 
+import gc
 import importlib
 from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import replace
@@ -14,6 +15,7 @@ import numpy as np
 import pytest
 
 from coatgui.assessment import assess
+from coatgui.assessment.assess import collection
 from coatgui.assessment.sorption import fickian_uptake
 from coatgui.progress import Cancelled, Progress
 from coatgui.records import (
@@ -415,3 +417,19 @@ def test_progress_is_told_in_words_and_cancelling_keeps_nothing(known: Known) ->
     with pytest.raises(Cancelled):
         assess(_campaign(known), progress=Progress(cancelled=lambda: True), cache=memory)
     assert memory.kept == {}
+
+
+def test_the_collector_rests_until_the_last_assessment_is_done() -> None:
+    assert gc.isenabled()
+    with collection.off():
+        with pytest.raises(ValueError, match="in between"), collection.off():
+            raise ValueError("in between")
+        assert not gc.isenabled()
+    assert gc.isenabled()
+    gc.disable()
+    try:
+        with collection.off():
+            pass
+        assert not gc.isenabled()
+    finally:
+        gc.enable()

@@ -63,6 +63,7 @@ def test_a_doubt_about_the_circuit_does_not_touch_the_modulus(reading_of: Made) 
     reading = _doubted(reading_of("K", "K1", 24.0, 1e8), "fit_poor")
     assert not doubtful(reading, "modulus_0.1")
     assert doubtful(reading, "pore_resistance")
+    assert doubtful(reading, "film_resistivity")
     note = replace(reading, findings=(Finding("drift", Severity.NOTE, "Look."),))
     assert not doubtful(note, "modulus_0.1")
 

@@ -196,6 +196,16 @@ def test_against_a_reference(reading_of: Made) -> None:
         answer(Question(method=Method.DUNNETT, reference="Q"), _readings(reading_of, logs))
 
 
+@pytest.mark.parametrize("method", [Method.TUKEY, Method.DUNNETT, Method.WELCH])
+def test_pooled_tests_say_where_the_spreads_are_not_alike(reading_of: Made, method: Method) -> None:
+    question = Question(method=method, reference="K" if method is Method.DUNNETT else "")
+    uneven = _readings(reading_of, {"K": [9.0, 9.1, 9.2], "M": [8.0, 8.4, 8.8]})
+    said = "takes it to be alike" in answer(question, uneven).text
+    assert said == (method is not Method.WELCH)
+    even = _readings(reading_of, {"K": [9.0, 9.1, 9.2], "M": [8.0, 8.1, 8.2]})
+    assert "takes it to be alike" not in answer(question, even).text
+
+
 def test_less_water_is_better(reading_of: Made) -> None:
     readings = {
         name: [

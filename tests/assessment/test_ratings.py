@@ -167,6 +167,7 @@ def test_ratings_beside_the_spectra(reading_of: MakeReading) -> None:
     courses = {c.formulation: c for c in rating_courses(Rated(PANELS, tuple(ratings)))}
     assert (courses["M"].best, courses["M"].worst) == ("Ri 3", "Ri 5")
     assert dict(courses["K"].ratings)["K0"] == "Ri 1"
+    assert courses["K"].edition == "ISO 4628-3, edition to be entered"
     (found,) = correlations(readings, ratings, [kind("modulus", 0.1)])
     assert found.panels == 5
     assert found.coefficient > 0.9

@@ -17,14 +17,14 @@ import subprocess
 import sys
 import tempfile
 import time
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from pathlib import Path
 
 os.environ.setdefault("QT_QPA_PLATFORM", "offscreen")
 
 import numpy as np
 import pyqtgraph as pg
-from PySide6.QtCore import QPoint, QSettings, QTimer
+from PySide6.QtCore import QPoint, QSettings
 from PySide6.QtWidgets import QApplication, QGridLayout, QWidget
 
 from coatgui.assessment.assess import conclude
@@ -37,6 +37,7 @@ from coatgui.window.main_window import MainWindow
 from coatgui.window.places.map_place import MapPlace
 from coatgui.window.places.reading_place import ReadingPlace
 from tests.benchmarks.assessment_of_many import large_campaign
+from tests.benchmarks.watchdog import Watchdog, reference_s
 
 _BARE = "import PySide6.QtWidgets, pyqtgraph, numpy"
 _WINDOW = """
@@ -52,57 +53,51 @@ app.processEvents()
 """
 
 
-def say(what: str, value: float, unit: str, target: float, at_least: bool = False) -> None:
-    met = value >= target if at_least else value <= target
-    sign = "≥" if at_least else "≤"
-    print(f"{'met   ' if met else 'MISSED'}  {what}: {value:.4g} {unit} ({sign} {target:g})")
+class Table:
+    """Figures with what was asked, in the order in which they were taken."""
+
+    def __init__(self) -> None:
+        self._rows: list[tuple[str, ...]] = []
+
+    def add(
+        self,
+        what: str,
+        values: Sequence[float],
+        unit: str,
+        most: float,
+        *,
+        at_99: float | None = None,
+        at_least: bool = False,
+    ) -> None:
+        """Median and 99th percentile (of frames a second: the slowest hundredth), with what is
+        asked of each."""
+        ordered = sorted(values, reverse=at_least)
+        middle = statistics.median(ordered)
+        far = ordered[min(int(0.99 * len(ordered)), len(ordered) - 1)]
+        met = middle >= most if at_least else middle <= most
+        asked = f"{'≥' if at_least else '≤'} {most:g}"
+        if at_99 is not None:
+            met, asked = met and far <= at_99, f"{asked}, 99 % ≤ {at_99:g}"
+        shown = f"{far:.3g}" if len(ordered) > 1 else "–"
+        self._rows.append((what, f"{middle:.3g}", shown, unit, asked, "yes" if met else "NO"))
+
+    def show(self) -> None:
+        rows = [("figure", "median", "99 %", "unit", "asked", "met"), *self._rows]
+        widths = [max(len(row[i]) for row in rows) for i in range(len(rows[0]))]
+        for row in rows:
+            cells = zip(row, widths, strict=True)
+            print("  ".join(cell.ljust(width) for cell, width in cells).rstrip())
 
 
-def child_seconds(code: str) -> float:
-    """Processor time of a Python that runs this code, the least of five."""
+def child_seconds(code: str) -> list[float]:
+    """Processor time of a Python that runs this code, five times."""
     taken = []
     for _ in range(5):
         before = resource.getrusage(resource.RUSAGE_CHILDREN)
         subprocess.run([sys.executable, "-c", code], check=True, stderr=subprocess.DEVNULL)
         after = resource.getrusage(resource.RUSAGE_CHILDREN)
         taken.append(after.ru_utime + after.ru_stime - before.ru_utime - before.ru_stime)
-    return min(taken)
-
-
-class Watchdog:
-    """Reports the longest time for which the window's thread was kept busy at a stretch, by the
-    processor time of that thread between beats of a timer. What several calls took between two
-    beats counts as one, so that it reports too much rather than too little."""
-
-    def __init__(self) -> None:
-        self.longest_s = 0.0
-        self._last: float | None = None
-        self._timer = QTimer()
-        self._timer.setInterval(0)
-        self._timer.timeout.connect(self._beat)
-
-    def _beat(self) -> None:
-        now = time.thread_time()
-        if self._last is not None:
-            self.longest_s = max(self.longest_s, now - self._last)
-        self._last = now
-
-    def over(self, begin: Callable[[], object], there: Callable[[], bool]) -> float:
-        """Seconds at most, from `begin` until what it started is there."""
-        application = QApplication.instance()
-        assert application is not None
-        self.longest_s, self._last = 0.0, time.thread_time()
-        self._timer.start()
-        begin()
-        end = time.monotonic() + 300
-        while not there():
-            application.processEvents()
-            if time.monotonic() > end:
-                raise TimeoutError
-        application.processEvents()
-        self._beat()
-        self._timer.stop()
-        return self.longest_s
+    return taken
 
 
 def memory_mb() -> float:
@@ -164,26 +159,30 @@ def plain_picks(window: MainWindow, application: QApplication, ids: list[str]) -
     return taken
 
 
-def map_frames(window: MainWindow, application: QApplication) -> tuple[float, float]:
-    """Frames a second while the map is moved, and while it is made larger and smaller."""
+def map_frames(window: MainWindow, application: QApplication) -> tuple[list[float], list[float]]:
+    """Frames a second while the map is moved, and while it is made larger and smaller, by the time
+    that each took."""
     place = next(p for p in window.places if isinstance(p, MapPlace))
     window.go(0)
     application.processEvents()
     across, down = place.area.horizontalScrollBar(), place.area.verticalScrollBar()
-    start, frames = time.process_time(), 100
+    frames = 200
+    moved, zoomed = [], []
     for number in range(frames):
+        start = time.process_time()
         down.setValue(down.maximum() * number // frames)
         across.setValue(across.maximum() * number // frames)
         application.processEvents()
-    moved = frames / (time.process_time() - start)
-    start = time.process_time()
+        moved.append(1 / (time.process_time() - start))
     for number in range(frames):
-        place.zoom(1.05 if number < frames // 2 else 1 / 1.05, QPoint(300, 200))
+        start = time.process_time()
+        place.zoom(1.02 if number < frames // 2 else 1 / 1.02, QPoint(300, 200))
         application.processEvents()
-    return moved, frames / (time.process_time() - start)
+        zoomed.append(1 / (time.process_time() - start))
+    return moved, zoomed
 
 
-def watched(window: MainWindow, application: QApplication, folder: Path) -> None:
+def watched(window: MainWindow, folder: Path, table: Table) -> None:
     """The longest call on the window's thread during import, fitting and export."""
     desk, dog = window.desk, Watchdog()
     campaign = desk.campaign
@@ -206,27 +205,33 @@ def watched(window: MainWindow, application: QApplication, folder: Path) -> None
     def there() -> bool:
         return desk.job is None and desk.campaign is not None
 
-    longest = dog.over(lambda: desk.export(folder / "out.json"), there)
-    say("longest call while writing the data", 1e3 * longest, "ms", 50)
-    longest = dog.over(
+    def held(doing: str, begin: Callable[[], object], until: Callable[[], bool]) -> None:
+        table.add(f"longest call while {doing}", [1e3 * dog.over(begin, until)], "ms", 50)
+        if dog.stacks:
+            print(f"held while {doing}:\n{dog.report()}")
+
+    held("writing the data", lambda: desk.export(folder / "out.json"), there)
+    held(
+        "bringing in 10,000 spectra",
         lambda: desk.import_found(found),
         lambda: there() and desk.campaign is not None and len(desk.campaign.readings) > before,
     )
-    say("longest call while bringing in 10,000 spectra", 1e3 * longest, "ms", 50)
     del desk.judge  # the real one again
-    longest = dog.over(
-        lambda: desk.open(sample_panels()), lambda: there() and desk.assessment is not None
+    held(
+        "opening and fitting the sample",
+        lambda: desk.open(sample_panels()),
+        lambda: there() and desk.assessment is not None,
     )
-    say("longest call while opening and fitting the sample", 1e3 * longest, "ms", 50)
-    longest = dog.over(lambda: desk.export(folder / "out.xlsx"), there)
-    say("longest call while writing the workbook", 1e3 * longest, "ms", 50)
+    held("writing the workbook", lambda: desk.export(folder / "out.xlsx"), there)
+    held("writing the inspection summary", lambda: desk.export(folder / "out.pdf"), there)
 
 
 def main() -> None:
     folder = Path(tempfile.mkdtemp(prefix="coatgui-benchmark-"))
-    bare = child_seconds(_BARE)
-    more = child_seconds(_WINDOW.format(ini=folder / "child.ini")) - bare
-    say(f"start to a usable window, over {bare:.2f} s of bare imports", more, "s", 0.6)
+    table = Table()
+    bare = min(child_seconds(_BARE))
+    more = [taken - bare for taken in child_seconds(_WINDOW.format(ini=folder / "child.ini"))]
+    table.add(f"start to a usable window, over {bare:.2f} s of imports", more, "s", 0.6)
 
     campaign, drawn = large_campaign()
     assessment: Assessment = conclude(campaign, drawn, Progress())
@@ -243,34 +248,43 @@ def main() -> None:
     application.processEvents()
     desk = window.desk
     desk.judge = lambda: None  # type: ignore[method-assign]
-    start = time.process_time()
-    desk.open(path)
-    while desk.file is None:
+    opened = []
+    for _ in range(3):
+        desk.close()
+        start = time.process_time()
+        desk.open(path)
+        while desk.file is None or window._parts:
+            application.processEvents()
+            time.sleep(0.002)
         application.processEvents()
-        time.sleep(0.002)
-    application.processEvents()
-    say("opening 10,000 spectra", time.process_time() - start, "s", 1.5)
+        opened.append(time.process_time() - start)
+    table.add("opening 10,000 spectra", opened, "s", 1.5)
     desk.assessment = assessment
     desk._stale = False
-    start = time.process_time()
     desk.assessed.emit()
-    application.processEvents()
-    print(f"        showing the assessment of all of them: {time.process_time() - start:.2f} s")
+    while window._parts:
+        application.processEvents()
     window.go(1)
     application.processEvents()
-    chosen = random.Random(1).sample(ids, 220)
+    chosen = random.Random(1).sample(ids, 420)
     picks(window, application, chosen[:20])
-    taken = sorted(picks(window, application, chosen[20:]))
-    plain = statistics.median(plain_picks(window, application, chosen[20:]))
-    middle = statistics.median(taken)
-    say("pick to repainted, median", 1e3 * middle, "ms", 16)
-    say("pick to repainted, 99 % below", 1e3 * taken[int(0.99 * len(taken))], "ms", 50)
-    say(f"pick against four plain plots of {1e3 * plain:.1f} ms", middle / plain, "", 0.5)
+    taken: list[float] = []
+    plain: list[float] = []
+    for begin in range(20, 420, 100):  # in turns, as the machine may be busier now and then
+        taken += picks(window, application, chosen[begin : begin + 100])
+        plain += plain_picks(window, application, chosen[begin : begin + 100])
+    table.add("pick to repainted", [1e3 * s for s in taken], "ms", 16, at_99=50)
+    beside = statistics.median(plain)
+    what = f"the same beside four plain plots of {1e3 * beside:.1f} ms"
+    table.add(what, [s / beside for s in taken], "times", 0.5)
     moved, zoomed = map_frames(window, application)
-    say("map moved", moved, "frames/s", 50, at_least=True)
-    say("map made larger and smaller", zoomed, "frames/s", 50, at_least=True)
-    say("memory with 10,000 spectra open", memory_mb(), "MB", 600)
-    watched(window, application, folder)
+    table.add("map moved", moved, "frames/s", 50, at_least=True)
+    table.add("map made larger and smaller", zoomed, "frames/s", 50, at_least=True)
+    table.add("memory with 10,000 spectra open", [memory_mb()], "MB", 600)
+    watched(window, folder, table)
+    piece = min(reference_s() for _ in range(9))
+    print(f"(the watchdog's piece of work took {1e3 * piece:.1f} ms: how quick the machine was)")
+    table.show()
     desk.close()
     shutil.rmtree(folder)
 

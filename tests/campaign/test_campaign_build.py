@@ -249,7 +249,13 @@ def test_stored_bytes_are_read_again_in_one_operation(
     dialect = replace(r1.source.dialect, delimiter=",")
     turned = Spectrum(r1.spectrum.frequency_hz, r1.spectrum.impedance_ohm.conj())
     corrected = {
-        "r1": FoundReading(turned, replace(r1.source, dialect=dialect), "A1", 2.0),
+        "r1": FoundReading(
+            turned,
+            replace(r1.source, dialect=dialect),
+            "A1",
+            2.0,
+            temperature_span_c=(21.0, 22.0),
+        ),
         "r3": FoundReading(spectrum(4.0), r3.source, "New one", 168.0),
     }
     operation = operations.read_again(campaign, corrected)
@@ -257,7 +263,12 @@ def test_stored_bytes_are_read_again_in_one_operation(
     file.apply(operation)
     after = file.campaign
     assert after.readings[0] == replace(
-        r1, spectrum=turned, exposure_h=2.0, source=corrected["r1"].source
+        r1,
+        spectrum=turned,
+        exposure_h=2.0,
+        source=corrected["r1"].source,
+        temperature_span_c=(21.0, 22.0),
+        potential_span_mv=None,
     )
     assert after.readings[0].left_out == r1.left_out  # the same frequencies, the same points
     assert after.readings[2].spectrum == spectrum(4.0)

@@ -152,7 +152,11 @@ def test_what_makes_no_sense_is_refused(
 def test_a_reason_stands_in_the_trail(file: CampaignFile) -> None:
     file.apply(operations.leave_out_points(file.campaign, "r2", [1], " a drop "))
     file.apply(operations.overrule(file.campaign, "r2", "seen twice"))
-    assert [entry.reason for entry in file.history()] == ["", "a drop", "seen twice"]
+    trail = file.history()
+    assert [entry.reason for entry in trail] == ["", "a drop", "seen twice"]
+    # With the name of who overruled.
+    assert trail[2].name.startswith("Overrule the rejection of")
+    assert trail[2].who
 
 
 def test_a_remark_has_a_limit(campaign: Campaign) -> None:

@@ -51,8 +51,9 @@ def test_other_columns_are_left_alone() -> None:
     assert is_z(piece)
     assert piece.exposure_h is None  # a clock, not an exposure
     assert [c.role for c in piece.dialect.columns] == [
-        "other", "time", "frequency", "other", "real", "imaginary", "other"
+        "other", "time", "frequency", "potential", "real", "imaginary", "other"
     ]  # fmt: skip
+    assert piece.potential_span_mv == (200.0, 200.0)
 
 
 def test_columns_without_headings() -> None:
@@ -223,3 +224,15 @@ def test_a_dialect_reads_its_own_spectrum_again() -> None:
         (again,) = read_as_told(told.encode(), piece.dialect)
         assert is_z(again)
         assert again.spectrum == piece.spectrum
+
+
+@pytest.mark.parametrize("again_hz", [1e4, 1e2, 1.0])
+@pytest.mark.parametrize("place", [0, 29])
+def test_a_point_measured_once_more_belongs_to_its_sweep(again_hz: float, place: int) -> None:
+    """Before or after the sweep, as a check that the panel did not change meanwhile."""
+    nearest = int(np.abs(FREQUENCY - again_hz).argmin())
+    frequency = np.insert(FREQUENCY, place, FREQUENCY[nearest])
+    z = np.insert(Z, place, 1.1 * Z[nearest])
+    piece = one(text("f/Hz;Z'/ohm;Z''/ohm", frequency, z.real, z.imag))
+    assert len(piece.spectrum) == 30
+    assert np.count_nonzero(piece.spectrum.frequency_hz == FREQUENCY[nearest]) == 2

@@ -48,7 +48,7 @@ def test_the_key_names_every_mark(place: ReadingPlace) -> None:
 
 def test_the_band_is_drawn_when_asked_for(place: ReadingPlace) -> None:
     shades = place.plots.beside_fit.shades
-    assert all(shade.path().isEmpty() for shade in shades)
+    assert all(shade.path.isEmpty() for shade in shades)
     QTest.mouseClick(place.band, Qt.MouseButton.LeftButton)
     reading, known = place.desk.reading(), place.desk.reading_assessment()
     assert reading is not None
@@ -69,18 +69,18 @@ def test_the_band_is_drawn_when_asked_for(place: ReadingPlace) -> None:
             x = float(np.log10(frequency[at]))
             inside = QPointF(x, float(low[at] + high[at]) / 2)
             outside = QPointF(x, float(high[at] + 3 * (high[at] - low[at]) + 0.01))
-            assert shades[number].path().contains(inside)
-            assert not shades[number].path().contains(outside)
+            assert shades[number].path.contains(inside)
+            assert not shades[number].path.contains(outside)
     # In the complex plane the curve lies within.
     at = int(np.flatnonzero(band.holds)[len(frequency) // 3])
     z = band.impedance_ohm[at]
-    assert not shades[2].path().isEmpty()
-    assert shades[2].path().boundingRect().contains(QPointF(z.real, -z.imag))
+    assert not shades[2].path.isEmpty()
+    assert shades[2].path.boundingRect().contains(QPointF(z.real, -z.imag))
     head = place.data_rows()[0]
     column = head.index("model_modulus_low_ohm")
     assert [row[column] for row in place.data_rows()[1:]] == pytest.approx(band.modulus_low_ohm)
     QTest.mouseClick(place.band, Qt.MouseButton.LeftButton)
-    assert all(shade.path().isEmpty() for shade in shades)
+    assert all(shade.path.isEmpty() for shade in shades)
 
 
 def test_the_parts_are_drawn_when_asked_for(place: ReadingPlace) -> None:
@@ -97,8 +97,8 @@ def test_the_parts_are_drawn_when_asked_for(place: ReadingPlace) -> None:
         assert any(text.startswith(part.name) for text in texts(place))
     dashes = [e.style for e in place.plots.key.entries if e.text.startswith(drawn[0].name)]
     assert dashes[0] is not Qt.PenStyle.SolidLine
-    curves = place.plots.beside_fit._curves
-    across, up = curves[0][0].getData()
+    curves = place.plots.beside_fit.curves
+    across, up = curves[0][0].across, curves[0][0].up
     first = fit_parts(known.fit, model, 10.0 ** np.asarray(across))[0]
     assert first.impedance_ohm is not None
     assert up == pytest.approx(np.log10(np.abs(first.impedance_ohm)), abs=1e-9)
@@ -110,7 +110,7 @@ def test_the_parts_are_drawn_when_asked_for(place: ReadingPlace) -> None:
     place.desk.select(unfitted.reading_id)
     QApplication.processEvents()
     assert not place.plots.beside_fit.parts
-    assert all(curve.getData()[0] is None or not len(curve.getData()[0]) for curve in curves[0])
+    assert not any(curve.across.size for curve in curves[0])
 
 
 def test_bounds_are_said(place: ReadingPlace) -> None:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import replace
 from itertools import pairwise
 
 import numpy as np
@@ -15,11 +16,11 @@ from PySide6.QtGui import QMouseEvent
 from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QApplication
 
-from coatgui.records import Bound, ReadingAssessment
+from coatgui.records import Bound, Quantity, ReadingAssessment
 from coatgui.window import palette
 from coatgui.window.main_window import MainWindow
 from coatgui.window.places.reading_place import OTHER_TIMES, REPLICATES, ReadingPlace
-from coatgui.window.section import SectionView, section_of
+from coatgui.window.section import SectionView, change, section_of
 
 Wait = Callable[[Callable[[], bool]], None]
 
@@ -62,17 +63,17 @@ def test_other_times_and_replicates_are_drawn_beside(sample: MainWindow) -> None
     sample.desk.select(known(sample, "P2", 336).reading_id)
     curves = place.plots._others[0]
     place.overlay.setCurrentIndex(OTHER_TIMES)
-    shown = [c for c in curves if c.getData()[0] is not None and len(c.getData()[0])]
+    shown = [c for c in curves if c.across.size]
     assert len(shown) == 8  # nine inspections, and this is one of them
-    shades = [curve.opts["pen"].color().lightnessF() for curve in shown]
+    shades = [curve.pen.color().lightnessF() for curve in shown]
     assert shades == sorted(shades, reverse=True)  # deeper with time, on a light ground
     steps = np.diff(shades)
     assert np.ptp(steps[:5]) < 0.01  # evenly, up to the step over the reading itself
     place.overlay.setCurrentIndex(REPLICATES)
-    shown = [c for c in curves if c.getData()[0] is not None and len(c.getData()[0])]
+    shown = [c for c in curves if c.across.size]
     assert len(shown) == 3
     place.overlay.setCurrentIndex(0)
-    assert not [c for c in curves if c.getData()[0] is not None and len(c.getData()[0])]
+    assert not [c for c in curves if c.across.size]
 
 
 def box(place: ReadingPlace) -> tuple[QPoint, QPoint]:
@@ -106,6 +107,42 @@ def test_a_box_leaves_points_out_and_takes_them_back(sample: MainWindow, wait: W
     assert not record.left_out
 
 
+def test_a_click_leaves_a_point_out_greys_it_in_every_plot_and_can_be_undone(
+    sample: MainWindow, wait: Wait
+) -> None:
+    place = place_of(sample)
+    sample.desk.select(known(sample, "M2", 168).reading_id)
+    for _ in range(3):
+        QApplication.processEvents()
+    plots = place.plots
+
+    def click() -> None:
+        x, y = plots._on_screen(plots.phase)[20]
+        where = QPoint(round(x), round(y))
+        left, none = Qt.MouseButton.LeftButton, Qt.KeyboardModifier.NoModifier
+        QTest.mouseClick(plots.phase.viewport(), left, none, where)
+        wait(lambda: sample.desk.job is None)
+        for _ in range(3):
+            QApplication.processEvents()
+
+    def left_out() -> list[int]:
+        record = sample.desk.reading()
+        assert record is not None
+        return [point for point, _ in record.left_out]
+
+    click()
+    assert left_out() == [20]
+    for crosses, (across, _) in zip(plots._crosses, plots.drawn.places(), strict=False):
+        assert crosses.getData()[0].tolist() == [across[20]]
+    click()
+    assert left_out() == []
+    assert sample.desk.file is not None
+    sample.desk.undo()
+    assert left_out() == [20]
+    sample.desk.undo()
+    assert left_out() == []
+
+
 def test_the_cursor_reads_all_plots(sample: MainWindow) -> None:
     place = place_of(sample)
     sample.desk.select(known(sample, "P2", 336).reading_id)
@@ -120,11 +157,11 @@ def test_the_cursor_reads_all_plots(sample: MainWindow) -> None:
         assert spectrum is not None
         assert abs(plots.place - 30) <= 1
         for ring in plots._rings:
-            assert len(ring.points()) == 1
+            assert ring.across.size == 1
         words = place.read_out.text()
         for wanted in ("Hz", "|Z|", "phase", "Z′", "−Z″", "residual"):
             assert wanted in words
-    assert plots._lines[0].value() == plots._lines[2].value()
+    assert plots._lines[0].value == plots._lines[2].value
 
 
 def test_the_section_carries_the_fitted_values(sample: MainWindow) -> None:
@@ -175,3 +212,39 @@ def test_the_section_keeps_its_words_inside(sample: MainWindow) -> None:
             assert all(a.bottom() <= b.top() + 0.01 for a, b in pairwise(areas))
             assert not view.grab().isNull()
     view.deleteLater()
+
+
+def test_the_section_says_how_its_values_changed(sample: MainWindow) -> None:
+    now, before = known(sample, "P2", 672), known(sample, "P2", 504)
+    assert now.fit is not None
+    section = section_of(now, None, None, before)
+    assert section is not None
+    words = section.in_words()
+    assert "Δ change since 504 h" in words
+    pores = now.pore_resistance, before.pore_resistance
+    assert pores[0] is not None
+    assert pores[0].value is not None
+    assert pores[1] is not None
+    assert pores[1].value is not None
+    percent = 100 * (pores[0].value / pores[1].value - 1)
+    line = next(line for band in section.bands for line in band.lines if line.startswith("R_po"))
+    assert line.endswith(f"Δ{percent:+.0f} %".replace("-", "−")) or "÷" in line or "×" in line
+    plain = section_of(now, None)
+    assert plain is not None
+    assert "Δ" not in plain.in_words()
+    # In the place itself the last reading before this one is meant.
+    sample.go_to("Reading")
+    sample.desk.select(now.reading_id)
+    shown = sample.open_place().section.accessibleDescription()  # type: ignore[attr-defined]
+    assert "Δ change since 504 h" in shown
+
+
+def test_only_what_both_readings_fix_is_said_to_have_changed() -> None:
+    both = Quantity(2.0e9, 1.9e9, 2.1e9, Bound.TWO_SIDED, "Ω cm²")
+    less = replace(both, value=1.0e9)
+    assert change(less, both).strip() == "Δ÷2"
+    assert change(replace(both, value=2.2e9), both).strip() == "Δ+10 %"
+    assert change(replace(both, value=1.9e9), both).strip() == "Δ−5 %"
+    assert change(replace(both, bound=Bound.AT_LEAST), both) == ""
+    assert change(both, None) == ""
+    assert change(replace(both, unit="Ω"), both) == ""

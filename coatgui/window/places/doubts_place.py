@@ -6,9 +6,8 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-import pyqtgraph as pg
 from PySide6.QtCore import Qt, Signal
-from PySide6.QtGui import QBrush, QColor
+from PySide6.QtGui import QBrush, QColor, QPen
 from PySide6.QtWidgets import (
     QHBoxLayout,
     QInputDialog,
@@ -23,7 +22,7 @@ from PySide6.QtWidgets import (
 
 from coatgui.campaign import operations
 from coatgui.records import Finding, ReadingAssessment, Refusal, Severity
-from coatgui.window.axis import Plot
+from coatgui.window.canvas import Canvas, Marks
 from coatgui.window.desk import Desk
 from coatgui.window.palette import Colours
 from coatgui.window.places.place import Place, plain_label
@@ -81,10 +80,9 @@ class DoubtsPlace(Place):
         self.heading = plain_label("question")
         self.words = plain_label()
         self.numbers = plain_label("small")
-        self.plot = Plot("Evidence: modulus", ("frequency", "Hz"), ("|Z| of the specimen", "Ω"))
-        self._points, self._meant = pg.ScatterPlotItem(), pg.ScatterPlotItem()
-        self.plot.addItem(self._points)
-        self.plot.addItem(self._meant)
+        self.plot = Canvas("Evidence: modulus", ("frequency", "Hz"), ("|Z| of the specimen", "Ω"))
+        self._points, self._meant = Marks(size=6), Marks(size=12)
+        self.plot.add(self._points, self._meant)
         for label in (self.heading, self.words, self.numbers):
             label.setSizePolicy(QSizePolicy.Policy.Preferred, QSizePolicy.Policy.Maximum)
             column.addWidget(label)
@@ -205,14 +203,10 @@ class DoubtsPlace(Place):
         x = np.log10(record.spectrum.frequency_hz)
         y = np.log10(np.maximum(np.abs(record.spectrum.impedance_ohm), 1e-30))
         meant = np.array([p for p in finding.points if p < x.size], dtype=int)
-        self._points.setData(x, y, symbol="o", size=6, pen=pg.mkPen(tone.slate), brush=None)
-        self._meant.setData(
-            x[meant], y[meant], symbol="o", size=12, pen=pg.mkPen(tone.rust, width=2), brush=None
-        )
-        self.plot.setRange(
-            xRange=(float(x.min()), float(x.max())),
-            yRange=(float(y.min()), float(y.max())),
-            padding=0.06,
+        self._points.show(x, y, QPen(QColor(tone.slate), 1))
+        self._meant.show(x[meant], y[meant], QPen(QColor(tone.rust), 2))
+        self.plot.show_range(
+            (float(x.min()), float(x.max())), (float(y.min()), float(y.max())), 0.06
         )
 
     # --- what can be done ------------------------------------------------------------------

@@ -23,7 +23,7 @@ from PySide6.QtWidgets import (
 
 from coatgui.campaign import operations
 from coatgui.fitting.views import FitBand, Part
-from coatgui.records import Reading, ReadingAssessment
+from coatgui.records import Assessment, Reading, ReadingAssessment
 from coatgui.window.composing import Composing
 from coatgui.window.desk import Desk
 from coatgui.window.fit_drawn import band_of, between, parts_of
@@ -35,6 +35,7 @@ from coatgui.window.places.place import Place, plain_label, plain_tip
 from coatgui.window.section import SectionView, section_of
 from coatgui.window.sheet import sheet
 from coatgui.window.spectrum_plots import Drawn, SpectrumPlots
+from coatgui.window.still import Still
 from coatgui.window.trials import TrialsTable
 
 _HEADINGS = (
@@ -57,7 +58,8 @@ class ReadingPlace(Place):
     def __init__(self, desk: Desk, tone: Colours) -> None:
         super().__init__(desk, tone)
         self.about = plain_label()
-        self.column.addWidget(self.about)
+        self._about = Still(self.about, 2)
+        self.column.addWidget(self._about)
         row = QHBoxLayout()
         row.setSpacing(12)
         self.column.addLayout(row, 1)
@@ -78,7 +80,8 @@ class ReadingPlace(Place):
         )
         self.overlay.currentIndexChanged.connect(self.show_selection)
         self.read_out = plain_label("small")
-        self.read_out.setText(_HINT)
+        self._read_out = Still(self.read_out, 1)
+        self._read_out.say(_HINT)
         self.tried = _switch(
             "What was tried", "Every model laid on this spectrum, and why it was left"
         )
@@ -95,7 +98,7 @@ class ReadingPlace(Place):
         under.addWidget(self.tried)
         under.addStretch(1)
         left.addLayout(under)
-        left.addWidget(self.read_out)
+        left.addWidget(self._read_out)
         left.addWidget(self.beside)
         row.addLayout(left, 1)
         row.addWidget(self._side(tone))
@@ -114,6 +117,8 @@ class ReadingPlace(Place):
         self.trials.hide()
         self.column.addWidget(self.trials)
         self.toggling: list[int] = []
+        self._panels_of: Assessment | None = None  # whose fitted readings these are, by panel
+        self._fitted: dict[str, list[ReadingAssessment]] = {}
 
     def _side(self, tone: Colours) -> QStackedWidget:
         shown = QWidget()
@@ -152,10 +157,11 @@ class ReadingPlace(Place):
             panel = next(
                 (p for p in self.desk.campaign.panels if p.panel_id == reading.panel_id), None
             )
-        self.section.show_section(section_of(known, panel, models(self.desk.campaign)), self.tone)
+        section = section_of(known, panel, models(self.desk.campaign), self._before(known))
+        self.section.show_section(section, self.tone)
         self.section.setVisible(self.section.section is not None)
-        self.table.setRowCount(0)
         self._say(reading, known)
+        self._tabulate(known)
         self._show_trials()
         if reading is None:
             self.plots.show_spectrum(None, (), self.tone)
@@ -163,17 +169,32 @@ class ReadingPlace(Place):
         self.plots.show_spectrum(drawn(reading, known), self._overlaid(reading), self.tone)
         self._draw_beside_fit()
         self.picker.offer(reading)
-        if known is not None:
-            self._tabulate(known)
+
+    def _before(self, known: ReadingAssessment | None) -> ReadingAssessment | None:
+        """The last reading of the same panel before this one that was fitted."""
+        assessment = self.desk.assessment
+        if known is None or assessment is None:
+            return None
+        if self._panels_of is not assessment:
+            self._panels_of, self._fitted = assessment, {}
+            for each in assessment.readings:
+                if each.fit is not None:
+                    self._fitted.setdefault(each.panel_id, []).append(each)
+        own = self._fitted.get(known.panel_id, ())
+        earlier = [r for r in own if r.exposure_h < known.exposure_h]
+        return max(earlier, key=lambda r: r.exposure_h, default=None)
 
     def _show_trials(self) -> None:
-        known = self.desk.reading_assessment()
-        self.trials.show_trials(known.fit if known else None, models(self.desk.campaign), self.tone)
+        if self.tried.isChecked():
+            known, known_models = self.desk.reading_assessment(), models(self.desk.campaign)
+            self.trials.show_trials(known.fit if known else None, known_models, self.tone)
         self.trials.setVisible(self.tried.isChecked())
         self.findings_area.setVisible(bool(self.findings.text()) and not self.tried.isChecked())
 
     def _beside_fit(self, frequency_hz: np.ndarray) -> tuple[FitBand | None, tuple[Part, ...]]:
         """The band and the parts that are asked for, of the fit that is shown."""
+        if not self.band.isChecked() and not self.parts.isChecked():
+            return None, ()
         known, campaign = self.desk.reading_assessment(), self.desk.campaign
         fit = known.fit if known else None
         model = models(campaign).get(fit.model) if fit else None
@@ -220,13 +241,13 @@ class ReadingPlace(Place):
         ]
 
     def _say(self, reading: Reading | None, known: ReadingAssessment | None) -> None:
-        self.findings.setText("")
-        self.findings_area.hide()
-        if reading is None:
-            self.about.setText("No reading is picked: pick one in the tree or on the map.")
-            return
-        if known is None:
-            self.about.setText(self.desk.unjudged_words())
+        if reading is None or known is None:
+            self.findings.setText("")
+            self._about.say(
+                "No reading is picked: pick one in the tree or on the map."
+                if reading is None
+                else self.desk.unjudged_words()
+            )
             return
         text = f"{known.panel} of {known.formulation} after {known.exposure_h:g} h: "
         if known.fit is None:
@@ -239,10 +260,10 @@ class ReadingPlace(Place):
         lines = [f"{_MARKS[f.severity.value]}  {f.text}" for f in known.findings]
         if not lines:
             text += " Nothing speaks against this reading."
-        self.about.setText(text)
-        self.findings.setText("\n".join(lines))
-        self.findings_area.setVisible(bool(lines))
-        self._fit_findings()
+        self._about.say(text)
+        if "\n".join(lines) != self.findings.text():
+            self.findings.setText("\n".join(lines))
+            self._fit_findings()
 
     def _fit_findings(self) -> None:
         """As high as the findings need, up to some whole lines; the rest is scrolled to."""
@@ -257,21 +278,29 @@ class ReadingPlace(Place):
         super().resizeEvent(event)
         self._fit_findings()
 
-    def _tabulate(self, known: ReadingAssessment) -> None:
+    def _tabulate(self, known: ReadingAssessment | None) -> None:
+        if known is None:
+            self.table.setRowCount(0)
+            return
         rows = [(p.symbol, p.meaning, p.quantity) for p in known.parameters]
         rows += [
             (f"|Z|·A {m.frequency_hz:g} Hz", m.status.value.replace("_", " "), m.quantity)
             for m in known.modulus
             if m.quantity is not None
         ]
-        self.table.setRowCount(len(rows))
+        if self.table.rowCount() != len(rows):
+            self.table.setRowCount(len(rows))
         for i, (symbol, meaning, quantity) in enumerate(rows):
+            tip = plain_tip(f"{meaning} ({WORDS[quantity.bound]}). {quantity.method}")
             for j, text in enumerate((symbol, said(quantity))):
-                item = QTableWidgetItem(text)
-                item.setToolTip(
-                    plain_tip(f"{meaning} ({WORDS[quantity.bound]}). {quantity.method}")
-                )
-                self.table.setItem(i, j, item)
+                item = self.table.item(i, j)
+                if item is None:
+                    item = QTableWidgetItem()
+                    self.table.setItem(i, j, item)
+                if item.text() != text:
+                    item.setText(text)
+                if item.toolTip() != tip:
+                    item.setToolTip(tip)
 
     def topic(self) -> str:
         known = self.desk.reading_assessment()
@@ -317,7 +346,7 @@ class ReadingPlace(Place):
         super().paint_in(tone)
 
     def _pointed(self, words: str) -> None:
-        self.read_out.setText(words or _HINT)
+        self._read_out.say(words or _HINT)
 
     # --- edits -----------------------------------------------------------------------------
 
