@@ -5,6 +5,7 @@ from __future__ import annotations
 import json
 import shutil
 import sys
+from base64 import b64encode
 from html import escape
 from pathlib import Path
 
@@ -16,6 +17,8 @@ from coatgui.assessment.cautions import cautions
 from coatgui.campaign import CampaignFile, operations
 from coatgui.cli import main
 from coatgui.shipped import sample_panels
+
+ROOT = Path(__file__).resolve().parent.parent
 
 
 @pytest.fixture(scope="module")
@@ -237,3 +240,33 @@ def test_a_start_of_exposure_is_told(tmp_path: Path, capsys: pytest.CaptureFixtu
         assert words in capsys.readouterr().err
     assert main(["assess", str(tmp_path), "--proposals", "x.csv"]) == 2
     assert "goes with --dry-run" in capsys.readouterr().err
+
+
+def test_what_the_campaign_keeps_is_in_the_summary(tmp_path: Path) -> None:
+    """Photographs, ratings and names reach the summary without being told again."""
+    from coatgui.campaign import CampaignFile, campaign_from_found, inspections
+    from coatgui.intake import read_folder
+    from coatgui.records import VisualRating
+
+    folder, path = tmp_path / "week", tmp_path / "c.coatgui"
+    folder.mkdir()
+    (folder / "K1_24h.csv").write_bytes((sample_panels() / "K1_24h.csv").read_bytes())
+    found = read_folder(folder)
+    CampaignFile.create(path, campaign_from_found(found, "T"), found.raw).close()
+    picture = (ROOT / "resources" / "pictures" / "map.png").read_bytes()
+    with CampaignFile.open(path) as file:
+        panel = file.campaign.panels[0].panel_id
+        file.apply(inspections.identify(file.campaign, laboratory="Estuary Laboratory"))
+        seen = VisualRating(panel, 24.0, "iso_4628_3", "Ri 1", "2016", "R. Inspector")
+        file.apply(inspections.add_ratings(file.campaign, [seen]))
+        file.apply(
+            inspections.add_photograph(
+                file.campaign, panel, picture, exposure_h=24.0, caption="Rust <at> the edge"
+            )
+        )
+    out = tmp_path / "s.html"
+    assert main(["assess", str(path), "--quiet", "--workers", "1", "--summary", str(out)]) == 0
+    text = out.read_text(encoding="utf-8")
+    assert b64encode(picture[:3000]).decode() in text
+    for words in ("Estuary Laboratory", "R. Inspector", "24 h: Rust &lt;at&gt; the edge."):
+        assert words in text

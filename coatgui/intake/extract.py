@@ -10,10 +10,11 @@ import numpy as np
 from coatgui.intake.behaviour import columns_by_behaviour
 from coatgui.intake.conditions import CONDITIONS, condition, span
 from coatgui.intake.errors import Unclear, Unreadable
+from coatgui.intake.groups import Said
 from coatgui.intake.headings import Meaning
 from coatgui.intake.impedance import FREQUENCY_ROLES, way_of
 from coatgui.intake.labels import moment_in, time_in
-from coatgui.intake.layout import Said, Section
+from coatgui.intake.layout import Section
 from coatgui.intake.segments import Block
 from coatgui.intake.units import Unit, kind_of
 from coatgui.records import BoolArray, Column, FloatArray

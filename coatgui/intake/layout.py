@@ -5,16 +5,13 @@ from __future__ import annotations
 import re
 from collections.abc import Sequence
 from dataclasses import dataclass, field, replace
-from datetime import datetime
-from itertools import pairwise
 
+from coatgui.intake.groups import FREQUENCIES, SHARED, Said, groups_of
 from coatgui.intake.headings import Meaning, meaning, take_unit
 from coatgui.intake.labels import label_in, moment_in, time_in
 from coatgui.intake.segments import Block, Piece, TextRow
 from coatgui.intake.units import Unit, data, kind_of, unit_of
 
-FREQUENCIES = ("frequency", "angular_frequency")
-SHARED = ("time", "panel", "date")
 _KINDS = ("frequency", "angular_frequency", "impedance", "admittance", "capacitance", "angle")
 _ROWS_LOOKED_AT = 8
 _ROWS_WITH_UNITS = 60
@@ -32,16 +29,6 @@ _OF_COMPLEX = {
     "admittance_modulus": ("admittance_real", "admittance_imaginary"),
 }
 _KEY_AND_VALUE = re.compile(r"^\s*([^:=]{1,40}?)\s*[:=]\s*(\S.*)$")
-
-
-@dataclass(frozen=True)
-class Said:
-    """What rows above a block say about its spectra."""
-
-    panel: str = ""
-    hours: float | None = None
-    moment: datetime | None = None
-    moment_unsure: bool = False
 
 
 @dataclass(eq=False)
@@ -108,7 +95,7 @@ def _section(
     if place is not None and said.hours is None:
         said = _with_label_below(said, rows[place + 1 :])
     labels = _labels_above(above, rows[place].line if place is not None else None, pairs)
-    groups = _groups(meanings, labels) if any(meanings) else []
+    groups = groups_of(meanings, labels) if any(meanings) else []
     written = block.width - len(pairs)
     return Section(block, headings, meanings, groups, said, dict(units), place is not None, written)
 
@@ -311,85 +298,3 @@ def _labels_above(
         if panel or hours is not None:
             labels[i] = (panel, -1.0 if hours is None else hours)
     return labels
-
-
-# ---------------------------------------------------------------------------------------------
-# Groups of columns
-
-
-def _groups(
-    meanings: list[Meaning | None], labels: dict[int, tuple[str, float]]
-) -> list[tuple[list[int], Said]]:
-    roles = ["" if m is None else m.role for m in meanings]
-    frequencies = [i for i, role in enumerate(roles) if role in FREQUENCIES]
-    several = len(frequencies) > len({roles[i] for i in frequencies})
-    if several:
-        own = _by_frequency(roles, frequencies)
-        common: list[int] = [
-            i for i, role in enumerate(roles) if role in SHARED and not any(i in g for g in own)
-        ]
-    else:
-        common = [i for i, role in enumerate(roles) if role in (*FREQUENCIES, *SHARED)]
-        values = [i for i, role in enumerate(roles) if role and i not in common]
-        own = _by_repetition(meanings, values)
-    found = []
-    for group in own:
-        said = _said_of_group(meanings, group)
-        if len(own) > 1 and said == Said():
-            over = [labels[i] for i in range(group[0], group[-1] + 1) if i in labels]
-            over = over or [labels[i] for i in sorted(labels) if i <= group[0]][-1:]
-            if over:
-                said = Said(over[0][0], None if over[0][1] < 0 else over[0][1])
-        found.append((sorted({*common, *group}), said))
-    return found
-
-
-def _by_frequency(roles: list[str], frequencies: list[int]) -> list[list[int]]:
-    """Groups that each have their own frequency column."""
-    named = [i for i, role in enumerate(roles) if role]
-    start, stop = named[0], named[-1] + 1
-    period = frequencies[1] - frequencies[0]
-    periodic = (stop - start) <= period * len(frequencies) and all(
-        roles[i] == roles[i - period] for i in range(start + period, stop)
-    )
-    if periodic:
-        starts = list(range(start, stop, period))
-    elif frequencies[0] == next(i for i in named if roles[i] not in SHARED):
-        starts = frequencies
-    else:
-        starts = [start, *(i + 1 for i in frequencies[:-1])]
-    return [[i for i in range(a, b) if roles[i]] for a, b in pairwise([*starts, len(roles)])]
-
-
-def _by_repetition(meanings: list[Meaning | None], values: list[int]) -> list[list[int]]:
-    """Groups that share a frequency column: by their labels, else anew where a role comes again."""
-    kinds = [meanings[i] for i in values]
-    known = [m for m in kinds if m is not None]
-    if len({(m.role, m.logarithm) for m in known}) == len(known):
-        return [values]
-    keys = [(m.hours, m.label) for m in known]
-    if all(key != (None, "") for key in keys):
-        by_key: dict[tuple[float | None, str], list[int]] = {}
-        for i, key in zip(values, keys, strict=True):
-            by_key.setdefault(key, []).append(i)
-        return list(by_key.values())
-    groups: list[list[int]] = [[]]
-    taken: set[str] = set()
-    for i, what in zip(values, known, strict=True):
-        if what.role in taken:
-            groups.append([])
-            taken = set()
-        groups[-1].append(i)
-        taken.add(what.role)
-    return groups
-
-
-def _said_of_group(meanings: list[Meaning | None], group: list[int]) -> Said:
-    said = Said()
-    for i in group:
-        what = meanings[i]
-        if what is not None and what.hours is not None and said.hours is None:
-            said = replace(said, hours=what.hours)
-        if what is not None and what.label and not said.panel:
-            said = replace(said, panel=what.label)
-    return said

@@ -1,6 +1,6 @@
 """Coverage-guided fuzzing of the readers: no crash, no hang, no memory without end.
 
-    PYTHONPATH=. python tests/robustness/fuzz_readers.py [MINUTES] [SEED] [EXECUTIONS]
+    PYTHONPATH=. python tests/robustness/fuzz_readers.py [MINUTES] [SEED] [EXECUTIONS] [ungrown]
 
 A corpus of the project's own dialects is mutated; what reaches an arc between two lines of
 `coatgui/intake` that nothing reached before joins the corpus. Of those that join, every second, and
@@ -10,8 +10,8 @@ five points or more) or refused in one sentence, and a dialect that was found re
 again.
 
 Ends after MINUTES, or after EXECUTIONS where given, with counts, and with status 1 where anything
-failed. The same seed makes the same inputs in the same order; one that failed is kept in the
-current folder as `failed_SEED_NUMBER`.
+failed; `ungrown` leaves the growing out. The same seed makes the same inputs in the same order; one
+that failed is kept in the current folder as `failed_SEED_NUMBER`.
 """
 
 from __future__ import annotations
@@ -236,8 +236,8 @@ def read_alone(data: bytes) -> tuple[str, float, float]:
 
 
 class Fuzzer:
-    def __init__(self, seed: int) -> None:
-        self.seed, self.arcs = seed, Arcs()
+    def __init__(self, seed: int, *, grows: bool) -> None:
+        self.seed, self.arcs, self.grows = seed, Arcs(), grows
         self.corpus: list[bytes] = []
         self.counts: Counter[str] = Counter()
         self.grown_counts: Counter[str] = Counter()
@@ -258,7 +258,7 @@ class Fuzzer:
         new = self._try(data)
         if new:
             self.corpus.append(data)
-        if chance.random() < (0.5 if new else 1 / _GROWN_EVERY):
+        if self.grows and chance.random() < (0.5 if new else 1 / _GROWN_EVERY):
             self._grow(data, chance)
 
     def _try(self, data: bytes) -> int:
@@ -305,8 +305,8 @@ class Fuzzer:
         )
 
 
-def main(minutes: float, seed: int, executions: int) -> int:
-    fuzzer = Fuzzer(seed)
+def main(minutes: float, seed: int, executions: int, *, grows: bool) -> int:
+    fuzzer = Fuzzer(seed, grows=grows)
     start = told = time.monotonic()
     fuzzer.begin()
     at_start = len(fuzzer.arcs.seen)
@@ -325,5 +325,6 @@ def main(minutes: float, seed: int, executions: int) -> int:
 
 
 if __name__ == "__main__":
-    given = [float(word) for word in sys.argv[1:]] + [20.0, 1.0, 1e12][len(sys.argv) - 1 :]
-    sys.exit(main(given[0], int(given[1]), int(given[2])))
+    words = [word for word in sys.argv[1:] if word != "ungrown"]
+    given = [float(word) for word in words] + [20.0, 1.0, 1e12][len(words) :]
+    sys.exit(main(given[0], int(given[1]), int(given[2]), grows="ungrown" not in sys.argv))

@@ -49,3 +49,10 @@ def test_damaged_campaign_files() -> None:
 @pytest.mark.skipif(sys.platform == "win32", reason="needs alarms")
 def test_damaged_input_files() -> None:
     run("input_trials.py", "400", "5")
+
+
+@pytest.mark.skipif(not hasattr(os, "fork"), reason="needs fork and alarms")
+def test_fuzzed_input_files() -> None:
+    # By seed alone, so that the same inputs are tried in every run; growing, where a machine's
+    # load shows, is left to runs by hand.
+    run("fuzz_readers.py", "60", "5", "560", "ungrown")

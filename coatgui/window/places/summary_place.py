@@ -142,9 +142,7 @@ class SummaryPlace(Place):
             return
         self._shown = wanted
         seen = self.desk.photographs()
-        self.printing.begin(
-            lambda: inspection_summary(assessment, campaign, photographs=seen), wanted[2]
-        )
+        self.printing.begin(lambda: inspection_summary(assessment, campaign, None, seen), wanted[2])
         self._came()
 
     def _came(self) -> None:
