@@ -18,7 +18,7 @@ from coatgui.progress import Progress, Spread, one_after_another
 from coatgui.records import Fit, Spectrum
 
 # Part of the key of cached results: raise it with every change that can change a result.
-ENGINE_VERSION = "3"
+ENGINE_VERSION = "4"
 # Shares of the work: few enough to be fast (the last rows to settle take as many steps in a small
 # share as in a large one), enough of them for every processor and for progress.
 _SMALLEST_SHARE, LARGEST_SHARE, _SHARES = 60, 1250, 4
