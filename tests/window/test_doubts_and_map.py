@@ -168,18 +168,17 @@ def test_the_map_is_zoomed_by_keys_and_wheel_about_what_is_looked_at(sample: Mai
     row = cells.rows.index(("panel", "M2"))
     centre = cells._rect(row, 4, cells._tops()).center()
     seen = cells.mapTo(area.viewport(), centre)
-    for _ in range(2):
-        where = QPointF(cells._rect(row, 4, cells._tops()).center())
-        wheel = QWheelEvent(
-            where, QPointF(cells.mapToGlobal(where.toPoint())), QPoint(), QPoint(0, 120),
-            Qt.MouseButton.NoButton, Qt.KeyboardModifier.ControlModifier,
-            Qt.ScrollPhase.NoScrollPhase, False,
-        )  # fmt: skip
-        QApplication.sendEvent(cells, wheel)
-    assert cells.scale == pytest.approx(1.15**5)
+    where = QPointF(cells._rect(row, 4, cells._tops()).center())
+    wheel = QWheelEvent(
+        where, QPointF(cells.mapToGlobal(where.toPoint())), QPoint(), QPoint(0, 120),
+        Qt.MouseButton.NoButton, Qt.KeyboardModifier.ControlModifier,
+        Qt.ScrollPhase.NoScrollPhase, False,
+    )  # fmt: skip
+    QApplication.sendEvent(cells, wheel)
+    assert cells.scale == pytest.approx(1.15**4)
     now = cells.mapTo(area.viewport(), cells._rect(row, 4, cells._tops()).center())
     assert abs(now.x() - seen.x()) <= 12
     assert abs(now.y() - seen.y()) <= 12
-    QTest.keyClicks(cells, "-" * 5)
+    QTest.keyClicks(cells, "-" * 4)
     assert cells.scale == pytest.approx(1.0)
     assert area.horizontalScrollBar().maximum() == 0
