@@ -17,7 +17,7 @@ import subprocess
 import sys
 import tempfile
 import time
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from pathlib import Path
 
 os.environ.setdefault("QT_QPA_PLATFORM", "offscreen")
@@ -37,7 +37,7 @@ from coatgui.window.main_window import MainWindow
 from coatgui.window.places.map_place import MapPlace
 from coatgui.window.places.reading_place import ReadingPlace
 from tests.benchmarks.assessment_of_many import large_campaign
-from tests.benchmarks.watchdog import Watchdog
+from tests.benchmarks.watchdog import Watchdog, reference_s
 
 _BARE = "import PySide6.QtWidgets, pyqtgraph, numpy"
 _WINDOW = """
@@ -53,21 +53,51 @@ app.processEvents()
 """
 
 
-def say(what: str, value: float, unit: str, target: float, at_least: bool = False) -> None:
-    met = value >= target if at_least else value <= target
-    sign = "≥" if at_least else "≤"
-    print(f"{'met   ' if met else 'MISSED'}  {what}: {value:.4g} {unit} ({sign} {target:g})")
+class Table:
+    """Figures with what was asked, in the order in which they were taken."""
+
+    def __init__(self) -> None:
+        self._rows: list[tuple[str, ...]] = []
+
+    def add(
+        self,
+        what: str,
+        values: Sequence[float],
+        unit: str,
+        most: float,
+        *,
+        at_99: float | None = None,
+        at_least: bool = False,
+    ) -> None:
+        """Median and 99th percentile (of frames a second: the slowest hundredth), with what is
+        asked of each."""
+        ordered = sorted(values, reverse=at_least)
+        middle = statistics.median(ordered)
+        far = ordered[min(int(0.99 * len(ordered)), len(ordered) - 1)]
+        met = middle >= most if at_least else middle <= most
+        asked = f"{'≥' if at_least else '≤'} {most:g}"
+        if at_99 is not None:
+            met, asked = met and far <= at_99, f"{asked}, 99 % ≤ {at_99:g}"
+        shown = f"{far:.3g}" if len(ordered) > 1 else "–"
+        self._rows.append((what, f"{middle:.3g}", shown, unit, asked, "yes" if met else "NO"))
+
+    def show(self) -> None:
+        rows = [("figure", "median", "99 %", "unit", "asked", "met"), *self._rows]
+        widths = [max(len(row[i]) for row in rows) for i in range(len(rows[0]))]
+        for row in rows:
+            cells = zip(row, widths, strict=True)
+            print("  ".join(cell.ljust(width) for cell, width in cells).rstrip())
 
 
-def child_seconds(code: str) -> float:
-    """Processor time of a Python that runs this code, the least of five."""
+def child_seconds(code: str) -> list[float]:
+    """Processor time of a Python that runs this code, five times."""
     taken = []
     for _ in range(5):
         before = resource.getrusage(resource.RUSAGE_CHILDREN)
         subprocess.run([sys.executable, "-c", code], check=True, stderr=subprocess.DEVNULL)
         after = resource.getrusage(resource.RUSAGE_CHILDREN)
         taken.append(after.ru_utime + after.ru_stime - before.ru_utime - before.ru_stime)
-    return min(taken)
+    return taken
 
 
 def memory_mb() -> float:
@@ -129,26 +159,30 @@ def plain_picks(window: MainWindow, application: QApplication, ids: list[str]) -
     return taken
 
 
-def map_frames(window: MainWindow, application: QApplication) -> tuple[float, float]:
-    """Frames a second while the map is moved, and while it is made larger and smaller."""
+def map_frames(window: MainWindow, application: QApplication) -> tuple[list[float], list[float]]:
+    """Frames a second while the map is moved, and while it is made larger and smaller, by the time
+    that each took."""
     place = next(p for p in window.places if isinstance(p, MapPlace))
     window.go(0)
     application.processEvents()
     across, down = place.area.horizontalScrollBar(), place.area.verticalScrollBar()
-    start, frames = time.process_time(), 100
+    frames = 200
+    moved, zoomed = [], []
     for number in range(frames):
+        start = time.process_time()
         down.setValue(down.maximum() * number // frames)
         across.setValue(across.maximum() * number // frames)
         application.processEvents()
-    moved = frames / (time.process_time() - start)
-    start = time.process_time()
+        moved.append(1 / (time.process_time() - start))
     for number in range(frames):
-        place.zoom(1.05 if number < frames // 2 else 1 / 1.05, QPoint(300, 200))
+        start = time.process_time()
+        place.zoom(1.02 if number < frames // 2 else 1 / 1.02, QPoint(300, 200))
         application.processEvents()
-    return moved, frames / (time.process_time() - start)
+        zoomed.append(1 / (time.process_time() - start))
+    return moved, zoomed
 
 
-def watched(window: MainWindow, application: QApplication, folder: Path) -> None:
+def watched(window: MainWindow, folder: Path, table: Table) -> None:
     """The longest call on the window's thread during import, fitting and export."""
     desk, dog = window.desk, Watchdog()
     campaign = desk.campaign
@@ -172,9 +206,9 @@ def watched(window: MainWindow, application: QApplication, folder: Path) -> None
         return desk.job is None and desk.campaign is not None
 
     def held(doing: str, begin: Callable[[], object], until: Callable[[], bool]) -> None:
-        say(f"longest call while {doing}", 1e3 * dog.over(begin, until), "ms", 50)
+        table.add(f"longest call while {doing}", [1e3 * dog.over(begin, until)], "ms", 50)
         if dog.stacks:
-            print(dog.report())
+            print(f"held while {doing}:\n{dog.report()}")
 
     held("writing the data", lambda: desk.export(folder / "out.json"), there)
     held(
@@ -194,9 +228,10 @@ def watched(window: MainWindow, application: QApplication, folder: Path) -> None
 
 def main() -> None:
     folder = Path(tempfile.mkdtemp(prefix="coatgui-benchmark-"))
-    bare = child_seconds(_BARE)
-    more = child_seconds(_WINDOW.format(ini=folder / "child.ini")) - bare
-    say(f"start to a usable window, over {bare:.2f} s of bare imports", more, "s", 0.6)
+    table = Table()
+    bare = min(child_seconds(_BARE))
+    more = [taken - bare for taken in child_seconds(_WINDOW.format(ini=folder / "child.ini"))]
+    table.add(f"start to a usable window, over {bare:.2f} s of imports", more, "s", 0.6)
 
     campaign, drawn = large_campaign()
     assessment: Assessment = conclude(campaign, drawn, Progress())
@@ -213,34 +248,43 @@ def main() -> None:
     application.processEvents()
     desk = window.desk
     desk.judge = lambda: None  # type: ignore[method-assign]
-    start = time.process_time()
-    desk.open(path)
-    while desk.file is None:
+    opened = []
+    for _ in range(3):
+        desk.close()
+        start = time.process_time()
+        desk.open(path)
+        while desk.file is None or window._parts:
+            application.processEvents()
+            time.sleep(0.002)
         application.processEvents()
-        time.sleep(0.002)
-    application.processEvents()
-    say("opening 10,000 spectra", time.process_time() - start, "s", 1.5)
+        opened.append(time.process_time() - start)
+    table.add("opening 10,000 spectra", opened, "s", 1.5)
     desk.assessment = assessment
     desk._stale = False
-    start = time.process_time()
     desk.assessed.emit()
-    application.processEvents()
-    print(f"        showing the assessment of all of them: {time.process_time() - start:.2f} s")
+    while window._parts:
+        application.processEvents()
     window.go(1)
     application.processEvents()
-    chosen = random.Random(1).sample(ids, 220)
+    chosen = random.Random(1).sample(ids, 420)
     picks(window, application, chosen[:20])
-    taken = sorted(picks(window, application, chosen[20:]))
-    plain = statistics.median(plain_picks(window, application, chosen[20:]))
-    middle = statistics.median(taken)
-    say("pick to repainted, median", 1e3 * middle, "ms", 16)
-    say("pick to repainted, 99 % below", 1e3 * taken[int(0.99 * len(taken))], "ms", 50)
-    say(f"pick against four plain plots of {1e3 * plain:.1f} ms", middle / plain, "", 0.5)
+    taken: list[float] = []
+    plain: list[float] = []
+    for begin in range(20, 420, 100):  # in turns, as the machine may be busier now and then
+        taken += picks(window, application, chosen[begin : begin + 100])
+        plain += plain_picks(window, application, chosen[begin : begin + 100])
+    table.add("pick to repainted", [1e3 * s for s in taken], "ms", 16, at_99=50)
+    beside = statistics.median(plain)
+    what = f"the same beside four plain plots of {1e3 * beside:.1f} ms"
+    table.add(what, [s / beside for s in taken], "times", 0.5)
     moved, zoomed = map_frames(window, application)
-    say("map moved", moved, "frames/s", 50, at_least=True)
-    say("map made larger and smaller", zoomed, "frames/s", 50, at_least=True)
-    say("memory with 10,000 spectra open", memory_mb(), "MB", 600)
-    watched(window, application, folder)
+    table.add("map moved", moved, "frames/s", 50, at_least=True)
+    table.add("map made larger and smaller", zoomed, "frames/s", 50, at_least=True)
+    table.add("memory with 10,000 spectra open", [memory_mb()], "MB", 600)
+    watched(window, folder, table)
+    piece = min(reference_s() for _ in range(9))
+    print(f"(the watchdog's piece of work took {1e3 * piece:.1f} ms: how quick the machine was)")
+    table.show()
     desk.close()
     shutil.rmtree(folder)
 
