@@ -60,7 +60,7 @@ def test_doubts_are_settled_where_they_stand(sample: MainWindow, wait: Wait) -> 
     pick(place, "K2, 72 h")
     reading = known(sample, "K2", 72)
     finding = next(f for f in reading.findings if f.points)
-    assert len(place._meant.points()) == len(finding.points)
+    assert place._meant.across.size == len(finding.points)
     QTest.mouseClick(place.leave, LEFT)
     record = next(r for r in campaign(sample).readings if r.reading_id == reading.reading_id)
     assert dict(record.left_out) == {
