@@ -103,7 +103,12 @@ def _by_panel(campaign: Campaign) -> dict[str, list[Reading]]:
 
 
 def _conditions(campaign: Campaign, limits: Mapping[str, float]) -> _ByReading:
-    """Temperature and potential far from those of the panel's other readings."""
+    """Temperature and potential far from those of the panel's other readings, or changing within
+    the sweep."""
+    areas = {panel.panel_id: panel.area_cm2 for panel in campaign.panels}
+    for reading in campaign.readings:
+        for finding in _within_sweep(reading, areas.get(reading.panel_id), limits):
+            yield reading.reading_id, finding
     for series in _by_panel(campaign).values():
         warm = [(r, r.temperature_c) for r in series if r.temperature_c is not None]
         for reading, value, usual in _apart(warm, limits["temperature_apart_c"]):
@@ -129,6 +134,40 @@ def _conditions(campaign: Campaign, limits: Mapping[str, float]) -> _ByReading:
                     f"{usual:g} mV: the surface changed, or the reference electrode did.",
                     evidence=(("potential_mv", value), ("usual_mv", usual)),
                 ),
+            )
+
+
+def _within_sweep(
+    reading: Reading, area_cm2: float | None, limits: Mapping[str, float]
+) -> Iterator[Finding]:
+    """What the file says point by point: a temperature or a potential that ran while the sweep was
+    taken. Where the film is a barrier, the metal's potential is not what the spectrum shows."""
+    if reading.temperature_span_c is not None:
+        low, high = reading.temperature_span_c
+        if high - low > limits["temperature_within_c"]:
+            yield Finding(
+                "temperature_drift",
+                Severity.DOUBT,
+                f"The temperature lay between {low:.3g} and {high:.3g} °C while the sweep was "
+                "taken: its fast and its slow end are not of one panel. Let the cell come to rest "
+                "and measure again.",
+                evidence=(("low_c", low), ("high_c", high)),
+            )
+    if reading.potential_span_mv is not None:
+        low, high = reading.potential_span_mv
+        shown = float(np.abs(reading.spectrum.impedance_ohm[-1])) * (area_cm2 or 1.0)
+        barrier = shown > limits["barrier_above_ohm_cm2"]
+        if high - low > limits["potential_within_mv"]:
+            yield Finding(
+                "potential_drift",
+                Severity.NOTE if barrier else Severity.DOUBT,
+                f"The potential lay between {low:.4g} and {high:.4g} mV while the sweep was taken"
+                + (
+                    ", which an intact barrier hardly shows."
+                    if barrier
+                    else ": the metal was not at rest. Wait until it is, and measure again."
+                ),
+                evidence=(("low_mv", low), ("high_mv", high)),
             )
 
 

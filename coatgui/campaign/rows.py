@@ -120,7 +120,14 @@ def reading_row(reading: Reading) -> Row:
         "kept_in": to_json(reading.kept_in),
         "pinned_model": reading.pinned_model,
         "overruled_because": reading.overruled_because,
+        **_span_cells("temperature", "c", reading.temperature_span_c),
+        **_span_cells("potential", "mv", reading.potential_span_mv),
     }
+
+
+def _span_cells(what: str, unit: str, span: tuple[float, float] | None) -> Row:
+    low, high = (None, None) if span is None else span
+    return {f"{what}_low_{unit}": as_float(low), f"{what}_high_{unit}": as_float(high)}
 
 
 def open_lead_row(campaign_id: str, spectrum: Spectrum, source: Source | None) -> Row:
@@ -263,7 +270,18 @@ def reading_of(row: Row, spectra: Mapping[str, Spectrum]) -> Reading:
         kept_in=kept_in,
         pinned_model=string(row["pinned_model"]),
         overruled_because=string(row["overruled_because"]),
+        temperature_span_c=_span_of(row, "temperature", "c"),
+        potential_span_mv=_span_of(row, "potential", "mv"),
     )
+
+
+def _span_of(row: Row, what: str, unit: str) -> tuple[float, float] | None:
+    low, high = (number_or_none(row[f"{what}_{end}_{unit}"]) for end in ("low", "high"))
+    if low is None or high is None:
+        if low is not high:
+            raise ValueError(f"Of a {what} within the sweep only one end is there.")
+        return None
+    return low, high
 
 
 def refusal_of(row: Row) -> Refusal:

@@ -156,8 +156,8 @@ def add_the_input_and_own_models(connection: sqlite3.Connection) -> None:
 
 def seal_the_trail_and_take_what_is_seen(connection: sqlite3.Connection) -> None:
     """The trail is chained by hashes; results carry theirs; ratings, photographs, the names on a
-    summary and what is asked have a place. `migrate` fills in the hashes of the lines that are
-    there."""
+    summary, what is asked, and what changed within a sweep have a place. `migrate` fills in the
+    hashes of the lines that are there."""
     for column in ("reason", "state", "chain"):
         connection.execute(f"ALTER TABLE history ADD COLUMN {column} TEXT NOT NULL DEFAULT ''")
     # Kept results may go at any time; those from before have no hash.
@@ -168,6 +168,17 @@ def seal_the_trail_and_take_what_is_seen(connection: sqlite3.Connection) -> None
     connection.execute("ALTER TABLE campaign ADD COLUMN standards TEXT NOT NULL DEFAULT '[]'")
     for column in ("limits", "comparisons", "projections", "electrolytes", "regimes"):
         connection.execute(f"ALTER TABLE settings ADD COLUMN {column} TEXT NOT NULL DEFAULT '[]'")
+    connection.execute(
+        "ALTER TABLE settings ADD COLUMN uptake_from_high_frequency INTEGER NOT NULL DEFAULT 0 "
+        "CHECK (uptake_from_high_frequency IN (0, 1))"
+    )
+    for column in (
+        "temperature_low_c",
+        "temperature_high_c",
+        "potential_low_mv",
+        "potential_high_mv",
+    ):
+        connection.execute(f"ALTER TABLE readings ADD COLUMN {column} REAL")
     for statement in _TABLES_OF_WHAT_IS_SEEN:
         connection.execute(statement)
 

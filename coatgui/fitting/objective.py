@@ -91,13 +91,17 @@ class ImpedanceObjective:
     def misfit(self, theta: FloatArray, rows: IndexArray) -> FloatArray:
         """Σ |Z_model − Z|²/(|Z_model| |Z|) (B,): how far apart, alike whichever of the two is the
         larger, and quick; it is 4 sinh² of half the logarithmic residual where phases agree."""
+        total = np.empty(len(theta))
         with np.errstate(over="ignore", invalid="ignore", divide="ignore"):
-            modelled = self.model.impedance(theta, self.grid)
-            measured = self.measured[rows]
-            apart = np.abs(modelled - measured)
-            apart *= apart
-            apart /= np.abs(modelled) * np.abs(measured)
-            total: FloatArray = (apart * self.used[rows]).sum(axis=1)
+            for begun in range(0, len(theta), 4 * CHUNK):
+                some = slice(begun, begun + 4 * CHUNK)
+                own = rows[some]
+                modelled = self.model.impedance(theta[some], self.grid)
+                measured = self.measured[own]
+                apart = np.abs(modelled - measured)
+                apart *= apart
+                apart /= np.abs(modelled) * np.abs(measured)
+                total[some] = (apart * self.used[own]).sum(axis=1)
         return total
 
     def normal(

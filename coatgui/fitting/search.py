@@ -21,11 +21,11 @@ from coatgui.fitting.solver import (
 from coatgui.fitting.starts import approach_bounds, best_starts, candidates
 
 _STARTS = 4
-_STARTS_WITH_HELP = 3
 _ENOUGH_POINTS = 12
 _FAR_WORSE = 30.0  # in sum of squares
 _FAR_OFF = 100.0  # likewise, of a start that comes from another fit
 _OFFERS = 2
+_WELL_INSIDE = 5.0  # in natural coordinates
 _SAME_PLACE = 0.2  # in natural coordinates
 _SAME_COST = 1.005
 APPROACH = Tolerance(cosine=1e-2, reduction=1e-3, step=2.0, iterations=16)
@@ -187,13 +187,10 @@ def search(
     """The best fit of `model` to each spectrum of the batch, from the spectrum's own starts
     and from its `offers` (K, P) that may lie near an optimum already."""
     offered = candidates(model, batch.frequency_hz, batch.impedance, batch.used)
-    helped = offers is not None and any(map(len, offers))
-    starts, rows = best_starts(
-        batch.thinned().objective(model), offered, _STARTS_WITH_HELP if helped else _STARTS
-    )
+    starts, rows = best_starts(batch.thinned().objective(model), offered, _STARTS)
     near = approach(model, batch, starts, rows, check)
     theta, cost = near.theta, near.cost
-    if offers is not None and helped:
+    if offers is not None and any(map(len, offers)):
         further = np.clip(np.concatenate(offers), *model.bounds)
         place = np.repeat(np.arange(len(offers)), [len(offer) for offer in offers])
         rough = batch.thinned().objective(model, logarithmic=True)
@@ -216,16 +213,41 @@ def settle(
     return minimise(batch.objective(model), theta, low, high, tolerance=_SETTLE, check=check)
 
 
+def try_from_inside(
+    model: CoatingModel,
+    batch: Batch,
+    found: Solution,
+    check: Callable[[], None] | None = None,
+) -> Solution:
+    """Start rows that stopped at an end of their search once more from well inside it, and bring to
+    rest what is better: a step may have thrown them there, and the way back is easily missed."""
+    rows = np.flatnonzero(found.at_bound.any(axis=1))
+    if not rows.size:
+        return found
+    low, high = model.bounds
+    inside = np.minimum(_WELL_INSIDE, 0.25 * (high - low))
+    offers: list[FloatArray | None] = [None] * found.cost.size
+    for row in rows:
+        moved = np.clip(found.theta[row], low + inside, high - inside)
+        offers[row] = np.where(found.at_bound[row], moved, found.theta[row])[None, :]
+    again = ask_neighbours(model, batch, found, offers, check, follow_all=True)
+    if not (again.cost < found.cost).any():
+        return found
+    return better_of(found, settle(model, batch, again.theta, check))
+
+
 def ask_neighbours(
     model: CoatingModel,
     batch: Batch,
     found: Solution,
     neighbours: Sequence[FloatArray | None],
     check: Callable[[], None] | None = None,
+    *,
+    follow_all: bool = False,
 ) -> Solution:
     """Start once more from other solutions of the same model, (K, P) for each row or None, and keep
     what is better. Of those that start out not far worse than what was found, the best two of each
-    row are followed."""
+    row are followed, or all."""
     size = found.cost.size
     counts = [0 if offer is None else len(offer) for offer in neighbours]
     if not any(counts):
@@ -234,15 +256,14 @@ def ask_neighbours(
     objective = batch.objective(model)
     offers = np.concatenate([offer for offer in neighbours if offer is not None and len(offer)])
     place = np.repeat(np.arange(size), counts)
-    begins = objective.cost(np.clip(offers, low, high), place)
-    chosen = _best_few(begins, place, _OFFERS)
-    chosen = chosen[begins[chosen] < _FAR_OFF * found.cost[place[chosen]]]
-    if not chosen.size:
+    if not follow_all:
+        begins = objective.cost(np.clip(offers, low, high), place)
+        chosen = _best_few(begins, place, _OFFERS)
+        chosen = chosen[begins[chosen] < _FAR_OFF * found.cost[place[chosen]]]
+        offers, place = offers[chosen], place[chosen]
+    if not place.size:
         return found
-    place = place[chosen]
-    again = minimise(
-        objective, offers[chosen], low, high, tolerance=_COMPARE, rows=place, check=check
-    )
+    again = minimise(objective, offers, low, high, tolerance=_COMPARE, rows=place, check=check)
     rows = np.unique(place)
     best = _best_of(again, np.searchsorted(rows, place), rows.size)
     full = Solution(

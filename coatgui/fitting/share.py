@@ -16,7 +16,7 @@ from coatgui.fitting.choice import choose_path, evidence
 from coatgui.fitting.limits import correlation_along, parameter_limits
 from coatgui.fitting.results import build_fit, film_capacitance
 from coatgui.fitting.rules import rule
-from coatgui.fitting.search import Batch, ask_neighbours, search, settle
+from coatgui.fitting.search import Batch, ask_neighbours, search, settle, try_from_inside
 from coatgui.fitting.solver import BoolArray, FloatArray, Solution
 from coatgui.fitting.starts import outline_start
 from coatgui.records import Fit, Spectrum, Trial
@@ -127,6 +127,7 @@ def fit_share(task: Share) -> list[Fit]:
                 continue
             part = batch.rows(place)
             settled = settle(model, part, solutions[model.model_id][group].theta[place])
+            settled = try_from_inside(model, part, settled)
             limits = parameter_limits(model, part, settled)
             for row, where in enumerate(place):
                 i = own[where]

@@ -8,6 +8,7 @@ from dataclasses import dataclass, field, replace
 import numpy as np
 
 from coatgui.intake.behaviour import columns_by_behaviour
+from coatgui.intake.conditions import CONDITIONS, condition, span
 from coatgui.intake.errors import Unclear, Unreadable
 from coatgui.intake.headings import Meaning
 from coatgui.intake.impedance import FREQUENCY_ROLES, way_of
@@ -24,7 +25,8 @@ _UNITS_TAKEN = {"frequency": "Hz", "impedance": "Ω", "admittance": "S", "capaci
 class Extract:
     """One group of columns of one block. `values` are the written numbers (R,) by role, not yet
     multiplied by the factors of `columns`; `lines` (R,) lines
-    of the file. `hours` (R,) and `panels` (R,) are there where columns say so."""
+    of the file. `hours` (R,) and `panels` (R,) are there where columns say so; `conditions` (R,) by
+    role, not yet multiplied, NaN where there is none."""
 
     columns: tuple[Column, ...]
     way: tuple[str, str]
@@ -33,6 +35,7 @@ class Extract:
     said: Said
     hours: FloatArray | None = None
     panels: list[str] | None = None
+    conditions: dict[str, FloatArray] = field(default_factory=dict)
     per_area: bool = False
     hours_in_words: bool = False
     told: bool = False
@@ -49,6 +52,11 @@ class Extract:
             else c
             for c in self.columns
         )
+
+    def span(self, role: str, rows: np.ndarray) -> tuple[float, float] | None:
+        """Lowest and highest of a condition over some rows, in °C or mV."""
+        values = self.conditions.get(role)
+        return None if values is None else span(self.column(role), values[rows])
 
     def scaled(self) -> dict[str, FloatArray]:
         """Values by role in Hz, rad/s, Ω, S, F or rad; logarithms are resolved."""
@@ -96,10 +104,10 @@ def extracts_of(section: Section) -> list[Extract]:
 def _headings_not_understood(section: Section) -> str:
     """A row of words, one over each column, right above the numbers."""
     row = section.between[-1] if section.between else None
-    if row is None or section.block.lines[0] - row.line > 2 or section.block.width < 3:
+    if row is None or section.block.lines[0] - row.line > 2:
         return ""
     words = [cell for cell in row.cells if isinstance(cell, str) and cell]
-    return ", ".join(words) if len(words) >= section.block.width else ""
+    return ", ".join(words) if len(words) >= section.written else ""
 
 
 def _columns(section: Section, group: list[int]) -> tuple[tuple[Column, ...], bool, list[str]]:
@@ -115,8 +123,12 @@ def _columns(section: Section, group: list[int]) -> tuple[tuple[Column, ...], bo
     way = way_of(roles.values())
     frequency = next(role for role in FREQUENCY_ROLES if role in roles.values())
     needed = (frequency, *way)
+    conditions = _conditions(section, roles)
     columns, remarks, areas, taken = [], [], set(), set()
     for i, heading in enumerate(section.headings):
+        if i in conditions:
+            columns.append(conditions[i])
+            continue
         role = roles.get(i, "other")
         what = section.meanings[i]
         if what is None or role == "other" or role in ("panel", "date"):
@@ -137,6 +149,23 @@ def _columns(section: Section, group: list[int]) -> tuple[tuple[Column, ...], bo
     if taken:
         remarks.append(f"No unit is named: {' and '.join(sorted(taken))} were taken.")
     return tuple(columns), areas == {True}, remarks
+
+
+def _conditions(section: Section, roles: Mapping[int, str]) -> dict[int, Column]:
+    """Columns of temperature and potential, the first of each, where a table holds one spectrum at
+    a time."""
+    found: dict[str, Column] = {}
+    if len(section.groups) > 1 or not section.own_headings:
+        return {}
+    below = section.between[-1].cells if section.between else []
+    for i, heading in enumerate(section.headings):
+        # "T/°C" has the letter of a time.
+        if roles.get(i, "other") in ("other", "time"):
+            unit = str(below[i]) if len(below) == len(section.headings) else ""
+            told = condition(heading, unit)
+            if told is not None and told[0] not in found:
+                found[told[0]] = Column(i, heading, told[0], told[1].written, told[1].factor)
+    return {column.position: column for column in found.values()}
 
 
 def _unit(what: Meaning, heading: str, units: Mapping[str, Unit], *, needed: bool) -> Unit | None:
@@ -188,6 +217,7 @@ def extract(section: Section, columns: tuple[Column, ...], said: Said, *, alone:
     if "time" in roles:
         made.hours_in_words = _is_words(block, roles["time"])
         made.hours = _hours(block, columns, roles["time"], rows)
+    made.conditions = {role: table[rows, roles[role]] for role in CONDITIONS if role in roles}
     if "panel" in roles:
         made.panels = _words(block, roles["panel"], rows)
     if "date" in roles and said.moment is None:

@@ -72,8 +72,8 @@ def meaning(heading: str) -> Meaning | None:
 
 def _with_unit(text: str) -> Meaning | None:
     unknown: Meaning | None = None
-    partings = list(_partings(text))
-    for name, unit_text, _ in partings:
+    ways = list(partings(text))
+    for name, unit_text, _ in ways:
         what = _named(name)
         if what is not None:
             with_unit = take_unit(what, unit_text)
@@ -82,7 +82,7 @@ def _with_unit(text: str) -> Meaning | None:
     whole = _named(text)
     if whole is not None:
         return whole
-    for name, unit_text, sure_of_unit in partings:
+    for name, unit_text, sure_of_unit in ways:
         what = _named(name)
         if what is None:
             continue
@@ -112,7 +112,7 @@ def take_unit(what: Meaning, text: str) -> Meaning | None:
     return None if unit is None else replace(what, unit=unit)
 
 
-def _partings(text: str) -> Iterator[tuple[str, str, bool]]:
+def partings(text: str) -> Iterator[tuple[str, str, bool]]:
     """Ways to part a heading into name and unit; the last member says whether the second part can
     be nothing else than a unit or a label."""
     for found in _BRACKETS.finditer(text):

@@ -11,6 +11,7 @@ from datetime import datetime
 import numpy as np
 
 from coatgui.intake.behaviour import phase_factor
+from coatgui.intake.conditions import CONDITIONS
 from coatgui.intake.cut import NOTHING
 from coatgui.intake.errors import NoSpectrum, Unclear, Unreadable
 from coatgui.intake.extract import Extract, extract, extracts_of
@@ -45,6 +46,8 @@ class Piece:
     moment_unsure: bool = False
     per_area: bool = False
     doubts: tuple[str, ...] = ()
+    temperature_span_c: tuple[float, float] | None = None
+    potential_span_mv: tuple[float, float] | None = None
 
 
 @dataclass(frozen=True)
@@ -123,7 +126,7 @@ def _refuse_interruption(before: Extract, after: Extract, section: Section) -> N
     if not words or not before.lines.size or not after.lines.size:
         return
     earlier, later = frequency_of(before.scaled()), frequency_of(after.scaled())
-    if earlier.size < 2 or min(earlier[-1], later[0]) <= 0:
+    if earlier.size < 2 or not all(0 < f < np.inf for f in (*earlier[-2:], later[0])):
         return
     if (later[0] - earlier[-1]) * (earlier[-1] - earlier[-2]) >= 0:
         raise Unreadable(
@@ -138,7 +141,8 @@ def _refuse_broken_end(after: Sequence[TextRow], extracts: Sequence[Extract]) ->
         float(str(first.cells[0]).replace(",", ".")) if first.cells else None
     except ValueError:
         return
-    if extracts and first.cells and first.line == int(extracts[-1].lines[-1]) + 1:
+    lines = extracts[-1].lines
+    if first.cells and lines.size and first.line == int(lines[-1]) + 1:
         raise Unreadable(
             f"Line {first.line} has {len(first.cells)} cells where the table has more: the file "
             "may be cut short; export it again."
@@ -242,6 +246,7 @@ def _cut(
                 said.moment_unsure,
                 made.per_area,
                 doubts,
+                *(made.span(role, rows) for role in CONDITIONS),
             )
         )
     return result

@@ -11,7 +11,15 @@ from typing import Any
 
 from coatgui.shipped import resource
 
-_WITH_PREFIX = ("frequency", "angular_frequency", "impedance", "admittance", "capacitance", "angle")
+_WITH_PREFIX = (
+    "frequency",
+    "angular_frequency",
+    "impedance",
+    "admittance",
+    "capacitance",
+    "angle",
+    "potential",
+)
 _TIMES_AREA = re.compile(r"[\s*·.×x]*(c?m)\s*\^?2$")
 _PER_AREA = re.compile(r"(?:/\s*\(?|[\s*·.×x]*)(c?m)\s*\^?(-?)2\)?$")
 _SQUARE_METRE_IN_CM2 = 1e4
@@ -19,8 +27,8 @@ _SQUARE_METRE_IN_CM2 = 1e4
 
 @dataclass(frozen=True, slots=True)
 class Unit:
-    """`factor` turns a written number into Hz, rad/s, Ω, S, F, rad or h; where `per_area`, into
-    Ω cm², S/cm² or F/cm². `sure` is False where "m" may stand for milli or mega."""
+    """`factor` turns a written number into Hz, rad/s, Ω, S, F, rad, h, °C (or K) or mV; where
+    `per_area`, into Ω cm², S/cm² or F/cm². `sure` is False where "m" may be milli or mega."""
 
     kind: str
     written: str
@@ -43,7 +51,10 @@ def kind_of(role: str) -> str:
         return "angle"
     if role.startswith(("admittance", "capacitance")):
         return role.split("_")[0]
-    return role if role in ("frequency", "angular_frequency", "time") else ""
+    if role.startswith(("parallel", "series")):
+        return "capacitance" if role.endswith("capacitance") else "impedance"
+    own = ("frequency", "angular_frequency", "time", "temperature", "potential")
+    return role if role in own else ""
 
 
 @lru_cache(maxsize=5000)

@@ -39,6 +39,8 @@ class Reading:
     `left_out` and `kept_in` are places of points: those a person takes out, and those a person
     keeps although the checks suggest leaving them out. `pinned_model` names a coating model that a
     person insists on. `overruled_because` is a person's reason for using a rejected reading.
+    `temperature_span_c` and `potential_span_mv` are the lowest and the highest within the sweep,
+    where the file gives them point by point.
     """
 
     reading_id: str
@@ -54,6 +56,8 @@ class Reading:
     kept_in: tuple[int, ...] = ()
     pinned_model: str = ""
     overruled_because: str = ""
+    temperature_span_c: tuple[float, float] | None = None
+    potential_span_mv: tuple[float, float] | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -74,7 +78,8 @@ class Settings:
     leads or that input. `own_models` are coating models as JSON texts, in the form of
     `resources/models.toml`. `limits` on any quantity stand beside `criteria`; `comparisons` and
     `projections` are what is asked beyond the usual. `electrolytes` and `regimes` stand beside the
-    program's own or, under the same id, in place of them."""
+    program's own or, under the same id, in place of them. `uptake_from_high_frequency`: the water
+    uptake rests on the capacitance measured at the high frequency, whatever the circuits say."""
 
     temperature_c: float = 25.0
     modulus_frequencies_hz: tuple[float, ...] = (0.1, 0.01)
@@ -91,6 +96,7 @@ class Settings:
     projections: tuple[ProjectionWanted, ...] = ()
     electrolytes: tuple[Electrolyte, ...] = ()
     regimes: tuple[Regime, ...] = ()
+    uptake_from_high_frequency: bool = False
 
 
 @dataclass(frozen=True, slots=True)

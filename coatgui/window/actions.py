@@ -39,8 +39,8 @@ ACTIONS = (
           "HTML", "write_summary", "campaign"),
     Entry("Campaign", "Write data (JSON)…", "", "Write the assessment as data for scripts",
           "write_data", "campaign"),
-    Entry("Campaign", "Save the plot…", "Ctrl+Shift+P", "As SVG or PNG, on white", "save_picture",
-          "campaign"),
+    Entry("Campaign", "Save the plot…", "Ctrl+Shift+P", "As SVG, PDF or PNG, on white, as wide as "
+          "you say", "save_picture", "campaign"),
     Entry("Campaign", "Keep copies in a folder…", "", "Copies are made as the work goes on, and "
           "kept by their age", "choose_copies_folder"),
     Entry("Campaign", "Keep copies beside the campaign", "", "In a folder named after it",
@@ -84,6 +84,8 @@ ACTIONS = (
           "campaign"),
     Entry("View", "Where does this number come from?", "Ctrl+H", "From the file to the number",
           "show_origin", "campaign"),
+    Entry("View", "Data of the plots as a table", "Ctrl+T", "In a window beside, to be read or "
+          "read out", "show_table", "campaign"),
     Entry("View", "Ratings and photographs", "Ctrl+R", "What was seen on this panel", "show_seen",
           "campaign"),
     Entry("View", "History", "Ctrl+Shift+H", "What was done, by whom and when", "show_history",

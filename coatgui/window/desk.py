@@ -445,4 +445,14 @@ class Desk(QObject):
         def written(where: Path) -> None:
             self.told.emit(f"Written: {where.name}")
 
-        self._start(written, work.export_to, self.assessment, self.campaign, path)
+        judged = (self.assessment, self.campaign, self.photographs())
+        self._start(written, work.export_to, *judged, path)
+
+    def photographs(self) -> dict[str, bytes]:
+        """The bytes of the campaign's photographs by their SHA-256; where the file no longer gives
+        them, that is said."""
+        try:
+            return {} if self.file is None else self.file.photographs()
+        except CampaignFileError as error:
+            self.failed.emit(str(error))
+            return {}

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
 from dataclasses import replace
@@ -9,8 +10,29 @@ from pathlib import Path
 from typing import Any
 
 import pyqtgraph as pg
-from PySide6.QtCore import QBuffer, QByteArray, QIODevice, QPoint, QRect, QRectF, QSize, Qt
-from PySide6.QtGui import QColor, QFont, QImage, QPainter, QPen, QRegion
+from PySide6.QtCore import (
+    QBuffer,
+    QByteArray,
+    QIODevice,
+    QMarginsF,
+    QPoint,
+    QRect,
+    QRectF,
+    QSize,
+    QSizeF,
+    Qt,
+)
+from PySide6.QtGui import (
+    QColor,
+    QFont,
+    QImage,
+    QPageLayout,
+    QPageSize,
+    QPainter,
+    QPdfWriter,
+    QPen,
+    QRegion,
+)
 from PySide6.QtSvg import QSvgGenerator
 from PySide6.QtWidgets import QWidget
 
@@ -23,6 +45,9 @@ from coatgui.window.palette import Colours
 _CAPTION = 28
 # A picture has this many pixels for each on the screen, which is print quality for a half page.
 SCALE = 3
+LEAST_MM, MOST_MM = 40.0, 420.0
+_DOTS = 300  # to the inch, of a picture as wide as is asked
+_INCH_MM = 25.4
 
 
 def on_white() -> Colours:
@@ -97,20 +122,44 @@ def _draw(painter: QPainter, widgets: Sequence[QWidget], caption: str, scale: fl
                 painter.restore()
 
 
-def picture(widgets: Sequence[QWidget], caption: str) -> QImage:
+def picture(widgets: Sequence[QWidget], caption: str, scale: float = SCALE) -> QImage:
     """The widgets as they stand beside one another, under a caption."""
     area = _area(widgets)
-    image = QImage(
-        area.width() * SCALE, (area.height() + _CAPTION) * SCALE, QImage.Format.Format_RGB32
-    )
+    size = QSize(round(area.width() * scale), round((area.height() + _CAPTION) * scale))
+    image = QImage(size, QImage.Format.Format_RGB32)
     painter = QPainter(image)
-    _draw(painter, widgets, caption, SCALE)
+    _draw(painter, widgets, caption, scale)
     painter.end()
     return image
 
 
-def drawing(widgets: Sequence[QWidget], caption: str) -> bytes:
-    """The same as SVG."""
+def page(widgets: Sequence[QWidget], caption: str, width_mm: float) -> bytes:
+    """The same as a PDF of one page, so wide."""
+    area = _area(widgets)
+    high = width_mm * (area.height() + _CAPTION) / area.width()
+    held = QByteArray()
+    buffer = QBuffer(held)
+    buffer.open(QIODevice.OpenModeFlag.WriteOnly)
+    writer = QPdfWriter(buffer)
+    size = QPageSize(
+        QSizeF(width_mm, high), QPageSize.Unit.Millimeter, "", QPageSize.SizeMatchPolicy.ExactMatch
+    )
+    writer.setPageLayout(QPageLayout(size, QPageLayout.Orientation.Portrait, QMarginsF(0, 0, 0, 0)))
+    writer.setTitle(caption)
+    writer.setCreator("coatgui")
+    # The axes measure their text at the screen's resolution.
+    writer.setResolution(widgets[0].logicalDpiX())
+    painter = QPainter(writer)
+    wide = writer.width() / area.width()
+    painter.scale(wide, wide)
+    _draw(painter, widgets, caption, 1.0)
+    painter.end()
+    buffer.close()
+    return bytes(held.data())
+
+
+def drawing(widgets: Sequence[QWidget], caption: str, width_mm: float | None = None) -> bytes:
+    """The same as SVG, so wide, or as wide as on the screen."""
     area = _area(widgets)
     size = QSize(area.width(), area.height() + _CAPTION)
     held = QByteArray()
@@ -127,20 +176,36 @@ def drawing(widgets: Sequence[QWidget], caption: str) -> bytes:
     _draw(painter, widgets, caption, 1.0)
     painter.end()
     buffer.close()
-    return bytes(held.data())
+    if width_mm is None:
+        return bytes(held.data())
+    high = width_mm * size.height() / size.width()
+    told = f'width="{width_mm:g}mm" height="{high:.4g}mm"'.encode()
+    return re.sub(rb'width="[^"]*mm" height="[^"]*mm"', told, bytes(held.data()), count=1)
 
 
-def save(widgets: Sequence[QWidget], caption: str, path: Path) -> None:
-    """Write a picture, as SVG or PNG by the ending; whole or not at all. Raises OSError."""
-    if path.suffix.lower() == ".svg":
-        content = drawing(widgets, caption)
-    else:
-        held = QByteArray()
-        buffer = QBuffer(held)
-        buffer.open(QIODevice.OpenModeFlag.WriteOnly)
-        picture(widgets, caption).save(buffer, "PNG")  # type: ignore[call-overload]
-        buffer.close()
-        content = bytes(held.data())
+def save(
+    widgets: Sequence[QWidget], caption: str, path: Path, width_mm: float | None = None
+) -> None:
+    """Write a picture, as SVG, PDF or PNG by the ending; whole or not at all. `width_mm` None: as
+    wide as on the screen. Raises OSError."""
+    wide = _area(widgets).width()
+    mm = width_mm or wide / widgets[0].logicalDpiX() * _INCH_MM
+    match path.suffix.lower():
+        case ".svg":
+            content = drawing(widgets, caption, width_mm)
+        case ".pdf":
+            content = page(widgets, caption, mm)
+        case _:
+            scale = SCALE if width_mm is None else width_mm / _INCH_MM * _DOTS / wide
+            image = picture(widgets, caption, scale)
+            for set_dots in (image.setDotsPerMeterX, image.setDotsPerMeterY):
+                set_dots(round(image.width() / mm * 1000))
+            held = QByteArray()
+            buffer = QBuffer(held)
+            buffer.open(QIODevice.OpenModeFlag.WriteOnly)
+            image.save(buffer, "PNG")  # type: ignore[call-overload]
+            buffer.close()
+            content = bytes(held.data())
     write_whole(path, lambda file: file.write(content))
 
 

@@ -4,12 +4,14 @@ from __future__ import annotations
 
 from collections.abc import Callable
 
-from PySide6.QtWidgets import QApplication, QWidget
+from PySide6.QtWidgets import QApplication, QInputDialog, QWidget
 
+from coatgui.window.data_table import DataTable
 from coatgui.window.desk import Desk
-from coatgui.window.figure import as_text, on_white, picture, save
+from coatgui.window.figure import LEAST_MM, MOST_MM, as_text, on_white, picture, save
 from coatgui.window.file_actions import FileActions
 from coatgui.window.places.place import Place
+from coatgui.window.typed import typed
 from coatgui.window.welcome import Trouble
 
 
@@ -35,6 +37,28 @@ class FigureActions:
         finally:
             place.paint_in(tone)
 
+    def _width_mm(self) -> float | None:
+        """How wide the picture shall be: asked, with the last answer suggested."""
+        last = str(self.files.settings.value("picture_mm", "160"))
+        told = last
+        while True:
+            told, given = QInputDialog.getText(
+                self._open_place(),
+                "Width of the picture",
+                f"Width in mm, from {LEAST_MM:g} to {MOST_MM:g}; its height follows:",
+                text=told,
+            )
+            if not given:
+                return None
+            try:
+                width = typed(told.removesuffix("mm"), "")
+            except ValueError as error:
+                self.trouble.say(str(error))
+                continue
+            if LEAST_MM <= width <= MOST_MM:
+                self.files.settings.setValue("picture_mm", f"{width:g}")
+                return width
+
     def copy_picture(self) -> None:
         def copy(widgets: list[QWidget], caption: str) -> None:
             QApplication.clipboard().setImage(picture(widgets, caption))
@@ -43,19 +67,35 @@ class FigureActions:
         self._on_paper(copy)
 
     def save_picture(self) -> None:
-        path = self.files.to_write("Picture", "Drawing (*.svg);;Picture (*.png)", ".svg")
-        if path is None:
+        if not self._open_place().figure():
+            self._on_paper(lambda *_: None)  # says so
+            return
+        kinds = "Drawing (*.svg);;Page (*.pdf);;Picture (*.png)"
+        path = self.files.to_write("Picture", kinds, ".svg")
+        width_mm = None if path is None else self._width_mm()
+        if path is None or width_mm is None:
             return
 
         def write(widgets: list[QWidget], caption: str) -> None:
             try:
-                save(widgets, caption, path)
+                save(widgets, caption, path, width_mm)
             except OSError as error:
                 self.trouble.say(f"{path.name} could not be written: {error.strerror}.")
             else:
                 self.desk.told.emit(f"Written: {path.name}")
 
         self._on_paper(write)
+
+    def show_table(self) -> None:
+        """The data behind the plots of the open place, as a table in a window beside."""
+        place = self._open_place()
+        rows = place.data_rows()
+        if len(rows) < 2:
+            self.trouble.say("There are no data here to show: go to Map, Reading or Course.")
+            return
+        table = DataTable(rows, place.caption() or place.noun, place.window())
+        table.show()
+        table.view.setFocus()
 
     def copy_table(self) -> None:
         rows = self._open_place().data_rows()

@@ -10,7 +10,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from PySide6.QtCore import QPointF, QRectF, QSize, Qt, Signal
 from PySide6.QtGui import (
@@ -77,15 +77,18 @@ def section_of(
     known: ReadingAssessment | None,
     panel: Panel | None,
     models: Mapping[str, CoatingModel] | None = None,
+    before: ReadingAssessment | None = None,
 ) -> Section | None:
     """The section of a reading, or None where it was not fitted. `models` are those of the campaign
-    by id, None for the catalogue's alone; one of them that was just removed is not drawn."""
+    by id, None for the catalogue's alone; one of them that was just removed is not drawn. `before`
+    is the panel's reading that values are held against."""
     if known is None or known.fit is None:
         return None
     by_symbol = {p.symbol: p.quantity for p in known.parameters}
     model = (catalogue() if models is None else models).get(known.fit.model)
     if model is None:
         return None
+    earlier = _values(before)
     bands = [Band("solution", "Solution", _lines(("R_s", by_symbol.get("R_s"))))]
     films = [(i, layer) for i, layer in enumerate(model.layers, 1) if layer.role != "interface"]
     for place, layer in films:
@@ -95,7 +98,7 @@ def section_of(
                 for p in known.parameters
                 if p.layer == place and p.symbol[0] in "CQR"
             ]
-            bands.append(Band("film", _ROLES[layer.role][1], _lines(*own)))
+            bands.append(Band("film", _ROLES[layer.role][1], _lines(*own, earlier=earlier)))
             continue
         thickness = f", {panel.thickness_um:g} µm" if panel and panel.thickness_um else ""
         water = known.water_uptake.quantity if known.water_uptake else None
@@ -107,6 +110,7 @@ def section_of(
                     ("C", known.coating_capacitance),
                     ("water", water),
                     ("R_po", known.pore_resistance or by_symbol.get("R_po")),
+                    earlier=earlier,
                 ),
             )
         )
@@ -116,7 +120,7 @@ def section_of(
             for symbol in ("C_dl", "R_ct", "σ", "R_D")
             if symbol in by_symbol
         ]
-        bands.append(Band("interface", "Interface", _lines(*wanted)))
+        bands.append(Band("interface", "Interface", _lines(*wanted, earlier=earlier)))
     substrate = panel.substrate if panel and panel.substrate else "metal"
     bands.append(Band("metal", substrate[:1].upper() + substrate[1:]))
     pore = (known.pore_resistance or by_symbol.get("R_po")) if films else None
@@ -126,6 +130,10 @@ def section_of(
         width = min(max(share, 0.0), 1.0)
     water_value = known.water_uptake.quantity.value if known.water_uptake else None
     reaction = by_symbol.get("R_ct")
+    if before is not None and any(_CHANGED in line for band in bands for line in band.lines):
+        bands[0] = replace(
+            bands[0], lines=(*bands[0].lines, f"{_CHANGED} change since {before.exposure_h:g} h")
+        )
     return Section(
         tuple(bands),
         width,
@@ -154,10 +162,48 @@ def section_of_model(model: CoatingModel, picked: int) -> Section:
     return Section(tuple(bands), 0.4 if pore else None, reacts=reacts, picked=picked)
 
 
-def _lines(*named: tuple[str, Quantity | None]) -> tuple[str, ...]:
-    return tuple(f"{name} {said(quantity)}" for name, quantity in named if quantity is not None)
+def _values(known: ReadingAssessment | None) -> dict[str, Quantity]:
+    """What a reading's section tells, by the names it stands under."""
+    if known is None or known.fit is None:
+        return {}
+    found = {p.symbol: p.quantity for p in known.parameters}
+    for name, quantity in (
+        ("C", known.coating_capacitance),
+        ("water", known.water_uptake.quantity if known.water_uptake else None),
+        ("R_po", known.pore_resistance),
+    ):
+        if quantity is not None:
+            found[name] = quantity
+    return found
 
 
+def _lines(
+    *named: tuple[str, Quantity | None], earlier: Mapping[str, Quantity] | None = None
+) -> tuple[str, ...]:
+    return tuple(
+        f"{name} {said(quantity)}{change(quantity, (earlier or {}).get(name))}"
+        for name, quantity in named
+        if quantity is not None
+    )
+
+
+def change(now: Quantity, before: Quantity | None) -> str:
+    """How a value changed, in a few characters; nothing where one of both is only a bound, or they
+    are of different kinds."""
+    if before is None or {now.bound, before.bound} != {Bound.TWO_SIDED} or now.unit != before.unit:
+        return ""
+    if not now.value or not before.value or now.value < 0 or before.value < 0:
+        return ""
+    ratio = now.value / before.value
+    if ratio >= 2.0:
+        return f"  {_CHANGED}×{ratio:.3g}"
+    if ratio <= 0.5:
+        return f"  {_CHANGED}÷{1 / ratio:.3g}"
+    percent = f"{100 * (ratio - 1):+.0f}".replace("-", "−")
+    return f"  {_CHANGED}{percent} %" if percent not in ("+0", "−0") else f"  {_CHANGED}0 %"
+
+
+_CHANGED = "Δ"
 _WEIGHTS = {"solution": 1.0, "film": 2.0, "interface": 1.3, "metal": 0.9}
 
 

@@ -29,7 +29,7 @@ from coatgui.shipped import sample_panels
 CODES = {
     "same_numbers", "temperature_apart", "potential_apart", "same_time", "exposure_time_suspected",
     "panel_suspected", "unit_suspected", "amplitude_large", "interface_capacitance_unphysical",
-    "permittivity_implausible",
+    "permittivity_implausible", "temperature_drift", "potential_drift",
 }  # fmt: skip
 
 
@@ -173,6 +173,24 @@ def test_temperature_and_potential_apart_are_named(
     }
     assert "29 °C" in found[("M1", 8)][0].text
     assert found[("M1", 24)][0].severity is Severity.NOTE
+
+
+def test_what_ran_within_a_sweep_is_named(
+    campaign: Campaign, suspected: Callable[[Campaign], Suspected]
+) -> None:
+    warm = replace(reading(campaign, "M1", 24), temperature_span_c=(22.5, 25.0))
+    restless = replace(reading(campaign, "P4", 672), potential_span_mv=(-640.0, -605.0))
+    behind_a_barrier = replace(reading(campaign, "K1", 24), potential_span_mv=(-300.0, -200.0))
+    found = suspected(changed(campaign, warm, restless, behind_a_barrier))
+    said = {key: [(f.code, f.severity) for f in those] for key, those in found.items()}
+    assert said == {
+        ("M1", 24): [("temperature_drift", Severity.DOUBT)],
+        ("P4", 672): [("potential_drift", Severity.DOUBT)],
+        ("K1", 24): [("potential_drift", Severity.NOTE)],
+    }
+    assert "between 22.5 and 25 °C" in found[("M1", 24)][0].text
+    steady = replace(warm, temperature_span_c=(22.5, 23.0), potential_span_mv=(-520.0, -515.0))
+    assert suspected(changed(campaign, steady)) == {}
 
 
 def test_the_amplitude_is_held_against_what_the_spectrum_shows(

@@ -2,6 +2,7 @@
 
 import sqlite3
 from contextlib import closing
+from dataclasses import replace
 from pathlib import Path
 from random import Random
 
@@ -42,7 +43,11 @@ def test_files_of_every_version_are_recovered(
     told = recover(path, tmp_path / "recovered.coatgui")
     assert told.readings == len(campaign.readings)
     with CampaignFile.open(tmp_path / "recovered.coatgui") as again:
-        assert again.campaign.readings == campaign.readings
+        known = version == "version_3"
+        assert again.campaign.readings == tuple(
+            r if known else replace(r, temperature_span_c=None, potential_span_mv=None)
+            for r in campaign.readings
+        )
         assert again.campaign.settings.criteria == campaign.settings.criteria
 
 

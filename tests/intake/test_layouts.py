@@ -51,8 +51,9 @@ def test_other_columns_are_left_alone() -> None:
     assert is_z(piece)
     assert piece.exposure_h is None  # a clock, not an exposure
     assert [c.role for c in piece.dialect.columns] == [
-        "other", "time", "frequency", "other", "real", "imaginary", "other"
+        "other", "time", "frequency", "potential", "real", "imaginary", "other"
     ]  # fmt: skip
+    assert piece.potential_span_mv == (200.0, 200.0)
 
 
 def test_columns_without_headings() -> None:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Callable
 from pathlib import Path
 from xml.etree import ElementTree
@@ -13,10 +14,11 @@ pytest.importorskip("PySide6")
 
 from PySide6.QtCore import Qt, QTimer
 from PySide6.QtGui import QColor, QImage
-from PySide6.QtTest import QTest
-from PySide6.QtWidgets import QApplication, QFileDialog, QLineEdit
+from PySide6.QtTest import QAbstractItemModelTester, QTest
+from PySide6.QtWidgets import QApplication, QFileDialog, QInputDialog, QLineEdit
 
 from coatgui.window import palette
+from coatgui.window.data_table import DataTable
 from coatgui.window.figure import SCALE, as_text
 from coatgui.window.main_window import MainWindow
 
@@ -64,19 +66,52 @@ def test_a_picture_is_copied_on_white(full: MainWindow, place: int) -> None:
     assert after.pixelColor(3, 3) == before.pixelColor(3, 3)
 
 
+def name_and_width(path: Path, width: str) -> None:
+    """Answer both dialogues when they stand: the name, and then how wide."""
+
+    def answer() -> None:
+        dialog = QApplication.activeModalWidget()
+        if dialog is None:
+            QTimer.singleShot(20, answer)
+        elif isinstance(dialog, QFileDialog):
+            edits = dialog.findChildren(QLineEdit)
+            edit = next(e for e in edits if e.objectName() == "fileNameEdit")
+            edit.setText(str(path))
+            QTimer.singleShot(20, answer)
+            QTest.keyClick(edit, Qt.Key.Key_Return)
+        else:
+            assert isinstance(dialog, QInputDialog)
+            dialog.setTextValue(width)
+            dialog.accept()
+
+    QTimer.singleShot(100, answer)
+
+
+def test_a_plot_is_as_wide_as_is_asked(full: MainWindow, tmp_path: Path) -> None:
+    full.go(1)
+    for ending, width in ((".svg", "90"), (".png", "120 mm"), (".pdf", "84,5")):
+        path = tmp_path / f"spectrum{ending}"
+        name_and_width(path, width)
+        press(full, Qt.Key.Key_P)
+        assert path.exists()
+    root = ElementTree.fromstring((tmp_path / "spectrum.svg").read_text(encoding="utf-8"))
+    assert root.get("width") == "90mm"
+    image = QImage(str(tmp_path / "spectrum.png"))
+    assert image.width() == pytest.approx(120 / 25.4 * 300, abs=1)
+    assert image.dotsPerMeterX() == pytest.approx(300 / 0.0254, rel=0.01)
+    content = (tmp_path / "spectrum.pdf").read_bytes()
+    (box,) = re.findall(rb"/MediaBox \[0 0 ([0-9.]+) ([0-9.]+)\]", content)
+    assert float(box[0]) == pytest.approx(84.5 / 25.4 * 72, abs=1)
+    assert float(box[1]) / float(box[0]) == pytest.approx(image.height() / image.width(), rel=0.01)
+    assert full.settings.value("picture_mm") == "84.5"
+
+
 @pytest.mark.parametrize("ending", [".svg", ".png"])
 def test_a_plot_is_saved(full: MainWindow, tmp_path: Path, ending: str) -> None:
     full.go(1)
     path = tmp_path / f"spectrum{ending}"
 
-    def answer() -> None:
-        dialog = QApplication.activeModalWidget()
-        assert isinstance(dialog, QFileDialog)
-        edit = next(e for e in dialog.findChildren(QLineEdit) if e.objectName() == "fileNameEdit")
-        edit.setText(str(path))
-        QTest.keyClick(edit, Qt.Key.Key_Return)
-
-    QTimer.singleShot(100, answer)
+    name_and_width(path, "160")
     press(full, Qt.Key.Key_P)
     assert path.exists()
     if ending == ".png":
@@ -98,6 +133,7 @@ def test_a_picture_that_cannot_be_written_is_said(full: MainWindow, tmp_path: Pa
 
     original = file_actions.file_to_write
     file_actions.file_to_write = lambda *_: tmp_path / "no such folder" / "a.svg"
+    name_and_width(tmp_path, "160")
     try:
         full.figures.save_picture()
     finally:
@@ -136,3 +172,35 @@ def test_where_there_is_no_plot_it_is_said(full: MainWindow) -> None:
 
 def test_names_cannot_shift_cells() -> None:
     assert as_text([["a\tb\nc", None, 0.1]]) == "a b c\t\t0.1\n"
+
+
+@pytest.mark.parametrize("noun", ["Map", "Reading", "Course", "Water"])
+def test_every_plot_has_its_data_in_a_table_beside(full: MainWindow, noun: str) -> None:
+    full.go_to(noun)
+    full.activateWindow()
+    assert QTest.qWaitForWindowActive(full)
+    QTest.keyClick(full, Qt.Key.Key_T, Qt.KeyboardModifier.ControlModifier)
+    table = next(w for w in QApplication.topLevelWidgets() if isinstance(w, DataTable))
+    assert not table.isModal()
+    assert table.view.accessibleName().startswith("Data of ")
+    QAbstractItemModelTester(table.model, QAbstractItemModelTester.FailureReportingMode.Fatal)
+    rows = full.open_place().data_rows()
+    assert table.model.rowCount() == len(rows) - 1 > 0
+    assert table.model.columnCount() == max(len(row) for row in rows)
+    shown = table.model.index(0, 0).data()
+    first = rows[1][0]
+    assert shown == (f"{first:.6g}" if isinstance(first, float) else str(first))
+    QTest.keyClick(table.view, Qt.Key.Key_C, Qt.KeyboardModifier.ControlModifier)
+    table.close()
+
+
+def test_any_table_is_copied(full: MainWindow) -> None:
+    full.go_to("Reading")
+    table = full.open_place().table  # type: ignore[attr-defined]
+    table.setFocus()
+    QTest.keyClick(table, Qt.Key.Key_C, Qt.KeyboardModifier.ControlModifier)
+    rows = [line.split("\t") for line in QApplication.clipboard().text().splitlines()]
+    assert rows[0] == ["parameter", "value (95 % limits)"]
+    assert [row[0] for row in rows[1:]] == [
+        table.item(i, 0).text() for i in range(table.rowCount())
+    ]

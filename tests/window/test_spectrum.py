@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import replace
 from itertools import pairwise
 
 import numpy as np
@@ -15,11 +16,11 @@ from PySide6.QtGui import QMouseEvent
 from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QApplication
 
-from coatgui.records import Bound, ReadingAssessment
+from coatgui.records import Bound, Quantity, ReadingAssessment
 from coatgui.window import palette
 from coatgui.window.main_window import MainWindow
 from coatgui.window.places.reading_place import OTHER_TIMES, REPLICATES, ReadingPlace
-from coatgui.window.section import SectionView, section_of
+from coatgui.window.section import SectionView, change, section_of
 
 Wait = Callable[[Callable[[], bool]], None]
 
@@ -175,3 +176,39 @@ def test_the_section_keeps_its_words_inside(sample: MainWindow) -> None:
             assert all(a.bottom() <= b.top() + 0.01 for a, b in pairwise(areas))
             assert not view.grab().isNull()
     view.deleteLater()
+
+
+def test_the_section_says_how_its_values_changed(sample: MainWindow) -> None:
+    now, before = known(sample, "P2", 672), known(sample, "P2", 504)
+    assert now.fit is not None
+    section = section_of(now, None, None, before)
+    assert section is not None
+    words = section.in_words()
+    assert "Δ change since 504 h" in words
+    pores = now.pore_resistance, before.pore_resistance
+    assert pores[0] is not None
+    assert pores[0].value is not None
+    assert pores[1] is not None
+    assert pores[1].value is not None
+    percent = 100 * (pores[0].value / pores[1].value - 1)
+    line = next(line for band in section.bands for line in band.lines if line.startswith("R_po"))
+    assert line.endswith(f"Δ{percent:+.0f} %".replace("-", "−")) or "÷" in line or "×" in line
+    plain = section_of(now, None)
+    assert plain is not None
+    assert "Δ" not in plain.in_words()
+    # In the place itself the last reading before this one is meant.
+    sample.go_to("Reading")
+    sample.desk.select(now.reading_id)
+    shown = sample.open_place().section.accessibleDescription()  # type: ignore[attr-defined]
+    assert "Δ change since 504 h" in shown
+
+
+def test_only_what_both_readings_fix_is_said_to_have_changed() -> None:
+    both = Quantity(2.0e9, 1.9e9, 2.1e9, Bound.TWO_SIDED, "Ω cm²")
+    less = replace(both, value=1.0e9)
+    assert change(less, both).strip() == "Δ÷2"
+    assert change(replace(both, value=2.2e9), both).strip() == "Δ+10 %"
+    assert change(replace(both, value=1.9e9), both).strip() == "Δ−5 %"
+    assert change(replace(both, bound=Bound.AT_LEAST), both) == ""
+    assert change(both, None) == ""
+    assert change(replace(both, unit="Ω"), both) == ""

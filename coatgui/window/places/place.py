@@ -48,6 +48,7 @@ class EmptyPage(QWidget):
         row.addStretch(1)
         self.button = QPushButton()
         self.button.setObjectName("first")
+        self.button.setAccessibleName("What can be done about it")
         self.button.clicked.connect(lambda _checked=False: self._call and self._call())
         row.addWidget(self.button)
         row.addStretch(1)

@@ -23,7 +23,7 @@ from PySide6.QtWidgets import (
 
 from coatgui.campaign import operations
 from coatgui.fitting.views import FitBand, Part
-from coatgui.records import Reading, ReadingAssessment
+from coatgui.records import Assessment, Reading, ReadingAssessment
 from coatgui.window.composing import Composing
 from coatgui.window.desk import Desk
 from coatgui.window.fit_drawn import band_of, between, parts_of
@@ -117,6 +117,8 @@ class ReadingPlace(Place):
         self.trials.hide()
         self.column.addWidget(self.trials)
         self.toggling: list[int] = []
+        self._panels_of: Assessment | None = None  # whose fitted readings these are, by panel
+        self._fitted: dict[str, list[ReadingAssessment]] = {}
 
     def _side(self, tone: Colours) -> QStackedWidget:
         shown = QWidget()
@@ -155,7 +157,8 @@ class ReadingPlace(Place):
             panel = next(
                 (p for p in self.desk.campaign.panels if p.panel_id == reading.panel_id), None
             )
-        self.section.show_section(section_of(known, panel, models(self.desk.campaign)), self.tone)
+        section = section_of(known, panel, models(self.desk.campaign), self._before(known))
+        self.section.show_section(section, self.tone)
         self.section.setVisible(self.section.section is not None)
         self._say(reading, known)
         self._tabulate(known)
@@ -167,6 +170,20 @@ class ReadingPlace(Place):
         self._draw_beside_fit()
         self.picker.offer(reading)
 
+    def _before(self, known: ReadingAssessment | None) -> ReadingAssessment | None:
+        """The last reading of the same panel before this one that was fitted."""
+        assessment = self.desk.assessment
+        if known is None or assessment is None:
+            return None
+        if self._panels_of is not assessment:
+            self._panels_of, self._fitted = assessment, {}
+            for each in assessment.readings:
+                if each.fit is not None:
+                    self._fitted.setdefault(each.panel_id, []).append(each)
+        own = self._fitted.get(known.panel_id, ())
+        earlier = [r for r in own if r.exposure_h < known.exposure_h]
+        return max(earlier, key=lambda r: r.exposure_h, default=None)
+
     def _show_trials(self) -> None:
         if self.tried.isChecked():
             known, known_models = self.desk.reading_assessment(), models(self.desk.campaign)
@@ -176,6 +193,8 @@ class ReadingPlace(Place):
 
     def _beside_fit(self, frequency_hz: np.ndarray) -> tuple[FitBand | None, tuple[Part, ...]]:
         """The band and the parts that are asked for, of the fit that is shown."""
+        if not self.band.isChecked() and not self.parts.isChecked():
+            return None, ()
         known, campaign = self.desk.reading_assessment(), self.desk.campaign
         fit = known.fit if known else None
         model = models(campaign).get(fit.model) if fit else None
