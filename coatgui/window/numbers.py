@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from functools import lru_cache
 
 from coatgui.records import Bound, Quantity
 
@@ -17,6 +18,7 @@ WORDS = {
 }
 
 
+@lru_cache(maxsize=4096)  # the words of ticks come again and again
 def prefixed(value: float, unit: str, digits: int = 3) -> str:
     """A number with an engineering prefix: 1.31 nF/cm², 10 mHz."""
     if value == 0 or not math.isfinite(value):

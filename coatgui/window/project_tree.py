@@ -32,6 +32,13 @@ class _View(QTreeView):
         super().__init__()
         self._remove = remove
 
+    def drawBranches(
+        self, painter: QPainter, rect: QRect, index: QModelIndex | QPersistentModelIndex
+    ) -> None:
+        node = index.internalPointer()
+        if node is None or node.kind != "reading":  # which have no arrow, and are most rows
+            super().drawBranches(painter, rect, index)
+
     def keyPressEvent(self, event: QKeyEvent) -> None:
         if event.key() == Qt.Key.Key_Delete:
             self._remove()

@@ -27,8 +27,14 @@ class Still(QWidget):
 
     def fit(self) -> None:
         self.label.ensurePolished()
-        least = math.ceil(self._lines * QFontMetricsF(self.label.font()).lineSpacing()) + 2
-        self.setFixedHeight(max(least, self.label.heightForWidth(max(self.width(), 200))))
+        metrics = QFontMetricsF(self.label.font())
+        least = math.ceil(self._lines * metrics.lineSpacing()) + 2
+        width = max(self.width(), 200)
+        # Laying out the words takes long; mostly it is plain that they fit.
+        if metrics.horizontalAdvance(self.label.text()) <= (self._lines - 0.15) * width:
+            self.setFixedHeight(least)
+        else:
+            self.setFixedHeight(max(least, self.label.heightForWidth(width)))
 
     def resizeEvent(self, event: QResizeEvent) -> None:
         super().resizeEvent(event)

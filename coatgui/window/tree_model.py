@@ -178,7 +178,7 @@ class TreeModel(QAbstractItemModel):
         return QModelIndex() if node is None else self.createIndex(node.row, 0, node)
 
     def node(self, index: Index) -> Node:
-        return (index.internalPointer() if index.isValid() else None) or self._root
+        return index.internalPointer() or self._root  # an invalid index has none
 
     def index(self, row: int, column: int, parent: Index = QModelIndex()) -> QModelIndex:  # noqa: B008
         children = self.rows_of(self.node(parent))
