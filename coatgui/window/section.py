@@ -204,6 +204,7 @@ def change(now: Quantity, before: Quantity | None) -> str:
 
 
 _CHANGED = "Δ"
+_DRAWN, _GAP = 0.30, 12.0  # the drawing's share of the width, and the words' distance from it
 _WEIGHTS = {"solution": 1.0, "film": 2.0, "interface": 1.3, "metal": 0.9}
 
 
@@ -235,7 +236,7 @@ class SectionView(QWidget):
         if self.section is None:
             return []
         line = QFontMetricsF(self._font(11)).height() + 1
-        needed = [max(22.0, 20.0 + line * len(b.lines)) for b in self.section.bands]
+        needed = [max(22.0, 20.0 + line * len(self._broken(b))) for b in self.section.bands]
         spare = max(self.height() - sum(needed) - 2, 0.0)
         weights = [_WEIGHTS[b.kind] for b in self.section.bands]
         areas, top = [], 1.0
@@ -244,6 +245,18 @@ class SectionView(QWidget):
             areas.append((band, QRectF(0.0, top, float(self.width()), height)))
             top += height
         return areas
+
+    def _broken(self, band: Band) -> list[str]:
+        """The words of a band; where a line is too long, its change stands in the next."""
+        width, metrics = self.width() * (1 - _DRAWN) - _GAP, QFontMetricsF(self._font(11))
+        lines: list[str] = []
+        for line in band.lines:
+            value, mark, change = line.partition(f"  {_CHANGED}")
+            if mark and metrics.horizontalAdvance(line) > width:
+                lines += [value, f"    {_CHANGED}{change}"]
+            else:
+                lines.append(line)
+        return lines
 
     def _font(self, pixels: int, *, strong: bool = False) -> QFont:
         font = QFont(self.font())
@@ -256,9 +269,9 @@ class SectionView(QWidget):
         painter.setRenderHint(QPainter.RenderHint.Antialiasing)
         if self.section is not None:
             for band, area in self.areas():
-                drawing = QRectF(area.left(), area.top(), self.width() * 0.30, area.height())
+                drawing = QRectF(area.left(), area.top(), self.width() * _DRAWN, area.height())
                 self._paint_band(painter, band, drawing)
-                self._paint_words(painter, band, area.adjusted(drawing.width() + 12, 0, 0, 0))
+                self._paint_words(painter, band, area.adjusted(drawing.width() + _GAP, 0, 0, 0))
             self._paint_pore(painter)
             for band, area in self.areas():
                 if self.section.picked > 0 and band.layer == self.section.picked:
@@ -319,7 +332,7 @@ class SectionView(QWidget):
         top += heading.height()
         painter.setFont(self._font(11))
         small = QFontMetricsF(painter.font())
-        for line in band.lines:
+        for line in self._broken(band):
             text = small.elidedText(line, Qt.TextElideMode.ElideRight, area.width())
             painter.drawText(QPointF(area.left(), top + small.ascent()), text)
             top += small.height() + 1
@@ -329,7 +342,7 @@ class SectionView(QWidget):
         films = [area for band, area in self.areas() if band.kind == "film"]
         if section is None or section.pore is None or not films:
             return
-        full = self.width() * 0.30
+        full = self.width() * _DRAWN
         width = 1.5 + section.pore * 0.32 * full
         pore = QRectF(
             full / 2 - width / 2, films[0].top(), width, films[-1].bottom() - films[0].top()
