@@ -192,3 +192,48 @@ def test_a_folder_is_added_in_one_edit(tmp_path: Path, capsys: pytest.CaptureFix
         assert file.undo_name == said.rstrip(".")
     assert main(["add", str(path), str(tmp_path / "nowhere")]) == 2
     assert main(["add", str(tmp_path / "none.coatgui"), str(folder)]) == 2
+
+
+def test_names_starts_and_corrections_are_told(
+    tmp_path: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    folder, table = tmp_path / "week", tmp_path / "proposals.csv"
+    (folder / "first").mkdir(parents=True)
+    for name, source in (("no 1 K1 t1h", "K1_1h"), ("no 2 K1 t8h", "K1_8h"), ("odd", "K1_24h")):
+        content = (sample_panels() / f"{source}.csv").read_bytes()
+        (folder / "first" / f"{name}.csv").write_bytes(content)
+    call = ["assess", str(folder), "--names", "first/no 1 {panel:K1} t{time:1}h.csv"]
+    assert main([*call, "--dry-run", "--proposals", str(table)]) == 1
+    assert "first/no 2 K1 t8h.csv: a reading of K1 at 8 h" in capsys.readouterr().out
+    lines = table.read_text(encoding="utf-8-sig").splitlines()
+    assert lines[0].startswith("file,part,standing,becomes,panel,exposure_h,leave_out")
+    changed = [line.replace("asked,nothing yet,,", "asked,,K1,1d") for line in lines]
+    table.write_text("\n".join(changed), encoding="utf-8")
+    assert main([*call, "--dry-run", "--corrections", str(table)]) == 2
+    assert "exposure_h is '1d', which is not a number" in capsys.readouterr().err
+    table.write_text("\n".join(changed).replace("1d", "24"), encoding="utf-8")
+    out = tmp_path / "o.json"
+    told = [*call, "--corrections", str(table), "--quiet", "--workers", "1"]
+    assert main([*told, "--json", str(out)]) == 0
+    readings = json.loads(out.read_text(encoding="utf-8"))["readings"]
+    assert [(r["panel"], r["exposure_h"]) for r in readings] == [
+        ("K1", 1.0), ("K1", 8.0), ("K1", 24.0)
+    ]  # fmt: skip
+
+
+def test_a_start_of_exposure_is_told(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    content = (sample_panels() / "K1_1h.csv").read_bytes()
+    (tmp_path / "K1 20260302.csv").write_bytes(content)
+    call = ["assess", str(tmp_path), "--dry-run", "--names", "{panel:K1} {date:20260302}.csv"]
+    assert main([*call, "--started", "K2=2026-02-01", "--started", "2026-03-01"]) == 0
+    assert "a reading of K1 at 24 h" in capsys.readouterr().out
+    for wrong, words in (
+        (["--started", "03/04/2026"], "is no date"),
+        (["--time-unit", "fortnight"], "no unit of time"),
+        (["--corrections", str(tmp_path / "none.csv")], "cannot be opened"),
+        (["--names", "K1.csv"], "Mark parts"),
+    ):
+        assert main([*call, *wrong]) == 2
+        assert words in capsys.readouterr().err
+    assert main(["assess", str(tmp_path), "--proposals", "x.csv"]) == 2
+    assert "goes with --dry-run" in capsys.readouterr().err

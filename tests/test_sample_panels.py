@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import importlib.util
 import json
+import re
 from pathlib import Path
 
 import pytest
@@ -180,3 +181,27 @@ def test_film_capacitance_is_recovered(assessment: Assessment) -> None:
         inside += quantity.low <= known["capacitance_f_per_cm2"] <= quantity.high
     assert total >= 30
     assert inside >= 0.9 * total
+
+
+def test_readme_says_of_the_sample_what_the_program_says(assessment: Assessment) -> None:
+    readme = Path(__file__).resolve().parent.parent.joinpath("README.md").read_text("utf-8")
+    said = {assessment.headline, *(r.reason for r in assessment.refused)}
+    said |= {event.text for panel in assessment.panels for event in panel.events}
+    said |= {crossing.text for panel in assessment.panels for crossing in panel.limit_crossings}
+    ranking = assessment.ranking_text.split(" Judged by")[0]
+    after = assessment.next_inspection.text.split(";")[0] if assessment.next_inspection else ""
+    example = readme.split("## A worked example")[1].split("\n## ")[0]
+    quoted = re.findall("“([^”]*)”", example)
+    known = {*said, ranking, after, "at least", "Try the sample campaign"}
+    assert [words for words in quoted if words not in known] == []
+    assert any(reason in example for reason in (r.reason for r in assessment.refused))
+    assert {assessment.headline, ranking, after} <= set(quoted)
+    # The means at the end, to the tenth of a percent that is quoted.
+    courses = [
+        course
+        for formulation in assessment.formulations
+        for course in formulation.courses
+        if course.code == "water_uptake"
+    ]
+    wanted = [f"{course.points[-1].quantity.value:.1f}" for course in courses]
+    assert f"{wanted[0]}, {wanted[1]} and {wanted[2]} volume-percent" in example

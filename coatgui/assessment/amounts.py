@@ -74,13 +74,16 @@ def parameters_per_area(
 ) -> tuple[Parameter, ...]:
     if area_cm2 is None:
         return parameters
-    found = []
-    for p in parameters:
-        factor, unit = per_area_factor(p.quantity.unit, area_cm2)
-        if unit != p.quantity.unit:
-            p = Parameter(p.symbol, p.meaning, p.layer, scaled(p.quantity, factor, unit))
-        found.append(p)
-    return tuple(found)
+    into = {
+        **{unit: (area_cm2, per) for unit, per in _TIMES_AREA.items()},
+        **{unit: (1 / area_cm2, per) for unit, per in _PER_AREA.items()},
+    }
+    return tuple(
+        Parameter(p.symbol, p.meaning, p.layer, scaled(p.quantity, *into[p.quantity.unit]))
+        if p.quantity.unit in into
+        else p
+        for p in parameters
+    )
 
 
 def held_by_leads(ohm: float, leads_ohm: float | None) -> bool:

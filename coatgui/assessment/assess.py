@@ -10,6 +10,7 @@ from __future__ import annotations
 
 import gc
 import math
+import threading
 from collections.abc import Iterator, Mapping, Sequence
 from contextlib import contextmanager
 
@@ -36,7 +37,6 @@ from coatgui.assessment.summary import (
     panel_assessment,
 )
 from coatgui.assessment.suspicion import with_suspicions
-from coatgui.circuits import CoatingModel
 from coatgui.fitting import fit_spectra
 from coatgui.progress import Progress, Spread, one_after_another
 from coatgui.quality import check_spectra, circuit_residuals
@@ -44,6 +44,7 @@ from coatgui.records import Assessment, Campaign, Fit
 
 _USUAL_FREQUENCY_HZ = 0.1
 _CHANGED_MEANWHILE = frozenset({"step", "drift", "departure", "repeat_differs"})
+_AT_ONCE = 1000  # readings drawn as one array, between two reports of progress
 
 
 def assess(
@@ -85,24 +86,43 @@ def assess(
     take_away(drawn, leads_of(campaign))
     for d, fit in zip(drawn, _fits(drawn, campaign, progress, spread, cache), strict=True):
         d.fit = fit
+    _look_at_residuals(drawn, campaign)
     return conclude(campaign, drawn, progress)
 
 
-@contextmanager
-def _without_collection() -> Iterator[None]:
-    """No search for unreachable cycles meanwhile. The conclusions are some hundred thousand small
-    records that all stay and form no cycles; to go through them again and again took a third of
-    the time."""
-    collecting = gc.isenabled()
-    gc.disable()
-    try:
-        yield
-    finally:
-        if collecting:
-            gc.enable()
+class _Collection:
+    """Whether the interpreter searches for unreachable cycles; `off` may be entered by several
+    threads at once."""
+
+    def __init__(self) -> None:
+        self._lock = threading.Lock()
+        self._inside = 0
+        self._was_on = False
+
+    @contextmanager
+    def off(self) -> Iterator[None]:
+        with self._lock:
+            if self._inside == 0:
+                self._was_on = gc.isenabled()
+                gc.disable()
+            self._inside += 1
+        try:
+            yield
+        finally:
+            with self._lock:
+                self._inside -= 1
+                if self._inside == 0 and self._was_on:
+                    gc.enable()
 
 
-@_without_collection()
+# The conclusions are some hundred thousand small records that all stay and form no cycles, and
+# each search goes through all of them and the spectra again: that took a third of the time. Cycles
+# that other threads make meanwhile wait for a second or two; what is in no cycle goes at once, as
+# always.
+_collection = _Collection()
+
+
+@_collection.off()
 def conclude(campaign: Campaign, drawn: Sequence[Drawn], progress: Progress) -> Assessment:
     """The conclusions from readings that are checked and fitted, sorted by panel in the campaign's
     order and exposure time."""
@@ -115,11 +135,9 @@ def conclude(campaign: Campaign, drawn: Sequence[Drawn], progress: Progress) -> 
     by_panel: dict[str, list[Drawn]] = {panel_id: [] for panel_id in panels}
     for d in drawn:
         by_panel[d.reading.panel_id].append(d)
-    for done, panel in enumerate(campaign.panels):
-        progress.at("Drawing conclusions", done, len(campaign.panels))
-        draw_readings(by_panel[panel.panel_id], campaign, leads, criteria)
-    own, unusable = own_models(campaign)
-    _look_at_residuals(drawn, campaign, own)
+    for start in range(0, len(drawn), _AT_ONCE):
+        progress.at("Drawing conclusions", start, len(drawn))
+        draw_readings(drawn[start : start + _AT_ONCE], campaign, leads, criteria)
     noise = _noise(campaign, by_panel, watched_hz)
     panel_results = []
     for panel in campaign.panels:
@@ -148,8 +166,8 @@ def conclude(campaign: Campaign, drawn: Sequence[Drawn], progress: Progress) -> 
     )
     counting = by_formulation([f.formulation for f in formulations], in_order)
     decided = decide(campaign, counting, watched_hz, criteria, panel_results)
-    progress.at("Drawing conclusions", len(panels), len(panels))
-    findings = (*campaign_findings(campaign), *unusable, *decided.findings)
+    progress.at("Drawing conclusions", len(drawn), len(drawn))
+    findings = (*campaign_findings(campaign), *own_models(campaign)[1], *decided.findings)
     return Assessment(
         title=campaign.title,
         readings=in_order,
@@ -172,9 +190,7 @@ def conclude(campaign: Campaign, drawn: Sequence[Drawn], progress: Progress) -> 
     )
 
 
-def _look_at_residuals(
-    drawn: Sequence[Drawn], campaign: Campaign, own: Sequence[CoatingModel]
-) -> None:
+def _look_at_residuals(drawn: Sequence[Drawn], campaign: Campaign) -> None:
     """A doubt for readings whose circuit leaves a step or a drift over, where the checks named
     neither."""
     fitted = [(d, d.fit) for d in drawn if d.fit is not None]
@@ -182,7 +198,7 @@ def _look_at_residuals(
         [d.reading.spectrum for d, _ in fitted],
         [fit for _, fit in fitted],
         settings=campaign.settings,
-        own_models=own,
+        own_models=own_models(campaign)[0],
     )
     for (d, _), doubt in zip(fitted, doubts, strict=True):
         if doubt is not None and not any(f.code in _CHANGED_MEANWHILE for f in d.findings):

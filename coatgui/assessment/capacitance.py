@@ -169,6 +169,7 @@ class Capacitances:
         for place, fit in enumerate(fits):
             groups.setdefault(_kind_of(fit), []).append(place)
         self._groups = [_Alike(own, [fits[i] for i in own]) for own in groups.values()]
+        self._turning_hz = self._turnings()
 
     def small_exponents(self) -> list[Finding | None]:
         """A doubt where a film layer's n is too small for its Q to be turned into a capacitance."""
@@ -190,6 +191,9 @@ class Capacitances:
         """(RQ)^(-1/n)/2π in Hz, where the film's resistance takes over from its capacitance; None
         where it does not lie among the used points, the data do not hold R from both sides, or the
         film is not a single layer."""
+        return self._turning_hz
+
+    def _turnings(self) -> list[float | None]:
         found: list[float | None] = [None] * len(self._fits)
         for group in self._groups:
             turning = group.turning_hz()
@@ -229,7 +233,7 @@ class Capacitances:
         """The film's capacitance by Hsu and Mansfeld; None where its resistance does not turn over
         inside the window or its n is below 0.7."""
         found: list[Quantity | None] = [None] * len(self._fits)
-        inside = np.array([turning is not None for turning in self.turning_hz()])
+        inside = np.array([turning is not None for turning in self._turning_hz])
         for group in self._groups:
             turning = group.turning_hz()
             if turning is None:
@@ -334,8 +338,8 @@ def _too_small(exponent: FloatArray) -> BoolArray:
 
 def has_film(fit: Fit) -> bool:
     """Whether the model has a film whose capacitance can be asked for at all."""
-    values = {p.symbol: p.quantity.value for p in fit.parameters}
-    return any(values.get(q) and values.get(n) for q, n, _ in _FILM_LAYERS)
+    valued = {p.symbol for p in fit.parameters if p.quantity.value}
+    return any(q in valued and n in valued for q, n, _ in _FILM_LAYERS)
 
 
 def _at_high_frequency(

@@ -16,7 +16,7 @@ from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from functools import cache
 
-from coatgui.assessment.doubts import doubtful
+from coatgui.assessment.doubts import doubtful, has_doubt
 from coatgui.assessment.rules import rule
 from coatgui.assessment.words import hertz
 from coatgui.records import (
@@ -183,16 +183,18 @@ def courses(
     """The courses of one formulation's readings; empty ones are left away."""
     groups = inspections([r.exposure_h for r in readings if r.counts])
     at_group = by_inspection(readings, groups)
+    # Few readings have a doubt at all.
+    suspects = [[r for r in there if r.counts and has_doubt(r)] for there in at_group]
     found = []
     for kind in _kinds(modulus_frequencies_hz):
         points = []
-        for group, there in zip(groups, at_group, strict=True):
+        for group, there, suspected in zip(groups, at_group, suspects, strict=True):
             values = panel_values(there, kind.take, kind.logarithmic)
             if not values:
                 continue
             quantity, censored = replicate_mean(list(values.values()), kind.logarithmic)
             time = sum(group) / len(group)
-            doubted = {r.panel_id for r in there if r.counts and doubtful(r, kind.code)}
+            doubted = {r.panel_id for r in suspected if doubtful(r, kind.code)}
             rest = [q for panel_id, q in values.items() if panel_id not in doubted]
             points.append(
                 CoursePoint(

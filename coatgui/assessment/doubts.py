@@ -22,6 +22,11 @@ def _codes(quantity: str) -> frozenset[str]:
     )
 
 
+def has_doubt(reading: ReadingAssessment) -> bool:
+    """Whether there is a doubt about anything of the reading."""
+    return any(f.severity is Severity.DOUBT for f in reading.findings)
+
+
 def doubtful(reading: ReadingAssessment, quantity: str) -> bool:
     """Whether a doubt about the reading is one about this quantity of it: modulus (or
     modulus_<Hz>), coating_capacitance, pore_resistance or water_uptake."""

@@ -116,9 +116,11 @@ def _opening(
     ]
 
 
+_HELD = (Bound.TWO_SIDED, Bound.AT_MOST)
+
+
 def _holds(fit: Fit, *symbols: str) -> bool:
-    held = (Bound.TWO_SIDED, Bound.AT_MOST)
-    return any((q := fit.parameter(symbol)) and q.bound in held for symbol in symbols)
+    return any(p.symbol in symbols and p.quantity.bound in _HELD for p in fit.parameters)
 
 
 def sorption_events(

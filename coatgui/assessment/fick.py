@@ -28,7 +28,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
-from functools import cache
+from functools import cache, lru_cache
 
 import numpy as np
 from numpy.typing import ArrayLike
@@ -118,10 +118,23 @@ def rates(hours: FloatArray) -> FloatArray:
     return np.geomspace(0.02 / positive[-1], 3.0 / positive[0], _COARSE)
 
 
-def misfits(k: FloatArray, hours: FloatArray, y: FloatArray, weight: FloatArray) -> FloatArray:
+@lru_cache(maxsize=64)
+def _grid(hours: bytes) -> tuple[FloatArray, FloatArray]:
+    times = np.frombuffer(hours)
+    k = rates(times)
+    return k, quick_uptake(k[:, None] * times)
+
+
+def shares(hours: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """The grid of k (K,) and the law on it (K, m). Panels are mostly read together, so these are
+    kept; do not change what is handed out."""
+    return _grid(np.ascontiguousarray(hours, dtype=np.float64).tobytes())
+
+
+def misfits(hours: FloatArray, y: FloatArray, weight: FloatArray) -> FloatArray:
     """Least misfit of the line through the first n readings, for every n at once; (m,), infinite
     for n < 3. Needs no limits, so running sums do."""
-    share = quick_uptake(k[:, None] * hours)
+    _, share = shares(hours)
     y = y - y.mean()
     w = np.cumsum(weight)
     x_mean = np.cumsum(weight * share, axis=1) / w
@@ -138,16 +151,26 @@ def misfits(k: FloatArray, hours: FloatArray, y: FloatArray, weight: FloatArray)
 
 
 def second_stage(
-    k: FloatArray, hours: FloatArray, y: FloatArray, weight: FloatArray, fewest: int
+    hours: FloatArray, y: FloatArray, weight: FloatArray, fewest: int
 ) -> tuple[int, float, float]:
     """Best place t₂ of a second stage, the sum of squares with it and without it.
 
     At least `fewest` readings lie up to t₂ and two after it.
     """
     places = np.arange(fewest - 1, hours.size - 2)
+    late = np.maximum(0.0, hours[None, :] - hours[places][:, None])
+    single, both = _squares(shares(hours)[1], y, weight, late)
+    _, at = np.unravel_index(int(np.argmin(both)), both.shape)
+    return int(places[at]), max(float(both.min()), 0.0), float(single.min())
+
+
+def _squares(
+    share: FloatArray, y: FloatArray, weight: FloatArray, late: FloatArray
+) -> tuple[FloatArray, FloatArray]:
+    """The weighted sum of squares for each k, with the law (K, m) on it, without a second stage
+    (K,), and with each of some (T, m), (K, T)."""
     root = np.sqrt(weight)
-    share = quick_uptake(k[:, None] * hours) * root
-    late = np.maximum(0.0, hours[None, :] - hours[places][:, None]) * root
+    share, late = share * root, late * root
     one = root / np.linalg.norm(root)
 
     def without_mean(rows: FloatArray) -> FloatArray:
@@ -160,9 +183,7 @@ def second_stage(
     overlap = share @ late.T
     left = np.maximum((late**2).sum(axis=1) - overlap**2, 1e-12 * (late**2).sum(axis=1))
     gain = (target @ late.T - along[:, None] * overlap) ** 2 / left
-    both = single[:, None] - gain
-    _, at = np.unravel_index(int(np.argmin(both)), both.shape)
-    return int(places[at]), max(float(both.min()), 0.0), float(single.min())
+    return single, single[:, None] - gain
 
 
 def fit(
@@ -171,11 +192,13 @@ def fit(
     """Lay the law on readings: `hours` (m,) ascending, ln C and its standard error (m,)."""
     weight = 1 / deviation**2
     late = None if second_from is None else np.maximum(0.0, hours - hours[second_from])
-    k = rates(hours)
-    squares, _, _ = _solve(k, hours, y, weight, late)
-    best = int(np.argmin(squares))
+    k, share = shares(hours)
+    without, with_stage = _squares(
+        share, y, weight, np.empty((0, y.size)) if late is None else late[None]
+    )
+    best = int(np.argmin(without if late is None else with_stage[:, 0]))
     k = np.union1d(k, np.geomspace(k[max(best - 1, 0)], k[min(best + 1, k.size - 1)], _FINE))
-    squares, parts, covariance = _solve(k, hours, y, weight, late)
+    squares, parts, covariance = _solve(quick_uptake(k[:, None] * hours), y, weight, late)
     best = int(np.argmin(squares))
     least = float(squares[best])
     freedom = hours.size - (3 if late is None else 5)
@@ -215,13 +238,13 @@ def fit(
 
 
 def _solve(
-    k: FloatArray, hours: FloatArray, y: FloatArray, weight: FloatArray, late: FloatArray | None
+    share: FloatArray, y: FloatArray, weight: FloatArray, late: FloatArray | None
 ) -> tuple[FloatArray, FloatArray, FloatArray]:
-    """For each k: the weighted sum of squares (K,), a, b and c (K, p), their covariance (K, p, p).
+    """For each k, with the law (K, m) on it: the weighted sum of squares (K,), a, b and c (K, p),
+    their covariance (K, p, p).
 
     The columns are scaled and the smallest pivot is kept off zero, so that a k for which all
     readings are saturated gives a huge variance instead of an error."""
-    share = quick_uptake(k[:, None] * hours)
     columns = [np.ones_like(share), share]
     if late is not None:
         columns.append(np.broadcast_to(late / late.max(), share.shape))

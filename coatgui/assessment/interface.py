@@ -26,7 +26,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from functools import cache
+from functools import cache, lru_cache
 
 import numpy as np
 
@@ -136,14 +136,11 @@ def active_area(
     routes: list[tuple[str, Quantity]] = []
     measured = None if found is None or found.valid is False else found.measured_hz
     if measured is not None and permittivity and resistivity:
-        whole_hz = 1 / (2 * math.pi * permittivity * VACUUM_F_PER_CM * resistivity)
+        whole_hz, how = _breakpoint_of_all(permittivity, resistivity, named)
         share = measured / whole_hz
-        whole = hertz(float(f"{whole_hz:.2g}"))
-        how = f"f_b/f_b⁰, f_b⁰ = {whole} with ε_r = {permittivity:.1f}, {named}"
         routes.append(("breakpoint", Quantity(share, share, share, Bound.TWO_SIDED, "", how)))
-    if interface_capacitance is not None and _held(interface_capacitance):
+    if interface_capacitance is not None and (value := _held(interface_capacitance)):
         low, high = _bare_metal()
-        value = interface_capacitance.value or 0.0
         routes.append(
             (
                 "double layer",
@@ -157,9 +154,13 @@ def active_area(
                 ),
             )
         )
-    if thickness_um and resistivity and pore_resistance is not None and _held(pore_resistance):
+    if (
+        thickness_um
+        and resistivity
+        and pore_resistance is not None
+        and (value := _held(pore_resistance))
+    ):
         path = resistivity * thickness_um * _CM_PER_UM
-        value = pore_resistance.value or 0.0
         routes.append(
             (
                 "pores",
@@ -176,6 +177,14 @@ def active_area(
     return _bracketed(routes) if routes else None
 
 
+@lru_cache(maxsize=256)
+def _breakpoint_of_all(permittivity: float, resistivity: float, named: str) -> tuple[float, str]:
+    """f_b⁰ in Hz, and how a share follows from it: the same for all readings of a panel."""
+    whole_hz = 1 / (2 * math.pi * permittivity * VACUUM_F_PER_CM * resistivity)
+    whole = hertz(float(f"{whole_hz:.2g}"))
+    return whole_hz, f"f_b/f_b⁰, f_b⁰ = {whole} with ε_r = {permittivity:.1f}, {named}"
+
+
 def _bracketed(routes: list[tuple[str, Quantity]]) -> ActiveArea:
     failed, kept = [], []
     low, high = 1.0, 0.0
@@ -184,7 +193,9 @@ def _bracketed(routes: list[tuple[str, Quantity]]) -> ActiveArea:
         if value > 1:
             failed.append(name)
         low, high = min(low, least), max(high, most)
-        kept.append((name, Quantity(min(value, 1.0), least, most, q.bound, q.unit, q.method)))
+        if most != q.high or value > 1:
+            q = Quantity(min(value, 1.0), least, most, q.bound, q.unit, q.method)
+        kept.append((name, q))
     count = len(kept)
     between = f"Between {power_of_ten(low)} and {power_of_ten(high)}"
     said = f"{between} of the area, by {counted(count, 'route')}."

@@ -8,7 +8,7 @@ from collections.abc import Sequence
 
 import numpy as np
 
-from coatgui.assessment.amounts import from_logarithm, per_area
+from coatgui.assessment.amounts import from_logarithm
 from coatgui.assessment.modulus import Grid, neighbours
 from coatgui.assessment.rules import rule
 from coatgui.assessment.words import hertz, power_of_ten
@@ -78,7 +78,7 @@ def _one(
     unit_area = 1.0 if area_cm2 is None else area_cm2
     unit = "F" if area_cm2 is None else "F/cm²"
     method += f" (series {power_of_ten(series / unit_area, 3)} {unit}, phase −{degrees:.1f}°)"
-    quantity = per_area(from_logarithm(parallel, deviation, "F", method), area_cm2)
+    quantity = from_logarithm(parallel / unit_area, deviation, unit, method)
     if degrees >= rule("capacitance.phase_deg"):
         return quantity, None
     note = Finding(

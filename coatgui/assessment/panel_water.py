@@ -26,18 +26,21 @@ from coatgui.assessment.words import hertz
 from coatgui.records import Finding, FloatArray, Panel, Quantity, Severity, WaterUptake
 
 
-def uptake_basis(series: Sequence[Drawn], frequency_hz: float) -> tuple[list[Quantity | None], str]:
+def uptake_basis(
+    series: Sequence[Drawn], frequency_hz: float, measured: bool = False
+) -> tuple[list[Quantity | None], str]:
     """The capacitances that the water uptake rests on, all on one footing, and its name.
 
     The fitted film's at the high frequency; readings whose model has no film stay without. Where
     most fits show no film, there is no film that could take up water. Where most readings have no
-    fit at all, the measured parallel capacitance serves for all.
+    fit at all, or a person wants the `measured` one, the measured parallel capacitance serves for
+    all.
     """
     fitted = [d.coating_capacitance for d in series]
     films, fits = sum(q is not None for q in fitted), sum(d.fit is not None for d in series)
-    if 2 * films >= len(series):
+    if not measured and 2 * films >= len(series):
         return fitted, f"fitted film at {hertz(frequency_hz)}"
-    if 2 * (fits - films) > len(series):
+    if not measured and 2 * (fits - films) > len(series):
         return [None] * len(series), "no film shows"
     return (
         [d.measured_capacitance for d in series],

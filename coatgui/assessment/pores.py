@@ -37,9 +37,10 @@ def pore_resistance(
     fit: Fit, spectrum: Spectrum, area_cm2: float | None, open_lead: Spectrum | None = None
 ) -> Quantity | None:
     """Pore resistance, Ω cm² (Ω without area); None for a model without a film."""
-    if not has_film(fit) or not fit.used.any():
+    used_hz, _ = used_points(spectrum, fit.used)
+    if not used_hz or not has_film(fit):
         return None
-    lowest = used_points(spectrum, fit.used)[0][0]
+    lowest = used_hz[0]
     leads_ohm = leads_resistance(open_lead, lowest)
     fitted = _fitted(fit)
     if fitted is None:

@@ -51,7 +51,7 @@ def recognised(text: str, own: tuple[Electrolyte, ...] = ()) -> Electrolyte | No
     """The electrolyte that a panel's text means: the one of this name or id, else the first of
     which the text holds the words. A campaign's own come first."""
     known = electrolytes(Settings(electrolytes=own))
-    ordered = (*(e for e in known if e in own), *(e for e in known if e not in own))
+    ordered = (*own, *(e for e in known if e not in own))
     wanted = text.strip().casefold()
     for electrolyte in ordered:
         if wanted in (electrolyte.name.casefold(), electrolyte.electrolyte_id.casefold()):

@@ -202,10 +202,9 @@ def rating_courses(seen: Rated) -> tuple[RatingCourse, ...]:
     for scale_id in dict.fromkeys(r.scale for r in seen.ratings):
         for group, there in _by_panel(scale_id, seen.ratings).items():
             for name in formulations:
+                those = {p: r for p, r in there.items() if seen.panels[p][0] == name}
                 own = [
-                    (seen.panels[panel_id][1], rating.value)
-                    for panel_id, rating in there.items()
-                    if seen.panels[panel_id][0] == name
+                    (seen.panels[panel_id][1], rating.value) for panel_id, rating in those.items()
                 ]
                 if own:
                     ordered = sorted(own, key=lambda pair: order(scale_id, pair[1]))
@@ -217,6 +216,7 @@ def rating_courses(seen: Rated) -> tuple[RatingCourse, ...]:
                             tuple(own),
                             ordered[-1][1],
                             ordered[0][1],
+                            "; ".join(dict.fromkeys(edition(r) for r in those.values())),
                         )
                     )
     return tuple(found)

@@ -188,14 +188,14 @@ def reading_assessment(
         file=reading.source.file,
         sha256=reading.source.sha256,
         points_read=len(reading.spectrum),
-        points_used=int(d.used.sum()),
+        points_used=int(np.count_nonzero(d.used)),
         left_out=tuple(
             LeftOutPoint(float(reading.spectrum.frequency_hz[place]), d.left_out[place])
             for place in sorted(d.left_out)
         ),
         findings=tuple(d.findings),
         counts=d.counts,
-        modulus=tuple(m for m in d.moduli if m.frequency_hz in modulus_frequencies_hz),
+        modulus=tuple([m for m in d.moduli if m.frequency_hz in modulus_frequencies_hz]),
         fit=d.fit,
         parameters=d.parameters,
         coating_capacitance=d.coating_capacitance,

@@ -81,7 +81,9 @@ def draw_series(
     if not counting:
         return SeriesResult()
     exposure_h = [d.reading.exposure_h for d in counting]
-    basis, basis_name = uptake_basis(counting, settings.capacitance_frequency_hz)
+    basis, basis_name = uptake_basis(
+        counting, settings.capacitance_frequency_hz, settings.uptake_from_high_frequency
+    )
     dry_out = drying(exposure_h, basis)
     sorption = panel_sorption(exposure_h, basis, basis_name, dry_out, measured_dry(facts))
     dry = None if sorption is None else sorption.dry_capacitance

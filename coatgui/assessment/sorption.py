@@ -25,7 +25,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from coatgui.assessment.amounts import NORMAL_95, from_logarithm, log_deviation, scaled
-from coatgui.assessment.fick import FickFit, fickian_uptake, fit, misfits, rates, second_stage
+from coatgui.assessment.fick import FickFit, fickian_uptake, fit, misfits, second_stage
 from coatgui.assessment.rules import rule
 from coatgui.records import Bound, FloatArray, Quantity
 
@@ -105,9 +105,8 @@ def _law(
     if time.size < early or time[early - 1] <= time[0]:
         return None, f"fewer than {early} readings"
     weight = 1 / deviation**2
-    grid = rates(time)
-    whole = misfits(grid, time, y, weight)
-    stage = _stage(grid, time, y, deviation, early)
+    whole = misfits(time, y, weight)
+    stage = _stage(time, y, deviation, early)
     if stage is not None and stage.misfit <= worst and stage.rise.value > 0:
         return _judged(stage, time.size, time, early)
     follows = np.flatnonzero(whole[early - 1 :] <= worst) + early
@@ -119,13 +118,11 @@ def _law(
     return None, "the early readings do not follow Fick's law"
 
 
-def _stage(
-    grid: FloatArray, time: FloatArray, y: FloatArray, deviation: FloatArray, early: int
-) -> FickFit | None:
+def _stage(time: FloatArray, y: FloatArray, deviation: FloatArray, early: int) -> FickFit | None:
     """The law with a second stage, where the readings demand one."""
     if time.size < _STAGE_UNKNOWNS + 1:
         return None
-    place, both, single = second_stage(grid, time, y, 1 / deviation**2, early)
+    place, both, single = second_stage(time, y, 1 / deviation**2, early)
     scale = max(1.0, both / (time.size - _STAGE_UNKNOWNS))
     if single - both <= rule("sorption.second_stage_gain") * scale:
         return None

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import math
 from collections.abc import Sequence
 
 _SUPERSCRIPT = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
@@ -16,11 +15,10 @@ def power_of_ten(value: float, digits: int = 2) -> str:
     plain = float(f"{value:.3g}")
     if plain == 0 or 0.001 <= plain < 10_000:
         return f"{plain:g}"
-    exponent = math.floor(math.log10(value))
-    mantissa = f"{value / 10.0**exponent:.{digits}g}"
-    if mantissa == "10":
-        mantissa, exponent = "1", exponent + 1
-    power = "10" + str(exponent).translate(_SUPERSCRIPT)
+    mantissa, _, exponent = f"{value:.{digits - 1}e}".partition("e")
+    if "." in mantissa:
+        mantissa = mantissa.rstrip("0").rstrip(".")
+    power = "10" + str(int(exponent)).translate(_SUPERSCRIPT)
     return power if mantissa == "1" else f"{mantissa}·{power}"
 
 

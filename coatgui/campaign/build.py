@@ -22,13 +22,16 @@ from coatgui.records import (
     Formulation,
     Found,
     FoundPanel,
+    FoundRating,
     FoundReading,
     Panel,
+    Rating,
     Reading,
     Refusal,
     Settings,
     Source,
     Spectrum,
+    VisualRating,
 )
 
 UNASSIGNED = "Unassigned"
@@ -82,6 +85,8 @@ def gather(campaign: Campaign, found: Found) -> Gathered:
     for listed in found.panels:
         gathering.add_listed(listed)
     standing = tuple(gathering.add_reading(reading) for reading in found.readings)
+    for rating in found.ratings:
+        gathering.add_rating(rating)
     if found.open_lead is not None:
         gathering.add_open_lead(*found.open_lead)
     for refusal in found.refused:
@@ -119,6 +124,8 @@ class _Gathering:
         self._said_before = {r.file for r in campaign.refused}
         self._refused = dict.fromkeys(campaign.refused)
         self._lead = (campaign.open_lead, campaign.open_lead_source)
+        self._ratings = list(campaign.ratings)
+        self._rated = {_seen(r.seen) for r in campaign.ratings}
 
     def campaign(self) -> Campaign:
         return replace(
@@ -129,6 +136,7 @@ class _Gathering:
             open_lead=self._lead[0],
             open_lead_source=self._lead[1],
             refused=tuple(self._refused),
+            ratings=tuple(self._ratings),
         )
 
     def refuse(self, file: str, reason: str) -> None:
@@ -299,6 +307,31 @@ class _Gathering:
                 "remove that one first if the new one is to count.",
             )
 
+    # A row of a ratings list
+
+    def add_rating(self, found: FoundRating) -> None:
+        """One that says what another says of the same panel at the same time adds nothing."""
+        panel = self._panels.get(_storable(found.panel).strip())
+        if panel is None:
+            self.refuse(
+                found.file,
+                f"A rating at {found.exposure_h:g} h names panel {_storable(found.panel)}, which "
+                "the campaign does not have: correct the name, or add the panel.",
+            )
+            return
+        seen = VisualRating(
+            panel.panel_id,
+            float(found.exposure_h),
+            found.scale,
+            _storable(found.value),
+            _storable(found.edition),
+            _storable(found.rater),
+            _storable(found.remark),
+        )
+        if _seen(seen) not in self._rated:
+            self._rated.add(_seen(seen))
+            self._ratings.append(Rating(new_id(), seen))
+
     # Records that something else needs
 
     def panel(self, name: str) -> Panel:
@@ -317,6 +350,10 @@ class _Gathering:
             self._formulations[name] = made
             self._formulation_names[made.formulation_id] = name
         return self._formulations[name].formulation_id
+
+
+def _seen(seen: VisualRating) -> tuple[str, float, str, str, str]:
+    return seen.panel_id, seen.exposure_h, seen.scale, seen.value, seen.rater
 
 
 def _replaced(before: Reading, after: Reading) -> Reading:

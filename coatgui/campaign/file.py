@@ -231,6 +231,11 @@ class CampaignFile:
             )
         return content
 
+    def photographs(self) -> dict[str, bytes]:
+        """The bytes of the campaign's photographs by their SHA-256. Raises CampaignFileError."""
+        contents = {p.sha256: self.raw(p.sha256) for p in self.campaign.photographs}
+        return {sha256: content for sha256, content in contents.items() if content is not None}
+
     def save_copy(self, path: Path, *, replace: bool = False) -> tuple[str, ...]:
         """Write the whole campaign file, history and all, to another name; this one stays open.
 

@@ -106,6 +106,21 @@ def add_photograph(
     return operation(f"Add a photograph of panel {where}", campaign, after, {sha256: kept})
 
 
+def photograph_reading(
+    campaign: Campaign, reading_id: str, content: bytes, *, file: str = "", caption: str = ""
+) -> Operation:
+    """A photograph of the panel of a reading at its exposure time."""
+    reading = reading_of(campaign, reading_id)
+    return add_photograph(
+        campaign,
+        reading.panel_id,
+        content,
+        file=file,
+        caption=caption,
+        exposure_h=reading.exposure_h,
+    )
+
+
 def edit_photograph(campaign: Campaign, photograph_id: str, **fields: Any) -> Operation:
     """Change caption, panel or exposure time."""
     photograph = photograph_of(campaign, photograph_id)

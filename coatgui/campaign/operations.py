@@ -22,6 +22,7 @@ from coatgui.campaign.inspections import add_ratings as add_ratings
 from coatgui.campaign.inspections import edit_photograph as edit_photograph
 from coatgui.campaign.inspections import edit_rating as edit_rating
 from coatgui.campaign.inspections import identify as identify
+from coatgui.campaign.inspections import photograph_reading as photograph_reading
 from coatgui.campaign.inspections import rate_reading as rate_reading
 from coatgui.campaign.inspections import remove_photograph as remove_photograph
 from coatgui.campaign.inspections import remove_ratings as remove_ratings
@@ -76,6 +77,7 @@ _WORDS = {
     "projections": "projections",
     "electrolytes": "electrolytes",
     "regimes": "exposure regimes",
+    "uptake_from_high_frequency": "capacitance for the water uptake",
 }
 
 # ---------------------------------------------------------------------------------------------
@@ -93,6 +95,7 @@ def import_found(campaign: Campaign, found: Found) -> Operation:
         (gathered.count("new"), "reading"),
         (gathered.count("replaces"), "corrected reading"),
         (len(after.panels) - len(campaign.panels), "panel"),
+        (len(after.ratings) - len(campaign.ratings), "rating"),
         (int(after.open_lead is not campaign.open_lead), "open-lead run"),
         (len(after.refused) + settled - len(campaign.refused), "refusal"),
     )

@@ -310,7 +310,7 @@ _SHAPES: dict[str, Callable[[tuple[Value, ...]], bool]] = {
     ),
     "formulations": lambda v: len(v) == 4 and _is_text(v[0], v[2], v[3]) and _is_number(v[1]),
     "settings": lambda v: (
-        7 <= len(v) <= 16 and _is_text(v[0]) and _is_number(v[1], v[3], v[4]) and _is_list(v[2])
+        7 <= len(v) <= 17 and _is_text(v[0]) and _is_number(v[1], v[3], v[4]) and _is_list(v[2])
     ),
     "campaign": lambda v: (
         len(v) in (3, 9) and _is_text(*v) and (len(v) == 3 or _is_list(v[8])) and v[1] != ""
@@ -329,6 +329,7 @@ _DEFAULTS: dict[str, dict[str, Any]] = {
         "input_resistance_ohm": None,
         "input_capacitance_f": None,
         "take_leads_away": 0,
+        "uptake_from_high_frequency": 0,
         **dict.fromkeys(
             ("own_models", "limits", "comparisons", "projections", "electrolytes", "regimes"), "[]"
         ),

@@ -13,6 +13,7 @@ from coatgui.campaign.cells import (
     object_of,
     string,
     to_json,
+    whole,
 )
 from coatgui.campaign.changes import Cell, Row
 from coatgui.records import (
@@ -55,6 +56,7 @@ def cells_of(settings: Settings) -> dict[str, Cell]:
             ]
         ),
         "regimes": to_json([_regime_cell(regime) for regime in settings.regimes]),
+        "uptake_from_high_frequency": int(settings.uptake_from_high_frequency),
     }
 
 
@@ -82,6 +84,7 @@ def read(row: Row) -> dict[str, Any]:
             for told in list_of(row["electrolytes"])
         ),
         "regimes": tuple(_regime(object_of(told)) for told in list_of(row["regimes"])),
+        "uptake_from_high_frequency": bool(whole(row["uptake_from_high_frequency"])),
     }
 
 

@@ -168,6 +168,10 @@ def seal_the_trail_and_take_what_is_seen(connection: sqlite3.Connection) -> None
     connection.execute("ALTER TABLE campaign ADD COLUMN standards TEXT NOT NULL DEFAULT '[]'")
     for column in ("limits", "comparisons", "projections", "electrolytes", "regimes"):
         connection.execute(f"ALTER TABLE settings ADD COLUMN {column} TEXT NOT NULL DEFAULT '[]'")
+    connection.execute(
+        "ALTER TABLE settings ADD COLUMN uptake_from_high_frequency INTEGER NOT NULL DEFAULT 0 "
+        "CHECK (uptake_from_high_frequency IN (0, 1))"
+    )
     for column in (
         "temperature_low_c",
         "temperature_high_c",

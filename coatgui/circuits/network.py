@@ -13,6 +13,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 
@@ -26,7 +27,7 @@ class Leaf:
     element: Element
     first: int
 
-    @property
+    @cached_property
     def places(self) -> slice:
         return slice(self.first, self.first + len(self.element.kinds))
 
@@ -99,8 +100,13 @@ def _downward(
 
 def impedance(node: Node, grid: Grid, theta: FloatArray) -> ComplexArray:
     """Impedance (B, N) in Ω of the network at natural coordinates `theta` (B, P)."""
-    value = _upward(node, grid, theta, False, {})
-    return np.broadcast_to(value, (theta.shape[0], grid.omega.size))
+    return _full(_upward(node, grid, theta, False, {}), theta, grid)
+
+
+def _full(value: ComplexArray, theta: FloatArray, grid: Grid) -> ComplexArray:
+    """(B, N), also where everything is resistors."""
+    shape = (theta.shape[0], grid.omega.size)
+    return value if value.shape == shape else np.broadcast_to(value, shape)
 
 
 class Evaluation:
@@ -110,7 +116,7 @@ class Evaluation:
         self._node, self._grid, self._theta = node, grid, theta
         self._found: dict[int, ComplexArray] = {}
         value = _upward(node, grid, theta, False, self._found)
-        self.impedance: ComplexArray = np.broadcast_to(value, (theta.shape[0], grid.omega.size))
+        self.impedance: ComplexArray = _full(value, theta, grid)
 
     def derivatives(self, factor: ComplexArray, out: ComplexArray | None = None) -> ComplexArray:
         """factor·∂Z/∂θ, (B, P, N), written into `out` where given; `factor` is (B, N)."""

@@ -18,9 +18,10 @@ from coatgui.progress import Progress, Spread, one_after_another
 from coatgui.records import Fit, Spectrum
 
 # Part of the key of cached results: raise it with every change that can change a result.
-ENGINE_VERSION = "2"
-# Shares of the work: few enough to be fast, enough of them for every processor and for progress.
-_SMALLEST_SHARE, _LARGEST_SHARE, _SHARES = 60, 500, 4
+ENGINE_VERSION = "3"
+# Shares of the work: few enough to be fast (the last rows to settle take as many steps in a small
+# share as in a large one), enough of them for every processor and for progress.
+_SMALLEST_SHARE, LARGEST_SHARE, _SHARES = 60, 1250, 4
 
 
 def fit_spectra(
@@ -55,7 +56,9 @@ def fit_spectra(
         (i for i in range(len(spectra)) if int(used[i].sum()) >= fewest),
         key=lambda i: (series[i], exposure_h[i]),
     )
-    share_size = min(max(_SMALLEST_SHARE, len(order) // _SHARES), _LARGEST_SHARE)
+    # A multiple of a few shares, so that no processor is left without work at the end.
+    share_count = _SHARES * -(-len(order) // (_SHARES * LARGEST_SHARE))
+    share_size = max(_SMALLEST_SHARE, -(-len(order) // max(share_count, 1)))
     shares: list[list[int]] = []
     last = None
     for i in order:

@@ -113,11 +113,10 @@ def parameter_limits(
     doubtful |= (theta - half < lowest) | (theta + half > highest)
     low, high = theta - half, theta + half
     row, place = np.nonzero(doubtful)
-    for side, limit in ((-1.0, low), (1.0, high)):
-        if row.size:
-            limit[row, place] = _profile(
-                model, batch, theta, cost, half, row, place, side, reach, freedom, check
-            )
+    if row.size:
+        both = np.tile(row, 2), np.tile(place, 2), np.repeat([-1.0, 1.0], row.size)
+        ends = _profile(model, batch, theta, cost, half, *both, reach, freedom, check)
+        low[row, place], high[row, place] = np.split(ends, 2)
     return Limits(low, high, covariance)
 
 
@@ -129,15 +128,15 @@ def _profile(
     half: FloatArray,
     row: IndexArray,
     place: IndexArray,
-    side: float,
+    side: FloatArray,
     reach: FloatArray,
     freedom: FloatArray,
     check: Callable[[], None] | None,
 ) -> FloatArray:
-    """The limit on one side for each (row, place), ±inf where there is none."""
+    """The limit of each (row, place) on its `side`, −1 or 1; ±inf where there is none."""
     lowest, highest = model.bounds
     start = theta[row, place]
-    end = lowest[place] if side < 0 else highest[place]
+    end = np.where(side < 0, lowest[place], highest[place])
     farthest = np.minimum(np.abs(end - start), _FARTHEST)
     rise = np.maximum(cost[row], 1e-300) * reach[row] ** 2 / freedom[row]
     objective = batch.objective(model)
@@ -160,20 +159,20 @@ def _profile(
         fixed = np.zeros((index.size, theta.shape[1]), dtype=np.bool_)
         fixed[np.arange(index.size), place[index]] = True
         trial = guess[index]
-        trial[np.arange(index.size), place[index]] = start[index] + side * distance[index]
+        trial[np.arange(index.size), place[index]] = start[index] + side[index] * distance[index]
         found = minimise(
             objective, trial, lowest, highest,
             fixed=fixed, tolerance=_REFIT, rows=row[index], check=check,
         )  # fmt: skip
         w = np.sqrt(np.maximum(found.cost - cost[row[index]], 0.0) / rise[index])
-        limit[index] = start[index] + side * distance[index]
+        limit[index] = start[index] + side[index] * distance[index]
         short = w < 1.0
         guess[index[short]] = found.theta[short]
         below[index[short]], below_w[index[short]] = distance[index[short]], w[short]
         above[index[~short]], above_w[index[~short]] = distance[index[~short]], w[~short]
         arrived = np.abs(w - 1.0) < _NEAR_ENOUGH
         lost = short & (distance[index] >= farthest[index] * (1.0 - 1e-12)) & ~arrived
-        limit[index[lost]] = side * np.inf
+        limit[index[lost]] = side[index[lost]] * np.inf
         going[index[arrived | lost]] = False
         left = index[~(arrived | lost)]
         bracketed = np.isfinite(above[left])
@@ -187,5 +186,5 @@ def _profile(
         distance[left] = np.minimum(np.where(bracketed, secant, stretch), farthest[left])
     # Still short after all rounds: the side is open for all the data can say.
     open_side = going & ~np.isfinite(above)
-    limit[open_side] = side * np.inf
+    limit[open_side] = side[open_side] * np.inf
     return limit

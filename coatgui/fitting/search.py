@@ -23,11 +23,14 @@ from coatgui.fitting.starts import approach_bounds, best_starts, candidates
 _STARTS = 4
 _ENOUGH_POINTS = 12
 _FAR_WORSE = 30.0  # in sum of squares
+_FAR_OFF = 100.0  # likewise, of a start that comes from another fit
+_OFFERS = 2
+_WELL_INSIDE = 5.0  # in natural coordinates
 _SAME_PLACE = 0.2  # in natural coordinates
 _SAME_COST = 1.005
-_APPROACH = Tolerance(cosine=1e-2, reduction=1e-3, step=2.0, iterations=25)
+APPROACH = Tolerance(cosine=1e-2, reduction=1e-3, step=2.0, iterations=16)
 # Near enough to compare models: the cost is then known to a few parts in 100,000.
-_COMPARE = Tolerance(cosine=1e-4, reduction=1e-6, iterations=60, damping=1e-2)
+_COMPARE = Tolerance(cosine=1e-4, reduction=1e-5, iterations=40, damping=1e-2)
 _SETTLE = Tolerance(damping=1e-3)
 
 
@@ -105,22 +108,29 @@ def better_of(first: Solution, second: Solution) -> Solution:
     )
 
 
-def _worth_going_on(near: Solution, rows: IndexArray) -> BoolArray:
-    """Of the approaches of each row (S,), which to follow to the end: those not far worse than the
-    best, and of several that arrived at one place only the best."""
-    order = np.lexsort((near.cost, rows))
+def _best_few(cost: FloatArray, rows: IndexArray, count: int) -> IndexArray:
+    """Places (K,) of the `count` least costs of each of `rows` (S,)."""
+    order = np.lexsort((cost, rows))
+    begins = np.searchsorted(rows[order], rows[order])
+    few: IndexArray = order[np.arange(order.size) - begins < count]
+    return few
+
+
+def _worth_going_on(theta: FloatArray, cost: FloatArray, rows: IndexArray) -> BoolArray:
+    """Of the places (S, P) near an optimum of each of `rows`, which to follow to the end: those not
+    far worse than the best, and of several that arrived at one place only the best."""
+    order = np.lexsort((cost, rows))
     best = np.full(int(rows.max()) + 1, np.inf)
-    np.minimum.at(best, rows, near.cost)
-    going = near.cost <= _FAR_WORSE * best[rows]
+    np.minimum.at(best, rows, cost)
+    going = cost <= _FAR_WORSE * best[rows]
     followed: dict[int, list[int]] = {}
     for i in order:
         if not going[i]:
             continue
         kept = followed.setdefault(int(rows[i]), [])
-        place = np.abs(near.theta[kept] - near.theta[i]).max(axis=1) < _SAME_PLACE
+        place = np.abs(theta[kept] - theta[i]).max(axis=1) < _SAME_PLACE
         # Starts of a model that is too rich end all along one flat valley, at one cost.
-        cost = near.cost[i] <= _SAME_COST * near.cost[kept]
-        if (place | cost).any():
+        if (place | (cost[i] <= _SAME_COST * cost[kept])).any():
             going[i] = False
         else:
             kept.append(int(i))
@@ -143,7 +153,7 @@ def approach(
         starts,
         low[rows],
         high[rows],
-        tolerance=_APPROACH,
+        tolerance=APPROACH,
         rows=rows,
         check=check,
     )
@@ -167,13 +177,28 @@ def finish(
     )
 
 
-def search(model: CoatingModel, batch: Batch, check: Callable[[], None] | None = None) -> Solution:
-    """The best fit of `model` to each spectrum of the batch, from the spectrum's own starts."""
+def search(
+    model: CoatingModel,
+    batch: Batch,
+    check: Callable[[], None] | None = None,
+    *,
+    offers: Sequence[FloatArray] | None = None,
+) -> Solution:
+    """The best fit of `model` to each spectrum of the batch, from the spectrum's own starts
+    and from its `offers` (K, P) that may lie near an optimum already."""
     offered = candidates(model, batch.frequency_hz, batch.impedance, batch.used)
     starts, rows = best_starts(batch.thinned().objective(model), offered, _STARTS)
     near = approach(model, batch, starts, rows, check)
-    going = _worth_going_on(near, rows)
-    found = finish(model, batch, near.theta[going], rows[going], check)
+    theta, cost = near.theta, near.cost
+    if offers is not None and any(map(len, offers)):
+        further = np.clip(np.concatenate(offers), *model.bounds)
+        place = np.repeat(np.arange(len(offers)), [len(offer) for offer in offers])
+        rough = batch.thinned().objective(model, logarithmic=True)
+        theta = np.concatenate([theta, further])
+        cost = np.concatenate([cost, rough.cost(further, place)])
+        rows = np.concatenate([rows, place])
+    going = _worth_going_on(theta, cost, rows)
+    found = finish(model, batch, theta[going], rows[going], check)
     return _best_of(found, rows[going], batch.impedance.shape[0])
 
 
@@ -188,26 +213,59 @@ def settle(
     return minimise(batch.objective(model), theta, low, high, tolerance=_SETTLE, check=check)
 
 
+def try_from_inside(
+    model: CoatingModel,
+    batch: Batch,
+    found: Solution,
+    check: Callable[[], None] | None = None,
+) -> Solution:
+    """Start rows that stopped at an end of their search once more from well inside it, and bring to
+    rest what is better: a step may have thrown them there, and the way back is easily missed."""
+    rows = np.flatnonzero(found.at_bound.any(axis=1))
+    if not rows.size:
+        return found
+    low, high = model.bounds
+    inside = np.minimum(_WELL_INSIDE, 0.25 * (high - low))
+    offers: list[FloatArray | None] = [None] * found.cost.size
+    for row in rows:
+        moved = np.clip(found.theta[row], low + inside, high - inside)
+        offers[row] = np.where(found.at_bound[row], moved, found.theta[row])[None, :]
+    again = ask_neighbours(model, batch, found, offers, check, follow_all=True)
+    if not (again.cost < found.cost).any():
+        return found
+    return better_of(found, settle(model, batch, again.theta, check))
+
+
 def ask_neighbours(
     model: CoatingModel,
     batch: Batch,
     found: Solution,
     neighbours: Sequence[FloatArray | None],
     check: Callable[[], None] | None = None,
+    *,
+    follow_all: bool = False,
 ) -> Solution:
     """Start once more from other solutions of the same model, (K, P) for each row or None, and keep
-    what is better."""
-    rows = [i for i, offer in enumerate(neighbours) if offer is not None and len(offer)]
-    if not rows:
+    what is better. Of those that start out not far worse than what was found, the best two of each
+    row are followed, or all."""
+    size = found.cost.size
+    counts = [0 if offer is None else len(offer) for offer in neighbours]
+    if not any(counts):
         return found
     low, high = model.bounds
     objective = batch.objective(model)
-    offers = [offer for offer in neighbours if offer is not None and len(offer)]
-    place = np.repeat(np.array(rows, dtype=np.intp), [len(offer) for offer in offers])
-    again = minimise(
-        objective, np.concatenate(offers), low, high, tolerance=_COMPARE, rows=place, check=check
-    )
-    best = _best_of(again, np.searchsorted(np.array(rows), place), len(rows))
+    offers = np.concatenate([offer for offer in neighbours if offer is not None and len(offer)])
+    place = np.repeat(np.arange(size), counts)
+    if not follow_all:
+        begins = objective.cost(np.clip(offers, low, high), place)
+        chosen = _best_few(begins, place, _OFFERS)
+        chosen = chosen[begins[chosen] < _FAR_OFF * found.cost[place[chosen]]]
+        offers, place = offers[chosen], place[chosen]
+    if not place.size:
+        return found
+    again = minimise(objective, offers, low, high, tolerance=_COMPARE, rows=place, check=check)
+    rows = np.unique(place)
+    best = _best_of(again, np.searchsorted(rows, place), rows.size)
     full = Solution(
         found.theta.copy(),
         np.full_like(found.cost, np.inf),

@@ -16,13 +16,10 @@ from coatgui.fitting.choice import choose_path, evidence
 from coatgui.fitting.limits import correlation_along, parameter_limits
 from coatgui.fitting.results import build_fit, film_capacitance
 from coatgui.fitting.rules import rule
-from coatgui.fitting.search import Batch, ask_neighbours, search, settle
+from coatgui.fitting.search import Batch, ask_neighbours, search, settle, try_from_inside
 from coatgui.fitting.solver import BoolArray, FloatArray, Solution
 from coatgui.fitting.starts import outline_start
 from coatgui.records import Fit, Spectrum, Trial
-
-# A simpler model that does as well as a richer one has nothing to learn from it.
-_WORTH_ASKING = 1.005
 
 
 @dataclass(frozen=True)
@@ -82,20 +79,19 @@ def _neighbours(task: Share, theta: FloatArray) -> list[FloatArray]:
     ]
 
 
-def _add_projected(
-    offers: list[FloatArray],
-    wanted: BoolArray,
-    groups: list[tuple[list[int], Batch]],
+def _projected(
+    group: int,
     model: CoatingModel,
-    richer: CoatingModel,
-    solutions: list[Solution],
-) -> None:
-    """Offer each `wanted` reading the richer model's solution with what `model` lacks left away."""
-    kept = [richer.index(symbol) for symbol in model.symbols]
-    for (own, _), found in zip(groups, solutions, strict=True):
-        for row, i in enumerate(own):
-            if wanted[i]:
-                offers[i] = np.concatenate([offers[i], found.theta[row : row + 1, kept]])
+    richer: list[CoatingModel],
+    solutions: dict[str, list[Solution]],
+) -> list[FloatArray] | None:
+    """For each reading of a group the richer models' solutions, with what `model` lacks left away;
+    None where no richer model has been fitted."""
+    kept = [
+        solutions[other.model_id][group].theta[:, [other.index(s) for s in model.symbols]]
+        for other in richer
+    ]
+    return list(np.stack(kept, axis=1)) if kept else None
 
 
 def fit_share(task: Share) -> list[Fit]:
@@ -131,6 +127,7 @@ def fit_share(task: Share) -> list[Fit]:
                 continue
             part = batch.rows(place)
             settled = settle(model, part, solutions[model.model_id][group].theta[place])
+            settled = try_from_inside(model, part, settled)
             limits = parameter_limits(model, part, settled)
             for row, where in enumerate(place):
                 i = own[where]
@@ -150,16 +147,20 @@ def _fit_models(
     capacitance = np.full((number, len(models)), np.nan)
     for k in sorted(range(len(models)), key=lambda k: -len(models[k].parameters)):
         model = models[k]
-        first = [search(model, batch) for _, batch in groups]
+        richer = [
+            other
+            for other in models
+            if other.model_id in solutions and set(model.symbols) < set(other.symbols)
+        ]
+        first = [
+            search(model, batch, offers=_projected(group, model, richer, solutions))
+            for group, (_, batch) in enumerate(groups)
+        ]
         theta = np.full((number, len(model.parameters)), np.nan)
         found_cost = np.full(number, np.inf)
         for (own, _), found in zip(groups, first, strict=True):
             theta[own], found_cost[own] = found.theta, found.cost
         offers = _neighbours(task, theta)
-        for j, richer in enumerate(models):
-            if richer.model_id in solutions and set(model.symbols) < set(richer.symbols):
-                behind = found_cost > _WORTH_ASKING * cost[:, j]
-                _add_projected(offers, behind, groups, model, richer, solutions[richer.model_id])
         if not solutions:
             _add_outlined(offers, found_cost, task, model)
         solutions[model.model_id] = [

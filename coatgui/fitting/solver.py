@@ -1,7 +1,7 @@
 """Least squares for many small problems at once: Levenberg–Marquardt with bounds, batched.
 
 Mathematics. Row i minimises S_i(θ) = Σ_m r_im(θ)² within low ≤ θ ≤ high. With J the Jacobian of r,
-A = JᵀJ and g = Jᵀr, a step δ solves (A + λ D) δ = −g, D the diagonal of A held above a floor.
+A = JᵀJ and g = Jᵀr, a step δ solves (A + λ D) δ = −g, D the diagonal of A.
 A parameter at a bound whose gradient points outward is taken out of the step; the step is clipped
 to the bounds. The gain ratio (S − S_new)/(predicted fall) steers λ after Nielsen (1999). A row ends
 when the cosine between r and every free column of J is small (the test of MINPACK, free of any
@@ -18,7 +18,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass
 from enum import IntEnum
-from typing import Any, Protocol
+from typing import Protocol
 
 import numpy as np
 from numpy.typing import NDArray
@@ -51,8 +51,8 @@ class Objective(Protocol):
     def normal(
         self, theta: FloatArray, rows: IndexArray
     ) -> tuple[FloatArray, FloatArray, FloatArray]:
-        """S (B,), g = Jᵀr (B, P) and A = JᵀJ (B, P, P) at `theta` (B, P) for problem `rows` (B,).
-        A row that cannot be evaluated there has an S that is not finite."""
+        """S (W,), g = Jᵀr (P, W) and A = JᵀJ (P, P, W) at `theta` (P, W) for problem `rows` (W,).
+        A row that cannot be evaluated there has an S or a g that is not finite."""
         ...
 
 
@@ -85,64 +85,100 @@ class Tolerance:
 
 
 _TINY = 1e-300
-_WORKING_SET = 512
+# Rows at work at once: enough to make the price of a call small for each of them, few enough for
+# their matrices to stay in the processor's cache.
+_WORKING_SET = 1024
 _FASTEST_EASING = 0.2
+# A pivot below this, of a matrix with a unit diagonal, is rounding.
+_SMALLEST_PIVOT = 1e-15
+_IMMOVABLE = 1e200
+_FEW = 96
+_GOING = -1
+
+
+def _diagonal(matrices: FloatArray) -> FloatArray:
+    """The diagonal (P, W) of (P, P, W), to be read and written."""
+    count, _, size = matrices.shape
+    return matrices.reshape(count * count, size)[:: count + 1]
 
 
 def _steps(
     normal: FloatArray, gradient: FloatArray, free: BoolArray, damping: FloatArray
 ) -> FloatArray:
-    """Damped steps (B, P); held parameters do not move. The system is scaled to a unit diagonal
-    first, so that parameters of very different size do not spoil the arithmetic."""
-    count = gradient.shape[1]
-    places = np.arange(count)
-    diagonal = normal[:, places, places]
-    moving = free & (diagonal > 0)  # a parameter without any effect stays where it is
-    scale = np.where(moving, 1.0 / np.sqrt(np.where(moving, diagonal, 1.0)), 0.0)
-    system = normal * (scale[:, :, None] * scale[:, None, :])
-    # The last term keeps an exact tie between parameters solvable.
-    system[:, places, places] = np.where(moving, 1.0 + damping[:, None] + 1e-15, 1.0)
-    right = -gradient * scale
-    scaled = np.linalg.solve(system, right[:, :, None])[:, :, 0]
-    return np.asarray(scaled * scale, dtype=np.float64)
+    """Damped steps (P, W); held parameters do not move.
 
-
-def _of_rows(values: NDArray[Any], rows: IndexArray) -> NDArray[Any]:
-    """The rows' own values, or the one row of values that all share."""
-    return values if values.shape[0] == 1 else values[rows]
-
-
-def _free(
-    theta: FloatArray, gradient: FloatArray, low: FloatArray, high: FloatArray, fixed: BoolArray
-) -> BoolArray:
-    return ~(fixed | ((theta <= low) & (gradient > 0)) | ((theta >= high) & (gradient < 0)))
+    Gaussian elimination over all W at once: a call of LAPACK for each takes several times as long.
+    Symmetric and positive, it needs no exchange of rows, and its rounding is the same whatever the
+    size of the parameters. A few systems are done sooner by LAPACK."""
+    count, size = gradient.shape
+    diagonal = _diagonal(normal)
+    system = normal.copy()
+    step = -gradient
+    # The last term keeps an exact tie between parameters solvable. A parameter without any effect
+    # stays where it is.
+    pivots = _diagonal(system)
+    np.multiply(diagonal, 1.0 + 1e-15 + damping, out=pivots)
+    pivots[~free | (diagonal <= 0)] = _IMMOVABLE
+    if size < _FEW:
+        try:
+            found = np.linalg.solve(system.transpose(2, 0, 1), step.T[:, :, None])
+            return np.asarray(found[:, :, 0].T, dtype=np.float64)
+        except np.linalg.LinAlgError:
+            pass  # one of them is singular to the last digit
+    smallest = _SMALLEST_PIVOT * diagonal
+    for j in range(count):
+        pivot = pivots[j]
+        np.maximum(pivot, smallest[j], out=pivot)
+        np.reciprocal(pivot, out=pivot)
+        if j + 1 < count:
+            row = system[j, j + 1 :]
+            below = row * pivot
+            system[j + 1 :, j + 1 :] -= below[:, None] * row
+            step[j + 1 :] -= below * step[j]
+    for j in reversed(range(count)):
+        own = step[j]
+        own *= pivots[j]
+        if j:
+            step[:j] -= system[:j, j] * own
+    return step
 
 
 class _Working:
-    """The rows at work: arrays of one length. Rows that end give their places to waiting ones."""
+    """The rows at work. Everything is kept with the row as its last axis, so that one operation
+    works on a run of numbers of all rows. Rows that end give their places to waiting ones."""
 
-    def __init__(self, rows: IndexArray, start: FloatArray, damping: float) -> None:
-        size, count = start.shape
+    def __init__(
+        self,
+        rows: IndexArray,
+        start: FloatArray,
+        low: FloatArray,
+        high: FloatArray,
+        fixed: BoolArray,
+        damping: float,
+    ) -> None:
+        count, size = start.shape
         self.rows = rows
+        self.low, self.high, self.fixed = low.copy(), high.copy(), fixed.copy()
         self.theta = start.copy()
         self.trial = start.copy()
         self.cost = np.full(size, np.inf)
-        self.normal = np.zeros((size, count, count))
-        self.gradient = np.zeros((size, count))
-        self.damping = np.full(size, damping)
+        self.normal = np.zeros((count, count, size))
+        self.gradient = np.zeros((count, size))
+        # The first evaluation counts as a gain, and eases the damping.
+        self.damping = np.full(size, damping / _FASTEST_EASING)
         self.growth = np.full(size, 2.0)
-        self.predicted = np.zeros(size)
+        self.predicted = np.ones(size)
         self.spent = np.zeros(size, dtype=np.int64)
 
     def replace(self, places: IndexArray, other: _Working) -> None:
         for name, value in vars(self).items():
-            value[places] = getattr(other, name)
+            value[..., places] = getattr(other, name)
 
     def remove(self, places: IndexArray) -> None:
         kept = np.ones(self.rows.size, dtype=np.bool_)
         kept[places] = False
         for name, value in vars(self).items():
-            setattr(self, name, value[kept])
+            setattr(self, name, value[..., kept])
 
 
 def minimise(
@@ -167,8 +203,8 @@ def minimise(
     tolerance = tolerance or Tolerance()
     size, count = start.shape
     rows = np.arange(size) if rows is None else rows
-    fixed = np.zeros((1, count), dtype=np.bool_) if fixed is None else fixed
-    low, high = np.atleast_2d(low), np.atleast_2d(high)
+    low, high = np.broadcast_to(low, start.shape), np.broadcast_to(high, start.shape)
+    held = np.broadcast_to(np.bool_(False) if fixed is None else fixed, start.shape)
     theta = np.clip(start, low, high)
     result = Solution(
         theta,
@@ -179,86 +215,84 @@ def minimise(
         np.zeros(size, dtype=np.int64),
         np.zeros((size, count), dtype=np.bool_),
     )
+
+    def begin(some: slice) -> _Working:
+        own = np.arange(size)[some]
+        return _Working(
+            own, theta[some].T, low[some].T, high[some].T, held[some].T, tolerance.damping
+        )
+
     begun = min(size, working_set)
-    work = _Working(np.arange(begun), theta[:begun], tolerance.damping)
+    work = begin(slice(0, begun))
     while work.rows.size:
         if check is not None:
             check()
-        own = work.rows
-        limits = (_of_rows(low, own), _of_rows(high, own), _of_rows(fixed, own))
-        status = _iterate(objective, work, rows[own], *limits, tolerance)
+        with np.errstate(all="ignore"):
+            status = _iterate(objective, work, rows[work.rows], tolerance)
         ended = np.flatnonzero(status >= 0)
         if ended.size:
-            place = own[ended]
-            result.theta[place] = work.theta[ended]
+            place = work.rows[ended]
+            result.theta[place] = work.theta[:, ended].T
             result.cost[place] = work.cost[ended]
-            result.normal[place] = work.normal[ended]
-            result.gradient[place] = work.gradient[ended]
+            result.normal[place] = work.normal[:, :, ended].transpose(2, 0, 1)
+            result.gradient[place] = work.gradient[:, ended].T
             result.iterations[place] = work.spent[ended]
             result.status[place] = status[ended]
-            waiting = np.arange(begun, min(size, begun + ended.size))
-            begun += waiting.size
-            if waiting.size:
-                fresh = _Working(waiting, theta[waiting], tolerance.damping)
-                work.replace(ended[: waiting.size], fresh)
-            if waiting.size < ended.size:
-                work.remove(ended[waiting.size :])
+            waiting = min(size - begun, ended.size)
+            if waiting:
+                work.replace(ended[:waiting], begin(slice(begun, begun + waiting)))
+                begun += waiting
+            if waiting < ended.size:
+                work.remove(ended[waiting:])
     at_bound = (result.theta <= low) | (result.theta >= high)
-    np.logical_and(at_bound, ~fixed, out=result.at_bound)
+    np.logical_and(at_bound, ~held, out=result.at_bound)
     return result
 
 
 def _iterate(
-    objective: Objective,
-    work: _Working,
-    rows: IndexArray,
-    low: FloatArray,
-    high: FloatArray,
-    fixed: BoolArray,
-    tolerance: Tolerance,
+    objective: Objective, work: _Working, rows: IndexArray, tolerance: Tolerance
 ) -> NDArray[np.int64]:
-    """Evaluate the trial points, accept or refuse them, and set the next ones. Returns (B,) the
+    """Evaluate the trial points, accept or refuse them, and set the next ones. Returns (W,) the
     status of rows that have ended, −1 for the others."""
     cost, gradient, normal = objective.normal(work.trial, rows)
     work.spent += 1
-    finite = np.isfinite(cost) & np.isfinite(gradient).all(axis=1)
-    first = ~np.isfinite(work.cost)
-    with np.errstate(divide="ignore", invalid="ignore"):
-        fall = np.where(first, np.inf, work.cost - np.where(finite, cost, np.inf))
-        better = finite & (fall > 0)
-        gain = np.where(first | (work.predicted <= 0), 1.0, fall / work.predicted)
-        small = better & ~first & (fall <= tolerance.reduction * work.cost)
+    fall = work.cost - cost
+    better = (fall > 0) & np.isfinite(cost + gradient.sum(axis=0))
     # Nielsen's rule: trust grows smoothly with the gain, and shrinks ever faster on refusals.
-    easing = np.maximum(_FASTEST_EASING, 1.0 - (2.0 * np.clip(gain, -1.0, 1.5) - 1.0) ** 3)
-    work.damping = np.where(
-        better, np.where(first, work.damping, work.damping * easing), work.damping * work.growth
-    )
-    work.damping = np.maximum(work.damping, 1e-15)
-    work.growth = np.where(better, 2.0, work.growth * 2.0)
-    work.theta[better] = work.trial[better]
-    work.cost[better] = cost[better]
-    work.gradient[better] = gradient[better]
-    work.normal[better] = normal[better]
-
-    free = _free(work.theta, work.gradient, low, high, fixed)
-    count = work.theta.shape[1]
-    with np.errstate(invalid="ignore"):
-        scale = np.sqrt(work.normal[:, np.arange(count), np.arange(count)] * work.cost[:, None])
-        cosine = np.where(
-            free & (scale > 0), np.abs(work.gradient) / np.maximum(scale, _TINY), 0.0
-        ).max(axis=1)
-    status = np.full(work.rows.size, -1, dtype=np.int64)
-    status[work.spent >= tolerance.iterations] = Status.ITERATIONS
-    status[(work.damping > 1e12) | (first & ~finite)] = Status.STUCK
-    status[small] = Status.REDUCTION
-    status[np.isfinite(work.cost) & (cosine <= tolerance.cosine)] = Status.GRADIENT
-    status[work.cost <= _TINY] = Status.GRADIENT
+    gain = 2.0 * np.minimum(fall / np.maximum(work.predicted, _TINY), 1.5) - 1.0
+    easing = np.maximum(1.0 - gain * gain * gain, _FASTEST_EASING)
+    work.damping *= np.where(better, easing, work.growth)
+    np.maximum(work.damping, 1e-15, out=work.damping)
+    work.growth = np.where(better, 2.0, 2.0 * work.growth)
+    np.copyto(work.theta, work.trial, where=better)
+    np.copyto(work.cost, cost, where=better)
+    np.copyto(work.gradient, gradient, where=better)
+    np.copyto(work.normal, normal, where=better)
+    small = better & (fall <= tolerance.reduction * work.cost)
+    outward = (work.theta <= work.low) & (work.gradient > 0)
+    outward |= (work.theta >= work.high) & (work.gradient < 0)
+    free = ~(work.fixed | outward)
+    cosine = work.gradient * work.gradient
+    cosine /= np.maximum(_diagonal(work.normal) * work.cost, _TINY)
+    cosine *= free
+    settled = (cosine.max(axis=0) <= tolerance.cosine**2) | (work.cost <= _TINY)
+    stuck = (work.damping > 1e12) | np.isinf(work.cost)
+    status = np.where(work.spent >= tolerance.iterations, Status.ITERATIONS, _GOING)
+    for ended, why in (
+        (stuck, Status.STUCK),
+        (small, Status.REDUCTION),
+        (settled, Status.GRADIENT),
+    ):
+        status[ended] = why
 
     # Rows that have ended take part once more: sorting them out would cost as much.
     step = _steps(work.normal, work.gradient, free, work.damping)
-    np.clip(step, -tolerance.step, tolerance.step, out=step)
-    np.clip(work.theta + step, low, high, out=work.trial)
+    step = np.maximum(np.minimum(step, tolerance.step), -tolerance.step)
+    step += work.theta
+    np.minimum(np.maximum(step, work.low), work.high, out=work.trial)
     step = work.trial - work.theta
-    curved = np.einsum("bij,bj->bi", work.normal, step)
-    work.predicted = -(step * (2.0 * work.gradient + curved)).sum(axis=1)
+    curved = (work.normal * step).sum(axis=1)
+    curved += 2.0 * work.gradient
+    curved *= step
+    work.predicted = -curved.sum(axis=0)
     return status

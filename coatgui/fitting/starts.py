@@ -1,12 +1,13 @@
 """Starting values from the spectrum itself.
 
 A two-layer panel seen from the fast end: the film's capacitance is what the highest frequencies
-show, the pore resistance is near |Z| where one arc gives way to the next, the interface's
-capacitance is what the slow end shows, and the resistances add up to about |Z| at the slowest
-point or are far above it. Where the arcs meet is not known, so several places are tried: every
-combination becomes a candidate, a symmetric misfit ranks them, and the best few are fitted. It is
-symmetric because the ordinary residual saturates at 1 where a model is far too small, and so cannot
-tell bad from worse.
+show and its exponent the slope there, the pore resistance is near |Z| where one arc gives way to
+the next, the interface's capacitance is what the slow end shows, and the resistances add up to
+about |Z| at the slowest point or are far above it. The arcs meet where the phase comes nearest to
+zero between two extrema; but it may show none, or more than two, so several other places are tried
+as well. Every combination becomes a candidate, a symmetric misfit ranks them, and the best few are
+fitted. It is symmetric because the ordinary residual saturates at 1 where a model is far too small,
+and so cannot tell bad from worse.
 """
 
 from __future__ import annotations
@@ -25,6 +26,7 @@ _SPLITS = (0.15, 0.3, 0.45, 0.6, 0.75)
 _SLOW_FACTORS = (1.0, 8.0)
 _FAST_CAPACITANCES = ("parallel", "series")
 _FILM_EXPONENTS = (0.96, 0.82)
+_LEAST_EXPONENT = 0.7
 _LEAST_VISIBLE = 1e-4  # of |Z|; no instrument of the trade resolves as little
 
 
@@ -38,14 +40,47 @@ class _Spectra:
         self.count = used.sum(axis=1)
         # Places of the used points, in order, padded at the end by the last of them.
         self.order = np.argsort(~used, axis=1, kind="stable")
+        self._rows = np.arange(impedance.shape[0])
+        self._kept: dict[float | bytes, tuple[ComplexArray, FloatArray]] = {}
 
-    def at(self, share: float) -> tuple[ComplexArray, FloatArray]:
-        """Impedance and angular frequency at a share of the used points, 0 the fastest."""
-        place = np.rint(share * (self.count - 1)).astype(np.intp)
-        index = np.take_along_axis(self.order, place[:, None], axis=1)
-        return np.take_along_axis(self.impedance, index, axis=1)[:, 0], self.omega[index[:, 0]]
+    def meeting(self) -> FloatArray:
+        """Share (B,) of the used points at which two arcs meet: where |phase| lies deepest between
+        a higher one on either side; one half where it lies so nowhere."""
+        in_order = np.take_along_axis(self.impedance, self.order, axis=1)
+        phase = np.abs(np.angle(in_order))
+        padded = np.pad(phase, ((0, 0), (1, 1)), mode="edge")
+        count = phase.shape[1]
+        smooth = (padded[:, :count] + phase + padded[:, 2:]) / 3.0
+        faster = np.maximum.accumulate(smooth, axis=1)
+        slower = np.maximum.accumulate(smooth[:, ::-1], axis=1)[:, ::-1]
+        depth = np.minimum(faster, slower) - smooth
+        deepest = np.argmax(depth, axis=1)
+        place = np.where(
+            depth[np.arange(deepest.size), deepest] > 0, deepest, 0.5 * (self.count - 1)
+        )
+        share: FloatArray = place / np.maximum(self.count - 1, 1)
+        return share
 
-    def capacitance(self, share: float, form: str) -> tuple[FloatArray, FloatArray]:
+    def at(self, share: float | FloatArray) -> tuple[ComplexArray, FloatArray]:
+        """Impedance and angular frequency at a share of the used points, 0 the fastest. Many
+        candidates ask for the same places, so answers are kept."""
+        key = share if isinstance(share, float) else share.tobytes()
+        if key not in self._kept:
+            place = np.rint(share * (self.count - 1)).astype(np.intp)
+            index = self.order[self._rows, place]
+            self._kept[key] = self.impedance[self._rows, index], self.omega[index]
+        return self._kept[key]
+
+    def fast_slope(self) -> FloatArray:
+        """−d ln|Z|/d ln ω (B,) over the fast fifth of the used points: the exponent of a film that
+        is all that shows there."""
+        (fast, omega_fast), (slow, omega_slow) = self.at(0.05), self.at(0.2)
+        with np.errstate(divide="ignore", invalid="ignore"):
+            slope = np.log(np.abs(slow) / np.abs(fast)) / np.log(omega_fast / omega_slow)
+        likely: FloatArray = np.clip(np.nan_to_num(slope, nan=1.0), _LEAST_EXPONENT, 1.0)
+        return likely
+
+    def capacitance(self, share: float | FloatArray, form: str) -> tuple[FloatArray, FloatArray]:
         """Capacitance in F as the series or parallel form reads it there, and ω."""
         z, omega = self.at(share)
         modulus = np.abs(z)
@@ -56,7 +91,12 @@ class _Spectra:
 
 
 def _values(
-    model: CoatingModel, outline: _Spectra, split: float, slow: float, fast: str, film_n: float
+    model: CoatingModel,
+    outline: _Spectra,
+    split: FloatArray,
+    slow: float,
+    fast: str,
+    film_n: FloatArray,
 ) -> FloatArray:
     """One candidate (B, P) of physical values."""
     fastest, _ = outline.at(0.0)
@@ -70,7 +110,7 @@ def _values(
         if inner:
             # Where the slow arc closes within the sweep, its capacitance shows soon after the arcs
             # meet; where it does not close, at the slow end.
-            place = split if layers == 1 else 0.9 if slow > 1.0 else min(split + 0.15, 0.9)
+            place = split if layers == 1 else 0.9 if slow > 1.0 else np.minimum(split + 0.15, 0.9)
             capacitance, omega = outline.capacitance(place, "series")
         else:
             capacitance, omega = outline.capacitance(0.05, fast)
@@ -86,7 +126,7 @@ def _values(
         elif spec.kind is Kind.CONSTANT_PHASE:
             value = capacitance * omega ** (1.0 - exponent)
         elif spec.kind is Kind.EXPONENT:
-            value = np.full(capacitance.shape, exponent)
+            value = np.broadcast_to(exponent, capacitance.shape)
         elif spec.kind is Kind.WARBURG:
             value = np.abs(slowest) * np.sqrt(omega_slow / 2.0) / slow
         elif spec.kind is Kind.TIME:
@@ -107,14 +147,35 @@ def candidates(
     """Candidates (S, K, B, P) in natural coordinates: B spectra, S places where arcs may meet."""
     outline = _Spectra(frequency_hz, impedance, used)
     single = len(model.layers) == 1
-    splits: tuple[float, ...] = (0.25, 0.5, 0.75) if single else _SPLITS
+    places: tuple[float, ...] = (0.25, 0.5, 0.75) if single else _SPLITS
     if single and model.layers[0].role != "interface":
-        splits = (0.5,)
-    others = tuple(product(_SLOW_FACTORS, _FAST_CAPACITANCES, _FILM_EXPONENTS))
+        places = (0.5,)
+    splits = np.tile(np.array(places)[:, None], (1, impedance.shape[0]))
+    exponents = np.full(splits.shape, _FILM_EXPONENTS[1])
+    if not single:
+        # Where the spectrum itself says where arcs meet, that takes the place of the nearest guess;
+        # and there the slope says the exponent.
+        meeting = outline.meeting()
+        nearest = np.argmin(np.abs(splits - meeting), axis=0), np.arange(meeting.size)
+        splits[nearest] = meeting
+        exponents[nearest] = outline.fast_slope()
+    others = tuple(product(_SLOW_FACTORS, _FAST_CAPACITANCES, (False, True)))
     return np.array(
         [
-            [model.natural(_values(model, outline, split, *other)) for other in others]
-            for split in splits
+            [
+                model.natural(
+                    _values(
+                        model,
+                        outline,
+                        split,
+                        slow,
+                        fast,
+                        exponent if other else np.full(split.shape, _FILM_EXPONENTS[0]),
+                    )
+                )
+                for slow, fast, other in others
+            ]
+            for split, exponent in zip(splits, exponents, strict=True)
         ]
     )
 
@@ -127,11 +188,10 @@ def best_starts(
     minimum, so it is the places that must differ.
 
     Returns starts (B·count, P) and the row of each."""
-    places, trials, size, _ = offered.shape
+    places, trials, size, count_p = offered.shape
     rows = np.arange(size)
-    costs = np.stack(
-        [[objective.misfit(offered[s, k], rows) for k in range(trials)] for s in range(places)]
-    )
+    every = objective.misfit(offered.reshape(-1, count_p), np.tile(rows, places * trials))
+    costs = every.reshape(places, trials, size)
     costs = np.where(np.isfinite(costs), costs, np.inf)
     within = np.argmin(costs, axis=1)
     cheapest = np.min(costs, axis=1)

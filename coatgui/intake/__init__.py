@@ -1,5 +1,6 @@
 """Reading what the laboratory hands over: spectra and refusals, never a half-read spectrum."""
 
+from coatgui.intake.corrections import corrections_table, read_corrections
 from coatgui.intake.errors import Unclear, Unreadable
 from coatgui.intake.folder import (
     SPECTRUM_ENDINGS,
@@ -27,11 +28,13 @@ __all__ = [
     "Unclear",
     "Unreadable",
     "UnreadableFolder",
+    "corrections_table",
     "first_guess",
     "propose_files",
     "propose_folder",
     "read_again",
     "read_as_told",
+    "read_corrections",
     "read_files",
     "read_folder",
     "read_lists",

@@ -14,6 +14,7 @@ from coatgui.intake.lists import ListedReading
 from coatgui.intake.names import NameSays, panel_and_hours
 from coatgui.intake.proposals import Correction, Told
 from coatgui.intake.spectra import Piece
+from coatgui.intake.units import kind_of
 from coatgui.records import FoundPanel, FoundReading, Source, Spectrum
 
 _START_COLUMNS = ("start", "exposure_start", "start_of_exposure")
@@ -195,12 +196,17 @@ def _per_specimen(piece: Piece, panel: str, known: Known) -> Piece:
             "area_cm2 to panels.csv, or export the values in Ω."
         )
     way = next(w for w in WAYS if {c.role for c in piece.dialect.columns} >= set(w))
-    scale = 1.0 / area if way[0] in ("real", "modulus", "log_modulus") else area
     columns = tuple(
-        replace(c, factor=c.factor * scale) if c.role in way and not c.role.endswith("phase") else c
+        replace(c, factor=c.factor * _of_specimen(c.role, area)) if c.role in way else c
         for c in piece.dialect.columns
     )
     remark = f"The values are per area and were divided by the panel's {area:g} cm²."
     dialect = replace(piece.dialect, columns=columns, remarks=(*piece.dialect.remarks, remark))
     spectrum = Spectrum(piece.spectrum.frequency_hz, piece.spectrum.impedance_ohm / area)
     return replace(piece, spectrum=spectrum, dialect=dialect, per_area=False)
+
+
+def _of_specimen(role: str, area_cm2: float) -> float:
+    """What a written value per area is multiplied with; phases are the same for any area."""
+    kind = kind_of(role.removeprefix("log_"))
+    return {"impedance": 1.0 / area_cm2, "angle": 1.0}.get(kind, area_cm2)

@@ -113,7 +113,7 @@ def _distance(frequency: FloatArray, modulus: FloatArray, phase: FloatArray) -> 
     order = np.argsort(frequency, kind="stable")
     f, size, angle = frequency[order], modulus[order], phase[order]
     once = np.concatenate([[True], np.diff(f) > 0])
-    if once.sum() < 5:
+    if once.sum() < 5 or not (np.isfinite(f) & np.isfinite(size)).all():
         return float("inf")
     wanted = expected_phase(f[once], size[once])
     return float(np.median(np.abs(wanted - angle[once])))

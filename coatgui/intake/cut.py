@@ -8,6 +8,7 @@ from collections import Counter
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
+from coatgui.intake.complex_cells import holds_complex, opener, pairs_in
 from coatgui.intake.errors import NoSpectrum, Unclear
 from coatgui.intake.numbers import Style, looks_numeric, number, style_of
 
@@ -20,12 +21,15 @@ NOTHING = "The file holds no table of numbers: nothing to read."
 
 @dataclass(frozen=True, slots=True)
 class Cut:
-    """A way to cut lines. `split` gives the cells of one line, trimmed, without empty last ones."""
+    """A way to cut lines. `pairs` are where the real parts of complex numbers stand, which are one
+    cell in the file and two once it is cut."""
 
     delimiter: str
     style: Style
+    pairs: tuple[int, ...] = ()
 
     def splitter(self) -> Callable[[str], list[str]]:
+        """Gives the cells of one line, trimmed, without empty last ones."""
         return _splitter(self.delimiter)
 
 
@@ -55,21 +59,32 @@ def find_cut(sample: Sequence[str], delimiter: str = "", decimal_sign: str = "")
     hint = next((_HINT.match(line) for line in sample[:1]), None)
     wanted: Sequence[str] = (delimiter,) if delimiter else (hint[1],) if hint else _DELIMITERS
     best: list[tuple[float, int, Cut]] = []
+    opened: Sequence[str]
     unclear: Unclear | None = None
     for place, candidate in enumerate(wanted):
         if candidate != BLANKS and not any(candidate in line for line in sample):
             continue
+        is_complex = holds_complex(sample, candidate)
+        opened = list(map(opener(candidate), sample)) if is_complex else sample
         try:
-            scored = _score(sample, candidate, decimal_sign)
+            scored = _score(opened, candidate, decimal_sign)
         except Unclear as question:
             unclear = unclear or question
             continue
         if scored is not None:
             score, style = scored
-            best.append((score, -place, Cut(candidate, style)))
+            pairs = _usual_pairs(sample, candidate) if is_complex else ()
+            best.append((score, -place, Cut(candidate, style, pairs)))
     if not best:
         raise unclear or NoSpectrum(NOTHING)
     return max(best, key=lambda entry: entry[:2])[2]
+
+
+def _usual_pairs(sample: Sequence[str], delimiter: str) -> tuple[int, ...]:
+    split = _splitter(delimiter)
+    found = Counter(pairs_in(line, delimiter, split) for line in sample)
+    del found[()]
+    return found.most_common(1)[0][0] if found else ()
 
 
 def _score(sample: Sequence[str], delimiter: str, decimal_sign: str) -> tuple[float, Style] | None:

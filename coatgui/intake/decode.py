@@ -11,6 +11,7 @@ from coatgui.intake.errors import Unreadable
 LARGEST_FILE = 200_000_000
 LONGEST_LINE = 100_000
 _CHUNK = 1 << 20
+_CHARACTERS = 1 << 17
 _NOT_TEXT = "The file is not text: export the table as text."
 _MARKS = (
     (codecs.BOM_UTF8, "utf-8-sig"),
@@ -63,11 +64,19 @@ def lines_of(data: bytes, encoding: str) -> Iterator[str]:
     # The bytes are shared, not copied; text is made as it is asked for.
     text = io.TextIOWrapper(io.BytesIO(data), encoding=encoding, errors="replace", newline=None)
     number = 0
-    while line := text.readline(LONGEST_LINE):
-        number += 1
-        if len(line) == LONGEST_LINE and not line.endswith("\n"):
-            raise Unreadable(f"Line {number} is longer than {LONGEST_LINE} characters: no table.")
-        yield line.rstrip("\n")
+    rest = ""
+    while chunk := text.read(_CHARACTERS):
+        lines = (rest + chunk).split("\n")
+        rest = lines.pop()
+        if len(rest) >= LONGEST_LINE or (lines and max(map(len, lines)) >= LONGEST_LINE):
+            long = next(i for i, line in enumerate([*lines, rest], 1) if len(line) >= LONGEST_LINE)
+            raise Unreadable(
+                f"Line {number + long} is longer than {LONGEST_LINE} characters: no table."
+            )
+        number += len(lines)
+        yield from lines
+    if rest:
+        yield rest
 
 
 def decode(data: bytes) -> tuple[str, str]:

@@ -104,10 +104,10 @@ def extracts_of(section: Section) -> list[Extract]:
 def _headings_not_understood(section: Section) -> str:
     """A row of words, one over each column, right above the numbers."""
     row = section.between[-1] if section.between else None
-    if row is None or section.block.lines[0] - row.line > 2 or section.block.width < 3:
+    if row is None or section.block.lines[0] - row.line > 2:
         return ""
     words = [cell for cell in row.cells if isinstance(cell, str) and cell]
-    return ", ".join(words) if len(words) >= section.block.width else ""
+    return ", ".join(words) if len(words) >= section.written else ""
 
 
 def _columns(section: Section, group: list[int]) -> tuple[tuple[Column, ...], bool, list[str]]:

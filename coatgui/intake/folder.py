@@ -15,15 +15,18 @@ from coatgui.intake.decode import LARGEST_FILE
 from coatgui.intake.errors import Unclear, Unreadable
 from coatgui.intake.lists import ListedReading, read_panels, read_readings
 from coatgui.intake.proposals import Correction, DryRun, Proposal, Standing, Told
+from coatgui.intake.ratings_list import read_ratings
 from coatgui.intake.reading import read_as_told, read_spectra
 from coatgui.intake.spectra import Piece
 from coatgui.intake.template import read_lists
 from coatgui.intake.workbook import is_workbook
 from coatgui.progress import Progress
-from coatgui.records import Found, FoundPanel, FoundReading, Refusal, Source, Spectrum
+from coatgui.records import Found, FoundPanel, FoundRating, FoundReading, Refusal, Source, Spectrum
 
 SPECTRUM_ENDINGS = (".csv", ".txt", ".dat", ".tsv", ".xlsx")
-_PANEL_LIST, _READINGS_LIST, _OPEN_LEAD = "panels.csv", "readings.csv", "open_lead"
+_PANEL_LIST, _READINGS_LIST, _RATINGS_LIST = "panels.csv", "readings.csv", "ratings.csv"
+_OPEN_LEAD = "open_lead"
+_LISTS = (_PANEL_LIST, _READINGS_LIST, _RATINGS_LIST)
 _DEEPEST = 12
 _MOST_FILES = 50_000
 _MOST_BYTES = 2_000_000_000
@@ -65,10 +68,15 @@ def read_files(
 
 
 def propose_files(
-    files: Sequence[Path], *, told: Told | None = None, progress: Progress | None = None
+    files: Sequence[Path],
+    *,
+    below: Path | None = None,
+    told: Told | None = None,
+    progress: Progress | None = None,
 ) -> DryRun:
-    """What `read_files` would make of every file."""
-    return _Run(None, told or Told()).over(list(files), progress or Progress())
+    """What `read_files` would make of every file. Files in a folder `below` which they are chosen
+    have the names that they would have if all of it were read."""
+    return _Run(below, told or Told(), chosen=True).over(list(files), progress or Progress())
 
 
 def files_in(folder: Path) -> Iterator[Path]:
@@ -96,11 +104,12 @@ def files_in(folder: Path) -> Iterator[Path]:
 class _Run:
     """Going through files once, collecting proposals and the find at the same time."""
 
-    def __init__(self, folder: Path | None, told: Told) -> None:
-        self._folder = folder
+    def __init__(self, folder: Path | None, told: Told, *, chosen: bool = False) -> None:
+        self._folder, self._chosen = folder, chosen
         self._told = told
         self._panels: tuple[FoundPanel, ...] = ()
         self._listed: dict[tuple[str, str], ListedReading] = {}
+        self._ratings: tuple[FoundRating, ...] = ()
         self._open_lead: tuple[Spectrum, Source] | None = None
         self._readings: list[FoundReading] = []
         self._refused: dict[Refusal, None] = {}
@@ -113,7 +122,7 @@ class _Run:
         # What lists say is needed for all others; a workbook may hold lists.
         lists_first = sorted(
             files,
-            key=lambda p: p.name not in (_PANEL_LIST, _READINGS_LIST) and p.suffix != ".xlsx",
+            key=lambda p: p.name not in _LISTS and p.suffix != ".xlsx",
         )
         for number, path in enumerate(lists_first):
             progress.at("Reading files", number, len(files))
@@ -130,19 +139,22 @@ class _Run:
             self._open_lead,
             tuple(self._refused),
             self._raw,
+            self._ratings,
         )
         proposals = sorted(self._proposals, key=lambda p: order.get(p.file, len(order)))
         return DryRun(tuple(proposals), found)
 
     def _name(self, path: Path) -> str:
-        return path.name if self._folder is None else path.relative_to(self._folder).as_posix()
+        if self._folder is None or not path.is_relative_to(self._folder):
+            return path.name
+        return path.relative_to(self._folder).as_posix()
 
     def _take(self, path: Path) -> None:
         name = self._name(path)
         if self._told.about(name, "").leave_out:
             self._propose(name, Standing.LEFT_OUT, "nothing")
             return
-        expected = path.suffix.casefold() in SPECTRUM_ENDINGS or self._folder is None
+        expected = path.suffix.casefold() in SPECTRUM_ENDINGS or self._chosen
         try:
             self._read(path, name)
         except Unclear as question:
@@ -163,9 +175,14 @@ class _Run:
         if path.name == _READINGS_LIST:
             self._take_listed(read_readings(data, name), name)
             return
-        if is_workbook(data) and (lists := read_lists(data)) is not None:
+        if path.name == _RATINGS_LIST:
+            self._take_ratings(read_ratings(data, name), name)
+            return
+        if is_workbook(data) and (lists := read_lists(data, name)) is not None:
             self._take_panels(lists.panels, name)
             self._take_listed(lists.readings, name)
+            if lists.ratings:
+                self._take_ratings(lists.ratings, name)
             return
         digest = hashlib.sha256(data).hexdigest()
         if digest in self._first_of:
@@ -200,6 +217,10 @@ class _Run:
     def _take_listed(self, listed: dict[tuple[str, str], ListedReading], name: str) -> None:
         self._listed.update(listed)
         self._propose(name, Standing.LIST, f"a list of {_count(len(listed), 'reading')}")
+
+    def _take_ratings(self, ratings: tuple[FoundRating, ...], name: str) -> None:
+        self._ratings += ratings
+        self._propose(name, Standing.LIST, f"a list of {_count(len(ratings), 'rating')}")
 
     def _take_open_lead(self, piece: Piece, name: str, digest: str) -> None:
         if piece.per_area:

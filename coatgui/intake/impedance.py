@@ -1,7 +1,8 @@
 """From columns with a meaning to impedance: which columns are used, and what is made of them.
 
 Conventions for `values`: a capacitor has a negative imaginary part and phase of Z, a positive
-imaginary part and phase of Y, and C* = C' − jC" with C" > 0 for a loss.
+imaginary part and phase of Y, and C* = C' − jC" with C" > 0 for a loss. A bridge's equivalent
+circuits are Y = 1/R_p + jωC_p (or G + jωC_p) in parallel and Z = R_s + 1/(jωC_s) in series.
 """
 
 from __future__ import annotations
@@ -21,6 +22,9 @@ WAYS = (
     ("admittance_real", "admittance_imaginary"),
     ("admittance_modulus", "admittance_phase"),
     ("capacitance_real", "capacitance_imaginary"),
+    ("parallel_resistance", "parallel_capacitance"),
+    ("series_resistance", "series_capacitance"),
+    ("admittance_real", "parallel_capacitance"),
 )
 FREQUENCY_ROLES = ("frequency", "angular_frequency", "log_frequency", "log_angular_frequency")
 # Roles whose sign files disagree about, with the sign that a capacitive panel gives them.
@@ -65,8 +69,14 @@ def impedance_of(
             result = np.where(first > 0, first, np.nan) * np.exp(1j * second)
         elif way[0] == "real":
             result = first + 1j * second
-        elif way[0] == "admittance_real":
+        elif way == ("admittance_real", "admittance_imaginary"):
             result = 1.0 / (first + 1j * second)
+        elif way == ("parallel_resistance", "parallel_capacitance"):
+            result = 1.0 / (1.0 / first + 2j * np.pi * frequency_hz * second)
+        elif way[0] == "series_resistance":
+            result = first + 1.0 / (2j * np.pi * frequency_hz * second)
+        elif way[1] == "parallel_capacitance":
+            result = 1.0 / (first + 2j * np.pi * frequency_hz * second)
         elif way[0] == "admittance_modulus":
             result = np.exp(-1j * second) / np.where(first > 0, first, np.nan)
         else:

@@ -19,6 +19,18 @@ _KINDS = ("frequency", "angular_frequency", "impedance", "admittance", "capacita
 _ROWS_LOOKED_AT = 8
 _ROWS_WITH_UNITS = 60
 _MOST_WORDS_IN_HEADINGS = 60
+_LONGEST_WITH_UNITS = 1_000
+_PARTINGS = (
+    ("\t", r"\t+"),
+    (" ", r"\s{2,}|\t"),
+    (";", r"\s*;\s*"),
+    (",", r"\s*,\s*"),
+    ("|", r"\s*\|\s*"),
+)
+_OF_COMPLEX = {
+    "modulus": ("real", "imaginary"),
+    "admittance_modulus": ("admittance_real", "admittance_imaginary"),
+}
 _KEY_AND_VALUE = re.compile(r"^\s*([^:=]{1,40}?)\s*[:=]\s*(\S.*)$")
 
 
@@ -35,7 +47,8 @@ class Said:
 @dataclass(eq=False)
 class Section:
     """A block of numbers with the meaning of its columns (None where unknown). `groups` are the
-    columns that belong together, with what is said of each; without headings there are none."""
+    columns that belong together, with what is said of each; without headings there are none.
+    `written` is how many columns the file itself has."""
 
     block: Block
     headings: tuple[str, ...]
@@ -44,12 +57,15 @@ class Section:
     said: Said
     units: dict[str, Unit]
     own_headings: bool
+    written: int
     between: list[TextRow] = field(default_factory=list)
 
 
-def sections_of(pieces: Sequence[Piece]) -> tuple[list[Section], list[TextRow]]:
+def sections_of(
+    pieces: Sequence[Piece], pairs: Sequence[int] = ()
+) -> tuple[list[Section], list[TextRow]]:
     """Every block of at least one row under headings, or of at least three rows, and the rows that
-    follow the last one."""
+    follow the last one. `pairs` are where the real parts of complex numbers stand."""
     sections: list[Section] = []
     rows: list[TextRow] = []
     units: dict[str, Unit] = {}
@@ -60,7 +76,7 @@ def sections_of(pieces: Sequence[Piece]) -> tuple[list[Section], list[TextRow]]:
         for row in rows[-_ROWS_WITH_UNITS:]:
             units = {**units, **_units_in(row)}
         previous = sections[-1] if sections else None
-        section = _section(piece, rows, units, previous)
+        section = _section(piece, rows, units, previous, pairs)
         if section is None:
             rows += piece.first  # a row or two of numbers in a preamble
             continue
@@ -71,9 +87,14 @@ def sections_of(pieces: Sequence[Piece]) -> tuple[list[Section], list[TextRow]]:
 
 
 def _section(
-    block: Block, rows: list[TextRow], units: dict[str, Unit], previous: Section | None
+    block: Block,
+    rows: list[TextRow],
+    units: dict[str, Unit],
+    previous: Section | None,
+    pairs: Sequence[int],
 ) -> Section | None:
-    place, headings, meanings = _find_headings(rows, block.width)
+    pairs = [i for i in pairs if i + 1 < block.width]
+    place, headings, meanings = _find_headings(rows, block.width, pairs)
     above = rows if place is None else rows[:place]
     if place is None:
         if previous is not None and previous.block.width == block.width:
@@ -82,13 +103,14 @@ def _section(
             return None
     else:
         for row in rows[place + 1 :]:
-            _take_units(meanings, row, block.width)
+            _take_units(meanings, row, block.width, pairs)
     said = _said(above, bare=place is None or previous is not None)
     if place is not None and said.hours is None:
         said = _with_label_below(said, rows[place + 1 :])
-    labels = _labels_above(above, rows[place].line if place is not None else None)
+    labels = _labels_above(above, rows[place].line if place is not None else None, pairs)
     groups = _groups(meanings, labels) if any(meanings) else []
-    return Section(block, headings, meanings, groups, said, dict(units), place is not None)
+    written = block.width - len(pairs)
+    return Section(block, headings, meanings, groups, said, dict(units), place is not None, written)
 
 
 # ---------------------------------------------------------------------------------------------
@@ -96,12 +118,14 @@ def _section(
 
 
 def _find_headings(
-    rows: list[TextRow], width: int
+    rows: list[TextRow], width: int, pairs: Sequence[int]
 ) -> tuple[int | None, tuple[str, ...], list[Meaning | None]]:
     """The row of headings nearest to the block, as its place among the rows."""
     for place in range(len(rows) - 1, max(len(rows) - _ROWS_LOOKED_AT, 0) - 1, -1):
-        for cells in _alignments(rows[place], width):
+        for cells in _alignments(rows[place], width, pairs):
             found = [meaning(cell) if cell else None for cell in cells]
+            for i in pairs:
+                found[i : i + 2] = _parts_of(found[i])
             roles = [m.role for m in found if m is not None]
             values = sum(role not in (*FREQUENCIES, *SHARED) for role in roles)
             if values >= 2 or (values and any(role in FREQUENCIES for role in roles)):
@@ -110,20 +134,38 @@ def _find_headings(
     return None, ("",) * width, none
 
 
-def _alignments(row: TextRow, width: int) -> list[list[str]]:
+def _parts_of(what: Meaning | None) -> list[Meaning | None]:
+    """What the two columns are that one heading over complex numbers means."""
+    if what is None or what.logarithm or what.role not in _OF_COMPLEX:
+        return [None, None]
+    real, imaginary = _OF_COMPLEX[what.role]
+    return [replace(what, role=real), replace(what, role=imaginary)]
+
+
+def _alignments(row: TextRow, width: int, pairs: Sequence[int]) -> list[list[str]]:
     """Ways to lay a row over the columns: as it was cut, or cut otherwise where that does not fit,
-    for headings may hold blanks, or stand under another delimiter than the numbers."""
+    for headings may hold blanks, or stand under another delimiter than the numbers. One cell over a
+    complex number counts for both its columns."""
     cells = [str(cell) for cell in row.cells]
+    if not row.raw:  # on a sheet, the column for the other part was put in
+        cells = [cell for i, cell in enumerate(cells) if i - 1 not in pairs]
+    narrow = width - len(pairs)
     ways = []
-    if len(cells) != width and row.raw:
-        for pattern in (r"\t+", r"\s{2,}|\t", r"\s*;\s*", r"\s*,\s*", r"\s*\|\s*"):
+    if len(cells) != narrow and row.raw:
+        for sign, pattern in _PARTINGS:
+            marks = row.raw.count(sign)
+            if marks < narrow - 1 or (marks > narrow - 1 and not sign.isspace()):
+                continue
             parted = [cell.strip() for cell in re.split(pattern, row.raw.strip())]
-            if len(parted) == width:
+            if len(parted) == narrow:
                 ways.append(parted)
-        best = _best_parting(row.raw.split(), width)
+        best = _best_parting(row.raw.split(), narrow)
         if best is not None:
             ways.append(best)
-    ways.append((cells + [""] * width)[:width])
+    ways.append((cells + [""] * narrow)[:narrow])
+    for way in ways:
+        for i in pairs:
+            way.insert(i + 1, way[i])
     return ways
 
 
@@ -146,11 +188,13 @@ def _best_parting(words: list[str], width: int) -> list[str] | None:
     return None if found is None else found[1]
 
 
-def _take_units(meanings: list[Meaning | None], row: TextRow, width: int) -> None:
+def _take_units(
+    meanings: list[Meaning | None], row: TextRow, width: int, pairs: Sequence[int]
+) -> None:
     """A row of units between headings and numbers."""
     given = [str(cell) for cell in row.cells if cell != ""]
     wanting = [i for i, m in enumerate(meanings) if m is not None and kind_of(m.role)]
-    ways = _alignments(row, width)
+    ways = _alignments(row, width, pairs)
     if len(row.cells) != width and len(given) == len(wanting):
         # Blanks part the cells, and a column of words has no unit to fill its place.
         over = dict(zip(wanting, given, strict=True))
@@ -173,6 +217,8 @@ def _units_in(row: TextRow) -> dict[str, Unit]:
     """Units that a preamble names: "Impedance in kOhm", "Units: Hz, Ohm, deg"."""
     text = row.raw or " ; ".join(str(cell) for cell in row.cells)
     found: dict[str, Unit] = {}
+    if len(text) > _LONGEST_WITH_UNITS:
+        return found
     opening, colon, rest = text.partition(":")
     is_list = bool(colon) and re.search(r"unit|einheit|unid", opening.casefold()) is not None
     for part in re.split(r"[;,\t|]", rest if is_list else text):
@@ -248,7 +294,9 @@ def meaning_is_exposure(text: str) -> bool:
     return any(word in data()["notion"]["exposure"] for word in words)
 
 
-def _labels_above(rows: list[TextRow], heading_line: int | None) -> dict[int, tuple[str, float]]:
+def _labels_above(
+    rows: list[TextRow], heading_line: int | None, pairs: Sequence[int]
+) -> dict[int, tuple[str, float]]:
     """Labels over groups of columns, by position, from the row directly above the headings."""
     if heading_line is None or not rows or heading_line - rows[-1].line > 2:
         return {}
@@ -256,6 +304,9 @@ def _labels_above(rows: list[TextRow], heading_line: int | None) -> dict[int, tu
     for i, cell in enumerate(rows[-1].cells):
         if cell == "":
             continue
+        if rows[-1].raw:
+            for real in pairs:
+                i += real < i
         panel, hours = label_in(f"{cell:g}" if isinstance(cell, float) else cell)
         if panel or hours is not None:
             labels[i] = (panel, -1.0 if hours is None else hours)

@@ -30,7 +30,8 @@ class ListedReading:
     remark: str
 
 
-def _rows(data: bytes, name: str, wanted: str) -> list[dict[str, str]]:
+def list_rows(data: bytes, name: str, wanted: str) -> list[dict[str, str]]:
+    """Rows of a list by heading. Raises Unreadable where the column `wanted` is missing."""
     text, _ = decode(data)
     lines = [line for line in text.splitlines() if line.strip()]
     if not lines:
@@ -52,7 +53,10 @@ def _rows(data: bytes, name: str, wanted: str) -> list[dict[str, str]]:
     return result
 
 
-def _number(row: dict[str, str], name: str, line: int, *, positive: bool = False) -> float | None:
+def row_number(
+    row: dict[str, str], name: str, line: int, *, positive: bool = False
+) -> float | None:
+    """A number of a row, either decimal sign; None for an empty cell. Raises Unreadable."""
     text = row.get(name, "")
     if not text:
         return None
@@ -67,12 +71,12 @@ def _number(row: dict[str, str], name: str, line: int, *, positive: bool = False
 
 def read_panels(data: bytes, name: str) -> tuple[FoundPanel, ...]:
     """The rows of a panel list. Raises Unreadable with the line."""
-    return panels_of(_rows(data, name, "panel"))
+    return panels_of(list_rows(data, name, "panel"))
 
 
 def read_readings(data: bytes, name: str) -> dict[tuple[str, str], ListedReading]:
     """The rows of a readings list by file and part. Raises Unreadable with the line."""
-    return readings_of(_rows(data, name, "file"))
+    return readings_of(list_rows(data, name, "file"))
 
 
 def panels_of(rows: Iterable[dict[str, str]]) -> tuple[FoundPanel, ...]:
@@ -87,11 +91,11 @@ def panels_of(rows: Iterable[dict[str, str]]) -> tuple[FoundPanel, ...]:
         panels[row["panel"]] = FoundPanel(
             panel=row["panel"],
             formulation=row.get("formulation", ""),
-            area_cm2=_number(row, "area_cm2", line, positive=True),
-            thickness_um=_number(row, "thickness_um", line, positive=True),
+            area_cm2=row_number(row, "area_cm2", line, positive=True),
+            thickness_um=row_number(row, "thickness_um", line, positive=True),
             substrate=row.get("substrate", ""),
             electrolyte=row.get("electrolyte", ""),
-            temperature_c=_number(row, "temperature_c", line),
+            temperature_c=row_number(row, "temperature_c", line),
             regime=row.get("regime", ""),
             remark=row.get("remark", ""),
             notes=tuple((k, v) for k, v in row.items() if k not in known and v),
@@ -106,7 +110,7 @@ def readings_of(rows: Iterable[dict[str, str]]) -> dict[tuple[str, str], ListedR
         file = row["file"].replace("\\", "/")
         if not file:
             raise Unreadable(f"Line {line} names no file.")
-        numbers = {field: _number(row, field, line) for field in _READING_NUMBERS}
+        numbers = {field: row_number(row, field, line) for field in _READING_NUMBERS}
         if (numbers["exposure_h"] or 0.0) < 0:
             raise Unreadable(f"Line {line}: exposure_h is below zero.")
         part = row.get("part", "")

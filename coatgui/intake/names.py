@@ -14,6 +14,7 @@ from coatgui.intake.units import data
 
 _NAME = re.compile(r"^(?P<panel>.+)_(?P<time>\d+(?:[.,]\d+)?)(?P<unit>[hd])$", re.IGNORECASE)
 _WORD = re.compile(r"[^\W_]+(?:[.,]\d+[^\W_]*)*")
+_MARKED = re.compile(r"\{(panel|time|date):([^{}]+)\}")
 _TIME = re.compile(r"^[^\W\d]*?(?P<number>\d+(?:[.,]\d+)?)(?P<unit>[^\W\d]*)$")
 
 
@@ -93,6 +94,24 @@ class NamePattern:
         return cls(
             _marked(example, panel), times[0] if times else None, unit, _marked(example, date)
         )
+
+    @classmethod
+    def marked(cls, example: str, unit: str = "h") -> NamePattern:
+        """The pattern of an example with its parts in braces, such as
+        "week 3/{panel:B-07} t{time:168}h.txt" or "{panel:P07} {date:20260308}.csv". Raises
+        ValueError."""
+        plain, marks = "", {}
+        at = 0
+        for found in _MARKED.finditer(example):
+            plain += example[at : found.start()]
+            if found[1] in marks:
+                raise ValueError(f"Mark the {found[1]} once only.")
+            marks[found[1]] = (len(plain), len(plain) + len(found[2]))
+            plain += found[2]
+            at = found.end()
+        if not marks:
+            raise ValueError("Mark parts of an example, like '{panel:B-07} t{time:168}h.txt'.")
+        return cls.pointed_at(plain + example[at:], unit=unit, **marks)
 
     def says(self, file: str) -> NameSays:
         """What a path says under this pattern; what it lacks stays empty."""

@@ -47,6 +47,11 @@ class Proposal:
     sentences: tuple[str, ...] = ()
     dialect: Dialect | None = None
 
+    @property
+    def may_be_read(self) -> bool:
+        """Whether a person could make a reading of it by saying what its columns are."""
+        return self.standing in (Standing.ASKED, Standing.REFUSED, Standing.DOUBTFUL)
+
 
 @dataclass(frozen=True, slots=True)
 class Correction:

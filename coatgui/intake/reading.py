@@ -13,8 +13,9 @@ from coatgui.intake.decode import encoding_of, lines_of
 from coatgui.intake.errors import NoSpectrum, Unreadable
 from coatgui.intake.labels import label_in
 from coatgui.intake.layout import Section, sections_of
-from coatgui.intake.segments import segment_rows, segment_text
+from coatgui.intake.segments import segment_rows
 from coatgui.intake.spectra import Origin, Piece, pieces, pieces_as_told, with_parts
+from coatgui.intake.text_rows import segment_text
 from coatgui.intake.workbook import Sheet, is_workbook, read_workbook
 from coatgui.records import Column, Dialect, FoundReading, Source
 
@@ -35,7 +36,7 @@ def read_spectra(data: bytes, name: str = "") -> list[Piece]:
         return _of_workbook(data)
     encoding = encoding_of(data)
     cut = find_cut(_sample(lines_of(data, encoding)))
-    sections, after = sections_of(segment_text(lines_of(data, encoding), cut))
+    sections, after = sections_of(segment_text(lines_of(data, encoding), cut), cut.pairs)
     if not sections:
         raise NoSpectrum(NOTHING)
     origin = Origin(encoding, cut.delimiter, cut.style.decimal_sign)
@@ -101,7 +102,7 @@ def _of_sheet(sheet: Sheet) -> list[Piece]:
     origin = Origin(WORKBOOK, sheet.title, sheet.style.decimal_sign)
     nothing = NoSpectrum(NOTHING)
     for rows in sheet.tables():
-        sections, after = sections_of(segment_rows(rows, sheet.style))
+        sections, after = sections_of(segment_rows(rows, sheet.style), sheet.pairs)
         try:
             found += pieces(sections, after, origin)
         except NoSpectrum as problem:
@@ -155,21 +156,21 @@ def _sections_as_told(data: bytes, dialect: Dialect) -> Iterator[list[Section]]:
         if sheet is None:
             raise Unreadable(f"The workbook has no sheet '{dialect.delimiter[:40]}'.")
         for rows in sheet.tables():
-            yield sections_of(segment_rows(rows, sheet.style))[0]
+            yield sections_of(segment_rows(rows, sheet.style), sheet.pairs)[0]
         return
     try:
         codecs.lookup(dialect.encoding)
         cut = find_cut(
             _sample(lines_of(data, dialect.encoding)), dialect.delimiter, dialect.decimal_sign
         )
-        yield sections_of(segment_text(lines_of(data, dialect.encoding), cut))[0]
+        yield sections_of(segment_text(lines_of(data, dialect.encoding), cut), cut.pairs)[0]
     except (LookupError, UnicodeError):
         raise Unreadable(
             f"The file cannot be read as '{dialect.encoding[:20]}': choose another encoding."
         ) from None
 
 
-def first_guess(data: bytes) -> Dialect:
+def first_guess(data: bytes, decimal_sign: str = "") -> Dialect:
     """How the first table of a file would be cut, for a person to say what its columns are where
     that is not understood: line 0 for every table, "other" for a column of unknown meaning. Raises
     Unreadable where there is no table of numbers."""
@@ -179,12 +180,12 @@ def first_guess(data: bytes) -> Dialect:
         if sheet is None:
             raise NoSpectrum(NOTHING)
         encoding, delimiter, sign = WORKBOOK, sheet.title, sheet.style.decimal_sign
-        sections = sections_of(segment_rows(tables[0], sheet.style))[0]
+        sections = sections_of(segment_rows(tables[0], sheet.style), sheet.pairs)[0]
     else:
         encoding = encoding_of(data)
-        cut = find_cut(_sample(lines_of(data, encoding)))
+        cut = find_cut(_sample(lines_of(data, encoding)), "", decimal_sign)
         delimiter, sign = cut.delimiter, cut.style.decimal_sign
-        sections = sections_of(segment_text(lines_of(data, encoding), cut))[0]
+        sections = sections_of(segment_text(lines_of(data, encoding), cut), cut.pairs)[0]
     if not sections:
         raise NoSpectrum(NOTHING)
     section = sections[0]
@@ -192,14 +193,11 @@ def first_guess(data: bytes) -> Dialect:
     for place in range(section.block.width):
         heading = section.headings[place] if place < len(section.headings) else ""
         said = section.meanings[place] if place < len(section.meanings) else None
-        unit = said.unit if said is not None else None
-        columns.append(
-            Column(
-                place,
-                heading,
-                said.role if said is not None else "other",
-                unit.written if unit is not None else "",
-                unit.factor if unit is not None else 1.0,
-            )
-        )
+        if said is None:
+            columns.append(Column(place, heading, "other", ""))
+            continue
+        role = f"log_{said.role}" if said.logarithm else said.role
+        factor = said.unit.factor if said.unit is not None else 1.0
+        written = said.unit.written if said.unit is not None else ""
+        columns.append(Column(place, heading, role, written, -factor if said.negative else factor))
     return Dialect(encoding, delimiter, sign, 0, tuple(columns))

@@ -7,26 +7,24 @@ little more memory than what it says.
 from __future__ import annotations
 
 import math
-import re
 from array import array
 from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass, field
 
 import numpy as np
 
-from coatgui.intake.cut import BLANKS, Cut
 from coatgui.intake.errors import Unreadable
-from coatgui.intake.numbers import Style, line_pattern, number_reader
+from coatgui.intake.numbers import Style, number_reader
 from coatgui.records import FloatArray
 
 Cell = str | float
 MOST_COLUMNS = 256
 _MOST_TABLES = 4_000
-_MOST_ODD_ROWS = 100_000
+MOST_ODD_ROWS = 100_000
 _MOST_LABELS = 50_000
-_MOST_WORDS = 20_000_000  # characters outside tables
+_MOST_WORDS = 4_000_000  # characters outside tables
 _FEWEST_ROWS = 3
-_COMMENT = re.compile(r"^\s*(#+|%+|!+|//+|\*+)\s*")
+_BEGIN_A_NUMBER = frozenset("0123456789+-−.,")
 
 
 @dataclass(frozen=True, slots=True)
@@ -86,23 +84,29 @@ class Segmenter:
     def text(self, row: TextRow) -> None:
         self._close()
         self._characters += len(row.raw) or sum(len(str(cell)) for cell in row.cells)
-        if self._characters > _MOST_WORDS:
+        if self._characters > _MOST_WORDS or len(self.pieces) > MOST_ODD_ROWS:
             raise Unreadable("The file is mostly words: it holds no table worth reading.")
         self.pieces.append(row)
 
     def row(self, line: int, cells: Sequence[Cell], raw: str = "") -> None:
         """A row that was not read at a glance: numbers, words or both."""
         self._odd_rows += 1
-        if self._odd_rows > _MOST_ODD_ROWS:
+        if self._odd_rows > MOST_ODD_ROWS:
             raise Unreadable(
-                f"The file has over {_MOST_ODD_ROWS} rows that are not plain numbers: split it."
+                f"The file has over {MOST_ODD_ROWS} rows that are not plain numbers: split it."
             )
         read = self._number
         values: list[float] = []
         words: dict[int, str] = {}
         numeric = 0
         for i, cell in enumerate(cells):
-            value = cell if isinstance(cell, float) else read(cell)
+            value = (
+                cell
+                if isinstance(cell, float)
+                else read(cell)
+                if cell[:1] in _BEGIN_A_NUMBER
+                else None
+            )
             if value is None:
                 values.append(math.nan)
                 words[i] = str(cell)
@@ -115,34 +119,36 @@ class Segmenter:
         else:
             self.numbers(line, values, words, cells, raw)
 
-    def more(self, line: int, values: list[float]) -> bool:
-        """A row of nothing but numbers in a table under way, the usual case; False where it is
-        anything else and wants a closer look."""
+    @property
+    def width(self) -> int:
+        """Of the table under way, once it has a few rows; else 0."""
         block = self._block
-        if block is None or block.present or len(values) != block.width:
-            return False
-        if len(block.lines) < _FEWEST_ROWS or not math.isfinite(sum(values)):
-            return False
-        block.numbers.extend(values)
-        block.lines.append(line)
-        return True
+        return block.width if block is not None and len(block.lines) >= _FEWEST_ROWS else 0
 
-    def as_before(self, line: int, cells: list[str]) -> bool:
-        """A row with the same words in the same columns as the one before, and plain numbers."""
+    def stretch(self, lines: Sequence[int], cells: list[str]) -> bool:
+        """Many rows of the table under way at once, cell after cell: plain numbers, and the same
+        words in the same columns as in the row before. False, and nothing taken, where a cell is
+        anything else."""
         block = self._block
-        if block is None or len(cells) != block.width or len(block.lines) < _FEWEST_ROWS:
+        assert block is not None
+        width, present = block.width, block.present
+        for i, word in present.items():
+            if set(map(str.strip, set(cells[i::width]))) != {word}:
+                return False
+            cells[i::width] = ["0"] * len(lines)
+        if width - len(present) < 2:
             return False
-        present = block.present
         try:
-            values = [float(cell) if i not in present else math.nan for i, cell in enumerate(cells)]
+            values = array("d", map(float, cells))
         except ValueError:
             return False
-        known = [value for i, value in enumerate(values) if i not in present]
-        same = all(cells[i] == word for i, word in present.items())
-        if not same or len(known) < 2 or not math.isfinite(sum(known)):
+        if not math.isfinite(sum(values)):
             return False
-        block.numbers.extend(values)
-        block.lines.append(line)
+        if present:
+            table = np.frombuffer(values, dtype=np.float64).reshape(-1, width)
+            table[:, list(present)] = math.nan
+        block.numbers += values
+        block.lines.extend(lines)
         return True
 
     def numbers(
@@ -197,53 +203,6 @@ class Segmenter:
     def finish(self) -> list[Piece]:
         self._close()
         return self.pieces
-
-
-def segment_text(lines: Iterable[str], cut: Cut) -> list[Piece]:
-    """The pieces of a text file."""
-    segmenter = Segmenter(cut.style)
-    split = cut.splitter()
-    between = None if cut.delimiter == BLANKS else cut.delimiter
-    comma = cut.style.decimal_sign == ","
-    gap = cut.style.thousands
-    parted = line_pattern(cut.style, between or "").fullmatch
-    at_a_glance = not (comma and cut.delimiter == ",") and gap != cut.delimiter
-    for line, raw in enumerate(lines, start=1):
-        # Python's numbers may hold underscores; other signs need a closer look.
-        if at_a_glance and "_" not in raw:
-            plain = _unquoted(raw, between) if '"' in raw else raw
-            if gap and gap in raw:
-                plain = raw.replace(gap, "") if parted(raw) else ""
-            elif comma and "." in raw:
-                plain = ""
-            if comma:
-                plain = plain.replace(",", ".")
-            cells = plain.split(between)
-            try:
-                if segmenter.more(line, list(map(float, cells))):
-                    continue
-            except ValueError:
-                if plain and segmenter.as_before(line, [cell.strip() for cell in cells]):
-                    continue
-        found = _COMMENT.match(raw)
-        if found:
-            bare = raw[found.end() :]
-            segmenter.text(TextRow(line, tuple(split(bare)), bare, comment=True))
-            continue
-        cells = split(raw)
-        if any(cells):
-            segmenter.row(line, cells, raw)
-    return segmenter.finish()
-
-
-def _unquoted(raw: str, between: str | None) -> str:
-    """A line whose cells all stand in quotation marks and hold nothing else of note, without them;
-    "" for any other."""
-    if between is None or not raw.startswith('"'):
-        return ""
-    inner = raw.count(between)
-    plain = raw.count('"') == 2 * inner + 2 and raw.count(f'"{between}"') == inner
-    return raw.replace('"', "") if plain else ""
 
 
 def segment_rows(rows: Iterable[tuple[int, Sequence[Cell]]], style: Style) -> list[Piece]:

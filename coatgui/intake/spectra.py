@@ -127,7 +127,7 @@ def _refuse_interruption(before: Extract, after: Extract, section: Section) -> N
     if not words or not before.lines.size or not after.lines.size:
         return
     earlier, later = frequency_of(before.scaled()), frequency_of(after.scaled())
-    if earlier.size < 2 or min(earlier[-1], later[0]) <= 0:
+    if earlier.size < 2 or not all(0 < f < np.inf for f in (*earlier[-2:], later[0])):
         return
     if (later[0] - earlier[-1]) * (earlier[-1] - earlier[-2]) >= 0:
         raise Unreadable(
@@ -142,7 +142,8 @@ def _refuse_broken_end(after: Sequence[TextRow], extracts: Sequence[Extract]) ->
         float(str(first.cells[0]).replace(",", ".")) if first.cells else None
     except ValueError:
         return
-    if extracts and first.cells and first.line == int(extracts[-1].lines[-1]) + 1:
+    lines = extracts[-1].lines
+    if first.cells and lines.size and first.line == int(lines[-1]) + 1:
         raise Unreadable(
             f"Line {first.line} has {len(first.cells)} cells where the table has more: the file "
             "may be cut short; export it again."

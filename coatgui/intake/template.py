@@ -10,9 +10,10 @@ from typing import Any
 
 from coatgui.intake.errors import Unreadable
 from coatgui.intake.lists import ListedReading, panels_of, readings_of
+from coatgui.intake.ratings_list import ratings_of, scale_ids
 from coatgui.intake.segments import Cell
 from coatgui.intake.workbook import Sheet, read_workbook
-from coatgui.records import FoundPanel
+from coatgui.records import FoundPanel, FoundRating
 
 PANELS, READINGS, RATINGS = "Panels", "Readings", "Ratings"
 _HEADINGS = {
@@ -20,7 +21,7 @@ _HEADINGS = {
              "temperature_c", "regime", "start", "remark"),
     READINGS: ("file", "part", "panel", "exposure_h", "temperature_c", "amplitude_mv",
                "potential_mv", "remark"),
-    RATINGS: ("panel", "exposure_h", "standard", "property", "rating", "remark"),
+    RATINGS: ("panel", "exposure_h", "scale", "rating", "edition", "rater", "remark"),
 }  # fmt: skip
 _KEY = {PANELS: "panel", READINGS: "file", RATINGS: "panel"}
 _WIDTH = 18
@@ -28,17 +29,18 @@ _WIDTH = 18
 
 @dataclass(frozen=True)
 class Lists:
-    """What a filled-in workbook says. `ratings` are rows by heading, as they were written."""
+    """What a filled-in workbook says."""
 
     panels: tuple[FoundPanel, ...] = ()
     readings: dict[tuple[str, str], ListedReading] = field(default_factory=dict)
-    ratings: tuple[dict[str, str], ...] = ()
+    ratings: tuple[FoundRating, ...] = ()
 
 
 def template(panels: Iterable[FoundPanel] = (), files: Iterable[str] = ()) -> bytes:
     """The bytes of a workbook with the three sheets; panels and files that are known already stand
     in it."""
     import openpyxl
+    from openpyxl.worksheet.datavalidation import DataValidation
 
     book = openpyxl.Workbook()
     first = book.active
@@ -65,14 +67,17 @@ def template(panels: Iterable[FoundPanel] = (), files: Iterable[str] = ()) -> by
         sheet.freeze_panes = "A2"
         for letter in "ABCDEFGHIJ"[: len(headings)]:
             sheet.column_dimensions[letter].width = _WIDTH
+    scales = DataValidation("list", formula1=f'"{",".join(scale_ids())}"', allow_blank=True)
+    scales.add("C2:C1000")
+    book[RATINGS].add_data_validation(scales)
     buffer = io.BytesIO()
     book.save(buffer)
     return buffer.getvalue()
 
 
-def read_lists(data: bytes) -> Lists | None:
+def read_lists(data: bytes, name: str = "") -> Lists | None:
     """What a workbook with a sheet "Panels", "Readings" or "Ratings" says; None where it has none.
-    Raises Unreadable with the sheet and line where something is wrong."""
+    Raises Unreadable with the sheet and line where something is wrong. `name` is the file's."""
     sheets = {sheet.title: sheet for sheet in read_workbook(data)}
     rows = {}
     for title in _HEADINGS:
@@ -85,9 +90,11 @@ def read_lists(data: bytes) -> Lists | None:
         panels = panels_of(rows.get(PANELS, ()))
         doing = READINGS
         readings = readings_of(rows.get(READINGS, ()))
+        doing = RATINGS
+        ratings = ratings_of(rows.get(RATINGS, ()), name)
     except Unreadable as problem:
         raise Unreadable(f"Sheet '{doing}': {problem}") from None
-    return Lists(panels, readings, tuple(rows.get(RATINGS, ())))
+    return Lists(panels, readings, ratings)
 
 
 def _rows(sheet: Sheet, key: str) -> list[dict[str, str]] | None:

@@ -51,6 +51,8 @@ def kind_of(role: str) -> str:
         return "angle"
     if role.startswith(("admittance", "capacitance")):
         return role.split("_")[0]
+    if role.startswith(("parallel", "series")):
+        return "capacitance" if role.endswith("capacitance") else "impedance"
     own = ("frequency", "angular_frequency", "time", "temperature", "potential")
     return role if role in own else ""
 

@@ -19,6 +19,7 @@ from datetime import datetime, timedelta
 from typing import Any
 from xml.parsers import expat
 
+from coatgui.intake.complex_cells import opened_sheet
 from coatgui.intake.errors import Unclear, Unreadable
 from coatgui.intake.numbers import Style, looks_numeric, style_of
 from coatgui.intake.segments import MOST_COLUMNS, Cell
@@ -30,6 +31,7 @@ _LAST_ROW = 1_048_576
 _MOST_UNPACKED = 40_000_000
 _MOST_TEXT = 20_000_000
 _CHUNK = 1 << 16
+_MOST_IN_A_TAG = 2_000_000  # bytes, of a tag's attributes or of one text
 _FEWEST_IN_COLUMN = 5
 _DAMAGED = "The workbook is damaged or not of the kind .xlsx: save it again as .xlsx."
 _TOO_LARGE = "The workbook holds over {} {}: split it, or export the tables as text."
@@ -40,11 +42,14 @@ _REFERENCE = re.compile(r"([A-Z]{1,3})(\d{1,7})")
 
 @dataclass(eq=False)
 class Sheet:
-    """`rows` are (row number from 1, cells from column A on); only rows that hold something."""
+    """`rows` are (row number from 1, cells from column A on); only rows that hold something.
+    `pairs` are where the real parts of complex numbers stand; a column for the other part was put
+    in."""
 
     title: str
     rows: list[tuple[int, list[Cell]]]
     style: Style = field(default_factory=Style)
+    pairs: tuple[int, ...] = ()
 
     @property
     def holds_numbers(self) -> bool:
@@ -176,8 +181,13 @@ class _Book:
             parser.CharacterDataHandler = characters
         parser.StartDoctypeDeclHandler = _no_doctype
         with self._archive.open(name) as stream:
+            tagless = 0
             while chunk := stream.read(_CHUNK):
                 self._unpacked += len(chunk)
+                tagless = 0 if b"<" in chunk else tagless + len(chunk)
+                if tagless > _MOST_IN_A_TAG:
+                    megabytes = _MOST_IN_A_TAG // 1_000_000
+                    raise Unreadable(_TOO_LARGE.format(megabytes, "MB in a single tag or text"))
                 if self._unpacked > _MOST_UNPACKED:
                     raise Unreadable(_TOO_LARGE.format(_MOST_UNPACKED // 1_000_000, "MB unpacked"))
                 parser.Parse(chunk, False)
@@ -370,7 +380,8 @@ class _Rows:
 
 
 def _with_style(sheet: Sheet) -> Sheet:
-    """Numbers that are kept as text, with a decimal comma perhaps."""
+    """Numbers that are kept as text, with a decimal comma perhaps, or complex."""
+    sheet.rows, sheet.pairs = opened_sheet(sheet.rows)
     texts = [c for _, cells in sheet.rows for c in cells if isinstance(c, str) and looks_numeric(c)]
     try:
         sheet.style = style_of(texts) or Style()

@@ -60,7 +60,17 @@ class Figure:
     alternative: str
 
 
-Block = Heading | Paragraph | Listing | Table | Figure
+@dataclass(frozen=True, slots=True)
+class Picture:
+    """A photograph; `content` are the bytes of a PNG or JPEG, as `media_type` says."""
+
+    content: bytes
+    media_type: str
+    caption: str
+    alternative: str
+
+
+Block = Heading | Paragraph | Listing | Table | Figure | Picture
 
 
 @dataclass(frozen=True, slots=True)
@@ -89,7 +99,7 @@ class Document:
             elif isinstance(block, Table):
                 tables += 1
                 number = f"Table {tables}"
-            elif isinstance(block, Figure):
+            elif isinstance(block, Figure | Picture):
                 figures += 1
                 number = f"Figure {figures}"
             yield block, number

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from collections.abc import Mapping
 from pathlib import Path
 
 from coatgui.output.document import Figure
@@ -21,10 +22,12 @@ def write_summary(
     campaign: Campaign,
     path: Path,
     identification: Identification | None = None,
+    photographs: Mapping[str, bytes] | None = None,
 ) -> None:
     """Write the inspection summary whole or not at all: as PDF where the name ends in .pdf, else as
-    one HTML file. Raises OSError, and PagesUnavailable where a PDF needs Qt and it is not there."""
-    document = inspection_summary(assessment, campaign, identification)
+    one HTML file. `photographs` are bytes by their SHA-256. Raises OSError, and PagesUnavailable
+    where a PDF needs Qt and it is not there."""
+    document = inspection_summary(assessment, campaign, identification, photographs)
     if path.suffix.lower() == ".pdf":
         from coatgui.output.pages import write_pdf
 

@@ -3,6 +3,7 @@ from outside stays text."""
 
 from __future__ import annotations
 
+from base64 import b64encode
 from html import escape
 
 from coatgui.output.document import (
@@ -12,6 +13,7 @@ from coatgui.output.document import (
     Heading,
     Listing,
     Paragraph,
+    Picture,
     Style,
     Table,
 )
@@ -40,7 +42,7 @@ def html_document(document: Document) -> str:
     return (
         '<!DOCTYPE html>\n<html lang="en">\n<head>\n<meta charset="utf-8">\n'
         '<meta http-equiv="Content-Security-Policy" '
-        "content=\"default-src 'none'; style-src 'unsafe-inline'\">\n"
+        "content=\"default-src 'none'; style-src 'unsafe-inline'; img-src data:\">\n"
         '<meta name="viewport" content="width=device-width, initial-scale=1">\n'
         f'<meta name="author" content="{html_text(document.author)}">\n'
         f'<meta name="description" content="{html_text(document.subject)}">\n'
@@ -64,6 +66,8 @@ def _block(block: Block, number: str) -> str:
             return f"<{tag}>{items}</{tag}>"
         case Table():
             return _table(block, number)
+        case Picture():
+            return _photograph(block, number)
         case Figure():
             picture = block.drawing.svg(
                 block.caption, block.alternative, number.lower().replace(" ", "-")
@@ -72,6 +76,15 @@ def _block(block: Block, number: str) -> str:
                 f"<figure>{picture}<figcaption><b>{number}.</b> {html_text(block.caption)}"
                 "</figcaption></figure>"
             )
+
+
+def _photograph(picture: Picture, number: str) -> str:
+    data = b64encode(picture.content).decode("ascii")
+    return (
+        f'<figure><img alt="{html_text(picture.alternative)}" '
+        f'src="data:{html_text(picture.media_type)};base64,{data}"><figcaption dir="auto">'
+        f"<b>{number}.</b> {html_text(picture.caption)}</figcaption></figure>"
+    )
 
 
 def _table(table: Table, number: str) -> str:

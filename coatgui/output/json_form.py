@@ -220,6 +220,8 @@ def _top(assessment: Assessment) -> dict[str, Any]:
                             "unit": point.quantity.unit,
                             "panels": point.panels,
                             "censored": point.censored,
+                            "doubtful": point.doubtful,
+                            "sound": _plain(point.sound),
                         }
                         for point in course.points
                     ]

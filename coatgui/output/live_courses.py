@@ -321,6 +321,20 @@ def add_courses(
             Column(f"panel {i + 1}, log₁₀ (uptake: as it is)", panel(i), "0.000")
             for i in range(max(most, 1))
         ),
+        Column("panels under doubt", lambda row: row.point.doubtful),
+        Column(
+            "mean without them", lambda row: getattr(row.point.sound, "value", None), SCIENTIFIC
+        ),
+        Column(
+            "mean without them, low 95 %",
+            lambda row: getattr(row.point.sound, "low", None),
+            SCIENTIFIC,
+        ),
+        Column(
+            "mean without them, high 95 %",
+            lambda row: getattr(row.point.sound, "high", None),
+            SCIENTIFIC,
+        ),
     ]
     book.add_sheet("Courses", columns, rows, colours=COLOURS, standing=3)
     ranges: dict[tuple[str, str], tuple[int, int]] = {}

@@ -6,7 +6,7 @@ ranked, and what is not known is named or left out.
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, fields
 
 from coatgui import __version__
@@ -25,6 +25,7 @@ from coatgui.output.document import (
 )
 from coatgui.output.figures import all_figures, course_figures
 from coatgui.output.summary_facts import topics
+from coatgui.output.summary_seen import pictures, rated_table
 from coatgui.output.summary_tables import (
     criteria_table,
     findings_table,
@@ -84,9 +85,11 @@ def inspection_summary(
     assessment: Assessment,
     campaign: Campaign,
     identification: Identification | None = None,
+    photographs: Mapping[str, bytes] | None = None,
 ) -> Document:
-    """The summary of an assessment, by default under the names that the campaign keeps. The same
-    assessment gives the same document."""
+    """The summary of an assessment, by default under the names that the campaign keeps.
+    `photographs` are the bytes of the campaign's photographs by their SHA-256. The same assessment
+    gives the same document."""
     identification = identification or Identification.of(campaign)
     figures = {figure.name: figure for figure in all_figures(assessment, campaign)}
     sections: list[tuple[str, Iterator[Block]]] = [
@@ -98,7 +101,7 @@ def inspection_summary(
         ("Water in the film", _water(assessment, figures)),
         ("Comparison of formulations", _comparison(assessment, figures)),
         ("Limits", _limits(assessment)),
-        ("Visual ratings", _ratings(assessment, campaign)),
+        ("Visual ratings and photographs", _seen(assessment, campaign, photographs or {})),
         ("Deviations and doubts", _doubts(assessment)),
         ("Points left out", _left_out(assessment)),
         ("Readings, spectra and circuits", _spectra(assessment, figures)),
@@ -262,13 +265,28 @@ def _limits(assessment: Assessment) -> Iterator[Block]:
         yield studies_table(assessment)
 
 
-def _ratings(assessment: Assessment, campaign: Campaign) -> Iterator[Block]:
-    if not assessment.ratings:
+def _seen(
+    assessment: Assessment, campaign: Campaign, photographs: Mapping[str, bytes]
+) -> Iterator[Block]:
+    if assessment.ratings:
+        yield Paragraph(sentence("ratings"))
+        yield ratings_table(assessment)
+        if campaign.ratings:
+            yield rated_table(campaign)
+        if assessment.rating_correlations:
+            yield Listing(tuple(c.text for c in assessment.rating_correlations))
+    if not campaign.photographs:
         return
-    yield Paragraph(sentence("ratings"))
-    yield ratings_table(assessment)
-    if assessment.rating_correlations:
-        yield Listing(tuple(c.text for c in assessment.rating_correlations))
+    yield Heading("Photographs", 2)
+    shown, missing = pictures(campaign, photographs)
+    yield from shown
+    if missing:
+        is_one = missing == 1
+        yield Paragraph(
+            f"{counted(missing, 'photograph')} {'is' if is_one else 'are'} not shown here; the "
+            f"campaign file keeps {'it' if is_one else 'them'}.",
+            Style.SMALL,
+        )
 
 
 def _doubts(assessment: Assessment) -> Iterator[Block]:

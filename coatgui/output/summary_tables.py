@@ -202,14 +202,15 @@ def ratings_table(assessment: Assessment) -> Table:
             course.best,
             course.worst,
             "; ".join(f"{panel} {value}" for panel, value in course.ratings),
+            course.edition,
         )
         for course in assessment.ratings
     )
     return Table(
         "Visual ratings, panel by panel.",
-        ("formulation", "scale", "hours", "best", "worst", "panels"),
+        ("formulation", "scale", "hours", "best", "worst", "panels", "edition"),
         rows,
-        (2, 1.5, 0.8, 0.8, 0.8, 4),
+        (2, 1.5, 0.8, 0.8, 0.8, 3, 2),
         frozenset({2}),
     )
 

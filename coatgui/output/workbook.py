@@ -130,6 +130,10 @@ def _summary(book: Book, assessment: Assessment) -> None:
             place += f" to {rank.rank_high}"
         rows.append((rank.formulation, f"{place}, group {rank.group}"))
     rows += [(f.formulation, f.text) for f in assessment.formulations if f.text]
+    rows += [("comparison", c.text) for c in assessment.further_comparisons]
+    rows += [("limit", study.text) for study in assessment.limit_studies]
+    rows += [("projection", p.text) for p in assessment.projections]
+    rows += [("ratings", c.text) for c in assessment.rating_correlations]
     for panel in assessment.panels:
         said = [event.text for event in panel.events]
         said += [crossing.text for crossing in panel.limit_crossings]
@@ -176,8 +180,26 @@ def _readings(book: Book, assessment: Assessment, readings: dict[str, Reading]) 
         Column("points used", attrgetter("points_used")),
         Column("decided by a person", lambda r: _decisions(readings.get(r.reading_id))),
         Column("remark", lambda r: getattr(readings.get(r.reading_id), "remark", None)),
+        *_quantity_columns(
+            "effective permittivity of the film", "", attrgetter("relative_permittivity"), "0.00"
+        ),
+        *_quantity_columns(
+            "effective resistivity of the film", "Ω cm", attrgetter("film_resistivity")
+        ),
+        Column(
+            "breakpoint, measured (Hz)",
+            lambda r: getattr(r.breakpoint, "measured_hz", None),
+            SCIENTIFIC,
+        ),
+        Column("active share of the area, from", lambda r: _share(r, "low"), SCIENTIFIC),
+        Column("active share of the area, to", lambda r: _share(r, "high"), SCIENTIFIC),
+        Column("active share of the area, in words", lambda r: _share(r, "text")),
     ]
     book.add_sheet("Readings", columns, assessment.readings, colours=COLOURS, standing=3)
+
+
+def _share(reading: ReadingAssessment, which: str) -> Value:
+    return getattr(reading.active_area, which, None)
 
 
 def _modulus_columns(frequency_hz: float) -> list[Column[Any]]:
@@ -248,6 +270,31 @@ def _panels(book: Book, assessment: Assessment, campaign: Campaign) -> None:
         Column("limits", lambda panel: " ".join(c.text for c in panel.limit_crossings)),
         Column("remark", noted("remark")),
         Column("notes", lambda panel: _notes(kept.get(panel.panel_id))),
+        *_quantity_columns(
+            "effective permittivity of the dry film", "", attrgetter("dry_permittivity"), "0.00"
+        ),
+        *_quantity_columns(
+            "apparent water at saturation",
+            "vol-%",
+            lambda panel: getattr(panel.saturation_uptake, "quantity", None),
+            HUNDREDTHS,
+        ),
+        Column(
+            "least by any law (vol-%)",
+            lambda panel: getattr(panel.saturation_uptake, "law_low", None),
+            HUNDREDTHS,
+        ),
+        Column(
+            "most by any law (vol-%)",
+            lambda panel: getattr(panel.saturation_uptake, "law_high", None),
+            HUNDREDTHS,
+        ),
+        *_quantity_columns(
+            "water at saturation",
+            "g/100 g dry film",
+            attrgetter("saturation_mass_percent"),
+            HUNDREDTHS,
+        ),
     ]
     book.add_sheet("Panels", columns, assessment.panels, colours=COLOURS, standing=2)
 
@@ -286,6 +333,7 @@ def _ratings(book: Book, assessment: Assessment) -> None:
         Column("exposure (h)", lambda row: row[0].exposure_h, HOURS),
         Column("scale", lambda row: row[0].scale),
         Column("rating", itemgetter(2)),
+        Column("edition", lambda row: row[0].edition),
     ]
     book.add_sheet("Ratings", columns, rows, standing=3)
 

@@ -78,7 +78,8 @@ class Settings:
     leads or that input. `own_models` are coating models as JSON texts, in the form of
     `resources/models.toml`. `limits` on any quantity stand beside `criteria`; `comparisons` and
     `projections` are what is asked beyond the usual. `electrolytes` and `regimes` stand beside the
-    program's own or, under the same id, in place of them."""
+    program's own or, under the same id, in place of them. `uptake_from_high_frequency`: the water
+    uptake rests on the capacitance measured at the high frequency, whatever the circuits say."""
 
     temperature_c: float = 25.0
     modulus_frequencies_hz: tuple[float, ...] = (0.1, 0.01)
@@ -95,6 +96,7 @@ class Settings:
     projections: tuple[ProjectionWanted, ...] = ()
     electrolytes: tuple[Electrolyte, ...] = ()
     regimes: tuple[Regime, ...] = ()
+    uptake_from_high_frequency: bool = False
 
 
 @dataclass(frozen=True, slots=True)

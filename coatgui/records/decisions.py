@@ -106,7 +106,8 @@ class Comparison:
 @dataclass(frozen=True, slots=True)
 class RatingCourse:
     """The ratings of one formulation on one scale at one inspection, panel by panel, never
-    averaged; `worst` and `best` are as the scale writes them."""
+    averaged; `worst` and `best` are as the scale writes them, `edition` is what they were rated
+    by."""
 
     formulation: str
     scale: str
@@ -114,6 +115,7 @@ class RatingCourse:
     ratings: tuple[tuple[str, str], ...]
     best: str
     worst: str
+    edition: str = ""
 
 
 @dataclass(frozen=True, slots=True)

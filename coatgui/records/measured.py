@@ -103,11 +103,12 @@ class Column:
     """One column of a table as it was understood.
 
     `role` is one of frequency, angular_frequency, real, imaginary, modulus, phase,
-    admittance_real, …_imaginary, …_modulus, …_phase, capacitance_real, …_imaginary, time, panel,
-    date, temperature, potential, other, or one of them with "log_" before it for decimal
-    logarithms. `factor` multiplies the written number to give Hz, rad/s, Ω, S, F, rad, h, °C (K
-    where the unit is) or mV, per specimen. For imaginary parts and
-    phases, a negative factor says that the file counts them the other way round.
+    admittance_real, …_imaginary, …_modulus, …_phase, capacitance_real, …_imaginary,
+    parallel_resistance, …_capacitance, series_resistance, …_capacitance, time, panel, date,
+    temperature, potential, other, or one of them with "log_" before it for decimal logarithms.
+    `factor` multiplies the written number to give Hz, rad/s, Ω, S, F, rad, h, °C (K where the unit
+    is) or mV, per specimen. For imaginary parts and phases, a negative factor says that the file
+    counts them the other way round.
     """
 
     position: int
@@ -183,6 +184,20 @@ class FoundReading:
 
 
 @dataclass(frozen=True, slots=True)
+class FoundRating:
+    """A row of a ratings list: a visual rating before its panel belongs to a campaign."""
+
+    file: str
+    panel: str
+    exposure_h: float
+    scale: str
+    value: str
+    edition: str = ""
+    rater: str = ""
+    remark: str = ""
+
+
+@dataclass(frozen=True, slots=True)
 class Found:
     """All that intake made of a folder or of some files.
 
@@ -194,3 +209,4 @@ class Found:
     open_lead: tuple[Spectrum, Source] | None = None
     refused: tuple[Refusal, ...] = ()
     raw: dict[str, bytes] = field(default_factory=dict)
+    ratings: tuple[FoundRating, ...] = ()

@@ -15,6 +15,7 @@ from coatgui.records.measured import (
     Refusal,
     Severity,
 )
+from coatgui.records.quick import quickly_made
 
 if TYPE_CHECKING:
     from coatgui.records.decisions import (
@@ -28,6 +29,7 @@ if TYPE_CHECKING:
     )
 
 
+@quickly_made
 @dataclass(frozen=True, slots=True)
 class Quantity:
     """A number that the data hold, or the bound they leave.
@@ -45,6 +47,7 @@ class Quantity:
     method: str = ""
 
 
+@quickly_made
 @dataclass(frozen=True, slots=True)
 class Finding:
     """One thing a check found out about a reading, a panel or a campaign.
@@ -72,6 +75,7 @@ class Check:
         return any(f.severity is Severity.REJECT for f in self.findings)
 
 
+@quickly_made
 @dataclass(frozen=True, slots=True)
 class Parameter:
     """One fitted parameter of a coating model. `layer` counts from the outside: 0 is the solution
@@ -130,6 +134,7 @@ class LeftOutPoint:
     reason: str
 
 
+@quickly_made
 @dataclass(frozen=True, slots=True)
 class Modulus:
     """|Z|·A at one frequency. `quantity` is None where the frequency was not reached."""
@@ -139,6 +144,7 @@ class Modulus:
     quantity: Quantity | None
 
 
+@quickly_made
 @dataclass(frozen=True, slots=True)
 class WaterUptake:
     """Apparent water uptake by Brasher–Kingsbury; `reference_h` is the exposure time of the dry
@@ -160,6 +166,7 @@ class WaterUptake:
         return tuple(zip(self.law_names, self.law_percent, strict=True))
 
 
+@quickly_made
 @dataclass(frozen=True, slots=True)
 class Breakpoint:
     """Where the phase of a film with pores passes −45° and where it is least, after the circuit
@@ -176,6 +183,7 @@ class Breakpoint:
     text: str
 
 
+@quickly_made
 @dataclass(frozen=True, slots=True)
 class ActiveArea:
     """Delaminated or active share of the area by up to three routes; `low` and `high` are the ends
@@ -188,6 +196,7 @@ class ActiveArea:
     text: str
 
 
+@quickly_made
 @dataclass(frozen=True, slots=True, eq=False)
 class ReadingAssessment:
     """All that is concluded from one reading. Quantities are per cm² where the panel has an area,
@@ -270,6 +279,7 @@ class PanelAssessment:
     advice: tuple[str, ...] = ()
 
 
+@quickly_made
 @dataclass(frozen=True, slots=True)
 class CoursePoint:
     """Replicate panels of a formulation at one exposure time: mean, t-limits, how many panels.

@@ -84,6 +84,8 @@ ACTIONS = (
           "campaign"),
     Entry("View", "Where does this number come from?", "Ctrl+H", "From the file to the number",
           "show_origin", "campaign"),
+    Entry("View", "Ratings and photographs", "Ctrl+R", "What was seen on this panel", "show_seen",
+          "campaign"),
     Entry("View", "History", "Ctrl+Shift+H", "What was done, by whom and when", "show_history",
           "campaign"),
     Entry("View", "Light or dark", "Ctrl+L", "Change between light and dark colours", "turn_tone"),

@@ -93,7 +93,7 @@ class Arrivals(QObject):
     def _look_at_arrived(self) -> None:
         self.arrived.hide()
         if files := self.watching.seen():
-            self.incoming.bring_in(files)
+            self.incoming.bring_in(files, self.watching.folder)
 
     def watch_folder(self) -> None:
         """Ask for a folder, and watch it."""

@@ -12,6 +12,28 @@ from PySide6.QtCore import QRectF, Qt, Signal
 from coatgui.window.numbers import prefixed
 
 
+def decade_ticks(low: float, high: float, size: float) -> tuple[float, list[float]]:
+    """Spacing and places of the ticks, as log10, on an axis `size` pixels long: at least two
+    wherever the view has a width."""
+    low, high = min(low, high), max(low, high)
+    decades = [float(d) for d in range(math.ceil(low), math.floor(high) + 1)]
+    room = max(size / 46.0, 2.0)
+    if len(decades) >= 2:
+        step = max(math.ceil(len(decades) / room), 1)
+        kept = [d for d in decades if d % step == 0] if step > 1 else decades
+        return 1.0, kept if len(kept) >= 2 else decades[:: len(decades) - 1]
+    inner = [
+        d + math.log10(m)
+        for d in range(math.floor(low), math.ceil(high) + 1)
+        for m in (1, 2, 3, 5, 7)
+        if low <= d + math.log10(m) <= high
+    ]
+    if len(inner) >= 2:
+        return 0.3, inner
+    width = high - low
+    return width / 3, [low + width * f for f in (0.15, 0.5, 0.85)]
+
+
 class DecadeAxis(pg.AxisItem):  # type: ignore[misc, unused-ignore]
     """An axis for log10 values: a tick at each decade, or finer where less than two would show."""
 
@@ -21,24 +43,7 @@ class DecadeAxis(pg.AxisItem):  # type: ignore[misc, unused-ignore]
         self.enableAutoSIPrefix(False)
 
     def tickValues(self, low: float, high: float, size: float) -> list[tuple[float, list[float]]]:
-        """Places of the ticks, as log10: at least two wherever the view has a width."""
-        low, high = min(low, high), max(low, high)
-        decades = [float(d) for d in range(math.ceil(low), math.floor(high) + 1)]
-        room = max(size / 46.0, 2.0)
-        if len(decades) >= 2:
-            step = max(math.ceil(len(decades) / room), 1)
-            kept = [d for d in decades if d % step == 0] if step > 1 else decades
-            return [(1.0, kept if len(kept) >= 2 else decades[:: len(decades) - 1])]
-        inner = [
-            d + math.log10(m)
-            for d in range(math.floor(low), math.ceil(high) + 1)
-            for m in (1, 2, 3, 5, 7)
-            if low <= d + math.log10(m) <= high
-        ]
-        if len(inner) >= 2:
-            return [(0.3, inner)]
-        width = high - low
-        return [(width / 3, [low + width * f for f in (0.15, 0.5, 0.85)])]
+        return [decade_ticks(low, high, size)]
 
     def tickStrings(self, values: list[float], scale: float, spacing: float) -> list[str]:
         digits = 1 if spacing >= 0.3 else 4

@@ -16,9 +16,10 @@ from PySide6.QtWidgets import (
     QWidget,
 )
 
+from coatgui.intake.corrections import corrected_column
 from coatgui.intake.impedance import CAPACITIVE_SIGN
-from coatgui.intake.units import kind_of, unit_of
-from coatgui.records import Column, Dialect
+from coatgui.intake.units import kind_of
+from coatgui.records import Dialect
 
 ROLES = {
     "other": "not used",
@@ -36,41 +37,13 @@ ROLES = {
     "admittance_phase": "phase of Y",
     "capacitance_real": "C′",
     "capacitance_imaginary": "C″",
+    "parallel_resistance": "R parallel",
+    "parallel_capacitance": "C parallel",
+    "series_resistance": "R in series",
+    "series_capacitance": "C in series",
     "temperature": "temperature",
     "potential": "potential",
 }
-_UNITS = {
-    "frequency": "Hz",
-    "angular_frequency": "rad/s",
-    "impedance": "ohm",
-    "admittance": "S",
-    "capacitance": "F",
-    "angle": "deg",
-    "temperature": "°C",
-    "potential": "mV",
-}
-
-
-def corrected(column: Column, role: str, unit: str, turned: bool, area_cm2: float | None) -> Column:
-    """The column with what a person says of it. The unit may be per area where the panel's area is
-    known. Raises ValueError, with a sentence, where the unit is none of this role."""
-    sign = -1.0 if turned else 1.0
-    kind = kind_of(role)
-    if not kind:
-        return replace(column, role=role, unit=unit, factor=sign)
-    found = unit_of(unit or _UNITS.get(kind, ""), kind)
-    if found is None:
-        raise ValueError(
-            f"'{unit}' is no unit of the {ROLES.get(role, role)}: write it like {_UNITS[kind]}."
-        )
-    factor = found.factor
-    if found.per_area:
-        if area_cm2 is None:
-            raise ValueError(
-                "The unit is per area, and the panel's area is not known: add it to the panel list."
-            )
-        factor *= 1.0 / area_cm2 if kind == "impedance" else area_cm2
-    return replace(column, role=role, unit=found.written, factor=sign * factor)
 
 
 class ColumnsForm(QTableWidget):
@@ -156,7 +129,7 @@ class ColumnsForm(QTableWidget):
                 written = ""  # the unit of what the column was taken for before
             try:
                 columns.append(
-                    corrected(
+                    corrected_column(
                         column, code, written,
                         turned.isChecked() and code in CAPACITIVE_SIGN, self._area_cm2,
                     )

@@ -13,18 +13,16 @@ from PySide6.QtWidgets import (
     QHBoxLayout,
     QLineEdit,
     QPushButton,
-    QTableWidgetItem,
     QVBoxLayout,
     QWidget,
 )
 
 from coatgui.circuits import CoatingModel, Layer, ModelError, ParameterSpec, build_model
+from coatgui.window.bound_parameters import BoundParameters
 from coatgui.window.models import Draft
 from coatgui.window.palette import Colours
 from coatgui.window.places.place import plain_label
 from coatgui.window.section import SectionView, section_of_model
-from coatgui.window.sheet import sheet
-from coatgui.window.typed import typed, written
 
 _ROLES = {
     "Film": "film", "Outer film": "film_1", "Inner film": "film_2",
@@ -57,7 +55,6 @@ class Composer(QWidget):
         self.tone = tone
         self.draft = Draft()
         self.layer = 1
-        self._filling = False
         self._specs: tuple[ParameterSpec, ...] = ()
         column = QVBoxLayout(self)
         column.setContentsMargins(0, 0, 0, 0)
@@ -110,14 +107,11 @@ class Composer(QWidget):
             lambda on: self._put(replace(self.draft, inductance=bool(on)))
         )
         column.addWidget(self.inductance)
-        self.fixed = sheet(
-            ("parameter", "held at (empty: fitted)"),
-            "Values that are held",
-            "Type a value per specimen, with its unit, to hold a parameter at it",
-            editable=True,
-        )
-        self.fixed.setMinimumHeight(96)
-        self.fixed.cellChanged.connect(self._held)
+        self.bound = BoundParameters()
+        self.fixed = self.bound.table
+        self.bound.held.connect(lambda fixed: self._put(replace(self.draft, fixed=fixed)))
+        self.bound.tied.connect(lambda tied: self._put(replace(self.draft, tied=tied)))
+        self.bound.wrong.connect(self.say)
         column.addWidget(self.fixed, 1)
         self.verdict = plain_label()
         column.addWidget(self.verdict)
@@ -194,20 +188,6 @@ class Composer(QWidget):
         layers[self.layer - 1] = changed
         self._put(replace(self.draft, layers=tuple(layers)))
 
-    def _held(self, row: int, column: int) -> None:
-        if self._filling or column != 1 or row >= len(self._specs):
-            return
-        item, spec = self.fixed.item(row, column), self._specs[row]
-        text = item.text().strip() if item else ""
-        fixed = {symbol: value for symbol, value in self.draft.fixed if symbol != spec.symbol}
-        if text:
-            try:
-                fixed[spec.symbol] = typed(text, spec.kind.unit)
-            except ValueError as error:
-                self.say(f"{spec.symbol}: {error}")
-                return
-        self._put(replace(self.draft, fixed=tuple(fixed.items())))
-
     # --- what it makes ---------------------------------------------------------------------
 
     def _put(self, draft: Draft) -> None:
@@ -215,8 +195,14 @@ class Composer(QWidget):
         plain = _without_held(draft)
         if plain is not None:
             self._specs = plain.all_parameters
-            there = {spec.symbol for spec in self._specs}
-            draft = replace(draft, fixed=tuple(f for f in draft.fixed if f[0] in there))
+            kinds = {spec.symbol: spec.kind for spec in self._specs}
+            draft = replace(
+                draft,
+                fixed=tuple(f for f in draft.fixed if f[0] in kinds),
+                tied=tuple(
+                    (s, t) for s, t in draft.tied if s in kinds and kinds[s] is kinds.get(t)
+                ),
+            )
         self.draft = draft
         self._show(plain)
         try:
@@ -225,9 +211,10 @@ class Composer(QWidget):
             self.say(str(error))
             return
         self.verdict.setObjectName("")
-        free, held = len(model.parameters), len(draft.fixed)
+        free, held, tied = len(model.parameters), len(draft.fixed), len(draft.tied)
         text = f"A circuit with {free} parameters to fit"
-        text += f" and {held} held" if held else ""
+        text += f", {held} held" if held else ""
+        text += f", {tied} tied" if tied else ""
         self.verdict.setText(f"{text}; with perfect data each could be told from the others.")
         self._restyle()
         self.keep.setEnabled(True)
@@ -248,17 +235,7 @@ class Composer(QWidget):
         self.choices["next_layer"].setEnabled(self.layer < len(self.draft.layers))
         self.inductance.setChecked(self.draft.inductance)
         self.drop.setVisible(bool(self.draft.model_id))
-        held = dict(self.draft.fixed)
-        self._filling = True
-        self.fixed.setRowCount(len(self._specs))
-        for row, spec in enumerate(self._specs):
-            name = QTableWidgetItem(spec.symbol)
-            name.setFlags(name.flags() & ~name.flags().ItemIsEditable)
-            name.setToolTip(spec.meaning)
-            value = QTableWidgetItem(written(held.get(spec.symbol), spec.kind.unit))
-            self.fixed.setItem(row, 0, name)
-            self.fixed.setItem(row, 1, value)
-        self._filling = False
+        self.bound.show_parameters(self._specs, self.draft.fixed, self.draft.tied)
 
     def _restyle(self) -> None:
         self.verdict.style().unpolish(self.verdict)

@@ -23,7 +23,7 @@ from coatgui.campaign import (
 from coatgui.intake import DryRun, UnreadableFolder
 from coatgui.jobs import Job, run_in_background
 from coatgui.progress import Cancelled
-from coatgui.records import Assessment, Campaign, Found, Reading, ReadingAssessment
+from coatgui.records import Assessment, Campaign, Found, Reading, ReadingAssessment, Severity
 from coatgui.window import desk_work as work
 from coatgui.window.unforeseen import went_wrong
 
@@ -38,7 +38,8 @@ class Desk(QObject):
     is doubtful, `told` with a sentence for the status line, `failed` with one that a person must
     see: something that was asked for was not done. `edited` says what was done and what it changed,
     `closing` that the file is about to be put away, `unkept` that a disk failed, `broken` that a
-    campaign file is damaged, `recovered` what was saved from the file of that name."""
+    campaign file is damaged, `recovered` what was saved from the file of that name,
+    `files_wanted` that a person wants to bring in files."""
 
     campaign_changed = Signal()
     assessed = Signal()
@@ -52,13 +53,14 @@ class Desk(QObject):
     unkept = Signal(str)
     broken = Signal(Path, str)
     recovered = Signal(object, str)
+    files_wanted = Signal()
 
     def __init__(self, parent: QObject | None = None) -> None:
         super().__init__(parent)
         self.file: CampaignFile | None = None
         self.assessment: Assessment | None = None
-        self._readings_of: Campaign | None = None  # whose readings these are, by their ids
-        self._readings: dict[str, Reading] = {}
+        self._inspections_of: tuple[Reading, ...] = ()  # in which the panels' readings are these
+        self._inspections: dict[str, list[Reading]] = {}
         self._judged_of: Assessment | None = None
         self._known: dict[str, ReadingAssessment] = {}
         self.selection = ""
@@ -83,15 +85,17 @@ class Desk(QObject):
     def is_saved(self) -> bool:
         return self.file is None or self.unsaved_folder is None
 
+    @property
+    def is_halted(self) -> bool:
+        """Whether a person stopped the judging."""
+        return self._halted
+
     def reading(self) -> Reading | None:
         """The picked reading."""
         campaign = self.campaign
         if campaign is None:
             return None
-        if self._readings_of is not campaign:
-            self._readings_of = campaign
-            self._readings = {r.reading_id: r for r in campaign.readings}
-        return self._readings.get(self.selection)
+        return campaign.reading(self.selection)
 
     def reading_assessment(self) -> ReadingAssessment | None:
         """What is known of the picked reading."""
@@ -105,6 +109,24 @@ class Desk(QObject):
             self._judged_of = self.assessment
             self._known = {r.reading_id: r for r in self.assessment.readings}
         return self._known.get(reading_id)
+
+    def has_doubts(self) -> bool:
+        """Whether anything waits for a person's eye."""
+        if self.campaign is not None and self.campaign.refused:
+            return True
+        readings = () if self.assessment is None else self.assessment.readings
+        return any(f.severity is not Severity.NOTE for r in readings for f in r.findings)
+
+    def inspections(self, panel_id: str) -> list[Reading]:
+        """The readings of a panel by exposure time, without going through all of them."""
+        campaign = self.campaign
+        if campaign is None:
+            return []
+        if self._inspections_of is not campaign.readings:
+            self._inspections_of, self._inspections = campaign.readings, {}
+            for reading in sorted(campaign.readings, key=lambda r: r.exposure_h):
+                self._inspections.setdefault(reading.panel_id, []).append(reading)
+        return self._inspections.get(panel_id, [])
 
     def unjudged_words(self) -> str:
         """What stands where an assessment is missing."""
@@ -423,4 +445,14 @@ class Desk(QObject):
         def written(where: Path) -> None:
             self.told.emit(f"Written: {where.name}")
 
-        self._start(written, work.export_to, self.assessment, self.campaign, path)
+        judged = (self.assessment, self.campaign, self.photographs())
+        self._start(written, work.export_to, *judged, path)
+
+    def photographs(self) -> dict[str, bytes]:
+        """The bytes of the campaign's photographs by their SHA-256; where the file no longer gives
+        them, that is said."""
+        try:
+            return {} if self.file is None else self.file.photographs()
+        except CampaignFileError as error:
+            self.failed.emit(str(error))
+            return {}

@@ -3,6 +3,7 @@ and where it is stopped."""
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from pathlib import Path
 
 from coatgui.campaign import (
@@ -81,7 +82,13 @@ def walk_to(file: CampaignFile, step: int, progress: Progress) -> Change | None:
     return Change(frozenset(kinds), name) if kinds else None
 
 
-def export_to(assessment: Assessment, campaign: Campaign, path: Path, progress: Progress) -> Path:
+def export_to(
+    assessment: Assessment,
+    campaign: Campaign,
+    photographs: Mapping[str, bytes],
+    path: Path,
+    progress: Progress,
+) -> Path:
     """Write the workbook, the inspection summary (PDF, HTML) or the JSON, by the ending."""
     # Late, as above.
     from coatgui.output import write_json, write_summary, write_workbook
@@ -91,7 +98,7 @@ def export_to(assessment: Assessment, campaign: Campaign, path: Path, progress: 
         case ".json":
             write_json(assessment, path)
         case ".pdf" | ".html":
-            write_summary(assessment, campaign, path)
+            write_summary(assessment, campaign, path, None, photographs)
         case _:
             write_workbook(assessment, campaign, path)
     return path

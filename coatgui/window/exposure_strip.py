@@ -3,6 +3,8 @@ clicks and dragging go along it."""
 
 from __future__ import annotations
 
+import math
+
 from PySide6.QtCore import QPointF, QRectF, QSize, Qt, Signal
 from PySide6.QtGui import QColor, QFont, QKeyEvent, QMouseEvent, QPainter, QPaintEvent, QPen
 from PySide6.QtWidgets import QSizePolicy, QWidget
@@ -12,6 +14,7 @@ from coatgui.window.palette import Colours
 from coatgui.window.tree_model import state_of
 
 _SIDE, _NAME = 28.0, 92.0
+_ROOM = 56.0  # for the words of one time
 
 
 class ExposureStrip(QWidget):
@@ -36,8 +39,7 @@ class ExposureStrip(QWidget):
         campaign, reading = self.desk.campaign, self.desk.reading()
         self.stops, self.panel = [], ""
         if campaign is not None and reading is not None:
-            own = [r for r in campaign.readings if r.panel_id == reading.panel_id]
-            own.sort(key=lambda r: r.exposure_h)
+            own = self.desk.inspections(reading.panel_id)
             for each in own:
                 found = self.desk.judged(each.reading_id)
                 self.stops.append((each.reading_id, each.exposure_h, state_of(found)[0]))
@@ -72,7 +74,8 @@ class ExposureStrip(QWidget):
             painter.drawText(QRectF(12, 2, _NAME, 20), Qt.AlignmentFlag.AlignVCenter, name)
             painter.setPen(QPen(QColor(tone.line), 2))
             painter.drawLine(QPointF(places[0], 12), QPointF(places[-1], 12))
-        for (key, hours, shape), x in zip(self.stops, places, strict=True):
+        written = self._written(places)
+        for number, ((key, hours, shape), x) in enumerate(zip(self.stops, places, strict=True)):
             here = key == self.desk.selection
             ink = QColor(tone.verdigris if here else tone.slate)
             if shape in ("▲", "■") and not here:
@@ -94,6 +97,8 @@ class ExposureStrip(QWidget):
                 )
             else:
                 painter.drawEllipse(middle, size, size)
+            if number not in written:
+                continue
             painter.setPen(QColor(tone.ink if here else tone.second))
             font.setBold(here)
             painter.setFont(font)
@@ -105,6 +110,18 @@ class ExposureStrip(QWidget):
             painter.setBrush(Qt.BrushStyle.NoBrush)
             painter.drawRoundedRect(QRectF(self.rect()).adjusted(1.5, 0.5, -1.5, -1.5), 3, 3)
         painter.end()
+
+    def _written(self, places: list[float]) -> set[int]:
+        """Those of the times that have room to be written: the picked one, and others apart."""
+        picked = [i for i, stop in enumerate(self.stops) if stop[0] == self.desk.selection]
+        written = set(picked)
+        last = -math.inf
+        for number, x in enumerate(places):
+            apart = all(abs(x - places[i]) >= _ROOM for i in picked)
+            if apart and x - last >= _ROOM:
+                written.add(number)
+                last = x
+        return written
 
     def _pick_at(self, x: float) -> None:
         places = self.places()

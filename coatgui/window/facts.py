@@ -7,9 +7,10 @@ from dataclasses import dataclass
 from PySide6.QtCore import QEvent, QObject, Qt, Signal
 from PySide6.QtWidgets import QLabel, QScrollArea, QVBoxLayout, QWidget
 
-from coatgui.records import Assessment, Bound, Quantity, ReadingAssessment
+from coatgui.records import Assessment, Bound, Campaign, Quantity, Reading, ReadingAssessment
 from coatgui.window.numbers import said
 from coatgui.window.places.place import plain_label
+from coatgui.window.seen import rating_words
 
 
 @dataclass(frozen=True)
@@ -55,6 +56,24 @@ def facts(reading: ReadingAssessment | None, assessment: Assessment | None) -> l
             lines += [Fact("value", text) for text in told]
     lines += [Fact("caution", text) for text in assessment.cautions[:1]]
     return lines
+
+
+def seen_facts(campaign: Campaign, reading: Reading) -> list[Fact]:
+    """What was seen on the panel at this inspection."""
+    here = reading.panel_id, reading.exposure_h
+    lines = [
+        Fact("value", rating_words(r.seen).partition(": ")[2].replace("\n", "; "))
+        for r in campaign.ratings
+        if (r.seen.panel_id, r.seen.exposure_h) == here
+    ]
+    for photograph in campaign.photographs:
+        if (photograph.panel_id, photograph.exposure_h) == here:
+            name = photograph.caption or photograph.file
+            lines.append(Fact("value", f"Photograph: {name}" if name else "A photograph"))
+    if not lines:
+        return []
+    note = Fact("note", "Ctrl+R shows ratings and photographs.")
+    return [Fact("name", "Seen at this inspection"), *lines, note]
 
 
 def _said(name: str, quantity: Quantity | None, code: str, note: str | None = None) -> list[Fact]:

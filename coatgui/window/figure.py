@@ -17,6 +17,7 @@ from PySide6.QtWidgets import QWidget
 from coatgui.output.whole import write_whole
 from coatgui.window import palette
 from coatgui.window.axis import Plot
+from coatgui.window.canvas import Canvas
 from coatgui.window.palette import Colours
 
 _CAPTION = 28
@@ -88,7 +89,11 @@ def _draw(painter: QPainter, widgets: Sequence[QWidget], caption: str, scale: fl
                 painter.save()
                 painter.translate(target.topLeft())
                 painter.scale(scale, scale)
-                widget.render(painter, QPoint(0, 0), QRegion(), QWidget.RenderFlag.DrawChildren)
+                if isinstance(widget, Canvas):
+                    widget.paint_on(painter, as_shapes=True)
+                else:
+                    flag = QWidget.RenderFlag.DrawChildren
+                    widget.render(painter, QPoint(0, 0), QRegion(), flag)
                 painter.restore()
 
 

@@ -32,6 +32,7 @@ class FileActions:
     ) -> None:
         self._window, self.desk, self.incoming = window, desk, incoming
         self.settings, self.trouble = settings, trouble
+        desk.files_wanted.connect(self.bring_in)
 
     def may_leave(self) -> bool:
         """Whether the campaign may be put away: asks where edits would be lost."""

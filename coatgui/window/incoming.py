@@ -34,8 +34,8 @@ QUESTIONABLE = (Standing.ASKED, Standing.DOUBTFUL)
 
 @dataclass(frozen=True)
 class Batch:
-    """A folder, or loose files, that were handed over together, and what was said about them.
-    Names are those of the batch: two folders may hold files of one name."""
+    """A folder, or files, of a folder perhaps, that were handed over together, and what was said
+    about them. Names are those of the batch: two folders may hold files of one name."""
 
     folder: Path | None
     files: tuple[Path, ...]
@@ -47,9 +47,9 @@ class Batch:
         return next((path for path in self.files if path.name == file), Path(file))
 
     def looked_at(self, progress: Progress) -> DryRun:
-        if self.folder is not None:
+        if self.folder is not None and not self.files:
             return propose_folder(self.folder, told=self.told, progress=progress)
-        return propose_files(self.files, told=self.told, progress=progress)
+        return propose_files(self.files, below=self.folder, told=self.told, progress=progress)
 
 
 @dataclass(frozen=True)
@@ -144,13 +144,14 @@ class Incoming(QObject):
 
     # --- beginning -------------------------------------------------------------------------
 
-    def bring_in(self, paths: Sequence[Path]) -> None:
-        """Look at files and folders: for the campaign that is open, or for a new one."""
+    def bring_in(self, paths: Sequence[Path], below: Path | None = None) -> None:
+        """Look at files and folders: for the campaign that is open, or for a new one. Files in a
+        folder `below` which they are chosen keep the folders between in their names."""
         areas = Told(areas_cm2=areas_of(self.desk.campaign))
         batches = [Batch(path, (), areas) for path in paths if path.is_dir()]
         files = tuple(path for path in paths if not path.is_dir())
         if files:
-            batches.append(Batch(None, files, areas))
+            batches.append(Batch(below, files, areas))
         # What waits already is not lost when more comes.
         title = ""
         if self.desk.file is None:

@@ -6,7 +6,7 @@ from collections.abc import Callable
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-from PySide6.QtCore import QByteArray, QEvent, QSettings, Qt
+from PySide6.QtCore import QByteArray, QEvent, QSettings, Qt, QTimer
 from PySide6.QtGui import QAction, QCloseEvent, QDragEnterEvent, QDropEvent, QKeySequence
 from PySide6.QtWidgets import (
     QApplication,
@@ -43,6 +43,7 @@ if TYPE_CHECKING:
     from coatgui.window.dry_run_page import DryRunPage
 
 _UNSAVED = "not saved yet"
+_MANY = 2000  # readings, beyond which following an edit is cut into parts
 
 
 class MainWindow(QMainWindow):
@@ -61,6 +62,7 @@ class MainWindow(QMainWindow):
         self._shown: CampaignFile | None = None
         # Places that do not show what the desk holds: all of it (True), or only the selection.
         self._behind: dict[int, bool] = {}
+        self._parts: list[Callable[[], None]] = []  # of following the desk, still to be done
         self.trouble = Trouble()
         self.incoming = Incoming(self.desk, self)
         self.files = FileActions(self, self.desk, self.incoming, settings, self.trouble)
@@ -146,6 +148,7 @@ class MainWindow(QMainWindow):
         splitter = QSplitter()
         splitter.setHandleWidth(1)
         self.project = ProjectTree(self.desk, self.tone)
+        self.project.setMinimumWidth(190)
         splitter.addWidget(self.project)
         middle = QWidget()
         column = QVBoxLayout(middle)
@@ -222,16 +225,30 @@ class MainWindow(QMainWindow):
                 "work": self.desk.job is not None,
             }.get(entry.needs, name is not None)
             action.setEnabled(there)
-        self.project.refresh()
         self._behind = dict.fromkeys(range(len(ORDER)), True)
-        doubts = NOUNS.index("Doubts")
+        parts = (self.project.refresh, self._refresh_places, self._show_facts)
+        self._parts = []
+        if file is None or len(file.campaign.readings) < _MANY:
+            for part in parts:
+                part()
+        else:
+            # One after another, with a look at keys and mouse between them.
+            self._parts = list(parts)
+            QTimer.singleShot(0, self, self._next_part)
+
+    def _next_part(self) -> None:
+        if self._parts:
+            self._parts.pop(0)()
+            QTimer.singleShot(0, self, self._next_part)
+
+    def _refresh_places(self) -> None:
+        """Doubts are counted beside their place's noun; other places follow when they are seen."""
         self._catch_up(self.stack.currentIndex())
-        if file is not None or self.places.is_built(doubts):
-            # Doubts are counted beside their place's noun; other places follow when they are seen.
+        doubts = NOUNS.index("Doubts")
+        if self.desk.has_doubts() or self.places.is_built(doubts):
             self._catch_up(doubts)
             found = self.places[doubts].doubts  # type: ignore[attr-defined]
             self.buttons.button(doubts).setText(f"Doubts  {len(found)}" if found else "Doubts")
-        self._show_facts()
 
     def _how_kept(self, file: CampaignFile) -> str:
         if file.read_only_because:

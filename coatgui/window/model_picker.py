@@ -2,11 +2,13 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
+
 from PySide6.QtCore import Qt
 from PySide6.QtWidgets import QComboBox, QHBoxLayout, QPushButton, QVBoxLayout, QWidget
 
 from coatgui.campaign import operations
-from coatgui.circuits import catalogue
+from coatgui.circuits import CoatingModel, catalogue
 from coatgui.records import Reading
 from coatgui.window.desk import Desk
 from coatgui.window.models import models
@@ -21,6 +23,7 @@ class ModelPicker(QWidget):
     def __init__(self, desk: Desk) -> None:
         super().__init__()
         self.desk = desk
+        self._offered: tuple[Mapping[str, CoatingModel], str] | None = None
         column = QVBoxLayout(self)
         column.setContentsMargins(0, 0, 0, 0)
         column.setSpacing(6)
@@ -43,16 +46,22 @@ class ModelPicker(QWidget):
 
     def offer(self, reading: Reading) -> None:
         """The models in the list, and the one that is set for this reading."""
+        offered = (models(self.desk.campaign), reading.pinned_model)
+        if offered != self._offered:
+            self._offered = offered
+            self._fill(*offered)
+        self.model.setCurrentIndex(self.model.findData(reading.pinned_model))
+
+    def _fill(self, known: Mapping[str, CoatingModel], pinned: str) -> None:
         self.model.clear()
         self.model.addItem(_AUTOMATIC, "")
-        for name, model in models(self.desk.campaign).items():
+        for name, model in known.items():
             own = "" if name in catalogue() else " (own)"
             self.model.addItem(f"{model.name}{own}", name)
             tip = plain_tip(model.meaning or ", ".join(model.symbols))
             self.model.setItemData(self.model.count() - 1, tip, Qt.ItemDataRole.ToolTipRole)
-        if self.model.findData(reading.pinned_model) < 0:
-            self.model.addItem(f"{reading.pinned_model} (not there any more)", reading.pinned_model)
-        self.model.setCurrentIndex(self.model.findData(reading.pinned_model))
+        if self.model.findData(pinned) < 0:
+            self.model.addItem(f"{pinned} (not there any more)", pinned)
 
     def picked(self) -> str:
         """The id of the model that is set, "" where the program chooses."""

@@ -38,13 +38,19 @@ def models(campaign: Campaign | None) -> Mapping[str, CoatingModel]:
 @dataclass(frozen=True)
 class Draft:
     """A model that is being composed. `model_id` is empty for a new one; `fixed` holds parameters
-    at values per specimen, by symbol."""
+    at values per specimen, by symbol, and `tied` those that have the value of another."""
 
     name: str = ""
     layers: tuple[Layer, ...] = (Layer("film"),)
     inductance: bool = False
     fixed: tuple[tuple[str, float], ...] = ()
     model_id: str = ""
+    tied: tuple[tuple[str, str], ...] = ()
+
+    def groups(self) -> list[list[str]]:
+        """The parameters that share one value, each group begun by the one that is fitted."""
+        leaders = list(dict.fromkeys(leader for _, leader in self.tied))
+        return [[one, *(s for s, leader in self.tied if leader == one)] for one in leaders]
 
     def text(self) -> str:
         """The JSON text that is stored in the settings."""
@@ -55,6 +61,7 @@ class Draft:
                 "layer": [asdict(layer) for layer in self.layers],
                 "inductance": self.inductance,
                 "fixed": dict(self.fixed),
+                "tied": self.groups(),
             },
             ensure_ascii=False,
         )
@@ -71,7 +78,8 @@ def draft_of(text: str) -> Draft:
     model = own_model(text)
     data = json.loads(text)
     fixed = tuple((str(k), float(v)) for k, v in (data.get("fixed") or {}).items())
-    return Draft(model.name, model.layers, model.inductance, fixed, model.model_id)
+    tied = tuple((str(s), str(group[0])) for group in data.get("tied") or () for s in group[1:])
+    return Draft(model.name, model.layers, model.inductance, fixed, model.model_id, tied)
 
 
 def _id_of(name: str) -> str:

@@ -153,6 +153,7 @@ def apply(application: QApplication, tone: Colours) -> None:
         QPushButton#place:focus {{ color: {tone.verdigris}; }}
         QLabel#headline {{ font-size: 20px; color: {tone.ink}; }}
         QLabel#question {{ font-size: 16px; color: {tone.ink}; }}
+        QLabel#empty {{ font-size: 16px; color: {tone.second}; }}
         QLabel#small {{ font-size: 11px; color: {tone.second}; }}
         QLabel#fact_title {{ font-size: 16px; }}
         QLabel#wrong {{ color: {tone.rust}; }}

@@ -5,13 +5,15 @@ from __future__ import annotations
 
 from collections.abc import Callable
 
-from PySide6.QtCore import QModelIndex, QPoint, Qt, QTimer
-from PySide6.QtGui import QKeyEvent
+from PySide6.QtCore import QModelIndex, QPersistentModelIndex, QPoint, QRect, Qt, QTimer
+from PySide6.QtGui import QColor, QKeyEvent, QPainter
 from PySide6.QtWidgets import (
     QAbstractItemView,
     QFrame,
     QLineEdit,
     QMenu,
+    QStyledItemDelegate,
+    QStyleOptionViewItem,
     QToolButton,
     QTreeView,
     QVBoxLayout,
@@ -35,6 +37,33 @@ class _View(QTreeView):
             self._remove()
         else:
             super().keyPressEvent(event)
+
+
+class _Row(QStyledItemDelegate):
+    """Paints a row from its node alone: a style would ask the model for a dozen things first."""
+
+    def __init__(self, model: TreeModel, view: QTreeView) -> None:
+        super().__init__(view)
+        self._model, self._view = model, view
+
+    def paint(
+        self,
+        painter: QPainter,
+        option: QStyleOptionViewItem,
+        index: QModelIndex | QPersistentModelIndex,
+    ) -> None:
+        node, tone = self._model.node(index), self._model.tone
+        area: QRect = option.rect
+        if index == self._view.currentIndex():
+            painter.fillRect(area, QColor(tone.verdigris))
+            painter.setPen(QColor(tone.ground))
+        else:
+            painter.setPen(QColor(self._model.ink_of(node)))
+        painter.setFont(self._view.font())
+        words = self._view.fontMetrics().elidedText(
+            self._model.words(node), Qt.TextElideMode.ElideRight, area.width() - 6
+        )
+        painter.drawText(area.adjusted(3, 0, -3, 0), Qt.AlignmentFlag.AlignVCenter, words)
 
 
 class ProjectTree(QFrame):
@@ -64,6 +93,7 @@ class ProjectTree(QFrame):
         self.view.setUniformRowHeights(True)
         self.view.setIndentation(14)
         self.view.setModel(self.model)
+        self.view.setItemDelegate(_Row(self.model, self.view))
         self.view.setDragDropMode(QAbstractItemView.DragDropMode.DragDrop)
         self.view.setDefaultDropAction(Qt.DropAction.MoveAction)
         self.view.setEditTriggers(QAbstractItemView.EditTrigger.EditKeyPressed)
@@ -73,6 +103,7 @@ class ProjectTree(QFrame):
         column.addWidget(self.filter)
         column.addWidget(self.view, 1)
         self._campaign = ""
+        self._opened = ""  # the panel that was opened only to show the picked reading
 
     # --- following the desk ----------------------------------------------------------------
 
@@ -81,8 +112,9 @@ class ProjectTree(QFrame):
         open_before = self._open_rows(QModelIndex())
         campaign = self.desk.campaign
         current = self.node()
-        self.model.show(campaign, self.desk.assessment, self.filter.text())
-        if self.filter.text().strip():
+        if not self.model.show(campaign, self.desk.assessment, self.filter.text()):
+            self.view.viewport().update()
+        elif self.filter.text().strip():
             self.view.expandAll()
         elif campaign is None or campaign.campaign_id != self._campaign:
             self.view.expandToDepth(1)
@@ -106,6 +138,12 @@ class ProjectTree(QFrame):
         index = self.model.index_of(key)
         if index.isValid():
             blocked = self.view.selectionModel().blockSignals(True)
+            above = self.model.parent(index)
+            panel = self.model.node(above).key
+            if panel != self._opened:
+                # Closed again, or a tree of thousands of open rows would grow with every pick.
+                self.view.collapse(self.model.index_of(self._opened))
+                self._opened = "" if self.view.isExpanded(above) else panel
             self.view.setCurrentIndex(index)
             self.view.scrollTo(index)
             self.view.selectionModel().blockSignals(blocked)

@@ -14,6 +14,7 @@ from dataclasses import dataclass
 
 from PySide6.QtCore import QPointF, QRectF, QSize, Qt, Signal
 from PySide6.QtGui import (
+    QBrush,
     QColor,
     QFont,
     QFontMetricsF,
@@ -257,14 +258,7 @@ class SectionView(QWidget):
             painter.drawLine(area.bottomLeft(), area.bottomRight())
         else:
             painter.fillRect(area, QColor(tone.ground))
-            painter.save()
-            painter.setClipRect(area)
-            painter.setPen(QPen(QColor(tone.ink), 1))
-            x = area.left() - area.height()
-            while x < area.right():
-                painter.drawLine(QPointF(x, area.bottom()), QPointF(x + area.height(), area.top()))
-                x += 7
-            painter.restore()
+            painter.fillRect(area, QBrush(QColor(tone.ink), Qt.BrushStyle.BDiagPattern))
         painter.setPen(QPen(QColor(tone.second), 1))
         painter.setBrush(Qt.BrushStyle.NoBrush)
         painter.drawRect(area)

@@ -9,16 +9,17 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import Any
 
 import numpy as np
-import pyqtgraph as pg
 from PySide6.QtCore import QEvent, QObject, QPointF, QRectF, Qt, Signal
-from PySide6.QtGui import QColor, QFocusEvent, QKeyEvent, QPainter, QPaintEvent
+from PySide6.QtGui import QColor, QFocusEvent, QKeyEvent, QPainter, QPaintEvent, QPen
 from PySide6.QtWidgets import QGridLayout, QWidget
 
+from coatgui.fitting.views import FitBand, Part
 from coatgui.records import Fit, Spectrum
-from coatgui.window.axis import Plot
+from coatgui.window.canvas import Canvas, Curve, Line, Marks
+from coatgui.window.fit_drawn import FitDrawn
+from coatgui.window.key import Entry, Key
 from coatgui.window.numbers import prefixed
 from coatgui.window.palette import Colours, time_colour
 
@@ -68,16 +69,15 @@ class SpectrumPlots(QWidget):
         self.setAccessibleDescription(
             "Left and right move the cursor; space leaves the point out or takes it back."
         )
-        self.modulus = Plot(
+        self.modulus = Canvas(
             "Bode plot of the modulus", ("frequency", "Hz"), ("|Z| of the specimen", "Ω")
         )
-        self.phase = Plot("Bode plot of the phase", ("frequency", "Hz"), ("phase / °", None))
-        self.plane = Plot("Complex plane", ("Z′", "Ω"), ("−Z″", "Ω"), decades=False)
-        self.residual = Plot("Residuals", ("frequency", "Hz"), ("residual / %", None))
+        self.phase = Canvas("Bode plot of the phase", ("frequency", "Hz"), ("phase / °", None))
+        self.plane = Canvas("Complex plane", ("Z′", "Ω"), ("−Z″", "Ω"), decades=False, even=True)
+        self.residual = Canvas("Residuals", ("frequency", "Hz"), ("residual / %", None))
         self.plots = (self.modulus, self.phase, self.plane, self.residual)
-        self.plane.setAspectLocked(True)
-        self.phase.setXLink(self.modulus)
-        self.residual.setXLink(self.modulus)
+        self.phase.share_across(self.modulus)
+        self.residual.share_across(self.modulus)
         grid = QGridLayout(self)
         grid.setContentsMargins(2, 2, 2, 2)
         grid.setSpacing(8)
@@ -88,33 +88,31 @@ class SpectrumPlots(QWidget):
         self._focus: QColor | None = None
         self._pressed: QPointF | None = None
         self._beside: list[Drawn] = []
-        self._others: list[list[pg.PlotCurveItem]] = [[] for _ in self.plots]
-        self._fits = [pg.PlotCurveItem() for _ in self.plots[:3]]
-        self._points = [pg.ScatterPlotItem() for _ in self.plots]
-        self._crosses = [pg.ScatterPlotItem() for _ in self.plots[:3]]
-        self._imaginary = pg.ScatterPlotItem()
-        self._zero = pg.InfiniteLine(0.0, angle=0)
-        self._rings = [pg.ScatterPlotItem() for _ in self.plots]
-        self._lines = [pg.InfiniteLine(angle=90) for _ in (0, 1, 3)]
+        self._others: list[list[Curve]] = [[] for _ in self.plots]
+        self._fits = [Curve() for _ in self.plots[:3]]
+        self._points = [Marks(size=size) for size in (7, 7, 7, 5)]
+        self._crosses = [Marks(symbol="x", size=8) for _ in self.plots[:3]]
+        self._imaginary = Marks(symbol="t", size=6)
+        self._zero = Line(upright=False)
+        self._rings = [Marks(size=13) for _ in self.plots]
+        self._lines = [Line(upright=True) for _ in (0, 1, 3)]
         self._place_items()
+        self.beside_fit = FitDrawn(self.modulus, self.phase, self.plane)
+        self.key = Key("Marks and lines of the spectrum")
+        grid.addWidget(self.key, 2, 0, 1, 2)
         for plot in self.plots:
-            plot.setFocusPolicy(Qt.FocusPolicy.NoFocus)
-            plot.viewport().installEventFilter(self)
-            plot.setMouseTracking(True)
+            plot.installEventFilter(self)
             plot.boxed.connect(lambda area, of=plot: self._box(of, area))
 
     def _place_items(self) -> None:
-        for plot, curve in zip(self.plots, self._fits, strict=False):
-            plot.addItem(curve)
-        for plot, crosses in zip(self.plots, self._crosses, strict=False):
-            plot.addItem(crosses)
+        self.residual.add(self._zero)
+        for plot, curve, crosses in zip(self.plots, self._fits, self._crosses, strict=False):
+            plot.add(curve, crosses)
         for plot, points, ring in zip(self.plots, self._points, self._rings, strict=True):
-            plot.addItem(points)
-            plot.addItem(ring, ignoreBounds=True)
-        self.residual.addItem(self._imaginary)
-        self.residual.addItem(self._zero, ignoreBounds=True)
+            plot.add(points, ring)
+        self.residual.add(self._imaginary)
         for plot, line in zip((self.modulus, self.phase, self.residual), self._lines, strict=True):
-            plot.addItem(line, ignoreBounds=True)
+            plot.add(line)
 
     # --- drawing ---------------------------------------------------------------------------
 
@@ -132,43 +130,58 @@ class SpectrumPlots(QWidget):
             plot.paint_in(tone.ground, tone.second, tone.line)
         self._draw_others(others, tone)
         if drawn is None:
-            for item in (*self._points, *self._crosses, *self._rings, self._imaginary):
-                item.setData([], [])
-            for curve in self._fits:
-                curve.setData([], [])
+            for item in (*self._fits, *self._points, *self._crosses, self._imaginary):
+                item.show([], [])
             self.point_at(-1)
+            self.key.show_entries([], tone.ink)
             return
         used, places = drawn.used, drawn.places()
-        ring = pg.mkPen(tone.slate, width=1.2)
         for item, (across, up) in zip(self._points, places, strict=True):
-            small = item is self._points[3]
-            item.setData(
-                across[used], up[used], symbol="o", size=5 if small else 7, pen=ring, brush=None
-            )
+            item.show(across[used], up[used], QPen(QColor(tone.slate), 1.2))
         for item, (across, up) in zip(self._crosses, places, strict=False):
-            item.setData(
-                across[~used], up[~used], symbol="x", size=8, pen=pg.mkPen(tone.second),
-                brush=pg.mkBrush(tone.second),
-            )  # fmt: skip
+            item.show(across[~used], up[~used], QPen(QColor(tone.second), 2))
         self._draw_fit(drawn, tone)
         for line in self._lines:
-            line.setPen(pg.mkPen(tone.second, width=1))
+            line.pen = QPen(QColor(tone.second), 1)
         for item in self._rings:
-            item.setPen(pg.mkPen(tone.verdigris, width=2))
-            item.setBrush(None)
+            item.pen = QPen(QColor(tone.verdigris), 2)
         self.point_at(self.place if same else -1)
+        self._show_key(tone)
         if not same:
             self.whole_view()
 
+    def show_beside_fit(
+        self, band: FitBand | None, parts: Sequence[Part], frequency_hz: np.ndarray, tone: Colours
+    ) -> None:
+        """Draw the band and the parts of the fit that is shown."""
+        self.beside_fit.show(band, parts, frequency_hz, tone)
+        self._show_key(tone)
+
+    def _show_key(self, tone: Colours) -> None:
+        drawn = self.drawn
+        if drawn is None:
+            return
+        entries = [Entry("circle", tone.slate, "measured")]
+        if not drawn.used.all():
+            entries.append(Entry("cross", tone.second, "left out"))
+        if drawn.fit is not None:
+            entries += [
+                Entry("line", tone.verdigris, "fit"),
+                *self.beside_fit.entries(tone),
+                Entry("circle", tone.slate, "residual of Z′"),
+                Entry("triangle", tone.amber, "residual of Z″"),
+            ]
+        if self._beside:
+            entries.append(Entry("line", time_colour(0.5, tone.dark).name(), "other spectra"))
+        self.key.show_entries(entries, tone.ink)
+
     def _draw_fit(self, drawn: Drawn, tone: Colours) -> None:
         x, off = np.log10(drawn.spectrum.frequency_hz), drawn.residual()
-        pen = pg.mkPen(tone.verdigris, width=1.6)
-        self._zero.setPen(pg.mkPen(tone.line))
+        pen = QPen(QColor(tone.verdigris), 1.6)
+        self._zero.pen = QPen(QColor(tone.line), 1)
         if drawn.fit is None or off is None:
-            for curve in self._fits:
-                curve.setData([], [])
-            self._imaginary.setData([], [])
-            self._points[3].setData([], [])
+            for item in (*self._fits, self._imaginary, self._points[3]):
+                item.show([], [])
             return
         model, used = drawn.fit.modelled_ohm, drawn.used
         for curve, (across, up) in zip(
@@ -180,24 +193,20 @@ class SpectrumPlots(QWidget):
             ),
             strict=True,
         ):
-            curve.setData(across, up, pen=pen)
-        self._imaginary.setData(
-            x[used], off.imag[used], symbol="t", size=6, pen=pg.mkPen(tone.amber), brush=None
-        )
+            curve.show(across, up, pen)
+        self._imaginary.show(x[used], off.imag[used], QPen(QColor(tone.amber), 1))
 
     def _draw_others(self, others: Sequence[tuple[Drawn, float]], tone: Colours) -> None:
         for plot, curves in zip(self.plots[:3], self._others, strict=False):
             while len(curves) < len(others):
-                curve = pg.PlotCurveItem()
-                curve.setZValue(-10)
-                plot.addItem(curve)
-                curves.append(curve)
+                curves.append(Curve(behind=True))
+                plot.add(curves[-1])
             for curve in curves[len(others) :]:
-                curve.setData([], [])
+                curve.show([], [])
         for number, (other, share) in enumerate(others):
-            pen = pg.mkPen(time_colour(share, tone.dark), width=1.6)
+            pen = QPen(QColor(time_colour(share, tone.dark)), 1.6)
             for curves, (across, up) in zip(self._others, other.places()[:3], strict=False):
-                curves[number].setData(across[other.used], up[other.used], pen=pen)
+                curves[number].show(across[other.used], up[other.used], pen)
 
     def whole_view(self) -> None:
         """Show every point; residuals evenly about zero."""
@@ -208,16 +217,14 @@ class SpectrumPlots(QWidget):
             places = [d.places()[number] for d in drawn]
             across = np.concatenate([p[0] for p in places])
             up = np.concatenate([p[1] for p in places])
-            plot.setRange(
-                xRange=(float(across.min()), float(across.max())),
-                yRange=(float(up.min()), float(up.max())),
-                padding=0.04,
+            plot.show_range(
+                (float(across.min()), float(across.max())), (float(up.min()), float(up.max()))
             )
         off = self.drawn.residual()
         if off is not None and self.drawn.used.any():
             kept = off[self.drawn.used]
             most = max(float(np.abs(kept.real).max()), float(np.abs(kept.imag).max()), 0.05)
-            self.residual.setYRange(-most, most, padding=0.08)
+            self.residual.show_range(None, (-most, most), 0.08)
 
     # --- cursor, clicks, keys --------------------------------------------------------------
 
@@ -227,17 +234,19 @@ class SpectrumPlots(QWidget):
         drawn = self.drawn
         there = drawn is not None and 0 <= place < len(drawn.spectrum)
         for line in self._lines:
-            line.setVisible(there)
+            line.is_shown = there
         for ring in self._rings:
-            ring.setVisible(there)
+            ring.is_shown = there
+        for plot in self.plots:
+            plot.update()
         if drawn is None or not there:
             self.pointed.emit("")
             return
         for ring, (across, up) in zip(self._rings, drawn.places(), strict=True):
             seen = bool(np.isfinite(up[place]))
-            ring.setData([across[place]] if seen else [], [up[place]] if seen else [], size=13)
+            ring.show([across[place]] if seen else [], [up[place]] if seen else [])
         for line in self._lines:
-            line.setValue(float(np.log10(drawn.spectrum.frequency_hz[place])))
+            line.value = float(np.log10(drawn.spectrum.frequency_hz[place]))
         self.pointed.emit(self._words(drawn, place))
 
     def _words(self, drawn: Drawn, place: int) -> str:
@@ -255,18 +264,12 @@ class SpectrumPlots(QWidget):
             parts.append(f"residual {off[place].real:+.2f} % / {off[place].imag:+.2f} %")
         return "   ".join(parts).replace("-", "−")
 
-    def _on_screen(self, plot: Any) -> np.ndarray:
+    def _on_screen(self, plot: Canvas) -> np.ndarray:
         """Where the points stand in a plot, in its pixels, (N, 2)."""
         assert self.drawn is not None
-        box = plot.getPlotItem().vb
-        across, up = self.drawn.places()[self.plots.index(plot)]
-        (left, right), (bottom, top) = box.viewRange()
-        area = box.sceneBoundingRect()
-        px = area.left() + (across - left) / max(right - left, 1e-300) * area.width()
-        py = area.bottom() - (up - bottom) / max(top - bottom, 1e-300) * area.height()
-        return np.stack([px, py], axis=1)
+        return plot.on_screen(*self.drawn.places()[self.plots.index(plot)])
 
-    def nearest(self, plot: Any, where: QPointF) -> tuple[int, float]:
+    def nearest(self, plot: Canvas, where: QPointF) -> tuple[int, float]:
         """The point nearest to a place in a plot, and how many pixels off it is."""
         if self.drawn is None:
             return -1, np.inf
@@ -277,7 +280,7 @@ class SpectrumPlots(QWidget):
         return place, float(off[place])
 
     def eventFilter(self, watched: QObject, event: QEvent) -> bool:
-        plot = next((p for p in self.plots if p.viewport() is watched), None)
+        plot = next((p for p in self.plots if p is watched), None)
         if plot is None or self.drawn is None:
             return False
         kind = event.type()
@@ -286,7 +289,7 @@ class SpectrumPlots(QWidget):
             if plot is self.plane:
                 self.point_at(self.nearest(plot, where)[0])
             else:
-                x = float(plot.getPlotItem().vb.mapSceneToView(where).x())
+                x = plot.at(where).x()
                 logs = np.log10(self.drawn.spectrum.frequency_hz)
                 self.point_at(int(np.abs(logs - x).argmin()))
         elif kind == QEvent.Type.MouseButtonPress:
@@ -303,7 +306,7 @@ class SpectrumPlots(QWidget):
                 self.toggled.emit([place])
         return False
 
-    def _box(self, plot: Any, area: QRectF) -> None:
+    def _box(self, plot: Canvas, area: QRectF) -> None:
         if self.drawn is None:
             return
         across, up = self.drawn.places()[self.plots.index(plot)]

@@ -13,8 +13,8 @@ from itertools import pairwise
 import numpy as np
 import pyqtgraph as pg
 from PySide6.QtCore import QObject, QPointF, QTimer, Signal
-from PySide6.QtGui import QPolygonF
-from PySide6.QtWidgets import QGraphicsPolygonItem
+from PySide6.QtGui import QPainterPath, QPolygonF
+from PySide6.QtWidgets import QGraphicsPathItem
 
 from coatgui.fitting.relaxation import RelaxationOutline, relaxation_outline
 from coatgui.jobs import Job, run_in_background
@@ -119,8 +119,8 @@ class Outlines(QObject):
 
 
 class TimeConstantsPlot(Plot):
-    """A column for each reading, as wide as resistance belongs to a time constant; circles mark the
-    humps, with the share of the resistance as their size."""
+    """A column for each reading, as wide as resistance belongs to a time constant, with its 95 %
+    band; circles mark the humps, with the share of the resistance as their size."""
 
     def __init__(self) -> None:
         super().__init__(
@@ -154,22 +154,24 @@ class TimeConstantsPlot(Plot):
     def _column(
         self, x: float, half: float, outline: RelaxationOutline, picked: bool, tone: Colours
     ) -> None:
-        largest = float(outline.density_ohm.max())
+        # The upper end of the band fills the column.
+        largest = float(outline.high_ohm.max())
         if largest <= 0:
             return
-        share = outline.density_ohm / largest
-        height = np.log10(outline.time_constant_s)
-        shown = np.flatnonzero(share > _FAINT)
-        first, last = max(shown[0] - 1, 0), min(shown[-1] + 2, share.size)
-        share, height = share[first:last], height[first:last]
-        points = [QPointF(x - half * s, y) for s, y in zip(share, height, strict=True)]
-        points += [QPointF(x + half * s, y) for s, y in zip(share[::-1], height[::-1], strict=True)]
-        shape = QGraphicsPolygonItem(QPolygonF(points))
+        high = outline.high_ohm / largest
+        shown = np.flatnonzero(high > _FAINT)
+        part = slice(max(int(shown[0]) - 1, 0), min(int(shown[-1]) + 2, high.size))
+        height = np.log10(outline.time_constant_s[part])
         colour = pg.mkColor(tone.verdigris if picked else tone.slate)
-        shape.setPen(pg.mkPen(colour, width=1))
-        colour.setAlpha(60)
-        shape.setBrush(pg.mkBrush(colour))
-        self.addItem(shape)
+        band = _outlined(x, half * high[part], height, half * outline.low_ohm[part] / largest)
+        itself = _outlined(x, half * outline.density_ohm[part] / largest, height)
+        for path, is_band in ((band, True), (itself, False)):
+            shape = QGraphicsPathItem(path)
+            shape.setPen(pg.mkPen(None) if is_band else pg.mkPen(colour, width=1))
+            fill = pg.mkColor(colour)
+            fill.setAlpha(70 if is_band else 40)
+            shape.setBrush(pg.mkBrush(fill))
+            self.addItem(shape)
         peaks = outline.peaks
         if peaks:
             self.addItem(
@@ -181,3 +183,19 @@ class TimeConstantsPlot(Plot):
                     brush=pg.mkBrush(tone.ground),
                 )
             )
+
+
+def _outlined(
+    x: float, reach: np.ndarray, height: np.ndarray, inner: np.ndarray | None = None
+) -> QPainterPath:
+    """A column about `x` that reaches so far to both sides at each height; without what is nearer
+    than `inner`."""
+    path = QPainterPath()  # odd and even: what is covered twice is left free
+    for each in (reach, inner):
+        if each is None:
+            continue
+        left = [QPointF(x - r, y) for r, y in zip(each, height, strict=True)]
+        right = [QPointF(x + r, y) for r, y in zip(each[::-1], height[::-1], strict=True)]
+        path.addPolygon(QPolygonF([*left, *right]))
+        path.closeSubpath()
+    return path

@@ -19,11 +19,22 @@ from PySide6.QtCore import (
 )
 from PySide6.QtGui import QBrush, QColor
 
-from coatgui.records import Assessment, Campaign, Reading, ReadingAssessment, Severity
+from coatgui.records import Assessment, Campaign, Panel, Reading, ReadingAssessment, Severity
 from coatgui.window.palette import Colours
 
 NODE = "application/x-coatgui-node"
 Index = QModelIndex | QPersistentModelIndex
+
+
+_ROW = Qt.ItemFlag.ItemIsEnabled | Qt.ItemFlag.ItemIsSelectable | Qt.ItemFlag.ItemIsEditable
+# Put together once: a view asks for them hundreds of times in every painting.
+_FLAGS = {
+    "root": Qt.ItemFlag.NoItemFlags,
+    "campaign": _ROW,
+    "formulation": _ROW | Qt.ItemFlag.ItemIsDropEnabled,
+    "panel": _ROW | Qt.ItemFlag.ItemIsDropEnabled | Qt.ItemFlag.ItemIsDragEnabled,
+    "reading": _ROW | Qt.ItemFlag.ItemIsDragEnabled,
+}
 
 
 @dataclass(eq=False)
@@ -31,10 +42,10 @@ class Node:
     kind: str
     key: str
     text: str
-    state: str = ""
     parent: Node | None = None
     row: int = 0
     children: list[Node] = field(default_factory=list)
+    is_filled: bool = False
 
     def add(self, child: Node) -> Node:
         child.parent, child.row = self, len(self.children)
@@ -66,75 +77,111 @@ class TreeModel(QAbstractItemModel):
         self.tone = tone
         self._root = Node("root", "", "")
         self._by_key: dict[str, Node] = {}
+        self._campaign: Campaign | None = None
+        self._readings: dict[str, list[Reading]] = {}  # of each panel, by its id
+        self._known: dict[str, ReadingAssessment] = {}
+        self._sums: dict[str, str] = {}  # what the readings of panels amount to
+        self._words: list[str] = []
 
-    def show(self, campaign: Campaign | None, assessment: Assessment | None, words: str) -> None:
+    def show(self, campaign: Campaign | None, assessment: Assessment | None, words: str) -> bool:
         """Show a campaign, or nothing; with `words`, only rows that match them all. A panel matches
-        by its own name, its formulation's, or the state of a reading (doubt, rejected)."""
+        by its own name, its formulation's, or the state of a reading (doubt, rejected). Returns
+        whether there are other rows than before."""
+        self._known = {r.reading_id: r for r in assessment.readings} if assessment else {}
+        self._sums = {}
+        wanted = words.casefold().split()
+        if not wanted and not self._words and same_outline(self._campaign, campaign):
+            # The rows are those that are there; only what is said behind their names may differ.
+            self._campaign = campaign
+            top = self.index(0, 0)
+            self.dataChanged.emit(top, top)
+            return False
         self.beginResetModel()
         self._root = Node("root", "", "")
         self._by_key = {}
+        self._campaign = campaign
+        self._readings = {}
+        self._words = wanted
         if campaign is not None:
-            self._fill(campaign, assessment, words.casefold().split())
+            for reading in campaign.readings:
+                self._readings.setdefault(reading.panel_id, []).append(reading)
+            self._fill(campaign)
         self.endResetModel()
+        return True
 
-    def _fill(self, campaign: Campaign, assessment: Assessment | None, words: list[str]) -> None:
-        known = {r.reading_id: r for r in assessment.readings} if assessment else {}
+    def _fill(self, campaign: Campaign) -> None:
+        """Formulations and panels; the readings of a panel follow when somebody looks."""
         top = self._keep(self._root, Node("campaign", campaign.campaign_id, campaign.title))
-        readings: dict[str, list[Reading]] = {}
-        for reading in campaign.readings:
-            readings.setdefault(reading.panel_id, []).append(reading)
+        panels: dict[str, list[Panel]] = {}
+        for panel in campaign.panels:
+            panels.setdefault(panel.formulation_id, []).append(panel)
         for formulation in campaign.formulations:
             branch = Node("formulation", formulation.formulation_id, formulation.name)
+            branch.parent = top
             stems = []
-            for panel in campaign.panels:
-                if panel.formulation_id != formulation.formulation_id:
-                    continue
-                stem = Node("panel", panel.panel_id, panel.name)
-                leaves = [
-                    Node(
-                        "reading",
-                        reading.reading_id,
-                        f"{reading.exposure_h:g} h",
-                        _state(known.get(reading.reading_id)),
-                    )
-                    for reading in readings.get(panel.panel_id, [])
-                ]
-                named = f"{formulation.name} {panel.name}".casefold()
-                leaves = [
-                    leaf
-                    for leaf in leaves
-                    if all(w in named or w in f"{leaf.text} {leaf.state}" for w in words)
-                ]
-                if words and not leaves and not all(w in named for w in words):
-                    continue
-                hours = {r.reading_id: r.exposure_h for r in readings.get(panel.panel_id, [])}
-                stem.children = sorted(leaves, key=lambda leaf: hours[leaf.key])
-                stem.state = _sum(stem.children)
-                stems.append(stem)
-            if words and not stems:
-                continue
-            self._keep(top, branch)
-            for stem in stems:
-                leaves, stem.children = stem.children, []
-                self._keep(branch, stem)
-                for leaf in leaves:
-                    self._keep(stem, leaf)
+            for panel in panels.get(formulation.formulation_id, []):
+                stem = Node("panel", panel.panel_id, panel.name, parent=branch)
+                if not self._words or self._leaves(stem) or self._is_named(stem):
+                    stems.append(stem)
+            if stems or not self._words:
+                self._keep(top, branch)
+                for stem in stems:
+                    self._keep(branch, stem)
 
     def _keep(self, parent: Node, node: Node) -> Node:
         self._by_key[node.key] = node
         return parent.add(node)
 
+    def _is_named(self, stem: Node) -> bool:
+        """Whether every word is in a panel's name or its formulation's."""
+        return all(word in _names(stem) for word in self._words)
+
+    def _leaves(self, stem: Node) -> list[Node]:
+        """The nodes of a panel's readings that match, by exposure time, made when first wanted."""
+        if not stem.is_filled:
+            stem.is_filled = True
+            names = _names(stem) if self._words else ""
+            for reading in sorted(self._readings.get(stem.key, ()), key=lambda r: r.exposure_h):
+                leaf = Node("reading", reading.reading_id, f"{reading.exposure_h:g} h")
+                if not self._words or all(
+                    w in names or w in f"{leaf.text} {self.state(leaf)}" for w in self._words
+                ):
+                    self._keep(stem, leaf)
+        return stem.children
+
+    def rows_of(self, node: Node) -> list[Node]:
+        return self._leaves(node) if node.kind == "panel" else node.children
+
+    def state(self, node: Node) -> str:
+        """What is said of a row behind its name: of a panel, what its readings amount to."""
+        if node.kind == "reading":
+            return _state(self._known.get(node.key))
+        if node.kind != "panel":
+            return ""
+        if node.key not in self._sums:
+            self._sums[node.key] = _sum([self.state(leaf) for leaf in self._leaves(node)])
+        return self._sums[node.key]
+
+    def words(self, node: Node) -> str:
+        """Name and state, as the row shows them."""
+        state = self.state(node)
+        return f"{node.text}   {state}" if state else node.text
+
     def index_of(self, key: str) -> QModelIndex:
         """The index of an id, or an invalid one."""
+        if key not in self._by_key and self._campaign is not None:
+            reading = self._campaign.reading(key)
+            stem = None if reading is None else self._by_key.get(reading.panel_id)
+            if stem is not None:
+                self._leaves(stem)
         node = self._by_key.get(key)
         return QModelIndex() if node is None else self.createIndex(node.row, 0, node)
 
     def node(self, index: Index) -> Node:
-        found = index.internalPointer() if index.isValid() else None
-        return found if isinstance(found, Node) else self._root
+        return (index.internalPointer() if index.isValid() else None) or self._root
 
     def index(self, row: int, column: int, parent: Index = QModelIndex()) -> QModelIndex:  # noqa: B008
-        children = self.node(parent).children
+        children = self.rows_of(self.node(parent))
         if column != 0 or not 0 <= row < len(children):
             return QModelIndex()
         return self.createIndex(row, 0, children[row])
@@ -146,7 +193,13 @@ class TreeModel(QAbstractItemModel):
         return self.createIndex(above.row, 0, above)
 
     def rowCount(self, parent: Index = QModelIndex()) -> int:  # noqa: B008
-        return len(self.node(parent).children)
+        return len(self.rows_of(self.node(parent)))
+
+    def hasChildren(self, parent: Index = QModelIndex()) -> bool:  # noqa: B008
+        node = self.node(parent)
+        if node.kind == "panel" and not node.is_filled and not self._words:
+            return node.key in self._readings
+        return node.kind != "reading" and bool(self.rows_of(node))
 
     def columnCount(self, parent: Index = QModelIndex()) -> int:  # noqa: B008
         return 1
@@ -156,28 +209,26 @@ class TreeModel(QAbstractItemModel):
             return None
         node = self.node(index)
         if role == Qt.ItemDataRole.DisplayRole:
-            return f"{node.text}   {node.state}" if node.state else node.text
+            return self.words(node)
         if role == Qt.ItemDataRole.EditRole:
             return node.text
         if role == Qt.ItemDataRole.AccessibleTextRole:
-            return f"{node.kind} {node.text} {node.state}".strip()
-        if role == Qt.ItemDataRole.ForegroundRole and node.state:
-            return QBrush(QColor(self.tone.rust if "■" in node.state else self.tone.amber))
+            return f"{node.kind} {node.text} {self.state(node)}".strip()
+        if role == Qt.ItemDataRole.ForegroundRole and self.state(node):
+            return QBrush(QColor(self.ink_of(node)))
         return None
+
+    def ink_of(self, node: Node) -> str:
+        """The colour of a row's words."""
+        state = self.state(node)
+        if not state:
+            return self.tone.ink
+        return self.tone.rust if "■" in state else self.tone.amber
 
     # --- what a person asks for ------------------------------------------------------------
 
     def flags(self, index: Index) -> Qt.ItemFlag:
-        flag = Qt.ItemFlag
-        if not index.isValid():
-            return flag.NoItemFlags
-        kind = self.node(index).kind
-        flags = flag.ItemIsEnabled | flag.ItemIsSelectable | flag.ItemIsEditable
-        if kind in ("panel", "reading"):
-            flags |= flag.ItemIsDragEnabled
-        if kind in ("formulation", "panel"):
-            flags |= flag.ItemIsDropEnabled
-        return flags
+        return _FLAGS[self.node(index).kind]
 
     def setData(self, index: Index, value: Any, role: int = Qt.ItemDataRole.EditRole) -> bool:
         node, name = self.node(index), str(value).strip()
@@ -228,7 +279,34 @@ def _state(reading: ReadingAssessment | None) -> str:
     return "" if shape in ("", "◦") else f"{shape} {word}"
 
 
-def _sum(leaves: list[Node]) -> str:
+def _names(stem: Node) -> str:
+    """A panel's name after its formulation's, to look for words in."""
+    above = stem.parent.text if stem.parent is not None else ""
+    return f"{above} {stem.text}".casefold()
+
+
+def same_outline(one: Campaign | None, other: Campaign | None) -> bool:
+    """Whether two campaigns have the same formulations, panels and readings under the same names,
+    in the same places, at the same times."""
+    if one is None or other is None or one.campaign_id != other.campaign_id:
+        return False
+    if one.title != other.title or one.formulations != other.formulations:
+        return False
+    if one.panels is not other.panels and [
+        (p.panel_id, p.formulation_id, p.name) for p in one.panels
+    ] != [(p.panel_id, p.formulation_id, p.name) for p in other.panels]:
+        return False
+    return one.readings is other.readings or (
+        len(one.readings) == len(other.readings)
+        and all(
+            a is b
+            or (a.reading_id, a.panel_id, a.exposure_h) == (b.reading_id, b.panel_id, b.exposure_h)
+            for a, b in zip(one.readings, other.readings, strict=True)
+        )
+    )
+
+
+def _sum(leaves: list[str]) -> str:
     """What a panel's readings amount to: ■ 1 ▲ 2."""
-    counts = [(shape, sum(shape in leaf.state for leaf in leaves)) for shape in ("■", "▲")]
+    counts = [(shape, sum(shape in leaf for leaf in leaves)) for shape in ("■", "▲")]
     return " ".join(f"{shape} {number}" for shape, number in counts if number)

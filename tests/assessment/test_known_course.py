@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -42,8 +43,7 @@ def _true_pores(hours: float) -> float:
     return 3e11 if hours < 100 else 2e7
 
 
-@pytest.fixture(scope="module")
-def result() -> Assessment:
+def _campaign() -> Campaign:
     random = np.random.default_rng(20)
     grid = np.geomspace(1e5, 1e-2, 57)
     s = 2j * np.pi * grid
@@ -60,15 +60,18 @@ def result() -> Assessment:
             source = Source(f"{name}_{hours:g}h.csv", "00")
             reading = Reading(f"{name}@{hours:g}", name, hours, Spectrum(grid, impedance), source)
             readings.append(reading)
-    return assess(
-        Campaign(
-            "c",
-            "Known films",
-            formulations=(Formulation("K", "K"),),
-            panels=tuple(panels),
-            readings=tuple(readings),
-        )
+    return Campaign(
+        "c",
+        "Known films",
+        formulations=(Formulation("K", "K"),),
+        panels=tuple(panels),
+        readings=tuple(readings),
     )
+
+
+@pytest.fixture(scope="module")
+def result() -> Assessment:
+    return assess(_campaign())
 
 
 def test_every_reading_counts(result: Assessment) -> None:
@@ -135,6 +138,16 @@ def test_pores_begin_to_conduct_between_72_and_168_hours(result: Assessment) -> 
     for panel in result.panels:
         event = next(e for e in panel.events if e.code == "pores_conducting")
         assert (event.after_h, event.by_h) == (72.0, 168.0)
+
+
+def test_uptake_can_rest_on_what_was_measured_at_the_high_frequency() -> None:
+    made = _campaign()
+    measured = replace(made.settings, uptake_from_high_frequency=True)
+    for panel in assess(replace(made, settings=measured)).panels:
+        assert panel.dry_capacitance is not None
+        assert "measured parallel capacitance at 10 kHz" in panel.dry_capacitance.method
+        assert panel.saturation_uptake is not None
+        assert panel.saturation_uptake.quantity.value == pytest.approx(100 * FINAL, abs=0.6)
 
 
 def test_saturation_and_diffusion_coefficient(result: Assessment) -> None:

@@ -8,7 +8,8 @@ import numpy as np
 import pytest
 from scipy import stats
 
-from coatgui.assessment.presets import electrolytes, regimes
+from coatgui.assessment.interface import pore_resistivity
+from coatgui.assessment.presets import electrolytes, filled_in, recognised, regimes
 from coatgui.assessment.quantities import kind
 from coatgui.assessment.ratings import (
     Rated,
@@ -22,7 +23,7 @@ from coatgui.assessment.ratings import (
     scales,
     spearman,
 )
-from coatgui.records import ReadingAssessment, Settings, VisualRating
+from coatgui.records import Electrolyte, ReadingAssessment, Regime, Settings, VisualRating
 
 MakeReading = Callable[..., ReadingAssessment]
 # Upper limits as they are published or remembered, written out a second time on purpose.
@@ -93,6 +94,7 @@ def test_every_scale_has_its_source_and_edition() -> None:
         ("astm_d1654_a", "10", "9"),
         ("astm_d1654_b", "7", "0"),
         ("iso_2409", "1", "4"),
+        ("astm_d3359_a", "5A", "0A"),
         ("astm_d3359_b", "4B", "1B"),
         ("pull_off", "7.5 MPa A/B", "3 MPa -/Y"),
     ],
@@ -103,12 +105,13 @@ def test_better_is_higher_on_every_scale(scale: str, better: str, worse: str) ->
 
 
 def test_every_scale_was_put_in_order_above() -> None:
-    assert len(scales()) == 13
+    assert len(scales()) == 14
 
 
 @pytest.mark.parametrize(
     ("scale", "value"),
-    [("astm_d610", "11"), ("iso_2409", "5B"), ("astm_d3359_b", "5"), ("pull_off", "strong"),
+    [("astm_d610", "11"), ("iso_2409", "5B"), ("astm_d3359_b", "5"),
+     ("astm_d3359_b", "5A"), ("astm_d3359_a", "5B"), ("pull_off", "strong"),
      ("astm_d714", "7"), ("iso_4628_2", "2(S9)"), ("iso_4628_8_delamination", "-1")],
 )  # fmt: skip
 def test_foreign_values_are_refused_in_words(scale: str, value: str) -> None:
@@ -164,11 +167,45 @@ def test_ratings_beside_the_spectra(reading_of: MakeReading) -> None:
     courses = {c.formulation: c for c in rating_courses(Rated(PANELS, tuple(ratings)))}
     assert (courses["M"].best, courses["M"].worst) == ("Ri 3", "Ri 5")
     assert dict(courses["K"].ratings)["K0"] == "Ri 1"
+    assert courses["K"].edition == "ISO 4628-3, edition to be entered"
     (found,) = correlations(readings, ratings, [kind("modulus", 0.1)])
     assert found.panels == 5
     assert found.coefficient > 0.9
     assert "5 panels of all formulations together" in found.text
     assert correlations(readings, ratings[:3], [kind("modulus", 0.1)]) == ()
+
+
+def test_own_and_edited_presets_stand_in_place_of_the_programs() -> None:
+    brine = Electrolyte("brine", "Brine", 8.0, "measured", (("brine",), ("5", "nacl", "warm")))
+    warm = Electrolyte("nacl_5", "5 % sodium chloride, warm", 11.0, "at 35 °C", (("5", "nacl"),))
+    house = Regime("house", "House cycle", "", "brine", 30.0)
+    spray = Regime("astm_b117", "Salt spray as we run it", "", "nacl_5", 37.0)
+    settings = Settings(electrolytes=(brine, warm), regimes=(house, spray))
+    salts = {e.electrolyte_id: e for e in electrolytes(settings)}
+    assert len(salts) == len(electrolytes(Settings())) + 1
+    assert (salts["nacl_5"], salts["brine"]) == (warm, brine)
+    known = {r.regime_id: r for r in regimes(settings)}
+    assert (known["astm_b117"], known["house"]) == (spray, house)
+    assert filled_in(house, settings) == {
+        "regime": "House cycle", "electrolyte": "Brine", "temperature_c": 30.0,
+    }  # fmt: skip
+    assert filled_in(Regime("x", "X", electrolyte_id="tap water"), settings) == {
+        "regime": "X", "electrolyte": "tap water",
+    }  # fmt: skip
+    own = settings.electrolytes
+    for text, electrolyte in (
+        ("brine", brine),
+        ("warm NaCl, 5 %", brine),
+        ("5 % NaCl", warm),
+        ("5 % Sodium Chloride, warm", warm),
+        ("3.5 % NaCl", salts["nacl_3_5"]),
+        ("ocean_water", salts["ocean_water"]),
+        ("oil", None),
+        ("", None),
+    ):
+        assert recognised(text, own) == electrolyte, text
+    assert pore_resistivity("5 % NaCl", own) == (11.0, warm.name)
+    assert pore_resistivity("5 % NaCl")[0] == 14.0
 
 
 def test_presets_are_whole() -> None:

@@ -24,7 +24,7 @@ os.environ.setdefault("QT_QPA_PLATFORM", "offscreen")
 
 import numpy as np
 import pyqtgraph as pg
-from PySide6.QtCore import QPoint, QSettings, QTimer
+from PySide6.QtCore import QPoint, QSettings
 from PySide6.QtWidgets import QApplication, QGridLayout, QWidget
 
 from coatgui.assessment.assess import conclude
@@ -37,6 +37,7 @@ from coatgui.window.main_window import MainWindow
 from coatgui.window.places.map_place import MapPlace
 from coatgui.window.places.reading_place import ReadingPlace
 from tests.benchmarks.assessment_of_many import large_campaign
+from tests.benchmarks.watchdog import Watchdog
 
 _BARE = "import PySide6.QtWidgets, pyqtgraph, numpy"
 _WINDOW = """
@@ -67,42 +68,6 @@ def child_seconds(code: str) -> float:
         after = resource.getrusage(resource.RUSAGE_CHILDREN)
         taken.append(after.ru_utime + after.ru_stime - before.ru_utime - before.ru_stime)
     return min(taken)
-
-
-class Watchdog:
-    """Reports the longest time for which the window's thread was kept busy at a stretch, by the
-    processor time of that thread between beats of a timer. What several calls took between two
-    beats counts as one, so that it reports too much rather than too little."""
-
-    def __init__(self) -> None:
-        self.longest_s = 0.0
-        self._last: float | None = None
-        self._timer = QTimer()
-        self._timer.setInterval(0)
-        self._timer.timeout.connect(self._beat)
-
-    def _beat(self) -> None:
-        now = time.thread_time()
-        if self._last is not None:
-            self.longest_s = max(self.longest_s, now - self._last)
-        self._last = now
-
-    def over(self, begin: Callable[[], object], there: Callable[[], bool]) -> float:
-        """Seconds at most, from `begin` until what it started is there."""
-        application = QApplication.instance()
-        assert application is not None
-        self.longest_s, self._last = 0.0, time.thread_time()
-        self._timer.start()
-        begin()
-        end = time.monotonic() + 300
-        while not there():
-            application.processEvents()
-            if time.monotonic() > end:
-                raise TimeoutError
-        application.processEvents()
-        self._beat()
-        self._timer.stop()
-        return self.longest_s
 
 
 def memory_mb() -> float:
@@ -206,20 +171,25 @@ def watched(window: MainWindow, application: QApplication, folder: Path) -> None
     def there() -> bool:
         return desk.job is None and desk.campaign is not None
 
-    longest = dog.over(lambda: desk.export(folder / "out.json"), there)
-    say("longest call while writing the data", 1e3 * longest, "ms", 50)
-    longest = dog.over(
+    def held(doing: str, begin: Callable[[], object], until: Callable[[], bool]) -> None:
+        say(f"longest call while {doing}", 1e3 * dog.over(begin, until), "ms", 50)
+        if dog.stacks:
+            print(dog.report())
+
+    held("writing the data", lambda: desk.export(folder / "out.json"), there)
+    held(
+        "bringing in 10,000 spectra",
         lambda: desk.import_found(found),
         lambda: there() and desk.campaign is not None and len(desk.campaign.readings) > before,
     )
-    say("longest call while bringing in 10,000 spectra", 1e3 * longest, "ms", 50)
     del desk.judge  # the real one again
-    longest = dog.over(
-        lambda: desk.open(sample_panels()), lambda: there() and desk.assessment is not None
+    held(
+        "opening and fitting the sample",
+        lambda: desk.open(sample_panels()),
+        lambda: there() and desk.assessment is not None,
     )
-    say("longest call while opening and fitting the sample", 1e3 * longest, "ms", 50)
-    longest = dog.over(lambda: desk.export(folder / "out.xlsx"), there)
-    say("longest call while writing the workbook", 1e3 * longest, "ms", 50)
+    held("writing the workbook", lambda: desk.export(folder / "out.xlsx"), there)
+    held("writing the inspection summary", lambda: desk.export(folder / "out.pdf"), there)
 
 
 def main() -> None:

@@ -178,6 +178,7 @@ def campaign(raw: dict[str, bytes]) -> Campaign:
                 ),
                 Regime("plain", "Shelf"),
             ),
+            True,
         ),
         formulations=formulations,
         panels=panels,

@@ -262,6 +262,7 @@ def test_stored_bytes_are_read_again_in_one_operation(
     assert operation.name == "Read 2 readings again, corrected"
     file.apply(operation)
     after = file.campaign
+    # What ran within the sweep comes from the file as well, and this reading of it names nothing.
     assert after.readings[0] == replace(
         r1,
         spectrum=turned,

@@ -81,6 +81,16 @@ def test_what_is_no_photograph_is_refused(campaign: Campaign, content: bytes, sa
         operations.add_photograph(campaign, "p1", content, file="a.jpg")
 
 
+def test_a_photograph_of_a_reading_is_of_its_panel_and_time(
+    file: CampaignFile, campaign: Campaign
+) -> None:
+    file.apply(operations.photograph_reading(campaign, "r4", png(), caption=" edge "))
+    kept = file.campaign.photographs[-1]
+    assert (kept.panel_id, kept.exposure_h, kept.caption) == ("p2", 336.0, "edge")
+    file.undo()
+    assert file.campaign == campaign
+
+
 @pytest.mark.parametrize(
     ("name", "plain"),
     [
@@ -122,6 +132,7 @@ def test_ratings_are_added_and_taken_back(file: CampaignFile, campaign: Campaign
         lambda c: operations.remove_ratings(c, ["gone"]),
         lambda c: operations.rate_reading(c, "gone", "astm_d610", "7"),
         lambda c: operations.add_photograph(c, "gone", png()),
+        lambda c: operations.photograph_reading(c, "gone", png()),
         lambda c: operations.add_photograph(c, "p1", png(), exposure_h=-1.0),
         lambda c: operations.edit_photograph(c, "b1", sha256="x"),
         lambda c: operations.edit_photograph(c, "b1", panel_id="gone"),

@@ -89,9 +89,10 @@ def test_a_dump_makes_the_same_campaign_again(file: CampaignFile, tmp_path: Path
 
 
 # What a version did not know yet, with what it becomes when an older file is opened.
-_NOTHING_ASKED: dict[str, Any] = dict.fromkeys(
-    ("limits", "comparisons", "projections", "electrolytes", "regimes"), ()
-)
+_NOTHING_ASKED: dict[str, Any] = {
+    **dict.fromkeys(("limits", "comparisons", "projections", "electrolytes", "regimes"), ()),
+    "uptake_from_high_frequency": False,
+}
 ADDED_TO_SETTINGS: dict[str, dict[str, Any]] = {
     "version_1": {
         "input_resistance_ohm": None,

@@ -55,7 +55,7 @@ UNITS = {
 PLACES = ("brackets", "slash", "last word", "own row", "preamble")
 LAYOUTS = ("one", "polar", "headed blocks", "bare blocks", "columns", "side by side",
            "side by side, one frequency", "admittance", "capacitance", "angular frequency",
-           "sweeps")  # fmt: skip
+           "parallel", "series", "sweeps", "complex cells")  # fmt: skip
 NUMBERS = ("shortest", "exponents", "three decimals", "parted thousands")
 
 
@@ -93,12 +93,18 @@ def _possible() -> Iterator[Dialect]:
     ):
         d = Dialect(*case)
         blanks = d.delimiter == "   "
-        needs_headings = d.layout in (*LAYOUTS[4:10],)
+        needs_headings = d.layout in (*LAYOUTS[4:12],)
         if d.language == "none" and (d.units != "plain" or d.place != "brackets" or needs_headings):
             continue
         if d.encoding in ("latin-1", "cp1252") and (d.units == "mega" or d.language == "symbols"):
             continue  # there is no Ω, ω or φ
-        if d.place == "preamble" and d.layout in ("admittance", "capacitance", "angular frequency"):
+        if d.place == "preamble" and d.layout in (*LAYOUTS[7:12],):
+            continue
+        if d.layout in ("parallel", "series") and d.turned:
+            continue  # a resistance and a capacitance have no sign to turn
+        if d.layout == "complex cells" and (d.turned or d.numbers == "parted thousands"):
+            continue
+        if d.layout == "complex cells" and d.delimiter == d.decimal_sign:
             continue
         if blanks and d.layout.startswith("side") and d.language != "none":
             continue  # labels over groups need cells that may be empty
@@ -148,6 +154,10 @@ def write(d: Dialect) -> tuple[bytes, list[tuple[float | None, FloatArray, Compl
         elif d.layout == "capacitance":
             c = 1 / (S * z)
             a, b = c.real * 1e9, -c.imag * 1e9
+        elif d.layout == "parallel":
+            a, b = 1 / (1 / z).real / z_factor, (1 / z / S).real * 1e9
+        elif d.layout == "series":
+            b = -1 / (2 * np.pi * FREQUENCY * z.imag) * 1e9
         elif d.layout == "angular frequency":
             f, f_scale = 2 * np.pi * FREQUENCY, 1 / (2 * np.pi)
         b = -b if d.turned else b
@@ -163,9 +173,15 @@ def write(d: Dialect) -> tuple[bytes, list[tuple[float | None, FloatArray, Compl
             z = 1e6 / (a + 1j * b)
         elif d.layout == "capacitance":
             z = 1 / (2j * np.pi * f * (a - 1j * b) * 1e-9)
+        elif d.layout == "parallel":
+            z = 1 / (1 / (a * z_factor) + 2j * np.pi * f * b * 1e-9)
+        elif d.layout == "series":
+            z = a * z_factor + 1 / (2j * np.pi * f * b * 1e-9)
         else:
             z = (a + 1j * b) * z_factor
         cells = [[text for text, _ in row] for row in rows]
+        if d.layout == "complex cells":
+            cells = [[f, f"{a}{'' if b.startswith('-') else '+'}{b}j"] for f, a, b in cells]
         return (cells[::-1] if d.ascending else cells), f, z
 
     def headings(named: list[tuple[str, str]]) -> None:
@@ -185,7 +201,11 @@ def write(d: Dialect) -> tuple[bytes, list[tuple[float | None, FloatArray, Compl
             first, second = ("Y'", "uS"), (minus + "Y''", "uS")
         elif d.layout == "capacitance":
             first, second = ("C'", "nF"), (minus + "C''", "nF")
+        elif d.layout in ("parallel", "series"):
+            first, second = (f"R{d.layout[0]}", z_unit), (f"C{d.layout[0]}", "nF")
         named = [(words["f"], f_unit), first, second]
+        if d.layout == "complex cells":
+            named = [named[0], ("Z", z_unit)]
         if d.layout == "angular frequency":
             named[0] = (words["w"], "rad/s")
         lines.append(words["preamble"])
@@ -258,5 +278,5 @@ def test_every_dialect_is_read_to_the_numbers_or_asked_about(chunk: int) -> None
 def test_the_matrix_holds_every_value_of_every_axis() -> None:
     assert len(set(MATRIX)) >= 2000
     for axis, count in (("delimiter", 5), ("decimal_sign", 2), ("encoding", 5), ("language", 8),
-                        ("units", 3), ("place", 5), ("layout", 11), ("numbers", 4)):  # fmt: skip
+                        ("units", 3), ("place", 5), ("layout", 14), ("numbers", 4)):  # fmt: skip
         assert len({getattr(d, axis) for d in MATRIX}) == count

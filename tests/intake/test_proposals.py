@@ -19,7 +19,7 @@ from coatgui.intake import (
     read_again,
     read_folder,
 )
-from coatgui.intake.names import parts_of
+from coatgui.intake.names import NameSays, parts_of
 from coatgui.intake.template import read_lists, template
 from coatgui.records import FoundPanel, Source
 
@@ -186,6 +186,18 @@ def test_a_pattern_pointed_at_in_one_example() -> None:
         NamePattern.pointed_at(example, panel=(8, 9))
     with pytest.raises(ValueError, match="no unit of time"):
         NamePattern.pointed_at(example, time=mark("t168h"), unit="fortnight")
+
+
+def test_a_pattern_marked_in_one_example() -> None:
+    pattern = NamePattern.marked("week 3/{panel:B-07} t{time:168}h run2.txt")
+    assert pattern.says("week 4/C-11 t2d run1.txt") == NameSays("C-11", 48.0)
+    by_folder = NamePattern.marked("week {time:3}/{panel:B-07}.txt", "week")
+    assert by_folder.says("week 4/C-11.txt") == NameSays("C-11", 672.0)
+    dated = NamePattern.marked("{panel:P07} {date:20260308}.csv")
+    assert dated.says("P08 20260401.csv").moment == datetime(2026, 4, 1)
+    for wrong in ("B-07.txt", "{panel:A1}{panel:A2}.txt", "{what:A1}.txt", "{panel:--}.txt"):
+        with pytest.raises(ValueError, match="Mark"):
+            NamePattern.marked(wrong)
 
 
 def test_a_pattern_and_dates_fill_what_files_leave_open(tmp_path: Path) -> None:

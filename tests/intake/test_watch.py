@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from pathlib import Path
 
+from coatgui.intake import NamePattern, Told, propose_files
 from coatgui.intake.watch import FolderWatch
 
 
@@ -65,3 +66,24 @@ def test_a_folder_that_is_away_for_a_while(tmp_path: Path) -> None:
     away.rename(folder)
     clock.now = 100.0
     assert watch.settled() == ()
+
+
+def test_files_in_folders_below_are_named_and_keep_their_folders(tmp_path: Path) -> None:
+    clock = Clock()
+    watch = FolderWatch(tmp_path, quiet_s=5.0, clock=clock)
+    rows = "".join(f"{10.0**k};100;-{10.0**-k}\n" for k in range(5, -2, -1))
+    for week in (1, 2):
+        (tmp_path / f"week {week}").mkdir()
+        (tmp_path / f"week {week}" / "A1.csv").write_text(f"f;Z';Z''\n{10.0**6};{week};-1\n{rows}")
+    assert watch.settled() == ()
+    clock.now = 5.0
+    new = watch.settled()
+    assert [path.relative_to(tmp_path).as_posix() for path in new] == [
+        "week 1/A1.csv", "week 2/A1.csv"
+    ]  # fmt: skip
+    # Two files of one name stay two, and the folder's name may be the time.
+    pattern = NamePattern.marked("week {time:1}/{panel:A1}.csv", "week")
+    run = propose_files(new, below=tmp_path, told=Told(pattern=pattern))
+    assert [(r.source.file, r.panel, r.exposure_h) for r in run.found.readings] == [
+        ("week 1/A1.csv", "A1", 168.0), ("week 2/A1.csv", "A1", 336.0)
+    ]  # fmt: skip

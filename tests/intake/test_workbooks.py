@@ -177,6 +177,7 @@ def changed(data: bytes, name: str, old: bytes, new: bytes) -> bytes:
 
 
 SHEET = "xl/worksheets/sheet1.xml"
+_MEGABYTE = 1_000_000
 
 
 @pytest.fixture(scope="module")
@@ -187,8 +188,14 @@ def plain() -> bytes:
 def test_a_compressed_bomb_is_refused_early(plain: bytes) -> None:
     bomb = changed(plain, SHEET, b"</sheetData>", b"</sheetData>" + b" " * 100_000_000)
     assert len(bomb) < 200_000
-    with pytest.raises(Unreadable, match="40 MB unpacked"):
+    with pytest.raises(Unreadable, match="2 MB in a single tag"):
         read_spectra(bomb)
+    tags = changed(plain, SHEET, b"</sheetData>", b"</sheetData>" + b"<f></f>" * 10_000_000)
+    with pytest.raises(Unreadable, match="40 MB unpacked"):
+        read_spectra(tags)
+    one = changed(plain, SHEET, b"<sheetData", b"<sheetData " + b'a="1" ' * 10 * _MEGABYTE)
+    with pytest.raises(Unreadable, match="2 MB in a single tag"):
+        read_spectra(one)
 
 
 def test_entities_are_not_expanded(plain: bytes) -> None:

@@ -4,8 +4,11 @@ from __future__ import annotations
 
 import re
 import shutil
+import struct
 import subprocess
 import sys
+import zlib
+from base64 import b64encode
 from dataclasses import replace
 from html.parser import HTMLParser
 from pathlib import Path
@@ -19,7 +22,16 @@ from coatgui.output.document import Document, Figure, Heading, Listing, Paragrap
 from coatgui.output.html_form import html_document
 from coatgui.output.pages import PagesUnavailable, pdf_bytes
 from coatgui.output.shown import amount
-from coatgui.records import Assessment, Bound, Campaign, Quantity
+from coatgui.records import (
+    Assessment,
+    Bound,
+    Campaign,
+    Photograph,
+    Quantity,
+    Rating,
+    RatingCourse,
+    VisualRating,
+)
 from coatgui.records import Identification as KeptIdentification
 
 IDENTIFICATION = Identification(laboratory="Slip Laboratory", order="RC-7", standards="none")
@@ -362,3 +374,76 @@ def test_a_row_longer_than_a_page_is_printed_whole(
     write_summary(evil, campaign, tmp_path / "s.pdf")
     text = page_text(tmp_path / "s.pdf").split()
     assert {f"w{i}" for i in range(4000)} <= set(text)
+
+
+# ---------------------------------------------------------------------------------------------
+# Ratings and photographs
+
+
+def _png(wide: int, high: int, grey: int) -> bytes:
+    """A PNG of one grey, made by hand."""
+
+    def chunk(kind: bytes, data: bytes) -> bytes:
+        return (
+            struct.pack(">I", len(data)) + kind + data + struct.pack(">I", zlib.crc32(kind + data))
+        )
+
+    head = struct.pack(">IIBBBBB", wide, high, 8, 0, 0, 0, 0)
+    rows = zlib.compress((b"\0" + bytes([grey]) * wide) * high)
+    return b"\x89PNG\r\n\x1a\n" + chunk(b"IHDR", head) + chunk(b"IDAT", rows) + chunk(b"IEND", b"")
+
+
+def seen(campaign: Campaign) -> tuple[Campaign, dict[str, bytes]]:
+    """The campaign with two photographs whose bytes are there, one lost and one damaged."""
+    panel = campaign.panels[0].panel_id
+    contents = {"a" * 64: _png(400, 300, 120), "b" * 64: _png(30, 90, 60), "d" * 64: b"\x89PNG no"}
+    captions = {"a": "Blisters <near> the scribe.", "b": "=1+1", "c": "lost", "d": "damaged"}
+    photographs = tuple(
+        Photograph(letter, panel, letter * 64, "image/png", hours, captions[letter])
+        for letter, hours in (("b", 504.0), ("a", 24.0), ("c", None), ("d", 600.0))
+    )
+    ratings = (
+        Rating("r", VisualRating(panel, 24.0, "iso_4628_3", "Ri 1", "2016", "R. Inspector")),
+    )
+    return replace(campaign, photographs=photographs, ratings=ratings), contents
+
+
+def test_ratings_and_photographs_are_in_the_html(
+    assessment: Assessment, campaign: Campaign, tmp_path: Path
+) -> None:
+    own, contents = seen(campaign)
+    write_summary(assessment, own, tmp_path / "s.html", None, contents)
+    text = (tmp_path / "s.html").read_text(encoding="utf-8")
+    assert text.count('src="data:image/png;base64,') == 3
+    assert b64encode(contents["a" * 64]).decode() in text
+    alternative = (
+        f"Photograph. Panel {own.panels[0].name} at 24 h: Blisters &lt;near&gt; the scribe."
+    )
+    assert f'alt="{alternative}"' in text
+    assert text.index("24 h: Blisters") < text.index("504 h: =1+1")  # in the order of time
+    assert "1 photograph is not shown here" in text
+    assert "img-src data:" in text
+    assert "R. Inspector" not in text  # ratings stand where the assessment has their courses
+    course = RatingCourse("Grey", "ISO 4628-3", 24.0, (("A1", "Ri 1"),), "Ri 1", "Ri 1")
+    write_summary(replace(assessment, ratings=(course,)), own, tmp_path / "r.html", None, contents)
+    text = (tmp_path / "r.html").read_text(encoding="utf-8")
+    assert "R. Inspector" in text
+    assert ">2016<" in text
+
+
+def test_photographs_are_in_the_pdf(
+    assessment: Assessment, campaign: Campaign, tmp_path: Path
+) -> None:
+    qt()
+    own, contents = seen(campaign)
+    write_summary(assessment, own, tmp_path / "s.pdf", None, contents)
+    data = (tmp_path / "s.pdf").read_bytes()
+    assert data.count(b"/Subtype /Image") >= 2
+    words = f"Photograph. Panel {own.panels[0].name} at 504 h: =1+1."
+    assert ("\ufeff" + words).encode("utf-16-be").hex().upper().encode() in data
+    if shutil.which("pdftotext"):
+        shown = subprocess.run(
+            ["pdftotext", "-layout", str(tmp_path / "s.pdf"), "-"],
+            capture_output=True, text=True, check=True,
+        ).stdout  # fmt: skip
+        assert "damaged. (The photograph cannot be shown" in " ".join(shown.split())

@@ -12,7 +12,7 @@ import pyqtgraph as pg
 from PySide6.QtWidgets import QApplication, QComboBox, QTableWidget
 
 from coatgui.campaign import operations
-from coatgui.records import Judge
+from coatgui.records import Judge, VisualRating
 from coatgui.window.main_window import MainWindow
 from coatgui.window.numbers import said
 from coatgui.window.places.comparison_place import ComparisonPlace
@@ -108,3 +108,54 @@ def test_what_was_asked_stays_asked_after_an_edit(sample: MainWindow, wait: Wait
     assert place.comparison is not None
     assert before is not None
     assert place.comparison.question == before.question
+
+
+def test_a_comparison_is_kept_taken_up_and_dropped(sample: MainWindow, wait: Wait) -> None:
+    place = place_of(sample)
+    assert not place.keep.isVisible()  # the usual one is kept anyway
+    choose(place.quantity, "Film capacitance")
+    choose(place.method, "Games–Howell")
+    question = place.asked()
+    assert place.comparison is not None
+    text = place.comparison.text
+    assert place.keep.isVisible()
+    place.keep.click()
+    wait(lambda: sample.desk.job is None)
+    assert sample.desk.campaign is not None
+    assert sample.desk.campaign.settings.comparisons == (question,)
+    assert sample.desk.assessment is not None
+    (further,) = sample.desk.assessment.further_comparisons
+    assert place.comparison is further
+    assert further.text == text
+    assert not place.keep.isVisible()
+    choose(place.kept, "The usual comparison")
+    assert place.comparison is sample.desk.assessment.comparison
+    choose(place.kept, place.kept.itemText(1))
+    assert place.kept.itemText(1).endswith("coating capacitance at the last shared inspection, "
+                                           "Games–Howell")  # fmt: skip
+    assert place.comparison is further
+    place.drop.click()
+    wait(lambda: sample.desk.job is None)
+    assert not sample.desk.campaign.settings.comparisons
+    sample.undo()
+    assert sample.desk.campaign.settings.comparisons == (question,)
+
+
+def test_formulations_are_compared_by_what_was_seen(sample: MainWindow, wait: Wait) -> None:
+    campaign = sample.desk.campaign
+    assert campaign is not None
+    seen = [
+        VisualRating(p.panel_id, 672.0, "astm_d610", str(9 - 2 * place))
+        for place, f in enumerate(campaign.formulations)
+        for p in campaign.panels
+        if p.formulation_id == f.formulation_id
+    ]
+    sample.desk.edit(operations.add_ratings, seen)
+    wait(lambda: sample.desk.job is None)
+    place = place_of(sample)
+    choose(place.judge, "Rating: rust grade, ASTM D610")
+    assert place.asked().judge is Judge.RATING
+    assert place.asked().scale == "astm_d610"
+    assert place.comparison is not None
+    assert place.comparison.ranks
+    assert not place.quantity.isEnabled()

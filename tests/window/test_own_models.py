@@ -81,6 +81,46 @@ def test_a_draft_is_stored_and_read_back() -> None:
     assert again.text() == stored
 
 
+def test_parameters_are_tied_and_the_fit_keeps_to_it(sample: MainWindow, wait: Wait) -> None:
+    place = place_of(sample, "P2", 336)
+    composer = compose(place, "Shared exponent")
+    assert len(composer.draft.layers) == 2
+    for layer in (2, 1):
+        composer.pick(layer)
+        choose(composer, "dielectric", "constant-phase")
+    symbols = [spec.symbol for spec in composer.bound._specs]
+    first, second = (s for s in symbols if s.startswith("n"))
+    free = len(composer.draft.model().parameters)
+    row = symbols.index(second)
+    chooser = composer.bound.choosers[row]
+    assert chooser.findText("R_s") < 0  # of another kind
+    chooser.setCurrentText(first)
+    chooser.activated.emit(chooser.currentIndex())
+    assert composer.draft.tied == ((second, first),)
+    assert len(composer.draft.model().parameters) == free - 1
+    assert "1 tied" in composer.verdict.text()
+    # Round about is the same.
+    other = composer.bound.choosers[symbols.index(first)]
+    other.setCurrentText(second)
+    other.activated.emit(other.currentIndex())
+    assert "share one value already" in composer.verdict.text()
+    composer.bound.show_parameters(composer._specs, composer.draft.fixed, composer.draft.tied)
+    composer._put(composer.draft)
+    composer.keep.click()
+    wait(lambda: sample.desk.job is None)
+    text = sample.desk.campaign.settings.own_models[0]  # type: ignore[union-attr]
+    assert draft_of(text).tied == ((second, first),)
+    assert draft_of(text).text() == text
+    pin(place, "Shared exponent (own)", HERE)
+    wait(lambda: sample.desk.job is None)
+    known = sample.desk.reading_assessment()
+    assert known is not None
+    assert known.fit is not None
+    assert known.fit.model == "shared_exponent"
+    values = {p.symbol: p.quantity.value for p in known.fit.parameters}
+    assert values[first] == values[second]
+
+
 def test_a_model_is_composed_pinned_fitted_drawn_and_removed(
     sample: MainWindow, wait: Wait
 ) -> None:

@@ -15,8 +15,8 @@ from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QApplication, QCheckBox, QComboBox, QLineEdit
 
 from coatgui.intake import Standing
+from coatgui.intake.corrections import corrected_column as corrected
 from coatgui.records import Column
-from coatgui.window.columns_form import corrected
 from coatgui.window.dry_run_page import hours_said
 from coatgui.window.main_window import MainWindow
 

@@ -62,17 +62,17 @@ def test_other_times_and_replicates_are_drawn_beside(sample: MainWindow) -> None
     sample.desk.select(known(sample, "P2", 336).reading_id)
     curves = place.plots._others[0]
     place.overlay.setCurrentIndex(OTHER_TIMES)
-    shown = [c for c in curves if c.getData()[0] is not None and len(c.getData()[0])]
+    shown = [c for c in curves if c.across.size]
     assert len(shown) == 8  # nine inspections, and this is one of them
-    shades = [curve.opts["pen"].color().lightnessF() for curve in shown]
+    shades = [curve.pen.color().lightnessF() for curve in shown]
     assert shades == sorted(shades, reverse=True)  # deeper with time, on a light ground
     steps = np.diff(shades)
     assert np.ptp(steps[:5]) < 0.01  # evenly, up to the step over the reading itself
     place.overlay.setCurrentIndex(REPLICATES)
-    shown = [c for c in curves if c.getData()[0] is not None and len(c.getData()[0])]
+    shown = [c for c in curves if c.across.size]
     assert len(shown) == 3
     place.overlay.setCurrentIndex(0)
-    assert not [c for c in curves if c.getData()[0] is not None and len(c.getData()[0])]
+    assert not [c for c in curves if c.across.size]
 
 
 def box(place: ReadingPlace) -> tuple[QPoint, QPoint]:
@@ -156,11 +156,11 @@ def test_the_cursor_reads_all_plots(sample: MainWindow) -> None:
         assert spectrum is not None
         assert abs(plots.place - 30) <= 1
         for ring in plots._rings:
-            assert len(ring.points()) == 1
+            assert ring.across.size == 1
         words = place.read_out.text()
         for wanted in ("Hz", "|Z|", "phase", "Z′", "−Z″", "residual"):
             assert wanted in words
-    assert plots._lines[0].value() == plots._lines[2].value()
+    assert plots._lines[0].value == plots._lines[2].value
 
 
 def test_the_section_carries_the_fitted_values(sample: MainWindow) -> None:

@@ -12,7 +12,7 @@ pytest.importorskip("PySide6")
 
 import pyqtgraph as pg
 from PySide6.QtCore import QObject
-from PySide6.QtWidgets import QApplication, QGraphicsPolygonItem
+from PySide6.QtWidgets import QApplication, QGraphicsPathItem
 
 from coatgui.records import Spectrum
 from coatgui.window.main_window import MainWindow
@@ -89,9 +89,13 @@ def test_a_column_stands_at_every_inspection(sample: MainWindow, wait: Wait) -> 
     assert not place.water.isVisible()
     assert "exploratory" in place.exploratory.text()
     wait(lambda: not place.outlines.busy)
-    shapes = [i for i in place.constants.items() if isinstance(i, QGraphicsPolygonItem)]
-    assert len(shapes) == 9
-    middles = sorted(shape.polygon().boundingRect().center().x() for shape in shapes)
+    # A band and the outline itself at each inspection; the outline lies within the band's ends.
+    shapes = [i for i in place.constants.items() if type(i) is QGraphicsPathItem]
+    assert len(shapes) == 18
+    for itself, band in zip(shapes[::2], shapes[1::2], strict=True):  # the topmost first
+        widths = band.path().boundingRect().width(), itself.path().boundingRect().width()
+        assert widths[1] <= widths[0] + 1e-12
+    middles = sorted(shape.path().boundingRect().center().x() for shape in shapes[::2])
     hours = [r.exposure_h for r in sample.desk.assessment.readings if r.panel == "P2"]
     assert middles == pytest.approx(np.log10(sorted(hours)), abs=1e-6)
     marks = [i for i in place.constants.items() if isinstance(i, pg.ScatterPlotItem)]

@@ -7,6 +7,7 @@ from PySide6.QtGui import QColor
 from PySide6.QtWidgets import (
     QComboBox,
     QHBoxLayout,
+    QPushButton,
     QScrollArea,
     QTableWidget,
     QTableWidgetItem,
@@ -14,16 +15,17 @@ from PySide6.QtWidgets import (
     QWidget,
 )
 
-from coatgui.assessment.ranking import answer
+from coatgui.assessment.decide import answer_beside
+from coatgui.assessment.ratings import scales
 from coatgui.assessment.rules import default_criteria
+from coatgui.campaign import operations
 from coatgui.records import (
     Assessment,
     Comparison,
-    Criterion,
     Judge,
     Limit,
+    Method,
     Question,
-    ReadingAssessment,
     Settings,
 )
 from coatgui.window.desk import Desk
@@ -42,20 +44,40 @@ _OTHERS = {
 _AT_TIME, _AREA = "At one inspection", "Over the whole course"
 _LAST = "The last that all share"
 _PAIR_ROWS = 6
+_RATING = "rating by "
+_USUAL = "The usual comparison"
+_METHODS = {
+    "Welch, Holm": Method.WELCH,
+    "Games–Howell": Method.GAMES_HOWELL,
+    "Tukey–Kramer": Method.TUKEY,
+    "Dunnett, against the first": Method.DUNNETT,
+    "Ranks, exact": Method.RANKS,
+    "Dunn, on ranks": Method.DUNN,
+}
 
 
-def by_formulation(assessment: Assessment) -> dict[str, list[ReadingAssessment]]:
-    """The readings of each formulation that has any that count."""
-    found: dict[str, list[ReadingAssessment]] = {}
-    for formulation in assessment.formulations:
-        own = [r for r in assessment.readings if r.formulation == formulation.formulation]
-        if any(r.counts for r in own):
-            found[formulation.formulation] = own
-    return found
+def in_words(question: Question) -> str:
+    """A question as a short line."""
+    what = question.quantity.replace("_", " ")
+    if question.frequency_hz is not None:
+        what = f"|Z|·A at {question.frequency_hz:g} Hz"
+    when = "at the last shared inspection"
+    if question.exposure_h is not None:
+        when = f"at {question.exposure_h:g} h"
+    if question.judge is Judge.AREA_UNDER_COURSE:
+        when = "over the whole course"
+    elif question.judge is Judge.TIME_TO_LIMIT:
+        what, when = "time", f"to {question.limit.name}" if question.limit else ""
+    elif question.judge is Judge.RATING:
+        what = str(scales().get(question.scale, {}).get("name", question.scale))
+    by = next((words for words, m in _METHODS.items() if m is question.method), "")
+    return f"{what} {when}, {by}"
 
 
 class ComparisonPlace(Place):
     noun, question = "Comparison", "Which is better, and are we sure?"
+    needs = "assessment"
+    promise = "Here the formulations will stand side by side, in words first."
     note = "welch"
     has_strip = False
 
@@ -69,8 +91,26 @@ class ComparisonPlace(Place):
         for chooser in (self.quantity, self.judge, self.time):
             chooser.activated.connect(self._answer)
             bar.addWidget(chooser)
+        self.method = _chooser("Compared by which test", "How pairs of formulations are tested")
+        self.method.activated.connect(self._answer)
+        bar.addWidget(self.method)
         bar.addStretch(1)
         self.column.addLayout(bar)
+        keeping = QHBoxLayout()
+        self.kept = _chooser(
+            "Comparisons that are kept", "Kept ones are answered in the summary and the workbook"
+        )
+        self.kept.activated.connect(self._take_up)
+        self.keep = QPushButton("Keep this comparison")
+        self.keep.setAccessibleDescription("Answer it in the summary and the workbook, too")
+        self.keep.clicked.connect(lambda _checked=False: self._keep())
+        self.drop = QPushButton("Keep it no longer")
+        self.drop.setAccessibleDescription("Take this comparison out of the campaign")
+        self.drop.clicked.connect(lambda _checked=False: self._drop())
+        for widget in (self.kept, self.keep, self.drop):
+            keeping.addWidget(widget)
+        keeping.addStretch(1)
+        self.column.addLayout(keeping)
         self.words = plain_label("headline")
         self.judged = plain_label("small")
         self.column.addWidget(self.words)
@@ -115,6 +155,8 @@ class ComparisonPlace(Place):
         """Refill the choices, keeping what was chosen where it is still there."""
         frequencies = self._settings().modulus_frequencies_hz
         criteria = self._settings().criteria or default_criteria()
+        limits = self._settings().limits
+        rated = {r.scale: str(scales()[r.scale]["name"]) for r in assessment.ratings}
         times = sorted({r.exposure_h for r in assessment.readings if r.counts})
         for chooser, entries in (
             (
@@ -129,9 +171,15 @@ class ComparisonPlace(Place):
                 [
                     (_AT_TIME, Judge.AT_TIME),
                     (_AREA, Judge.AREA_UNDER_COURSE),
-                    *((f"Time to {c.name} ({written(c.ohm_cm2, 'Ω cm²')})", c) for c in criteria),
+                    *(
+                        (f"Time to {c.name} ({written(c.ohm_cm2, 'Ω cm²')})", Limit.of_criterion(c))
+                        for c in criteria
+                    ),
+                    *((f"Time to {c.name} ({c.value:g} {c.unit})", c) for c in limits),
+                    *((f"Rating: {rated[r]}", f"{_RATING}{r}") for r in rated),
                 ],
             ),
+            (self.method, list(_METHODS.items())),
             (self.time, [(_LAST, None), *((f"{t:g} h", t) for t in times)]),
         ):
             before = chooser.currentText()
@@ -143,13 +191,73 @@ class ComparisonPlace(Place):
     def asked(self) -> Question:
         """The question as it is chosen."""
         quantity, frequency = self.quantity.currentData()
-        chosen = self.judge.currentData()
-        if isinstance(chosen, Criterion):
-            limit = Limit.of_criterion(chosen)
-            return Question("modulus", limit.frequency_hz, Judge.TIME_TO_LIMIT, limit=limit)
+        chosen, method = self.judge.currentData(), Method(self.method.currentData())
+        reference = self._reference() if method is Method.DUNNETT else ""
+        time = self.time.currentData()
+        if isinstance(chosen, Limit):
+            return Question(
+                chosen.quantity, chosen.frequency_hz, Judge.TIME_TO_LIMIT, method, None, chosen,
+                reference=reference,
+            )  # fmt: skip
+        if str(chosen).startswith(_RATING):
+            scale = str(chosen).removeprefix(_RATING)
+            return Question(
+                "modulus", frequency or self._settings().modulus_frequencies_hz[0], Judge.RATING,
+                method, time, scale=scale, reference=reference,
+            )  # fmt: skip
         judge = Judge(chosen)  # Qt keeps it as a text
-        time = self.time.currentData() if judge is Judge.AT_TIME else None
-        return Question(quantity, frequency, judge, exposure_h=time)
+        return Question(
+            quantity, frequency, judge, method, time if judge is Judge.AT_TIME else None,
+            reference=reference,
+        )  # fmt: skip
+
+    def _reference(self) -> str:
+        """What the others are held against: the first formulation of the campaign."""
+        campaign = self.desk.campaign
+        return campaign.formulations[0].name if campaign and campaign.formulations else ""
+
+    def _offer_kept(self) -> None:
+        """The usual comparison and those that the campaign keeps."""
+        kept = self._settings().comparisons
+        row = self.kept.currentIndex()
+        self.kept.clear()
+        self.kept.addItem(_USUAL)
+        self.kept.addItems([f"Kept: {in_words(question)}" for question in kept])
+        self.kept.setVisible(bool(kept))
+        self.kept.setCurrentIndex(row if 0 <= row < self.kept.count() else 0)
+
+    def _take_up(self, row: int) -> None:
+        """Choose what a kept comparison asks."""
+        kept = self._settings().comparisons
+        usual = self.desk.assessment.comparison if self.desk.assessment else None
+        question = kept[row - 1] if row > 0 else usual.question if usual else Question()
+        judge: object = question.judge
+        if question.judge is Judge.TIME_TO_LIMIT:
+            judge = question.limit
+        elif question.judge is Judge.RATING:
+            judge = f"{_RATING}{question.scale}"
+        for chooser, wanted in (
+            (self.quantity, (question.quantity, question.frequency_hz)),
+            (self.judge, judge),
+            (self.method, question.method),
+            (self.time, question.exposure_h),
+        ):
+            found = [i for i in range(chooser.count()) if _same(chooser.itemData(i), wanted)]
+            chooser.setCurrentIndex(found[0] if found else 0)
+        self._answer()
+
+    def _keep(self) -> None:
+        kept = self._settings().comparisons
+        question = self.asked()
+        self.desk.edit(operations.edit_settings, comparisons=(*kept, question))
+        now = self._settings().comparisons
+        if question in now:
+            self.kept.setCurrentIndex(1 + now.index(question))
+
+    def _drop(self) -> None:
+        question = self.asked()
+        left = tuple(q for q in self._settings().comparisons if q != question)
+        self.desk.edit(operations.edit_settings, comparisons=left)
 
     def show_campaign(self) -> None:
         assessment = self.desk.assessment
@@ -160,6 +268,7 @@ class ComparisonPlace(Place):
             self._show([])
             return
         self._offer(assessment)
+        self._offer_kept()
         self._answer()
 
     def _answer(self) -> None:
@@ -167,17 +276,20 @@ class ComparisonPlace(Place):
         if assessment is None:
             return
         question = self.asked()
-        by_limit = question.judge is Judge.TIME_TO_LIMIT
-        self.quantity.setEnabled(not by_limit)
-        self.time.setEnabled(question.judge is Judge.AT_TIME)
+        measured = question.judge in (Judge.AT_TIME, Judge.AREA_UNDER_COURSE)
+        self.quantity.setEnabled(measured)
+        self.time.setEnabled(question.judge in (Judge.AT_TIME, Judge.RATING))
+        kept = question in self._settings().comparisons
         usual = assessment.comparison
-        if usual is not None and usual.question == question:
-            self.comparison = usual
-        else:
-            try:
-                self.comparison = answer(question, by_formulation(assessment))
-            except ValueError as error:
-                self.comparison = Comparison(question, "", None, (), (), str(error))
+        self.drop.setVisible(kept)
+        self.keep.setVisible(not kept and (usual is None or usual.question != question))
+        known = [c for c in (usual, *assessment.further_comparisons) if c is not None]
+        campaign = self.desk.campaign
+        self.comparison = next((c for c in known if c.question == question), None)
+        if self.comparison is None and campaign is not None:
+            self.comparison = answer_beside(campaign, assessment, question)
+        if self.comparison is None:
+            return
         # The first sentence says who is ahead; what it was judged by stands smaller.
         first, parting, rest = self.comparison.text.partition(". Judged by ")
         self.words.setText(first + ("." if parting else ""))
@@ -237,6 +349,13 @@ class ComparisonPlace(Place):
             apart = "yes" if p.differ else "no"
             rows.append([p.first, p.second, *numbers, p.probability, p.adjusted, apart])
         return rows
+
+
+def _same(data: object, wanted: object) -> bool:
+    """Qt keeps a pair as a list."""
+    if isinstance(data, (list, tuple)) and isinstance(wanted, tuple):
+        return tuple(data) == wanted
+    return data == wanted
 
 
 def _more(assessment: Assessment, comparison: Comparison) -> list[str]:

@@ -12,6 +12,8 @@ from PySide6.QtWidgets import QComboBox, QHBoxLayout, QWidget
 
 from coatgui.records import Assessment, Bound, FormulationAssessment
 from coatgui.window.axis import DecadeAxis, Plot
+from coatgui.window.course_marks import RatingsStrip, event_lines
+from coatgui.window.course_rows import course_rows
 from coatgui.window.desk import Desk
 from coatgui.window.legend import Legend
 from coatgui.window.palette import Colours, formulation_look
@@ -38,6 +40,8 @@ _APART = 1 / 16
 
 class CoursePlace(Place):
     noun, question = "Course", "How is it going?"
+    needs = "assessment"
+    promise = "Here each quantity will run over exposure time, replicates together, water beneath."
     note = "trend"
     leaves_facts = True
 
@@ -78,6 +82,11 @@ class CoursePlace(Place):
         self.column.addWidget(self.water, 2)
         self.column.addWidget(self.exploratory)
         self.column.addWidget(self.constants, 3)
+        self.ratings = RatingsStrip()
+        self.ratings.setXLink(self.course)
+        self.ratings.getPlotItem().getAxis("left").setWidth(_AXIS_WIDTH)
+        self.column.addWidget(self.ratings)
+        self._events: list[pg.InfiniteLine] = []
         self.outlines = Outlines(self)
         self.outlines.came.connect(self._draw_constants)
         self._own = {plot: pg.PlotCurveItem() for plot in (self.course, self.water)}
@@ -158,6 +167,7 @@ class CoursePlace(Place):
         if assessment is None:
             self.explained.setText(self.desk.unjudged_words())
             self.legend.show_names([], self.tone)
+            self.ratings.show_ratings([], [], 0.0, self._across, self.tone)
             return
         self.explained.setText(
             "Thick: mean of the panels with its 95 % band. Thin: each panel. ↑ at least, ↓ at most."
@@ -172,6 +182,13 @@ class CoursePlace(Place):
             plot.addItem(self._own[plot])
             plot.addItem(self._here[plot], ignoreBounds=True)
         self._limits(assessment, code)
+        names = [f.formulation for f in assessment.formulations]
+        rated = [r for r in assessment.ratings if r.formulation in names]
+        longest = max(
+            [r.exposure_h for r in assessment.readings] + [r.exposure_h for r in rated], default=0.0
+        )
+        self.ratings.show_ratings(rated, names, longest, self._across, self.tone)
+        self._events = []
         self._ticks(assessment)
         self.show_selection()
         for plot in (self.course, self.water):
@@ -188,7 +205,7 @@ class CoursePlace(Place):
         for at in (len(hours) - 1, 0, *range(len(hours) - 2, 0, -1)):
             if all(abs(places[at] - other) > width * _APART for other in kept):
                 kept[places[at]] = f"{hours[at]:g} h"
-        for plot in (self.course, self.water, self.constants):
+        for plot in (self.course, self.water, self.constants, self.ratings):
             plot.getPlotItem().getAxis("bottom").setTicks([sorted(kept.items())])
 
     def _limits(self, assessment: Assessment, code: str) -> None:
@@ -293,12 +310,27 @@ class CoursePlace(Place):
                 x[here], y[here], symbol="o", size=15, brush=None,
                 pen=pg.mkPen(self.tone.verdigris, width=2),
             )  # fmt: skip
+        self._mark_events(reading.panel_id if reading else "")
         self._draw_constants()
+
+    def _mark_events(self, panel_id: str) -> None:
+        """What happened to the picked panel, where it is known to have happened by."""
+        for line in self._events:
+            self.course.removeItem(line)
+        assessment = self.desk.assessment
+        panels = () if assessment is None else assessment.panels
+        panel = next((p for p in panels if p.panel_id == panel_id), None)
+        self._events = event_lines(panel.events if panel else (), self._across, self.tone)
+        for line in self._events:
+            self.course.addItem(line, ignoreBounds=True)
 
     def figure(self) -> list[QWidget]:
         constants = self.below.currentIndex() == TIME_CONSTANTS
         below = self.constants if constants else self.water
-        return [self.legend, self.course, below] if self.desk.assessment else []
+        shown: list[QWidget] = [self.legend, self.course, below]
+        if self.ratings.isVisible():
+            shown.append(self.ratings)
+        return shown if self.desk.assessment else []
 
     def caption(self) -> str:
         title = self.desk.assessment.title if self.desk.assessment else ""
@@ -309,38 +341,12 @@ class CoursePlace(Place):
         return f"{title}: {self.chooser.currentText()} and apparent water uptake"
 
     def data_rows(self) -> list[list[object]]:
-        code = self._code()
-        head = [
-            "formulation",
-            "panel",
-            "exposure_h",
-            "quantity",
-            "value",
-            "low",
-            "high",
-            "bound",
-            "unit",
-        ]
-        rows: list[list[object]] = [list(head)]
-        for each in (code, "water_uptake"):
-            for r in self.desk.assessment.readings if self.desk.assessment else ():
-                q = amount(r, each)
-                if q is not None and r.counts:
-                    rows.append(
-                        [r.formulation, r.panel, r.exposure_h, each, q.value, q.low, q.high,
-                         q.bound.value, q.unit]
-                    )  # fmt: skip
+        outlines = None
         if self.below.currentIndex() == TIME_CONSTANTS:
-            here = self.desk.reading_assessment()  # of the same panel
-            names = [here.formulation, here.panel] if here else ["", ""]
-            for wanted in self._wanted():
-                outline = self.outlines.of(wanted)
-                rows += [
-                    [*names, wanted.exposure_h, "time_constant_exploratory",
-                     peak.time_constant_s, None, None, "", "s"]
-                    for peak in (outline.peaks if outline else ())
-                ]  # fmt: skip
-        return rows
+            outlines = [(w.exposure_h, self.outlines.of(w)) for w in self._wanted()]
+        return course_rows(
+            self.desk.assessment, self._code(), self.desk.reading_assessment(), outlines
+        )
 
     def _clicked(self, _item: Any, points: Any, _event: Any = None) -> None:
         if len(points):

@@ -6,9 +6,8 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-import pyqtgraph as pg
 from PySide6.QtCore import Qt, Signal
-from PySide6.QtGui import QBrush, QColor
+from PySide6.QtGui import QBrush, QColor, QPen
 from PySide6.QtWidgets import (
     QHBoxLayout,
     QInputDialog,
@@ -23,7 +22,7 @@ from PySide6.QtWidgets import (
 
 from coatgui.campaign import operations
 from coatgui.records import Finding, ReadingAssessment, Refusal, Severity
-from coatgui.window.axis import Plot
+from coatgui.window.canvas import Canvas, Marks
 from coatgui.window.desk import Desk
 from coatgui.window.palette import Colours
 from coatgui.window.places.place import Place, plain_label
@@ -49,11 +48,13 @@ class DoubtsPlace(Place):
     """`opened` asks for the reading's own place."""
 
     noun, question = "Doubts", "What needs a person's eye?"
+    promise = "Findings to settle, and files that were refused, stand here."
     note = "kramers_kronig"
     has_strip = False
     opened = Signal()
 
     def __init__(self, desk: Desk, tone: Colours) -> None:
+        self.doubts: list[Doubt] = []
         super().__init__(desk, tone)
         self.counted = plain_label()
         self.column.addWidget(self.counted)
@@ -71,7 +72,6 @@ class DoubtsPlace(Place):
         splitter.addWidget(self._evidence())
         splitter.setSizes([440, 380])
         self.column.addWidget(splitter, 1)
-        self.doubts: list[Doubt] = []
 
     def _evidence(self) -> QWidget:
         page = QWidget()
@@ -80,10 +80,9 @@ class DoubtsPlace(Place):
         self.heading = plain_label("question")
         self.words = plain_label()
         self.numbers = plain_label("small")
-        self.plot = Plot("Evidence: modulus", ("frequency", "Hz"), ("|Z| of the specimen", "Ω"))
-        self._points, self._meant = pg.ScatterPlotItem(), pg.ScatterPlotItem()
-        self.plot.addItem(self._points)
-        self.plot.addItem(self._meant)
+        self.plot = Canvas("Evidence: modulus", ("frequency", "Hz"), ("|Z| of the specimen", "Ω"))
+        self._points, self._meant = Marks(size=6), Marks(size=12)
+        self.plot.add(self._points, self._meant)
         for label in (self.heading, self.words, self.numbers):
             label.setSizePolicy(QSizePolicy.Policy.Preferred, QSizePolicy.Policy.Maximum)
             column.addWidget(label)
@@ -128,8 +127,21 @@ class DoubtsPlace(Place):
             self.list.addItem(item)
         self.list.blockSignals(False)
         self._count()
+        self.settle()
         self.list.setCurrentRow(min(max(row, 0), len(self.doubts) - 1))
         self._show_evidence()
+
+    def settle(self) -> None:
+        """An empty list says what would be on it."""
+        campaign = self.desk.campaign
+        if campaign is None or campaign.refused or (self.desk.assessment and self.doubts):
+            self.show_content()
+        elif not campaign.readings:
+            self.lack_files()
+        elif self.desk.assessment is None:
+            self.lack_judging()
+        else:
+            self.show_empty(f"Nothing needs a person's eye. {self.promise}", "", None)
 
     def _count(self) -> None:
         refused = sum(1 for doubt in self.doubts if doubt.refusal)
@@ -191,14 +203,10 @@ class DoubtsPlace(Place):
         x = np.log10(record.spectrum.frequency_hz)
         y = np.log10(np.maximum(np.abs(record.spectrum.impedance_ohm), 1e-30))
         meant = np.array([p for p in finding.points if p < x.size], dtype=int)
-        self._points.setData(x, y, symbol="o", size=6, pen=pg.mkPen(tone.slate), brush=None)
-        self._meant.setData(
-            x[meant], y[meant], symbol="o", size=12, pen=pg.mkPen(tone.rust, width=2), brush=None
-        )
-        self.plot.setRange(
-            xRange=(float(x.min()), float(x.max())),
-            yRange=(float(y.min()), float(y.max())),
-            padding=0.06,
+        self._points.show(x, y, QPen(QColor(tone.slate), 1))
+        self._meant.show(x[meant], y[meant], QPen(QColor(tone.rust), 2))
+        self.plot.show_range(
+            (float(x.min()), float(x.max())), (float(y.min()), float(y.max())), 0.06
         )
 
     # --- what can be done ------------------------------------------------------------------

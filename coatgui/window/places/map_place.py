@@ -4,7 +4,10 @@ from __future__ import annotations
 
 import math
 from bisect import bisect_right
+from collections.abc import Callable
+from operator import attrgetter
 
+import numpy as np
 from PySide6.QtCore import QPoint, QRect, QSize, Qt, Signal
 from PySide6.QtGui import (
     QColor,
@@ -23,7 +26,7 @@ from coatgui.window.desk import Desk
 from coatgui.window.numbers import said
 from coatgui.window.palette import Colours, ramp
 from coatgui.window.places.place import Place, plain_label, plain_tip
-from coatgui.window.tree_model import state_of
+from coatgui.window.tree_model import same_outline, state_of
 
 _LABEL_WIDTH, _ROW, _HEAD, _BAND, _CELL = 84, 30, 26, 24, 52
 _SMALLEST, _LARGEST = 0.3, 2.0
@@ -38,15 +41,26 @@ QUANTITIES = {
 _RISING_IS_WORSE = ("coating_capacitance", "water_uptake")
 
 
+def amount_of(code: str) -> Callable[[ReadingAssessment], Quantity | None]:
+    """What gives the quantity that a code names, of one reading."""
+    if code.startswith("modulus_"):
+        frequency_hz = float(code.removeprefix("modulus_"))
+
+        def at(reading: ReadingAssessment) -> Quantity | None:
+            for modulus in reading.modulus:
+                if modulus.frequency_hz == frequency_hz:
+                    return modulus.quantity
+            return None
+
+        return at
+    if code == "water_uptake":
+        return lambda reading: reading.water_uptake.quantity if reading.water_uptake else None
+    return attrgetter(code)
+
+
 def amount(reading: ReadingAssessment, code: str) -> Quantity | None:
     """The quantity a code names, of one reading."""
-    if code.startswith("modulus_"):
-        modulus = reading.modulus_at(float(code.removeprefix("modulus_")))
-        return modulus.quantity if modulus else None
-    if code == "water_uptake":
-        return reading.water_uptake.quantity if reading.water_uptake else None
-    found: Quantity | None = getattr(reading, code)
-    return found
+    return amount_of(code)(reading)
 
 
 def short(quantity: Quantity | None, code: str) -> str:
@@ -102,16 +116,25 @@ class Cells(QWidget):
         self.selection = ""
         self.shades: dict[tuple[int, int], float] = {}
         self.places: dict[str, tuple[int, int]] = {}  # row and column by the reading's id
+        self._laid_out: Campaign | None = None
         self.scale = 1.0
         self._row, self._band = _ROW, _BAND
 
     def show(self, campaign: Campaign, known: dict[str, ReadingAssessment], code: str) -> None:  # type: ignore[override]
         """Lay out a campaign; readings not assessed yet stand as empty cells."""
         self.code = code
+        if not same_outline(self._laid_out, campaign):
+            self._lay_out(campaign)
+        self._laid_out = campaign
+        self.cells = {place: known.get(key, key) for key, place in self.places.items()}
+        self._shade()
+        self.resize_to(self.scale)
+
+    def _lay_out(self, campaign: Campaign) -> None:
+        """A row for each panel, a column for each exposure time."""
         self.times = sorted({r.exposure_h for r in campaign.readings})
         column = {hours: i for i, hours in enumerate(self.times)}
-        self.rows, self.cells, self.shades = [], {}, {}
-        self.places = {}
+        self.rows, self.places = [], {}
         readings: dict[str, list[Reading]] = {}
         for reading in campaign.readings:
             readings.setdefault(reading.panel_id, []).append(reading)
@@ -124,10 +147,7 @@ class Cells(QWidget):
                 self.rows.append(("panel", panel.name))
                 for reading in readings.get(panel.panel_id, ()):
                     place = (len(self.rows) - 1, column[reading.exposure_h])
-                    self.cells[place] = known.get(reading.reading_id, reading.reading_id)
                     self.places[reading.reading_id] = place
-        self._shade()
-        self.resize_to(self.scale)
 
     def resize_to(self, scale: float) -> None:
         """Make the cells larger or smaller than they are at first (1)."""
@@ -139,21 +159,26 @@ class Cells(QWidget):
         self.update()
 
     def _shade(self) -> None:
-        values: dict[tuple[int, int], float] = {}
+        places, amounts = [], []
+        wanted, plain = amount_of(self.code), self.code == "water_uptake"
         for place, cell in self.cells.items():
-            counts = isinstance(cell, ReadingAssessment) and cell.counts
-            quantity = amount(cell, self.code) if counts else None  # type: ignore[arg-type]
-            if quantity is not None and quantity.value is not None:
-                plain = self.code == "water_uptake"
-                if plain or quantity.value > 0:
-                    values[place] = quantity.value if plain else math.log10(quantity.value)
-        if not values:
+            if isinstance(cell, ReadingAssessment) and cell.counts:
+                quantity = wanted(cell)
+                if quantity is not None and quantity.value is not None:
+                    places.append(place)
+                    amounts.append(quantity.value)
+        self.shades = {}
+        values = np.array(amounts)
+        shown = np.ones(values.size, bool) if plain else values > 0
+        if not shown.any():
             return
-        low, high = min(values.values()), max(values.values())
-        width = max(high - low, 1e-9)
-        for place, value in values.items():
-            share = (value - low) / width
-            self.shades[place] = 1.0 - share if self.code in _RISING_IS_WORSE else share
+        values = values if plain else np.log10(np.where(shown, values, 1.0))
+        low, high = values[shown].min(), values[shown].max()
+        shares = (values - low) / max(high - low, 1e-9)
+        if self.code in _RISING_IS_WORSE:
+            shares = 1.0 - shares
+        told = zip(places, shares.tolist(), shown.tolist(), strict=True)
+        self.shades = {place: share for place, share, is_shown in told if is_shown}
 
     def _tops(self) -> list[int]:
         """The top of every row, and the bottom of the last."""
@@ -309,6 +334,8 @@ class Cells(QWidget):
 
 class MapPlace(Place):
     noun, question = "Map", "Where does the campaign stand?"
+    needs = "readings"
+    promise = "Here a map will show every panel at every exposure time, a cell for each reading."
     note = "modulus"
     leaves_facts = True
 

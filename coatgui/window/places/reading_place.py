@@ -4,6 +4,7 @@ below."""
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 
 import numpy as np
 from PySide6.QtCore import Qt, QTimer
@@ -21,9 +22,11 @@ from PySide6.QtWidgets import (
 )
 
 from coatgui.campaign import operations
+from coatgui.fitting.views import FitBand, Part
 from coatgui.records import Reading, ReadingAssessment
 from coatgui.window.composing import Composing
 from coatgui.window.desk import Desk
+from coatgui.window.fit_drawn import band_of, between, parts_of
 from coatgui.window.model_picker import ModelPicker
 from coatgui.window.models import models
 from coatgui.window.numbers import WORDS, said
@@ -32,6 +35,7 @@ from coatgui.window.places.place import Place, plain_label, plain_tip
 from coatgui.window.section import SectionView, section_of
 from coatgui.window.sheet import sheet
 from coatgui.window.spectrum_plots import Drawn, SpectrumPlots
+from coatgui.window.still import Still
 from coatgui.window.trials import TrialsTable
 
 _HEADINGS = (
@@ -47,12 +51,15 @@ _OVERLAYS = ("This reading alone", "With the panel's other times", "With its rep
 
 class ReadingPlace(Place):
     noun, question = "Reading", "What does this spectrum say?"
+    needs = "readings"
+    promise = "Here one spectrum will be shown with its fit, and as a section through the coating."
     note = "pores_reacting_interface"
 
     def __init__(self, desk: Desk, tone: Colours) -> None:
         super().__init__(desk, tone)
         self.about = plain_label()
-        self.column.addWidget(self.about)
+        self._about = Still(self.about, 2)
+        self.column.addWidget(self._about)
         row = QHBoxLayout()
         row.setSpacing(12)
         self.column.addLayout(row, 1)
@@ -67,19 +74,32 @@ class ReadingPlace(Place):
         self.overlay.setAccessibleName("Spectra drawn with this one")
         self.overlay.setAccessibleDescription("Other spectra, fainter the shorter the exposure")
         self.overlay.addItems(list(_OVERLAYS))
+        self.overlay.setMinimumContentsLength(14)
+        self.overlay.setSizeAdjustPolicy(
+            QComboBox.SizeAdjustPolicy.AdjustToMinimumContentsLengthWithIcon
+        )
         self.overlay.currentIndexChanged.connect(self.show_selection)
         self.read_out = plain_label("small")
-        self.read_out.setText(_HINT)
-        self.tried = QPushButton("What was tried")
-        self.tried.setCheckable(True)
-        self.tried.setAccessibleDescription(
-            "Every model laid on this spectrum, and why it was left"
+        self._read_out = Still(self.read_out, 1)
+        self._read_out.say(_HINT)
+        self.tried = _switch(
+            "What was tried", "Every model laid on this spectrum, and why it was left"
         )
         self.tried.toggled.connect(self._show_trials)
+        self.band = _switch("Band", "The 95 % band of the fit, where it holds")
+        self.parts = _switch("Parts", "What film, pores and interface contribute to the fit")
+        for switch in (self.band, self.parts):
+            switch.toggled.connect(self._draw_beside_fit)
+        self.beside = plain_label("small")
+        self.beside.hide()
         under.addWidget(self.overlay)
+        under.addWidget(self.band)
+        under.addWidget(self.parts)
         under.addWidget(self.tried)
-        under.addWidget(self.read_out, 1)
+        under.addStretch(1)
         left.addLayout(under)
+        left.addWidget(self._read_out)
+        left.addWidget(self.beside)
         row.addLayout(left, 1)
         row.addWidget(self._side(tone))
         self.findings = plain_label()
@@ -137,22 +157,45 @@ class ReadingPlace(Place):
             )
         self.section.show_section(section_of(known, panel, models(self.desk.campaign)), self.tone)
         self.section.setVisible(self.section.section is not None)
-        self.table.setRowCount(0)
         self._say(reading, known)
+        self._tabulate(known)
         self._show_trials()
         if reading is None:
             self.plots.show_spectrum(None, (), self.tone)
             return
         self.plots.show_spectrum(drawn(reading, known), self._overlaid(reading), self.tone)
+        self._draw_beside_fit()
         self.picker.offer(reading)
-        if known is not None:
-            self._tabulate(known)
 
     def _show_trials(self) -> None:
-        known = self.desk.reading_assessment()
-        self.trials.show_trials(known.fit if known else None, models(self.desk.campaign), self.tone)
+        if self.tried.isChecked():
+            known, known_models = self.desk.reading_assessment(), models(self.desk.campaign)
+            self.trials.show_trials(known.fit if known else None, known_models, self.tone)
         self.trials.setVisible(self.tried.isChecked())
         self.findings_area.setVisible(bool(self.findings.text()) and not self.tried.isChecked())
+
+    def _beside_fit(self, frequency_hz: np.ndarray) -> tuple[FitBand | None, tuple[Part, ...]]:
+        """The band and the parts that are asked for, of the fit that is shown."""
+        if not self.band.isChecked() and not self.parts.isChecked():
+            return None, ()
+        known, campaign = self.desk.reading_assessment(), self.desk.campaign
+        fit = known.fit if known else None
+        model = models(campaign).get(fit.model) if fit else None
+        if campaign is None or fit is None or model is None:
+            return None, ()
+        band = band_of(fit, model, campaign, frequency_hz) if self.band.isChecked() else None
+        parts = parts_of(fit, model, frequency_hz) if self.parts.isChecked() else ()
+        return band, parts
+
+    def _draw_beside_fit(self) -> None:
+        reading = self.desk.reading()
+        if reading is None:
+            return
+        fine = between(reading.spectrum.frequency_hz)
+        self.plots.show_beside_fit(*self._beside_fit(fine), fine, self.tone)
+        words = self.plots.beside_fit.words()
+        self.beside.setText(words)
+        self.beside.setVisible(bool(words))
 
     def _overlaid(self, reading: Reading) -> list[tuple[Drawn, float]]:
         """The other spectra to draw, each with its share of the exposure time."""
@@ -181,13 +224,13 @@ class ReadingPlace(Place):
         ]
 
     def _say(self, reading: Reading | None, known: ReadingAssessment | None) -> None:
-        self.findings.setText("")
-        self.findings_area.hide()
-        if reading is None:
-            self.about.setText("No reading is picked: pick one in the tree or on the map.")
-            return
-        if known is None:
-            self.about.setText(self.desk.unjudged_words())
+        if reading is None or known is None:
+            self.findings.setText("")
+            self._about.say(
+                "No reading is picked: pick one in the tree or on the map."
+                if reading is None
+                else self.desk.unjudged_words()
+            )
             return
         text = f"{known.panel} of {known.formulation} after {known.exposure_h:g} h: "
         if known.fit is None:
@@ -200,10 +243,10 @@ class ReadingPlace(Place):
         lines = [f"{_MARKS[f.severity.value]}  {f.text}" for f in known.findings]
         if not lines:
             text += " Nothing speaks against this reading."
-        self.about.setText(text)
-        self.findings.setText("\n".join(lines))
-        self.findings_area.setVisible(bool(lines))
-        self._fit_findings()
+        self._about.say(text)
+        if "\n".join(lines) != self.findings.text():
+            self.findings.setText("\n".join(lines))
+            self._fit_findings()
 
     def _fit_findings(self) -> None:
         """As high as the findings need, up to some whole lines; the rest is scrolled to."""
@@ -218,28 +261,36 @@ class ReadingPlace(Place):
         super().resizeEvent(event)
         self._fit_findings()
 
-    def _tabulate(self, known: ReadingAssessment) -> None:
+    def _tabulate(self, known: ReadingAssessment | None) -> None:
+        if known is None:
+            self.table.setRowCount(0)
+            return
         rows = [(p.symbol, p.meaning, p.quantity) for p in known.parameters]
         rows += [
             (f"|Z|·A {m.frequency_hz:g} Hz", m.status.value.replace("_", " "), m.quantity)
             for m in known.modulus
             if m.quantity is not None
         ]
-        self.table.setRowCount(len(rows))
+        if self.table.rowCount() != len(rows):
+            self.table.setRowCount(len(rows))
         for i, (symbol, meaning, quantity) in enumerate(rows):
+            tip = plain_tip(f"{meaning} ({WORDS[quantity.bound]}). {quantity.method}")
             for j, text in enumerate((symbol, said(quantity))):
-                item = QTableWidgetItem(text)
-                item.setToolTip(
-                    plain_tip(f"{meaning} ({WORDS[quantity.bound]}). {quantity.method}")
-                )
-                self.table.setItem(i, j, item)
+                item = self.table.item(i, j)
+                if item is None:
+                    item = QTableWidgetItem()
+                    self.table.setItem(i, j, item)
+                if item.text() != text:
+                    item.setText(text)
+                if item.toolTip() != tip:
+                    item.setToolTip(tip)
 
     def topic(self) -> str:
         known = self.desk.reading_assessment()
         return known.fit.model if known is not None and known.fit is not None else self.note
 
     def figure(self) -> list[QWidget]:
-        return [] if self.desk.reading() is None else list(self.plots.plots)
+        return [] if self.desk.reading() is None else [*self.plots.plots, self.plots.key]
 
     def caption(self) -> str:
         known = self.desk.reading_assessment()
@@ -255,9 +306,11 @@ class ReadingPlace(Place):
         shown = drawn(reading, self.desk.reading_assessment())
         z = reading.spectrum.impedance_ohm
         model = shown.fit.modelled_ohm if shown.fit else [None] * z.size
-        rows: list[list[object]] = [list(_HEADINGS)]
-        for f, measured, fitted, used in zip(
-            reading.spectrum.frequency_hz, z, model, shown.used, strict=True
+        band, parts = self._beside_fit(reading.spectrum.frequency_hz)
+        beside = _columns(band, parts)
+        rows: list[list[object]] = [[*_HEADINGS, *beside]]
+        for place, (f, measured, fitted, used) in enumerate(
+            zip(reading.spectrum.frequency_hz, z, model, shown.used, strict=True)
         ):
             rows.append(
                 [
@@ -265,6 +318,7 @@ class ReadingPlace(Place):
                     float(np.degrees(np.angle(measured))), "yes" if used else "no",
                     None if fitted is None else float(fitted.real),
                     None if fitted is None else float(fitted.imag),
+                    *(float(column[place]) for column in beside.values()),
                 ]
             )  # fmt: skip
         return rows
@@ -275,7 +329,7 @@ class ReadingPlace(Place):
         super().paint_in(tone)
 
     def _pointed(self, words: str) -> None:
-        self.read_out.setText(words or _HINT)
+        self._read_out.say(words or _HINT)
 
     # --- edits -----------------------------------------------------------------------------
 
@@ -308,6 +362,29 @@ class ReadingPlace(Place):
     def _composed(self) -> None:
         self.pages.setCurrentIndex(0)
         self.picker.compose.setFocus()
+
+
+def _switch(text: str, description: str) -> QPushButton:
+    switch = QPushButton(text)
+    switch.setCheckable(True)
+    switch.setToolTip(description)
+    switch.setAccessibleDescription(description)
+    return switch
+
+
+def _columns(band: FitBand | None, parts: Sequence[Part]) -> dict[str, np.ndarray]:
+    """Band and parts as columns of the table, by their headings."""
+    found: dict[str, np.ndarray] = {}
+    if band is not None:
+        found["model_modulus_low_ohm"] = band.modulus_low_ohm
+        found["model_modulus_high_ohm"] = band.modulus_high_ohm
+        found["model_phase_low_degrees"] = band.phase_low_deg
+        found["model_phase_high_degrees"] = band.phase_high_deg
+    for part in parts:
+        if part.impedance_ohm is not None:
+            found[f"{part.name}: real_ohm"] = part.impedance_ohm.real
+            found[f"{part.name}: imaginary_ohm"] = part.impedance_ohm.imag
+    return found
 
 
 def drawn(reading: Reading, known: ReadingAssessment | None) -> Drawn:

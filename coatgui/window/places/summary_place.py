@@ -43,6 +43,8 @@ class SummaryPlace(Place):
     """`wanted` asks for the summary as a file, with the ending of its name."""
 
     noun, question = "Summary", "What do we hand over?"
+    needs = "assessment"
+    promise = "Here the inspection summary will stand as it prints, with fields to fill in."
     has_strip = False
     wanted = Signal(str)
 
@@ -139,7 +141,10 @@ class SummaryPlace(Place):
         if before and before[0] is campaign and before[1] is assessment and before[2] == wanted[2]:
             return
         self._shown = wanted
-        self.printing.begin(lambda: inspection_summary(assessment, campaign), wanted[2])
+        seen = self.desk.photographs()
+        self.printing.begin(
+            lambda: inspection_summary(assessment, campaign, photographs=seen), wanted[2]
+        )
         self._came()
 
     def _came(self) -> None:

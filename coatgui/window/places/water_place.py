@@ -90,6 +90,10 @@ def _tens(value: float) -> str:
 
 class WaterPlace(Place):
     noun, question = "Water", "How much water does the film take up, and how fast?"
+    needs = "assessment"
+    promise = (
+        "Here the water in the film will be followed, with its bracket and its sorption curve."
+    )
     note = "water_uptake"
 
     def __init__(self, desk: Desk, tone: Colours) -> None:
