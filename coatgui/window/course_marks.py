@@ -21,17 +21,21 @@ _MOST_ROWS = 8
 def event_lines(
     events: Sequence[Event], across: Callable[[np.ndarray], np.ndarray], tone: Colours
 ) -> list[pg.InfiniteLine]:
-    """An upright line for each event where it is known to have happened by, with its name along
-    it; dotted where only one reading shows it."""
+    """An upright line where events are known to have happened by, with their names along it; dotted
+    where only one reading shows them."""
     lines = []
-    dated = [event for event in events if event.by_h is not None]
-    for event in sorted(dated, key=lambda e: e.by_h or 0.0):
-        style = Qt.PenStyle.DashLine if event.confirmed else Qt.PenStyle.DotLine
+    dated: dict[float, list[Event]] = {}
+    for event in events:
+        if event.by_h is not None:
+            dated.setdefault(event.by_h, []).append(event)
+    for by_h, those in sorted(dated.items()):
+        confirmed = any(event.confirmed for event in those)
+        style = Qt.PenStyle.DashLine if confirmed else Qt.PenStyle.DotLine
         line = pg.InfiniteLine(
-            float(across(np.array([event.by_h]))[0]),
+            float(across(np.array([by_h]))[0]),
             angle=90,
             pen=pg.mkPen(tone.amber, width=1, style=style),
-            label=event.code.replace("_", " "),
+            label=", ".join(event.code.replace("_", " ") for event in those),
             labelOpts={
                 "position": 0.02,
                 "color": tone.amber,

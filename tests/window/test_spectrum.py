@@ -133,7 +133,7 @@ def test_a_click_leaves_a_point_out_greys_it_in_every_plot_and_can_be_undone(
     click()
     assert left_out() == [20]
     for crosses, (across, _) in zip(plots._crosses, plots.drawn.places(), strict=False):
-        assert crosses.getData()[0].tolist() == [across[20]]
+        assert crosses.across.tolist() == [across[20]]
     click()
     assert left_out() == []
     assert sample.desk.file is not None
