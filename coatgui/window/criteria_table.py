@@ -1,127 +1,102 @@
-"""The criteria of a campaign as a table whose cells are typed in."""
+"""What a campaign is judged by, as tables whose cells are typed in: criteria on the modulus, and
+limits on the other quantities."""
 
 from __future__ import annotations
 
-from collections.abc import Callable
-from dataclasses import replace
+from collections.abc import Callable, Sequence
 from typing import Any
 
-from PySide6.QtCore import Qt
-from PySide6.QtGui import QColor
-from PySide6.QtWidgets import QHBoxLayout, QPushButton, QTableWidgetItem, QVBoxLayout, QWidget
-
 from coatgui.assessment.rules import default_criteria
-from coatgui.records import Criterion
+from coatgui.records import QUANTITIES, Criterion, Limit, Side
 from coatgui.window.palette import Colours
-from coatgui.window.places.place import plain_label, plain_tip
-from coatgui.window.sheet import sheet
 from coatgui.window.typed import typed, written
+from coatgui.window.typed_table import TypedTable
 
-_COLUMNS = ("name", "at frequency", "|Z|·A falls below", "source")
+_WORDS = {
+    "coating_capacitance": "film capacitance",
+    "pore_resistance": "pore resistance",
+    "water_uptake": "water uptake",
+    "relative_permittivity": "film permittivity",
+    "film_resistivity": "film resistivity",
+}
+_FIRST = {"coating_capacitance": 1e-8, "pore_resistance": 1e7, "water_uptake": 15.0,
+          "relative_permittivity": 20.0, "film_resistivity": 1e9}  # fmt: skip
 
 
-class CriteriaTable(QWidget):
-    """`take` gets all criteria as they shall be; it raises ValueError where that is refused."""
-
+class CriteriaTable(TypedTable):
     def __init__(self, take: Callable[[tuple[Criterion, ...]], None]) -> None:
-        super().__init__()
-        self._take = take
-        self._filling = False
-        self.criteria: tuple[Criterion, ...] = ()
-        column = QVBoxLayout(self)
-        column.setContentsMargins(0, 0, 0, 0)
-        column.setSpacing(4)
-        self.note = plain_label("small")
-        column.addWidget(self.note)
-        self.table = sheet(
-            _COLUMNS, "Criteria", "F2 or typing changes a cell; numbers take a unit", editable=True
-        )
-        self.table.setMinimumHeight(110)
-        self.table.cellChanged.connect(self._changed)
-        column.addWidget(self.table, 1)
-        self.wrong = plain_label("wrong")
-        self.wrong.hide()
-        column.addWidget(self.wrong)
-        row = QHBoxLayout()
-        add, remove = QPushButton("Add a criterion"), QPushButton("Remove")
-        add.setAccessibleDescription("A new row, to be named and given its limit")
-        remove.setAccessibleDescription("Take out the criterion of the picked row")
-        add.clicked.connect(self.add)
-        remove.clicked.connect(self.remove)
-        row.addWidget(add)
-        row.addWidget(remove)
-        row.addStretch(1)
-        column.addLayout(row)
+        columns = ("name", "at frequency", "|Z|·A falls below", "source")
+        super().__init__(take, columns, "Criteria", "criterion")
 
     def show_criteria(self, own: tuple[Criterion, ...], tone: Colours) -> None:
-        shown = own or default_criteria()
         self.note.setText(
             "Panels are held against each of these."
             if own
             else "Usual limits, in force until the campaign has its own: change one to make it so."
         )
-        self.criteria = shown
-        self._filling = True
-        self.table.setRowCount(len(shown))
-        for i, criterion in enumerate(shown):
-            texts = (
-                criterion.name,
-                written(criterion.frequency_hz, "Hz"),
-                written(criterion.ohm_cm2, "Ω cm²"),
-                criterion.source,
-            )
-            for j, text in enumerate(texts):
-                item = QTableWidgetItem(text)
-                item.setToolTip(plain_tip(text))
-                item.setForeground(QColor(tone.ink if own else tone.second))
-                self.table.setItem(i, j, item)
-        self._filling = False
+        self.show_records(own or default_criteria(), tone.ink if own else tone.second)
 
-    def _carry_out(self, criteria: tuple[Criterion, ...]) -> bool:
-        try:
-            self._take(criteria)
-        except ValueError as error:
-            self._say(str(error))
-            return False
-        self._say("")
-        return True
+    def texts(self, record: Criterion) -> Sequence[str]:
+        return (
+            record.name,
+            written(record.frequency_hz, "Hz"),
+            written(record.ohm_cm2, "Ω cm²"),
+            record.source,
+        )
 
-    def _say(self, sentence: str) -> None:
-        self.wrong.setText(f"■  {sentence}" if sentence else "")
-        self.wrong.setVisible(bool(sentence))
+    def change(self, record: Criterion, column: int, text: str) -> dict[str, Any]:
+        if column == 1:
+            return {"frequency_hz": typed(text, "Hz")}
+        if column == 2:
+            return {"ohm_cm2": typed(text, "Ω cm²")}
+        return {"name" if column == 0 else "source": text}
 
-    def _changed(self, row: int, column: int) -> None:
-        if self._filling:
-            return
-        item = self.table.item(row, column)
-        text = item.text().strip() if item else ""
-        changed: dict[str, Any]
-        try:
-            if column == 1:
-                changed = {"frequency_hz": typed(text, "Hz")}
-            elif column == 2:
-                changed = {"ohm_cm2": typed(text, "Ω cm²")}
-            else:
-                changed = {"name" if column == 0 else "source": text}
-        except ValueError as error:
-            self._say(str(error))
-            return
-        criteria = list(self.criteria)
-        criteria[row] = replace(criteria[row], **changed)
-        self._carry_out(tuple(criteria))
+    def new(self, name: str) -> Criterion:
+        like = self.records[-1] if self.records else default_criteria()[0]
+        return Criterion(name, like.frequency_hz, like.ohm_cm2, "own")
 
-    def add(self) -> None:
-        names = {criterion.name for criterion in self.criteria}
-        number = next(n for n in range(1, len(names) + 2) if f"Criterion {n}" not in names)
-        like = self.criteria[-1] if self.criteria else default_criteria()[0]
-        new = Criterion(f"Criterion {number}", like.frequency_hz, like.ohm_cm2, "own")
-        if self._carry_out((*self.criteria, new)):
-            self.table.setCurrentCell(len(self.criteria) - 1, 0)
-            self.table.setFocus(Qt.FocusReason.OtherFocusReason)
 
-    def remove(self) -> None:
-        row = self.table.currentRow()
-        if not 0 <= row < len(self.criteria):
-            self._say("Pick the row to take out first.")
-            return
-        self._carry_out(self.criteria[:row] + self.criteria[row + 1 :])
+class LimitsTable(TypedTable):
+    """Limits on the modulus are criteria and stand in their own table; the others stand here."""
+
+    def __init__(self, take: Callable[[tuple[Limit, ...]], None]) -> None:
+        columns = ("name", "quantity", "broken", "value", "source")
+        super().__init__(self._with_the_rest, columns, "Limits on other quantities", "limit")
+        self._take_all = take
+        self._rest: tuple[Limit, ...] = ()
+        self.note.setText(f"Of {', '.join(_WORDS.values())}; broken above or below the value.")
+
+    def show_limits(self, limits: tuple[Limit, ...], tone: Colours) -> None:
+        self._rest = tuple(limit for limit in limits if limit.quantity not in _WORDS)
+        self.show_records(tuple(x for x in limits if x.quantity in _WORDS), tone.ink)
+
+    def _with_the_rest(self, limits: tuple[Limit, ...]) -> None:
+        self._take_all((*self._rest, *limits))
+
+    def texts(self, record: Limit) -> Sequence[str]:
+        # As it can be typed again: only Ω cm² takes prefixes there.
+        value = (
+            written(record.value, record.unit)
+            if record.unit == "Ω cm²"
+            else f"{record.value:g} {record.unit}".strip()
+        )
+        return record.name, _WORDS[record.quantity], str(record.side), value, record.source
+
+    def change(self, record: Limit, column: int, text: str) -> dict[str, Any]:
+        if column == 1:
+            code = next((code for code, words in _WORDS.items() if words == text.casefold()), "")
+            if not code:
+                raise ValueError(f"“{text}” is none of these: {', '.join(_WORDS.values())}.")
+            # A value of one quantity says nothing of another.
+            return {"quantity": code, "unit": QUANTITIES[code], "value": _FIRST[code]}
+        if column == 2:
+            if text.casefold() not in tuple(Side):
+                raise ValueError("A limit is broken “above” or “below” its value.")
+            return {"side": Side(text.casefold())}
+        if column == 3:
+            return {"value": typed(text, record.unit)}
+        return {"name" if column == 0 else "source": text}
+
+    def new(self, name: str) -> Limit:
+        code = "water_uptake"
+        return Limit(name, code, _FIRST[code], QUANTITIES[code], "own", Side.ABOVE)

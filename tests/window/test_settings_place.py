@@ -116,6 +116,45 @@ def test_a_refusal_stands_beside_its_field_until_it_is_put_right(
     wait(lambda: sample.desk.job is None)
 
 
+def test_limits_on_other_quantities_are_typed_in_their_table(
+    sample: MainWindow, wait: Wait
+) -> None:
+    place = place_of(sample)
+    table = place.limits.table
+
+    def write(column: int, text: str) -> None:
+        item = table.item(0, column)
+        assert item is not None
+        item.setText(text)
+
+    place.limits.add()
+    (limit,) = settings(sample).limits
+    assert (limit.quantity, limit.side, limit.unit) == ("water_uptake", "above", "vol-%")
+    write(3, "5,0")
+    assert settings(sample).limits[0].value == 5.0
+    wait(lambda: sample.desk.job is None)
+    assert sample.desk.assessment is not None
+    study = next(s for s in sample.desk.assessment.limit_studies if s.limit.name == limit.name
+                 and s.formulation == "P waterborne")  # fmt: skip
+    assert "vol-%" in study.text or "uptake" in study.text.lower()
+    write(1, "thickness")
+    assert "none of these" in place.limits.wrong.text()
+    assert settings(sample).limits[0].quantity == "water_uptake"
+    write(2, "beside")
+    assert "“above” or “below”" in place.limits.wrong.text()
+    write(1, "pore resistance")
+    assert settings(sample).limits[0].unit == "Ω cm²"
+    write(2, "below")
+    write(3, "20 MΩ cm²")
+    assert settings(sample).limits[0].value == 2e7
+    sample.desk.undo()
+    assert settings(sample).limits[0].value == 1e7
+    table.setCurrentCell(0, 0)
+    place.limits.remove()
+    assert settings(sample).limits == ()
+    wait(lambda: sample.desk.job is None)
+
+
 def test_criteria_are_typed_in_their_table(sample: MainWindow, wait: Wait) -> None:
     place = place_of(sample)
     table = place.criteria.table

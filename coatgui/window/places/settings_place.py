@@ -8,7 +8,7 @@ from PySide6.QtWidgets import QCheckBox, QHBoxLayout, QScrollArea, QVBoxLayout, 
 
 from coatgui.campaign import CampaignFileError, OperationRefused, operations
 from coatgui.records import Settings
-from coatgui.window.criteria_table import CriteriaTable
+from coatgui.window.criteria_table import CriteriaTable, LimitsTable
 from coatgui.window.desk import Desk
 from coatgui.window.field import Field
 from coatgui.window.palette import Colours
@@ -84,11 +84,15 @@ class SettingsPlace(Place):
         left.addWidget(self.leads_note)
         self._title(left, "Criteria")
         self.criteria = CriteriaTable(lambda rows: self._set(criteria=rows))
-        left.addWidget(self.criteria, 1)
+        left.addWidget(self.criteria)
+        self._title(left, "Limits on other quantities")
+        self.limits = LimitsTable(lambda rows: self._set(limits=rows))
+        left.addWidget(self.limits)
+        left.addStretch(1)
         area = QScrollArea()
         area.setWidget(page)
         area.setWidgetResizable(True)
-        area.setAccessibleName("Conditions, instrument, criteria")
+        area.setAccessibleName("Conditions, instrument, criteria, limits")
         area.setAccessibleDescription("Up and down scroll")
         halves.addWidget(area, 1)
         right = QVBoxLayout()
@@ -132,6 +136,7 @@ class SettingsPlace(Place):
             text = "Needs an open-lead run, or the input as the maker states it."
         self.leads_note.setText(text)
         self.criteria.show_criteria(settings.criteria, self.tone)
+        self.limits.show_limits(settings.limits, self.tone)
         self.thresholds.show_thresholds(dict(settings.thresholds), self.tone)
 
     def _set(self, **fields: Any) -> None:
