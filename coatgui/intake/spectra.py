@@ -358,16 +358,23 @@ def _with_repeats(frequency: FloatArray, sweeps: list[np.ndarray]) -> list[np.nd
     the panel changed meanwhile: they belong to it."""
 
     def repeats(few: np.ndarray, many: np.ndarray) -> bool:
+        if few.size >= _FEWEST_POINTS:
+            return False
         ratio = frequency[few][:, None] / frequency[many]
-        return few.size < _FEWEST_POINTS and bool((np.abs(ratio - 1) < _SAME).any(axis=1).all())
+        return bool((np.abs(ratio - 1) < _SAME).any(axis=1).all())
 
-    result: list[np.ndarray] = []
+    groups: list[list[np.ndarray]] = []
+    body = sweeps[0]
     for sweep in sweeps:
-        if result and (repeats(sweep, result[-1]) or repeats(result[-1], sweep)):
-            result[-1] = np.concatenate([result[-1], sweep])
+        # More than a few pieces are no repeats, and looking each up in a long sweep takes long.
+        joins = bool(groups) and len(groups[-1]) < _FEWEST_POINTS
+        if joins and (repeats(sweep, body) or repeats(body, sweep)):
+            groups[-1].append(sweep)
+            body = max(body, sweep, key=len)
         else:
-            result.append(sweep)
-    return result
+            groups.append([sweep])
+            body = sweep
+    return [np.concatenate(group) for group in groups]
 
 
 def _refuse_short(sizes: np.ndarray, starts: np.ndarray, made: Extract) -> None:
