@@ -30,11 +30,18 @@ def check_file(path: Path) -> tuple[str, ...]:
         return (str(problem),)
     try:
         with database.plain_words(path):
-            return tuple(_problems(connection))
+            return tuple(_on_one_line(said) for said in _problems(connection))
     except CampaignFileError as problem:
         return (str(problem),)
     finally:
         database.disconnect(connection, path)
+
+
+def _on_one_line(said: str) -> str:
+    """A sentence may name what stands in a damaged file: anything, line ends and the like too."""
+    return "".join(
+        letter if letter.isprintable() else "\N{REPLACEMENT CHARACTER}" for letter in said
+    )
 
 
 def _problems(connection: sqlite3.Connection) -> Iterator[str]:

@@ -94,6 +94,22 @@ def test_several_problems_are_all_named(file: CampaignFile) -> None:
     assert len(check_file(file.path)) == 5 + 2 + 2 + 1
 
 
+def test_what_stands_in_a_damaged_file_breaks_no_sentence(file: CampaignFile) -> None:
+    """Found by damaged files: a hash that was not one brought its line ends along."""
+    file.close()
+    tell(
+        file.path,
+        "PRAGMA foreign_keys = OFF",
+        "UPDATE raw_files SET sha256 = 'ab' || char(10) || char(7) || 'cd' WHERE rowid = 1",
+    )
+    problems = check_file(file.path)
+    assert problems
+    assert any(
+        "ab\N{REPLACEMENT CHARACTER}\N{REPLACEMENT CHARACTER}cd" in said for said in problems
+    )
+    assert all(said.isprintable() for said in problems)
+
+
 def test_damaged_pages_are_found(file: CampaignFile) -> None:
     file.keep_results({str(number): bytes(3000) for number in range(40)})
     file.close()
