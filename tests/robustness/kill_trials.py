@@ -24,6 +24,7 @@ import time
 import traceback
 from collections import Counter
 from collections.abc import Callable, Iterator
+from contextlib import closing
 from pathlib import Path
 from random import Random
 
@@ -207,7 +208,8 @@ def _exports_wrong(folder: Path) -> str:
 def _read_workbook(path: Path) -> object:
     from openpyxl import load_workbook
 
-    return load_workbook(path, read_only=True).sheetnames
+    with closing(load_workbook(path, read_only=True)) as book:
+        return book.sheetnames
 
 
 def trials(count: int, seed: int) -> tuple[Counter[str], list[str]]:

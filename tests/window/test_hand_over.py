@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import shutil
 from collections.abc import Callable
+from contextlib import closing
 from pathlib import Path
 from typing import Any
 
@@ -164,8 +165,8 @@ def test_from_an_empty_start_to_what_is_handed_over_and_back(
     choose(window, "Campaign", "Write workbook")
     assert not troubles
     wait(lambda: window.desk.job is None and workbook.exists())
-    sheet = openpyxl.load_workbook(workbook, read_only=True)["Readings"]
-    assert sum(1 for _ in sheet.iter_rows()) == 108
+    with closing(openpyxl.load_workbook(workbook, read_only=True)) as book:
+        assert sum(1 for _ in book["Readings"].iter_rows()) == 108
 
     # Undo it all, and do it all again.
     done, known = window.desk.campaign, assessment_json(window.desk.assessment)

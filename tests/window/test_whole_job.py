@@ -7,6 +7,7 @@ used as a person uses them; the desk is only read, to know when the work under w
 from __future__ import annotations
 
 from collections.abc import Callable
+from contextlib import closing
 from pathlib import Path
 
 import openpyxl
@@ -141,8 +142,8 @@ def test_from_the_empty_window_to_the_campaign_opened_again(
     choose(window, "Campaign", "Write workbook")
     assert not troubles
     wait(lambda: window.desk.job is None and workbook.exists())
-    sheet = openpyxl.load_workbook(workbook, read_only=True)["Readings"]
-    assert sum(1 for _ in sheet.iter_rows()) > 10
+    with closing(openpyxl.load_workbook(workbook, read_only=True)) as book:
+        assert sum(1 for _ in book["Readings"].iter_rows()) > 10
 
     # Keep it, under a name with a point in it and without the ending.
     kept = tmp_path / "walk.v2.coatgui"
