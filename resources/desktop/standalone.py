@@ -1,6 +1,6 @@
 """Build the program as a folder that needs no Python, on the system this runs on.
 
-    python packaging/standalone.py
+    python resources/desktop/standalone.py
 
 The extra `standalone` must be installed (`pip install -e '.[standalone]'`). The result stands in
 `dist/coatgui` (`dist/coatgui.app` on macOS) and is tried before this ends: the sample campaign is
@@ -19,7 +19,7 @@ from pathlib import Path
 import coatgui
 from coatgui.shipped import resource, sample_panels
 
-TOP = Path(__file__).resolve().parent.parent
+TOP = Path(__file__).resolve().parents[2]
 ICON = {"win32": "ico", "darwin": "icns"}.get(sys.platform, "png")
 ASSOCIATE = """@echo off
 rem Opens *.coatgui with this program, for this user. To take it back:
@@ -85,7 +85,7 @@ def main() -> None:
         [
             sys.executable, "-m", "PyInstaller", "--noconfirm", "--clean", "--log-level", "WARN",
             "--distpath", str(TOP / "dist"), "--workpath", str(build),
-            str(TOP / "packaging" / "coatgui.spec"),
+            str(TOP / "resources" / "desktop" / "coatgui.spec"),
         ],
         check=True,
         env={**os.environ, "COATGUI_ICON": str(icon), "COATGUI_VERSION": coatgui.__version__},
